@@ -1,0 +1,3 @@
+export * from './cells'
+export type * from './workbook'
+export type * from './table'

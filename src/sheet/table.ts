@@ -1,0 +1,22 @@
+import type { CellValue } from './cells'
+
+/** How a cell of a written table is set off; a host maps it to fonts, fills and rules of its own. */
+export type Mark = 'title' | 'head' | 'total' | 'note' | 'alert'
+
+/** One cell to be written. Text always goes in as text, whatever it begins with. */
+export interface TableCell {
+  readonly value: CellValue
+  /** number format in the en-US notation; text cells carry '@' */
+  readonly format: string
+  readonly mark?: Mark
+}
+
+/** A rectangle of cells as plain data: what is written to a sheet, shown in the pane or copied. */
+export interface Table {
+  /** rows of equal length */
+  readonly cells: readonly (readonly TableCell[])[]
+  /** width of each column in characters of the body font */
+  readonly widths: readonly number[]
+  /** columns (from 0) whose numbers line up right; headings follow them */
+  readonly numeric: readonly boolean[]
+}
