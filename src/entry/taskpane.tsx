@@ -1,0 +1,1 @@
+document.querySelector('#pane')?.replaceChildren(`Counterpoise ${COUNTERPOISE_VERSION}`)

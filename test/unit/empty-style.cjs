@@ -1,0 +1,2 @@
+// Style sheets carry no meaning outside a browser.
+module.exports = {}
