@@ -4,7 +4,9 @@ const fs = require('node:fs')
 const path = require('node:path')
 const { compileKernel, literal } = require('./kernel.cjs')
 
-const self = [__filename, path.join(__dirname, 'kernel.cjs')].map((file) => fs.readFileSync(file, 'utf8')).join('')
+const self = [__filename, path.join(__dirname, 'kernel.cjs')]
+  .map((file) => fs.readFileSync(file, 'utf8'))
+  .join('')
 
 module.exports = {
   process: (_source, file) => ({

@@ -6,7 +6,16 @@ const { createHash } = require('node:crypto')
 const fs = require('node:fs')
 const path = require('node:path')
 
-const flags = ['-O3', '--noAssert', '--runtime', 'stub', '--enable', 'simd', '--importMemory', '--noExportMemory']
+const flags = [
+  '-O3',
+  '--noAssert',
+  '--runtime',
+  'stub',
+  '--enable',
+  'simd',
+  '--importMemory',
+  '--noExportMemory',
+]
 const compiler = path.join(path.dirname(require.resolve('assemblyscript/package.json')), 'bin', 'asc.js')
 const { version } = require('assemblyscript/package.json')
 const cache = path.resolve(__dirname, '../../node_modules/.cache/kernel')
@@ -14,7 +23,10 @@ const cache = path.resolve(__dirname, '../../node_modules/.cache/kernel')
 /** @param {string} file path of an .as source @returns {Buffer} the module */
 function compileKernel(file) {
   const source = fs.readFileSync(file, 'utf8')
-  const key = createHash('sha256').update([version, ...flags, source].join('\0')).digest('hex').slice(0, 24)
+  const key = createHash('sha256')
+    .update([version, ...flags, source].join('\0'))
+    .digest('hex')
+    .slice(0, 24)
   const kept = path.join(cache, `${key}.wasm`)
   if (fs.existsSync(kept)) return fs.readFileSync(kept)
 
@@ -29,7 +41,9 @@ function compileKernel(file) {
     })
     fs.renameSync(path.join(work, 'kernel.wasm'), kept)
   } catch (error) {
-    throw new Error(`${path.basename(file)} does not compile:\n${error.stderr ?? error.message}`, { cause: error })
+    throw new Error(`${path.basename(file)} does not compile:\n${error.stderr ?? error.message}`, {
+      cause: error,
+    })
   } finally {
     fs.rmSync(work, { recursive: true, force: true })
   }

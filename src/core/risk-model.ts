@@ -1,0 +1,293 @@
+import { checkBlock, Fault } from './fault'
+import { kernelForm, openBlock, type KernelForm } from './kernel/block'
+
+/**
+ * A covariance C of n positions as a linear operator: what it does to weights matters, not how it is stored.
+ * All figures are per period, as the returns are.
+ */
+export interface RiskModel {
+  /** n */
+  readonly size: number
+  /**
+   * How much of (sum of stand-alone volatilities)^2 rounding alone can make of a variance that is truly zero.
+   * A computed variance up to this is not told apart from zero.
+   */
+  readonly rounding: number
+  /**
+   * C w and w'C w.
+   *
+   * @throws Fault "shape" | "not-a-number" | "negative-variance"
+   */
+  apply(weights: Float64Array): Applied
+  /** The diagonal of C; n, a copy. */
+  variances(): Float64Array
+  /** C in full; n x n row-major, a copy. Formed only when asked for: O(T n^2) for a returns model. */
+  matrix(): Float64Array
+}
+
+export interface Applied {
+  /** C w; n */
+  readonly marginals: Float64Array
+  /** w'C w */
+  readonly variance: number
+}
+
+/** The model a block of returns gives, with what error bands and tail figures need of the returns themselves. */
+export interface ReturnsModel extends RiskModel {
+  /** T */
+  readonly dates: number
+  readonly weighting: Weighting
+  /** Which form of the kernel this block runs on. */
+  readonly form: KernelForm
+  /** (Weighted) mean return; n. */
+  readonly means: Float64Array
+  /** omega_t, the weight of each date; T, sum 1. */
+  readonly rowWeights: Float64Array
+  /** C = divisor sum_t omega_t z_t z_t': T/(T-1) for "sample", 1 for "exponential". */
+  readonly correction: number
+  /** z_t, the centred returns of one date; n, a view to read from, never to write to. */
+  centredRow(date: number): Float64Array
+  /** y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves. */
+  portfolioReturns(weights: Float64Array): Float64Array
+}
+
+/** How dates are weighted: all alike with divisor T-1, or decay^age (newest row last, weights scaled to sum 1). */
+export type Weighting = { readonly kind: 'sample' } | { readonly kind: 'exponential'; readonly decay: number }
+
+/**
+ * The risk model of a block of returns. The covariance is never formed: the centred block is kept, and every
+ * question about the portfolio is one streaming pass over it.
+ *
+ *   C = divisor sum_t omega_t (r_t - m)(r_t - m)',   m = sum_t omega_t r_t
+ *   sample:       omega_t = 1/T,  divisor T/(T-1)
+ *   exponential:  omega_t proportional to decay^(T-1-t), sum 1, divisor 1
+ *
+ * Means are taken in two passes (the mean, then the mean of what is left): returns riding on a large constant
+ * keep every digit doubles allow. A column that never changes is riskless exactly.
+ *
+ * @param returns   T x n row-major, decimals per period; not kept, not changed
+ * @param dates     T, at least 2
+ * @param size      n
+ * @param weighting default: sample
+ * @param form      of the kernel; default: the fastest this host allows
+ * @throws Fault    "shape" | "not-a-number" (with row and column) | "too-few" | "out-of-range" (decay)
+ * @source          Chan, Golub & LeVeque (1983), Algorithms for Computing the Sample Variance, The American
+ *                  Statistician 37(3), 242-247 (two-pass form; from memory)
+ * @cost            O(T n) time, 8 T n bytes
+ * @example         returnsModel(Float64Array.of(.01, .02, .03, -.02), 2, 2).apply(Float64Array.of(.5, .5)).variance // 0.0001
+ * @example         returnsModel(Float64Array.of(.01, .02, .03, -.02), 2, 2, { kind: 'exponential', decay: .5 }).means // [0.02333, -0.00667]
+ */
+export function returnsModel(
+  returns: Float64Array,
+  dates: number,
+  size: number,
+  weighting: Weighting = { kind: 'sample' },
+  form: KernelForm = kernelForm,
+): ReturnsModel {
+  checkBlock(returns, dates, size, 'returns')
+  if (dates < 2) {
+    throw new Fault('too-few', `returns: ${dates} date`, 'at least 2 dates are needed', {
+      argument: 'returns',
+    })
+  }
+  const rowWeights = dateWeights(dates, weighting)
+  const correction = weighting.kind === 'sample' ? dates / (dates - 1) : 1
+
+  const means = new Float64Array(size)
+  const moves = new Uint8Array(size)
+  for (let t = 0, k = 0; t < dates; t++) {
+    const omega = rowWeights[t]!
+    for (let i = 0; i < size; i++, k++) {
+      const value = returns[k]!
+      means[i]! += omega * value
+      if (value !== returns[i]) moves[i] = 1
+    }
+  }
+  const remainders = new Float64Array(size)
+  for (let t = 0, k = 0; t < dates; t++) {
+    const omega = rowWeights[t]!
+    for (let i = 0; i < size; i++, k++) remainders[i]! += omega * (returns[k]! - means[i]!)
+  }
+
+  const block = openBlock(dates, size, form)
+  const { centred, multipliers, stride } = block
+  const variances = new Float64Array(size)
+  for (let t = 0, k = 0; t < dates; t++) {
+    const multiplier = rowWeights[t]! * correction
+    multipliers[t] = multiplier
+    for (let i = 0, at = t * stride; i < size; i++, k++, at++) {
+      // the two subtractions in this order: their sum may not be a double
+      const z = moves[i] ? returns[k]! - means[i]! - remainders[i]! : 0
+      centred[at] = z
+      variances[i]! += multiplier * z * z
+    }
+  }
+  for (let i = 0; i < size; i++) means[i] = moves[i] ? means[i]! + remainders[i]! : returns[i]!
+
+  const pass = (weights: Float64Array) => {
+    checkBlock(weights, size, 1, 'weights')
+    return block.pass(weights)
+  }
+  return {
+    size,
+    dates,
+    weighting,
+    form: block.form,
+    means,
+    rowWeights,
+    correction,
+    // y is a sum of n terms, each good to one rounding of its stand-alone volatility
+    rounding: (size * Number.EPSILON) ** 2,
+    apply: (weights) => {
+      const { marginals, variance } = pass(weights)
+      return { marginals, variance }
+    },
+    variances: () => variances.slice(),
+    matrix: () => columnByColumn(size, (weights) => block.pass(weights).marginals),
+    centredRow: (date) => centred.subarray(date * stride, date * stride + size),
+    portfolioReturns: (weights) => pass(weights).portfolio,
+  }
+}
+
+function dateWeights(dates: number, weighting: Weighting): Float64Array {
+  if (weighting.kind === 'sample') return new Float64Array(dates).fill(1 / dates)
+  const { decay } = weighting
+  if (!(decay > 0 && decay < 1)) {
+    throw new Fault(
+      'out-of-range',
+      `decay factor ${decay}`,
+      'a number between 0 and 1 is needed, such as 0.94',
+      {
+        argument: 'decay',
+      },
+    )
+  }
+  const weights = Float64Array.from({ length: dates }, (_, t) => decay ** (dates - 1 - t))
+  // smallest first: weights grow with t
+  const total = weights.reduce((sum, weight) => sum + weight, 0)
+  return weights.map((weight) => weight / total)
+}
+
+/** The matrix of an operator, from what it does to each unit vector; only the upper half is taken, then mirrored. */
+function columnByColumn(size: number, apply: (weights: Float64Array) => Float64Array): Float64Array {
+  const matrix = new Float64Array(size * size)
+  const unit = new Float64Array(size)
+  for (let i = 0; i < size; i++) {
+    unit[i] = 1
+    const column = apply(unit)
+    unit[i] = 0
+    for (let j = i; j < size; j++) matrix[i * size + j] = matrix[j * size + i] = column[j]!
+  }
+  return matrix
+}
+
+/**
+ * The risk model of a covariance matrix that is given outright.
+ *
+ * Symmetry and the diagonal are checked here. That a matrix has a negative eigenvalue is not looked for; when the
+ * weights at hand meet one, `apply` says so.
+ *
+ * @param matrix    n x n row-major, decimals squared; not changed, a copy is kept
+ * @param size      n
+ * @throws Fault    "shape" | "not-a-number" | "negative-variance" | "not-symmetric" beyond 1e-8 sqrt(c_ii c_jj)
+ * @cost            O(n^2) for the check and for each question
+ * @example         matrixModel(Float64Array.of(.04, .01, .01, .09), 2).apply(Float64Array.of(.5, .5)).variance // 0.0375
+ * @example         matrixModel(Float64Array.of(.04, .01, .02, .09), 2) // Fault "not-symmetric"
+ */
+export function matrixModel(matrix: Float64Array, size: number): RiskModel {
+  checkBlock(matrix, size, size, 'risk')
+  const variances = new Float64Array(size)
+  for (let i = 0; i < size; i++) {
+    const variance = (variances[i] = matrix[i * size + i]!)
+    if (variance < 0) {
+      throw new Fault(
+        'negative-variance',
+        `risk: ${variance} on the diagonal`,
+        'a variance of 0 or more is needed',
+        {
+          argument: 'risk',
+          row: i,
+          column: i,
+        },
+      )
+    }
+  }
+  for (let i = 0; i < size; i++) {
+    for (let j = 0; j < i; j++) {
+      const below = matrix[i * size + j]!
+      const above = matrix[j * size + i]!
+      if (Math.abs(below - above) > 1e-8 * Math.sqrt(variances[i]!) * Math.sqrt(variances[j]!)) {
+        throw new Fault(
+          'not-symmetric',
+          `risk: ${below} below the diagonal but ${above} above it`,
+          'the same covariance is needed in both places',
+          { argument: 'risk', row: i, column: j },
+        )
+      }
+    }
+  }
+  const kept = matrix.slice()
+  const rounding = size * Number.EPSILON
+
+  return {
+    size,
+    rounding,
+    apply(weights) {
+      checkBlock(weights, size, 1, 'weights')
+      const marginals = new Float64Array(size)
+      let variance = 0
+      let gross = 0
+      for (let i = 0, k = 0; i < size; i++) {
+        let sum = 0
+        for (let j = 0; j < size; j++, k++) sum += kept[k]! * weights[j]!
+        marginals[i] = sum
+        variance += weights[i]! * sum
+        gross += Math.abs(weights[i]!) * Math.sqrt(variances[i]!)
+      }
+      if (variance < -rounding * gross * gross) {
+        throw new Fault(
+          'negative-variance',
+          `risk: these weights would have a variance of ${variance.toPrecision(3)}`,
+          'a covariance matrix without negative eigenvalues is needed',
+          { argument: 'risk' },
+        )
+      }
+      // what is left below zero is rounding of zero
+      return { marginals, variance: Math.max(variance, 0) }
+    },
+    variances: () => variances.slice(),
+    matrix: () => kept.slice(),
+  }
+}
+
+/**
+ * The covariance matrix of a model, in full.
+ *
+ * @returns  n x n row-major, decimals squared per period
+ * @cost     O(T n^2) for a returns model
+ * @example  covariance(returnsModel(Float64Array.of(.01, .02, .03, -.02), 2, 2)) // [0.0002, -0.0004, -0.0004, 0.0008]
+ */
+export function covariance(model: RiskModel): Float64Array {
+  return model.matrix()
+}
+
+/**
+ * The correlation matrix of a model: c_ij / sqrt(c_ii c_jj), with ones on its diagonal.
+ *
+ * @returns  n x n row-major; NaN throughout the row and column of a riskless position, whose correlation is not defined
+ * @cost     O(T n^2) for a returns model
+ * @example  correlation(matrixModel(Float64Array.of(.04, .03, .03, .09), 2)) // [1, 0.5, 0.5, 1]
+ */
+export function correlation(model: RiskModel): Float64Array {
+  const { size } = model
+  const matrix = model.matrix()
+  const deviations = model.variances().map(Math.sqrt)
+  for (let i = 0; i < size; i++) {
+    for (let j = 0; j < size; j++) {
+      const scale = deviations[i]! * deviations[j]!
+      const at = i * size + j
+      matrix[at] = scale === 0 ? NaN : i === j ? 1 : matrix[at]! / scale
+    }
+  }
+  return matrix
+}
