@@ -10,7 +10,7 @@ const { version } = require('./package.json')
 
 const at = (...parts) => path.resolve(__dirname, ...parts)
 
-/** What the bundles have in common. Types are checked by tsc, not here. */
+/** What the bundles have in common. Types are checked by tsc, not here; how sources are compiled stands in .swcrc. */
 const base = (name, mode, rest) => ({
   name,
   mode,
@@ -19,18 +19,7 @@ const base = (name, mode, rest) => ({
   resolve: { extensions: ['.tsx', '.ts', '.mjs', '.js'] },
   module: {
     rules: [
-      {
-        test: /\.tsx?$/,
-        exclude: /node_modules/,
-        loader: 'swc-loader',
-        options: {
-          jsc: {
-            target: 'es2022',
-            parser: { syntax: 'typescript', tsx: true },
-            transform: { react: { runtime: 'automatic' } },
-          },
-        },
-      },
+      { test: /\.tsx?$/, exclude: /node_modules/, loader: 'swc-loader' },
       // AssemblyScript: the module's value is the bytes it compiles to.
       { test: /\.as$/, loader: at('src/build/kernel-loader.cjs') },
       { test: /\.css$/, use: [CssPlugin.loader, 'css-loader'] },
@@ -39,7 +28,7 @@ const base = (name, mode, rest) => ({
   cache: {
     type: 'filesystem',
     cacheDirectory: at('node_modules/.cache/webpack'),
-    buildDependencies: { config: [__filename, at('package-lock.json'), at('src/build/')] },
+    buildDependencies: { config: [__filename, at('package-lock.json'), at('.swcrc')] },
   },
   performance: { hints: false },
   stats: 'errors-warnings',
