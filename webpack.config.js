@@ -3,6 +3,7 @@ const { DefinePlugin } = require('webpack')
 const CopyPlugin = require('copy-webpack-plugin')
 const CssPlugin = require('mini-css-extract-plugin')
 const HtmlPlugin = require('html-webpack-plugin')
+const { Stamp } = require('./src/build/bundles.cjs')
 const { FunctionsMetadata } = require('./src/build/functions-metadata.cjs')
 const { deployed } = require('./src/build/manifest.cjs')
 const { contentSecurityPolicy, officeHost } = require('./src/build/policy.cjs')
@@ -11,7 +12,7 @@ const { version } = require('./package.json')
 const at = (...parts) => path.resolve(__dirname, ...parts)
 
 /** What the bundles have in common. Types are checked by tsc, not here; how sources are compiled stands in .swcrc. */
-const base = (name, mode, rest) => ({
+const base = (name, mode, { plugins, ...rest }) => ({
   name,
   mode,
   context: __dirname,
@@ -32,6 +33,7 @@ const base = (name, mode, rest) => ({
   },
   performance: { hints: false },
   stats: 'errors-warnings',
+  plugins: [new Stamp(name, mode), ...plugins],
   ...rest,
 })
 

@@ -1,5 +1,5 @@
 import { execFileSync } from 'node:child_process'
-import { existsSync, mkdirSync, mkdtempSync, readFileSync, renameSync, rmSync } from 'node:fs'
+import { existsSync, mkdirSync, mkdtempSync, readFileSync, renameSync, rmSync, writeFileSync } from 'node:fs'
 import { dirname, join, resolve } from 'node:path'
 import { brotliDecompressSync } from 'node:zlib'
 import packed from '@sparticuz/chromium'
@@ -11,6 +11,7 @@ const { version } = JSON.parse(readFileSync(manifest, 'utf8')) as { version: str
 const folder = resolve(__dirname, '../../node_modules/.cache', `chromium-${version}`)
 const executable = join(folder, 'chromium')
 const libraries = join(folder, 'lib')
+const fontList = join(folder, 'fonts.conf')
 
 const fromPackage = process.platform === 'linux' && process.arch === 'x64'
 
@@ -44,6 +45,18 @@ export async function unpackChromium(): Promise<void> {
     const archive = brotliDecompressSync(readFileSync(join(dirname(manifest), 'bin/al2023.tar.br')))
     execFileSync('tar', ['-x', '-C', fresh], { input: archive })
   }
+  // The package's own list of fonts names folders of the service it was made for; with it no text is drawn at all.
+  writeFileSync(
+    join(fresh, 'fonts.conf'),
+    `<?xml version="1.0"?>
+<!DOCTYPE fontconfig SYSTEM "fonts.dtd">
+<fontconfig>
+  <include ignore_missing="yes">/etc/fonts/fonts.conf</include>
+  <dir>${join(folder, 'fonts')}</dir>
+  <cachedir>${join(folder, 'fonts-cache')}</cachedir>
+</fontconfig>
+`,
+  )
   try {
     renameSync(fresh, folder)
   } catch (error) {
@@ -63,7 +76,7 @@ export async function launchChromium(): Promise<Browser> {
     args: packed.args.filter((flag) => !unwanted.has(flag)),
     env: {
       ...process.env,
-      FONTCONFIG_PATH: join(folder, 'fonts'),
+      FONTCONFIG_FILE: fontList,
       ...(existsSync(libraries) ? { LD_LIBRARY_PATH: libraries } : {}),
     },
   })

@@ -81,7 +81,10 @@ export default defineConfig(
       ],
     },
   },
-  { files: ['**/*.cjs'], languageOptions: { sourceType: 'commonjs', globals: { ...node, ...commonjs } } },
+  {
+    files: ['**/*.cjs', 'webpack.config.js'],
+    languageOptions: { sourceType: 'commonjs', globals: { ...node, ...commonjs } },
+  },
   { files: ['**/*.mjs'], languageOptions: { globals: node } },
   {
     files: ['test/**/*.{ts,tsx}'],
