@@ -1,0 +1,278 @@
+import type { Area, CellValue, Json } from '../sheet'
+import { dress, type Look } from './looks'
+import { rangeOf } from './reading'
+import { REQUEST_BYTES, type Request } from './requests'
+
+/** Settings of ours begin so; the journal of a write under way is one of them. */
+export const SETTING_PREFIX = 'counterpoise.'
+export const JOURNAL_KEY = `${SETTING_PREFIX}journal`
+
+/** What stands in some cells, so that it can be put back to the letter. */
+export interface Ground {
+  readonly area: Area
+  /** what was typed: text behind an apostrophe, so that it cannot be taken for a formula; blanks and spilled results as '' */
+  readonly typed: readonly (readonly CellValue[])[]
+  /** number formats; null where the write sets none but '@' under text of its own */
+  readonly formats: readonly (readonly string[])[] | null
+}
+
+/** All that a write is about to change, as it stands before. */
+export interface Journal {
+  /** the sheet the write makes, and what it fills there */
+  readonly created: { readonly sheet: string; readonly filled: readonly Area[] } | null
+  readonly grounds: readonly Ground[]
+  readonly looks: readonly Look[]
+  readonly widths: readonly { readonly area: Area; readonly points: number }[]
+  /** full names and what they refer to; null where there was no such name */
+  readonly names: { readonly [name: string]: string | null }
+  /** full keys and values; null where there was no such setting */
+  readonly settings: { readonly [key: string]: Json }
+}
+
+/** One thing to do, with its size in a request and the cells whose change will be echoed by an event. */
+export interface Step {
+  readonly bytes: number
+  readonly touches?: Area
+  run(context: Excel.RequestContext): void
+}
+
+/** Does steps in order, in as few requests as their size allows. */
+export async function perform(
+  { context, sync }: Request,
+  steps: readonly Step[],
+  expectEcho: (area: Area) => void,
+): Promise<void> {
+  const application = context.workbook.application
+  let at = 0
+  while (at < steps.length) {
+    application.suspendScreenUpdatingUntilNextSync()
+    application.suspendApiCalculationUntilNextSync()
+    let bytes = 0
+    for (let step = steps[at]; step; step = steps[++at]) {
+      if (bytes > 0 && bytes + step.bytes > REQUEST_BYTES) break
+      bytes += step.bytes
+      if (step.touches) expectEcho(step.touches)
+      step.run(context)
+    }
+    await sync()
+  }
+}
+
+/** A little step, whose bytes do not matter. */
+export const step = (run: (context: Excel.RequestContext) => void, touches?: Area): Step => ({
+  bytes: 200,
+  run,
+  ...(touches && { touches }),
+})
+
+const cellBytes = (value: CellValue | null): number => (typeof value === 'string' ? 4 + 3 * value.length : 20)
+
+/** Cuts rows of cells into slabs that fit a request: [first row, rows, bytes]. */
+export function slabs(cells: readonly (readonly (CellValue | null)[])[]): [number, number, number][] {
+  const found: [number, number, number][] = []
+  let from = 0
+  let bytes = 0
+  cells.forEach((row, k) => {
+    const more = row.reduce((sum: number, value) => sum + cellBytes(value), 0)
+    if (k > from && bytes + more > REQUEST_BYTES / 2) {
+      found.push([from, k - from, bytes])
+      from = k
+      bytes = 0
+    }
+    bytes += more
+  })
+  if (cells.length > from) found.push([from, cells.length - from, bytes])
+  return found
+}
+
+const rowsOf = (area: Area, from: number, rows: number): Area => ({ ...area, row: area.row + from, rows })
+
+/**
+ * What an entry that is text must be sent as, into a cell of the format '@': there it stays what it is, but for one apostrophe in front,
+ * which the host takes for its own mark.
+ */
+export const asText = (text: string): string => (text.startsWith("'") ? `'${text}` : text)
+
+const isText = (typed: CellValue): typed is string => typeof typed === 'string' && typed.startsWith("'")
+
+/** The steps that put cells back. The formats an entry needs to be taken rightly come first, its own at last. */
+function groundSteps({ area, typed, formats }: Ground): Step[] {
+  return slabs(typed).map(([from, rows, bytes]) => {
+    const part = typed.slice(from, from + rows)
+    const place = rowsOf(area, from, rows)
+    return {
+      bytes: 3 * bytes,
+      touches: place,
+      run(context) {
+        const range = rangeOf(context, place)
+        range.numberFormat = part.map((row) =>
+          row.map((entry) => (isText(entry) ? '@' : formats ? 'General' : null)),
+        )
+        range.formulas = part.map((row) =>
+          row.map((entry) => (isText(entry) ? asText(entry.slice(1)) : entry)),
+        )
+        if (formats) range.numberFormat = formats.slice(from, from + rows).map((row) => [...row])
+      },
+    }
+  })
+}
+
+/** Reads what stands in some areas, a bounded piece a request. */
+export async function surveyGrounds(
+  { context, sync }: Request,
+  areas: readonly Area[],
+): Promise<(Ground & Values)[]> {
+  const grounds: (Ground & Values)[] = []
+  for (const area of areas) {
+    // values, formulas, kinds and formats: four answers a cell
+    const step = Math.max(1, Math.floor(REQUEST_BYTES / (80 * area.columns)))
+    const typed: CellValue[][] = []
+    const formats: string[][] = []
+    const values: CellValue[][] = []
+    for (let from = 0; from < area.rows; from += step) {
+      const range = rangeOf(context, rowsOf(area, from, Math.min(step, area.rows - from)))
+      range.load('values,formulas,valueTypes,numberFormat')
+      await sync()
+      ;(range.formulas as CellValue[][]).forEach((row, r) => {
+        values.push(range.values[r] as CellValue[])
+        formats.push(range.numberFormat[r] as string[])
+        typed.push(
+          row.map((entry, c) =>
+            // a formula that gives its own text does not exist, so an entry equal to its value was typed as it reads
+            range.valueTypes[r]?.[c] === 'String' && entry === range.values[r]?.[c] ? `'${entry}` : entry,
+          ),
+        )
+      })
+      range.untrack()
+    }
+    grounds.push({ area, typed, formats, values })
+  }
+  return grounds
+}
+
+interface Values {
+  readonly values: readonly (readonly CellValue[])[]
+}
+
+/**
+ * Puts back what a journal holds: the cells that differ from it, looks, widths, names and settings; a sheet the write made goes again,
+ * unless something else has come to stand on it. May be done twice. The journal is saved anew at the head of the work and goes with its end,
+ * so that this can be interrupted as well.
+ */
+export async function restore(
+  request: Request,
+  journal: Journal,
+  expectEcho: (area: Area) => void,
+): Promise<void> {
+  const { context, sync } = request
+  const { names, settings, worksheets } = context.workbook
+  const nameItems = Object.keys(journal.names).map((name) => ({
+    name,
+    item: names.getItemOrNullObject(name).load('name'),
+  }))
+  const settingItems = Object.keys(journal.settings).map((key) => ({
+    key,
+    item: settings.getItemOrNullObject(key).load('key'),
+  }))
+  const sheets = worksheets.load('items/name')
+  await sync()
+
+  const there = new Set(sheets.items.map(({ name }) => name))
+  // a sheet that is gone took its cells along: there is nothing left to put back
+  const grounds = journal.grounds.filter(({ area }) => there.has(area.sheet))
+  const now = await surveyGrounds(
+    request,
+    grounds.map(({ area }) => area),
+  )
+  const changed = grounds.flatMap((ground, k) => difference(ground, now[k]))
+  const { created } = journal
+  const discard = created !== null && there.has(created.sheet) && (await holdsOnly(request, created))
+
+  const steps: Step[] = [
+    { bytes: JSON.stringify(journal).length, run: () => settings.add(JOURNAL_KEY, journal) },
+    ...changed.flatMap(groundSteps),
+    ...journal.looks
+      .filter(({ area }) => there.has(area.sheet))
+      .map((look) => step((context) => dress(context, look, true))),
+    ...journal.widths
+      .filter(({ area }) => there.has(area.sheet))
+      .map(({ area, points }) =>
+        step((context) => void (rangeOf(context, area).format.columnWidth = points)),
+      ),
+    ...nameItems.flatMap(({ name, item }) =>
+      nameSteps(name, journal.names[name] ?? null, !item.isNullObject),
+    ),
+    ...settingItems.flatMap(({ key, item }) =>
+      settingSteps(key, journal.settings[key] ?? null, !item.isNullObject),
+    ),
+    ...(discard ? [step((context) => context.workbook.worksheets.getItem(created.sheet).delete())] : []),
+    step((context) => context.workbook.settings.getItem(JOURNAL_KEY).delete()),
+  ]
+  await perform(request, steps, expectEcho)
+}
+
+/** The rows of a ground, from the first to the last, that no longer hold what they held. */
+function difference(ground: Ground, now: Ground | undefined): Ground[] {
+  const alters = ground.typed.map((row, r) =>
+    row.some(
+      (entry, c) =>
+        entry !== now?.typed[r]?.[c] ||
+        (ground.formats !== null && ground.formats[r]?.[c] !== now?.formats?.[r]?.[c]),
+    ),
+  )
+  const first = alters.indexOf(true)
+  if (first < 0) return []
+  const last = alters.lastIndexOf(true) + 1
+  return [
+    {
+      area: rowsOf(ground.area, first, last - first),
+      typed: ground.typed.slice(first, last),
+      formats: ground.formats && ground.formats.slice(first, last),
+    },
+  ]
+}
+
+/** Whether a sheet the write made holds nothing but what the write put there. */
+async function holdsOnly(
+  { context, sync }: Request,
+  { sheet, filled }: { readonly sheet: string; readonly filled: readonly Area[] },
+): Promise<boolean> {
+  const used = context.workbook.worksheets.getItem(sheet).getUsedRangeOrNullObject(true)
+  used.load('rowIndex,columnIndex,rowCount,columnCount')
+  await sync()
+  if (used.isNullObject) return true
+  const bottom = used.rowIndex + used.rowCount
+  const right = used.columnIndex + used.columnCount
+  // one frame around all that was filled is close enough: the write began on an empty sheet
+  return (
+    filled.length > 0 &&
+    used.rowIndex >= Math.min(...filled.map(({ row }) => row)) &&
+    used.columnIndex >= Math.min(...filled.map(({ column }) => column)) &&
+    bottom <= Math.max(...filled.map(({ row, rows }) => row + rows)) &&
+    right <= Math.max(...filled.map(({ column, columns }) => column + columns))
+  )
+}
+
+/** The steps that make a name refer to something, or to be gone. */
+export function nameSteps(name: string, refersTo: string | null, exists: boolean): Step[] {
+  if (!exists) {
+    return refersTo === null ? [] : [step(({ workbook }) => void workbook.names.add(name, refersTo))]
+  }
+  return [
+    step(({ workbook }) => {
+      const item = workbook.names.getItem(name)
+      if (refersTo === null) item.delete()
+      else item.formula = refersTo
+    }),
+  ]
+}
+
+/** The steps that give a setting a value, or remove it. */
+export function settingSteps(key: string, value: Json, exists: boolean): Step[] {
+  if (value === null) {
+    return exists ? [step(({ workbook }) => workbook.settings.getItem(key).delete())] : []
+  }
+  return [
+    { bytes: JSON.stringify(value).length, run: ({ workbook }) => void workbook.settings.add(key, value) },
+  ]
+}

@@ -1,0 +1,158 @@
+import type { Area, Mark, Table } from '../sheet'
+import { rangeOf } from './reading'
+import type { Request } from './requests'
+
+/**
+ * How written tables look, and what stood there before. The look is weight, slant, rules and alignment only: without colours of
+ * our own it stays readable on every theme of the host, and a user's own fills stay.
+ */
+interface Face {
+  readonly bold: boolean
+  readonly italic: boolean
+  readonly align: string
+  readonly top: string
+  readonly bottom: string
+}
+
+const PLAIN: Face = { bold: false, italic: false, align: 'General', top: 'None', bottom: 'None' }
+
+const FACES: { readonly [mark in Mark]: Face } = {
+  title: { ...PLAIN, bold: true },
+  head: { ...PLAIN, bold: true, bottom: 'Continuous' },
+  total: { ...PLAIN, bold: true, top: 'Continuous' },
+  note: { ...PLAIN, italic: true },
+  alert: { ...PLAIN, bold: true, italic: true },
+}
+
+/** A face and the cells that have it. */
+export interface Look extends Face {
+  readonly area: Area
+}
+
+/**
+ * Sets an area off. Neighbours share a rule, so a new table draws the rules it needs and takes away only those inside it; what is put
+ * back ("exactly") had its outer rules read before and gets them again.
+ */
+export function dress(context: Excel.RequestContext, look: Look, exactly: boolean): void {
+  const { area, bold, italic, align, top, bottom } = look
+  const { format } = rangeOf(context, area)
+  format.font.bold = bold
+  format.font.italic = italic
+  format.horizontalAlignment = align as Excel.HorizontalAlignment
+  const rule = (edge: 'EdgeTop' | 'EdgeBottom' | 'InsideHorizontal', style: string) => {
+    format.borders.getItem(edge).style = style as Excel.BorderLineStyle
+  }
+  if (area.rows > 1) rule('InsideHorizontal', 'None')
+  if (exactly || top !== 'None') rule('EdgeTop', top)
+  if (exactly || bottom !== 'None') rule('EdgeBottom', bottom)
+}
+
+/** Makes plain what an earlier table of ours left behind; its first row may share a rule with a neighbour that is not ours. */
+export function undress(context: Excel.RequestContext, area: Area, ours: Area): void {
+  dress(context, { ...PLAIN, area }, false)
+  if (area.row > ours.row) rangeOf(context, area).format.borders.getItem('EdgeTop').style = 'None'
+}
+
+/**
+ * The looks of a table that fills `target`: plain all over, then each run of cells with one mark. */
+export function looksOf(table: Table, target: Area): Look[] {
+  const looks: Look[] = [{ ...PLAIN, area: target }]
+  table.cells.forEach((cells, row) => {
+    let from = 0
+    while (from < cells.length) {
+      const face = faceOf(table, row, from)
+      let to = from + 1
+      while (to < cells.length && sameFace(faceOf(table, row, to), face)) to++
+      if (!sameFace(face, PLAIN)) {
+        looks.push({
+          ...face,
+          area: {
+            ...target,
+            row: target.row + row,
+            rows: 1,
+            column: target.column + from,
+            columns: to - from,
+          },
+        })
+      }
+      from = to
+    }
+  })
+  return looks
+}
+
+function faceOf(table: Table, row: number, column: number): Face {
+  const mark = table.cells[row]?.[column]?.mark
+  if (!mark) return PLAIN
+  return mark === 'head' && table.numeric[column] ? { ...FACES.head, align: 'Right' } : FACES[mark]
+}
+
+const sameFace = (a: Face, b: Face): boolean =>
+  a.bold === b.bold &&
+  a.italic === b.italic &&
+  a.align === b.align &&
+  a.top === b.top &&
+  a.bottom === b.bottom
+
+/** An area with mixed looks is asked again in at most so many strips. */
+const STRIPS = 16
+
+/**
+ * Finds out how areas look now, so that it can be put back. The host answers "mixed" with null: such an area is cut into strips of
+ * rows and in the end into cells, so a plain place costs one request and a table a few.
+ */
+export async function surveyLooks({ context, sync }: Request, areas: readonly Area[]): Promise<Look[]> {
+  const looks: Look[] = []
+  let open = areas
+  while (open.length > 0) {
+    const asked = open.map((area) => {
+      const { format } = rangeOf(context, area)
+      format.load('horizontalAlignment')
+      format.font.load('bold,italic')
+      const edges = (
+        ['EdgeTop', 'EdgeBottom', ...(area.rows > 1 ? ['InsideHorizontal' as const] : [])] as const
+      ).map((edge) => format.borders.getItem(edge).load('style'))
+      return { area, format, edges }
+    })
+    await sync()
+    open = asked.flatMap(({ area, format, edges }) => {
+      const [top, bottom, inside] = edges.map((edge) => edge.style as string | null)
+      const { font } = format
+      const look = {
+        area,
+        bold: font.bold as boolean | null,
+        italic: font.italic as boolean | null,
+        align: format.horizontalAlignment as string | null,
+        top: top ?? null,
+        bottom: bottom ?? null,
+      }
+      const ruled = area.rows > 1 && [top, bottom, inside].some((style) => style !== 'None')
+      if (!ruled && isUniform(look)) {
+        looks.push(look)
+        return []
+      }
+      return strips(area)
+    })
+  }
+  return looks
+}
+
+const isUniform = (look: { [key in keyof Look]: Look[key] | null }): look is Look =>
+  Object.values(look).every((value) => value !== null)
+
+function strips(area: Area): Area[] {
+  if (area.rows > 1) {
+    const rows = Math.ceil(area.rows / STRIPS)
+    return Array.from({ length: Math.ceil(area.rows / rows) }, (_, k) => ({
+      ...area,
+      row: area.row + k * rows,
+      rows: Math.min(rows, area.rows - k * rows),
+    }))
+  }
+  // a single cell cannot be mixed; should a host say so, there is nothing finer to ask
+  if (area.columns === 1) return []
+  return Array.from({ length: area.columns }, (_, k) => ({ ...area, column: area.column + k, columns: 1 }))
+}
+
+/** Width in points of a column that shows so many characters of the body font. */
+export const pointsOf = (characters: number): number => (characters * 7 + 5) * 0.75

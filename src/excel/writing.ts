@@ -1,0 +1,501 @@
+import { Fault } from '../core'
+import {
+  addressOf,
+  cellOf,
+  isBlank,
+  overlap,
+  sameArea,
+  type Area,
+  type CellValue,
+  type Json,
+  type Patch,
+  type Recovery,
+  type Table,
+  type TableCell,
+  type WritePlan,
+} from '../sheet'
+import { absoluteReference, areasIn, SHEET_COLUMNS, SHEET_ROWS, without } from './addresses'
+import {
+  asText,
+  JOURNAL_KEY,
+  nameSteps,
+  perform,
+  restore,
+  SETTING_PREFIX,
+  settingSteps,
+  slabs,
+  step,
+  surveyGrounds,
+  type Ground,
+  type Journal,
+  type Step,
+} from './journal'
+import { dress, looksOf, pointsOf, surveyLooks, undress } from './looks'
+import { NAME_PREFIX, rangeOf } from './reading'
+import { faultOf, offers, PROTECTED_NEEDS, REQUEST_BYTES, type Request, type Requests } from './requests'
+
+/** Writes to the workbook: every plan happens whole or not at all. */
+export interface Writer {
+  write(plan: WritePlan): Promise<readonly Area[]>
+  recall(): Promise<{ readonly [key: string]: Json }>
+  recover(): Promise<Recovery | null>
+}
+
+/** A patch with the area it fills and what it clears of an earlier table. */
+interface Fill {
+  readonly patch: Patch
+  readonly target: Area
+  readonly leftovers: readonly Area[]
+}
+
+export function openWriter(requests: Requests, expectEcho: (area: Area) => void): Writer {
+  /** settings as last seen or set by us, by full key: lets a refresh journal them without asking */
+  const known = new Map<string, Json>()
+  /** a write could not be undone: its journal is still in the workbook and comes first */
+  let unsettled = false
+  let last: Promise<unknown> = Promise.resolve()
+  /** one write at a time: a second one would overwrite the first one's journal */
+  const inTurn = <T>(work: () => Promise<T>): Promise<T> => {
+    const turn = last.then(work, work)
+    last = turn.catch(() => undefined)
+    return turn
+  }
+
+  /** Does the steps, and puts everything back when that fails. */
+  async function commit(
+    request: Request,
+    place: string,
+    journal: Journal,
+    steps: readonly Step[],
+  ): Promise<void> {
+    const head: Step = {
+      bytes: JSON.stringify(journal).length,
+      run: ({ workbook }) => void workbook.settings.add(JOURNAL_KEY, journal),
+    }
+    const tail = step(({ workbook }) => workbook.settings.getItem(JOURNAL_KEY).delete())
+    try {
+      await perform(request, [head, ...steps, tail], expectEcho)
+    } catch (error) {
+      const fault = faultOf(error, place)
+      unsettled = true
+      try {
+        // a failed batch may leave its context unusable, so this is a batch of its own
+        await requests.run(place, (fresh) => restore(fresh, journal, expectEcho))
+      } catch (second) {
+        throw withCause(
+          new Fault(
+            fault.code,
+            `${fault.found}; putting back what stood there failed too (${faultOf(second, place).found})`,
+            'close and reopen this workbook: the old cells are kept in it and will be put back then',
+          ),
+          fault,
+        )
+      }
+      unsettled = false
+      throw withCause(
+        new Fault(fault.code, `${fault.found} (nothing was changed)`, fault.needed, fault.where),
+        fault,
+      )
+    }
+  }
+
+  function remembered(plan: WritePlan): void {
+    for (const [key, value] of Object.entries(plan.remember ?? {})) known.set(SETTING_PREFIX + key, value)
+  }
+
+  async function refresh(plan: WritePlan, fills: readonly Fill[], place: string): Promise<void> {
+    const remember = prefixed(SETTING_PREFIX, plan.remember)
+    const journal: Journal = {
+      created: null,
+      grounds: fills.map(({ patch, target }) => ({
+        area: target,
+        typed: typedOf(patch.table, patch.seen ?? []),
+        formats: null,
+      })),
+      looks: [],
+      widths: [],
+      names: {},
+      settings: Object.fromEntries(Object.keys(remember).map((key) => [key, known.get(key) ?? null])),
+    }
+    const steps = [
+      ...fills.flatMap(({ patch, target }) => valueSteps(patch.table, target, 'text only')),
+      ...Object.entries(remember).flatMap(([key, value]) =>
+        settingSteps(key, value, (known.get(key) ?? null) !== null),
+      ),
+    ]
+    await requests.run(place, (request) => commit(request, place, journal, steps))
+  }
+
+  async function lay(
+    request: Request,
+    plan: WritePlan,
+    fills: readonly Fill[],
+    place: string,
+  ): Promise<void> {
+    const { context, sync } = request
+    const { worksheets, names, settings } = context.workbook
+    const keep = prefixed(NAME_PREFIX, plan.keep)
+    const remember = prefixed(SETTING_PREFIX, plan.remember)
+
+    const sheetNames = new Set(
+      fills.flatMap(({ target, leftovers }) => [target, ...leftovers].map(({ sheet }) => sheet)),
+    )
+    if (plan.sheet !== undefined) sheetNames.add(plan.sheet)
+    const sheets = new Map(
+      [...sheetNames].map((name) => {
+        const sheet = worksheets.getItemOrNullObject(name)
+        sheet.load('name')
+        sheet.protection.load('protected')
+        return [name, sheet]
+      }),
+    )
+    const nameItems = Object.keys(keep).map(
+      (name) => [name, names.getItemOrNullObject(name).load('formula')] as const,
+    )
+    const settingItems = Object.keys(remember).map(
+      (key) => [key, settings.getItemOrNullObject(key).load('value')] as const,
+    )
+    await sync()
+
+    const there = (sheet: string) => sheets.get(sheet)?.isNullObject === false
+    for (const { target, leftovers } of fills) {
+      if (!there(target.sheet) && target.sheet !== plan.sheet) {
+        throw new Fault('missing', `there is no sheet "${target.sheet}"`, 'choose a sheet of this workbook')
+      }
+      for (const { sheet } of [target, ...leftovers]) {
+        if (there(sheet) && sheets.get(sheet)?.protection.protected) {
+          throw new Fault('protected', `the sheet "${sheet}" is protected`, PROTECTED_NEEDS)
+        }
+      }
+    }
+
+    const onOld = fills
+      .map(({ patch, target, leftovers }) => ({
+        patch,
+        target,
+        areas: [target, ...leftovers].filter(({ sheet }) => there(sheet)),
+      }))
+      .filter(({ areas }) => areas.length > 0)
+    const areas = onOld.flatMap((fill) => fill.areas)
+    const surveyed = await surveyGrounds(request, areas)
+    const spilled = await refuseObstacles(request, onOld, surveyed)
+    const grounds = surveyed.map(({ area, typed, formats }) => ({
+      area,
+      formats,
+      typed: typed.map((row, r) => row.map((entry, c) => (spilled(area, r, c) ? '' : entry))),
+    }))
+    const looks = await surveyLooks(request, areas)
+
+    const columns = fills.flatMap(({ patch, target }) =>
+      patch.table.widths.map((characters, c) => {
+        const area = { ...target, column: target.column + c, columns: 1 }
+        const format = there(target.sheet) ? rangeOf(context, area).format.load('columnWidth') : null
+        return { area, points: pointsOf(characters), format }
+      }),
+    )
+    if (columns.some(({ format }) => format)) await sync()
+    // columns are only made wider: others may have cells in them
+    const wider = columns.filter(({ format, points }) => !format || format.columnWidth < points)
+
+    const makes = plan.sheet !== undefined && !there(plan.sheet) ? plan.sheet : null
+    const journal: Journal = {
+      created:
+        makes === null
+          ? null
+          : {
+              sheet: makes,
+              filled: fills.filter(({ target }) => target.sheet === makes).map(({ target }) => target),
+            },
+      grounds,
+      looks,
+      widths: wider.flatMap(({ area, format }) => (format ? [{ area, points: format.columnWidth }] : [])),
+      names: Object.fromEntries(
+        nameItems.map(([name, item]) => [name, item.isNullObject ? null : String(item.formula)]),
+      ),
+      settings: Object.fromEntries(
+        settingItems.map(([key, item]) => [key, item.isNullObject ? null : (item.value as Json)]),
+      ),
+    }
+
+    const steps: Step[] = [
+      ...(makes === null ? [] : [step(({ workbook }) => void workbook.worksheets.add(makes))]),
+      ...fills.flatMap(({ patch, target, leftovers }) => [
+        ...leftovers
+          .filter(({ sheet }) => there(sheet))
+          .flatMap((area) => clearSteps(area, patch.ours ?? area)),
+        ...valueSteps(patch.table, target, 'all'),
+        ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look, false))),
+      ]),
+      ...wider.map(({ area, points }) =>
+        step((queue) => void (rangeOf(queue, area).format.columnWidth = points)),
+      ),
+      ...nameItems.flatMap(([name, item]) => {
+        const area = keep[name] ?? null
+        return nameSteps(name, area && absoluteReference(area), !item.isNullObject)
+      }),
+      ...settingItems.flatMap(([key, item]) => settingSteps(key, remember[key] ?? null, !item.isNullObject)),
+    ]
+    await commit(request, place, journal, steps)
+  }
+
+  async function settle(request: Request): Promise<Recovery | null> {
+    const item = request.context.workbook.settings.getItemOrNullObject(JOURNAL_KEY).load('value')
+    await request.sync()
+    if (item.isNullObject) return null
+    const journal = item.value as Journal
+    const areas = [...journal.grounds.map(({ area }) => area), ...(journal.created?.filled ?? [])]
+    try {
+      await restore(request, journal, expectEcho)
+    } catch (error) {
+      if (error instanceof Fault && error.code === 'editing') throw error
+      unsettled = true
+      return { outcome: 'failed', areas }
+    }
+    unsettled = false
+    known.clear()
+    return { outcome: 'restored', areas }
+  }
+
+  return {
+    write: (plan) =>
+      inTurn(async () => {
+        const fills = plan.patches.map(fillOf)
+        const place = fills[0] ? addressOf(fills[0].target) : 'this workbook'
+        if (!unsettled && isRefresh(plan, fills, known)) {
+          await refresh(plan, fills, place)
+        } else {
+          await requests.run(place, async (request) => {
+            if (unsettled && (await settle(request))?.outcome === 'failed') {
+              throw new Fault(
+                'host',
+                'an earlier write stopped half way and what stood there could not be put back yet',
+                'close and reopen this workbook, then try again',
+              )
+            }
+            await lay(request, plan, fills, place)
+          })
+        }
+        remembered(plan)
+        return fills.map(({ target }) => target)
+      }),
+
+    recall: () =>
+      requests.run('the settings of this workbook', async ({ context, sync }) => {
+        const { settings } = context.workbook
+        settings.load('items/key,items/value')
+        await sync()
+        known.clear()
+        for (const { key, value } of settings.items) {
+          if (key.startsWith(SETTING_PREFIX) && key !== JOURNAL_KEY) known.set(key, value as Json)
+        }
+        return Object.fromEntries([...known].map(([key, value]) => [key.slice(SETTING_PREFIX.length), value]))
+      }),
+
+    recover: () => inTurn(() => requests.run('this workbook', settle)),
+  }
+}
+
+const withCause = (fault: Fault, cause: Fault): Fault => Object.assign(fault, { cause })
+
+const prefixed = <T>(prefix: string, record: { readonly [key: string]: T } = {}): { [key: string]: T } =>
+  Object.fromEntries(Object.entries(record).map(([key, value]) => [prefix + key, value]))
+
+function fillOf(patch: Patch): Fill {
+  const { table, at, ours } = patch
+  const target: Area = { ...at, rows: table.cells.length, columns: table.cells[0]?.length ?? 0 }
+  if (target.row + target.rows > SHEET_ROWS || target.column + target.columns > SHEET_COLUMNS) {
+    throw new Fault(
+      'selection',
+      `the table of ${target.rows} rows and ${target.columns} columns would reach over the end of the sheet`,
+      'choose a place further up or to the left',
+    )
+  }
+  table.cells.forEach((row, r) =>
+    row.forEach(({ value }, c) => {
+      if (typeof value === 'number' && !Number.isFinite(value)) {
+        throw new Fault(
+          'not-a-number',
+          `${addressOf(cellOf(target, r, c))} would hold ${value}`,
+          'a finite number is needed',
+        )
+      }
+    }),
+  )
+  return { patch, target, leftovers: ours ? without(ours, target) : [] }
+}
+
+/** Whether a plan only sends new values into tables seen a moment ago, small enough for one request. */
+function isRefresh(plan: WritePlan, fills: readonly Fill[], known: ReadonlyMap<string, Json>): boolean {
+  if (plan.sheet !== undefined || Object.keys(plan.keep ?? {}).length > 0 || fills.length === 0) return false
+  if (!Object.keys(plan.remember ?? {}).every((key) => known.has(SETTING_PREFIX + key))) return false
+  const seen = fills.every(
+    ({ patch: { seen, ours }, target }) =>
+      seen?.length === target.rows &&
+      ours &&
+      sameArea(ours, target) &&
+      seen.every((row) => row.length === target.columns),
+  )
+  // new values, and in the journal the old ones
+  return seen && 2 * bytesOf(fills.map(({ patch }) => patch.table)) < REQUEST_BYTES
+}
+
+const bytesOf = (tables: readonly Table[]): number =>
+  tables.reduce(
+    (sum, table) => sum + slabs(valuesOf(table)).reduce((inner, [, , bytes]) => inner + bytes, 0),
+    0,
+  )
+
+const valuesOf = (table: Table): CellValue[][] => table.cells.map((row) => row.map(({ value }) => value))
+
+const isText = ({ value }: TableCell): boolean => typeof value === 'string' && value !== ''
+
+/** What stood in a table of ours, as a journal keeps it: under a text of ours stands text, elsewhere a formula may. */
+const typedOf = (table: Table, seen: readonly (readonly CellValue[])[]): CellValue[][] =>
+  seen.map((row, r) =>
+    row.map((entry, c) => {
+      if (typeof entry !== 'string' || entry === '') return entry
+      const ours = table.cells[r]?.[c]
+      return (ours && isText(ours)) || !entry.startsWith('=') ? `'${entry}` : entry
+    }),
+  )
+
+/**
+ * The steps that fill cells. A text goes into a cell made '@' in the same request, just before, so whatever it begins with and whatever
+ * the user did to the cell's format, it stays text.
+ */
+function valueSteps(table: Table, target: Area, formats: 'all' | 'text only'): Step[] {
+  return slabs(valuesOf(table)).map(([from, rows, bytes]) => {
+    const cells = table.cells.slice(from, from + rows)
+    const place = { ...target, row: target.row + from, rows }
+    return {
+      bytes: 2 * bytes,
+      touches: place,
+      run(context) {
+        const range = rangeOf(context, place)
+        range.numberFormat = cells.map((row) =>
+          row.map((cell) => (isText(cell) ? '@' : formats === 'all' ? cell.format : null)),
+        )
+        range.values = cells.map((row) =>
+          row.map(({ value }) => (typeof value === 'string' ? asText(value) : value)),
+        )
+      },
+    }
+  })
+}
+
+const clearSteps = (area: Area, ours: Area): Step[] => [
+  step((context) => {
+    const range = rangeOf(context, area)
+    range.clear('Contents')
+    range.numberFormat = Array.from({ length: area.rows }, () => Array<string>(area.columns).fill('General'))
+    undress(context, area, ours)
+  }, area),
+]
+
+/**
+ * Refuses to write over what must stay: foreign cells where the user has not agreed, merged cells, results that a formula elsewhere spills.
+ *
+ * @returns whether a cell of a surveyed area shows a result spilled from another cell of it: putting back the formula brings it back
+ */
+async function refuseObstacles(
+  { context, sync }: Request,
+  fills: readonly { readonly patch: Patch; readonly target: Area; readonly areas: readonly Area[] }[],
+  surveyed: readonly (Ground & { readonly values: readonly (readonly CellValue[])[] })[],
+): Promise<(area: Area, row: number, column: number) => boolean> {
+  for (const { patch, target } of fills) {
+    const ground = surveyed.find(({ area }) => sameArea(area, target))
+    if (patch.over === 'blank' && ground) refuseForeign(ground, patch.ours)
+  }
+
+  const asked = surveyed.map((ground) => {
+    const range = rangeOf(context, ground.area)
+    range.load('hasSpill')
+    const merged = offers('1.13') ? range.getMergedAreasOrNullObject() : null
+    merged?.load('address')
+    return { ground, range, merged }
+  })
+  await sync()
+
+  for (const { ground, merged } of asked) {
+    if (!merged || merged.isNullObject) continue
+    const [first] = areasIn(merged.address, ground.area.sheet)
+    throw new Fault(
+      'occupied',
+      `${first ? addressOf(first) : merged.address} is merged and in the way of the table`,
+      'unmerge it or choose another place',
+    )
+  }
+
+  // `hasSpill` is null where some cells have it; a formula spills down and right only, so from outside through the first row or column
+  const spilling = asked.flatMap(({ ground, range }) => {
+    if (range.hasSpill === false) return []
+    const cells = ground.typed.flatMap((row, r) => row.map((entry, c) => ({ r, c, entry })))
+    const isFormula = (entry: CellValue) => typeof entry === 'string' && entry.startsWith('=')
+    const ask = (
+      r: number,
+      c: number,
+      kind: 'getSpillParentOrNullObject' | 'getSpillingToRangeOrNullObject',
+    ) => {
+      const found = rangeOf(context, cellOf(ground.area, r, c))[kind]()
+      found.load('address')
+      return found
+    }
+    return [
+      {
+        ground,
+        parents: cells
+          .filter(({ r, c }) => r === 0 || c === 0)
+          .map(({ r, c }) => ({ r, c, found: ask(r, c, 'getSpillParentOrNullObject') })),
+        spills: cells
+          .filter(({ entry }) => isFormula(entry))
+          .map(({ r, c }) => ({ r, c, found: ask(r, c, 'getSpillingToRangeOrNullObject') })),
+      },
+    ]
+  })
+  if (spilling.length === 0) return () => false
+  await sync()
+
+  const results: { readonly area: Area; readonly anchor: Area }[] = []
+  for (const { ground, parents, spills } of spilling) {
+    for (const { r, c, found } of parents) {
+      const parent = found.isNullObject ? null : areasIn(found.address, ground.area.sheet)[0]
+      if (parent && !overlap(parent, ground.area)) {
+        throw new Fault(
+          'occupied',
+          `${addressOf(cellOf(ground.area, r, c))} shows results of the formula in ${addressOf(parent)}`,
+          'choose another place',
+        )
+      }
+    }
+    for (const { r, c, found } of spills) {
+      const area = found.isNullObject ? null : areasIn(found.address, ground.area.sheet)[0]
+      if (area) results.push({ area, anchor: cellOf(ground.area, r, c) })
+    }
+  }
+  return (area, row, column) => {
+    const cell = cellOf(area, row, column)
+    return results.some((spill) => overlap(spill.area, cell) !== null && !sameArea(spill.anchor, cell))
+  }
+}
+
+function refuseForeign(
+  ground: Ground & { readonly values: readonly (readonly CellValue[])[] },
+  ours: Area | undefined,
+): void {
+  let first: Area | null = null
+  let count = 0
+  ground.typed.forEach((row, r) =>
+    row.forEach((entry, c) => {
+      const cell = cellOf(ground.area, r, c)
+      if ((entry === '' && isBlank(ground.values[r]?.[c])) || (ours && overlap(cell, ours))) return
+      first ??= cell
+      count++
+    }),
+  )
+  if (!first) return
+  throw new Fault(
+    'occupied',
+    `${addressOf(first)}${count > 1 ? ` and ${count - 1} more cells in the way of the table hold` : ' is in the way of the table and holds'} something`,
+    'choose an empty place, or agree to replace what stands there',
+  )
+}
