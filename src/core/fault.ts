@@ -16,6 +16,7 @@ export type FaultCode =
   // cells
   | 'text'
   | 'blank'
+  | 'missing-data'
   | 'cell-error'
   | 'unmatched'
   | 'twice'

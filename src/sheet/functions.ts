@@ -1,0 +1,544 @@
+import {
+  annualise,
+  correlation,
+  covariance,
+  Fault,
+  groupDecomposition,
+  logReturns,
+  simpleReturns,
+  type Decomposition,
+  type RiskModel,
+} from '../core'
+import {
+  cellsOf,
+  columnsNamed,
+  estimatorOf,
+  kindOf,
+  labelKey,
+  labelsOf,
+  panelOf,
+  periodsOf,
+  refuseHiddenBlanks,
+  vectorOf,
+  type Panel,
+} from './blocks'
+import { blockMemo } from './memo'
+import { countOf } from './wording'
+
+/**
+ * The bodies of the worksheet functions. Signatures and comments are what the host shows: the description of each function, its
+ * arguments by the names given here, and a block of cells wherever the type is unknown[][]. Each takes raw cells and returns numbers,
+ * or throws a Fault that names argument, row and column.
+ *
+ * weights and risk, everywhere: weights are one row or one column of n fractions of capital, of any sign and sum. risk is T x n returns
+ * per period (fractions, newest row last), or an n x n covariance matrix; it may carry a first row of names and then also a first
+ * column of dates, and dated rows are put in order. Columns belong to weights by place; BREAKDOWN alone goes by name. Figures come
+ * back per period, or by the year where periods_per_year is given (square root of time), as fractions. Vectors come back in the
+ * orientation of weights. The estimator is "sample" (divisor T-1; the default), "exponential" or "exponential 0.97" (decay factor, 0.94
+ * where none is given; weighted mean taken off, weights scaled to sum 1).
+ *
+ * All are estimates from the numbers given, no advice.
+ */
+
+const keptBlock = blockMemo()
+
+interface Book {
+  readonly panel: Panel
+  readonly model: RiskModel
+  readonly decomposition: Decomposition
+  /** the column of risk that each weight belongs to */
+  readonly columnOf: Int32Array
+  readonly across: boolean
+}
+
+function modelOf(argument: string, risk: unknown, estimator: unknown) {
+  const weighting = estimatorOf(estimator)
+  const kept = keptBlock(argument, cellsOf(argument, risk))
+  if (kept.panel.kind === 'covariance' && weighting.kind !== 'sample') {
+    throw new Fault(
+      'unknown-choice',
+      `found “${weighting.kind}” for a covariance matrix, which has no dates to weight`,
+      'no estimator is needed',
+      { argument: 'estimator' },
+    )
+  }
+  return { kept, weighting }
+}
+
+function bookOf(
+  weights: unknown,
+  risk: unknown,
+  periods: unknown,
+  estimator: unknown,
+  names?: unknown,
+): Book {
+  const { values, across } = vectorOf('weights', weights)
+  const periodsPerYear = periodsOf(periods)
+  const { kept, weighting } = modelOf('risk', risk, estimator)
+  const { panel } = kept
+  const columnOf = names === undefined ? inPlace(values, panel) : byName(values, panel, names)
+  refuseHiddenBlanks('risk', panel, columnOf)
+
+  const placed = new Float64Array(panel.columns)
+  columnOf.forEach((column, k) => (placed[column] = values[k]!))
+  const decomposition = annualise(kept.decomposition(weighting, placed), periodsPerYear)
+  return { panel, model: kept.model(weighting), decomposition, columnOf, across }
+}
+
+function inPlace(weights: Float64Array, panel: Panel): Int32Array {
+  if (weights.length !== panel.columns) {
+    const turned = weights.length === panel.rows ? ' (its rows are as many: TRANSPOSE turns it)' : ''
+    throw new Fault(
+      'shape',
+      `found ${countOf(panel.columns, 'column')} for ${countOf(weights.length, 'weight')}`,
+      `one column for each weight is needed${turned}`,
+      { argument: 'risk' },
+    )
+  }
+  return Int32Array.from(weights, (_, k) => k)
+}
+
+function byName(weights: Float64Array, panel: Panel, names: unknown): Int32Array {
+  const { labels, whereOf } = labelsOf('names', names)
+  if (labels.length !== weights.length) throw uneven('names', 'name', labels.length, weights.length)
+  const told = labels.map((label, k) => {
+    if (label !== null) return label
+    throw new Fault('blank', 'found a blank cell', 'a name is needed', whereOf(k))
+  })
+  return panel.names ? columnsNamed(told, panel.names, whereOf) : inPlace(weights, panel)
+}
+
+const uneven = (argument: string, noun: string, found: number, weights: number): Fault =>
+  new Fault(
+    'shape',
+    `found ${countOf(found, noun)} for ${countOf(weights, 'weight')}`,
+    `one ${noun} for each weight is needed`,
+    {
+      argument,
+    },
+  )
+
+/** A figure that divides by the total risk, or the fault where there is none to divide by. */
+function defined<T>(figure: T | null): T {
+  if (figure !== null) return figure
+  throw new Fault(
+    'zero-risk',
+    'found a portfolio without risk',
+    'a volatility above 0 is needed to divide by',
+    { argument: 'risk' },
+  )
+}
+
+/** What a cell can hold: overflow is a fault rather than an error cell without a reason. */
+function finite(value: number): number {
+  if (Number.isFinite(value)) return value
+  throw new Fault(
+    'out-of-range',
+    `found a result of ${value}`,
+    'numbers small enough for their squares to be held are needed',
+  )
+}
+
+function spilled(values: Float64Array, { columnOf, across }: Book): number[][] {
+  const picked = Array.from(columnOf, (column) => finite(values[column]!))
+  return across ? [picked] : picked.map((value) => [value])
+}
+
+const rowsOf = (values: Float64Array, columns: number): number[][] =>
+  Array.from({ length: values.length / columns }, (_, row) =>
+    Array.from(values.subarray(row * columns, (row + 1) * columns), finite),
+  )
+
+/**
+ * Returns of each period from prices.
+ *
+ * @customfunction RETURNS
+ * @helpurl https://localhost:3000/help.html#returns
+ * @param prices Prices above 0: one row a date, newest last, one column a position; names and dates may come along
+ * @param kind "simple" (the default) or "log"
+ * @returns (T-1) x n returns as fractions, oldest first, without names and dates
+ * @remarks A first row of names and a first column of dates are left out of the result; dated rows are put in order, oldest first.
+ * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "out-of-range" | "twice" | "too-few" | "unknown-choice"
+ * @source common practice, no source
+ * @cost O(T n)
+ * @example returns([[100], [110], [99]]) // [[0.1], [-0.1]]
+ */
+export function returns(prices: unknown[][], kind?: unknown): number[][] {
+  const form = kindOf(kind) === 'log' ? logReturns : simpleReturns
+  const panel = panelOf('prices', cellsOf('prices', prices), 'prices')
+  return rowsOf(form(panel.values, panel.rows, panel.columns), panel.columns)
+}
+
+/**
+ * Covariance matrix of returns.
+ *
+ * @customfunction COVARIANCE
+ * @helpurl https://localhost:3000/help.html#covariance
+ * @param returns Returns as fractions: one row a period, newest last, one column a position; names and dates may come along
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n x n covariances
+ * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "unknown-choice" | "out-of-range"
+ * @source sample: NIST/SEMATECH e-Handbook of Statistical Methods, section 6.5.4.1 (from memory); exponential: J.P. Morgan/Reuters,
+ *         Technical Document, 4th ed. (1996), chapter 5 (from memory), here with the weighted mean taken off
+ * @cost O(T n^2)
+ * @example covarianceMatrix([[.01, .02], [.03, -.02]]) // [[0.0002, -0.0004], [-0.0004, 0.0008]]
+ */
+export function covarianceMatrix(
+  returns: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): number[][] {
+  const periods = periodsOf(periods_per_year)
+  const { kept, weighting } = modelOf('returns', returns, estimator)
+  refuseHiddenBlanks('returns', kept.panel)
+  const matrix = covariance(kept.model(weighting))
+  return rowsOf(
+    matrix.map((value) => value * periods),
+    kept.panel.columns,
+  )
+}
+
+/**
+ * Correlation matrix of returns.
+ *
+ * @customfunction CORRELATION
+ * @helpurl https://localhost:3000/help.html#correlation
+ * @param returns Returns as fractions: one row a period, newest last, one column a position; names and dates may come along
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n x n correlations; blank in the row and column of a position that never moves
+ * @throws Fault as COVARIANCE
+ * @source Pearson correlation: NIST/SEMATECH e-Handbook of Statistical Methods (from memory)
+ * @cost O(T n^2)
+ * @example correlationMatrix([[.04, .03], [.03, .09]]) // [[1, 0.5], [0.5, 1]]
+ */
+export function correlationMatrix(returns: unknown[][], estimator?: unknown): unknown[][] {
+  const { kept, weighting } = modelOf('returns', returns, estimator)
+  refuseHiddenBlanks('returns', kept.panel)
+  const { columns } = kept.panel
+  const matrix = correlation(kept.model(weighting))
+  return Array.from({ length: columns }, (_, row) =>
+    Array.from(matrix.subarray(row * columns, (row + 1) * columns), orBlank),
+  )
+}
+
+/** A riskless position correlates with nothing. */
+const orBlank = (value: number): number | string => (Number.isNaN(value) ? '' : value)
+
+/**
+ * Volatility of the portfolio: the standard deviation of its return.
+ *
+ * @customfunction VOLATILITY
+ * @helpurl https://localhost:3000/help.html#volatility
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns Volatility as a fraction
+ * @remarks s = sqrt(w'C w)
+ * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "not-symmetric" |
+ *         "correlation-matrix" | "negative-variance" | "unknown-choice" | "out-of-range"
+ * @source Markowitz (1952), Portfolio Selection, Journal of Finance 7(1), 77-91 (from memory)
+ * @cost O(T n); on a block seen a moment ago, one comparison of its cells
+ * @example volatility([[.5], [.5]], [[.04, 0], [0, .01]]) // 0.1118
+ */
+export function volatility(
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): number {
+  return finite(bookOf(weights, risk, periods_per_year, estimator).decomposition.volatility)
+}
+
+/**
+ * Stand-alone risk of each position: absolute weight times its own volatility.
+ *
+ * @customfunction STANDALONE
+ * @helpurl https://localhost:3000/help.html#standalone
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n volatilities as fractions
+ * @remarks |w_i| sqrt(C_ii)
+ * @throws Fault as VOLATILITY
+ * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
+ * @cost as VOLATILITY
+ * @example standalone([[.5], [-.5]], [[.04, 0], [0, .01]]) // [[0.1], [0.05]]
+ */
+export function standalone(
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): number[][] {
+  const book = bookOf(weights, risk, periods_per_year, estimator)
+  return spilled(book.decomposition.standAlone, book)
+}
+
+/**
+ * Marginal contribution to risk of each position: how fast volatility rises with its weight.
+ *
+ * @customfunction MARGINAL
+ * @helpurl https://localhost:3000/help.html#marginal
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n fractions of volatility per unit of weight
+ * @remarks (C w)_i / s
+ * @throws Fault as VOLATILITY | "zero-risk"
+ * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
+ * @cost as VOLATILITY
+ * @example marginal([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.17889], [0.04472]]
+ */
+export function marginal(
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): number[][] {
+  const book = bookOf(weights, risk, periods_per_year, estimator)
+  return spilled(defined(book.decomposition.marginal), book)
+}
+
+/**
+ * Contribution to risk of each position; the contributions sum to the volatility.
+ *
+ * @customfunction CONTRIBUTION
+ * @helpurl https://localhost:3000/help.html#contribution
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n fractions; 0 throughout where the portfolio has no risk
+ * @remarks w_i (C w)_i / s
+ * @throws Fault as VOLATILITY
+ * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
+ * @cost as VOLATILITY
+ * @example contribution([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.08944], [0.02236]]
+ */
+export function contribution(
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): number[][] {
+  const book = bookOf(weights, risk, periods_per_year, estimator)
+  return spilled(book.decomposition.contribution, book)
+}
+
+/**
+ * Share of risk of each position; the shares sum to 1. A position 1% larger changes volatility by its share in percent.
+ *
+ * @customfunction RISKSHARE
+ * @helpurl https://localhost:3000/help.html#riskshare
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n fractions; negative for a position that reduces risk
+ * @remarks w_i (C w)_i / s^2
+ * @throws Fault as VOLATILITY | "zero-risk"
+ * @source Qian (2006), On the Financial Interpretation of Risk Contribution, Journal of Investment Management 4(4) (from memory)
+ * @cost as VOLATILITY
+ * @example riskshare([[.5, .5]], [[.04, 0], [0, .01]]) // [[0.8, 0.2]]
+ */
+export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: unknown): number[][] {
+  const book = bookOf(weights, risk, null, estimator)
+  return spilled(defined(book.decomposition.share), book)
+}
+
+/**
+ * Beta of each position to the portfolio; betas times weights sum to 1.
+ *
+ * @customfunction BETA
+ * @helpurl https://localhost:3000/help.html#beta
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns n betas
+ * @remarks (C w)_i / s^2
+ * @throws Fault as VOLATILITY | "zero-risk"
+ * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
+ * @cost as VOLATILITY
+ * @example beta([[.5], [.5]], [[.04, 0], [0, .01]]) // [[1.6], [0.4]]
+ */
+export function beta(weights: unknown[][], risk: unknown[][], estimator?: unknown): number[][] {
+  const book = bookOf(weights, risk, null, estimator)
+  return spilled(defined(book.decomposition.beta), book)
+}
+
+/**
+ * Diversification ratio: sum of the stand-alone risks over the volatility of the portfolio.
+ *
+ * @customfunction DIVERSIFICATION
+ * @helpurl https://localhost:3000/help.html#diversification
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns One number, at least 1
+ * @remarks sum of |w_i| sqrt(C_ii) / s
+ * @throws Fault as VOLATILITY | "zero-risk"
+ * @source Choueifaty & Coignard (2008), Toward Maximum Diversification, JPM 35(1) (from memory); here with absolute weights
+ * @cost as VOLATILITY
+ * @example diversification([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.34164
+ */
+export function diversification(weights: unknown[][], risk: unknown[][], estimator?: unknown): number {
+  return finite(defined(bookOf(weights, risk, null, estimator).decomposition.diversificationRatio))
+}
+
+/**
+ * Effective number of positions by risk: how many positions of equal share of risk would be as concentrated.
+ *
+ * @customfunction EFFECTIVE
+ * @helpurl https://localhost:3000/help.html#effective
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns One number; below 1 where large shares of risk offset each other
+ * @remarks 1 / sum of squared shares of risk
+ * @throws Fault as VOLATILITY | "zero-risk"
+ * @source Herfindahl index of the shares, after Meucci (2009), Managing Diversification, Risk 22(5), 74-79 (from memory)
+ * @cost as VOLATILITY
+ * @example effective([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.47059
+ */
+export function effective(weights: unknown[][], risk: unknown[][], estimator?: unknown): number {
+  return finite(defined(bookOf(weights, risk, null, estimator).decomposition.effectiveNumber))
+}
+
+/** Where the portfolio has no risk, whatever would divide by it. */
+const UNDEFINED = 'not defined'
+
+/**
+ * Table of risk by position, with headings and a total.
+ *
+ * @customfunction BREAKDOWN
+ * @helpurl https://localhost:3000/help.html#breakdown
+ * @param names Names of the positions: one row or one column
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a position) or a covariance matrix, with or without a first row of names
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns (n+2) x 8: headings, one row a position, total
+ * @remarks Names find their columns by the first row of risk where it has one (case and spacing do not count; columns that are not held may be
+ * there), else by place. The total of the stand-alone column is the sum before diversification, that of the contributions the
+ * volatility of the portfolio. A correlation with a position that never moves is blank.
+ * @throws Fault as VOLATILITY | "unmatched"
+ * @source Tasche (2008), arXiv:0708.2542; Maillard, Roncalli & Teiletche (2010), JPM 36(4)
+ * @cost as VOLATILITY
+ * @example breakdown([['A'], ['B']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['A', 0.5, 0.1, 0.17889, 0.08944, 0.8, 1.6, 0.89443]
+ */
+export function breakdown(
+  names: unknown[][],
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): unknown[][] {
+  const { decomposition: d, columnOf } = bookOf(weights, risk, periods_per_year, estimator, names ?? null)
+  const { labels } = labelsOf('names', names)
+  const rows = Array.from(columnOf, (column, k) => [
+    labels[k],
+    d.weights[column]!,
+    finite(d.standAlone[column]!),
+    d.marginal ? finite(d.marginal[column]!) : UNDEFINED,
+    finite(d.contribution[column]!),
+    d.share ? finite(d.share[column]!) : UNDEFINED,
+    d.beta ? finite(d.beta[column]!) : UNDEFINED,
+    d.correlation ? orBlank(d.correlation[column]!) : UNDEFINED,
+  ])
+  return [
+    [
+      'Name',
+      'Weight',
+      'Stand-alone risk',
+      'Marginal contribution to risk',
+      'Contribution to risk',
+      'Share of risk',
+      'Beta to portfolio',
+      'Correlation with portfolio',
+    ],
+    ...rows,
+    [
+      'Total',
+      sum(d.weights),
+      sum(d.standAlone),
+      '',
+      finite(d.volatility),
+      d.share ? sum(d.share) : UNDEFINED,
+      '',
+      '',
+    ],
+  ]
+}
+
+/**
+ * Table of risk by group, with headings and a total.
+ *
+ * @customfunction GROUPED
+ * @helpurl https://localhost:3000/help.html#grouped
+ * @param groups Group of each position: one row or one column
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
+ * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @returns (g+2) x 5: headings, one row a group, total
+ * @remarks Groups stand in the order of their first position; case and spacing do not tell groups apart; positions without a group stand
+ * together as "(no group)". A group's stand-alone risk is the volatility of its positions held alone; the total of that column is the
+ * sum before diversification between groups, that of the contributions the volatility of the portfolio.
+ * @throws Fault as VOLATILITY
+ * @source Coleman & Litterman (2012), Quantitative Risk Management, appendix 10.1 (from memory)
+ * @cost as VOLATILITY, and one pass of the returns for each group
+ * @example grouped([['X'], ['X']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['X', 1, 0.1118, 0.1118, 1]
+ */
+export function grouped(
+  groups: unknown[][],
+  weights: unknown[][],
+  risk: unknown[][],
+  periods_per_year?: unknown,
+  estimator?: unknown,
+): unknown[][] {
+  const { labels } = labelsOf('groups', groups)
+  const { decomposition: d, model } = bookOf(weights, risk, periods_per_year, estimator)
+  if (labels.length !== d.weights.length) throw uneven('groups', 'group', labels.length, d.weights.length)
+  const shown: string[] = []
+  const known = new Map<string | null, number>()
+  const groupOf = Int32Array.from(labels, (label) => {
+    const key = label === null ? null : labelKey(label)
+    const group = known.get(key) ?? shown.push(label ?? '(no group)') - 1
+    known.set(key, group)
+    return group
+  })
+  const g = groupDecomposition(model, d, groupOf, shown.length)
+  return [
+    ['Group', 'Weight', 'Stand-alone risk', 'Contribution to risk', 'Share of risk'],
+    ...shown.map((label, k) => [
+      label,
+      g.weight[k]!,
+      finite(g.standAlone[k]!),
+      finite(g.contribution[k]!),
+      g.share ? finite(g.share[k]!) : UNDEFINED,
+    ]),
+    ['Total', sum(g.weight), sum(g.standAlone), finite(d.volatility), g.share ? sum(g.share) : UNDEFINED],
+  ]
+}
+
+const sum = (values: Float64Array): number => finite(values.reduce((total, value) => total + value, 0))
+
+/** Every worksheet function by its id. */
+export const worksheetFunctions: Readonly<Record<string, (...args: never[]) => unknown>> = {
+  RETURNS: returns,
+  COVARIANCE: covarianceMatrix,
+  CORRELATION: correlationMatrix,
+  VOLATILITY: volatility,
+  STANDALONE: standalone,
+  MARGINAL: marginal,
+  CONTRIBUTION: contribution,
+  RISKSHARE: riskshare,
+  BETA: beta,
+  DIVERSIFICATION: diversification,
+  EFFECTIVE: effective,
+  BREAKDOWN: breakdown,
+  GROUPED: grouped,
+}
