@@ -1,7 +1,8 @@
-import js from '@eslint/js'
-import { defineConfig } from 'eslint/config'
-import tseslint from 'typescript-eslint'
-import wall from './wall.cjs'
+const js = require('@eslint/js')
+const { defineConfig } = require('eslint/config')
+const reactHooks = require('eslint-plugin-react-hooks')
+const tseslint = require('typescript-eslint')
+const wall = require('./wall.cjs')
 
 const globalsOf = (...names) => Object.fromEntries(names.map((name) => [name, 'readonly']))
 const node = globalsOf(
@@ -20,7 +21,7 @@ const commonjs = globalsOf('require', 'module', 'exports', '__dirname', '__filen
 const hostGlobals = ['Excel', 'Office', 'OfficeExtension', 'CustomFunctions']
 const onlyExcel = 'Only src/excel speaks to the host; go through its door.'
 
-export default defineConfig(
+module.exports = defineConfig(
   { ignores: ['dist/**', 'test/reference/data/**'] },
   { linterOptions: { reportUnusedDisableDirectives: 'error' } },
   js.configs.recommended,
@@ -38,7 +39,11 @@ export default defineConfig(
       '@typescript-eslint/prefer-for-of': 'off',
       // An index into a typed array that a loop bound proves is written a[i]!; noUncheckedIndexedAccess asks for it.
       '@typescript-eslint/no-non-null-assertion': 'off',
-      eqeqeq: ['error', 'always'],
+      eqeqeq: ['error', 'always', { null: 'ignore' }],
+      '@typescript-eslint/triple-slash-reference': [
+        'error',
+        { lib: 'never', path: 'always', types: 'never' },
+      ],
       'no-var': 'error',
       'prefer-const': 'error',
     },
@@ -62,13 +67,14 @@ export default defineConfig(
       'no-restricted-globals': ['error', ...hostGlobals.map((name) => ({ name, message: onlyExcel }))],
       'no-restricted-syntax': [
         'error',
-        {
-          selector: `MemberExpression[object.name=/^(globalThis|window|self)$/][property.name=/^(${hostGlobals.join('|')})$/]`,
-          message: onlyExcel,
-        },
+        ...[
+          `MemberExpression[object.name=/^(globalThis|window|self)$/][property.name=/^(${hostGlobals.join('|')})$/]`,
+          `TSQualifiedName[left.name=/^(${hostGlobals.join('|')})$/]`,
+        ].map((selector) => ({ selector, message: onlyExcel })),
       ],
     },
   },
+  { files: ['src/pane/**/*.{ts,tsx}'], extends: [reactHooks.configs.flat.recommended] },
   {
     // Promises that nobody waits for lose their errors: the one check here that needs types.
     files: ['src/{sheet,excel,pane,entry,desk}/**/*.{ts,tsx}'],
