@@ -1,0 +1,218 @@
+import { useState, type ReactNode } from 'react'
+import { Button, Field, Input, makeStyles, mergeClasses, Select, tokens } from '@fluentui/react-components'
+
+const useStyles = makeStyles({
+  section: { display: 'grid', rowGap: tokens.spacingVerticalS, minWidth: 0 },
+  head: {
+    display: 'flex',
+    alignItems: 'center',
+    justifyContent: 'space-between',
+    columnGap: tokens.spacingHorizontalS,
+    minHeight: '28px',
+  },
+  title: {
+    margin: 0,
+    fontSize: tokens.fontSizeBase400,
+    lineHeight: tokens.lineHeightBase400,
+    fontWeight: tokens.fontWeightSemibold,
+  },
+  small: { fontSize: tokens.fontSizeBase300, lineHeight: tokens.lineHeightBase300 },
+  disclosure: { fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
+  summary: {
+    cursor: 'pointer',
+    paddingTop: tokens.spacingVerticalXXS,
+    paddingBottom: tokens.spacingVerticalXXS,
+    color: tokens.colorNeutralForeground2,
+    borderRadius: tokens.borderRadiusSmall,
+    ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '1px' },
+  },
+  inside: { paddingTop: tokens.spacingVerticalS },
+  control: { minWidth: 0, width: '100%' },
+  date: { colorScheme: 'light dark' },
+})
+
+/** A part of a view under its own heading, with at most one action at the heading's right. */
+export function Section({
+  title,
+  level = 2,
+  action,
+  children,
+}: {
+  title: string
+  level?: 2 | 3
+  action?: ReactNode
+  children: ReactNode
+}) {
+  const classes = useStyles()
+  const Heading = level === 2 ? 'h2' : 'h3'
+  return (
+    <section className={classes.section} aria-label={title}>
+      <div className={classes.head}>
+        <Heading className={mergeClasses(classes.title, level === 3 && classes.small)}>{title}</Heading>
+        {action}
+      </div>
+      {children}
+    </section>
+  )
+}
+
+/** Details one may open; `open` is only where it starts. */
+export function Disclosure({ summary, open, children }: { summary: ReactNode; open: boolean; children: ReactNode }) {
+  const classes = useStyles()
+  const [opened, setOpened] = useState(open)
+  return (
+    <details className={classes.disclosure} open={opened} onToggle={(event) => setOpened(event.currentTarget.open)}>
+      <summary className={classes.summary}>{summary}</summary>
+      <div className={classes.inside}>{children}</div>
+    </details>
+  )
+}
+
+/** A choice of one among a few, with the sentence of a fault below it. */
+export function Choice<T extends string>({
+  label,
+  value,
+  choices,
+  hint,
+  fault,
+  choose,
+}: {
+  label: string
+  value: T
+  choices: readonly (readonly [T, string])[]
+  hint?: string | undefined
+  fault?: string | undefined
+  choose: (value: T) => void
+}) {
+  const classes = useStyles()
+  return (
+    <Field label={label} size="small" hint={hint ?? null} validationMessage={fault ?? null}>
+      <Select
+        size="small"
+        className={classes.control}
+        value={value}
+        onChange={(_, data) => {
+          const chosen = choices.find(([choice]) => choice === data.value)
+          if (chosen) choose(chosen[0])
+        }}
+      >
+        {choices.map(([choice, text]) => (
+          <option key={choice} value={choice}>
+            {text}
+          </option>
+        ))}
+      </Select>
+    </Field>
+  )
+}
+
+/**
+ * A line of text that is handed over when the field is left or Enter pressed, not at every key: each change may cost a reading of the
+ * sheet. `read` turns the text into a value or answers with what is needed; Escape takes back what was typed.
+ */
+export function Entry<T>({
+  label,
+  shown,
+  hint,
+  fault,
+  type = 'text',
+  read,
+  commit,
+}: {
+  label: string
+  /** the value that holds, as text */
+  shown: string
+  hint?: string | undefined
+  fault?: string | undefined
+  type?: 'text' | 'date'
+  read: (text: string) => { readonly value: T } | { readonly needed: string }
+  commit: (value: T) => void
+}) {
+  const classes = useStyles()
+  const [draft, setDraft] = useState<string | null>(null)
+  const [needed, setNeeded] = useState<string | null>(null)
+  const finish = (): void => {
+    if (draft === null) return
+    const outcome = read(draft.trim())
+    if ('needed' in outcome) return setNeeded(outcome.needed)
+    setDraft(null)
+    setNeeded(null)
+    if (draft.trim() !== shown) commit(outcome.value)
+  }
+  return (
+    <Field label={label} size="small" hint={hint ?? null} validationMessage={needed ?? fault ?? null}>
+      <Input
+        size="small"
+        className={classes.control}
+        input={type === 'date' ? { className: classes.date } : {}}
+        type={type}
+        inputMode={type === 'text' ? 'decimal' : undefined}
+        autoComplete="off"
+        value={draft ?? shown}
+        onChange={(_, data) => setDraft(data.value)}
+        onBlur={finish}
+        onKeyDown={(event) => {
+          if (event.key === 'Enter' && !event.ctrlKey && !event.metaKey) finish()
+          if (event.key === 'Escape') {
+            setDraft(null)
+            setNeeded(null)
+          }
+        }}
+      />
+    </Field>
+  )
+}
+
+/** A number typed with a point or a comma before its decimals; null when it is none. */
+export function typedNumber(text: string): number | null {
+  const plain = text.replace(/\s/g, '').replace(/^(-?\d*),(\d+)$/, '$1.$2')
+  const value = plain === '' ? NaN : Number(plain)
+  return Number.isFinite(value) ? value : null
+}
+
+/** A button that asks once more in its own place before it acts: hosts block the browser's questions. */
+export function AskedButton({
+  children,
+  question,
+  yes,
+  act,
+}: {
+  children: string
+  question: string
+  yes: string
+  act: () => void
+}) {
+  const [asking, setAsking] = useState(false)
+  // The button that comes back takes the focus its answer had; at first nothing takes any.
+  const [asked, setAsked] = useState(false)
+  return asking ? (
+    <div role="group" aria-label={question}>
+      <div>{question}</div>
+      <Button
+        autoFocus
+        size="small"
+        onClick={() => {
+          setAsking(false)
+          act()
+        }}
+      >
+        {yes}
+      </Button>{' '}
+      <Button size="small" appearance="subtle" onClick={() => setAsking(false)}>
+        Keep it
+      </Button>
+    </div>
+  ) : (
+    <Button
+      autoFocus={asked}
+      size="small"
+      appearance="subtle"
+      onClick={() => {
+        setAsked(true)
+        setAsking(true)
+      }}
+    >
+      {children}
+    </Button>
+  )
+}

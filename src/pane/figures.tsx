@@ -1,0 +1,96 @@
+import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
+import { countOf, dateText, numberText, percentText, type Breakdown } from '../sheet'
+import { Disclosure } from './controls'
+import { Findings } from './place'
+
+const useStyles = makeStyles({
+  block: { display: 'grid', rowGap: tokens.spacingVerticalM, minWidth: 0 },
+  pair: { display: 'grid', gridTemplateColumns: '1fr 1fr', columnGap: tokens.spacingHorizontalL, margin: 0 },
+  figure: { display: 'flex', flexDirection: 'column', minWidth: 0 },
+  label: {
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    color: tokens.colorNeutralForeground2,
+  },
+  value: { margin: 0, fontVariantNumeric: 'tabular-nums', fontWeight: tokens.fontWeightSemibold },
+  big: { fontSize: tokens.fontSizeHero800, lineHeight: tokens.lineHeightHero800 },
+  beside: { fontSize: tokens.fontSizeBase600, lineHeight: tokens.lineHeightHero800 },
+  rows: { margin: 0, display: 'grid' },
+  row: {
+    display: 'flex',
+    justifyContent: 'space-between',
+    alignItems: 'baseline',
+    columnGap: tokens.spacingHorizontalM,
+    padding: `${tokens.spacingVerticalXS} 0`,
+    borderTop: `1px solid ${tokens.colorNeutralStroke2}`,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+  },
+  setting: { textAlign: 'right', color: tokens.colorNeutralForeground2, overflowWrap: 'anywhere', margin: 0 },
+  settingLabel: { flexShrink: 0, maxWidth: '50%' },
+})
+
+const NONE = '–'
+
+function datesLine(dates: Breakdown['dates']): string {
+  if (!dates) return 'from a covariance matrix'
+  const { used, dropped, first, last } = dates
+  const span = first !== null && last !== null ? `, ${dateText(first)} to ${dateText(last)}` : ''
+  const left = dropped > 0 ? `; ${dropped} left out` : ''
+  return `${countOf(used, 'date')}${span}${left}`
+}
+
+/** The portfolio's own figures, with what they rest on. */
+export function Figures({ breakdown }: { breakdown: Breakdown }) {
+  const classes = useStyles()
+  const { decomposition: d, expectedReturn, effectiveWithheld } = breakdown
+  const rows: readonly (readonly [label: string, value: string, remark?: string | null])[] = [
+    ['Diversification benefit', percentText(d.diversificationBenefit, 2)],
+    ['Diversification ratio', d.diversificationRatio === null ? NONE : numberText(d.diversificationRatio, 2)],
+    [
+      'Effective number of positions (by risk)',
+      d.effectiveNumber === null || effectiveWithheld !== null ? NONE : numberText(d.effectiveNumber, 1),
+      effectiveWithheld,
+    ],
+    ['Net weight', percentText(breakdown.net, 1)],
+    ['Gross weight', percentText(breakdown.gross, 1)],
+  ]
+  return (
+    <div className={classes.block}>
+      <dl className={classes.pair}>
+        <div className={classes.figure}>
+          <dt className={classes.label}>Volatility {breakdown.horizon}</dt>
+          <dd className={mergeClasses(classes.value, classes.big)}>{percentText(d.volatility, 2)}</dd>
+        </div>
+        {expectedReturn && (
+          <div className={classes.figure}>
+            <dt className={classes.label}>{expectedReturn.label}</dt>
+            <dd className={mergeClasses(classes.value, classes.beside)}>{percentText(expectedReturn.value, 2)}</dd>
+          </div>
+        )}
+      </dl>
+      <dl className={classes.rows}>
+        {rows.map(([label, value, remark]) => (
+          <div key={label} className={classes.row}>
+            <dt>
+              {label}
+              {remark && <div className={classes.label}>{remark}</div>}
+            </dt>
+            <dd className={classes.value}>{value}</dd>
+          </div>
+        ))}
+      </dl>
+      <Findings findings={breakdown.findings} label="About these figures" />
+      <Disclosure summary={`Settings: ${datesLine(breakdown.dates)}`} open={false}>
+        <dl className={classes.rows}>
+          {breakdown.settings.map(([label, value]) => (
+            <div key={label} className={classes.row}>
+              <dt className={classes.settingLabel}>{label}</dt>
+              <dd className={classes.setting}>{value}</dd>
+            </div>
+          ))}
+        </dl>
+      </Disclosure>
+    </div>
+  )
+}

@@ -1,0 +1,2 @@
+export { openPane, type PaneHost } from './pane'
+export type { HostTheme } from './theme'

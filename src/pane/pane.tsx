@@ -1,0 +1,252 @@
+import { StrictMode, useState, type KeyboardEvent } from 'react'
+import { createRoot } from 'react-dom/client'
+import {
+  Button,
+  FluentProvider,
+  makeStyles,
+  MessageBar,
+  MessageBarActions,
+  MessageBarBody,
+  Select,
+  Tab,
+  TabList,
+  tokens,
+} from '@fluentui/react-components'
+import { Dismiss16Regular } from '@fluentui/react-icons'
+import { CAUTION, type Books } from '../sheet'
+import { DataView } from './data'
+import { ReportView } from './report'
+import { RiskView } from './risk'
+import { StatusLine } from './status'
+import { BooksProvider, useBooks, useBooksState } from './store'
+import { useTheme, type HostTheme } from './theme'
+
+/** What the pane asks of the host it stands in. */
+export interface PaneHost {
+  /** what the host says about its colours; null where it says nothing */
+  theme(): HostTheme | null
+  /** @returns a function that ends the watch */
+  onThemeChange(listener: () => void): () => void
+  readonly version: string
+}
+
+const useStyles = makeStyles({
+  provider: { height: '100%' },
+  pane: {
+    height: '100%',
+    minWidth: '300px',
+    display: 'grid',
+    gridTemplateRows: 'auto auto minmax(0, 1fr) auto auto',
+    fontSize: tokens.fontSizeBase300,
+    lineHeight: tokens.lineHeightBase300,
+    color: tokens.colorNeutralForeground1,
+    backgroundColor: tokens.colorNeutralBackground1,
+  },
+  books: { padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM} 0` },
+  title: { position: 'absolute', width: '1px', height: '1px', overflow: 'hidden', clipPath: 'inset(50%)', margin: 0 },
+  main: { minHeight: 0 },
+  view: {
+    boxSizing: 'border-box',
+    height: '100%',
+    overflowY: 'auto',
+    // The room of the scroll bar is kept, so that a longer view does not narrow what is read.
+    scrollbarGutter: 'stable',
+    scrollbarWidth: 'thin',
+    padding: `${tokens.spacingVerticalL} ${tokens.spacingHorizontalS} ${tokens.spacingVerticalXXL} ${tokens.spacingHorizontalL}`,
+    ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '-2px' },
+  },
+  // Docked below the view: when a message comes, nothing that is being read or pressed moves.
+  messages: { display: 'grid', maxHeight: '40vh', overflowY: 'auto' },
+  message: { borderRadius: 0, borderLeftWidth: 0, borderRightWidth: 0, borderBottomWidth: 0 },
+  foot: {
+    display: 'flex',
+    justifyContent: 'space-between',
+    alignItems: 'end',
+    columnGap: tokens.spacingHorizontalM,
+    padding: `${tokens.spacingVerticalXS} ${tokens.spacingHorizontalM}`,
+    borderTop: `1px solid ${tokens.colorNeutralStroke2}`,
+    fontSize: tokens.fontSizeBase100,
+    lineHeight: tokens.lineHeightBase100,
+    color: tokens.colorNeutralForeground3,
+  },
+  version: { flexShrink: 0 },
+})
+
+const VIEWS = { data: 'Data', risk: 'Risk', report: 'Report' } as const
+type View = keyof typeof VIEWS
+
+function BookPicker() {
+  const books = useBooks()
+  const classes = useStyles()
+  const state = useBooksState()
+  if (state.books.length < 2) return null
+  return (
+    <div className={classes.books}>
+      <Select
+        size="small"
+        aria-label="Book"
+        value={state.current}
+        onChange={(_, { value }) => void books.switchTo(value)}
+      >
+        {state.books.map(({ id, title }) => (
+          <option key={id} value={id}>
+            {title}
+          </option>
+        ))}
+      </Select>
+    </div>
+  )
+}
+
+/** What just happened and what could be done: never a dialog, never in the way of the keyboard. */
+function Messages() {
+  const classes = useStyles()
+  const { notice, offers } = useBooksState()
+  const [dismissed, setDismissed] = useState<string | null>(null)
+  return (
+    <div className={classes.messages} aria-live="polite">
+      {offers.map((offer, index) => (
+        <MessageBar key={`${index} ${offer.sentence}`} intent="warning" layout="multiline" className={classes.message}>
+          <MessageBarBody>{offer.sentence}</MessageBarBody>
+          <MessageBarActions>
+            <Button size="small" onClick={() => void offer.accept()}>
+              {offer.button}
+            </Button>
+            <Button size="small" appearance="subtle" onClick={() => offer.decline()}>
+              Not now
+            </Button>
+          </MessageBarActions>
+        </MessageBar>
+      ))}
+      {notice !== null && notice !== dismissed && (
+        <MessageBar key={notice} intent="info" layout="multiline" className={classes.message}>
+          <MessageBarBody>{notice}</MessageBarBody>
+          <MessageBarActions
+            containerAction={
+              <Button
+                size="small"
+                appearance="transparent"
+                aria-label="Dismiss"
+                icon={<Dismiss16Regular />}
+                onClick={() => setDismissed(notice)}
+              />
+            }
+          />
+        </MessageBar>
+      )}
+    </div>
+  )
+}
+
+/**
+ * The row of tabs. Fluent's own arrow keys set hidden focus stops around a tab list, which screen readers' checkers rightly report, so
+ * its hook is taken off and the arrows are ours: they move and show at once, as showing a view costs nothing.
+ */
+function Views({ view, show }: { view: View; show: (view: View) => void }) {
+  const step = (event: KeyboardEvent): void => {
+    const views = Object.keys(VIEWS) as View[]
+    const at = views.indexOf(view)
+    const places: { readonly [key: string]: number } = {
+      ArrowRight: (at + 1) % views.length,
+      ArrowLeft: (at + views.length - 1) % views.length,
+      Home: 0,
+      End: views.length - 1,
+    }
+    const next = views[places[event.key] ?? -1]
+    if (!next) return
+    event.preventDefault()
+    show(next)
+    document.getElementById(`tab-${next}`)?.focus()
+  }
+  return (
+    <TabList
+      data-tabster={undefined}
+      aria-label="Views"
+      selectedValue={view}
+      onTabSelect={(_, { value }) => {
+        if (value === 'data' || value === 'risk' || value === 'report') show(value)
+      }}
+      onKeyDown={step}
+    >
+      {Object.entries(VIEWS).map(([key, label]) => (
+        <Tab key={key} id={`tab-${key}`} value={key} tabIndex={key === view ? 0 : -1} aria-controls="view">
+          {label}
+        </Tab>
+      ))}
+    </TabList>
+  )
+}
+
+function Pane({ version }: { version: string }) {
+  const books = useBooks()
+  const classes = useStyles()
+  const { holdings, returns, breakdown, working } = useBooksState()
+  const [view, setView] = useState<View>(breakdown ? 'risk' : 'data')
+  const canCompute = holdings !== null && returns !== null && working === null
+  const compute = async (): Promise<void> => {
+    if (!canCompute) return
+    await books.compute()
+    const { status, breakdown } = books.state()
+    if (breakdown && status.kind === 'up to date') setView((current) => (current === 'data' ? 'risk' : current))
+  }
+  return (
+    <div
+      className={classes.pane}
+      onKeyDown={(event) => {
+        if (event.key === 'Enter' && (event.ctrlKey || event.metaKey)) {
+          event.preventDefault()
+          void compute()
+        }
+      }}
+    >
+      <header>
+        <h1 className={classes.title}>Counterpoise</h1>
+        <BookPicker />
+        <Views view={view} show={setView} />
+      </header>
+      <StatusLine compute={() => void compute()} canCompute={canCompute} />
+      <main className={classes.main}>
+        <div id="view" role="tabpanel" aria-labelledby={`tab-${view}`} className={classes.view} tabIndex={0}>
+          {view === 'data' && <DataView />}
+          {view === 'risk' && <RiskView />}
+          {view === 'report' && <ReportView />}
+        </div>
+      </main>
+      <Messages />
+      <footer className={classes.foot}>
+        <span>{CAUTION}</span>
+        <span className={classes.version}>Version {version}</span>
+      </footer>
+    </div>
+  )
+}
+
+function ThemedPane({ books, host }: { books: Books; host: PaneHost }) {
+  const classes = useStyles()
+  const theme = useTheme(
+    () => host.theme(),
+    (listener) => host.onThemeChange(listener),
+  )
+  return (
+    <FluentProvider theme={theme} className={classes.provider}>
+      <BooksProvider books={books}>
+        <Pane version={host.version} />
+      </BooksProvider>
+    </FluentProvider>
+  )
+}
+
+/**
+ * Draws the task pane into an element and keeps it in step with the books until the returned function is called.
+ *
+ * @param root  fills the pane's whole height; what stands in it is replaced
+ */
+export function openPane(root: HTMLElement, books: Books, host: PaneHost): () => void {
+  const drawn = createRoot(root)
+  drawn.render(
+    <StrictMode>
+      <ThemedPane books={books} host={host} />
+    </StrictMode>,
+  )
+  return () => drawn.unmount()
+}

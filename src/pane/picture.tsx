@@ -1,0 +1,289 @@
+import { useId, useLayoutEffect, useRef, useState, type KeyboardEvent } from 'react'
+import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
+// Fluent's own charts draw one bar a category along a horizontal axis and have no hatching; these primitives over d3's scales draw
+// the pair of signed bars and the pattern, and leave the text to the page, where it wraps and is read aloud.
+import { PatternLines } from '@visx/pattern'
+import { scaleLinear } from '@visx/scale'
+import { Bar } from '@visx/shape'
+import { percentText, type Breakdown } from '../sheet'
+import { digitsFor, type Measure } from './measure'
+
+const useStyles = makeStyles({
+  picture: { position: 'relative', minWidth: 0 },
+  head: {
+    display: 'grid',
+    gridTemplateColumns: 'minmax(0, 1fr) 72px 72px',
+    columnGap: tokens.spacingHorizontalS,
+    alignItems: 'end',
+    padding: `0 ${tokens.spacingHorizontalXS} ${tokens.spacingVerticalXS}`,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    color: tokens.colorNeutralForeground2,
+    textAlign: 'right',
+  },
+  key: { display: 'flex', flexDirection: 'column', alignItems: 'flex-end', rowGap: tokens.spacingVerticalXXS },
+  row: {
+    display: 'grid',
+    gridTemplateColumns: 'minmax(0, 1fr) 72px 72px',
+    columnGap: tokens.spacingHorizontalS,
+    padding: `${tokens.spacingVerticalXXS} ${tokens.spacingHorizontalXS} ${tokens.spacingVerticalXS}`,
+    borderRadius: tokens.borderRadiusSmall,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    cursor: 'pointer',
+    ':hover': { backgroundColor: tokens.colorSubtleBackgroundHover },
+    ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '-2px' },
+  },
+  selected: {
+    backgroundColor: tokens.colorSubtleBackgroundSelected,
+    boxShadow: `inset 2px 0 0 ${tokens.colorBrandStroke1}`,
+    forcedColorAdjust: 'preserve-parent-color',
+    '@media (forced-colors: active)': { outline: '1px solid Highlight' },
+  },
+  name: { overflow: 'hidden', textOverflow: 'ellipsis', whiteSpace: 'nowrap' },
+  number: { textAlign: 'right', fontVariantNumeric: 'tabular-nums' },
+  leading: { fontWeight: tokens.fontWeightSemibold },
+  drawing: { gridColumn: '1 / -1', display: 'block', marginTop: '2px', overflow: 'visible' },
+  heading: {
+    display: 'flex',
+    alignItems: 'center',
+    columnGap: tokens.spacingHorizontalS,
+    padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalXS} ${tokens.spacingVerticalXXS}`,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    fontWeight: tokens.fontWeightSemibold,
+    color: tokens.colorNeutralForeground2,
+  },
+  others: {
+    width: '100%',
+    border: 'none',
+    background: 'none',
+    color: tokens.colorNeutralForeground2,
+    fontFamily: 'inherit',
+    textAlign: 'left',
+    borderTop: `1px dashed ${tokens.colorNeutralStroke1}`,
+    borderBottom: `1px dashed ${tokens.colorNeutralStroke1}`,
+  },
+  more: { color: tokens.colorBrandForegroundLink, textDecorationLine: 'underline' },
+  defs: { position: 'absolute', width: 0, height: 0 },
+  zero: { stroke: tokens.colorNeutralStrokeAccessible, '@media (forced-colors: active)': { stroke: 'CanvasText' } },
+  weight: {
+    fill: tokens.colorNeutralStroke1,
+    stroke: tokens.colorNeutralStrokeAccessible,
+    '@media (forced-colors: active)': { fill: 'Canvas', stroke: 'CanvasText' },
+  },
+  share: {
+    fill: tokens.colorBrandForeground1,
+    stroke: tokens.colorBrandForeground1,
+    '@media (forced-colors: active)': { fill: 'Highlight', stroke: 'Highlight' },
+  },
+  reducing: {
+    stroke: tokens.colorBrandForeground1,
+    '@media (forced-colors: active)': { stroke: 'Highlight' },
+  },
+})
+
+/** Positions that are all drawn without folding the middle away. */
+const ALL = 18
+const TOP = 10
+const BOTTOM = 5
+const STEP = 200
+
+/** The width of an element, followed as the pane is resized. */
+function useWidth() {
+  const element = useRef<HTMLDivElement>(null)
+  const [width, setWidth] = useState(0)
+  useLayoutEffect(() => {
+    const watched = element.current
+    if (!watched) return
+    const observer = new ResizeObserver(() => setWidth(watched.clientWidth))
+    observer.observe(watched)
+    return () => observer.disconnect()
+  }, [])
+  return { element, width }
+}
+
+interface Pair {
+  readonly weight: number
+  readonly risk: number
+}
+
+/**
+ * Weight against share of risk (or, where shares are withheld, contribution to risk), one row a position, largest risk first; the
+ * risk-reducing ones stand under their own heading and are hatched. A list box: arrows move, the selected position is told in full
+ * by whoever holds the selection.
+ */
+export default function Picture({
+  breakdown,
+  measure,
+  selected,
+  select,
+}: {
+  breakdown: Breakdown
+  measure: Measure
+  selected: number
+  select: (position: number) => void
+}) {
+  const classes = useStyles()
+  const hatch = useId()
+  const { element, width } = useWidth()
+  const [middle, setMiddle] = useState(0)
+  const { weights } = breakdown.decomposition
+  const risk = measure.values
+  const digits = digitsFor(weights.length)
+
+  const order = Array.from(risk.keys()).sort((a, b) => risk[b]! - risk[a]!)
+  const folds = order.length > ALL
+  const reducers = order.filter((i) => risk[i]! < 0)
+  const bottom = folds ? Math.min(BOTTOM, reducers.length) : 0
+  const end = order.length - bottom
+  const shownTop = folds ? Math.min(TOP + middle, end) : order.length
+  const shown = [...order.slice(0, shownTop), ...order.slice(Math.max(end, shownTop))]
+  const others = order.slice(shownTop, Math.max(end, shownTop))
+  const adding = shown.filter((i) => risk[i]! >= 0)
+  const reducing = shown.filter((i) => risk[i]! < 0)
+
+  // Weights and shares share one scale, so the two bars can be compared; contributions are in another unit and stand alone.
+  const drawn = shown.flatMap((i) => (measure.comparable ? [weights[i]!, risk[i]!] : [risk[i]!]))
+  const across = scaleLinear<number>({
+    domain: [Math.min(0, ...drawn), Math.max(0, ...drawn)],
+    range: [1, Math.max(1, width - 9)],
+  })
+
+  const bars = ({ weight, risk }: Pair) => {
+    const from = (value: number) => Math.min(across(0), across(value))
+    const length = (value: number) => Math.abs(across(value) - across(0))
+    const height = measure.comparable ? 14 : 8
+    return (
+      <svg className={classes.drawing} width="100%" height={height} aria-hidden focusable="false">
+        {measure.comparable && (
+          <Bar className={classes.weight} x={from(weight)} width={length(weight)} y={0.5} height={4} strokeWidth={1} />
+        )}
+        <Bar
+          className={risk < 0 ? classes.reducing : classes.share}
+          {...(risk < 0 ? { fill: `url(#${hatch})` } : {})}
+          x={from(risk)}
+          width={length(risk)}
+          y={height - 7.5}
+          height={7}
+          strokeWidth={1}
+        />
+        <line className={classes.zero} x1={across(0)} x2={across(0)} y1={-1} y2={height + 1} />
+      </svg>
+    )
+  }
+
+  const rowIds = useId()
+  const move = (event: KeyboardEvent): void => {
+    const sequence = [...adding, ...reducing]
+    const at = sequence.indexOf(selected)
+    const steps: { readonly [key: string]: number } = {
+      ArrowDown: Math.min(at + 1, sequence.length - 1),
+      ArrowUp: Math.max(at - 1, 0),
+      Home: 0,
+      End: sequence.length - 1,
+    }
+    const next = sequence[steps[event.key] ?? -1]
+    if (next === undefined) return
+    event.preventDefault()
+    select(next)
+    document.getElementById(`${rowIds}${next}`)?.focus()
+  }
+  /** The one row that Tab reaches: the selected one, or the first when that one is folded away. */
+  const reachable = shown.includes(selected) ? selected : adding[0] ?? reducing[0]
+  const rows = (positions: readonly number[]) =>
+    positions.map((i) => (
+      <div
+        key={i}
+        id={`${rowIds}${i}`}
+        role="option"
+        aria-selected={i === selected}
+        tabIndex={i === reachable ? 0 : -1}
+        className={mergeClasses(classes.row, i === selected && classes.selected)}
+        onClick={() => select(i)}
+        onFocus={() => select(i)}
+      >
+        <span className={classes.name} title={breakdown.names[i]}>
+          {breakdown.names[i]}
+        </span>
+        <span className={classes.number}>{percentText(weights[i]!, digits)}</span>
+        <span className={mergeClasses(classes.number, classes.leading)}>
+          {percentText(risk[i]!, measure.digits)}
+        </span>
+        {bars({ weight: weights[i]!, risk: risk[i]! })}
+      </div>
+    ))
+  const sum = (values: Float64Array): number => others.reduce((total, i) => total + values[i]!, 0)
+
+  return (
+    <div className={classes.picture} ref={element}>
+      <svg className={classes.defs} aria-hidden focusable="false">
+        <PatternLines
+          id={hatch}
+          width={4}
+          height={4}
+          orientation={['diagonal']}
+          strokeWidth={1.5}
+          className={classes.reducing}
+        />
+      </svg>
+      <div className={classes.head} aria-hidden>
+        <span />
+        <span className={classes.key}>
+          {measure.comparable && (
+            <svg width="24" height="6" aria-hidden>
+              <Bar className={classes.weight} x={0.5} y={0.5} width={23} height={4} />
+            </svg>
+          )}
+          Weight
+        </span>
+        <span className={classes.key}>
+          <svg width="24" height="8" aria-hidden>
+            <Bar className={classes.share} x={0.5} y={0.5} width={23} height={7} />
+          </svg>
+          {measure.label}
+        </span>
+      </div>
+      <div role="listbox" aria-label={`Weight and ${measure.label.toLowerCase()}, by position`} onKeyDown={move}>
+        <div role="group" aria-label="Positions that add to risk">
+          {rows(adding)}
+        </div>
+        {reducing.length > 0 && others.length === 0 && (
+          <div role="group" aria-label="Risk-reducing positions">
+            <div className={classes.heading} aria-hidden>
+              <svg width="24" height="8">
+                <Bar className={classes.reducing} fill={`url(#${hatch})`} x={0.5} y={0.5} width={23} height={7} />
+              </svg>
+              Risk-reducing positions
+            </div>
+            {rows(reducing)}
+          </div>
+        )}
+      </div>
+      {others.length > 0 && (
+        <>
+          <button
+            type="button"
+            className={mergeClasses(classes.row, classes.others)}
+            onClick={() => setMiddle(middle + STEP)}
+          >
+            <span className={classes.more}>and {others.length.toLocaleString('en-US')} others</span>
+            <span className={classes.number}>{percentText(sum(weights), digits)}</span>
+            <span className={classes.number}>{percentText(sum(risk), measure.digits)}</span>
+          </button>
+          {reducing.length > 0 && (
+            <div role="listbox" aria-label="Largest risk-reducing positions" onKeyDown={move}>
+              <div className={classes.heading} aria-hidden>
+                <svg width="24" height="8">
+                  <Bar className={classes.reducing} fill={`url(#${hatch})`} x={0.5} y={0.5} width={23} height={7} />
+                </svg>
+                Risk-reducing positions
+              </div>
+              {rows(reducing)}
+            </div>
+          )}
+        </>
+      )}
+    </div>
+  )
+}

@@ -1,0 +1,97 @@
+import type { ReactNode } from 'react'
+import { Link, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
+import {
+  ErrorCircle16Filled,
+  Info16Regular,
+  Warning16Filled,
+  type FluentIcon,
+} from '@fluentui/react-icons'
+import { addressOf, type Area, type Finding } from '../sheet'
+import { useBooks } from './store'
+
+const useStyles = makeStyles({
+  link: { fontSize: 'inherit', lineHeight: 'inherit', overflowWrap: 'anywhere', textDecorationLine: 'underline' },
+  list: { listStyleType: 'none', margin: 0, padding: 0, display: 'grid', rowGap: tokens.spacingVerticalXS },
+  finding: {
+    display: 'grid',
+    gridTemplateColumns: '16px 1fr',
+    columnGap: tokens.spacingHorizontalS,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    overflowWrap: 'anywhere',
+  },
+  word: { fontWeight: tokens.fontWeightSemibold },
+  stops: { color: tokens.colorStatusDangerForeground1 },
+  warns: { color: tokens.colorStatusWarningForeground3 },
+  notes: { color: tokens.colorNeutralForeground3 },
+  extra: { '&:not(:empty)': { marginTop: tokens.spacingVerticalXXS } },
+})
+
+/** The address of an area; pressing it shows the cells. */
+export function PlaceLink({ area }: { area: Area }) {
+  const books = useBooks()
+  const classes = useStyles()
+  return (
+    <Link as="button" className={classes.link} onClick={() => void books.reveal(area)}>
+      {addressOf(area)}
+    </Link>
+  )
+}
+
+/** A sentence in which the address of its area, where it stands in it or else after it, is a link to the cells. */
+export function Sentence({ text, area }: { text: string; area: Area | null }) {
+  if (!area) return <>{text}</>
+  const address = addressOf(area)
+  const at = text.indexOf(address)
+  // An address that goes on ("B5" in "B5:F20", "B5" in "B56") names other cells.
+  const whole = at >= 0 && !/^(?::[A-Z]|\d)/.test(text.slice(at + address.length))
+  return whole ? (
+    <>
+      {text.slice(0, at)}
+      <PlaceLink area={area} />
+      {text.slice(at + address.length)}
+    </>
+  ) : (
+    <>
+      {text} <PlaceLink area={area} />
+    </>
+  )
+}
+
+const GRAVITY: { readonly [weight in Finding['weight']]: { readonly word: string; readonly Icon: FluentIcon } } = {
+  stops: { word: 'Stop', Icon: ErrorCircle16Filled },
+  warns: { word: 'Warning', Icon: Warning16Filled },
+  notes: { word: 'Note', Icon: Info16Regular },
+}
+
+/** What was found while reading, each with its gravity as icon and word and a link to its cells. */
+export function Findings({
+  findings,
+  label,
+  after,
+}: {
+  findings: readonly Finding[]
+  label: string
+  /** what can be done about a finding */
+  after?: (finding: Finding) => ReactNode
+}) {
+  const classes = useStyles()
+  if (findings.length === 0) return null
+  return (
+    <ul className={classes.list} aria-label={label}>
+      {findings.map((finding, index) => {
+        const { word, Icon } = GRAVITY[finding.weight]
+        return (
+          <li key={index} className={classes.finding}>
+            <Icon className={classes[finding.weight]} aria-hidden />
+            <span>
+              <span className={mergeClasses(classes.word, classes[finding.weight])}>{word}.</span>{' '}
+              <Sentence text={finding.sentence} area={finding.area} />
+              {after && <div className={classes.extra}>{after(finding)}</div>}
+            </span>
+          </li>
+        )
+      })}
+    </ul>
+  )
+}

@@ -1,0 +1,93 @@
+import { useState } from 'react'
+import { Button, Field, makeStyles, Radio, RadioGroup, tokens } from '@fluentui/react-components'
+import { addressOf, countOf, type Breakdown } from '../sheet'
+import { Section } from './controls'
+import { PlaceLink } from './place'
+import { useBooks, useBooksState } from './store'
+
+const useStyles = makeStyles({
+  view: { display: 'grid', rowGap: tokens.spacingVerticalXXL },
+  text: { margin: 0, fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
+  quiet: { margin: 0, color: tokens.colorNeutralForeground2 },
+  list: {
+    margin: 0,
+    paddingLeft: tokens.spacingHorizontalL,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase300,
+  },
+  action: { justifySelf: 'start' },
+})
+
+type Place = 'where it was' | 'new sheet' | 'selection'
+
+/** What a table of this breakdown holds, in the order it is written. */
+function contents({ names, byGroup, sharesWithheld }: Breakdown): readonly string[] {
+  const figures = [
+    'weight',
+    'stand-alone risk',
+    'marginal contribution to risk',
+    'contribution to risk',
+    ...(sharesWithheld === null ? ['share of risk'] : []),
+    'beta and correlation with the portfolio',
+  ]
+  return [
+    'The portfolio’s volatility, expected return and diversification',
+    `${countOf(names.length, 'position')}: ${figures.join(', ')}`,
+    'Total, sum of parts and their difference',
+    ...byGroup.map(({ header, labels }) => `By ${header}: ${countOf(labels.length, 'group')}`),
+    'Settings and the dates of the data',
+  ]
+}
+
+/** What to write where. */
+export function ReportView() {
+  const books = useBooks()
+  const classes = useStyles()
+  const { breakdown, table, faults, working } = useBooksState()
+  const [wanted, setWanted] = useState<Place | null>(null)
+  if (!breakdown) return <p className={classes.quiet}>There is a table to write once the figures are computed.</p>
+  const place: Place = wanted === null || (wanted === 'where it was' && !table) ? (table ? 'where it was' : 'new sheet') : wanted
+  return (
+    <div className={classes.view}>
+      <Section title="Breakdown table">
+        <p className={classes.text}>
+          {table ? (
+            <>
+              Lies at <PlaceLink area={table} /> and follows the weights.
+            </>
+          ) : (
+            'Not written yet. Once written, it follows the weights.'
+          )}
+        </p>
+        <Field label="Where" size="small" validationMessage={faults.table ?? null}>
+          <RadioGroup
+            value={place}
+            onChange={(_, { value }) => {
+              if (value === 'where it was' || value === 'new sheet' || value === 'selection') setWanted(value)
+            }}
+          >
+            {table && <Radio value="where it was" label={`Where it was (${addressOf(table)})`} />}
+            <Radio value="new sheet" label="On a new sheet" />
+            <Radio value="selection" label="At the selected cell" />
+          </RadioGroup>
+        </Field>
+        <Button
+          appearance="primary"
+          size="small"
+          className={classes.action}
+          disabledFocusable={working !== null}
+          onClick={() => void books.writeTable({ kind: place })}
+        >
+          Write table
+        </Button>
+      </Section>
+      <Section title="What it will hold" level={3}>
+        <ul className={classes.list}>
+          {contents(breakdown).map((line) => (
+            <li key={line}>{line}</li>
+          ))}
+        </ul>
+      </Section>
+    </div>
+  )
+}

@@ -1,0 +1,101 @@
+import { lazy, Suspense, useState } from 'react'
+import { makeStyles, tokens } from '@fluentui/react-components'
+import { percentText, type Breakdown } from '../sheet'
+import { Section } from './controls'
+import { Figures } from './figures'
+import { digitsFor, measureOf, sharesOf } from './measure'
+import { Groups, Positions, sensitivity } from './positions'
+import { useBooksState } from './store'
+
+// The picture and its scales are loaded when there is something to draw: the first paint does without.
+const Picture = lazy(() => import('./picture'))
+
+const useStyles = makeStyles({
+  view: { display: 'grid', rowGap: tokens.spacingVerticalXXL, minWidth: 0 },
+  quiet: { margin: 0, color: tokens.colorNeutralForeground2 },
+  withheld: {
+    margin: 0,
+    padding: tokens.spacingHorizontalM,
+    backgroundColor: tokens.colorNeutralBackground3,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+  },
+  reading: {
+    // The longest usual sentence takes three lines: the rows below stay where they are while the selection moves.
+    minHeight: '64px',
+    padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM}`,
+    backgroundColor: tokens.colorNeutralBackground2,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    overflowWrap: 'anywhere',
+  },
+  name: { fontWeight: tokens.fontWeightSemibold },
+})
+
+/** The selected position in words. */
+function Reading({ breakdown, position }: { breakdown: Breakdown; position: number }) {
+  const classes = useStyles()
+  const { decomposition: d, names } = breakdown
+  const share = sharesOf(breakdown)?.[position]
+  const digits = digitsFor(names.length)
+  return (
+    <div className={classes.reading} role="status">
+      <span className={classes.name}>{names[position]}</span>
+      {share !== undefined && share < 0 && ', risk-reducing position'}: contribution to risk{' '}
+      {percentText(d.contribution[position]!, digits + 1)}. {share !== undefined && sensitivity(share)}
+    </div>
+  )
+}
+
+function Positioned({ breakdown }: { breakdown: Breakdown }) {
+  const measure = measureOf(breakdown)
+  const classes = useStyles()
+  const [chosen, setChosen] = useState<string | null>(null)
+  const largest = measure.values.reduce((best, value, i) => (value > measure.values[best]! ? i : best), 0)
+  const found = chosen === null ? -1 : breakdown.names.indexOf(chosen)
+  const selected = found < 0 ? largest : found
+  return (
+    <Section title={`Weight and ${measure.label.toLowerCase()}`}>
+      <Reading breakdown={breakdown} position={selected} />
+      <Suspense fallback={<p className={classes.quiet}>Drawing…</p>}>
+        <Picture
+          breakdown={breakdown}
+          measure={measure}
+          selected={selected}
+          select={(position) => setChosen(breakdown.names[position] ?? null)}
+        />
+      </Suspense>
+    </Section>
+  )
+}
+
+/** How much risk, and where it comes from. */
+export function RiskView() {
+  const classes = useStyles()
+  const { breakdown, status } = useBooksState()
+  if (!breakdown)
+    return (
+      <p className={classes.quiet}>
+        {status.kind === 'nothing linked'
+          ? 'The figures appear here once holdings and returns are read, under Data.'
+          : 'Press Compute (Ctrl+Enter) for the figures.'}
+      </p>
+    )
+  return (
+    <div className={classes.view}>
+      <Figures breakdown={breakdown} />
+      {breakdown.sharesWithheld !== null && (
+        <p className={classes.withheld}>{breakdown.sharesWithheld}</p>
+      )}
+      {breakdown.names.length > 0 && <Positioned breakdown={breakdown} />}
+      {breakdown.byGroup.map(({ header }, index) => (
+        <Section key={index} title={`By ${header}`}>
+          <Groups breakdown={breakdown} index={index} />
+        </Section>
+      ))}
+      <Section title="Positions">
+        <Positions breakdown={breakdown} />
+      </Section>
+    </div>
+  )
+}
