@@ -56,10 +56,17 @@ export interface Decomposition {
  * @example        decompose(matrixModel(Float64Array.of(.04, 0, 0, .01), 2), Float64Array.of(0, 0)).share // null
  */
 export function decompose(model: RiskModel, weights: Float64Array): Decomposition {
+  const { size } = model
   const { marginals, variance: computed } = model.apply(weights)
-  const deviations = model.variances().map(Math.sqrt)
-  const standAlone = weights.map((weight, i) => Math.abs(weight) * deviations[i]!)
-  const gross = sum(standAlone)
+  // the model's copy, turned into deviations below
+  const deviations = model.variances()
+  const [standAlone, marginal, contribution, share, beta, correlation] = columns(size)
+  let gross = 0
+  for (let i = 0; i < size; i++) {
+    const deviation = (deviations[i] = Math.sqrt(deviations[i]!))
+    standAlone[i] = Math.abs(weights[i]!) * deviation
+    gross += standAlone[i]!
+  }
   if (!Number.isFinite(computed) || !Number.isFinite(gross * gross)) {
     throw new Fault(
       'out-of-range',
@@ -67,28 +74,54 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
       'smaller weights or returns are needed (decimals, such as 0.05 for 5%)',
     )
   }
-  const variance = computed <= model.rounding * gross * gross ? 0 : computed
+  const common = { periodsPerYear: 1, weights: weights.slice(), standAlone }
+  if (computed <= model.rounding * gross * gross) {
+    return {
+      ...common,
+      volatility: 0,
+      variance: 0,
+      marginal: null,
+      contribution: new Float64Array(size),
+      share: null,
+      beta: null,
+      correlation: null,
+      diversificationRatio: null,
+      diversificationBenefit: gross,
+      effectiveNumber: null,
+      sumOfContributions: 0,
+      difference: 0,
+    }
+  }
 
-  const volatility = Math.sqrt(variance)
-  const defined = volatility > 0
-  const marginal = defined ? marginals.map((covariance) => covariance / volatility) : null
-  const contribution = marginal ? marginal.map((m, i) => weights[i]! * m) : new Float64Array(model.size)
-  const share = defined ? contribution.map((c) => c / volatility) : null
-  const sumOfContributions = sum(contribution)
+  // Plain loops and few divisions: beside one pass over the block, callbacks and divisions would show.
+  const volatility = Math.sqrt(computed)
+  const perUnit = 1 / volatility
+  let sumOfContributions = 0
+  let squares = 0
+  for (let i = 0; i < size; i++) {
+    const m = marginals[i]! * perUnit
+    const c = weights[i]! * m
+    const p = c * perUnit
+    marginal[i] = m
+    contribution[i] = c
+    share[i] = p
+    beta[i] = m * perUnit
+    correlation[i] = deviations[i] === 0 ? NaN : m / deviations[i]!
+    sumOfContributions += c
+    squares += p * p
+  }
   return {
-    periodsPerYear: 1,
-    weights: weights.slice(),
+    ...common,
     volatility,
-    variance,
-    standAlone,
+    variance: computed,
     marginal,
     contribution,
     share,
-    beta: marginal && marginal.map((m) => m / volatility),
-    correlation: marginal && marginal.map((m, i) => (deviations[i] === 0 ? NaN : m / deviations[i]!)),
-    diversificationRatio: defined ? gross / volatility : null,
+    beta,
+    correlation,
+    diversificationRatio: gross / volatility,
     diversificationBenefit: gross - volatility,
-    effectiveNumber: share && 1 / sum(share.map((p) => p * p)),
+    effectiveNumber: 1 / squares,
     sumOfContributions,
     difference: sumOfContributions - volatility,
   }
@@ -190,8 +223,9 @@ export function groupDecomposition(
   }
 }
 
-function sum(values: Float64Array): number {
-  let total = 0
-  for (const value of values) total += value
-  return total
+/** Six columns in one piece of memory: six allocations would cost as much as the arithmetic in them. */
+function columns(size: number) {
+  const room = new Float64Array(6 * size)
+  const column = (k: number) => room.subarray(k * size, (k + 1) * size)
+  return [column(0), column(1), column(2), column(3), column(4), column(5)] as const
 }

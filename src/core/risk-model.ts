@@ -45,7 +45,7 @@ export interface ReturnsModel extends RiskModel {
   readonly rowWeights: Float64Array
   /** C = divisor sum_t omega_t z_t z_t': T/(T-1) for "sample", 1 for "exponential". */
   readonly correction: number
-  /** z_t, the centred returns of one date; n, a view to read from, never to write to. */
+  /** z_t, the centred returns of one date; n, a copy. */
   centredRow(date: number): Float64Array
   /** y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves. */
   portfolioReturns(weights: Float64Array): Float64Array
@@ -92,41 +92,27 @@ export function returnsModel(
   }
   const rowWeights = dateWeights(dates, weighting)
   const correction = weighting.kind === 'sample' ? dates / (dates - 1) : 1
-
-  const means = new Float64Array(size)
-  const moves = new Uint8Array(size)
-  for (let t = 0, k = 0; t < dates; t++) {
-    const omega = rowWeights[t]!
-    for (let i = 0; i < size; i++, k++) {
-      const value = returns[k]!
-      means[i]! += omega * value
-      if (value !== returns[i]) moves[i] = 1
-    }
-  }
-  const remainders = new Float64Array(size)
-  for (let t = 0, k = 0; t < dates; t++) {
-    const omega = rowWeights[t]!
-    for (let i = 0; i < size; i++, k++) remainders[i]! += omega * (returns[k]! - means[i]!)
-  }
+  const { means, remainders, constant } = columnMeans(returns, rowWeights, size)
 
   const block = openBlock(dates, size, form)
-  const { centred, multipliers, stride } = block
   const variances = new Float64Array(size)
-  for (let t = 0, k = 0; t < dates; t++) {
+  const z = new Float64Array(size)
+  for (let t = 0; t < dates; t++) {
+    const row = returns.subarray(t * size, (t + 1) * size)
     const multiplier = rowWeights[t]! * correction
-    multipliers[t] = multiplier
-    for (let i = 0, at = t * stride; i < size; i++, k++, at++) {
-      // the two subtractions in this order: their sum may not be a double
-      const z = moves[i] ? returns[k]! - means[i]! - remainders[i]! : 0
-      centred[at] = z
-      variances[i]! += multiplier * z * z
+    for (let i = 0; i < size; i++) {
+      // the two subtractions in this order: means + remainders may not be a double
+      const centred = constant[i] ? 0 : row[i]! - means[i]! - remainders[i]!
+      z[i] = centred
+      variances[i] = variances[i]! + multiplier * centred * centred
     }
+    block.write(t, z, multiplier)
   }
-  for (let i = 0; i < size; i++) means[i] = moves[i] ? means[i]! + remainders[i]! : returns[i]!
+  for (let i = 0; i < size; i++) means[i] = constant[i] ? returns[i]! : means[i]! + remainders[i]!
 
-  const pass = (weights: Float64Array) => {
+  const checked = (weights: Float64Array) => {
     checkBlock(weights, size, 1, 'weights')
-    return block.pass(weights)
+    return weights
   }
   return {
     size,
@@ -138,15 +124,33 @@ export function returnsModel(
     correction,
     // y is a sum of n terms, each good to one rounding of its stand-alone volatility
     rounding: (size * Number.EPSILON) ** 2,
-    apply: (weights) => {
-      const { marginals, variance } = pass(weights)
-      return { marginals, variance }
-    },
+    apply: (weights) => block.pass(checked(weights)),
     variances: () => variances.slice(),
     matrix: () => columnByColumn(size, (weights) => block.pass(weights).marginals),
-    centredRow: (date) => centred.subarray(date * stride, date * stride + size),
-    portfolioReturns: (weights) => pass(weights).portfolio,
+    centredRow: (date) => block.read(date),
+    portfolioReturns: (weights) => block.portfolio(checked(weights)),
   }
+}
+
+/** Means by two passes: the mean, and the mean of what it leaves, which rounding hid from the first. */
+function columnMeans(returns: Float64Array, rowWeights: Float64Array, size: number) {
+  const means = new Float64Array(size)
+  const remainders = new Float64Array(size)
+  const constant = new Uint8Array(size).fill(1)
+  for (let t = 0; t < rowWeights.length; t++) {
+    const row = returns.subarray(t * size, (t + 1) * size)
+    const omega = rowWeights[t]!
+    for (let i = 0; i < size; i++) {
+      means[i] = means[i]! + omega * row[i]!
+      if (row[i] !== returns[i]) constant[i] = 0
+    }
+  }
+  for (let t = 0; t < rowWeights.length; t++) {
+    const row = returns.subarray(t * size, (t + 1) * size)
+    const omega = rowWeights[t]!
+    for (let i = 0; i < size; i++) remainders[i] = remainders[i]! + omega * (row[i]! - means[i]!)
+  }
+  return { means, remainders, constant }
 }
 
 function dateWeights(dates: number, weighting: Weighting): Float64Array {

@@ -3,8 +3,8 @@
 two-pass:    y = X w, then C w = X'y / (T-1): no matrix
 covariance:  C = np.cov(X), then C w
 
-Run alone it prints JSON lines {name, n, T, median_ms}. With --serve it answers each line {"name", "n", "T"} on
-standard input with one timing, so that a caller can interleave them with its own on a noisy machine.
+Run alone it prints JSON lines {name, n, T, median_ms}. With --serve it answers each line {"name", "n", "T", "repeats"} on
+standard input with `repeats` timings, so that a caller can take turns with it on a noisy machine.
 """
 
 import os
@@ -58,7 +58,8 @@ if "--serve" in sys.argv:
     print(json.dumps({"numpy": np.__version__}), flush=True)
     for line in sys.stdin:
         asked = json.loads(line)
-        print(json.dumps({"ms": timed(asked["name"], asked["n"], asked["T"])}), flush=True)
+        ms = [timed(asked["name"], asked["n"], asked["T"]) for _ in range(asked["repeats"])]
+        print(json.dumps({"ms": ms}), flush=True)
 else:
     for n in (100, 500, 1000, 5000):
         for name, repeats in (("numpy two-pass", 30), ("numpy covariance", 5)):

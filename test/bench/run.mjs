@@ -8,7 +8,7 @@ import { createInterface } from 'node:readline'
 
 const require = createRequire(import.meta.url)
 require('./typescript.cjs')
-const { annualise, decompose, kernelForm, returnsModel } = require('../../src/core/index.ts')
+const { decompose, kernelForm, returnsModel } = require('../../src/core/index.ts')
 
 const print = (row) => console.log(JSON.stringify(row))
 const median = (values) => values.toSorted((a, b) => a - b)[values.length >> 1]
@@ -25,7 +25,7 @@ function randomReturns(count, scale) {
   })
 }
 
-/** numpy in a process of its own, asked for one timing at a time; undefined where there is none. */
+/** numpy in a process of its own, asked for a few timings at a time; undefined where there is none. */
 async function numpy() {
   const script = path.join(import.meta.dirname, 'decomposition.py')
   const child = spawn('python3', [script, '--serve'], { stdio: ['pipe', 'pipe', 'ignore'] })
@@ -35,18 +35,22 @@ async function numpy() {
   if (first.done) return undefined
   return {
     version: JSON.parse(first.value).numpy,
-    async time(name, n, T) {
-      child.stdin.write(`${JSON.stringify({ name, n, T })}\n`)
+    async time(name, n, T, repeats) {
+      child.stdin.write(`${JSON.stringify({ name, n, T, repeats })}\n`)
       return JSON.parse((await lines.next()).value).ms
     },
     close: () => child.stdin.end(),
   }
 }
 
-const time = (work) => {
-  const start = performance.now()
-  work()
-  return performance.now() - start
+function timings(work, repeats) {
+  const times = []
+  for (let k = 0; k < repeats; k++) {
+    const start = performance.now()
+    work()
+    times.push(performance.now() - start)
+  }
+  return times
 }
 
 const reference = await numpy()
@@ -56,41 +60,44 @@ const T = 1260
 for (const n of [100, 500, 1000, 5000]) {
   const returns = randomReturns(T * n, 0.01)
   const weights = randomReturns(n, 1)
-  const reading = []
-  for (let k = 0; k < 5; k++) reading.push(time(() => returnsModel(returns, T, n)))
-  const model = returnsModel(returns, T, n)
-  const plain = returnsModel(returns, T, n, { kind: 'sample' }, 'plain')
-  const covariances = n < 5000 ? 5 : 3
+  const read = (form) => returnsModel(returns, T, n, { kind: 'sample' }, form)
+  const model = read()
+  const plain = read('plain')
+
+  // Each turn runs one of them a few times in a row, as a user's edits do: caches are its own by then.
+  const turns = 15
+  const repeats = Math.max(5, Math.round(10000 / n))
   const rows = {
-    decomposition: () => time(() => annualise(decompose(model, weights), 252)),
-    'decomposition, plain form': () => time(() => annualise(decompose(plain, weights), 252)),
-    ...(reference && { 'numpy two-pass': () => reference.time('numpy two-pass', n, T) }),
+    decomposition: () => timings(() => decompose(model, weights), repeats),
+    'decomposition, plain form': () => timings(() => decompose(plain, weights), repeats),
+    'numpy two-pass': () => reference?.time('numpy two-pass', n, T, repeats),
+    'numpy covariance': () => reference?.time('numpy covariance', n, T, 1),
+    'reading the block': () => timings(() => read(), 1),
   }
-  const times = Object.fromEntries(Object.keys(rows).map((name) => [name, []]))
-  const repeats = Math.max(31, Math.round(150000 / n))
-  for (let k = 0; k < repeats + 5; k++) {
+  const medians = {}
+  for (const name of Object.keys(rows)) {
+    medians[name] = []
+    await rows[name]()
+  }
+  for (let turn = 0; turn < turns; turn++) {
     for (const [name, run] of Object.entries(rows)) {
-      const ms = await run()
-      // the first rounds warm caches and compilers
-      if (k >= 5) times[name].push(ms)
+      // the slow route is known well enough from a few turns
+      if (name === 'numpy covariance' && turn >= 5) continue
+      const times = await run()
+      if (times) medians[name].push(median(times))
     }
   }
-  if (reference) {
-    times['numpy covariance'] = []
-    for (let k = 0; k < covariances; k++) {
-      times['numpy covariance'].push(await reference.time('numpy covariance', n, T))
-    }
+  for (const [name, values] of Object.entries(medians)) {
+    if (values.length) print({ name, n, T, median_ms: round(median(values)) })
   }
-  for (const [name, values] of Object.entries(times)) print({ name, n, T, median_ms: round(median(values)) })
-  print({ name: 'reading the block (centring)', n, T, median_ms: round(median(reading)) })
   if (reference) {
-    const ours = median(times.decomposition)
+    const against = (name) => median(medians.decomposition) / median(medians[name])
     print({
       ratio: 'decomposition',
       n,
       T,
-      to_two_pass: round(ours / median(times['numpy two-pass']), 3),
-      to_covariance: `1/${round(median(times['numpy covariance']) / ours, 3)}`,
+      to_two_pass: round(against('numpy two-pass'), 3),
+      to_covariance: `1/${round(1 / against('numpy covariance'), 3)}`,
     })
   }
 }

@@ -12,5 +12,6 @@ require.extensions['.ts'] = (module, file) => {
   })
   module._compile(code, file)
 }
-require.extensions['.as'] = (module, file) =>
-  module._compile(`exports.default = ${literal(compileKernel(file))}`, file)
+require.extensions['.as'] = (module, file) => {
+  module._compile(`exports.__esModule = true; exports.default = ${literal(compileKernel(file))}`, file)
+}

@@ -5,26 +5,23 @@ import bytes from './one-pass.as'
 export type KernelForm = 'simd' | 'plain'
 
 /**
- * A centred block of returns laid out for the one-pass kernel, in memory of its own.
+ * A centred block of returns, T x n, laid out for the one-pass kernel in memory of its own.
  *
- * Rows are padded with zeros to a multiple of 8 numbers and the block to a multiple of 4 rows: padding changes no
- * sum and spares the kernel all leftovers. Fill `centred` and `multipliers` once, then call `pass` as often as needed.
+ * Write every row once, then call `pass` as often as needed.
  */
 export interface Block {
   readonly form: KernelForm
-  /** Numbers from one row to the next; the first `size` of them count. */
-  readonly stride: number
-  /** z, padded rows x stride, row-major. */
-  readonly centred: Float64Array
-  /** k, one for each padded row: the weight of the row in the covariance. */
-  readonly multipliers: Float64Array
+  /** Sets row t to z and its multiplier to k. */
+  write(date: number, z: Float64Array, multiplier: number): void
+  /** Row t as it was written; n, a copy. */
+  read(date: number): Float64Array
   /** For weights w: y = Z w, g = Z'K y and v = y'K y, K = diag(k). Reads the block once; O(T n). */
   pass(weights: Float64Array): Pass
+  /** y of the same pass; T. */
+  portfolio(weights: Float64Array): Float64Array
 }
 
 export interface Pass {
-  /** y, one for each date. */
-  readonly portfolio: Float64Array
   /** g, one for each position. */
   readonly marginals: Float64Array
   /** v */
@@ -63,14 +60,18 @@ const pageBytes = 65536
 const roundUp = (count: number, multiple: number) => Math.ceil(count / multiple) * multiple
 
 /**
- * Opens an empty block. The SIMD form gets a memory of exactly its size that never grows, so its views stay
+ * Opens a block of zeros. The SIMD form gets a memory of exactly its size that never grows, so its views stay
  * attached and the garbage collector frees block and memory together; when the host refuses that memory (or the
  * module), the block is an ordinary array and takes the plain form, which `form` reports.
+ *
+ * Layout: rows padded with zeros to a multiple of 4 numbers (`stride`) and the block to a multiple of 4 rows.
+ * Padding changes no sum and spares the kernel all leftovers. Four rows are interleaved two numbers at a time,
+ *   z[t][i] at (t>>2) 4 stride + (i>>1) 8 + (t&3) 2 + (i&1),
+ * so that the kernel reads one straight stream. Behind the block: w, g, k, y.
  */
 export function openBlock(dates: number, size: number, wanted: KernelForm = kernelForm): Block {
   const rows = roundUp(dates, 4)
-  const stride = roundUp(size, 8)
-  // z | w | g | k | y: every part but the last two is a whole number of cache lines
+  const stride = roundUp(size, 4)
   const w = rows * stride
   const g = w + stride
   const k = g + stride
@@ -82,17 +83,33 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
   const onePass = kernel?.onePass ?? ((...at) => plainOnePass(numbers, ...at))
   const weightsAt = numbers.subarray(w, w + size)
   const marginalsAt = numbers.subarray(g, g + size)
+  const run = (weights: Float64Array) => {
+    weightsAt.set(weights)
+    marginalsAt.fill(0)
+    return onePass(0, w * 8, k * 8, y * 8, g * 8, rows, stride)
+  }
+  const rowStart = (date: number) => (date >> 2) * 4 * stride + (date & 3) * 2
 
   return {
     form: kernel ? 'simd' : 'plain',
-    stride,
-    centred: numbers.subarray(0, w),
-    multipliers: numbers.subarray(k, k + rows),
-    pass(weights) {
-      weightsAt.set(weights)
-      marginalsAt.fill(0)
-      const variance = onePass(0, w * 8, k * 8, y * 8, g * 8, rows, stride)
-      return { portfolio: numbers.slice(y, y + dates), marginals: marginalsAt.slice(), variance }
+    write(date, z, multiplier) {
+      const start = rowStart(date)
+      for (let i = 0; i < size; i++) numbers[start + (i >> 1) * 8 + (i & 1)] = z[i]!
+      numbers[k + date] = multiplier
+    },
+    read(date) {
+      const z = new Float64Array(size)
+      const start = rowStart(date)
+      for (let i = 0; i < size; i++) z[i] = numbers[start + (i >> 1) * 8 + (i & 1)]!
+      return z
+    },
+    pass: (weights) => {
+      const variance = run(weights)
+      return { marginals: marginalsAt.slice(), variance }
+    },
+    portfolio: (weights) => {
+      run(weights)
+      return numbers.slice(y, y + dates)
     },
   }
 }
@@ -109,29 +126,54 @@ function simdKernel(total: number) {
   }
 }
 
-/** The same pass as one-pass.as, in the same layout; places are bytes there, hence the shifts. */
+/** one-pass.as, operation for operation, so that the two forms give the same bits; offsets are in bytes there. */
 function plainOnePass(
   numbers: Float64Array,
-  ...[z, w, k, y, g, rows, stride]: Parameters<KernelExports['onePass']>
+  ...[zBytes, wBytes, kBytes, yBytes, gBytes, rows, stride]: Parameters<KernelExports['onePass']>
 ): number {
-  const weights = numbers.subarray(w >> 3, (w >> 3) + stride)
-  const marginals = numbers.subarray(g >> 3, (g >> 3) + stride)
+  const weights = numbers.subarray(wBytes / 8, wBytes / 8 + stride)
+  const marginals = numbers.subarray(gBytes / 8, gBytes / 8 + stride)
   let variance = 0
-  for (let t = 0; t < rows; t++) {
-    const start = (z >> 3) + t * stride
-    const row = numbers.subarray(start, start + stride)
-    // two running sums, for the processor to overlap
-    let even = 0
-    let odd = 0
-    for (let i = 0; i < stride; i += 2) {
-      even += row[i]! * weights[i]!
-      odd += row[i + 1]! * weights[i + 1]!
+  for (let t = 0; t < rows; t += 4) {
+    const start = zBytes / 8 + t * stride
+    const tile = numbers.subarray(start, start + 4 * stride)
+    // one sum over even and one over odd columns for each row: the two lanes of the SIMD form
+    let even0 = 0
+    let even1 = 0
+    let even2 = 0
+    let even3 = 0
+    let odd0 = 0
+    let odd1 = 0
+    let odd2 = 0
+    let odd3 = 0
+    for (let i = 0, p = 0; i < stride; i += 2, p += 8) {
+      const even = weights[i]!
+      const odd = weights[i + 1]!
+      even0 += tile[p]! * even
+      odd0 += tile[p + 1]! * odd
+      even1 += tile[p + 2]! * even
+      odd1 += tile[p + 3]! * odd
+      even2 += tile[p + 4]! * even
+      odd2 += tile[p + 5]! * odd
+      even3 += tile[p + 6]! * even
+      odd3 += tile[p + 7]! * odd
     }
-    const portfolio = even + odd
-    const scaled = numbers[(k >> 3) + t]! * portfolio
-    numbers[(y >> 3) + t] = portfolio
-    variance += scaled * portfolio
-    for (let i = 0; i < stride; i++) marginals[i]! += scaled * row[i]!
+    const y = yBytes / 8 + t
+    const y0 = (numbers[y] = even0 + odd0)
+    const y1 = (numbers[y + 1] = even1 + odd1)
+    const y2 = (numbers[y + 2] = even2 + odd2)
+    const y3 = (numbers[y + 3] = even3 + odd3)
+    const k = kBytes / 8 + t
+    const s0 = numbers[k]! * y0
+    const s1 = numbers[k + 1]! * y1
+    const s2 = numbers[k + 2]! * y2
+    const s3 = numbers[k + 3]! * y3
+    variance += s0 * y0 + s1 * y1 + s2 * y2 + s3 * y3
+    for (let i = 0, p = 0; i < stride; i += 2, p += 8) {
+      marginals[i] = marginals[i]! + tile[p]! * s0 + tile[p + 2]! * s1 + tile[p + 4]! * s2 + tile[p + 6]! * s3
+      marginals[i + 1] =
+        marginals[i + 1]! + tile[p + 1]! * s0 + tile[p + 3]! * s1 + tile[p + 5]! * s2 + tile[p + 7]! * s3
+    }
   }
   return variance
 }
