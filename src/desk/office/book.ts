@@ -1,0 +1,623 @@
+/**
+ * The workbook as the grid holds it: the only place of the stand-in that knows the grid's own services. It says what is in the cells
+ * (full doubles, spilled cells included), changes them, and knows when the formulas have been worked out again.
+ */
+import {
+  BooleanNumber,
+  CellValueType,
+  Dimension,
+  ICommandService,
+  IUndoRedoService,
+  type IBorderData,
+  type ICellData,
+  type ICommandInfo,
+  type IDisposable,
+  type IExecutionOptions,
+  type Injector,
+  type IRange,
+  type IStyleData,
+  type Nullable,
+  type Worksheet,
+} from '@univerjs/core'
+import type { FUniver } from '@univerjs/core/facade'
+import {
+  FormulaDataModel,
+  IActiveDirtyManagerService,
+  IDefinedNamesService,
+  RemoveDefinedNameMutation,
+  SetDefinedNameMutation,
+  type IDefinedNamesServiceParam,
+} from '@univerjs/engine-formula'
+import {
+  ClearSelectionFormatCommand,
+  SetBorderCommand,
+  SetRangeValuesMutation,
+  SetRangeValuesUndoMutationFactory,
+  SetSelectionsOperation,
+  SetStyleCommand,
+  SetWorksheetColumnCountMutation,
+  SetWorksheetRowCountMutation,
+  SheetsSelectionsService,
+  type ISetRangeValuesMutationParams,
+} from '@univerjs/sheets'
+import type { FWorkbook, FWorksheet } from '@univerjs/sheets/facade'
+import { FormulaCalculationSessionService } from '@univerjs/sheets-formula'
+import type { Grid } from '../grid'
+import {
+  COLUMNS,
+  ROWS,
+  height,
+  intersect,
+  isEntireColumn,
+  isEntireRow,
+  rectAt,
+  width,
+  type Rect,
+} from './addresses'
+import { OfficeError } from './error'
+
+export type CellValue = string | number | boolean
+
+/** One cell as it stands, spilled cells and merged areas accounted for. */
+export interface StoredCell {
+  readonly value: CellValue
+  readonly kind: 'Empty' | 'String' | 'Double' | 'Boolean' | 'Error'
+  readonly formula: string
+  readonly pattern: string
+}
+
+/** What the workbook carries beside its cells and the grid has no place for. */
+export interface SheetExtras {
+  protected: boolean
+  veryHidden: boolean
+  readonly page: Map<string, unknown>
+  readonly outlines: { readonly axis: 'row' | 'column'; readonly from: number; readonly to: number }[]
+}
+
+/** A table as the grid's table plug-in describes it. */
+interface GridTable {
+  readonly id: string
+  readonly name: string
+  readonly subUnitId: string
+  readonly range: IRange
+}
+
+/** How the user's machine writes numbers and dates. */
+export interface Culture {
+  readonly name: string
+  readonly numberDecimalSeparator: string
+  readonly numberGroupSeparator: string
+  readonly dateSeparator: string
+  readonly shortDatePattern: string
+}
+
+export const ENGLISH: Culture = {
+  name: 'en-US',
+  numberDecimalSeparator: '.',
+  numberGroupSeparator: ',',
+  dateSeparator: '/',
+  shortDatePattern: 'm/d/yyyy',
+}
+
+export type NameRecord = Readonly<IDefinedNamesServiceParam>
+
+/** The scope of names that belong to the whole workbook, in the grid's words. */
+const WHOLE_WORKBOOK = 'AllDefaultWorkbook'
+
+const ERROR_VALUE =
+  /^#(N\/A|VALUE!|REF!|DIV\/0!|NUM!|NAME\?|NULL!|SPILL!|CALC!|BUSY!|CYCLE!|ERROR!|GETTING_DATA|CONNECT!|BLOCKED!|UNKNOWN!|FIELD!)$/
+
+export const isErrorValue = (text: string): boolean => ERROR_VALUE.test(text)
+
+export class Book {
+  /** The add-in's settings, JSON values, saved with the workbook. */
+  readonly settings = new Map<string, unknown>()
+  /** Formulas are not worked out between the operations of the request under way. */
+  calculationSuspended = false
+  /** True while an operation of the add-in's own is being carried out. */
+  applying = false
+  readonly api: FUniver
+  readonly injector: Injector
+  readonly commands: ICommandService
+  readonly #extras = new Map<string, SheetExtras>()
+  readonly #dirtying: IActiveDirtyManagerService
+  #dirty = false
+  #calculation: Promise<void> | null = null
+  #undoStep: IDisposable | null = null
+
+  constructor(
+    grid: Grid,
+    readonly culture: Culture,
+  ) {
+    this.api = grid.api
+    this.injector = grid.univer.__getInjector()
+    this.commands = this.injector.get(ICommandService)
+    this.#dirtying = this.injector.get(IActiveDirtyManagerService)
+    this.commands.onCommandExecuted((command, options) => {
+      if (this.#makesDirty(command, options)) this.#dirty = true
+    })
+  }
+
+  /** The grid recalculates after these, by the same rule: not after results of formulas, not after changes of style only. */
+  #makesDirty({ id, params }: Readonly<ICommandInfo>, options?: IExecutionOptions): boolean {
+    if (!this.#dirtying.get(id)) return false
+    if (id !== SetRangeValuesMutation.id) return true
+    const { trigger } = params as ISetRangeValuesMutationParams
+    const ofStyle = [SetStyleCommand.id, SetBorderCommand.id, ClearSelectionFormatCommand.id].includes(
+      trigger ?? '',
+    )
+    return !options?.onlyLocal && !ofStyle
+  }
+
+  /** Resolves when every formula has been worked out after the changes made so far, the user's included. */
+  async calculated(): Promise<void> {
+    this.endUndoStep()
+    while (this.#dirty || this.#calculation) {
+      if (this.#dirty) {
+        this.#dirty = false
+        const calculation = this.injector.get(FormulaCalculationSessionService).waitForLatestApplied()
+        this.#calculation = calculation
+        const done = () => {
+          if (this.#calculation === calculation) this.#calculation = null
+        }
+        calculation.then(done, done)
+      }
+      await this.#calculation
+    }
+  }
+
+  /** Works every formula out anew. */
+  recalculate(): void {
+    this.api.getFormula().executeCalculation()
+    this.#dirty = true
+  }
+
+  get workbook(): FWorkbook {
+    const workbook = this.api.getActiveWorkbook()
+    if (!workbook) throw new OfficeError('GeneralException', 'no workbook is open')
+    return workbook
+  }
+
+  get id(): string {
+    return this.workbook.getId()
+  }
+
+  sheets(): Sheet[] {
+    return this.workbook.getSheets().map((sheet) => new Sheet(this, sheet.getSheetId()))
+  }
+
+  /** By name, as the host compares names, or by id. */
+  sheet(nameOrId: string): Sheet | null {
+    const wanted = nameOrId.toLowerCase()
+    return this.sheets().find((sheet) => sheet.id === nameOrId || sheet.name.toLowerCase() === wanted) ?? null
+  }
+
+  get activeSheet(): Sheet {
+    return new Sheet(this, this.workbook.getActiveSheet().getSheetId())
+  }
+
+  /** Adds a sheet at the end, without showing it. */
+  addSheet(name: string | undefined): Sheet {
+    const active = this.workbook.getActiveSheet()
+    let made = name
+    for (let i = 1; made === undefined || (name === undefined && this.sheet(made)); i++) made = `Sheet${i}`
+    this.checkSheetName(made)
+    const sheet = this.workbook.create(made, 1000, 40)
+    if (this.workbook.getActiveSheet().getSheetId() !== active.getSheetId())
+      this.workbook.setActiveSheet(active)
+    return new Sheet(this, sheet.getSheetId())
+  }
+
+  checkSheetName(name: string): void {
+    if (!/^[^[\]:*?/\\]{1,31}$/.test(name) || /^'|'$/.test(name))
+      throw new OfficeError('InvalidArgument', `"${name}" is no name for a sheet`)
+    if (this.sheet(name)) throw new OfficeError('ItemAlreadyExists', `a sheet named "${name}" exists`)
+  }
+
+  extras(sheet: string): SheetExtras {
+    const known = this.#extras.get(sheet)
+    if (known) return known
+    const made: SheetExtras = { protected: false, veryHidden: false, page: new Map(), outlines: [] }
+    this.#extras.set(sheet, made)
+    return made
+  }
+
+  names(): NameRecord[] {
+    return Object.values(this.injector.get(IDefinedNamesService).getDefinedNameMap(this.id) ?? {})
+  }
+
+  name(name: string): NameRecord | null {
+    return this.names().find((known) => known.name.toLowerCase() === name.toLowerCase()) ?? null
+  }
+
+  /** The grid's own command refuses names that are also functions, which the host allows; so the change is made beneath it. */
+  setName(record: NameRecord): void {
+    const scope = record.localSheetId ?? WHOLE_WORKBOOK
+    this.commands.syncExecuteCommand(SetDefinedNameMutation.id, {
+      ...record,
+      localSheetId: scope,
+      unitId: this.id,
+    })
+  }
+
+  removeName(record: NameRecord): void {
+    this.commands.syncExecuteCommand(RemoveDefinedNameMutation.id, { ...record, unitId: this.id })
+  }
+
+  tables(): { id: string; name: string; sheet: Sheet; rect: Rect }[] {
+    const { workbook } = this
+    const list =
+      'getTableList' in workbook ? (workbook as { getTableList(): GridTable[] }).getTableList() : []
+    return list.map(({ id, name, subUnitId, range }) => {
+      const sheet = new Sheet(this, subUnitId)
+      return { id, name, sheet, rect: sheet.rectOf(range) }
+    })
+  }
+
+  /** The selected areas of the active sheet, in the order they were selected. */
+  selection(): Rect[] {
+    const sheet = this.activeSheet
+    const selections = this.injector.get(SheetsSelectionsService).getCurrentSelections()
+    return selections.length ? selections.map(({ range }) => sheet.rectOf(range)) : [rectAt(0, 0, 1, 1)]
+  }
+
+  select(sheet: Sheet, rects: readonly Rect[]): void {
+    if (this.activeSheet.id !== sheet.id) sheet.facade.activate()
+    const selections = rects.map((rect) => {
+      const { startRow, startColumn } = sheet.rangeOf(rect)
+      const corner = { startRow, startColumn, endRow: startRow, endColumn: startColumn }
+      const primary = {
+        ...corner,
+        actualRow: startRow,
+        actualColumn: startColumn,
+        isMerged: false,
+        isMergedMainCell: false,
+      }
+      return { range: sheet.rangeOf(rect), primary, style: null }
+    })
+    this.commands.syncExecuteCommand(SetSelectionsOperation.id, {
+      unitId: this.id,
+      subUnitId: sheet.id,
+      selections,
+    })
+  }
+
+  /** Changes cells in one step of the grid, which a later undo takes back together with the rest of the request. */
+  changeCells(sheet: Sheet, cellValue: Record<number, Record<number, ICellData>>, styleOnly: boolean): void {
+    const trigger = styleOnly ? { trigger: SetStyleCommand.id } : {}
+    const params: ISetRangeValuesMutationParams = {
+      unitId: this.id,
+      subUnitId: sheet.id,
+      cellValue,
+      ...trigger,
+    }
+    const before = SetRangeValuesUndoMutationFactory(this.injector, params)
+    this.#undoStep ??= this.injector.get(IUndoRedoService).__tempBatchingUndoRedo(this.id)
+    this.commands.syncExecuteCommand(SetRangeValuesMutation.id, params)
+    this.injector.get(IUndoRedoService).pushUndoRedo({
+      unitID: this.id,
+      undoMutations: [{ id: SetRangeValuesMutation.id, params: { ...before, ...trigger } }],
+      redoMutations: [{ id: SetRangeValuesMutation.id, params }],
+    })
+  }
+
+  endUndoStep(): void {
+    this.#undoStep?.dispose()
+    this.#undoStep = null
+  }
+}
+
+/** One sheet, named by its id, so that it stays the same when it is renamed or moved. */
+export class Sheet {
+  constructor(
+    readonly book: Book,
+    readonly id: string,
+  ) {}
+
+  get exists(): boolean {
+    return this.book.workbook.getSheetBySheetId(this.id) !== null
+  }
+
+  get facade(): FWorksheet {
+    const sheet = this.book.workbook.getSheetBySheetId(this.id)
+    if (!sheet) throw new OfficeError('ItemNotFound', 'the sheet was deleted')
+    return sheet
+  }
+
+  get name(): string {
+    return this.facade.getSheetName()
+  }
+
+  get extras(): SheetExtras {
+    return this.book.extras(this.id)
+  }
+
+  get #grid(): Worksheet {
+    return this.facade.getSheet()
+  }
+
+  /** Called by everything that changes the sheet. @throws OfficeError AccessDenied on a protected sheet */
+  guard(): void {
+    if (this.extras.protected) throw new OfficeError('AccessDenied', `the sheet "${this.name}" is protected`)
+  }
+
+  /** The grid's range of a block: cut to what the grid has stored. */
+  rangeOf(rect: Rect): IRange {
+    const { startRow, endRow, startColumn, endColumn } = {
+      startRow: rect.top,
+      startColumn: rect.left,
+      endRow: isEntireColumn(rect) ? this.#grid.getRowCount() - 1 : rect.bottom,
+      endColumn: isEntireRow(rect) ? this.#grid.getColumnCount() - 1 : rect.right,
+    }
+    return { startRow, startColumn, endRow, endColumn }
+  }
+
+  /** The block of a grid's range. A range from edge to edge of the grid's sheet means whole rows or columns. */
+  rectOf(range: Readonly<IRange>): Rect {
+    const known = (value: number, otherwise: number) => (Number.isFinite(value) ? value : otherwise)
+    const [rows, columns] = [this.#grid.getRowCount(), this.#grid.getColumnCount()]
+    const top = known(range.startRow, 0)
+    const left = known(range.startColumn, 0)
+    const bottom = known(range.endRow, rows - 1)
+    const right = known(range.endColumn, columns - 1)
+    return {
+      top,
+      left,
+      bottom: top === 0 && bottom >= rows - 1 ? ROWS - 1 : bottom,
+      right: left === 0 && right >= columns - 1 ? COLUMNS - 1 : right,
+    }
+  }
+
+  /** Makes the grid's sheet large enough to hold the block. */
+  hold(rect: Rect): void {
+    const ids = { unitId: this.book.id, subUnitId: this.id }
+    const { endRow, endColumn } = this.rangeOf(rect)
+    if (endRow >= this.#grid.getRowCount())
+      this.book.commands.syncExecuteCommand(SetWorksheetRowCountMutation.id, {
+        ...ids,
+        rowCount: endRow + 200,
+      })
+    if (endColumn >= this.#grid.getColumnCount())
+      this.book.commands.syncExecuteCommand(SetWorksheetColumnCountMutation.id, {
+        ...ids,
+        columnCount: endColumn + 20,
+      })
+  }
+
+  /** Reads a block, cell by cell, through one pass over the grid's own storage. */
+  map<R>(rect: Rect, of: (cell: StoredCell) => R): R[][] {
+    const grid = this.#grid
+    const matrix = grid.getCellMatrix()
+    const formulas = this.book.injector.get(FormulaDataModel)
+    const spilled = formulas.getArrayFormulaCellData()[this.book.id]?.[this.id]
+    const covered = this.#coveredCells(rect)
+    const patterns = new Map<unknown, string>()
+    const out: R[][] = []
+    for (let row = rect.top; row <= rect.bottom; row++) {
+      const line: R[] = []
+      for (let column = rect.left; column <= rect.right; column++) {
+        const cell = matrix.getValue(row, column)
+        if (!cell && !spilled?.[row]?.[column]) {
+          line.push(of(this.#blank(row, column)))
+          continue
+        }
+        const key = cell?.s ?? null
+        const style = key === null ? undefined : (patterns.get(key) ?? this.#pattern(row, column))
+        if (style !== undefined) patterns.set(key, style)
+        const pattern = style ?? this.#pattern(row, column)
+        if (covered?.has(row * COLUMNS + column))
+          line.push(of({ value: '', kind: 'Empty', formula: '', pattern }))
+        else line.push(of(this.#stored(cell, spilled?.[row]?.[column], row, column, pattern)))
+      }
+      out.push(line)
+    }
+    return out
+  }
+
+  #blank(row: number, column: number): StoredCell {
+    return { value: '', kind: 'Empty', formula: '', pattern: this.#pattern(row, column) }
+  }
+
+  #stored(
+    cell: Nullable<ICellData>,
+    spill: Nullable<ICellData>,
+    row: number,
+    column: number,
+    pattern: string,
+  ): StoredCell {
+    const formula =
+      cell?.f ??
+      (cell?.si
+        ? this.book.injector.get(FormulaDataModel).getFormulaStringByCell(row, column, this.id, this.book.id)
+        : '')
+    const rich = cell?.p?.body?.dataStream.replace(/\r\n$/, '')
+    const from = cell?.v === undefined || cell.v === null ? spill : cell
+    const stored = rich ?? from?.v ?? ''
+    const base = { formula: formula ?? '', pattern }
+    if (from?.t === CellValueType.BOOLEAN) return { ...base, value: Boolean(stored), kind: 'Boolean' }
+    if (typeof stored === 'boolean') return { ...base, value: stored, kind: 'Boolean' }
+    if (typeof stored === 'number') return { ...base, value: stored, kind: 'Double' }
+    if (isErrorValue(stored) && from?.t !== CellValueType.FORCE_STRING)
+      return { ...base, value: stored, kind: 'Error' }
+    return { ...base, value: stored, kind: stored === '' && !formula ? 'Empty' : 'String' }
+  }
+
+  #pattern(row: number, column: number): string {
+    if (row >= this.#grid.getRowCount() || column >= this.#grid.getColumnCount()) return 'General'
+    const own = this.#grid.getCellStyle(row, column)?.n?.pattern
+    return (
+      own ??
+      this.#grid.getRowStyle(row)?.n?.pattern ??
+      this.#grid.getColumnStyle(column)?.n?.pattern ??
+      'General'
+    )
+  }
+
+  /** Cells of merged areas that their top-left cell covers. */
+  #coveredCells(rect: Rect): Set<number> | null {
+    const merges = this.merges(rect)
+    if (!merges.length) return null
+    const covered = new Set<number>()
+    for (const merge of merges)
+      for (let row = merge.top; row <= merge.bottom; row++)
+        for (let column = merge.left; column <= merge.right; column++)
+          if (row !== merge.top || column !== merge.left) covered.add(row * COLUMNS + column)
+    return covered
+  }
+
+  merges(within: Rect): Rect[] {
+    return this.#grid
+      .getMergeData()
+      .map((range) => ({
+        top: range.startRow,
+        left: range.startColumn,
+        bottom: range.endRow,
+        right: range.endColumn,
+      }))
+      .filter((merge) => intersect(merge, within))
+  }
+
+  /** Writes what `cellAt` gives, by place in the block; undefined leaves a cell as it is. Covered cells of merged areas take nothing. */
+  write(rect: Rect, cellAt: (row: number, column: number) => ICellData | undefined): void {
+    this.guard()
+    this.hold(rect)
+    const covered = this.#coveredCells(rect)
+    this.#change(
+      rect,
+      (row, column) => {
+        if (covered?.has((rect.top + row) * COLUMNS + rect.left + column)) return undefined
+        return cellAt(row, column)
+      },
+      false,
+    )
+  }
+
+  /** Lays a style over every cell of a block; null takes all style away. */
+  restyle(rect: Rect, styleAt: (row: number, column: number) => IStyleData | null | undefined): void {
+    this.guard()
+    this.hold(rect)
+    this.#change(
+      rect,
+      (row, column) => {
+        const s = styleAt(row, column)
+        return s === undefined ? undefined : { s }
+      },
+      true,
+    )
+  }
+
+  #change(
+    rect: Rect,
+    cellAt: (row: number, column: number) => ICellData | undefined,
+    styleOnly: boolean,
+  ): void {
+    const { startRow, endRow, startColumn, endColumn } = this.rangeOf(rect)
+    const cells: Record<number, Record<number, ICellData>> = {}
+    let any = false
+    for (let row = startRow; row <= endRow; row++) {
+      const line: Record<number, ICellData> = {}
+      for (let column = startColumn; column <= endColumn; column++) {
+        const cell = cellAt(row - startRow, column - startColumn)
+        if (!cell) continue
+        line[column] = cell
+        any = true
+      }
+      cells[row] = line
+    }
+    if (any) this.book.changeCells(this, cells, styleOnly)
+  }
+
+  style(row: number, column: number): IStyleData {
+    if (row >= this.#grid.getRowCount() || column >= this.#grid.getColumnCount()) return {}
+    return this.#grid.getComposedCellStyle(row, column)
+  }
+
+  border(row: number, column: number): IBorderData {
+    return this.style(row, column).bd ?? {}
+  }
+
+  /** The smallest block that holds every used cell, within `within`; null when there is none. */
+  used(valuesOnly: boolean, within: Rect): Rect | null {
+    let found: Rect | null = null
+    const meet = (row: number, column: number) => {
+      if (row < within.top || row > within.bottom || column < within.left || column > within.right) return
+      found = found
+        ? {
+            top: Math.min(found.top, row),
+            left: Math.min(found.left, column),
+            bottom: Math.max(found.bottom, row),
+            right: Math.max(found.right, column),
+          }
+        : { top: row, left: column, bottom: row, right: column }
+    }
+    this.#grid.getCellMatrix().forValue((row, column, cell) => {
+      if (cell && (hasContent(cell) || (!valuesOnly && cell.s))) meet(row, column)
+    })
+    const spilled =
+      this.book.injector.get(FormulaDataModel).getArrayFormulaCellData()[this.book.id]?.[this.id] ?? {}
+    for (const [row, line] of Object.entries(spilled))
+      for (const column of Object.keys(line ?? {})) meet(Number(row), Number(column))
+    return found
+  }
+
+  /** The block a spilling formula fills, for its anchor or any cell of it. */
+  spillAt(row: number, column: number): { anchor: Rect; area: Rect } | null {
+    const areas =
+      this.book.injector.get(FormulaDataModel).getArrayFormulaRange()[this.book.id]?.[this.id] ?? {}
+    for (const [top, line] of Object.entries(areas))
+      for (const [left, range] of Object.entries(line ?? {})) {
+        if (!range) continue
+        const { startRow, startColumn, endRow, endColumn } = range as IRange
+        if (row < startRow || row > endRow || column < startColumn || column > endColumn) continue
+        // An area of one cell is an array formula that spills nowhere.
+        if (startRow === endRow && startColumn === endColumn) continue
+        return {
+          anchor: rectAt(Number(top), Number(left), 1, 1),
+          area: { top: startRow, left: startColumn, bottom: endRow, right: endColumn },
+        }
+      }
+    return null
+  }
+
+  isHidden(axis: 'row' | 'column', line: number): boolean {
+    return axis === 'row' ? !this.#grid.getRowVisible(line) : !this.#grid.getColVisible(line)
+  }
+
+  hide(axis: 'row' | 'column', rect: Rect, hidden: boolean): void {
+    this.guard()
+    const { startRow, endRow, startColumn, endColumn } = this.rangeOf(rect)
+    const { facade } = this
+    if (axis === 'row') {
+      if (hidden) facade.hideRows(startRow, endRow - startRow + 1)
+      else facade.showRows(startRow, endRow - startRow + 1)
+    } else if (hidden) facade.hideColumns(startColumn, endColumn - startColumn + 1)
+    else facade.showColumns(startColumn, endColumn - startColumn + 1)
+  }
+
+  /** Makes room at a block by pushing what is there down or right. */
+  insert(rect: Rect, shift: 'Down' | 'Right'): void {
+    this.guard()
+    this.hold(rect)
+    const { facade } = this
+    if (isEntireRow(rect)) facade.insertRowsBefore(rect.top, height(rect))
+    else if (isEntireColumn(rect)) facade.insertColumnsBefore(rect.left, width(rect))
+    else
+      facade.getRange(this.rangeOf(rect)).insertCells(shift === 'Down' ? Dimension.ROWS : Dimension.COLUMNS)
+  }
+
+  /** Takes a block out and closes the gap. */
+  remove(rect: Rect, shift: 'Up' | 'Left'): void {
+    this.guard()
+    const { facade } = this
+    if (isEntireRow(rect)) facade.deleteRows(rect.top, height(rect))
+    else if (isEntireColumn(rect)) facade.deleteColumns(rect.left, width(rect))
+    else facade.getRange(this.rangeOf(rect)).deleteCells(shift === 'Up' ? Dimension.ROWS : Dimension.COLUMNS)
+  }
+
+  get isShown(): boolean {
+    return this.#grid.isSheetHidden() !== BooleanNumber.TRUE
+  }
+}
+
+export const hasContent = (cell: ICellData): boolean =>
+  (cell.v !== undefined && cell.v !== null && cell.v !== '') || Boolean(cell.f ?? cell.si ?? cell.p)
