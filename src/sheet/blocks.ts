@@ -1,6 +1,7 @@
 import { Fault, type FaultCode, type Weighting, type Where } from '../core'
 import { isBlank, PLAIN_CULTURE, type CellValue } from './cells'
 import { attempt } from './explain'
+import { plainName } from './matching'
 import { dateInCell } from './numbers'
 import { countOf, quote } from './wording'
 
@@ -129,10 +130,6 @@ export function labelsOf(
   return { labels, whereOf }
 }
 
-/** How labels are told apart where they do not agree to the letter: case, spacing and composed letters do not count. */
-export const labelKey = (label: string): string =>
-  label.normalize('NFC').trim().replace(/\s+/g, ' ').toLowerCase()
-
 /**
  * Finds each name among the headings of a block: to the letter first, else whatever the case and spacing.
  *
@@ -145,10 +142,10 @@ export function columnsNamed(
   whereOf: (index: number) => Where,
 ): Int32Array {
   const exact = positions(headings, (heading) => heading)
-  const loose = positions(headings, labelKey)
+  const loose = positions(headings, plainName)
   const taken = new Map<number, number>()
   return Int32Array.from(names, (name, k) => {
-    const columns = exact.get(name) ?? loose.get(labelKey(name)) ?? []
+    const columns = exact.get(name) ?? loose.get(plainName(name)) ?? []
     const [column] = columns
     if (column === undefined) {
       throw new Fault(
@@ -367,7 +364,7 @@ function sideOf(argument: string, cells: Cells, content: 'returns' | 'prices'): 
   const headed = !isText(corner) || DATE_HEADING.test(corner)
   const named = below.every(
     (cell, r) =>
-      isText(cell) && isText(cells[0]![r + 1]) && labelKey(cell) === labelKey(cells[0]![r + 1] as string),
+      isText(cell) && isText(cells[0]![r + 1]) && plainName(cell) === plainName(cells[0]![r + 1] as string),
   )
   if (named && below.length === cells[0]!.length - 1) return { kind: 'names' }
   if (dates.every((date) => date !== null)) {

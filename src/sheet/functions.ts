@@ -14,7 +14,6 @@ import {
   columnsNamed,
   estimatorOf,
   kindOf,
-  labelKey,
   labelsOf,
   panelOf,
   periodsOf,
@@ -22,6 +21,7 @@ import {
   vectorOf,
   type Panel,
 } from './blocks'
+import { plainName } from './matching'
 import { blockMemo } from './memo'
 import { countOf } from './wording'
 
@@ -450,7 +450,7 @@ export function breakdown(
   ])
   return [
     [
-      'Name',
+      'Holding',
       'Weight',
       'Stand-alone risk',
       'Marginal contribution to risk',
@@ -485,7 +485,7 @@ export function breakdown(
  * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
  * @returns (g+2) x 5: headings, one row a group, total
  * @remarks Groups stand in the order of their first position; case and spacing do not tell groups apart; positions without a group stand
- * together as "(no group)". A group's stand-alone risk is the volatility of its positions held alone; the total of that column is the
+ * together as "Unassigned". A group's stand-alone risk is the volatility of its positions held alone; the total of that column is the
  * sum before diversification between groups, that of the contributions the volatility of the portfolio.
  * @throws Fault as VOLATILITY
  * @source Coleman & Litterman (2012), Quantitative Risk Management, appendix 10.1 (from memory)
@@ -505,8 +505,8 @@ export function grouped(
   const shown: string[] = []
   const known = new Map<string | null, number>()
   const groupOf = Int32Array.from(labels, (label) => {
-    const key = label === null ? null : labelKey(label)
-    const group = known.get(key) ?? shown.push(label ?? '(no group)') - 1
+    const key = label === null ? null : plainName(label)
+    const group = known.get(key) ?? shown.push(label ?? 'Unassigned') - 1
     known.set(key, group)
     return group
   })

@@ -1,0 +1,394 @@
+import { Fault } from '../core'
+import type { Breakdown } from './breakdown'
+import type { Area, Culture } from './cells'
+import { addressOf } from './cells'
+import type { HoldingsReading } from './holdings'
+import type { Field, Status, Work } from './linked-book'
+import { areaOf, LinkedBook, sentenceOf } from './linked-book'
+import type { ReturnsReading } from './returns'
+import type { Role, Settings } from './settings'
+import type { Json, Workbook, WorkbookEvent } from './workbook'
+import { listOf } from './wording'
+
+/** A long action under way; share is 0 to 1, or null while there is nothing to measure it by. */
+export interface Working {
+  readonly what: string
+  readonly share: number | null
+  cancel(): void
+}
+
+/** A question the pane puts to the user. */
+export interface Offer {
+  readonly sentence: string
+  readonly button: string
+  accept(): Promise<void>
+  decline(): void
+}
+
+/** Everything the pane shows; a new object whenever anything in it changes. */
+export interface BooksState {
+  readonly books: readonly { readonly id: string; readonly title: string }[]
+  readonly current: string
+  readonly title: string
+  readonly holdings: HoldingsReading | null
+  readonly returns: ReturnsReading | null
+  readonly settings: Settings
+  readonly breakdown: Breakdown | null
+  /** where the linked table lies */
+  readonly table: Area | null
+  readonly status: Status
+  readonly working: Working | null
+  /** the one sentence at the field concerned */
+  readonly faults: { readonly [F in Field]?: string }
+  readonly offers: readonly Offer[]
+  /** what just happened, or what the host makes us wait for */
+  readonly notice: string | null
+}
+
+/** The books of one workbook and what a user can do with them. No command ever rejects: what goes wrong arrives in the state. */
+export interface Books {
+  state(): BooksState
+  subscribe(listener: () => void): () => void
+  takeSelection(field: 'holdings' | 'returns' | 'capital'): Promise<void>
+  assignRole(header: string, role: Role): Promise<void>
+  markRiskless(name: string, riskless: boolean): Promise<void>
+  choose(change: Partial<Settings>): Promise<void>
+  compute(): Promise<void>
+  writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
+  reveal(area: Area): Promise<void>
+  addBook(): Promise<void>
+  switchTo(id: string): Promise<void>
+  rename(title: string): Promise<void>
+  /** Forgets the link; the user's cells stay, the written table included. */
+  removeBook(): Promise<void>
+  /** Stops listening to the workbook. */
+  close(): Promise<void>
+}
+
+/** Edits that come in quick succession are one refresh. */
+const SETTLING_MS = 120
+
+/**
+ * Opens the books a workbook holds: puts right what an interrupted write left, reads what is linked, and follows the workbook from
+ * then on. Commands and refreshes run one after another.
+ */
+export async function openBooks(workbook: Workbook): Promise<Books> {
+  const books = new OpenBooks(workbook)
+  await books.open()
+  return books
+}
+
+class OpenBooks implements Books {
+  readonly #workbook: Workbook
+  #culture: Culture = { decimal: '.', group: ',', dateOrder: 'ymd' }
+  #books: LinkedBook[] = []
+  #current = '1'
+  #state: BooksState | null = null
+  readonly #listeners = new Set<() => void>()
+  #working: Working | null = null
+  #notice: string | null = null
+  #queue: Promise<void> = Promise.resolve()
+  readonly #due = new Map<LinkedBook, 'edit' | 'calculation'>()
+  #timer: ReturnType<typeof setTimeout> | null = null
+  #unwatch: (() => Promise<void>) | null = null
+
+  constructor(workbook: Workbook) {
+    this.#workbook = workbook
+  }
+
+  async open(): Promise<void> {
+    await this.#enqueue(null, async () => {
+      const recovery = await this.#workbook.recover()
+      if (recovery)
+        this.#notice =
+          recovery.outcome === 'restored'
+            ? `A write was cut short the last time; ${listOf(recovery.areas.map(addressOf))} stands as it was before.`
+            : `A write was cut short the last time and could not be undone yet: ${listOf(recovery.areas.map(addressOf))} may be half written.`
+      this.#culture = await this.#workbook.culture()
+      const saved = await this.#workbook.recall()
+      const ids = Object.keys(saved)
+        .flatMap((key) => /^book\.(\d+)$/.exec(key)?.[1] ?? [])
+        .sort((a, b) => Number(a) - Number(b))
+      this.#books = ids.map((id) => this.#newBook(id, saved[`book.${id}`]))
+      this.#unwatch = await this.#workbook.watch((event) => {
+        this.#heed(event)
+      })
+    })
+    if (this.#books.length === 0) this.#books = [this.#newBook('1')]
+    this.#current = this.#books[0]?.id ?? '1'
+    this.#publish()
+    for (const book of this.#books)
+      if (book.linked) await this.#enqueue(book, (work) => book.refresh('open', work))
+  }
+
+  async close(): Promise<void> {
+    if (this.#timer) clearTimeout(this.#timer)
+    this.#listeners.clear()
+    await this.#unwatch?.()
+    await this.#queue
+  }
+
+  #newBook(id: string, saved?: Json): LinkedBook {
+    return new LinkedBook(id, this.#workbook, this.#culture, saved)
+  }
+
+  get #book(): LinkedBook {
+    const book = this.#books.find(({ id }) => id === this.#current) ?? this.#books[0]
+    if (book) return book
+    const fresh = this.#newBook('1')
+    this.#books = [fresh]
+    return fresh
+  }
+
+  // ---- the state
+
+  state(): BooksState {
+    return (this.#state ??= this.#snapshot())
+  }
+
+  subscribe(listener: () => void): () => void {
+    this.#listeners.add(listener)
+    return () => this.#listeners.delete(listener)
+  }
+
+  #snapshot(): BooksState {
+    const book = this.#book
+    return {
+      books: this.#books.map(({ id, title }) => ({ id, title })),
+      current: book.id,
+      title: book.title,
+      holdings: book.holdings,
+      returns: book.returns,
+      settings: book.settings,
+      breakdown: book.breakdown,
+      table: book.table,
+      status: book.status,
+      working: this.#working,
+      faults: book.faults,
+      offers: book.proposals.map((proposal) => ({
+        sentence: proposal.sentence,
+        button: proposal.button,
+        accept: () => {
+          book.settle(proposal, false)
+          return this.#enqueue(book, (work) => proposal.accept(work))
+        },
+        decline: () => {
+          book.settle(proposal, true)
+          this.#publish()
+        },
+      })),
+      notice: this.#notice,
+    }
+  }
+
+  #publish(): void {
+    this.#state = null
+    for (const listener of this.#listeners) listener()
+  }
+
+  // ---- one thing at a time
+
+  /**
+   * Runs an action after those before it. A Fault becomes the sentence at its field and, where figures depend on it, the status; any
+   * other error is a mistake of ours and is told as such rather than leaving "up to date" on the screen.
+   */
+  #enqueue(book: LinkedBook | null, action: (work: Work) => Promise<void>, field?: Field): Promise<void> {
+    const run = this.#queue.then(async () => {
+      const stop = new AbortController()
+      const cancel = (): void => {
+        stop.abort()
+      }
+      const work: Work = {
+        signal: stop.signal,
+        progress: (what, share) => {
+          this.#working = { what, share, cancel }
+          this.#publish()
+        },
+      }
+      this.#working = { what: 'Working', share: null, cancel }
+      this.#publish()
+      try {
+        await action(work)
+      } catch (error) {
+        this.#tell(error, book ?? this.#book, field)
+      } finally {
+        this.#working = null
+        this.#publish()
+      }
+    })
+    this.#queue = run
+    return run
+  }
+
+  #tell(error: unknown, book: LinkedBook, field?: Field): void {
+    if (!(error instanceof Fault)) {
+      book.status = {
+        kind: 'failed',
+        sentence: `Counterpoise met an error of its own: ${error instanceof Error ? error.message : String(error)}`,
+        area: null,
+      }
+      return
+    }
+    if (error.code === 'cancelled') {
+      this.#notice = 'Cancelled; nothing was changed.'
+      if (book.status.kind === 'up to date')
+        book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
+      return
+    }
+    const place = fieldOf(error) ?? field
+    const sentence = sentenceOf(error)
+    if (place) book.faults = { ...book.faults, [place]: sentence }
+    // a table that could not be written leaves the figures as good as they were
+    if (place === 'table' || field === 'table') return
+    if (book.breakdown || field === undefined) book.status = { kind: 'failed', sentence, area: areaOf(error) }
+  }
+
+  // ---- following the workbook
+
+  #heed(event: WorkbookEvent): void {
+    if (event.kind === 'waiting') {
+      this.#notice = event.waiting ? 'Waiting until the cell being edited is finished.' : null
+      this.#publish()
+      return
+    }
+    if (event.kind === 'selected' || (event.kind === 'edited' && event.ours)) return
+    for (const book of this.#books) {
+      if (event.kind === 'calculated') {
+        if (book.heedCalculation(event.sheet) && !this.#due.has(book)) this.#due.set(book, 'calculation')
+      } else if (
+        event.kind === 'edited' ? book.heedEdit(event.area, event.sheet) : book.heedMove(event.sheet)
+      ) {
+        if (book.linked) this.#due.set(book, 'edit')
+      }
+    }
+    this.#publish()
+    if (this.#due.size === 0) return
+    if (this.#timer) clearTimeout(this.#timer)
+    this.#timer = setTimeout(() => {
+      this.#timer = null
+      const due = [...this.#due]
+      this.#due.clear()
+      for (const [book, cause] of due) void this.#enqueue(book, (work) => book.refresh(cause, work))
+    }, SETTLING_MS)
+  }
+
+  // ---- commands
+
+  #command(field: Field | undefined, action: (book: LinkedBook, work: Work) => Promise<void>): Promise<void> {
+    const book = this.#book
+    this.#notice = null
+    return this.#enqueue(
+      book,
+      async (work) => {
+        if (field) {
+          const { [field]: answered, ...others } = book.faults
+          void answered
+          book.faults = others
+        }
+        await action(book, work)
+      },
+      field,
+    )
+  }
+
+  takeSelection(field: 'holdings' | 'returns' | 'capital'): Promise<void> {
+    return this.#command(field, async (book, work) => {
+      await book.take(field, await this.#workbook.selection(), work)
+    })
+  }
+
+  assignRole(header: string, role: Role): Promise<void> {
+    return this.#command('holdings', (book, work) => {
+      const proposed = book.holdings?.columns.find((column) => column.header === header)?.proposed
+      const { [header]: earlier, ...others } = book.settings.roles
+      void earlier
+      return book.choose({ roles: role === proposed ? others : { ...others, [header]: role } }, work)
+    })
+  }
+
+  markRiskless(name: string, riskless: boolean): Promise<void> {
+    return this.#command('holdings', (book, work) => {
+      const others = book.settings.riskless.filter((other) => other !== name)
+      return book.choose({ riskless: riskless ? [...others, name] : others }, work)
+    })
+  }
+
+  choose(change: Partial<Settings>): Promise<void> {
+    const field: Field =
+      'estimator' in change
+        ? 'estimator'
+        : 'lookBack' in change
+          ? 'look-back'
+          : 'periodsPerYear' in change
+            ? 'periods per year'
+            : 'capital' in change
+              ? 'capital'
+              : 'returns'
+    return this.#command(field, (book, work) => book.choose(change, work))
+  }
+
+  compute(): Promise<void> {
+    return this.#command(undefined, (book, work) => book.compute(work))
+  }
+
+  writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void> {
+    return this.#command('table', async (book) => {
+      const area = await book.writeTable(where.kind)
+      this.#notice = `Table written to ${addressOf(area)}. It follows the weights.`
+    })
+  }
+
+  reveal(area: Area): Promise<void> {
+    return this.#command(undefined, () => this.#workbook.reveal(area))
+  }
+
+  addBook(): Promise<void> {
+    const id = String(Math.max(0, ...this.#books.map((book) => Number(book.id))) + 1)
+    this.#books = [...this.#books, this.#newBook(id)]
+    return this.switchTo(id)
+  }
+
+  switchTo(id: string): Promise<void> {
+    this.#current = id
+    this.#notice = null
+    this.#publish()
+    return Promise.resolve()
+  }
+
+  rename(title: string): Promise<void> {
+    return this.#command(undefined, (book, work) => book.rename(title, work))
+  }
+
+  removeBook(): Promise<void> {
+    return this.#command(undefined, async (book) => {
+      if (book.linked) await this.#workbook.write(book.forget())
+      this.#books = this.#books.filter((other) => other !== book)
+      this.#current = this.#book.id
+      this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.`
+    })
+  }
+}
+
+/** The field of the pane a fault belongs to, where its argument names one. */
+function fieldOf(fault: Fault): Field | null {
+  switch (fault.where.argument) {
+    case 'holdings':
+    case 'weights':
+      return 'holdings'
+    case 'returns':
+    case 'risk':
+    case 'prices':
+      return 'returns'
+    case 'decay':
+    case 'estimator':
+      return 'estimator'
+    case 'look-back':
+    case 'capital':
+    case 'table':
+      return fault.where.argument
+    case 'periods_per_year':
+      return 'periods per year'
+    default:
+      return null
+  }
+}

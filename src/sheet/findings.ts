@@ -1,0 +1,27 @@
+import type { Area } from './cells'
+
+/**
+ * Something found while reading. 'stops' has to be mended before figures can be computed, 'warns' changes what the figures mean,
+ * 'notes' is good to know. The area is where to look.
+ */
+export interface Finding {
+  readonly weight: 'stops' | 'warns' | 'notes'
+  readonly sentence: string
+  readonly area: Area | null
+}
+
+const ORDER = { stops: 0, warns: 1, notes: 2 } as const
+
+/** The gravest first, otherwise as found. */
+export const byGravity = (findings: readonly Finding[]): readonly Finding[] =>
+  [...findings].sort((a, b) => ORDER[a.weight] - ORDER[b.weight])
+
+/**
+ * Many findings of one kind are one line: the first is told, the rest counted.
+ * @param sentences of one kind, the first in reading order
+ */
+export function firstAndCount(found: readonly Finding[], noun: string): readonly Finding[] {
+  const first = found[0]
+  if (!first || found.length < 3) return found
+  return [{ ...first, sentence: `${first.sentence} ${found.length - 1} more ${noun} like it.` }]
+}

@@ -1,0 +1,674 @@
+import { Fault } from '../core'
+import type { Breakdown } from './breakdown'
+import { breakDown } from './breakdown'
+import { breakdownTable } from './breakdown-table'
+import type { Area, Block, CellValue, Culture } from './cells'
+import { addressOf, isBlank, overlap, sameArea } from './cells'
+import { explain } from './explain'
+import type { Finding } from './findings'
+import type { HoldingsReading } from './holdings'
+import { readHoldings } from './holdings'
+import type { BookModel, Match } from './matching'
+import { matchHoldings, modelOf } from './matching'
+import { dateInCell, numberInCell } from './numbers'
+import type { ReturnsReading } from './returns'
+import { readReturns } from './returns'
+import type { Settings } from './settings'
+import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
+import type { Table } from './table'
+import type { Json, Seen, Workbook, WritePlan } from './workbook'
+import { countOf, dateText, listOf, quote } from './wording'
+
+/** Where in the pane a sentence belongs. */
+export type Field =
+  'holdings' | 'returns' | 'estimator' | 'look-back' | 'periods per year' | 'capital' | 'table'
+
+export type Status =
+  | { readonly kind: 'nothing linked' }
+  /** both blocks are read, nothing is computed from them yet */
+  | { readonly kind: 'ready' }
+  | { readonly kind: 'up to date' }
+  | { readonly kind: 'stale'; readonly since: Area | null; readonly sentence: string }
+  | { readonly kind: 'failed'; readonly sentence: string; readonly area: Area | null }
+
+/** A question put to the user, with what happens on yes. */
+export interface Proposal {
+  /** the same question is not asked twice */
+  readonly key: string
+  readonly sentence: string
+  readonly button: string
+  readonly accept: (work: Work) => Promise<void>
+}
+
+/** A long action under way: where it tells its progress and hears that it is not wanted any more. */
+export interface Work {
+  readonly signal: AbortSignal
+  progress(what: string, share: number | null): void
+}
+
+type Part = 'holdings' | 'returns' | 'table' | 'capital'
+
+/** Refreshes that follow recalculations alone, without an edit by the user, before the book takes itself for its own cause. */
+const MOST_UNASKED_REFRESHES = 3
+
+/** A Fault whose place in the sheet is known. */
+class PlacedFault extends Fault {
+  constructor(
+    readonly finding: Finding,
+    argument: Field,
+  ) {
+    super('shape', finding.sentence, '', { argument })
+  }
+}
+
+/** The sentence for a fault, once: findings carry theirs already. */
+export const sentenceOf = (fault: Fault, area?: Area | null): string =>
+  fault instanceof PlacedFault
+    ? fault.finding.sentence
+    : explain(fault, () => (area ? addressOf(area) : null))
+
+export const areaOf = (fault: Fault): Area | null =>
+  fault instanceof PlacedFault ? fault.finding.area : null
+
+/**
+ * One book of a workbook: a holdings block, a returns block, the figures computed from them, and the table they were written to.
+ * It knows how to read, compute, write and refresh; when to do so is its owner's business. Its methods throw Faults.
+ */
+export class LinkedBook {
+  title: string
+  settings: Settings
+  holdings: HoldingsReading | null = null
+  returns: ReturnsReading | null = null
+  breakdown: Breakdown | null = null
+  table: Area | null = null
+  status: Status = { kind: 'nothing linked' }
+  faults: { readonly [F in Field]?: string } = {}
+  proposals: readonly Proposal[] = []
+  /** whether names in the workbook hold the ranges, so that they follow inserted rows and survive a save */
+  linked = false
+
+  #holdingsBlock: Block | null = null
+  #weightsAreFormulas = false
+  #returnsAreFormulas = false
+  #capitalArea: Area | null = null
+  #model: { match: Match; returns: ReturnsReading; choices: string; book: BookModel } | null = null
+  #written: Table | null = null
+  #unasked = 0
+  readonly #asked = new Set<string>()
+  /** what has changed in the sheet since it was read */
+  readonly #changed = { holdings: false, returns: false, since: null as Area | null }
+
+  constructor(
+    readonly id: string,
+    readonly workbook: Workbook,
+    readonly culture: Culture,
+    saved?: Json,
+  ) {
+    const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
+    this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
+    this.linked = entry !== null
+    const { settings, unread } = entry
+      ? settingsFromJson(entry.settings as Json)
+      : { settings: DEFAULT_SETTINGS, unread: [] }
+    this.settings = settings
+    if (unread.length > 0)
+      this.faults = {
+        holdings: `Settings saved with this workbook could not be read and stand at their defaults: ${listOf(unread)}.`,
+      }
+  }
+
+  /** What is saved with the workbook about this book. */
+  toJson(): Json {
+    return { title: this.title, settings: settingsToJson(this.settings) }
+  }
+
+  keptName(part: Part): string {
+    return `${this.id}_${part}`
+  }
+
+  // ---- what the sheet's events mean
+
+  /** Notes an edit; tells whether it concerns this book and so calls for a refresh. */
+  heedEdit(area: Area | null, sheet: string): boolean {
+    const touches = (part: Area | null | undefined): boolean =>
+      part !== null && part !== undefined && (area ? overlap(area, part) !== null : part.sheet === sheet)
+    const holdings = touches(this.holdings?.area) || touches(this.#capitalArea)
+    const returns = touches(this.returns?.area)
+    const beside =
+      area !== null &&
+      this.linked &&
+      (this.#isJustBeyond(this.holdings?.area, area) || this.#isJustBeyond(this.returns?.area, area))
+    if (holdings) this.#changed.holdings = true
+    if (returns) this.#changed.returns = true
+    if (!holdings && !returns) return beside
+    this.#unasked = 0
+    this.#changed.since ??= area
+    if (this.breakdown) {
+      const place = area ? addressOf(area) : sheet
+      this.status = { kind: 'stale', since: area, sentence: `Stale since ${place} was edited.` }
+    }
+    return true
+  }
+
+  #isJustBeyond(part: Area | undefined, area: Area): boolean {
+    if (!part) return false
+    const wider = { ...part, rows: part.rows + 1, columns: part.columns + 1 }
+    return overlap(wider, area) !== null
+  }
+
+  /** Notes a recalculation of a sheet; tells whether formulas of this book may have changed by it. */
+  heedCalculation(sheet: string): boolean {
+    if (!this.linked || !this.breakdown || this.#unasked > MOST_UNASKED_REFRESHES) return false
+    const weights = this.#weightsAreFormulas && this.holdings?.area.sheet === sheet
+    const returns = this.#returnsAreFormulas && this.returns?.area.sheet === sheet
+    if (returns) this.#changed.returns = true
+    return weights || returns
+  }
+
+  /** Rows, columns or a sheet came or went: everything has to be looked at again. */
+  heedMove(sheet: string): boolean {
+    const parts = [this.holdings?.area, this.returns?.area, this.table, this.#capitalArea]
+    return this.linked && parts.some((part) => part?.sheet === sheet)
+  }
+
+  // ---- reading
+
+  #at(part: Part, area: Area | null | undefined): Area | { kept: string } {
+    return this.linked ? { kept: this.keptName(part) } : (area ?? { kept: this.keptName(part) })
+  }
+
+  /** Takes an area the user points at as the holdings or the returns. */
+  async take(part: 'holdings' | 'returns' | 'capital', area: Area, work: Work): Promise<void> {
+    if (part === 'capital') return this.#takeCapital(area, work)
+    if (area.rows * area.columns === 1) {
+      const [seen] = await this.workbook.look([{ at: area, region: true }])
+      const region = seen?.region
+      if (region && region.rows * region.columns > 1)
+        this.#propose({
+          key: `${part} ${addressOf(region)}`,
+          sentence: `Use the filled cells around it, ${addressOf(region)}, as the ${part}?`,
+          button: 'Use them',
+          accept: (later) => this.take(part, region, later),
+        })
+      throw new Fault(
+        'selection',
+        'found one cell',
+        `a block is needed, with all rows and columns of the ${part}`,
+        {
+          argument: part,
+        },
+      )
+    }
+    if (part === 'holdings') {
+      const block = await this.workbook.read(area, { shape: true, signal: work.signal })
+      if (this.holdings === null && this.title === `Book ${this.id}`) this.title = area.sheet
+      this.#holdingsBlock = block
+      this.#changed.holdings = false
+      this.#readHoldings()
+    } else await this.#readReturns(area, work)
+    // names still hold the earlier ranges until the next compute
+    this.linked = false
+    this.#settle(part)
+  }
+
+  async #takeCapital(area: Area, work: Work): Promise<void> {
+    const block = await this.workbook.read(area, { signal: work.signal })
+    const value = block.values[0]?.[0] ?? ''
+    const capital = numberInCell(value, this.culture)
+    if (area.rows * area.columns !== 1 || capital === null || capital <= 0)
+      throw new Fault(
+        'selection',
+        area.rows * area.columns !== 1
+          ? `found ${countOf(area.rows * area.columns, 'cell')}`
+          : `found ${isBlank(value) ? 'a blank' : quote(value)}`,
+        'one cell with a number above 0 is needed',
+        { argument: 'capital' },
+      )
+    this.#capitalArea = area
+    this.settings = { ...this.settings, capital }
+    if (this.linked) await this.workbook.write({ patches: [], keep: { [this.keptName('capital')]: area } })
+    this.#readHoldings()
+  }
+
+  #readHoldings(): void {
+    if (!this.#holdingsBlock) return
+    this.holdings = readHoldings(this.#holdingsBlock, this.settings, this.culture)
+  }
+
+  async #readReturns(area: Area, work: Work): Promise<void> {
+    const block = await this.workbook.read(area, {
+      shape: true,
+      signal: work.signal,
+      progress: (share) => {
+        work.progress('Reading the returns', share)
+      },
+    })
+    this.#changed.returns = false
+    this.returns = readReturns(block, this.settings, this.culture)
+    // formulas are looked for along the newest and the oldest row only: a block is filled one way
+    const row = (k: number): Area => ({ ...area, row: area.row + k, rows: 1 })
+    const edges = await this.workbook.look([
+      { at: row(area.rows - 1), formulas: true },
+      { at: row(Math.min(1, area.rows - 1)), formulas: true },
+    ])
+    this.#returnsAreFormulas = edges.some((edge) => edge?.formulas?.some((cells) => cells.some(isFormula)))
+  }
+
+  /** After a block was read: what the pane says, and whether there is enough to compute from. */
+  #settle(part: 'holdings' | 'returns'): void {
+    const stop = (part === 'holdings' ? this.holdings : this.returns)?.findings.find(
+      ({ weight }) => weight === 'stops',
+    )
+    const { [part]: gone, ...others } = this.faults
+    void gone
+    this.faults = stop ? { ...others, [part]: stop.sentence } : others
+    if (!this.holdings || !this.returns) return
+    this.status = this.breakdown
+      ? {
+          kind: 'stale',
+          since: null,
+          sentence: `Stale: the ${part} were read anew. Compute brings the figures up to date.`,
+        }
+      : { kind: 'ready' }
+  }
+
+  // ---- choices
+
+  /** Applies a change of settings; what it makes necessary is done at the next compute or refresh. */
+  async choose(change: Partial<Settings>, work: Work): Promise<void> {
+    this.settings = { ...this.settings, ...change }
+    if ('capital' in change && change.capital === null) this.#capitalArea = null
+    if ('roles' in change || 'capital' in change) {
+      this.#readHoldings()
+      if (this.holdings) this.#settle('holdings')
+    }
+    if (this.returns && ('content' in change || 'orientation' in change || 'returnKind' in change)) {
+      await this.#readReturns(this.returns.area, work)
+      this.#settle('returns')
+    }
+    if (this.linked) {
+      await this.#save()
+      await this.refresh('compute', work)
+    } else if (this.breakdown) this.#compute()
+  }
+
+  /** Gives the book another title; a written table carries it. */
+  async rename(title: string, work: Work): Promise<void> {
+    this.title = title.trim() === '' ? `Book ${this.id}` : title.trim()
+    if (!this.linked) return
+    await this.#save()
+    await this.refresh('compute', work)
+  }
+
+  // ---- computing
+
+  /**
+   * Computes from what is read; the model is kept until the returns, the matching or the settings behind it change, so that a new
+   * weight costs one pass.
+   *
+   * @throws Fault with the first finding that stops
+   */
+  #compute(): void {
+    const { holdings, returns } = this
+    if (!holdings)
+      throw new Fault(
+        'missing',
+        'no holdings are selected',
+        'select the holdings block and use the selection',
+        { argument: 'holdings' },
+      )
+    if (!returns)
+      throw new Fault(
+        'missing',
+        'no returns are selected',
+        'select the returns block and use the selection',
+        { argument: 'returns' },
+      )
+    const match = matchHoldings(holdings, returns, this.settings.riskless)
+    for (const [field, findings] of [
+      ['holdings', holdings.findings],
+      ['returns', returns.findings],
+      ['holdings', match.findings],
+    ] as const) {
+      const stop = findings.find(({ weight }) => weight === 'stops')
+      if (stop) throw new PlacedFault(stop, field)
+    }
+    const choices = JSON.stringify([this.settings.estimator, this.settings.lookBack])
+    const known = this.#model
+    const book =
+      known?.returns === returns && known.choices === choices && sameSeries(known.match, match)
+        ? known.book
+        : modelOf(match, holdings, returns, this.settings)
+    this.#model = { match, returns, choices, book }
+    this.breakdown = breakDown(holdings, returns, match, book, this.settings)
+    this.faults = {}
+  }
+
+  /** Computes on the user's word, links the ranges, and brings a written table along. */
+  async compute(work: Work): Promise<void> {
+    this.#unasked = 0
+    if (this.linked) {
+      await this.refresh('compute', work)
+      return
+    }
+    if (this.#changed.holdings && this.holdings) await this.take('holdings', this.holdings.area, work)
+    if (this.#changed.returns && this.returns) await this.take('returns', this.returns.area, work)
+    this.#compute()
+    await this.#save({
+      [this.keptName('holdings')]: this.holdings?.area ?? null,
+      [this.keptName('returns')]: this.returns?.area ?? null,
+      [this.keptName('capital')]: this.#capitalArea,
+    })
+    this.linked = true
+    // a look now finds formulas among the weights, brings an earlier table along and sees what lies beyond the blocks
+    await this.refresh('compute', work)
+  }
+
+  async #save(keep?: WritePlan['keep']): Promise<void> {
+    await this.workbook.write({
+      patches: [],
+      ...(keep ? { keep } : {}),
+      remember: { [`book.${this.id}`]: this.toJson() },
+    })
+  }
+
+  /**
+   * Looks at the sheet again in one request, reads anew what has changed, recomputes, and rewrites the table in one request when its
+   * values differ.
+   *
+   * @param cause 'edit' by the user, 'calculation' of formulas, 'open' (nothing is written), 'compute' on the user's word
+   */
+  async refresh(cause: 'edit' | 'calculation' | 'open' | 'compute', work: Work): Promise<void> {
+    const kept = (part: Part): { at: Area | { kept: string } } => ({ at: { kept: this.keptName(part) } })
+    const [holdings, returns, table, capital] = await this.workbook.look([
+      { ...kept('holdings'), values: true, shape: true, formulas: true, region: true },
+      { ...kept('returns'), region: true },
+      { ...kept('table'), formulas: true },
+      { ...kept('capital'), values: true },
+    ])
+    if (!holdings) throw goneFault('holdings')
+    if (!returns) throw goneFault('returns')
+
+    const before = this.#holdingsBlock
+    this.#weightsAreFormulas = holdings.formulas?.some((cells) => cells.some(isFormula)) ?? false
+    const capitalValue = capital?.values ? numberInCell(capital.values[0]?.[0] ?? '', this.culture) : null
+    const capitalMoved = capital !== null && capital !== undefined && capitalValue !== this.settings.capital
+    if (capital && capitalMoved) {
+      if (capitalValue === null || capitalValue <= 0)
+        throw new PlacedFault(
+          {
+            weight: 'stops',
+            sentence: `${addressOf(capital.area)}: found ${quote(capital.values?.[0]?.[0] ?? '')} as the capital; a number above 0 is needed.`,
+            area: capital.area,
+          },
+          'capital',
+        )
+      this.settings = { ...this.settings, capital: capitalValue }
+    }
+    this.#capitalArea = capital?.area ?? null
+    const sameHoldings =
+      before !== null &&
+      sameArea(before.area, holdings.area) &&
+      sameValues(before.values, holdings.values ?? []) &&
+      !capitalMoved
+    const sameReturns =
+      this.returns !== null && sameArea(this.returns.area, returns.area) && !this.#changed.returns
+    if (cause === 'calculation' && sameHoldings && sameReturns) return
+    if (cause === 'calculation' && ++this.#unasked > MOST_UNASKED_REFRESHES) {
+      this.status = {
+        kind: 'failed',
+        sentence: `The weights changed ${MOST_UNASKED_REFRESHES} times without an edit of yours: it seems that the written table feeds its own weights. Refreshing has stopped; Compute starts it again.`,
+        area: holdings.area,
+      }
+      return
+    }
+    const values = holdings.values ?? []
+    this.#holdingsBlock = {
+      area: holdings.area,
+      values,
+      ...(holdings.hiddenRows ? { hiddenRows: holdings.hiddenRows } : {}),
+      ...(holdings.merged ? { merged: holdings.merged } : {}),
+    }
+    this.#changed.holdings = false
+    this.#readHoldings()
+    if (!sameReturns) await this.#readReturns(returns.area, work)
+    this.table = table?.area ?? null
+    this.#compute()
+    this.#changed.since = null
+    this.status = { kind: 'up to date' }
+    if (table) await this.#bringTableAlong(table, cause)
+    await this.#lookBeyond(holdings, returns)
+  }
+
+  async #bringTableAlong(seen: Seen, cause: 'edit' | 'calculation' | 'open' | 'compute'): Promise<void> {
+    if (!this.breakdown) return
+    const table = breakdownTable(this.title, this.breakdown)
+    const fits = seen.area.rows === table.cells.length && seen.area.columns === table.widths.length
+    if (
+      fits &&
+      seen.formulas &&
+      table.cells.every((row, r) =>
+        row.every((cell, c) => sameCell(cell.value, seen.formulas?.[r]?.[c] ?? '')),
+      )
+    ) {
+      this.#written = table
+      return
+    }
+    if (cause === 'open') {
+      this.status = {
+        kind: 'stale',
+        since: seen.area,
+        sentence: `The table in ${addressOf(seen.area)} differs from the figures computed now. Compute brings it up to date.`,
+      }
+      return
+    }
+    const known = fits && this.#written !== null && sameFormats(this.#written, table)
+    await this.#writeAt(seen.area, table, 'blank', {
+      ours: seen.area,
+      ...(known && seen.formulas ? { seen: seen.formulas } : {}),
+    })
+  }
+
+  // ---- writing
+
+  /** Writes the table to a new sheet, at the selection, or where it was. */
+  async writeTable(
+    where: 'new sheet' | 'selection' | 'where it was',
+    over: 'blank' | 'replace' = 'blank',
+    at?: Area,
+  ): Promise<Area> {
+    if (!this.breakdown)
+      throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'table' })
+    const table = breakdownTable(this.title, this.breakdown)
+    const target = at ?? (await this.#targetOf(where))
+    try {
+      return await this.#writeAt(
+        target,
+        table,
+        over,
+        this.table ? { ours: this.table } : {},
+        where === 'new sheet' ? target.sheet : undefined,
+      )
+    } catch (fault) {
+      if (fault instanceof Fault && fault.code === 'occupied')
+        this.#propose({
+          key: `over ${addressOf(target)}`,
+          sentence: `${explain(fault)} Write over what stands there?`,
+          button: 'Write over it',
+          accept: async () => {
+            await this.writeTable(where, 'replace', target)
+          },
+        })
+      throw fault
+    }
+  }
+
+  async #targetOf(where: 'new sheet' | 'selection' | 'where it was'): Promise<Area> {
+    if (where === 'selection') return this.workbook.selection()
+    if (where === 'where it was') {
+      if (!this.table)
+        throw new Fault('missing', 'no table has been written yet', 'choose a new sheet or a selection', {
+          argument: 'table',
+        })
+      return this.table
+    }
+    const taken = new Set((await this.workbook.sheets()).map((name) => name.toLowerCase()))
+    let sheet = 'Risk'
+    for (let k = 2; taken.has(sheet.toLowerCase()); k++) sheet = `Risk ${k}`
+    return { sheet, row: 0, column: 0, rows: 1, columns: 1 }
+  }
+
+  async #writeAt(
+    target: Area,
+    table: Table,
+    over: 'blank' | 'replace',
+    ground: { ours?: Area; seen?: readonly (readonly CellValue[])[] },
+    sheet?: string,
+  ): Promise<Area> {
+    const { row, column } = target
+    const area: Area = {
+      sheet: target.sheet,
+      row,
+      column,
+      rows: table.cells.length,
+      columns: table.widths.length,
+    }
+    const moved = !sameArea(this.table, area)
+    await this.workbook.write({
+      ...(sheet === undefined ? {} : { sheet }),
+      patches: [{ at: { sheet: target.sheet, row, column }, table, over, ...ground }],
+      ...(moved ? { keep: { [this.keptName('table')]: area } } : {}),
+    })
+    this.table = area
+    this.#written = table
+    return area
+  }
+
+  /** Names that this book keeps in the workbook, to be taken away with it. */
+  forget(): WritePlan {
+    const parts: Part[] = ['holdings', 'returns', 'table', 'capital']
+    return {
+      patches: [],
+      keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
+      remember: { [`book.${this.id}`]: null },
+    }
+  }
+
+  // ---- what has grown beyond the linked blocks
+
+  #propose(proposal: Proposal): void {
+    if (this.#asked.has(proposal.key)) return
+    this.proposals = [...this.proposals.filter(({ key }) => key !== proposal.key), proposal]
+  }
+
+  /** Takes a question off; one that was declined is not asked again. */
+  settle(proposal: Proposal, declined: boolean): void {
+    if (declined) this.#asked.add(proposal.key)
+    this.proposals = this.proposals.filter(({ key }) => key !== proposal.key)
+  }
+
+  async #lookBeyond(holdings: Seen, returns: Seen): Promise<void> {
+    this.proposals = this.proposals.filter(({ key }) => !key.startsWith('include '))
+    const own = [holdings.area, returns.area, this.table].filter((area) => area !== null)
+    const grown = (seen: Seen, sideways: boolean): Area | null => {
+      const { area, region } = seen
+      if (!region) return null
+      const rows = Math.max(area.rows, region.row + region.rows - area.row)
+      const columns = sideways
+        ? Math.max(area.columns, region.column + region.columns - area.column)
+        : area.columns
+      const wider = { ...area, rows, columns }
+      if (sameArea(wider, area)) return null
+      return own.some((other) => !sameArea(other, area) && overlap(other, wider)) ? null : wider
+    }
+    const moreHoldings = grown(holdings, false)
+    if (moreHoldings && !this.#asked.has(`include ${addressOf(moreHoldings)}`)) {
+      const reading = readHoldings(
+        await this.workbook.read(moreHoldings, { shape: true }),
+        this.settings,
+        this.culture,
+      )
+      const more = reading.holdings.slice(this.holdings?.holdings.length ?? 0)
+      if (more.length > 0 && reading.findings.every(({ weight }) => weight !== 'stops'))
+        this.#propose({
+          key: `include ${addressOf(moreHoldings)}`,
+          sentence: `${countOf(more.length, 'further holding')} found below ${addressOf(holdings.area)}: ${listOf(more.map(({ name }) => quote(name)))}.`,
+          button: 'Include',
+          accept: (work) => this.#include('holdings', moreHoldings, work),
+        })
+    }
+    const moreReturns = grown(returns, true)
+    if (moreReturns && this.returns && !this.#asked.has(`include ${addressOf(moreReturns)}`)) {
+      const sentence = await this.#describeMore(returns.area, moreReturns)
+      if (sentence)
+        this.#propose({
+          key: `include ${addressOf(moreReturns)}`,
+          sentence,
+          button: 'Include',
+          accept: (work) => this.#include('returns', moreReturns, work),
+        })
+    }
+  }
+
+  /** Says what a wider returns block would add; null when what stands there is neither dates nor named series. */
+  async #describeMore(area: Area, wider: Area): Promise<string | null> {
+    const isAcross = this.returns?.orientation === 'dates across'
+    const edge = isAcross
+      ? { ...wider, column: area.column + area.columns, columns: wider.columns - area.columns, rows: 1 }
+      : { ...wider, row: area.row + area.rows, rows: wider.rows - area.rows, columns: 1 }
+    const heads = isAcross
+      ? { ...wider, row: area.row + area.rows, rows: wider.rows - area.rows, columns: 1 }
+      : { ...wider, column: area.column + area.columns, columns: wider.columns - area.columns, rows: 1 }
+    const cellsOf = async (part: Area): Promise<readonly CellValue[]> =>
+      part.rows > 0 && part.columns > 0 ? (await this.workbook.read(part)).values.flat() : []
+    const along = await cellsOf(edge)
+    const beside = await cellsOf(heads)
+    const found: string[] = []
+    if (this.returns?.dates && along.length > 0) {
+      const days = along.map((value) => dateInCell(value, this.culture))
+      if (days.some((day) => day === null)) return null
+      const newest = Math.max(...days.map((day) => day ?? 0))
+      found.push(`${countOf(days.length, 'newer date')} to ${dateText(newest)}`)
+    }
+    if (beside.length > 0) {
+      if (beside.some((value) => typeof value !== 'string' || isBlank(value))) return null
+      found.push(
+        `${countOf(beside.length, 'further series', 'further series')} (${listOf(beside.map(quote))})`,
+      )
+    }
+    return found.length > 0 ? `${listOf(found)} found beside ${addressOf(area)}.` : null
+  }
+
+  async #include(part: 'holdings' | 'returns', wider: Area, work: Work): Promise<void> {
+    await this.workbook.write({ patches: [], keep: { [this.keptName(part)]: wider } })
+    await this.refresh('compute', work)
+  }
+}
+
+const isFormula = (value: CellValue): boolean =>
+  typeof value === 'string' && value.startsWith('=') && value.length > 1
+
+const goneFault = (part: 'holdings' | 'returns'): Fault =>
+  new Fault(
+    'missing',
+    `the range of the ${part} is gone: its cells or its sheet were deleted`,
+    `select the ${part} again and use the selection`,
+    { argument: part },
+  )
+
+const sameSeries = (a: Match, b: Match): boolean =>
+  a.seriesOf.length === b.seriesOf.length && a.seriesOf.every((series, i) => series === b.seriesOf[i])
+
+const sameValues = (a: Block['values'], b: Block['values']): boolean =>
+  a.length === b.length &&
+  a.every((row, r) => row.length === b[r]?.length && row.every((value, c) => value === b[r]?.[c]))
+
+/** Text that begins like a formula may come back behind an apostrophe. */
+const sameCell = (ours: CellValue, typed: CellValue): boolean =>
+  ours === typed || (typeof ours === 'string' && typed === `'${ours}`)
+
+const sameFormats = (a: Table, b: Table): boolean =>
+  a.cells.length === b.cells.length &&
+  a.cells.every((row, r) =>
+    row.every((cell, c) => cell.format === b.cells[r]?.[c]?.format && cell.mark === b.cells[r]?.[c]?.mark),
+  )
