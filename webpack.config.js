@@ -9,6 +9,8 @@ const { deployed } = require('./src/build/manifest.cjs')
 const { contentSecurityPolicy, officeHost } = require('./src/build/policy.cjs')
 const { version } = require('./package.json')
 
+/** ADDIN_URL: the https folder a release is served from; without it everything points at the development host. */
+const toDeployment = (text) => deployed(text, process.env.ADDIN_URL)
 const at = (...parts) => path.resolve(__dirname, ...parts)
 
 /** What the bundles have in common. Types are checked by tsc, not here; how sources are compiled stands in .swcrc. */
@@ -72,7 +74,7 @@ function addin(_env, { mode = 'production' }) {
     new CopyPlugin({
       patterns: [
         { from: 'assets/icon-*.png', to: 'assets/[name][ext]' },
-        { from: 'manifest.xml', transform: (xml) => deployed(xml.toString(), process.env.ADDIN_URL) },
+        { from: 'manifest.xml', transform: (xml) => toDeployment(xml.toString()) },
       ],
     }),
   )
@@ -84,7 +86,13 @@ function functions(_env, { mode = 'production' }) {
   return base('functions', mode, {
     entry: { functions: './src/entry/functions.ts' },
     output: { path: at('dist'), filename: '[name].js', globalObject: 'globalThis', publicPath: '' },
-    plugins: [new FunctionsMetadata({ source: at('src/sheet/functions.ts'), filename: 'functions.json' })],
+    plugins: [
+      new FunctionsMetadata({
+        source: at('src/sheet/functions.ts'),
+        namespace: 'POISE',
+        moved: toDeployment,
+      }),
+    ],
   })
 }
 

@@ -1,4 +1,3 @@
-const fs = require('node:fs')
 const { generateCustomFunctionsMetadata } = require('custom-functions-metadata')
 const { Compilation, sources, WebpackError } = require('webpack')
 
@@ -6,7 +5,7 @@ const { Compilation, sources, WebpackError } = require('webpack')
 const reference = /^([A-Z]{1,3}[0-9]+|R[0-9]*(C[0-9]*)?|C[0-9]*)$/
 
 /** What the generator lets through and the host or the store does not; one sentence for each. */
-function objections({ id, name, description, helpUrl, parameters, result }) {
+function objections({ id, name, description, helpUrl, parameters }) {
   const found = []
   if (id !== name) found.push(`id and name differ ("${name}")`)
   if (!/^[A-Z][A-Z0-9._]{2,}$/.test(id)) found.push('an id has 3 or more capitals, digits, "_" or "."')
@@ -15,13 +14,56 @@ function objections({ id, name, description, helpUrl, parameters, result }) {
   if (!helpUrl || !URL.canParse(helpUrl) || new URL(helpUrl).protocol !== 'https:') {
     found.push(`@helpurl is "${helpUrl ?? ''}"; an https address is needed`)
   }
-  if (!result.type) found.push('the type of the result is unknown')
   for (const parameter of parameters) {
     if (!parameter.type) found.push(`the type of ${parameter.name} is unknown`)
     if (parameter.repeating) found.push(`${parameter.name} repeats; write unknown[][] for a block of cells`)
     if (!parameter.description) found.push(`@param ${parameter.name} is missing`)
   }
   return found.map((sentence) => `${id}: ${sentence}`)
+}
+
+const escape = (text) =>
+  text.replace(/[&<>"]/g, (sign) => ({ '&': '&amp;', '<': '&lt;', '>': '&gt;', '"': '&quot;' })[sign])
+
+/** The page that each function's help address points into. */
+function helpPage(functions, namespace) {
+  const entries = functions.map(({ id, description, helpUrl, parameters }) => {
+    const names = parameters.map(({ name, optional }) => (optional ? `[${name}]` : name)).join(', ')
+    const rows = parameters.map(
+      (parameter) => `<dt>${parameter.name}</dt><dd>${escape(parameter.description)}</dd>`,
+    )
+    return `<section id="${new URL(helpUrl).hash.slice(1)}">
+<h2>${namespace}.${id}(${names})</h2>
+<p>${escape(description)}</p>
+<dl>
+${rows.join('\n')}
+</dl>
+</section>`
+  })
+  return `<!doctype html>
+<html lang="en">
+<head>
+<meta charset="utf-8" />
+<meta name="viewport" content="width=device-width, initial-scale=1" />
+<meta http-equiv="Content-Security-Policy" content="default-src 'none'; style-src 'unsafe-inline'" />
+<title>Counterpoise: worksheet functions</title>
+<style>
+:root { color-scheme: light dark; font: 1rem/1.5 system-ui, sans-serif; }
+body { max-width: 46rem; margin: 2rem auto; padding: 0 1rem; }
+h2 { font: 600 1rem/1.5 ui-monospace, monospace; overflow-wrap: anywhere; margin-top: 2rem; }
+dt { font-family: ui-monospace, monospace; }
+dd { margin: 0 0 0.5rem 1.5rem; }
+</style>
+</head>
+<body>
+<h1>Worksheet functions</h1>
+<p>Every figure is an estimate from the numbers given, not advice. Local rules and licensed practice come first. Arguments in square
+brackets may be left out. Results are fractions: 0.12 is 12 %. A wrong argument gives #VALUE!, a figure that does not exist #N/A; the
+cell's error card names the argument, the row and the column.</p>
+${entries.join('\n')}
+</body>
+</html>
+`
 }
 
 /**
@@ -35,16 +77,22 @@ async function describeFunctions(file) {
   const { metadataJson, errors } = await generateCustomFunctionsMetadata(file)
   if (errors.length > 0) throw new Error(errors.join('\n'))
   if (!metadataJson) throw new Error(`${file} declares no worksheet function`)
-  const wrong = JSON.parse(metadataJson).functions.flatMap(objections)
+  const { functions } = JSON.parse(metadataJson)
+  const wrong = functions.flatMap(objections)
   if (wrong.length > 0) throw new Error(wrong.join('\n'))
-  return `${metadataJson}\n`
+  // Cells reach the functions as plain numbers, texts and booleans, richer data types as their plain value.
+  return `${JSON.stringify({ functions }, null, 2)}\n`
 }
 
-/** Emits the description beside the bundle. */
+/**
+ * Emits functions.json, which describes the functions of `source`, and help.html beside the bundle; `moved` turns the
+ * addresses in it from the development host to where the add-in is deployed.
+ */
 class FunctionsMetadata {
-  constructor({ source, filename }) {
+  constructor({ source, namespace, moved }) {
     this.source = source
-    this.filename = filename
+    this.namespace = namespace
+    this.moved = moved
   }
 
   apply(compiler) {
@@ -52,14 +100,11 @@ class FunctionsMetadata {
       const stage = Compilation.PROCESS_ASSETS_STAGE_ADDITIONAL
       compilation.hooks.processAssets.tapPromise({ name: 'FunctionsMetadata', stage }, async () => {
         compilation.fileDependencies.add(this.source)
-        if (!fs.existsSync(this.source)) {
-          compilation.warnings.push(
-            new WebpackError(`${this.source} does not exist yet; no ${this.filename}`),
-          )
-          return
-        }
         try {
-          compilation.emitAsset(this.filename, new sources.RawSource(await describeFunctions(this.source)))
+          const description = this.moved(await describeFunctions(this.source))
+          compilation.emitAsset('functions.json', new sources.RawSource(description))
+          const page = helpPage(JSON.parse(description).functions, this.namespace)
+          compilation.emitAsset('help.html', new sources.RawSource(page))
         } catch (error) {
           compilation.errors.push(new WebpackError(error.message))
         }
@@ -68,4 +113,4 @@ class FunctionsMetadata {
   }
 }
 
-module.exports = { FunctionsMetadata, describeFunctions }
+module.exports = { FunctionsMetadata, describeFunctions, objections }

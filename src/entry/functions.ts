@@ -1,1 +1,4 @@
-export {}
+import { associateFunctions } from '../excel'
+import { worksheetFunctions } from '../sheet'
+
+associateFunctions(worksheetFunctions)

@@ -1,1 +1,42 @@
-document.querySelector('#pane')?.replaceChildren(`Counterpoise ${COUNTERPOISE_VERSION}`)
+import { excelWorkbook, hostTheme, loadOnOpen, whenReady } from '../excel'
+import { openPane } from '../pane'
+import { openBooks, type Books } from '../sheet'
+
+/** The host announces no change of its colours: they are asked for again whenever the pane is looked at. */
+function onLook(listener: () => void): () => void {
+  window.addEventListener('focus', listener)
+  document.addEventListener('visibilitychange', listener)
+  return () => {
+    window.removeEventListener('focus', listener)
+    document.removeEventListener('visibilitychange', listener)
+  }
+}
+
+/** Once a table is linked, the workbook starts the add-in when it opens, so that the table goes on following its book. */
+function startWithTable(books: Books): void {
+  const end = books.subscribe(look)
+  function look() {
+    if (!books.state().table) return
+    end()
+    // An older host cannot: then the table is up to date again once the pane is opened by hand.
+    loadOnOpen(true).catch(() => undefined)
+  }
+  look()
+}
+
+async function start(root: HTMLElement): Promise<void> {
+  const { host } = await whenReady()
+  if (host === null) {
+    root.textContent = 'Counterpoise works inside a workbook: open it from the Data tab in Excel.'
+    return
+  }
+  const books = await openBooks(excelWorkbook())
+  openPane(root, books, { theme: hostTheme, onThemeChange: onLook, version: COUNTERPOISE_VERSION })
+  startWithTable(books)
+}
+
+const root = document.getElementById('pane')!
+start(root).catch((error: unknown) => {
+  const found = error instanceof Error ? error.message : String(error)
+  root.textContent = `Counterpoise ${COUNTERPOISE_VERSION} could not start: ${found}. Close the pane and open it again.`
+})
