@@ -141,7 +141,7 @@ function proposeRoles(
     const role = header === null ? null : (HEADER_SIGNS.find(([, sign]) => sign.test(header))?.[0] ?? null)
     if (role === null || role === 'ignore' || !content || content.filled.length === 0) return role
     const wantsText = role === 'name' || role === 'group'
-    return content.numeric !== wantsText ? take(role) : null
+    return (wantsText ? !content.numeric : content.numbers.length > 0) ? take(role) : null
   })
   return fromHeader.map((role, k): Role => {
     const content = contents[k]

@@ -286,7 +286,7 @@ export function readReturns(
       }
       faults.push({
         weight: 'stops',
-        sentence: `${addressOf(cell)}: found ${isCellError(value) ? `the error ${String(value)}` : quote(value)}; a number is needed, or a blank cell for a gap.`,
+        sentence: `${addressOf(cell)}: found ${isCellError(value) ? `the error ${String(value)}` : typeof value === 'boolean' ? String(value).toUpperCase() : quote(value)}; a number is needed, or a blank cell for a gap.`,
         area: cell,
       })
     }
