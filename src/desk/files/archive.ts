@@ -1,0 +1,132 @@
+/**
+ * What the file library leaves out, read from and written into the parts of the .xlsx package itself: defined names that are constants
+ * or formulas, their comments and visibility, and the mark that tells a spilling formula from an old array formula.
+ *
+ * Source, read: ECMA-376 part 1, 18.2.5 (definedName), 18.3.1.4 (c, attribute cm), 18.9 (metadata); [MS-XLSX] 2.6.160 (dynamic array
+ * properties).
+ */
+import { unzip, zip } from '@cj-tech-master/excelts/browser'
+
+export type Parts = Record<string, Uint8Array>
+
+export interface StoredName {
+  readonly name: string
+  /** A reference or formula, without the equals sign. */
+  readonly formula: string
+  readonly comment?: string
+  readonly hidden?: boolean
+  /** Position of the sheet the name is limited to. */
+  readonly sheet?: number
+}
+
+const WORKBOOK = 'xl/workbook.xml'
+const RELATIONS = 'xl/_rels/workbook.xml.rels'
+const CONTENT_TYPES = '[Content_Types].xml'
+const METADATA = 'xl/metadata.xml'
+const SPILLING =
+  '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n' +
+  '<metadata xmlns="http://schemas.openxmlformats.org/spreadsheetml/2006/main" ' +
+  'xmlns:xda="http://schemas.microsoft.com/office/spreadsheetml/2017/dynamicarray">' +
+  '<metadataTypes count="1"><metadataType name="XLDAPR" minSupportedVersion="120000" copy="1" pasteAll="1" pasteValues="1" merge="1" ' +
+  'splitFirst="1" rowColShift="1" clearFormats="1" clearComments="1" assign="1" coerce="1" cellMeta="1"/></metadataTypes>' +
+  '<futureMetadata name="XLDAPR" count="1"><bk><extLst><ext uri="{bdbb8cdc-fa1e-496e-a857-3c3f30c029c3}">' +
+  '<xda:dynamicArrayProperties fDynamic="1" fCollapsed="0"/></ext></extLst></bk></futureMetadata>' +
+  '<cellMetadata count="1"><bk><rc t="1" v="0"/></bk></cellMetadata></metadata>'
+
+export async function unpack(bytes: ArrayBuffer | Uint8Array): Promise<Parts> {
+  const parts: Parts = {}
+  for await (const entry of unzip(new Uint8Array(bytes)).entries()) {
+    if (!entry.isDirectory) parts[entry.path] = await entry.bytes()
+  }
+  return parts
+}
+
+/** With every entry's time fixed: the same workbook gives the same bytes. */
+export async function pack(parts: Parts): Promise<ArrayBuffer> {
+  const archive = zip({ reproducible: true })
+  for (const [path, bytes] of Object.entries(parts)) archive.add(path, bytes)
+  const bytes = await archive.bytes()
+  return bytes.buffer.slice(bytes.byteOffset, bytes.byteOffset + bytes.byteLength) as ArrayBuffer
+}
+
+export const textOf = (parts: Parts, path: string): string =>
+  parts[path] ? new TextDecoder().decode(parts[path]) : ''
+
+export function namesIn(parts: Parts): StoredName[] {
+  const entries = textOf(parts, WORKBOOK).matchAll(/<definedName\b([^>]*)>([^<]*)<\/definedName>/g)
+  return [...entries].map(([, attributes = '', formula = '']) => {
+    const attribute = (name: string): string | undefined => {
+      const found = new RegExp(`\\b${name}="([^"]*)"`).exec(attributes)?.[1]
+      return found === undefined ? undefined : plain(found)
+    }
+    const sheet = attribute('localSheetId')
+    const comment = attribute('comment')
+    return {
+      name: attribute('name') ?? '',
+      formula: plain(formula),
+      ...(comment === undefined ? {} : { comment }),
+      ...(attribute('hidden') === '1' ? { hidden: true } : {}),
+      ...(sheet === undefined ? {} : { sheet: Number(sheet) }),
+    }
+  })
+}
+
+export function putNames(parts: Parts, names: readonly StoredName[]): void {
+  if (names.length === 0) return
+  const entries = names.map(({ name, formula, comment, hidden, sheet }) => {
+    const attributes = [
+      `name="${marked(name)}"`,
+      ...(comment ? [`comment="${marked(comment)}"`] : []),
+      ...(sheet === undefined ? [] : [`localSheetId="${sheet}"`]),
+      ...(hidden ? ['hidden="1"'] : []),
+    ]
+    return `<definedName ${attributes.join(' ')}>${marked(formula)}</definedName>`
+  })
+  replace(parts, WORKBOOK, '</sheets>', `</sheets><definedNames>${entries.join('')}</definedNames>`)
+}
+
+/** Marks every array formula as one that spills. */
+export function markSpilling(parts: Parts): void {
+  let found = false
+  for (const path of Object.keys(parts).filter((name) => /^xl\/worksheets\/[^/]+\.xml$/.test(name))) {
+    const before = textOf(parts, path)
+    const after = before.replace(/<c (r="[A-Z]+\d+"[^>]*)>(?=<f t="array")/g, '<c $1 cm="1">')
+    if (after === before) continue
+    found = true
+    parts[path] = new TextEncoder().encode(after)
+  }
+  if (!found) return
+  parts[METADATA] = new TextEncoder().encode(SPILLING)
+  const type = 'application/vnd.openxmlformats-officedocument.spreadsheetml.sheetMetadata+xml'
+  replace(
+    parts,
+    CONTENT_TYPES,
+    '</Types>',
+    `<Override PartName="/${METADATA}" ContentType="${type}"/></Types>`,
+  )
+  const relation = 'http://schemas.openxmlformats.org/officeDocument/2006/relationships/sheetMetadata'
+  replace(
+    parts,
+    RELATIONS,
+    '</Relationships>',
+    `<Relationship Id="rIdSpilling" Type="${relation}" Target="metadata.xml"/></Relationships>`,
+  )
+}
+
+function replace(parts: Parts, path: string, from: string, to: string): void {
+  const before = textOf(parts, path)
+  if (!before.includes(from)) throw new Error(`${path}: found no ${from}, so the workbook cannot be saved`)
+  parts[path] = new TextEncoder().encode(before.replace(from, () => to))
+}
+
+const ENTITIES = { '&lt;': '<', '&gt;': '>', '&quot;': '"', '&apos;': "'", '&amp;': '&' } as const
+
+const plain = (xml: string): string =>
+  xml
+    .replace(/&#x([\dA-Fa-f]+);|&#(\d+);/g, (_, hex: string | undefined, decimal: string) =>
+      String.fromCodePoint(hex ? parseInt(hex, 16) : Number(decimal)),
+    )
+    .replace(/&(?:lt|gt|quot|apos|amp);/g, (entity) => ENTITIES[entity as keyof typeof ENTITIES])
+
+const marked = (text: string): string =>
+  Object.entries(ENTITIES).reduceRight((xml, [entity, char]) => xml.replaceAll(char, entity), text)

@@ -1,0 +1,424 @@
+/**
+ * Opening and saving .xlsx in the desk.
+ *
+ * Values here are echoed, so they are compared exactly. What a file must contain is stated from ECMA-376 part 1 (read) and [MS-XLSX]
+ * (read), with the paragraph beside it; that other programs open the file is checked with LibreOffice where it is installed.
+ */
+import { execFileSync, spawnSync } from 'node:child_process'
+import { mkdtempSync, readFileSync, rmSync, writeFileSync } from 'node:fs'
+import { tmpdir } from 'node:os'
+import { join } from 'node:path'
+import { Workbook } from '@cj-tech-master/excelts/browser'
+import { BooleanNumber, CellValueType, type ICellData, type IWorkbookData } from '@univerjs/core'
+import { FormulaDataModel, IDefinedNamesService } from '@univerjs/engine-formula'
+import { openWorkbook, saveWorkbook, sentenceOf, type Settings } from '../../src/desk/files'
+import { textOf, unpack } from '../../src/desk/files/archive'
+import { needsArray, shownFormula, storedFormula } from '../../src/desk/files/formula-text'
+import { createCustomFunctions, type CustomFunctionsStandIn } from '../../src/desk/functions'
+import { headlessGrid, type Grid } from '../../src/desk/grid'
+
+let grid: Grid
+let functions: CustomFunctionsStandIn
+let settings: Settings
+
+beforeEach(() => {
+  grid = headlessGrid()
+  functions = createCustomFunctions(grid)
+  functions.associate({
+    DOUBLED: (block: number[][]) => block.map((row) => row.map((value) => value * 2)),
+    TOTAL: (block: number[][]) => block.flat().reduce((sum, value) => sum + value, 0),
+  })
+  const parameters = [{ name: 'block', type: 'any', dimensionality: 'matrix' }]
+  functions.register(
+    { functions: ['DOUBLED', 'TOTAL'].map((name) => ({ id: name, name, parameters })) },
+    'POISE',
+  )
+  settings = new Map()
+})
+
+afterEach(() => {
+  functions.dispose()
+  grid.dispose()
+})
+
+const book = () => {
+  const active = grid.api.getActiveWorkbook()
+  if (!active) throw new Error('no workbook')
+  return active
+}
+const calculated = () => grid.api.getFormula().onCalculationResultApplied()
+
+async function show(cells: Record<string, ICellData>, more: Partial<IWorkbookData['sheets'][string]> = {}) {
+  grid.api.disposeUnit(book().getId())
+  grid.api.createWorkbook({
+    id: 'made',
+    name: 'Made',
+    sheetOrder: ['a'],
+    sheets: { a: { id: 'a', name: 'My sheet', rowCount: 100, columnCount: 30, ...more } },
+  })
+  for (const [address, cell] of Object.entries(cells))
+    book().getActiveSheet().getRange(address).setValue(cell)
+  await calculated()
+}
+
+/** Saves, and opens what was saved. */
+async function again() {
+  const bytes = await saveWorkbook(grid, settings)
+  const report = await openWorkbook(grid, bytes, settings)
+  return { bytes, report }
+}
+
+const cell = (address: string, sheet = book().getActiveSheet()) => {
+  const range = sheet.getRange(address)
+  const own = sheet.getSheet().getCellMatrix().getValue(range.getRow(), range.getColumn())
+  const spilled = grid.univer.__getInjector().get(FormulaDataModel).getArrayFormulaCellData()
+  const value =
+    own?.v ?? spilled[book().getId()]?.[sheet.getSheetId()]?.[range.getRow()]?.[range.getColumn()]?.v
+  return { ...own, v: value }
+}
+const look = (address: string) => book().getActiveSheet().getRange(address).getCellStyleData()
+const parsed = async (bytes: ArrayBuffer) => {
+  const workbook = new Workbook()
+  await workbook.xlsx.loadFromFiles(await unpack(bytes))
+  return workbook
+}
+
+describe('values', () => {
+  it('come back with every digit and type', async () => {
+    await show({
+      A1: { v: 0.1 + 0.2 },
+      A2: { v: 1e-300 },
+      A3: { v: 'Größe <&> "x"' },
+      A4: { v: 1, t: CellValueType.BOOLEAN },
+      A5: { v: 45_000.25, s: { n: { pattern: 'yyyy-mm-dd hh:mm' } } },
+      A6: { v: -0.125, s: { n: { pattern: '0.0%;[Red]-0.0%' } } },
+    })
+    await again()
+    expect(cell('A1').v).toBe(0.1 + 0.2)
+    expect(cell('A2').v).toBe(1e-300)
+    expect(cell('A3').v).toBe('Größe <&> "x"')
+    expect(cell('A4')).toMatchObject({ v: 1, t: CellValueType.BOOLEAN })
+    expect(cell('A5').v).toBe(45_000.25)
+    expect(look('A5')?.n).toEqual({ pattern: 'yyyy-mm-dd hh:mm' })
+    expect(cell('A6').v).toBe(-0.125)
+    expect(look('A6')?.n).toEqual({ pattern: '0.0%;[Red]-0.0%' })
+  })
+
+  it.each(['=1+1', '+3', '-3', '@name', '00123', '#N/A or so'])(
+    'that are the text %s stay text',
+    async (text) => {
+      await show({ A1: { v: text, t: CellValueType.FORCE_STRING }, B1: { f: '=ISTEXT(A1)' } })
+      await again()
+      expect(cell('A1').f ?? null).toBeNull()
+      expect(cell('A1').v).toBe(text)
+      expect(cell('B1').v).toBe(1)
+    },
+  )
+
+  it('that are errors come back as errors', async () => {
+    await show({ A1: { f: '=1/0' }, B1: { f: '=NA()' }, C1: { f: '=IFERROR(A1,"caught")' } })
+    const { bytes } = await again()
+    expect([cell('A1').v, cell('B1').v, cell('C1').v]).toEqual(['#DIV/0!', '#N/A', 'caught'])
+    expect((await parsed(bytes)).getWorksheet('My sheet')?.getCell('A1').result).toEqual({ error: '#DIV/0!' })
+  })
+})
+
+describe('formulas', () => {
+  it('come back with their results, and calculate again', async () => {
+    await show({ A1: { v: 2 }, A2: { v: 3 }, B1: { f: '=SUM(A1:A2)*10' } })
+    const { bytes, report } = await again()
+    expect((await parsed(bytes)).getWorksheet('My sheet')?.getCell('B1').result).toBe(50)
+    expect(cell('B1')).toMatchObject({ f: '=SUM(A1:A2)*10', v: 50 })
+    book().getActiveSheet().getRange('A1').setValue(4)
+    await calculated()
+    expect(cell('B1').v).toBe(70)
+    expect(report.notCalculated).toEqual([])
+  })
+
+  it('that spill come back as one formula that spills, without anything in its way', async () => {
+    await show({ A1: { v: 1 }, A2: { v: 2 }, A3: { v: 3 }, C1: { f: '=POISE.DOUBLED(A1:A3)' } })
+    const { bytes } = await again()
+    expect([cell('C1').v, cell('C2').v, cell('C3').v]).toEqual([2, 4, 6])
+    book().getActiveSheet().getRange('A3').setValue(30)
+    await calculated()
+    expect([cell('C1').v, cell('C2').v, cell('C3').v]).toEqual([2, 4, 60])
+    const parts = await unpack(bytes)
+    // 18.3.1.40 (f): t="array" with the covered cells in ref; 18.3.1.4 (c): cm points into the cell metadata.
+    expect(textOf(parts, 'xl/worksheets/sheet1.xml')).toContain(
+      '<c r="C1" cm="1"><f t="array" ref="C1:C3">_xldudf_POISE_DOUBLED(A1:A3)</f><v>2</v></c>',
+    )
+    expect(textOf(parts, 'xl/worksheets/sheet1.xml')).toContain('<c r="C3"><v>6</v></c>')
+    expect(textOf(parts, 'xl/metadata.xml')).toContain('fDynamic="1"')
+  })
+
+  it('of an add-in are read in the form of the file and in the form of the screen', async () => {
+    const workbook = new Workbook()
+    const sheet = workbook.addWorksheet('S')
+    sheet.getCell('A1').value = 21
+    sheet.getCell('B1').value = { formula: '_xldudf_POISE_TOTAL(A1)', result: 1 }
+    sheet.getCell('B2').value = { formula: 'POISE.TOTAL(A1)', result: 1 }
+    sheet.getCell('B3').value = { formula: '_xlfn.XLOOKUP(21,A1,A1)+_xlfn._xlws.FILTER(A1,A1>0)', result: 1 }
+    await openWorkbook(grid, new Uint8Array(await workbook.xlsx.writeBuffer()), settings)
+    expect([cell('B1').f, cell('B2').f]).toEqual(['=POISE.TOTAL(A1)', '=POISE.TOTAL(A1)'])
+    expect([cell('B1').v, cell('B2').v, cell('B3').v]).toEqual([21, 21, 42])
+  })
+
+  it('that the desk cannot calculate are named with their place', async () => {
+    const workbook = new Workbook()
+    workbook.addWorksheet('S').getCell('B7').value = { formula: 'NOSUCHFUNCTION(1)', result: 5 }
+    const report = await openWorkbook(grid, new Uint8Array(await workbook.xlsx.writeBuffer()), settings)
+    expect(report.notCalculated).toEqual(['S!B7'])
+    expect(sentenceOf(report)).toBe('Opened 1 sheet. 1 formula cannot be calculated here, first S!B7.')
+  })
+
+  // Prefixes of newer functions: [MS-XLSX] 2.2.2, future-function-list (read); LET's variables likewise.
+  it.each([
+    ['=XLOOKUP(A1,B1:B3,C1:C3)', '_xlfn.XLOOKUP(A1,B1:B3,C1:C3)'],
+    ['=SORT(FILTER(A1:A3,A1:A3>0))', '_xlfn._xlws.SORT(_xlfn._xlws.FILTER(A1:A3,A1:A3>0))'],
+    ['=LET(x,A1*2,y,x+1,x&"x"&y)', '_xlfn.LET(_xlpm.x,A1*2,_xlpm.y,_xlpm.x+1,_xlpm.x&"x"&_xlpm.y)'],
+    ['=BYROW(A1:B2,LAMBDA(r,SUM(r)))', '_xlfn.BYROW(A1:B2,_xlfn.LAMBDA(_xlpm.r,SUM(_xlpm.r)))'],
+    ['=STDEV.S(A1:A9)+NORM.S.INV(0.9)', '_xlfn.STDEV.S(A1:A9)+_xlfn.NORM.S.INV(0.9)'],
+    ['=\'POISE.TOTAL(x\'!A1&"POISE.TOTAL(1)"', '\'POISE.TOTAL(x\'!A1&"POISE.TOTAL(1)"'],
+    ['=SUM(POISE.TOTAL(A1:A2),1)', 'SUM(_xldudf_POISE_TOTAL(A1:A2),1)'],
+    ['=Table1[POISE.TOTAL]', 'Table1[POISE.TOTAL]'],
+  ])('%s is stored as %s, and shown as before', (shown, stored) => {
+    expect(storedFormula(shown, (name) => name === 'POISE.TOTAL')).toBe(stored)
+    expect(shownFormula(stored)).toBe(shown)
+  })
+
+  it.each([
+    ['=SUM(A1:A3)', false],
+    ['=A1*B1+SUM(A1:A3)', false],
+    ['=SUM(A1:A3*B1:B3)', true],
+    ['=SUM((A1:A3>0)*1)', true],
+    ["=SUM(1-'My sheet'!A1:A3)", true],
+    ['=POISE.TOTAL(A1:A3)', true],
+    ['=A1&"x*A1:A3"', false],
+  ])('%s is stored as an array formula: %s', (formula, array) => {
+    expect(needsArray(formula, (name) => name === 'POISE.TOTAL')).toBe(array)
+  })
+})
+
+describe('look', () => {
+  it('of cells comes back, empty ones included', async () => {
+    const style = {
+      bl: 1,
+      it: 1,
+      cl: { rgb: '#C00000' },
+      bg: { rgb: '#DDEBF7' },
+      ht: 3,
+      tb: 3,
+      bd: { t: { s: 1, cl: { rgb: '#333333' } }, b: { s: 7, cl: { rgb: '#000000' } } },
+    }
+    await show({ B2: { v: 1, s: style }, B3: { s: { bg: { rgb: '#FFFF00' } } } })
+    await again()
+    expect(look('B2')).toMatchObject(style)
+    expect(look('B3')).toMatchObject({ bg: { rgb: '#FFFF00' } })
+  })
+
+  it('of sheets comes back: widths, heights, hidden rows and columns, merged cells, frozen panes, gridlines, tab colour', async () => {
+    await show(
+      { A1: { v: 'title' }, D9: { v: 1 } },
+      {
+        columnData: { 0: { w: 180 }, 2: { hd: BooleanNumber.TRUE } },
+        rowData: { 0: { h: 40 }, 4: { hd: BooleanNumber.TRUE } },
+        mergeData: [{ startRow: 0, endRow: 0, startColumn: 0, endColumn: 3 }],
+        freeze: { xSplit: 1, ySplit: 3, startRow: 3, startColumn: 1 },
+        showGridlines: BooleanNumber.FALSE,
+        tabColor: '#00AA55',
+      },
+    )
+    await again()
+    const sheet = book().getActiveSheet().getSheet().getConfig()
+    expect(sheet.columnData[0]?.w).toBe(180)
+    expect(sheet.columnData[2]?.hd).toBe(BooleanNumber.TRUE)
+    expect(sheet.rowData[0]?.h).toBe(40)
+    expect(sheet.rowData[4]?.hd).toBe(BooleanNumber.TRUE)
+    expect(sheet.mergeData).toMatchObject([{ startRow: 0, endRow: 0, startColumn: 0, endColumn: 3 }])
+    expect(sheet.freeze).toMatchObject({ xSplit: 1, ySplit: 3 })
+    expect(sheet.showGridlines).toBe(BooleanNumber.FALSE)
+    expect(sheet.tabColor).toBe('#00AA55')
+  })
+
+  it('of theme colours is read through the theme and its tint', async () => {
+    const workbook = new Workbook()
+    const target = workbook.addWorksheet('S').getCell('A1')
+    target.value = 1
+    target.fill = { type: 'pattern', pattern: 'solid', fgColor: { theme: 1, tint: 0.5 } as { theme: number } }
+    await openWorkbook(grid, new Uint8Array(await workbook.xlsx.writeBuffer()), settings)
+    // Black half-way to white, 18.8.19: L' = L(1 - tint) + tint = 0.5, so 128 of 255 by rounding.
+    expect(look('A1')?.bg).toEqual({ rgb: '#808080' })
+  })
+
+  it('of the three kinds of hidden sheet is kept apart', async () => {
+    const workbook = new Workbook()
+    workbook.addWorksheet('Shown')
+    workbook.addWorksheet('Hidden', { state: 'hidden' })
+    workbook.addWorksheet('Deep', { state: 'veryHidden' })
+    await openWorkbook(grid, new Uint8Array(await workbook.xlsx.writeBuffer()), settings)
+    const { bytes } = await again()
+    const states = (await parsed(bytes)).worksheets.map(({ name, state }) => [name, state])
+    expect(states).toEqual([
+      ['Shown', 'visible'],
+      ['Hidden', 'hidden'],
+      ['Deep', 'veryHidden'],
+    ])
+    expect(book().getActiveSheet().getSheetName()).toBe('Shown')
+  })
+})
+
+describe('names and tables', () => {
+  it('come back: names of ranges, constants and formulas, with their visibility', async () => {
+    await show({ A1: { v: 5 } })
+    book().insertDefinedName('Spread_base', "'My sheet'!$A$1:$A$1")
+    book().insertDefinedName('Half', '=0.5')
+    book().insertDefinedName('Twice', "=2*'My sheet'!$A$1")
+    grid.univer.__getInjector().get(IDefinedNamesService).registerDefinedName('made', {
+      id: 'hidden',
+      name: 'Link_1',
+      formulaOrRefString: "'My sheet'!$A$1",
+      comment: 'kept for the add-in',
+      hidden: true,
+      localSheetId: 'AllDefaultWorkbook',
+    })
+    book().getActiveSheet().getRange('B1').setValue({ f: '=Spread_base*Half' })
+    await calculated()
+    const { bytes } = await again()
+    expect(textOf(await unpack(bytes), 'xl/workbook.xml')).toContain(
+      '<definedName name="Half">0.5</definedName>',
+    )
+    const names = book()
+      .getDefinedNames()
+      .map((name) => [name.getName(), name.getFormulaOrRefString()])
+    expect(names).toEqual([
+      ['Spread_base', "'My sheet'!$A$1:$A$1"],
+      ['Half', '=0.5'],
+      ['Twice', "=2*'My sheet'!$A$1"],
+      ['Link_1', "'My sheet'!$A$1"],
+    ])
+    const hidden = grid.univer
+      .__getInjector()
+      .get(IDefinedNamesService)
+      .getValueByName(book().getId(), 'Link_1')
+    expect(hidden).toMatchObject({ hidden: true, comment: 'kept for the add-in' })
+    expect(cell('B1').v).toBe(2.5)
+  })
+
+  it('come back: tables, with their name and place', async () => {
+    await show({
+      A1: { v: 'Name' },
+      B1: { v: 'Weight' },
+      A2: { v: 'x' },
+      B2: { v: 0.5 },
+      A3: { v: 'y' },
+      B3: { v: 0.25 },
+    })
+    await book().addTable('a', 'Holdings', { startRow: 0, endRow: 2, startColumn: 0, endColumn: 1 })
+    const { report } = await again()
+    expect(report.notKept).toEqual([])
+    expect(book().getTableList()).toMatchObject([
+      { name: 'Holdings', range: { startRow: 0, endRow: 2, startColumn: 0, endColumn: 1 } },
+    ])
+    expect([cell('A1').v, cell('B1').v, cell('B3').v]).toEqual(['Name', 'Weight', 0.25])
+  })
+})
+
+describe('settings', () => {
+  it('travel with the file, whatever their length, and show nowhere', async () => {
+    await show({ A1: { v: 1 } })
+    settings.set('link', { ranges: ['A', 'B'], on: true })
+    settings.set('long', 'é'.repeat(100_000))
+    const bytes = await saveWorkbook(grid, settings)
+    settings.clear()
+    settings.set('of another workbook', 1)
+    await openWorkbook(grid, bytes, settings)
+    expect([...settings.keys()]).toEqual(['link', 'long'])
+    expect(settings.get('link')).toEqual({ ranges: ['A', 'B'], on: true })
+    expect(settings.get('long')).toBe('é'.repeat(100_000))
+    expect(
+      book()
+        .getSheets()
+        .map((sheet) => sheet.getSheetName()),
+    ).toEqual(['My sheet'])
+    expect((await parsed(bytes)).getWorksheet('Counterpoise settings')?.state).toBe('veryHidden')
+  })
+})
+
+describe('what is not kept', () => {
+  it('is said in one sentence', async () => {
+    const workbook = new Workbook()
+    const sheet = workbook.addWorksheet('S')
+    sheet.getCell('A1').value = { richText: [{ text: 'a' }, { text: 'b', font: { bold: true } }] }
+    sheet.getCell('A2').note = 'a note'
+    sheet.addConditionalFormatting({
+      ref: 'A1:A2',
+      rules: [{ type: 'cellIs', operator: 'greaterThan', formulae: [1], priority: 1, style: {} }],
+    })
+    sheet.getCell('A3').dataValidation = { type: 'whole', operator: 'between', formulae: [1, 2] }
+    const report = await openWorkbook(grid, new Uint8Array(await workbook.xlsx.writeBuffer()), settings)
+    expect(cell('A1').v).toBe('ab')
+    expect(sentenceOf(report)).toBe(
+      'Opened 1 sheet. Not kept here: 1 sheet with comments, 1 cell with formats on part of its text, 1 conditional format, 1 data validation.',
+    )
+  })
+
+  it('a file that is no workbook is refused, and the grid keeps what it has', async () => {
+    await show({ A1: { v: 'mine' } })
+    settings.set('mine', 1)
+    await expect(openWorkbook(grid, new TextEncoder().encode('Name,Weight'), settings)).rejects.toThrow(
+      'The file is not an .xlsx workbook that can be read here.',
+    )
+    expect(cell('A1').v).toBe('mine')
+    expect(settings.get('mine')).toBe(1)
+  })
+})
+
+describe('another program', () => {
+  const office = ['soffice', 'libreoffice'].find((name) => spawnSync('which', [name]).status === 0)
+  // On the build machine its absence is a failure: the test would otherwise pass by not looking.
+  const run = office || process.env['CI'] ? it : it.skip
+  const title = office || process.env['CI'] ? '' : ' (skipped: LibreOffice is not installed)'
+
+  run(
+    `LibreOffice opens a saved file with the same values${title}`,
+    async () => {
+      if (!office) throw new Error('LibreOffice is not installed on the build machine')
+      await show({
+        A1: { v: 'Größe, "x"' },
+        A2: { v: 0.125 },
+        A3: { v: 3 },
+        B1: { v: '=1+1', t: CellValueType.FORCE_STRING },
+        B2: { f: '=SUM(A2:A3)*Half' },
+        C1: { f: '=TRANSPOSE(A2:A3)' },
+      })
+      book().insertDefinedName('Half', '=0.5')
+      await calculated()
+      settings.set('kept', 1)
+      const folder = mkdtempSync(join(tmpdir(), 'files-'))
+      try {
+        writeFileSync(join(folder, 'saved.xlsx'), new Uint8Array(await saveWorkbook(grid, settings)))
+        execFileSync(
+          office,
+          [
+            `-env:UserInstallation=file://${folder}/profile`,
+            '--headless',
+            '--convert-to',
+            'csv:Text - txt - csv (StarCalc):44,34,76',
+            '--outdir',
+            folder,
+            join(folder, 'saved.xlsx'),
+          ],
+          { stdio: 'ignore', timeout: 100_000 },
+        )
+        expect(readFileSync(join(folder, 'saved.csv'), 'utf8').trim().split('\n')).toEqual([
+          '"Größe, ""x""",=1+1,0.125,3',
+          '0.125,1.5625,,',
+          '3,,,',
+        ])
+      } finally {
+        rmSync(folder, { recursive: true, force: true })
+      }
+    },
+    120_000,
+  )
+})
