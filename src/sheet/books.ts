@@ -124,7 +124,9 @@ class OpenBooks implements Books {
   async close(): Promise<void> {
     if (this.#timer) clearTimeout(this.#timer)
     this.#listeners.clear()
-    await this.#unwatch?.()
+    const unwatch = this.#unwatch
+    this.#unwatch = null
+    await unwatch?.()
     await this.#queue
   }
 

@@ -61,11 +61,9 @@ class PlacedFault extends Fault {
   }
 }
 
-/** The sentence for a fault, once: findings carry theirs already. */
-export const sentenceOf = (fault: Fault, area?: Area | null): string =>
-  fault instanceof PlacedFault
-    ? fault.finding.sentence
-    : explain(fault, () => (area ? addressOf(area) : null))
+/** The sentence for a fault as the pane says it: beside the field concerned, so without the name of that field. */
+export const sentenceOf = (fault: Fault): string =>
+  fault instanceof PlacedFault ? fault.finding.sentence : explain(fault, () => '')
 
 export const areaOf = (fault: Fault): Area | null =>
   fault instanceof PlacedFault ? fault.finding.area : null

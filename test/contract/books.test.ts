@@ -1,0 +1,490 @@
+/**
+ * The main job without a screen: a user's workbook, the add-in's own port over the stand-in for the host's API, and the books that
+ * link holdings, returns and a written table. Numbers come from the small generator below and are for these tests alone.
+ */
+import type { Books, BooksState, CellValue } from '../../src/sheet'
+import { openBooks } from '../../src/sheet'
+import { closeAll, open } from './workbook-fixture'
+
+const FRIDAY = 46353
+
+/** Returns between -2% and 2% from a linear congruential generator (constants of Numerical Recipes, from memory), five digits each. */
+function returnsOf(names: readonly string[], weeks: number): CellValue[][] {
+  let state = 12345
+  const next = (): number => {
+    state = (Math.imul(state, 1664525) + 1013904223) >>> 0
+    return Math.round((state / 2 ** 32 - 0.5) * 4000) / 100000
+  }
+  return [
+    ['Week ending', ...names],
+    ...Array.from({ length: weeks }, (_, t) => {
+      const moves = names.map(next)
+      // the hedge goes with the first series, so that being short of it lowers risk
+      return [
+        FRIDAY - 7 * (weeks - 1 - t),
+        ...moves.map((move, i) => (names[i] === 'Index hedge' ? (moves[0] ?? 0) + move / 10 : move)),
+      ]
+    }),
+  ]
+}
+
+const NAMES = ['Northern shares', 'Southern shares', 'Harbour bonds', 'Index hedge']
+const HOLDINGS: CellValue[][] = [
+  ['Holding', 'Class', 'Weight'],
+  ['Northern shares', 'Shares', 0.5],
+  ['Southern shares', 'Shares', 0.3],
+  ['Harbour bonds', 'Bonds', 0.4],
+  ['Index hedge', 'Shares', -0.2],
+]
+const RETURNS = returnsOf(NAMES, 60)
+
+/** The definition, loop by loop: the oracle for what the books show. */
+function contributionsOf(returns: CellValue[][], weights: readonly number[], perYear: number): number[] {
+  const rows = returns.slice(1).map((row) => row.slice(1).map(Number))
+  const means = weights.map((_, i) => rows.reduce((sum, row) => sum + (row[i] ?? 0), 0) / rows.length)
+  const covariance = (i: number, j: number): number =>
+    rows.reduce(
+      (sum, row) => sum + ((row[i] ?? 0) - (means[i] ?? 0)) * ((row[j] ?? 0) - (means[j] ?? 0)),
+      0,
+    ) /
+    (rows.length - 1)
+  const marginals = weights.map((_, i) => weights.reduce((sum, w, j) => sum + w * covariance(i, j), 0))
+  const volatility = Math.sqrt(weights.reduce((sum, w, i) => sum + w * (marginals[i] ?? 0), 0))
+  return weights.map((w, i) => (w * (marginals[i] ?? 0) * Math.sqrt(perYear)) / volatility)
+}
+
+const running: Books[] = []
+let settleLast = (): Promise<void> => Promise.resolve()
+afterEach(async () => {
+  await settleLast()
+  for (const books of running.splice(0)) await books.close()
+  closeAll()
+})
+
+/** A workbook with holdings from A3 of "Sheet1" and returns from A1 of "Returns", and the books over it. */
+async function desk({ holdings = HOLDINGS, returns = RETURNS } = {}) {
+  const host = open()
+  const { user, office, settle } = host
+  settleLast = settle
+  user.type('Sheet1', 'A3', holdings)
+  await office.Excel.run(async (context) => {
+    context.workbook.worksheets.add('Returns')
+    await context.sync()
+  })
+  user.type('Returns', 'A1', returns)
+  await settle()
+  const books = await openBooks(host.book)
+  running.push(books)
+  /** Waits until edits have settled and what they set off is done. */
+  const quiet = async (): Promise<BooksState> => {
+    await settle()
+    await new Promise((resolve) => setTimeout(resolve, 200))
+    await settle()
+    while (books.state().working) await new Promise((resolve) => setTimeout(resolve, 10))
+    return books.state()
+  }
+  const select = (sheet: string, ...addresses: string[]): void => {
+    user.select(sheet, ...addresses)
+  }
+  const compute = async (): Promise<BooksState> => {
+    select('Sheet1', `A3:C${2 + holdings.length}`)
+    await books.takeSelection('holdings')
+    select('Returns', `A1:${'ABCDEFGH'[(returns[0]?.length ?? 1) - 1] ?? 'A'}${returns.length}`)
+    await books.takeSelection('returns')
+    await books.compute()
+    return quiet()
+  }
+  const writeTable = async (): Promise<BooksState> => {
+    await books.writeTable({ kind: 'new sheet' })
+    return quiet()
+  }
+  const valuesAt = async (sheet: string, address: string): Promise<unknown[][]> =>
+    (await host.cells(sheet, address))['values'] ?? []
+  return { ...host, books, quiet, select, compute, writeTable, valuesAt }
+}
+
+describe('Compute', () => {
+  test('selecting holdings and returns and computing gives the contributions of the definition', async () => {
+    const { compute } = await desk()
+    const state = await compute()
+    expect(state.status).toEqual({ kind: 'up to date' })
+    const expected = contributionsOf(RETURNS, [0.5, 0.3, 0.4, -0.2], 52)
+    expected.forEach((contribution, i) => {
+      expect(state.breakdown?.decomposition.contribution[i]).toBeCloseTo(contribution, 13)
+    })
+    expect(state.breakdown?.byGroup.map(({ header, labels }) => [header, labels])).toEqual([
+      ['Class', ['Shares', 'Bonds']],
+    ])
+  })
+
+  test('computing without a block says which is missing, at its field', async () => {
+    const { books, select } = await desk()
+    await books.compute()
+    expect(books.state().faults.holdings).toBe(
+      'No holdings are selected; select the holdings block and use the selection.',
+    )
+    select('Sheet1', 'A3:C7')
+    await books.takeSelection('holdings')
+    await books.compute()
+    expect(books.state().faults.returns).toBe(
+      'No returns are selected; select the returns block and use the selection.',
+    )
+  })
+
+  test.each<[string, string[], RegExp]>([
+    ['two areas', ['A3:A7', 'C3:C7'], /several areas|two areas|2 areas/i],
+    ['one cell', ['B4'], /^Found one cell; a block is needed/],
+  ])('a selection of %s is refused in one sentence', async (_, areas, sentence) => {
+    const { books, select } = await desk()
+    select('Sheet1', ...areas)
+    await books.takeSelection('holdings')
+    expect(books.state().faults.holdings).toMatch(sentence)
+    expect(books.state().holdings).toBeNull()
+  })
+
+  test('one cell inside a block offers the block around it', async () => {
+    const { books, select } = await desk()
+    select('Sheet1', 'B5')
+    await books.takeSelection('holdings')
+    const [offer] = books.state().offers
+    expect(offer?.sentence).toBe('Use the filled cells around it, Sheet1!A3:C7, as the holdings?')
+    await offer?.accept()
+    expect(books.state().holdings?.holdings).toHaveLength(4)
+    expect(books.state().offers).toEqual([])
+    expect(books.state().faults.holdings).toBeUndefined()
+  })
+
+  test('whole columns are read as far as they are used', async () => {
+    const { books, select } = await desk()
+    select('Sheet1', 'A:C')
+    await books.takeSelection('holdings')
+    expect(books.state().holdings?.holdings.map(({ name }) => name)).toEqual(NAMES)
+  })
+
+  test('a holding without returns is named with its cell until it is marked riskless', async () => {
+    const { books, compute } = await desk({ holdings: [...HOLDINGS, ['Cash', 'Cash', 0.1]] })
+    await compute()
+    expect(books.state().faults.holdings).toBe(
+      'Sheet1!C8: found no returns for “Cash” in Returns!A1:E61; a series of that name is needed, or mark the holding as riskless.',
+    )
+    await books.markRiskless('Cash', true)
+    await books.compute()
+    const { breakdown, status } = books.state()
+    expect(status.kind).toBe('up to date')
+    expect(breakdown?.decomposition.contribution[4]).toBe(0)
+  })
+})
+
+describe('The written table', () => {
+  test('it follows a new weight with one request that reads and one that writes', async () => {
+    const { books, compute, writeTable, user, office, quiet, valuesAt } = await desk()
+    await compute()
+    const { table } = await writeTable()
+    expect(table).toMatchObject({ sheet: 'Risk', row: 0, column: 0 })
+    office.counts.reset()
+    user.type('Sheet1', 'C4', 0.8)
+    const state = await quiet()
+    expect([office.counts.syncs, office.counts.reads, office.counts.writes]).toEqual([2, 1, 1])
+    expect(state.status).toEqual({ kind: 'up to date' })
+    const expected = contributionsOf(RETURNS, [0.8, 0.3, 0.4, -0.2], 52)
+    const written = await valuesAt('Risk', 'A5:F8')
+    written.forEach((row, i) => {
+      expect(row[0]).toBe(NAMES[i])
+      expect(row[5]).toBeCloseTo(expected[i] ?? NaN, 13)
+    })
+    expect(books.state().breakdown?.net).toBeCloseTo(1.3, 14)
+  })
+
+  test('parts, total, sum and difference stand in it, and the parts add up', async () => {
+    const { compute, writeTable, valuesAt } = await desk()
+    await compute()
+    await writeTable()
+    const rows = await valuesAt('Risk', 'A4:J11')
+    expect(rows[0]).toEqual([
+      'Holding', 'Class', 'Weight', 'Stand-alone risk', 'Marginal contribution to risk', 'Contribution to risk', 'Share of risk',
+      'Beta to portfolio', 'Correlation with portfolio', 'Note',
+    ]) // prettier-ignore
+    const sum = rows.slice(1, 5).reduce((total, row) => total + Number(row[5]), 0)
+    const total = Number(rows[5]?.[5])
+    expect(rows.slice(5).map((row) => row[0])).toEqual(['Total', 'Sum of parts', 'Difference'])
+    expect(Math.abs(sum - total)).toBeLessThan(1e-12 * total)
+    expect(Number(rows[6]?.[5])).toBeCloseTo(total, 14)
+    expect(rows[4]?.[9]).toBe('Risk-reducing position')
+  })
+
+  test('nothing is written while its values do not change', async () => {
+    const { compute, writeTable, user, office, quiet } = await desk()
+    await compute()
+    await writeTable()
+    office.counts.reset()
+    user.type('Sheet1', 'C4', 0.5)
+    await quiet()
+    expect(office.counts.writes).toBe(0)
+  })
+
+  test('foreign cells in the way are asked for first and kept unless the user agrees', async () => {
+    const { books, compute, user, select, valuesAt, quiet } = await desk()
+    await compute()
+    user.type('Sheet1', 'F9', 'mine')
+    await quiet()
+    select('Sheet1', 'E3')
+    await books.writeTable({ kind: 'selection' })
+    expect(books.state().faults.table).toMatch(/Sheet1!F9/)
+    expect(await valuesAt('Sheet1', 'F9')).toEqual([['mine']])
+    expect(await valuesAt('Sheet1', 'E3')).toEqual([['']])
+    const [offer] = books.state().offers
+    expect(offer?.button).toBe('Write over it')
+    await offer?.accept()
+    expect(books.state().table).toMatchObject({ sheet: 'Sheet1', row: 2, column: 4 })
+    expect(await valuesAt('Sheet1', 'E3')).toEqual([['Contributions to risk: Sheet1']])
+  })
+
+  test('a write that fails half way leaves the workbook as it was and the figures up to date', async () => {
+    const { books, compute, office, portrait, settle } = await desk()
+    await compute()
+    const before = portrait()
+    office.faults.beforeOperation(25)
+    await books.writeTable({ kind: 'new sheet' })
+    await settle()
+    expect(portrait()).toEqual(before)
+    expect(books.state().faults.table).toMatch(/\.$/)
+    expect(books.state().table).toBeNull()
+    expect(books.state().status.kind).toBe('up to date')
+  })
+
+  test('labels that begin like formulas are text in it, before and after a refresh', async () => {
+    const odd = ['=1+1', '@name', '+B', '-C']
+    const { compute, writeTable, user, quiet, cells } = await desk({
+      holdings: HOLDINGS.map((row, k) => (k === 0 ? row : [`'${odd[k - 1] ?? ''}`, ...row.slice(1)])),
+      returns: RETURNS.map((row, k) => (k === 0 ? [row[0] ?? '', ...odd.map((name) => `'${name}`)] : row)),
+    })
+    await compute()
+    await writeTable()
+    user.type('Sheet1', 'C4', 0.45)
+    await quiet()
+    expect((await cells('Risk', 'A5:A8'))['values']).toEqual(odd.map((name) => [name]))
+  })
+
+  test('a holding added within the block makes it one row longer', async () => {
+    const { compute, writeTable, user, quiet, valuesAt } = await desk({
+      returns: returnsOf([...NAMES, 'Timber'], 60),
+    })
+    await compute()
+    await writeTable()
+    user.insertRows('Sheet1', 7, 1)
+    user.type('Sheet1', 'A7', [['Timber', 'Real assets', 0.05]])
+    const state = await quiet()
+    expect(state.status).toEqual({ kind: 'up to date' })
+    expect((await valuesAt('Risk', 'A5:A10')).flat()).toEqual([
+      'Northern shares', 'Southern shares', 'Harbour bonds', 'Timber', 'Index hedge', 'Total',
+    ]) // prettier-ignore
+    expect(state.table?.rows).toBeGreaterThan(20)
+  })
+})
+
+describe('The link', () => {
+  test('it survives closing and opening again, and opening writes nothing', async () => {
+    const { books, compute, writeTable, user, office, quiet, book, valuesAt } = await desk()
+    await compute()
+    await writeTable()
+    await books.close()
+    office.counts.reset()
+    const again = await openBooks(book)
+    running.push(again)
+    expect(again.state().status).toEqual({ kind: 'up to date' })
+    expect(again.state().holdings?.holdings).toHaveLength(4)
+    expect(office.counts.writes).toBe(0)
+    user.type('Sheet1', 'C4', 0.9)
+    await quiet()
+    await new Promise((resolve) => setTimeout(resolve, 200))
+    const [row] = await valuesAt('Risk', 'A5:C5')
+    expect(row?.[2]).toBe(0.9)
+  })
+
+  test('rows inserted above the blocks move it along', async () => {
+    const { compute, user, quiet } = await desk()
+    await compute()
+    user.insertRows('Sheet1', 1, 3)
+    const state = await quiet()
+    expect(state.holdings?.area.row).toBe(5)
+    user.type('Sheet1', 'C7', 0.6)
+    expect((await quiet()).breakdown?.decomposition.weights[0]).toBe(0.6)
+  })
+
+  test('a sheet deleted under it fails in one sentence, and nothing is lost', async () => {
+    const { compute, user, quiet, valuesAt } = await desk()
+    await compute()
+    user.deleteSheet('Returns')
+    const state = await quiet()
+    expect(state.status).toMatchObject({
+      kind: 'failed',
+      sentence:
+        'The range of the returns is gone: its cells or its sheet were deleted; select the returns again and use the selection.',
+    })
+    expect(await valuesAt('Sheet1', 'A4:C4')).toEqual([['Northern shares', 'Shares', 0.5]])
+  })
+
+  test('a weight that is no number fails with its cell, and a number there mends it', async () => {
+    const { compute, user, quiet } = await desk()
+    await compute()
+    user.type('Sheet1', 'C5', 'lots')
+    expect((await quiet()).status).toEqual({
+      kind: 'failed',
+      sentence: 'Sheet1!C5: found “lots”; a weight is needed.',
+      area: { sheet: 'Sheet1', row: 4, column: 2, rows: 1, columns: 1 },
+    })
+    user.type('Sheet1', 'C5', 0.3)
+    expect((await quiet()).status).toEqual({ kind: 'up to date' })
+  })
+
+  test('an edit among the returns marks it stale at once and recomputes', async () => {
+    const { books, compute, user, quiet, settle } = await desk()
+    const before = (await compute()).breakdown?.decomposition.volatility
+    user.type('Returns', 'B30', 0.15)
+    await settle()
+    expect(books.state().status).toMatchObject({
+      kind: 'stale',
+      sentence: 'Stale since Returns!B30 was edited.',
+    })
+    const after = await quiet()
+    expect(after.status).toEqual({ kind: 'up to date' })
+    expect(after.breakdown?.decomposition.volatility).toBeGreaterThan(before ?? Infinity)
+  })
+
+  test('newer dates below the returns are offered, then included', async () => {
+    const { compute, user, quiet } = await desk()
+    await compute()
+    user.type('Returns', 'A62', [
+      [FRIDAY + 7, 0.01, 0.01, 0, -0.01],
+      [FRIDAY + 14, -0.01, 0.02, 0.001, 0],
+    ])
+    const state = await quiet()
+    expect(state.offers.map(({ sentence }) => sentence)).toEqual([
+      '2 newer dates to 11 Dec 2026 found beside Returns!A1:E61.',
+    ])
+    await state.offers[0]?.accept()
+    const after = await quiet()
+    expect(after.returns?.rows).toBe(62)
+    expect(after.offers).toEqual([])
+    expect(after.status).toEqual({ kind: 'up to date' })
+  })
+
+  test('holdings below the block are offered by name; a total there is not', async () => {
+    const { compute, user, quiet } = await desk({ returns: returnsOf([...NAMES, 'Timber'], 60) })
+    await compute()
+    user.type('Sheet1', 'A8', [['Total', '', 1]])
+    expect((await quiet()).offers).toEqual([])
+    user.type('Sheet1', 'A8', [['Timber', 'Real assets', 0.05]])
+    const state = await quiet()
+    expect(state.offers.map(({ sentence }) => sentence)).toEqual([
+      '1 further holding found below Sheet1!A3:C7: “Timber”.',
+    ])
+    state.offers[0]?.decline()
+    user.type('Sheet1', 'C4', 0.55)
+    expect((await quiet()).offers).toEqual([])
+  })
+
+  test('weights that are formulas are followed when what they rest on changes', async () => {
+    const holdings = HOLDINGS.map((row, k) => (k === 1 ? ['Northern shares', 'Shares', '=H1/100'] : row))
+    const { compute, user, quiet } = await desk({ holdings })
+    user.type('Sheet1', 'H1', 50)
+    await quiet()
+    expect((await compute()).breakdown?.decomposition.weights[0]).toBe(0.5)
+    user.type('Sheet1', 'H1', 70)
+    expect((await quiet()).breakdown?.decomposition.weights[0]).toBe(0.7)
+  })
+
+  test('a table that feeds its own weights is found out after three refreshes', async () => {
+    const holdings = HOLDINGS.map((row, k) => (k === 1 ? ['Northern shares', 'Shares', '=0.2+H1'] : row))
+    const { books, compute, writeTable, user, quiet } = await desk({ holdings })
+    await compute()
+    await writeTable()
+    user.type('Sheet1', 'H1', '=Risk!F5*3')
+    for (let k = 0; k < 8 && books.state().status.kind !== 'failed'; k++) await quiet()
+    expect(books.state().status).toMatchObject({
+      kind: 'failed',
+      sentence: expect.stringMatching(
+        /the written table feeds its own weights\. Refreshing has stopped/,
+      ) as string,
+    })
+  })
+
+  test('two books in one workbook keep apart', async () => {
+    const { books, compute, select, user, quiet } = await desk()
+    await compute()
+    user.type('Sheet1', 'A20', [
+      ['Holding', 'Weight'],
+      ['Harbour bonds', 0.5],
+      ['Northern shares', 0.5],
+    ])
+    await quiet()
+    await books.addBook()
+    expect(books.state()).toMatchObject({ current: '2', breakdown: null, status: { kind: 'nothing linked' } })
+    select('Sheet1', 'A20:B22')
+    await books.takeSelection('holdings')
+    select('Returns', 'A1:E61')
+    await books.takeSelection('returns')
+    await books.compute()
+    expect(books.state().breakdown?.names).toEqual(['Harbour bonds', 'Northern shares'])
+    await books.rename('Small book')
+    user.type('Sheet1', 'C4', 0.9)
+    await quiet()
+    expect(books.state().breakdown?.decomposition.weights[1]).toBe(0.5)
+    await books.switchTo('1')
+    expect(books.state().breakdown?.decomposition.weights[0]).toBe(0.9)
+    expect(books.state().books.map(({ title }) => title)).toEqual(['Sheet1', 'Small book'])
+    await books.removeBook()
+    expect(books.state().books).toHaveLength(1)
+  })
+})
+
+describe('Settings', () => {
+  test('the look-back and the estimator change the figures and are printed', async () => {
+    const { books, compute, writeTable, valuesAt, quiet } = await desk()
+    await compute()
+    const { table } = await writeTable()
+    await books.choose({ lookBack: { kind: 'last', dates: 30 } })
+    await books.choose({ estimator: { kind: 'exponential', decay: 0.9 } })
+    const state = await quiet()
+    expect(state.breakdown?.dates?.used).toBe(30)
+    const printed = (await valuesAt('Risk', `A1:C${table?.rows ?? 1}`)).map((row) =>
+      row.filter((v) => v !== '').join(' '),
+    )
+    expect(printed).toContain('Look-back Last 30 dates')
+    expect(printed.find((line) => line.startsWith('Estimator'))).toMatch(/decay factor 0\.9 /)
+    const late = contributionsOf([RETURNS[0] ?? [], ...RETURNS.slice(31)], [0.5, 0.3, 0.4, -0.2], 52)
+    await books.choose({ estimator: { kind: 'sample' } })
+    late.forEach((contribution, i) => {
+      expect(books.state().breakdown?.decomposition.contribution[i]).toBeCloseTo(contribution, 13)
+    })
+  })
+
+  test('gaps leave dates out, with their number and the series that has most of them', async () => {
+    const returns = RETURNS.map((row, t) =>
+      t > 0 && t < 21 ? [...row.slice(0, 2), '', ...row.slice(3)] : row,
+    )
+    const { compute } = await desk({ returns })
+    const state = await compute()
+    expect(state.breakdown?.dates).toMatchObject({ used: 40, dropped: 20 })
+    expect(state.breakdown?.findings.map(({ sentence }) => sentence)).toContain(
+      '20 of 60 dates left out, where a holding has no return; “Southern shares” has the most gaps: 20 of 60 dates.',
+    )
+  })
+
+  test('fewer than two common dates and returns that never move fail in one sentence', async () => {
+    const apart = RETURNS.slice(0, 8).map((row, t) =>
+      t === 0 ? row : row.map((v, i) => (i > 0 && (t + i) % 2 ? '' : v)),
+    )
+    const first = await desk({ returns: apart })
+    await first.compute()
+    expect(first.books.state().faults.returns).toMatch(
+      /^Found 0 dates with a return for every holding .*; at least 2 are needed\.$/,
+    )
+    const flat = RETURNS.map((row, t) => (t === 0 ? row : [row[0] ?? '', 0, 0, 0, 0]))
+    const second = await desk({ returns: flat })
+    await second.compute()
+    expect(second.books.state().faults.returns).toBe(
+      'Found returns that never change in any series; at least one series that moves is needed.',
+    )
+  })
+})
