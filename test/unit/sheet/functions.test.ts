@@ -98,7 +98,7 @@ describe('each function', () => {
   it('BREAKDOWN lays the figures out under headings, with a total', () => {
     const table = call('BREAKDOWN', [['=1+1'], ['@beta']], half, C) as unknown[][]
     expect(table[0]).toEqual([
-      'Name',
+      'Holding',
       'Weight',
       'Stand-alone risk',
       'Marginal contribution to risk',
@@ -107,7 +107,7 @@ describe('each function', () => {
       'Beta to portfolio',
       'Correlation with portfolio',
     ])
-    expect(table.map((row) => row[0])).toEqual(['Name', '=1+1', '@beta', 'Total'])
+    expect(table.map((row) => row[0])).toEqual(['Holding', '=1+1', '@beta', 'Total'])
     expectClose([table[1]!.slice(1)], [0.5, 0.1, 0.02 / s, 0.01 / s, 0.8, 1.6, 0.1 / s])
     expectClose([table[2]!.slice(1)], [0.5, 0.05, 0.005 / s, 0.0025 / s, 0.2, 0.4, 0.05 / s])
     expectClose([[table[3]![1], table[3]![2], table[3]![4], table[3]![5]] as number[]], [1, 0.15, s, 1])
@@ -724,7 +724,7 @@ describe('labels of groups', () => {
     ['of the desktop', 0],
     ['of text', ''],
   ])('a blank %s stands for no group', (_, blank) => {
-    expect(labels([['A'], [blank], [blank]])).toEqual(['Group', 'A', '(no group)', 'Total'])
+    expect(labels([['A'], [blank], [blank]])).toEqual(['Group', 'A', 'Unassigned', 'Total'])
   })
 
   it('numbers may be groups, 0 among them', () => {
