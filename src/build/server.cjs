@@ -33,9 +33,9 @@ function wanted(folder, url, home) {
 /**
  * Serves the files of a folder to this machine only.
  *
- * @param options.home   what "/" is
- * @param options.port   the port to try; 0 for any free one
- * @param options.certificate  key and certificate: https then
+ * @param {string} folder
+ * @param {{ home: string, port?: number, certificate?: import('node:https').ServerOptions }} options
+ *   home: what "/" is; port: the one to try, 0 for any free one; certificate: serves over https
  * @returns the address, and close()
  * @throws Error  EADDRINUSE when the port is taken
  */
