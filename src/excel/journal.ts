@@ -14,6 +14,14 @@ export interface Ground {
   readonly typed: readonly (readonly CellValue[])[]
   /** number formats; null where the write sets none but '@' under text of its own */
   readonly formats: readonly (readonly string[])[] | null
+  /** what the write puts there, in the notation of `typed`; null where it only clears */
+  readonly after: readonly (readonly CellValue[])[] | null
+}
+
+/** What stands in some cells as found, with the values that show. */
+export interface Survey extends Pick<Ground, 'area' | 'typed'> {
+  readonly formats: readonly (readonly string[])[]
+  readonly values: readonly (readonly CellValue[])[]
 }
 
 /** All that a write is about to change, as it stands before. */
@@ -93,10 +101,21 @@ const rowsOf = (area: Area, from: number, rows: number): Area => ({ ...area, row
  */
 export const asText = (text: string): string => (text.startsWith("'") ? `'${text}` : text)
 
-const isText = (typed: CellValue): typed is string => typeof typed === 'string' && typed.startsWith("'")
+/** A value to be written, in the notation of a journal. */
+export const typedText = (text: string): string => (text === '' ? '' : `'${text}`)
+
+const isText = (typed: CellValue | null): typed is string =>
+  typeof typed === 'string' && typed.startsWith("'")
+
+/** Cells to put back; null leaves one as it is. */
+interface Mending {
+  readonly area: Area
+  readonly typed: readonly (readonly (CellValue | null)[])[]
+  readonly formats: readonly (readonly (string | null)[])[] | null
+}
 
 /** The steps that put cells back. The formats an entry needs to be taken rightly come first, its own at last. */
-function groundSteps({ area, typed, formats }: Ground): Step[] {
+function mendSteps({ area, typed, formats }: Mending): Step[] {
   return slabs(typed).map(([from, rows, bytes]) => {
     const part = typed.slice(from, from + rows)
     const place = rowsOf(area, from, rows)
@@ -106,7 +125,7 @@ function groundSteps({ area, typed, formats }: Ground): Step[] {
       run(context) {
         const range = rangeOf(context, place)
         range.numberFormat = part.map((row) =>
-          row.map((entry) => (isText(entry) ? '@' : formats ? 'General' : null)),
+          row.map((entry) => (isText(entry) ? '@' : entry !== null && formats ? 'General' : null)),
         )
         range.formulas = part.map((row) =>
           row.map((entry) => (isText(entry) ? asText(entry.slice(1)) : entry)),
@@ -118,11 +137,8 @@ function groundSteps({ area, typed, formats }: Ground): Step[] {
 }
 
 /** Reads what stands in some areas, a bounded piece a request. */
-export async function surveyGrounds(
-  { context, sync }: Request,
-  areas: readonly Area[],
-): Promise<(Ground & Values)[]> {
-  const grounds: (Ground & Values)[] = []
+export async function surveyGrounds({ context, sync }: Request, areas: readonly Area[]): Promise<Survey[]> {
+  const grounds: Survey[] = []
   for (const area of areas) {
     // values, formulas, kinds and formats: four answers a cell
     const step = Math.max(1, Math.floor(REQUEST_BYTES / (80 * area.columns)))
@@ -150,19 +166,18 @@ export async function surveyGrounds(
   return grounds
 }
 
-interface Values {
-  readonly values: readonly (readonly CellValue[])[]
-}
-
 /**
  * Puts back what a journal holds: the cells that differ from it, looks, widths, names and settings; a sheet the write made goes again,
  * unless something else has come to stand on it. May be done twice. The journal is saved anew at the head of the work and goes with its end,
  * so that this can be interrupted as well.
+ *
+ * @param careful when time has passed since the write: what a user typed there meanwhile stays
  */
 export async function restore(
   request: Request,
   journal: Journal,
   expectEcho: (area: Area) => void,
+  careful: boolean,
 ): Promise<void> {
   const { context, sync } = request
   const { names, settings, worksheets } = context.workbook
@@ -184,13 +199,13 @@ export async function restore(
     request,
     grounds.map(({ area }) => area),
   )
-  const changed = grounds.flatMap((ground, k) => difference(ground, now[k]))
+  const changed = grounds.flatMap((ground, k) => difference(ground, now[k], careful))
   const { created } = journal
   const discard = created !== null && there.has(created.sheet) && (await holdsOnly(request, created))
 
   const steps: Step[] = [
     { bytes: JSON.stringify(journal).length, run: () => settings.add(JOURNAL_KEY, journal) },
-    ...changed.flatMap(groundSteps),
+    ...changed.flatMap(mendSteps),
     ...journal.looks
       .filter(({ area }) => there.has(area.sheet))
       .map((look) => step((context) => dress(context, look, true))),
@@ -211,25 +226,31 @@ export async function restore(
   await perform(request, steps, expectEcho)
 }
 
-/** The rows of a ground, from the first to the last, that no longer hold what they held. */
-function difference(ground: Ground, now: Ground | undefined): Ground[] {
-  const alters = ground.typed.map((row, r) =>
+/**
+ * The cells of a ground that no longer hold what they held, in the rows from the first such to the last.
+ * @param careful leaves alone what is neither the old entry nor the write's: a user came in between
+ */
+function difference(ground: Ground, now: Survey | undefined, careful: boolean): Mending[] {
+  const { typed, formats, after, area } = ground
+  const stays = (entry: CellValue, r: number, c: number) => {
+    const found = now?.typed[r]?.[c]
+    return careful && found !== entry && found !== (after ? after[r]?.[c] : '')
+  }
+  const alters = typed.map((row, r) =>
     row.some(
       (entry, c) =>
-        entry !== now?.typed[r]?.[c] ||
-        (ground.formats !== null && ground.formats[r]?.[c] !== now?.formats?.[r]?.[c]),
+        !stays(entry, r, c) &&
+        (entry !== now?.typed[r]?.[c] || (formats !== null && formats[r]?.[c] !== now.formats[r]?.[c])),
     ),
   )
-  const first = alters.indexOf(true)
-  if (first < 0) return []
-  const last = alters.lastIndexOf(true) + 1
-  return [
-    {
-      area: rowsOf(ground.area, first, last - first),
-      typed: ground.typed.slice(first, last),
-      formats: ground.formats && ground.formats.slice(first, last),
-    },
-  ]
+  const from = alters.indexOf(true)
+  if (from < 0) return []
+  const to = alters.lastIndexOf(true) + 1
+  const mended = <T>(cells: readonly (readonly T[])[]) =>
+    cells
+      .slice(from, to)
+      .map((row, k) => row.map((cell, c) => (stays(typed[from + k]?.[c] ?? '', from + k, c) ? null : cell)))
+  return [{ area: rowsOf(area, from, to - from), typed: mended(typed), formats: formats && mended(formats) }]
 }
 
 /** Whether a sheet the write made holds nothing but what the write put there. */

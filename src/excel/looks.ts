@@ -43,14 +43,20 @@ export function dress(context: Excel.RequestContext, look: Look, exactly: boolea
     format.borders.getItem(edge).style = style as Excel.BorderLineStyle
   }
   if (area.rows > 1) rule('InsideHorizontal', 'None')
-  if (exactly || top !== 'None') rule('EdgeTop', top)
   if (exactly || bottom !== 'None') rule('EdgeBottom', bottom)
+  if (exactly) rule('EdgeTop', top)
+  else if (top !== 'None') {
+    // the same rule, but kept with the row above: taking away the rules inside a table finds it there on every host
+    const above = rangeOf(context, { ...area, row: area.row - 1 })
+    above.format.borders.getItem('EdgeBottom').style = top as Excel.BorderLineStyle
+  }
 }
 
-/** Makes plain what an earlier table of ours left behind; its first row may share a rule with a neighbour that is not ours. */
+/** Makes plain what an earlier table of ours left behind; the rule over its first row, if any, belongs to a neighbour. */
 export function undress(context: Excel.RequestContext, area: Area, ours: Area): void {
   dress(context, { ...PLAIN, area }, false)
-  if (area.row > ours.row) rangeOf(context, area).format.borders.getItem('EdgeTop').style = 'None'
+  if (area.row === ours.row) return
+  rangeOf(context, { ...area, row: area.row - 1 }).format.borders.getItem('EdgeBottom').style = 'None'
 }
 
 /**
@@ -84,6 +90,8 @@ export function looksOf(table: Table, target: Area): Look[] {
 function faceOf(table: Table, row: number, column: number): Face {
   const mark = table.cells[row]?.[column]?.mark
   if (!mark) return PLAIN
+  // over a first row there is nothing of ours to be parted from
+  if (row === 0) return { ...FACES[mark], top: 'None' }
   return mark === 'head' && table.numeric[column] ? { ...FACES.head, align: 'Right' } : FACES[mark]
 }
 

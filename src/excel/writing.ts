@@ -29,6 +29,8 @@ import {
   type Ground,
   type Journal,
   type Step,
+  type Survey,
+  typedText,
 } from './journal'
 import { dress, looksOf, pointsOf, surveyLooks, undress } from './looks'
 import { NAME_PREFIX, rangeOf } from './reading'
@@ -80,7 +82,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       unsettled = true
       try {
         // a failed batch may leave its context unusable, so this is a batch of its own
-        await requests.run(place, (fresh) => restore(fresh, journal, expectEcho))
+        await requests.run(place, (fresh) => restore(fresh, journal, expectEcho, false))
       } catch (second) {
         throw withCause(
           new Fault(
@@ -111,6 +113,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         area: target,
         typed: typedOf(patch.table, patch.seen ?? []),
         formats: null,
+        after: afterOf(patch.table),
       })),
       looks: [],
       widths: [],
@@ -176,12 +179,17 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         areas: [target, ...leftovers].filter(({ sheet }) => there(sheet)),
       }))
       .filter(({ areas }) => areas.length > 0)
+    const afterAt = (area: Area) => {
+      const fill = fills.find(({ target }) => target === area)
+      return fill ? afterOf(fill.patch.table) : null
+    }
     const areas = onOld.flatMap((fill) => fill.areas)
     const surveyed = await surveyGrounds(request, areas)
     const spilled = await refuseObstacles(request, onOld, surveyed)
-    const grounds = surveyed.map(({ area, typed, formats }) => ({
+    const grounds = surveyed.map(({ area, typed, formats }): Ground => ({
       area,
       formats,
+      after: afterAt(area),
       typed: typed.map((row, r) => row.map((entry, c) => (spilled(area, r, c) ? '' : entry))),
     }))
     const looks = await surveyLooks(request, areas)
@@ -245,7 +253,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     const journal = item.value as Journal
     const areas = [...journal.grounds.map(({ area }) => area), ...(journal.created?.filled ?? [])]
     try {
-      await restore(request, journal, expectEcho)
+      await restore(request, journal, expectEcho, true)
     } catch (error) {
       if (error instanceof Fault && error.code === 'editing') throw error
       unsettled = true
@@ -349,13 +357,16 @@ const valuesOf = (table: Table): CellValue[][] => table.cells.map((row) => row.m
 
 const isText = ({ value }: TableCell): boolean => typeof value === 'string' && value !== ''
 
+const afterOf = (table: Table): CellValue[][] =>
+  table.cells.map((row) => row.map(({ value }) => (typeof value === 'string' ? typedText(value) : value)))
+
 /** What stood in a table of ours, as a journal keeps it: under a text of ours stands text, elsewhere a formula may. */
 const typedOf = (table: Table, seen: readonly (readonly CellValue[])[]): CellValue[][] =>
   seen.map((row, r) =>
     row.map((entry, c) => {
       if (typeof entry !== 'string' || entry === '') return entry
       const ours = table.cells[r]?.[c]
-      return (ours && isText(ours)) || !entry.startsWith('=') ? `'${entry}` : entry
+      return (ours && isText(ours)) || !entry.startsWith('=') ? typedText(entry) : entry
     }),
   )
 
@@ -400,7 +411,7 @@ const clearSteps = (area: Area, ours: Area): Step[] => [
 async function refuseObstacles(
   { context, sync }: Request,
   fills: readonly { readonly patch: Patch; readonly target: Area; readonly areas: readonly Area[] }[],
-  surveyed: readonly (Ground & { readonly values: readonly (readonly CellValue[])[] })[],
+  surveyed: readonly Survey[],
 ): Promise<(area: Area, row: number, column: number) => boolean> {
   for (const { patch, target } of fills) {
     const ground = surveyed.find(({ area }) => sameArea(area, target))
@@ -478,10 +489,7 @@ async function refuseObstacles(
   }
 }
 
-function refuseForeign(
-  ground: Ground & { readonly values: readonly (readonly CellValue[])[] },
-  ours: Area | undefined,
-): void {
+function refuseForeign(ground: Survey, ours: Area | undefined): void {
   let first: Area | null = null
   let count = 0
   ground.typed.forEach((row, r) =>

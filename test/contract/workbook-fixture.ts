@@ -1,0 +1,143 @@
+/** A workbook without a screen, the port over it, and a portrait of all it holds. */
+import { CellValueType } from '@univerjs/core'
+import { headlessGrid } from '../../src/desk/grid'
+import { createOffice, userOf, type OfficeOptions } from '../../src/desk/office'
+import { excelWorkbook } from '../../src/excel'
+import type { Table, TableCell, Workbook } from '../../src/sheet'
+
+const opened: { dispose(): void }[] = []
+
+export function closeAll(): void {
+  for (const grid of opened.splice(0)) grid.dispose()
+}
+
+/** Opens a workbook with one sheet, "Sheet1", empty or filled from A1 on, and makes it the host that code under test speaks to. */
+export function open(options?: OfficeOptions, filled?: readonly (readonly (number | string)[])[]) {
+  const grid = headlessGrid(filled && workbookOf(filled))
+  opened.push(grid)
+  const office = createOffice(grid, options)
+  Object.assign(globalThis, {
+    Office: office.Office,
+    Excel: office.Excel,
+    OfficeExtension: office.OfficeExtension,
+  })
+  const book: Workbook = excelWorkbook()
+  const user = userOf(grid)
+  const settle = () => office.settled()
+
+  /** Everything the workbook holds, cell by cell with its look, names and settings: nothing in it that an undone write may change. */
+  function portrait() {
+    const workbook = grid.api.getActiveWorkbook()
+    const sheets = workbook?.getSheets().map((sheet) => {
+      const cells: Record<string, unknown> = {}
+      const inner = sheet.getSheet()
+      inner.getCellMatrix().forValue((row, column, cell) => {
+        const { n, bl, it, ht, bd } = inner.getComposedCellStyle(row, column)
+        const kept = bare({
+          v: cell?.v,
+          t: cell?.t,
+          f: cell?.f,
+          n,
+          bl: bl || null,
+          it: it || null,
+          ht: ht || null,
+          bd,
+        })
+        if (kept) cells[`R${row + 1}C${column + 1}`] = kept
+      })
+      const widths = Array.from({ length: 12 }, (_, column) => sheet.getColumnWidth(column))
+      return { name: sheet.getSheetName(), cells, widths }
+    })
+    const names = workbook
+      ?.getDefinedNames()
+      .map((name) => [name.getName(), name.getFormulaOrRefString()])
+      .sort()
+    return { sheets, names, settings: Object.fromEntries([...office.settings].sort()) }
+  }
+
+  /** What the API says of some cells. */
+  const cells = (sheet: string, address: string) =>
+    office.Excel.run(async (context) => {
+      const range = context.workbook.worksheets.getItem(sheet).getRange(address)
+      range.load('values,formulas,valueTypes,numberFormat')
+      await context.sync()
+      const { values, formulas, valueTypes, numberFormat } = range
+      return { values, formulas, valueTypes, numberFormat } as Record<string, unknown[][]>
+    })
+
+  return { office, grid, user, book, settle, portrait, cells }
+}
+
+/** Typing large blocks takes long; a workbook opened with them does not. */
+function workbookOf(filled: readonly (readonly (number | string)[])[]) {
+  const cellData = Object.fromEntries(
+    filled.map((row, r) => [
+      r,
+      Object.fromEntries(
+        row.map((v, c) => [c, { v, t: typeof v === 'number' ? CellValueType.NUMBER : CellValueType.STRING }]),
+      ),
+    ]),
+  )
+  const sheet = {
+    id: 'sheet-1',
+    name: 'Sheet1',
+    rowCount: filled.length + 100,
+    columnCount: (filled[0]?.length ?? 0) + 40,
+    cellData,
+  }
+  return { id: 'workbook', name: 'Book1', sheetOrder: ['sheet-1'], sheets: { 'sheet-1': sheet } }
+}
+
+/** An object without the members that say nothing; undefined when none is left. */
+function bare(value: unknown): unknown {
+  if (value === null || value === undefined || value === '') return undefined
+  if (typeof value !== 'object') return value
+  const members = Object.entries(value)
+    .map(([key, inner]) => [key, bare(inner)] as const)
+    .filter(([, inner]) => inner !== undefined)
+  return members.length > 0 ? Object.fromEntries(members) : undefined
+}
+
+export const text = (value: string, mark?: TableCell['mark']): TableCell => ({
+  value,
+  format: '@',
+  ...(mark && { mark }),
+})
+export const number = (value: number, format = '0.0%', mark?: TableCell['mark']): TableCell => ({
+  value,
+  format,
+  ...(mark && { mark }),
+})
+export const blank: TableCell = { value: '', format: 'General' }
+
+export const tableOf = (cells: readonly (readonly TableCell[])[]): Table => ({
+  cells,
+  widths: cells[0]?.map((_, column) => (column === 0 ? 24 : 12)) ?? [],
+  numeric: cells[0]?.map((_, column) => column > 0) ?? [],
+})
+
+/** A breakdown in small: a title, heads, positions whose names look like formulas, a total. */
+export const breakdown = (shares: readonly number[] = [0.7, -0.1, 0.4]): Table =>
+  tableOf([
+    [text('Risk of the book', 'title'), blank],
+    [text('Position', 'head'), text('Share of risk', 'head')],
+    ...shares.map((share, k) => [
+      text(['=1+1', '@name', '-Larch', "'Alder'"][k] ?? `+Beech ${k}`),
+      number(share),
+    ]),
+    [text('Total', 'total'), number(1, '0.0%', 'total')],
+  ])
+
+/** The values a table shows. */
+export const valuesOf = (table: Table) => table.cells.map((row) => row.map(({ value }) => value))
+
+/** What a promise was rejected with, or a failure when it was not. */
+export async function refusal(promise: Promise<unknown>): Promise<{ code: string; message: string }> {
+  try {
+    await promise
+  } catch (error) {
+    const { code, message } = error as { code: string; message: string }
+    return { code, message }
+  }
+  throw new Error('it was not refused')
+}

@@ -1,0 +1,563 @@
+/**
+ * The Workbook port over the strict stand-in for the Office JavaScript API, promise by promise. All numbers are entered by the tests
+ * themselves and handed through unchanged, so they are compared exactly.
+ */
+import { addressOf, parseAddress, type Area, type WorkbookEvent } from '../../src/sheet'
+import {
+  blank,
+  breakdown,
+  closeAll,
+  number,
+  open,
+  refusal,
+  tableOf,
+  text,
+  valuesOf,
+} from './workbook-fixture'
+
+jest.setTimeout(30_000)
+afterEach(closeAll)
+
+const area = (address: string): Area => {
+  const found = parseAddress(address, 'Sheet1')
+  if (!found) throw new Error(address)
+  return found
+}
+const at = { sheet: 'Sheet1', row: 1, column: 1 }
+
+describe('The selection', () => {
+  test('is one block with its place, and a single cell stays a single cell', async () => {
+    const { book, user } = open()
+    user.type('Sheet1', 'A1', [[1, 2, 3]])
+    user.select('Sheet1', 'B2:D9')
+    expect(addressOf(await book.selection())).toBe('Sheet1!B2:D9')
+    user.select('Sheet1', 'C3')
+    expect(addressOf(await book.selection())).toBe('Sheet1!C3')
+  })
+
+  test('of several areas is refused', async () => {
+    const { book, user } = open()
+    user.select('Sheet1', 'B2:B4', 'D2:D4')
+    expect(await refusal(book.selection())).toMatchObject({
+      code: 'selection',
+      message: expect.stringContaining('select one block of cells'),
+    })
+  })
+
+  test('of whole columns or rows is cut to what is used', async () => {
+    const { book, user } = open()
+    user.type('Sheet1', 'B3', [
+      [1, 2],
+      [3, 4],
+    ])
+    user.select('Sheet1', 'C:E')
+    expect(addressOf(await book.selection())).toBe('Sheet1!C3:C4')
+    user.select('Sheet1', '4:9')
+    expect(addressOf(await book.selection())).toBe('Sheet1!B4:C4')
+  })
+
+  test('of whole columns with nothing in them is refused', async () => {
+    const { book, user } = open()
+    user.select('Sheet1', 'C:E')
+    expect(await refusal(book.selection())).toMatchObject({ code: 'selection' })
+  })
+})
+
+describe('Reading', () => {
+  const rows = 110
+  const wide = 1000
+  const filled = () =>
+    open(
+      {},
+      Array.from({ length: rows }, (_, r) => Array.from({ length: wide }, (__, c) => r + c / 1000)),
+    )
+  const all: Area = { sheet: 'Sheet1', row: 0, column: 0, rows, columns: wide }
+
+  test('takes a large block in several requests, tells its progress and loses nothing', async () => {
+    const { book, office } = filled()
+    const shares: number[] = []
+    const block = await book.read(all, { progress: (share) => shares.push(share) })
+    // 110 000 numbers of about 20 bytes, 2 MB a request
+    expect(office.counts.syncs).toBe(2)
+    expect(shares).toEqual([100 / 110, 1])
+    expect(block.area).toEqual(all)
+    expect(block.values).toHaveLength(rows)
+    expect(block.values[109]?.[999]).toBe(109 + 999 / 1000)
+  })
+
+  test('stops between requests when it is cancelled', async () => {
+    const { book, office } = filled()
+    const controller = new AbortController()
+    const reading = book.read(all, { signal: controller.signal, progress: () => controller.abort() })
+    expect(await refusal(reading)).toMatchObject({ code: 'cancelled' })
+    expect(office.counts.syncs).toBe(1)
+  })
+
+  test('asks for smaller blocks when texts make an answer too large', async () => {
+    const column = Array.from({ length: 40 }, (_, k) => ['x'.repeat(400) + k])
+    const { book, office } = open({ payloadLimit: 4000 }, column)
+    const { values } = await book.read(area('A1:A40'))
+    expect(values).toEqual(column)
+    expect(office.counts.syncs).toBeGreaterThan(4)
+  })
+
+  test('keeps blanks, errors, texts, truth values and full doubles apart', async () => {
+    const { book, user, settle } = open()
+    user.type('Sheet1', 'A1', [['', '=1/0', "'12", true, 0.1 + 0.2, '=NA()']])
+    await settle()
+    const { values } = await book.read(area('A1:F1'))
+    expect(values).toEqual([['', '#DIV/0!', '12', true, 0.1 + 0.2, '#N/A']])
+  })
+
+  test('of whole columns reads what is used of them', async () => {
+    const { book, user } = open()
+    user.type('Sheet1', 'B3', [[1], [2]])
+    const { area: read, values } = await book.read({
+      sheet: 'Sheet1',
+      row: 0,
+      column: 1,
+      rows: 1_048_576,
+      columns: 1,
+    })
+    expect(addressOf(read)).toBe('Sheet1!B3:B4')
+    expect(values).toEqual([[1], [2]])
+  })
+
+  test('finds hidden rows and merged areas when asked to', async () => {
+    const { book, user } = open()
+    user.type('Sheet1', 'A1', [
+      [1, 2],
+      [3, 4],
+      [5, 6],
+      [7, 8],
+    ])
+    user.hideRows('Sheet1', 3, 1)
+    user.merge('Sheet1', 'A1:B1')
+    const block = await book.read(area('A1:B4'), { shape: true })
+    expect([...(block.hiddenRows ?? [])]).toEqual([2])
+    expect(block.merged?.map(addressOf)).toEqual(['Sheet1!A1:B1'])
+    expect((await book.read(area('A1:B4'))).hiddenRows).toBeUndefined()
+  })
+
+  test('of a sheet that is gone is refused with its address', async () => {
+    const { book } = open()
+    expect(await refusal(book.read({ ...area('A1:B2'), sheet: 'Gone' }))).toMatchObject({
+      code: 'missing',
+      message: expect.stringContaining('Gone!A1:B2'),
+    })
+  })
+})
+
+describe('Looking', () => {
+  test('at any number of ranges takes one request, and what is gone is null', async () => {
+    const { book, user, office } = open()
+    user.type('Sheet1', 'B2', [
+      ['a', '=1+1'],
+      ['b', 5],
+    ])
+    await book.write({ patches: [], keep: { weights: area('C2:C3'), lost: area('F1:F2') } })
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.add('Passing')
+      await context.sync()
+    })
+    await book.write({ patches: [], keep: { passing: { ...area('A1:A2'), sheet: 'Passing' } } })
+    user.deleteSheet('Passing')
+    user.deleteColumns('Sheet1', 6, 1)
+    office.counts.reset()
+    const [weights, plain, lost, never, passing, goneSheet] = await book.look([
+      { at: { kept: 'weights' }, values: true, formulas: true, shape: true, region: true },
+      { at: area('B2:B3'), values: true },
+      { at: { kept: 'lost' }, values: true, shape: true, region: true },
+      { at: { kept: 'never' } },
+      { at: { kept: 'passing' }, formulas: true },
+      { at: { ...area('A1'), sheet: 'Passing' }, values: true, shape: true },
+    ])
+    expect(office.counts.syncs).toBe(1)
+    expect(weights).toEqual({
+      area: area('C2:C3'),
+      values: [[2], [5]],
+      formulas: [['=1+1'], [5]],
+      hiddenRows: new Set(),
+      merged: [],
+      region: area('B2:C3'),
+      protected: false,
+    })
+    expect(plain).toEqual({ area: area('B2:B3'), values: [['a'], ['b']], protected: false })
+    expect([lost, never, passing, goneSheet]).toEqual([null, null, null, null])
+  })
+
+  test('follows a kept range through inserted rows and a renamed sheet, and sees protection', async () => {
+    const { book, user, office } = open()
+    user.type('Sheet1', 'B2', [[1], [2]])
+    await book.write({ patches: [], keep: { weights: area('B2:B3') } })
+    user.insertRows('Sheet1', 1, 4)
+    user.renameSheet('Sheet1', "Ash's book")
+    office.protect("Ash's book", true)
+    const [seen] = await book.look([{ at: { kept: 'weights' }, values: true }])
+    expect(seen && addressOf(seen.area)).toBe("'Ash''s book'!B6:B7")
+    expect(seen).toMatchObject({ values: [[1], [2]], protected: true })
+  })
+})
+
+describe('A first write', () => {
+  test('fills the table, keeps every label text and sets names and settings', async () => {
+    const { book, cells, office } = open()
+    const table = breakdown()
+    const written = await book.write({
+      patches: [{ at, table, over: 'blank' }],
+      keep: { table: area('B2:C7') },
+      remember: { links: [{ name: 'book', lookBack: null }] },
+    })
+    expect(written.map(addressOf)).toEqual(['Sheet1!B2:C7'])
+    const { values, formulas, valueTypes, numberFormat } = await cells('Sheet1', 'B2:C7')
+    expect(values).toEqual(valuesOf(table))
+    expect(formulas).toEqual(valuesOf(table))
+    expect(valueTypes?.map((row) => row[0])).toEqual(Array(6).fill('String'))
+    expect(numberFormat?.[2]).toEqual(['@', '0.0%'])
+    expect([...office.settings]).toEqual([['counterpoise.links', [{ name: 'book', lookBack: null }]]])
+    expect(await book.recall()).toEqual({ links: [{ name: 'book', lookBack: null }] })
+    const [seen] = await book.look([{ at: { kept: 'table' } }])
+    expect(seen?.area).toEqual(area('B2:C7'))
+  })
+
+  test('sets title, heads and total off without a colour', async () => {
+    const { book, office } = open()
+    await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }] })
+    const looks = await office.Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem('Sheet1')
+      const asked = ['B2', 'C3', 'B4', 'C7'].map((address) => {
+        const { format } = sheet.getRange(address)
+        format.load('horizontalAlignment,columnWidth')
+        format.font.load('bold,color')
+        format.fill.load('color')
+        const edges = (['EdgeTop', 'EdgeBottom'] as const).map((edge) =>
+          format.borders.getItem(edge).load('style'),
+        )
+        return { format, edges }
+      })
+      await context.sync()
+      return asked.map(({ format, edges }) => ({
+        bold: format.font.bold,
+        align: format.horizontalAlignment,
+        rules: edges.map(({ style }) => style),
+        colours: [format.font.color, format.fill.color],
+        width: format.columnWidth,
+      }))
+    })
+    const colours = ['#000000', '#FFFFFF']
+    // (24 * 7 + 5) pixels of 0.75 points; the narrower column was wide enough for (12 * 7 + 5) pixels or is made so
+    expect(looks).toMatchObject([
+      { bold: true, align: 'General', colours, width: 129.75 },
+      { bold: true, align: 'Right', rules: ['None', 'Continuous'], colours, width: 66.75 },
+      { bold: false, align: 'General', colours },
+      { bold: true, rules: ['Continuous', 'None'], colours },
+    ])
+  })
+
+  test('makes the sheet it asks for, once', async () => {
+    const { book } = open()
+    const table = breakdown()
+    const plan = { sheet: 'Risk', patches: [{ at: { ...at, sheet: 'Risk' }, table, over: 'blank' as const }] }
+    await book.write(plan)
+    expect(await book.sheets()).toEqual(['Sheet1', 'Risk'])
+    const ours = { ...area('B2:C7'), sheet: 'Risk' }
+    await book.write({ ...plan, patches: [{ at: { ...at, sheet: 'Risk' }, table, over: 'blank', ours }] })
+    expect(await book.sheets()).toEqual(['Sheet1', 'Risk'])
+  })
+
+  test('of more than one request can hold is written whole', async () => {
+    const { book, office } = open()
+    const cells = Array.from({ length: 1000 }, (_, r) => [
+      text(`Position ${r} ${'x'.repeat(800)}`),
+      number(r + 1 / 8, '0.00'),
+    ])
+    await book.write({ patches: [{ at, table: tableOf(cells), over: 'blank' }] })
+    expect(office.counts.writes).toBeGreaterThan(2)
+    const { values } = await book.read({ ...at, rows: 1000, columns: 2 })
+    expect(values).toEqual(cells.map((row) => row.map(({ value }) => value)))
+    expect(office.settings.size).toBe(0)
+  })
+})
+
+describe('A write is refused, with nothing changed,', () => {
+  const refused = async (
+    prepare: (opened: ReturnType<typeof open>) => unknown,
+    plan: Parameters<ReturnType<typeof open>['book']['write']>[0] = {
+      patches: [{ at, table: breakdown(), over: 'blank' }],
+    },
+  ) => {
+    const opened = open()
+    await prepare(opened)
+    await opened.settle()
+    const before = opened.portrait()
+    const fault = await refusal(opened.book.write(plan))
+    expect(opened.portrait()).toEqual(before)
+    return fault
+  }
+
+  test('over foreign cells, naming the first and how many', async () => {
+    const fault = await refused(({ user }) => {
+      user.type('Sheet1', 'C4', 'mine')
+      user.type('Sheet1', 'B6', '=""')
+    })
+    expect(fault.code).toBe('occupied')
+    expect(fault.message).toMatch(/^Sheet1!C4 and 1 more cells? in the way/)
+  })
+
+  test('over a cell that is not ours beside the earlier table', async () => {
+    const fault = await refused(({ user }) => user.type('Sheet1', 'B7', 'mine'), {
+      patches: [{ at, table: breakdown(), over: 'blank', ours: area('B2:C6') }],
+    })
+    expect(fault).toMatchObject({
+      code: 'occupied',
+      message: expect.stringContaining('Sheet1!B7 is in the way'),
+    })
+  })
+
+  test('over merged cells, even where it may replace', async () => {
+    const fault = await refused(({ user }) => user.merge('Sheet1', 'C5:D6'), {
+      patches: [{ at, table: breakdown(), over: 'replace' }],
+    })
+    expect(fault).toMatchObject({
+      code: 'occupied',
+      message: expect.stringContaining('Sheet1!C5:D6 is merged'),
+    })
+  })
+
+  test('over results that a formula outside spills, even where it may replace', async () => {
+    const fault = await refused(({ user }) => user.type('Sheet1', 'A4', '=SEQUENCE(2,4)'), {
+      patches: [{ at, table: breakdown(), over: 'replace' }],
+    })
+    expect(fault).toMatchObject({
+      code: 'occupied',
+      message: expect.stringContaining('Sheet1!B4 shows results of the formula in Sheet1!A4'),
+    })
+  })
+
+  test('on a protected sheet', async () => {
+    expect(await refused(({ office }) => office.protect('Sheet1', true))).toMatchObject({
+      code: 'protected',
+      message: expect.stringContaining('"Sheet1"'),
+    })
+  })
+
+  test('on a sheet that is not there and that the plan does not make', async () => {
+    const patches = [{ at: { ...at, sheet: 'Gone' }, table: breakdown(), over: 'blank' as const }]
+    expect(await refused(() => undefined, { patches })).toMatchObject({ code: 'missing' })
+  })
+
+  test('over the end of the sheet, and with a number that is not finite', async () => {
+    const patches = [{ at: { ...at, row: 1_048_572 }, table: breakdown(), over: 'blank' as const }]
+    expect(await refused(() => undefined, { patches })).toMatchObject({ code: 'selection' })
+    const broken = tableOf([[text('Total'), number(Infinity)]])
+    expect(await refused(() => undefined, { patches: [{ at, table: broken, over: 'blank' }] })).toMatchObject(
+      { code: 'not-a-number', message: expect.stringContaining('Sheet1!C2') },
+    )
+  })
+})
+
+describe('A later write', () => {
+  test('clears what the earlier table leaves over, and only that', async () => {
+    const { book, user, portrait, cells } = open()
+    user.type('Sheet1', 'A1', [['mine', 1, 2, 3]])
+    user.type('Sheet1', 'B9', 'mine too')
+    await book.write({ patches: [{ at, table: breakdown([0.5, 0.2, 0.2, 0.1]), over: 'blank' }] })
+    await book.write({ patches: [{ at, table: breakdown([1]), over: 'blank', ours: area('B2:C8') }] })
+    expect((await cells('Sheet1', 'B2:C9')).values).toEqual([
+      ...valuesOf(breakdown([1])),
+      ['', ''],
+      ['', ''],
+      ['', ''],
+      ['mine too', ''],
+    ])
+    const left = portrait().sheets?.[0]?.cells ?? {}
+    expect(Object.keys(left).filter((cell) => /^R[678]/.test(cell))).toEqual([])
+  })
+
+  test('of new values alone is one request, also with settings that are known', async () => {
+    const { book, office, cells, user } = open()
+    await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }], remember: { seen: 1, gone: 2 } })
+    // a user who makes the labels' cells General must not turn them into formulas
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.getItem('Sheet1').getRange('B2:B7').numberFormat = [['General']] as never
+      await context.sync()
+    }).catch(() => undefined)
+    user.type('Sheet1', 'C4', 0.123)
+    const [seen] = await book.look([{ at: area('B2:C7'), formulas: true }])
+    office.counts.reset()
+    const table = breakdown([0.6, 0.1, 0.3])
+    await book.write({
+      patches: [{ at, table, over: 'blank', ours: area('B2:C7'), seen: seen?.formulas ?? [] }],
+      remember: { seen: 2, gone: null },
+    })
+    expect(office.counts.syncs).toBe(1)
+    const { values, formulas, numberFormat } = await cells('Sheet1', 'B2:C7')
+    expect(values).toEqual(valuesOf(table))
+    expect(formulas).toEqual(valuesOf(table))
+    expect(numberFormat?.[2]).toEqual(['@', '0.0%'])
+    expect(await book.recall()).toEqual({ seen: 2 })
+  })
+
+  test('keeps a user’s own number format when only values are new', async () => {
+    const { book, office, cells } = open()
+    await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }] })
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.getItem('Sheet1').getRange('C4').numberFormat = [['0.000']]
+      await context.sync()
+    })
+    const seen = valuesOf(breakdown())
+    await book.write({
+      patches: [{ at, table: breakdown([1, 0, 0]), over: 'blank', ours: area('B2:C7'), seen }],
+    })
+    expect((await cells('Sheet1', 'C4:C5')).numberFormat).toEqual([['0.000'], ['0.0%']])
+  })
+
+  test('moves and removes names', async () => {
+    const { book } = open()
+    await book.write({ patches: [], keep: { a: area('A1:A2'), b: area('B1:B2') } })
+    await book.write({ patches: [], keep: { a: { ...area('C1:D9'), sheet: 'Sheet1' }, b: null } })
+    const [a, b] = await book.look([{ at: { kept: 'a' } }, { at: { kept: 'b' } }])
+    expect(a?.area).toEqual(area('C1:D9'))
+    expect(b).toBeNull()
+  })
+})
+
+describe('The watch', () => {
+  const watched = async () => {
+    const opened = open()
+    const events: WorkbookEvent[] = []
+    const end = await opened.book.watch((event) => events.push(event))
+    return { ...opened, events, end }
+  }
+
+  test('tells a user’s edits from the echo of our own writes', async () => {
+    const { book, user, events, settle } = await watched()
+    user.type('Sheet1', 'E5', [[1, 2]])
+    await settle()
+    expect(events).toEqual([{ kind: 'edited', sheet: 'Sheet1', area: area('E5:F5'), ours: false }])
+    events.length = 0
+    await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }] })
+    await settle()
+    const edits = events.filter(({ kind }) => kind === 'edited')
+    expect(edits.length).toBeGreaterThan(0)
+    expect(edits.every((event) => event.kind === 'edited' && event.ours)).toBe(true)
+  })
+
+  test('tells them apart also where the host does not mark them, and counts each echo once', async () => {
+    const opened = open()
+    const supported = opened.office.Office.context.requirements.isSetSupported
+    Object.assign(opened.office.Office.context.requirements, {
+      isSetSupported: (set: string, version: string) => version !== '1.14' && supported(set, version),
+    })
+    const events: WorkbookEvent[] = []
+    await opened.book.watch((event) => events.push(event))
+    await opened.book.write({ patches: [{ at, table: breakdown(), over: 'blank' }] })
+    await opened.settle()
+    opened.user.type(
+      'Sheet1',
+      'B2',
+      valuesOf(breakdown()).map((row) => row.map(() => 7)),
+    )
+    await opened.settle()
+    const edits = events.flatMap((event) => (event.kind === 'edited' ? [event.ours] : []))
+    expect(edits).toEqual([true, false])
+  })
+
+  test('tells moves, recalculation, selections, new and removed sheets by the sheet’s name', async () => {
+    const { user, events, office, settle } = await watched()
+    user.type('Sheet1', 'A1', [[1, '=A1*2']])
+    await settle()
+    events.length = 0
+    user.type('Sheet1', 'A1', 5)
+    await settle()
+    expect(events).toContainEqual({ kind: 'calculated', sheet: 'Sheet1' })
+    user.insertRows('Sheet1', 1, 2)
+    await settle()
+    expect(events).toContainEqual({ kind: 'moved', sheet: 'Sheet1' })
+    user.select('Sheet1', 'B2:C3')
+    await settle()
+    expect(events).toContainEqual({ kind: 'selected', area: area('B2:C3') })
+    user.select('Sheet1', 'B2', 'C3')
+    await settle()
+    expect(events.at(-1)).toEqual({ kind: 'selected', area: null })
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.add('Later')
+      await context.sync()
+    })
+    user.type('Later', 'A1', 1)
+    await settle()
+    await settle()
+    expect(events).toContainEqual({
+      kind: 'edited',
+      sheet: 'Later',
+      area: { ...area('A1'), sheet: 'Later' },
+      ours: false,
+    })
+    user.deleteSheet('Later')
+    await settle()
+    expect(events).toContainEqual({ kind: 'sheet-removed', sheet: 'Later' })
+  })
+
+  test('says when a cell being edited keeps us waiting, and the work is done afterwards', async () => {
+    const { book, office, events, cells } = await watched()
+    office.editing = true
+    const writing = book.write({ patches: [{ at, table: breakdown(), over: 'blank' }] })
+    await new Promise((resolve) => setTimeout(resolve, 500))
+    expect(events).toContainEqual({ kind: 'waiting', waiting: true })
+    office.editing = false
+    await writing
+    expect(events.filter(({ kind }) => kind === 'waiting').at(-1)).toEqual({
+      kind: 'waiting',
+      waiting: false,
+    })
+    expect((await cells('Sheet1', 'B7:C7')).values).toEqual([['Total', 1]])
+  })
+
+  test('ends', async () => {
+    const { user, events, end, settle } = await watched()
+    await end()
+    user.type('Sheet1', 'A1', 1)
+    await settle()
+    expect(events).toEqual([])
+  })
+})
+
+describe('The rest', () => {
+  test('the culture says how numbers and dates are typed', async () => {
+    const { book } = open({
+      culture: {
+        name: 'de-DE',
+        numberDecimalSeparator: ',',
+        numberGroupSeparator: '.',
+        dateSeparator: '.',
+        shortDatePattern: 'dd.MM.yyyy',
+      },
+    })
+    expect(await book.culture()).toEqual({ decimal: ',', group: '.', dateOrder: 'dmy' })
+  })
+
+  test('revealing an area selects it on its sheet; hidden sheets are not listed', async () => {
+    const { book, office } = open()
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.add('Back').visibility = 'Hidden'
+      context.workbook.worksheets.add('Front')
+      await context.sync()
+    })
+    expect(await book.sheets()).toEqual(['Sheet1', 'Front'])
+    await book.reveal({ ...area('B2:C3'), sheet: 'Front' })
+    expect(addressOf(await book.selection())).toBe('Front!B2:C3')
+    expect(await refusal(book.reveal({ ...area('B2'), sheet: 'Gone' }))).toMatchObject({ code: 'missing' })
+  })
+
+  test('recovering a workbook without an interrupted write does nothing', async () => {
+    const { book, office } = open()
+    expect(await book.recover()).toBeNull()
+    expect(office.counts.writes).toBe(0)
+  })
+
+  test('a blank cell of a table leaves the cell blank', async () => {
+    const { book, cells } = open()
+    await book.write({ patches: [{ at, table: tableOf([[text('a'), blank]]), over: 'blank' }] })
+    expect((await cells('Sheet1', 'B2:C2')).valueTypes).toEqual([['String', 'Empty']])
+  })
+})
