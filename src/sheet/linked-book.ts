@@ -171,10 +171,6 @@ export class LinkedBook {
 
   // ---- reading
 
-  #at(part: Part, area: Area | null | undefined): Area | { kept: string } {
-    return this.linked ? { kept: this.keptName(part) } : (area ?? { kept: this.keptName(part) })
-  }
-
   /** Takes an area the user points at as the holdings or the returns. */
   async take(part: 'holdings' | 'returns' | 'capital', area: Area, work: Work): Promise<void> {
     if (part === 'capital') return this.#takeCapital(area, work)
