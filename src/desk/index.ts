@@ -1,0 +1,2 @@
+/** The embedded local workbook. */
+export { openDesk, type DeskOptions } from './page'

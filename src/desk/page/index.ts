@@ -1,0 +1,109 @@
+/** The desk: a local workbook at the left, the add-in's pane at the right, and nothing that leaves the machine. */
+import type { FunctionsMetadata } from '../functions'
+import { createFrame } from './frame'
+import { loadPane } from './pane-frame'
+import { screenTheme, type ThemeName } from './theme'
+import type { Workspace } from './workspace'
+
+export interface DeskOptions {
+  /** The workbook it opens with. */
+  readonly demoUrl: string
+  readonly functionsMetadataUrl: string
+  /** The add-in's own page. */
+  readonly paneUrl: string
+  /** The prefix of the add-in's worksheet functions. */
+  readonly namespace: string
+}
+
+/**
+ * Draws the desk into the container and opens the first workbook.
+ *
+ * @returns the parts behind it, for whoever drives the desk from outside
+ */
+export async function openDesk(container: HTMLElement, options: DeskOptions): Promise<Workspace> {
+  let theme = screenTheme()
+  let workspace: Workspace | undefined
+  let report = ''
+
+  const frame = createFrame(
+    container,
+    { open: (file) => void open(file), save: () => void save(), theme: setTheme },
+    theme,
+  )
+  frame.setTheme(theme)
+  frame.setBusy('Loading the workbook…')
+
+  function setTheme(name: ThemeName): void {
+    theme = name
+    frame.setTheme(name)
+    workspace?.setTheme(name)
+    // A pane asks its host for the colours when it is looked at, and the user is looking at it now.
+    frame.pane.contentWindow?.dispatchEvent(new Event('focus'))
+  }
+
+  async function show(bytes: ArrayBuffer, name: string): Promise<void> {
+    if (!workspace) return
+    report = await workspace.open(bytes, name)
+    frame.setBookName(name)
+    frame.say(report)
+    await loadPane(frame.pane, options.paneUrl, workspace.globals)
+  }
+
+  /** Does something that takes a moment; whatever goes wrong is said. */
+  async function busy(message: string, work: () => Promise<void>): Promise<void> {
+    frame.setBusy(message)
+    try {
+      await work()
+    } catch (error) {
+      frame.say(error instanceof Error ? error.message : String(error), true)
+    } finally {
+      frame.setBusy(null)
+    }
+  }
+
+  async function open(file: File): Promise<void> {
+    if (workspace?.changed && !(await frame.askToDiscard())) return
+    await busy(`Opening ${file.name}…`, async () => show(await file.arrayBuffer(), file.name))
+  }
+
+  async function save(): Promise<void> {
+    await busy('Saving…', async () => {
+      if (!workspace) return
+      const { bytes, name } = await workspace.save()
+      download(bytes, name)
+      frame.say(`Saved ${name}.`)
+    })
+  }
+
+  const [{ createWorkspace }, metadata, demo] = await Promise.all([
+    // The grid's own code is large: the frame is on the screen before it.
+    import('./workspace'),
+    fetched(options.functionsMetadataUrl).then((response) => response.json() as Promise<FunctionsMetadata>),
+    fetched(options.demoUrl).then((response) => response.arrayBuffer()),
+  ])
+  const created = createWorkspace(frame.grid, {
+    theme,
+    metadata,
+    namespace: options.namespace,
+    onCellMessage: (message) => frame.say(message ?? report),
+    onPane: frame.showPane,
+  })
+  workspace = created
+  await busy('Loading the workbook…', () => show(demo, options.demoUrl.split('/').pop() ?? 'Workbook.xlsx'))
+  return created
+}
+
+async function fetched(url: string): Promise<Response> {
+  const response = await fetch(url)
+  if (!response.ok) throw new Error(`${url} answered ${response.status}.`)
+  return response
+}
+
+function download(bytes: ArrayBuffer, name: string): void {
+  const type = 'application/vnd.openxmlformats-officedocument.spreadsheetml.sheet'
+  const url = URL.createObjectURL(new Blob([bytes], { type }))
+  const link = Object.assign(document.createElement('a'), { href: url, download: name })
+  link.click()
+  // The browser has read it by then.
+  setTimeout(() => URL.revokeObjectURL(url), 60_000)
+}

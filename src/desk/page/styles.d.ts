@@ -1,0 +1,2 @@
+/** Style sheets are put into the page by the build; importing one has no value. */
+declare module '*.css'
