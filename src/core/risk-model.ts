@@ -96,6 +96,7 @@ export function returnsModel(
 
   const block = openBlock(dates, size, form)
   const variances = new Float64Array(size)
+  const lost = new Float64Array(size)
   const z = new Float64Array(size)
   for (let t = 0; t < dates; t++) {
     const row = returns.subarray(t * size, (t + 1) * size)
@@ -104,7 +105,11 @@ export function returnsModel(
       // the two subtractions in this order: means + remainders may not be a double
       const centred = constant[i] ? 0 : row[i]! - means[i]! - remainders[i]!
       z[i] = centred
-      variances[i] = variances[i]! + multiplier * centred * centred
+      // compensated (Kahan 1965): plain sums of a thousand squares lose two digits
+      const term = multiplier * centred * centred - lost[i]!
+      const sum = variances[i]! + term
+      lost[i] = sum - variances[i]! - term
+      variances[i] = sum
     }
     block.write(t, z, multiplier)
   }
@@ -126,7 +131,7 @@ export function returnsModel(
     rounding: (size * Number.EPSILON) ** 2,
     apply: (weights) => block.pass(checked(weights)),
     variances: () => variances.slice(),
-    matrix: () => columnByColumn(size, (weights) => block.pass(weights).marginals),
+    matrix: () => columnByColumn(variances, (weights) => block.pass(weights).marginals),
     centredRow: (date) => block.read(date),
     portfolioReturns: (weights) => block.portfolio(checked(weights)),
   }
@@ -172,15 +177,20 @@ function dateWeights(dates: number, weighting: Weighting): Float64Array {
   return weights.map((weight) => weight / total)
 }
 
-/** The matrix of an operator, from what it does to each unit vector; only the upper half is taken, then mirrored. */
-function columnByColumn(size: number, apply: (weights: Float64Array) => Float64Array): Float64Array {
+/** The matrix of an operator with this diagonal, from what it does to each unit vector; one half, then mirrored. */
+function columnByColumn(
+  diagonal: Float64Array,
+  apply: (weights: Float64Array) => Float64Array,
+): Float64Array {
+  const size = diagonal.length
   const matrix = new Float64Array(size * size)
   const unit = new Float64Array(size)
   for (let i = 0; i < size; i++) {
     unit[i] = 1
     const column = apply(unit)
     unit[i] = 0
-    for (let j = i; j < size; j++) matrix[i * size + j] = matrix[j * size + i] = column[j]!
+    matrix[i * size + i] = diagonal[i]!
+    for (let j = i + 1; j < size; j++) matrix[i * size + j] = matrix[j * size + i] = column[j]!
   }
   return matrix
 }

@@ -134,6 +134,7 @@ function plainOnePass(
   const weights = numbers.subarray(wBytes / 8, wBytes / 8 + stride)
   const marginals = numbers.subarray(gBytes / 8, gBytes / 8 + stride)
   let variance = 0
+  let lost = 0
   for (let t = 0; t < rows; t += 4) {
     const start = zBytes / 8 + t * stride
     const tile = numbers.subarray(start, start + 4 * stride)
@@ -168,7 +169,10 @@ function plainOnePass(
     const s1 = numbers[k + 1]! * y1
     const s2 = numbers[k + 2]! * y2
     const s3 = numbers[k + 3]! * y3
-    variance += s0 * y0 + s1 * y1 + s2 * y2 + s3 * y3
+    const term = s0 * y0 + s1 * y1 + s2 * y2 + s3 * y3 - lost
+    const sum = variance + term
+    lost = sum - variance - term
+    variance = sum
     for (let i = 0, p = 0; i < stride; i += 2, p += 8) {
       marginals[i] = marginals[i]! + tile[p]! * s0 + tile[p + 2]! * s1 + tile[p + 4]! * s2 + tile[p + 6]! * s3
       marginals[i + 1] =

@@ -10,6 +10,7 @@
 // imported memory; g must be zero on entry.
 export function onePass(z: usize, w: usize, k: usize, y: usize, g: usize, rows: usize, stride: usize): f64 {
   let v: f64 = 0
+  let lost: f64 = 0
   const width = stride << 3
   for (const end = z + rows * width; z < end; z += width << 2) {
     let a0 = f64x2.splat(0)
@@ -42,21 +43,25 @@ export function onePass(z: usize, w: usize, k: usize, y: usize, g: usize, rows: 
     const s1 = load<f64>(k, 8) * y1
     const s2 = load<f64>(k, 16) * y2
     const s3 = load<f64>(k, 24) * y3
-    v += s0 * y0 + s1 * y1 + s2 * y2 + s3 * y3
+    // compensated (Kahan 1965): v keeps its digits however many rows there are
+    const term = s0 * y0 + s1 * y1 + s2 * y2 + s3 * y3 - lost
+    const sum = v + term
+    lost = sum - v - term
+    v = sum
     const m0 = f64x2.splat(s0)
     const m1 = f64x2.splat(s1)
     const m2 = f64x2.splat(s2)
     const m3 = f64x2.splat(s3)
     p = z
     for (let o = g, last = g + width; o < last; o += 32) {
-      let sum = f64x2.add(v128.load(o), f64x2.mul(v128.load(p), m0))
-      sum = f64x2.add(sum, f64x2.mul(v128.load(p, 16), m1))
-      sum = f64x2.add(sum, f64x2.mul(v128.load(p, 32), m2))
-      v128.store(o, f64x2.add(sum, f64x2.mul(v128.load(p, 48), m3)))
-      sum = f64x2.add(v128.load(o, 16), f64x2.mul(v128.load(p, 64), m0))
-      sum = f64x2.add(sum, f64x2.mul(v128.load(p, 80), m1))
-      sum = f64x2.add(sum, f64x2.mul(v128.load(p, 96), m2))
-      v128.store(o, f64x2.add(sum, f64x2.mul(v128.load(p, 112), m3)), 16)
+      let c = f64x2.add(v128.load(o), f64x2.mul(v128.load(p), m0))
+      c = f64x2.add(c, f64x2.mul(v128.load(p, 16), m1))
+      c = f64x2.add(c, f64x2.mul(v128.load(p, 32), m2))
+      v128.store(o, f64x2.add(c, f64x2.mul(v128.load(p, 48), m3)))
+      c = f64x2.add(v128.load(o, 16), f64x2.mul(v128.load(p, 64), m0))
+      c = f64x2.add(c, f64x2.mul(v128.load(p, 80), m1))
+      c = f64x2.add(c, f64x2.mul(v128.load(p, 96), m2))
+      v128.store(o, f64x2.add(c, f64x2.mul(v128.load(p, 112), m3)), 16)
       p += 128
     }
     y += 32
