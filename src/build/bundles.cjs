@@ -80,12 +80,19 @@ async function refresh(names, mode = 'production') {
   return stale
 }
 
-/** Makes the named bundles and keeps making them as their sources change; `report` hears what webpack has to say. */
+/**
+ * Makes the named bundles and keeps making them as their sources change; `report` hears what webpack has to say.
+ *
+ * @returns once the first time is over
+ */
 function follow(names, report) {
   const webpack = require('webpack')
-  webpack(configurations(names, 'development')).watch({}, (error, stats) =>
-    report(error ? error.message : stats.toString('errors-warnings') || 'Built.'),
-  )
+  return new Promise((resolve) => {
+    webpack(configurations(names, 'development')).watch({}, (error, stats) => {
+      report(error ? error.message : stats.toString('errors-warnings') || 'Built.')
+      resolve()
+    })
+  })
 }
 
 module.exports = { Stamp, follow, refresh, root }

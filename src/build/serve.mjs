@@ -9,7 +9,7 @@ async function serveExcel() {
   // Asked for here only: it may put a certificate authority of its own into the user's store, and asks first.
   const { getHttpsServerOptions } = await import('office-addin-dev-certs')
   const certificate = await getHttpsServerOptions()
-  bundles.follow(['addin', 'functions'], (said) => console.log(said))
+  await bundles.follow(['addin', 'functions'], (said) => console.log(said))
   // The manifest names this port, so there is no other to fall back to.
   const { url } = await server.serve(dist, { home: 'taskpane.html', port: 3000, certificate })
   console.log(`The add-in is served at ${url}`)
