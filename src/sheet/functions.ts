@@ -134,7 +134,7 @@ function finite(value: number): number {
   if (Number.isFinite(value)) return value
   throw new Fault(
     'out-of-range',
-    `found a result of ${value}`,
+    'found a result too large for a cell',
     'numbers small enough for their squares to be held are needed',
   )
 }
@@ -161,7 +161,7 @@ const rowsOf = (values: Float64Array, columns: number): number[][] =>
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "out-of-range" | "twice" | "too-few" | "unknown-choice"
  * @source common practice, no source
  * @cost O(T n)
- * @example returns([[100], [110], [99]]) // [[0.1], [-0.1]]
+ * @example worksheetFunctions.RETURNS([[100], [110], [99]]) // [[0.1], [-0.1]]
  */
 export function returns(prices: unknown[][], kind?: unknown): number[][] {
   const form = kindOf(kind) === 'log' ? logReturns : simpleReturns
@@ -182,7 +182,7 @@ export function returns(prices: unknown[][], kind?: unknown): number[][] {
  * @source sample: NIST/SEMATECH e-Handbook of Statistical Methods, section 6.5.4.1 (from memory); exponential: J.P. Morgan/Reuters,
  *         Technical Document, 4th ed. (1996), chapter 5 (from memory), here with the weighted mean taken off
  * @cost O(T n^2)
- * @example covarianceMatrix([[.01, .02], [.03, -.02]]) // [[0.0002, -0.0004], [-0.0004, 0.0008]]
+ * @example worksheetFunctions.COVARIANCE([[.01, .02], [.03, -.02]]) // [[0.0002, -0.0004], [-0.0004, 0.0008]]
  */
 export function covarianceMatrix(
   returns: unknown[][],
@@ -210,7 +210,7 @@ export function covarianceMatrix(
  * @throws Fault as COVARIANCE
  * @source Pearson correlation: NIST/SEMATECH e-Handbook of Statistical Methods (from memory)
  * @cost O(T n^2)
- * @example correlationMatrix([[.04, .03], [.03, .09]]) // [[1, 0.5], [0.5, 1]]
+ * @example worksheetFunctions.CORRELATION([[.04, .03], [.03, .09]]) // [[1, 0.5], [0.5, 1]]
  */
 export function correlationMatrix(returns: unknown[][], estimator?: unknown): unknown[][] {
   const { kept, weighting } = modelOf('returns', returns, estimator)
@@ -240,7 +240,7 @@ const orBlank = (value: number): number | string => (Number.isNaN(value) ? '' : 
  *         "correlation-matrix" | "negative-variance" | "unknown-choice" | "out-of-range"
  * @source Markowitz (1952), Portfolio Selection, Journal of Finance 7(1), 77-91 (from memory)
  * @cost O(T n); on a block seen a moment ago, one comparison of its cells
- * @example volatility([[.5], [.5]], [[.04, 0], [0, .01]]) // 0.1118
+ * @example worksheetFunctions.VOLATILITY([[.5], [.5]], [[.04, 0], [0, .01]]) // 0.1118
  */
 export function volatility(
   weights: unknown[][],
@@ -265,7 +265,7 @@ export function volatility(
  * @throws Fault as VOLATILITY
  * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
  * @cost as VOLATILITY
- * @example standalone([[.5], [-.5]], [[.04, 0], [0, .01]]) // [[0.1], [0.05]]
+ * @example worksheetFunctions.STANDALONE([[.5], [-.5]], [[.04, 0], [0, .01]]) // [[0.1], [0.05]]
  */
 export function standalone(
   weights: unknown[][],
@@ -291,7 +291,7 @@ export function standalone(
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
  * @cost as VOLATILITY
- * @example marginal([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.17889], [0.04472]]
+ * @example worksheetFunctions.MARGINAL([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.17889], [0.04472]]
  */
 export function marginal(
   weights: unknown[][],
@@ -317,7 +317,7 @@ export function marginal(
  * @throws Fault as VOLATILITY
  * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
  * @cost as VOLATILITY
- * @example contribution([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.08944], [0.02236]]
+ * @example worksheetFunctions.CONTRIBUTION([[.5], [.5]], [[.04, 0], [0, .01]]) // [[0.08944], [0.02236]]
  */
 export function contribution(
   weights: unknown[][],
@@ -342,7 +342,7 @@ export function contribution(
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Qian (2006), On the Financial Interpretation of Risk Contribution, Journal of Investment Management 4(4) (from memory)
  * @cost as VOLATILITY
- * @example riskshare([[.5, .5]], [[.04, 0], [0, .01]]) // [[0.8, 0.2]]
+ * @example worksheetFunctions.RISKSHARE([[.5, .5]], [[.04, 0], [0, .01]]) // [[0.8, 0.2]]
  */
 export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: unknown): number[][] {
   const book = bookOf(weights, risk, null, estimator)
@@ -362,7 +362,7 @@ export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: u
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
  * @cost as VOLATILITY
- * @example beta([[.5], [.5]], [[.04, 0], [0, .01]]) // [[1.6], [0.4]]
+ * @example worksheetFunctions.BETA([[.5], [.5]], [[.04, 0], [0, .01]]) // [[1.6], [0.4]]
  */
 export function beta(weights: unknown[][], risk: unknown[][], estimator?: unknown): number[][] {
   const book = bookOf(weights, risk, null, estimator)
@@ -382,7 +382,7 @@ export function beta(weights: unknown[][], risk: unknown[][], estimator?: unknow
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Choueifaty & Coignard (2008), Toward Maximum Diversification, JPM 35(1) (from memory); here with absolute weights
  * @cost as VOLATILITY
- * @example diversification([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.34164
+ * @example worksheetFunctions.DIVERSIFICATION([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.34164
  */
 export function diversification(weights: unknown[][], risk: unknown[][], estimator?: unknown): number {
   return finite(defined(bookOf(weights, risk, null, estimator).decomposition.diversificationRatio))
@@ -401,7 +401,7 @@ export function diversification(weights: unknown[][], risk: unknown[][], estimat
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Herfindahl index of the shares, after Meucci (2009), Managing Diversification, Risk 22(5), 74-79 (from memory)
  * @cost as VOLATILITY
- * @example effective([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.47059
+ * @example worksheetFunctions.EFFECTIVE([[.5], [.5]], [[.04, 0], [0, .01]]) // 1.47059
  */
 export function effective(weights: unknown[][], risk: unknown[][], estimator?: unknown): number {
   return finite(defined(bookOf(weights, risk, null, estimator).decomposition.effectiveNumber))
@@ -427,7 +427,7 @@ const UNDEFINED = 'not defined'
  * @throws Fault as VOLATILITY | "unmatched"
  * @source Tasche (2008), arXiv:0708.2542; Maillard, Roncalli & Teiletche (2010), JPM 36(4)
  * @cost as VOLATILITY
- * @example breakdown([['A'], ['B']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['A', 0.5, 0.1, 0.17889, 0.08944, 0.8, 1.6, 0.89443]
+ * @example worksheetFunctions.BREAKDOWN([['A'], ['B']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['A', 0.5, 0.1, 0.17889, 0.08944, 0.8, 1.6, 0.89443]
  */
 export function breakdown(
   names: unknown[][],
@@ -490,7 +490,7 @@ export function breakdown(
  * @throws Fault as VOLATILITY
  * @source Coleman & Litterman (2012), Quantitative Risk Management, appendix 10.1 (from memory)
  * @cost as VOLATILITY, and one pass of the returns for each group
- * @example grouped([['X'], ['X']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['X', 1, 0.1118, 0.1118, 1]
+ * @example worksheetFunctions.GROUPED([['X'], ['X']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['X', 1, 0.1118, 0.1118, 1]
  */
 export function grouped(
   groups: unknown[][],

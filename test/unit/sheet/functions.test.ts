@@ -604,7 +604,7 @@ describe('refusals name the argument, the place, what was found and what is need
       'results too large for a cell',
       ['COVARIANCE', [[1e200], [-1e200]]],
       'out-of-range',
-      'Found a result of Infinity; numbers small enough for their squares to be held are needed.',
+      'Found a result too large for a cell; numbers small enough for their squares to be held are needed.',
     ],
   ] as [string, [string, ...unknown[]], string, string][])('%s', (_, [id, ...args], code, sentence) => {
     expect(refusal(id, ...args)).toEqual({ code, sentence })
