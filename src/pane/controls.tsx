@@ -1,5 +1,6 @@
 import { useState, type ReactNode } from 'react'
 import { Button, Field, Input, makeStyles, mergeClasses, Select, tokens } from '@fluentui/react-components'
+import { Sentence } from './place'
 
 const useStyles = makeStyles({
   section: { display: 'grid', rowGap: tokens.spacingVerticalS, minWidth: 0 },
@@ -28,7 +29,6 @@ const useStyles = makeStyles({
   },
   inside: { paddingTop: tokens.spacingVerticalS },
   control: { minWidth: 0, width: '100%' },
-  date: { colorScheme: 'light dark' },
 })
 
 /** A part of a view under its own heading, with at most one action at the heading's right. */
@@ -57,11 +57,23 @@ export function Section({
 }
 
 /** Details one may open; `open` is only where it starts. */
-export function Disclosure({ summary, open, children }: { summary: ReactNode; open: boolean; children: ReactNode }) {
+export function Disclosure({
+  summary,
+  open,
+  children,
+}: {
+  summary: ReactNode
+  open: boolean
+  children: ReactNode
+}) {
   const classes = useStyles()
   const [opened, setOpened] = useState(open)
   return (
-    <details className={classes.disclosure} open={opened} onToggle={(event) => setOpened(event.currentTarget.open)}>
+    <details
+      className={classes.disclosure}
+      open={opened}
+      onToggle={(event) => setOpened(event.currentTarget.open)}
+    >
       <summary className={classes.summary}>{summary}</summary>
       <div className={classes.inside}>{children}</div>
     </details>
@@ -86,7 +98,12 @@ export function Choice<T extends string>({
 }) {
   const classes = useStyles()
   return (
-    <Field label={label} size="small" hint={hint ?? null} validationMessage={fault ?? null}>
+    <Field
+      label={label}
+      size="small"
+      hint={hint ?? null}
+      validationMessage={fault === undefined ? null : <Sentence text={fault} />}
+    >
       <Select
         size="small"
         className={classes.control}
@@ -139,12 +156,17 @@ export function Entry<T>({
     setNeeded(null)
     if (draft.trim() !== shown) commit(outcome.value)
   }
+  const message = needed ?? fault
   return (
-    <Field label={label} size="small" hint={hint ?? null} validationMessage={needed ?? fault ?? null}>
+    <Field
+      label={label}
+      size="small"
+      hint={hint ?? null}
+      validationMessage={message === undefined ? null : <Sentence text={message} />}
+    >
       <Input
         size="small"
         className={classes.control}
-        input={type === 'date' ? { className: classes.date } : {}}
         type={type}
         inputMode={type === 'text' ? 'decimal' : undefined}
         autoComplete="off"
@@ -152,7 +174,7 @@ export function Entry<T>({
         onChange={(_, data) => setDraft(data.value)}
         onBlur={finish}
         onKeyDown={(event) => {
-          if (event.key === 'Enter' && !event.ctrlKey && !event.metaKey) finish()
+          if (event.key === 'Enter') finish()
           if (event.key === 'Escape') {
             setDraft(null)
             setNeeded(null)
@@ -198,7 +220,7 @@ export function AskedButton({
       >
         {yes}
       </Button>{' '}
-      <Button size="small" appearance="subtle" onClick={() => setAsking(false)}>
+      <Button size="small" onClick={() => setAsking(false)}>
         Keep it
       </Button>
     </div>
@@ -206,7 +228,6 @@ export function AskedButton({
     <Button
       autoFocus={asked}
       size="small"
-      appearance="subtle"
       onClick={() => {
         setAsked(true)
         setAsking(true)

@@ -1,5 +1,6 @@
 import type { ReactNode } from 'react'
 import { Button, Field, makeStyles, mergeClasses, Select, tokens } from '@fluentui/react-components'
+import { Dismiss12Regular } from '@fluentui/react-icons'
 import {
   numberText,
   ROLES,
@@ -13,7 +14,7 @@ import {
   type Role,
 } from '../sheet'
 import { AskedButton, Choice, Disclosure, Entry, Section, typedNumber } from './controls'
-import { Findings, PlaceLink } from './place'
+import { Findings, PlaceLink, Sentence } from './place'
 import { useBooks, useBooksState } from './store'
 
 const useStyles = makeStyles({
@@ -29,7 +30,13 @@ const useStyles = makeStyles({
     paddingLeft: tokens.spacingHorizontalM,
     borderLeft: `3px solid ${tokens.colorBrandStroke1}`,
   },
-  columns: { display: 'grid', rowGap: tokens.spacingVerticalXS, listStyleType: 'none', margin: 0, padding: 0 },
+  columns: {
+    display: 'grid',
+    rowGap: tokens.spacingVerticalXS,
+    listStyleType: 'none',
+    margin: 0,
+    padding: 0,
+  },
   column: {
     display: 'grid',
     gridTemplateColumns: 'minmax(0, 1fr) 150px',
@@ -47,7 +54,9 @@ const useStyles = makeStyles({
   },
   // a choice with what depends on it below
   cell: { display: 'grid', rowGap: tokens.spacingVerticalS, minWidth: 0 },
-  capital: { display: 'flex', columnGap: tokens.spacingHorizontalS, alignItems: 'flex-end' },
+  capital: { display: 'flex', columnGap: tokens.spacingHorizontalS, alignItems: 'start' },
+  // beside the line of entry, below its label
+  besideEntry: { marginTop: '22px', flexShrink: 0 },
   grow: { flexGrow: 1, minWidth: 0 },
   chips: { display: 'flex', flexWrap: 'wrap', gap: tokens.spacingHorizontalXS, alignItems: 'center' },
   rule: {
@@ -67,6 +76,7 @@ function Step({
   area,
   summary,
   fault,
+  next,
   children,
 }: {
   title: string
@@ -75,6 +85,8 @@ function Step({
   area: Area | null
   summary: string | null
   fault: string | undefined
+  /** whether this is what is to be done next */
+  next: boolean
   children: ReactNode
 }) {
   const books = useBooks()
@@ -85,7 +97,7 @@ function Step({
       action={
         <Button
           size="small"
-          appearance={area ? 'secondary' : 'primary'}
+          appearance={next ? 'primary' : 'secondary'}
           onClick={() => void books.takeSelection(field)}
           aria-label={`Use selection for ${field}`}
         >
@@ -93,7 +105,7 @@ function Step({
         </Button>
       }
     >
-      {fault && <Field validationMessage={fault} />}
+      {fault && <Field validationMessage={<Sentence text={fault} />} />}
       {area ? (
         <p className={mergeClasses(classes.small, classes.read)}>
           <PlaceLink area={area} />
@@ -111,8 +123,10 @@ function Step({
 function Columns({ reading, open }: { reading: HoldingsReading; open: boolean }) {
   const books = useBooks()
   const classes = useStyles()
+  const changed = reading.columns.filter(({ role, proposed }) => role !== proposed).length
+  const count = `Columns (${reading.columns.length})${changed > 0 ? `, ${changed} changed` : ''}`
   return (
-    <Disclosure summary={`Columns (${reading.columns.length})`} open={open}>
+    <Disclosure summary={count} open={open || changed > 0}>
       <ul className={classes.columns}>
         {reading.columns.map(({ header, role, proposed, sample }, index) => (
           <li key={index} className={classes.column}>
@@ -121,11 +135,7 @@ function Columns({ reading, open }: { reading: HoldingsReading; open: boolean })
                 {header}
               </div>
               <div className={mergeClasses(classes.ellipsis, classes.quiet)} title={sample}>
-                {role === proposed ? (
-                  sample
-                ) : (
-                  <span className={classes.changed}>Changed; proposed: {proposed}</span>
-                )}
+                {role === proposed ? sample : <span className={classes.changed}>Proposed: {proposed}</span>}
               </div>
             </div>
             <Select
@@ -170,7 +180,11 @@ function Capital({ state }: { state: BooksState }) {
           commit={(value) => void books.choose({ capital: value })}
         />
       </div>
-      <Button size="small" onClick={() => void books.takeSelection('capital')}>
+      <Button
+        size="small"
+        className={classes.besideEntry}
+        onClick={() => void books.takeSelection('capital')}
+      >
         Use selected cell
       </Button>
     </div>
@@ -188,10 +202,12 @@ function Riskless({ names }: { names: readonly string[] }) {
         <Button
           key={name}
           size="small"
+          icon={<Dismiss12Regular />}
+          iconPosition="after"
           aria-label={`${name}: no longer riskless`}
           onClick={() => void books.markRiskless(name, false)}
         >
-          {name} ✕
+          {name}
         </Button>
       ))}
     </div>
@@ -207,7 +223,11 @@ function RisklessChoice({ finding }: { finding: Finding }) {
   const plain = (name: string): string => name.trim().toLowerCase()
   if (!holding || returns.names.some((name) => plain(name) === plain(holding.name))) return null
   return (
-    <Button size="small" aria-label={`Mark ${holding.name} as riskless`} onClick={() => void books.markRiskless(holding.name, true)}>
+    <Button
+      size="small"
+      aria-label={`Mark as riskless: ${holding.name}`}
+      onClick={() => void books.markRiskless(holding.name, true)}
+    >
       Mark as riskless
     </Button>
   )
@@ -224,6 +244,7 @@ function Holdings({ state }: { state: BooksState }) {
       area={holdings?.area ?? null}
       summary={holdings?.summary ?? null}
       fault={faults.holdings}
+      next={holdings === null}
     >
       {holdings && (
         <>
@@ -355,7 +376,9 @@ function ReturnsFields({ state, reading }: { state: BooksState; reading: Returns
               ['dates down', 'Down'],
               ['dates across', 'Across'],
             ]}
-            choose={(orientation) => void books.choose({ orientation: orientation === FOUND ? null : orientation })}
+            choose={(orientation) =>
+              void books.choose({ orientation: orientation === FOUND ? null : orientation })
+            }
           />
           <LookBackFields state={state} reading={reading} />
           <div className={classes.cell}>
@@ -413,7 +436,7 @@ function ReturnsFields({ state, reading }: { state: BooksState; reading: Returns
 }
 
 function Returns({ state }: { state: BooksState }) {
-  const { returns, faults } = state
+  const { holdings, returns, faults } = state
   return (
     <Step
       title="Returns"
@@ -422,6 +445,7 @@ function Returns({ state }: { state: BooksState }) {
       area={returns?.area ?? null}
       summary={returns?.summary ?? null}
       fault={faults.returns}
+      next={holdings !== null && returns === null}
     >
       {returns && (
         <>
@@ -453,7 +477,7 @@ function Book({ state }: { state: BooksState }) {
           commit={(name) => void books.rename(name)}
         />
         <div className={mergeClasses(classes.small, classes.buttons)}>
-          <Button size="small" appearance="subtle" onClick={() => void books.addBook()}>
+          <Button size="small" onClick={() => void books.addBook()}>
             Add another book
           </Button>
           <AskedButton

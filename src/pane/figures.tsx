@@ -1,12 +1,13 @@
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import { countOf, dateText, numberText, percentText, type Breakdown } from '../sheet'
 import { Disclosure } from './controls'
-import { Findings } from './place'
+import { Findings, Sentence } from './place'
 
 const useStyles = makeStyles({
   block: { display: 'grid', rowGap: tokens.spacingVerticalM, minWidth: 0 },
   pair: { display: 'grid', gridTemplateColumns: '1fr 1fr', columnGap: tokens.spacingHorizontalL, margin: 0 },
-  figure: { display: 'flex', flexDirection: 'column', minWidth: 0 },
+  // The figure first, its label below: labels of one and two lines leave the two figures on one line.
+  figure: { display: 'flex', flexDirection: 'column-reverse', justifyContent: 'flex-end', minWidth: 0 },
   label: {
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
@@ -14,7 +15,12 @@ const useStyles = makeStyles({
   },
   value: { margin: 0, fontVariantNumeric: 'tabular-nums', fontWeight: tokens.fontWeightSemibold },
   big: { fontSize: tokens.fontSizeHero800, lineHeight: tokens.lineHeightHero800 },
-  beside: { fontSize: tokens.fontSizeBase600, lineHeight: tokens.lineHeightHero800 },
+  // the smaller figure stands on the line of the larger
+  beside: {
+    fontSize: tokens.fontSizeBase600,
+    lineHeight: `calc(${tokens.lineHeightHero800} - 5px)`,
+    paddingTop: '5px',
+  },
   rows: { margin: 0, display: 'grid' },
   row: {
     display: 'flex',
@@ -26,8 +32,9 @@ const useStyles = makeStyles({
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
   },
-  setting: { textAlign: 'right', color: tokens.colorNeutralForeground2, overflowWrap: 'anywhere', margin: 0 },
-  settingLabel: { flexShrink: 0, maxWidth: '50%' },
+  setting: { margin: 0, overflowWrap: 'anywhere' },
+  settingRow: { display: 'grid', gridTemplateColumns: '84px minmax(0, 1fr)', justifyContent: 'start' },
+  settingLabel: { color: tokens.colorNeutralForeground3 },
 })
 
 const NONE = '–'
@@ -65,7 +72,9 @@ export function Figures({ breakdown }: { breakdown: Breakdown }) {
         {expectedReturn && (
           <div className={classes.figure}>
             <dt className={classes.label}>{expectedReturn.label}</dt>
-            <dd className={mergeClasses(classes.value, classes.beside)}>{percentText(expectedReturn.value, 2)}</dd>
+            <dd className={mergeClasses(classes.value, classes.beside)}>
+              {percentText(expectedReturn.value, 2)}
+            </dd>
           </div>
         )}
       </dl>
@@ -84,9 +93,11 @@ export function Figures({ breakdown }: { breakdown: Breakdown }) {
       <Disclosure summary={`Settings: ${datesLine(breakdown.dates)}`} open={false}>
         <dl className={classes.rows}>
           {breakdown.settings.map(([label, value]) => (
-            <div key={label} className={classes.row}>
+            <div key={label} className={mergeClasses(classes.row, classes.settingRow)}>
               <dt className={classes.settingLabel}>{label}</dt>
-              <dd className={classes.setting}>{value}</dd>
+              <dd className={classes.setting}>
+                <Sentence text={value} />
+              </dd>
             </div>
           ))}
         </dl>

@@ -4,6 +4,7 @@ import {
   Button,
   FluentProvider,
   makeStyles,
+  mergeClasses,
   MessageBar,
   MessageBarActions,
   MessageBarBody,
@@ -15,11 +16,12 @@ import {
 import { Dismiss16Regular } from '@fluentui/react-icons'
 import { CAUTION, type Books } from '../sheet'
 import { DataView } from './data'
+import { Sentence } from './place'
 import { ReportView } from './report'
 import { RiskView } from './risk'
 import { StatusLine } from './status'
 import { BooksProvider, useBooks, useBooksState } from './store'
-import { useTheme, type HostTheme } from './theme'
+import { useLook, type HostTheme } from './theme'
 
 /** What the pane asks of the host it stands in. */
 export interface PaneHost {
@@ -32,18 +34,27 @@ export interface PaneHost {
 
 const useStyles = makeStyles({
   provider: { height: '100%' },
+  light: { colorScheme: 'light' },
+  dark: { colorScheme: 'dark' },
   pane: {
     height: '100%',
     minWidth: '300px',
     display: 'grid',
-    gridTemplateRows: 'auto auto minmax(0, 1fr) auto auto',
+    gridTemplateRows: 'auto minmax(0, 1fr) auto auto',
     fontSize: tokens.fontSizeBase300,
     lineHeight: tokens.lineHeightBase300,
     color: tokens.colorNeutralForeground1,
     backgroundColor: tokens.colorNeutralBackground1,
   },
   books: { padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM} 0` },
-  title: { position: 'absolute', width: '1px', height: '1px', overflow: 'hidden', clipPath: 'inset(50%)', margin: 0 },
+  title: {
+    position: 'absolute',
+    width: '1px',
+    height: '1px',
+    overflow: 'hidden',
+    clipPath: 'inset(50%)',
+    margin: 0,
+  },
   main: { minHeight: 0 },
   view: {
     boxSizing: 'border-box',
@@ -106,8 +117,15 @@ function Messages() {
   return (
     <div className={classes.messages} aria-live="polite">
       {offers.map((offer, index) => (
-        <MessageBar key={`${index} ${offer.sentence}`} intent="warning" layout="multiline" className={classes.message}>
-          <MessageBarBody>{offer.sentence}</MessageBarBody>
+        <MessageBar
+          key={`${index} ${offer.sentence}`}
+          intent="info"
+          layout="multiline"
+          className={classes.message}
+        >
+          <MessageBarBody>
+            <Sentence text={offer.sentence} />
+          </MessageBarBody>
           <MessageBarActions>
             <Button size="small" onClick={() => void offer.accept()}>
               {offer.button}
@@ -120,7 +138,9 @@ function Messages() {
       ))}
       {notice !== null && notice !== dismissed && (
         <MessageBar key={notice} intent="info" layout="multiline" className={classes.message}>
-          <MessageBarBody>{notice}</MessageBarBody>
+          <MessageBarBody>
+            <Sentence text={notice} />
+          </MessageBarBody>
           <MessageBarActions
             containerAction={
               <Button
@@ -180,14 +200,15 @@ function Views({ view, show }: { view: View; show: (view: View) => void }) {
 function Pane({ version }: { version: string }) {
   const books = useBooks()
   const classes = useStyles()
-  const { holdings, returns, breakdown, working } = useBooksState()
+  const { holdings, returns, breakdown } = useBooksState()
   const [view, setView] = useState<View>(breakdown ? 'risk' : 'data')
-  const canCompute = holdings !== null && returns !== null && working === null
+  const canCompute = holdings !== null && returns !== null
   const compute = async (): Promise<void> => {
     if (!canCompute) return
     await books.compute()
     const { status, breakdown } = books.state()
-    if (breakdown && status.kind === 'up to date') setView((current) => (current === 'data' ? 'risk' : current))
+    if (breakdown && status.kind === 'up to date')
+      setView((current) => (current === 'data' ? 'risk' : current))
   }
   return (
     <div
@@ -203,8 +224,8 @@ function Pane({ version }: { version: string }) {
         <h1 className={classes.title}>Counterpoise</h1>
         <BookPicker />
         <Views view={view} show={setView} />
+        <StatusLine compute={() => void compute()} canCompute={canCompute} />
       </header>
-      <StatusLine compute={() => void compute()} canCompute={canCompute} />
       <main className={classes.main}>
         <div id="view" role="tabpanel" aria-labelledby={`tab-${view}`} className={classes.view} tabIndex={0}>
           {view === 'data' && <DataView />}
@@ -223,12 +244,12 @@ function Pane({ version }: { version: string }) {
 
 function ThemedPane({ books, host }: { books: Books; host: PaneHost }) {
   const classes = useStyles()
-  const theme = useTheme(
+  const { theme, scheme } = useLook(
     () => host.theme(),
     (listener) => host.onThemeChange(listener),
   )
   return (
-    <FluentProvider theme={theme} className={classes.provider}>
+    <FluentProvider theme={theme} className={mergeClasses(classes.provider, classes[scheme])}>
       <BooksProvider books={books}>
         <Pane version={host.version} />
       </BooksProvider>

@@ -12,36 +12,46 @@ const useStyles = makeStyles({
   picture: { position: 'relative', minWidth: 0 },
   head: {
     display: 'grid',
-    gridTemplateColumns: 'minmax(0, 1fr) 72px 72px',
+    gridTemplateColumns: 'minmax(0, 1fr) 48px 60px',
     columnGap: tokens.spacingHorizontalS,
     alignItems: 'end',
-    padding: `0 ${tokens.spacingHorizontalXS} ${tokens.spacingVerticalXS}`,
+    position: 'sticky',
+    top: `calc(-1 * ${tokens.spacingVerticalL})`,
+    zIndex: 1,
+    backgroundColor: tokens.colorNeutralBackground1,
+    padding: `${tokens.spacingVerticalXS} ${tokens.spacingHorizontalXS}`,
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
     color: tokens.colorNeutralForeground2,
     textAlign: 'right',
   },
-  key: { display: 'flex', flexDirection: 'column', alignItems: 'flex-end', rowGap: tokens.spacingVerticalXXS },
+  key: {
+    display: 'flex',
+    flexDirection: 'column',
+    alignItems: 'flex-end',
+    rowGap: tokens.spacingVerticalXXS,
+  },
   row: {
     display: 'grid',
-    gridTemplateColumns: 'minmax(0, 1fr) 72px 72px',
+    gridTemplateColumns: 'minmax(0, 1fr) 48px 60px',
     columnGap: tokens.spacingHorizontalS,
     padding: `${tokens.spacingVerticalXXS} ${tokens.spacingHorizontalXS} ${tokens.spacingVerticalXS}`,
     borderRadius: tokens.borderRadiusSmall,
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
     cursor: 'pointer',
-    ':hover': { backgroundColor: tokens.colorSubtleBackgroundHover },
+    ':hover': { backgroundColor: tokens.colorNeutralBackground3 },
     ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '-2px' },
   },
   selected: {
-    backgroundColor: tokens.colorSubtleBackgroundSelected,
-    boxShadow: `inset 2px 0 0 ${tokens.colorBrandStroke1}`,
-    forcedColorAdjust: 'preserve-parent-color',
+    backgroundColor: tokens.colorNeutralBackground3,
+    boxShadow: `inset 3px 0 0 ${tokens.colorBrandStroke1}`,
     '@media (forced-colors: active)': { outline: '1px solid Highlight' },
   },
-  name: { overflow: 'hidden', textOverflow: 'ellipsis', whiteSpace: 'nowrap' },
+  name: { overflowWrap: 'anywhere' },
   number: { textAlign: 'right', fontVariantNumeric: 'tabular-nums' },
+  // The words that the columns' headings say to the eye.
+  unseen: { position: 'absolute', width: '1px', height: '1px', overflow: 'hidden', clipPath: 'inset(50%)' },
   leading: { fontWeight: tokens.fontWeightSemibold },
   drawing: { gridColumn: '1 / -1', display: 'block', marginTop: '2px', overflow: 'visible' },
   heading: {
@@ -66,9 +76,13 @@ const useStyles = makeStyles({
   },
   more: { color: tokens.colorBrandForegroundLink, textDecorationLine: 'underline' },
   defs: { position: 'absolute', width: 0, height: 0 },
-  zero: { stroke: tokens.colorNeutralStrokeAccessible, '@media (forced-colors: active)': { stroke: 'CanvasText' } },
+  zero: {
+    stroke: tokens.colorNeutralStrokeAccessible,
+    '@media (forced-colors: active)': { stroke: 'CanvasText' },
+  },
   weight: {
-    fill: tokens.colorNeutralStroke1,
+    // Hollow against solid against hatched: the three are told apart where a theme draws all of them in one colour.
+    fill: tokens.colorNeutralBackground5,
     stroke: tokens.colorNeutralStrokeAccessible,
     '@media (forced-colors: active)': { fill: 'Canvas', stroke: 'CanvasText' },
   },
@@ -157,7 +171,14 @@ export default function Picture({
     return (
       <svg className={classes.drawing} width="100%" height={height} aria-hidden focusable="false">
         {measure.comparable && (
-          <Bar className={classes.weight} x={from(weight)} width={length(weight)} y={0.5} height={4} strokeWidth={1} />
+          <Bar
+            className={classes.weight}
+            x={from(weight)}
+            width={length(weight)}
+            y={0.5}
+            height={4}
+            strokeWidth={1}
+          />
         )}
         <Bar
           className={risk < 0 ? classes.reducing : classes.share}
@@ -190,7 +211,7 @@ export default function Picture({
     document.getElementById(`${rowIds}${next}`)?.focus()
   }
   /** The one row that Tab reaches: the selected one, or the first when that one is folded away. */
-  const reachable = shown.includes(selected) ? selected : adding[0] ?? reducing[0]
+  const reachable = shown.includes(selected) ? selected : (adding[0] ?? reducing[0])
   const rows = (positions: readonly number[]) =>
     positions.map((i) => (
       <div
@@ -203,11 +224,13 @@ export default function Picture({
         onClick={() => select(i)}
         onFocus={() => select(i)}
       >
-        <span className={classes.name} title={breakdown.names[i]}>
-          {breakdown.names[i]}
+        <span className={classes.name}>{breakdown.names[i]}</span>
+        <span className={classes.number}>
+          <span className={classes.unseen}>, weight </span>
+          {percentText(weights[i]!, digits)}
         </span>
-        <span className={classes.number}>{percentText(weights[i]!, digits)}</span>
         <span className={mergeClasses(classes.number, classes.leading)}>
+          <span className={classes.unseen}>, {measure.label.toLowerCase()} </span>
           {percentText(risk[i]!, measure.digits)}
         </span>
         {bars({ weight: weights[i]!, risk: risk[i]! })}
@@ -230,21 +253,25 @@ export default function Picture({
       <div className={classes.head} aria-hidden>
         <span />
         <span className={classes.key}>
+          Weight
           {measure.comparable && (
-            <svg width="24" height="6" aria-hidden>
-              <Bar className={classes.weight} x={0.5} y={0.5} width={23} height={4} />
+            <svg width="24" height="8" aria-hidden>
+              <Bar className={classes.weight} x={0.5} y={2} width={23} height={4} />
             </svg>
           )}
-          Weight
         </span>
         <span className={classes.key}>
+          {measure.label}
           <svg width="24" height="8" aria-hidden>
             <Bar className={classes.share} x={0.5} y={0.5} width={23} height={7} />
           </svg>
-          {measure.label}
         </span>
       </div>
-      <div role="listbox" aria-label={`Weight and ${measure.label.toLowerCase()}, by position`} onKeyDown={move}>
+      <div
+        role="listbox"
+        aria-label={`Weight and ${measure.label.toLowerCase()}, by position`}
+        onKeyDown={move}
+      >
         <div role="group" aria-label="Positions that add to risk">
           {rows(adding)}
         </div>
@@ -252,7 +279,14 @@ export default function Picture({
           <div role="group" aria-label="Risk-reducing positions">
             <div className={classes.heading} aria-hidden>
               <svg width="24" height="8">
-                <Bar className={classes.reducing} fill={`url(#${hatch})`} x={0.5} y={0.5} width={23} height={7} />
+                <Bar
+                  className={classes.reducing}
+                  fill={`url(#${hatch})`}
+                  x={0.5}
+                  y={0.5}
+                  width={23}
+                  height={7}
+                />
               </svg>
               Risk-reducing positions
             </div>
@@ -275,7 +309,14 @@ export default function Picture({
             <div role="listbox" aria-label="Largest risk-reducing positions" onKeyDown={move}>
               <div className={classes.heading} aria-hidden>
                 <svg width="24" height="8">
-                  <Bar className={classes.reducing} fill={`url(#${hatch})`} x={0.5} y={0.5} width={23} height={7} />
+                  <Bar
+                    className={classes.reducing}
+                    fill={`url(#${hatch})`}
+                    x={0.5}
+                    y={0.5}
+                    width={23}
+                    height={7}
+                  />
                 </svg>
                 Risk-reducing positions
               </div>

@@ -1,16 +1,16 @@
 import type { ReactNode } from 'react'
 import { Link, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import {
-  ErrorCircle16Filled,
-  Info16Regular,
-  Warning16Filled,
-  type FluentIcon,
-} from '@fluentui/react-icons'
-import { addressOf, type Area, type Finding } from '../sheet'
+import { ErrorCircle16Filled, Info16Regular, Warning16Filled, type FluentIcon } from '@fluentui/react-icons'
+import { addressOf, parseAddress, sameArea, type Area, type Finding } from '../sheet'
 import { useBooks } from './store'
 
 const useStyles = makeStyles({
-  link: { fontSize: 'inherit', lineHeight: 'inherit', overflowWrap: 'anywhere', textDecorationLine: 'underline' },
+  link: {
+    fontSize: 'inherit',
+    lineHeight: 'inherit',
+    overflowWrap: 'anywhere',
+    textDecorationLine: 'underline',
+  },
   list: { listStyleType: 'none', margin: 0, padding: 0, display: 'grid', rowGap: tokens.spacingVerticalXS },
   finding: {
     display: 'grid',
@@ -38,27 +38,40 @@ export function PlaceLink({ area }: { area: Area }) {
   )
 }
 
-/** A sentence in which the address of its area, where it stands in it or else after it, is a link to the cells. */
-export function Sentence({ text, area }: { text: string; area: Area | null }) {
-  if (!area) return <>{text}</>
-  const address = addressOf(area)
-  const at = text.indexOf(address)
-  // An address that goes on ("B5" in "B5:F20", "B5" in "B56") names other cells.
-  const whole = at >= 0 && !/^(?::[A-Z]|\d)/.test(text.slice(at + address.length))
-  return whole ? (
+const ADDRESS = /(?:'(?:[^']|'')+'|[\p{L}_][\p{L}\p{N}_.]*)!\$?[A-Z]{1,3}\$?\d+(?::\$?[A-Z]{1,3}\$?\d+)?/gu
+
+/**
+ * A sentence in which every address is a link to its cells.
+ * @param area where to look, added at the end when the sentence does not name it
+ */
+export function Sentence({ text, area = null }: { text: string; area?: Area | null }) {
+  const parts: ReactNode[] = []
+  let told = area === null
+  let end = 0
+  for (const match of text.matchAll(ADDRESS)) {
+    const named = parseAddress(match[0])
+    if (!named) continue
+    parts.push(text.slice(end, match.index), <PlaceLink key={match.index} area={named} />)
+    end = match.index + match[0].length
+    told ||= sameArea(named, area)
+  }
+  return (
     <>
-      {text.slice(0, at)}
-      <PlaceLink area={area} />
-      {text.slice(at + address.length)}
-    </>
-  ) : (
-    <>
-      {text} <PlaceLink area={area} />
+      {parts}
+      {text.slice(end)}
+      {!told && area && (
+        <>
+          {' '}
+          <PlaceLink area={area} />
+        </>
+      )}
     </>
   )
 }
 
-const GRAVITY: { readonly [weight in Finding['weight']]: { readonly word: string; readonly Icon: FluentIcon } } = {
+const GRAVITY: {
+  readonly [weight in Finding['weight']]: { readonly word: string; readonly Icon: FluentIcon }
+} = {
   stops: { word: 'Stop', Icon: ErrorCircle16Filled },
   warns: { word: 'Warning', Icon: Warning16Filled },
   notes: { word: 'Note', Icon: Info16Regular },

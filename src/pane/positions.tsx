@@ -1,6 +1,11 @@
 import { Fragment, useState } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { ArrowDown12Regular, ArrowUp12Regular, ChevronDown12Regular, ChevronRight12Regular } from '@fluentui/react-icons'
+import {
+  ArrowDown12Regular,
+  ArrowUp12Regular,
+  ChevronDown12Regular,
+  ChevronRight12Regular,
+} from '@fluentui/react-icons'
 import { numberText, percentText, type Breakdown } from '../sheet'
 import { digitsFor, sharesOf } from './measure'
 
@@ -16,7 +21,7 @@ const useStyles = makeStyles({
   },
   head: {
     position: 'sticky',
-    top: 0,
+    top: `calc(-1 * ${tokens.spacingVerticalL})`,
     zIndex: 1,
     backgroundColor: tokens.colorNeutralBackground1,
     borderBottom: `1px solid ${tokens.colorNeutralStrokeAccessible}`,
@@ -40,7 +45,7 @@ const useStyles = makeStyles({
     ':hover': { color: tokens.colorNeutralForeground1 },
     ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '-2px' },
   },
-  sorted: { color: tokens.colorNeutralForeground1, fontWeight: tokens.fontWeightSemibold },
+  sorted: { color: tokens.colorNeutralForeground1 },
   arrow: { verticalAlign: '-1px' },
   cell: {
     padding: `${tokens.spacingVerticalXS} 0`,
@@ -64,7 +69,11 @@ const useStyles = makeStyles({
     overflowWrap: 'anywhere',
     ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '1px' },
   },
-  total: { fontWeight: tokens.fontWeightSemibold, borderBottom: 'none', borderTop: `1px solid ${tokens.colorNeutralStrokeAccessible}` },
+  total: {
+    fontWeight: tokens.fontWeightSemibold,
+    borderBottom: 'none',
+    borderTop: `1px solid ${tokens.colorNeutralStrokeAccessible}`,
+  },
   details: {
     textAlign: 'left',
     backgroundColor: tokens.colorNeutralBackground2,
@@ -75,9 +84,14 @@ const useStyles = makeStyles({
   pair: { display: 'flex', justifyContent: 'space-between', columnGap: tokens.spacingHorizontalM },
   value: { margin: 0 },
   sentence: { margin: `${tokens.spacingVerticalXS} 0 0` },
-  tie: { margin: 0, fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200, color: tokens.colorNeutralForeground3 },
-  narrow: { width: '19%' },
-  wide: { width: '25%' },
+  tie: {
+    margin: 0,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    color: tokens.colorNeutralForeground3,
+  },
+  narrow: { width: '56px' },
+  wide: { width: '82px' },
 })
 
 type Key = 'name' | 'weight' | 'contribution' | 'share'
@@ -145,7 +159,10 @@ function Columns() {
 /** Every position with its figures; a press on its name opens the rest of them. */
 export function Positions({ breakdown }: { breakdown: Breakdown }) {
   const classes = useStyles()
-  const [sort, setSort] = useState<{ key: Key; descending: boolean }>({ key: 'contribution', descending: true })
+  const [sort, setSort] = useState<{ key: Key; descending: boolean }>({
+    key: 'contribution',
+    descending: true,
+  })
   const [opened, setOpened] = useState<ReadonlySet<string>>(new Set())
   const [limit, setLimit] = useState(STEP)
   const { decomposition: d, names } = breakdown
@@ -157,7 +174,9 @@ export function Positions({ breakdown }: { breakdown: Breakdown }) {
     sort.key === 'name'
       ? (names[a] ?? '').localeCompare(names[b] ?? '', undefined, { numeric: true })
       : values[sort.key][a]! - values[sort.key][b]!
-  const order = names.map((_, i) => i).sort((a, b) => (sort.descending ? compare(b, a) : compare(a, b)) || a - b)
+  const order = names
+    .map((_, i) => i)
+    .sort((a, b) => (sort.descending ? compare(b, a) : compare(a, b)) || a - b)
   const toggle = (name: string): void => {
     const next = new Set(opened)
     if (!next.delete(name)) next.add(name)
@@ -178,7 +197,11 @@ export function Positions({ breakdown }: { breakdown: Breakdown }) {
                   key={key}
                   scope="col"
                   aria-sort={active ? (sort.descending ? 'descending' : 'ascending') : 'none'}
-                  className={mergeClasses(classes.head, key === 'name' && classes.left, active && classes.sorted)}
+                  className={mergeClasses(
+                    classes.head,
+                    key === 'name' && classes.left,
+                    active && classes.sorted,
+                  )}
                 >
                   <button
                     type="button"
@@ -202,7 +225,12 @@ export function Positions({ breakdown }: { breakdown: Breakdown }) {
               <Fragment key={i}>
                 <tr>
                   <th scope="row" className={mergeClasses(classes.cell, classes.name)}>
-                    <button type="button" className={classes.open} aria-expanded={open} onClick={() => toggle(name)}>
+                    <button
+                      type="button"
+                      className={classes.open}
+                      aria-expanded={open}
+                      onClick={() => toggle(name)}
+                    >
                       <Chevron aria-hidden />
                       <span>{name}</span>
                     </button>
@@ -227,9 +255,15 @@ export function Positions({ breakdown }: { breakdown: Breakdown }) {
             <th scope="row" className={mergeClasses(classes.cell, classes.name, classes.total)}>
               Total
             </th>
-            <td className={mergeClasses(classes.cell, classes.total)}>{percentText(breakdown.net, digits)}</td>
-            <td className={mergeClasses(classes.cell, classes.total)}>{percentText(d.volatility, digits + 1)}</td>
-            <td className={mergeClasses(classes.cell, classes.total)}>{shares ? percentText(1, digits) : '–'}</td>
+            <td className={mergeClasses(classes.cell, classes.total)}>
+              {percentText(breakdown.net, digits)}
+            </td>
+            <td className={mergeClasses(classes.cell, classes.total)}>
+              {percentText(d.volatility, digits + 1)}
+            </td>
+            <td className={mergeClasses(classes.cell, classes.total)}>
+              {shares ? percentText(1, digits) : '–'}
+            </td>
           </tr>
         </tfoot>
       </table>
@@ -239,8 +273,8 @@ export function Positions({ breakdown }: { breakdown: Breakdown }) {
         </Button>
       )}
       <p className={classes.tie}>
-        Contributions add up to {percentText(d.sumOfContributions, 4)}, volatility {percentText(d.volatility, 4)}, difference{' '}
-        {percentText(d.difference, 4)}.
+        Contributions add up to {percentText(d.sumOfContributions, 4)}, volatility{' '}
+        {percentText(d.volatility, 4)}, difference {percentText(d.difference, 4)}.
       </p>
     </>
   )
@@ -294,7 +328,9 @@ export function Groups({ breakdown, index }: { breakdown: Breakdown; index: numb
           <td className={mergeClasses(classes.cell, classes.total)}>
             {percentText(breakdown.decomposition.volatility, digits + 1)}
           </td>
-          <td className={mergeClasses(classes.cell, classes.total)}>{withShares ? percentText(1, digits) : '–'}</td>
+          <td className={mergeClasses(classes.cell, classes.total)}>
+            {withShares ? percentText(1, digits) : '–'}
+          </td>
         </tr>
       </tfoot>
     </table>

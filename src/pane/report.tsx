@@ -1,8 +1,8 @@
-import { useState } from 'react'
+import { useMemo, useState } from 'react'
 import { Button, Field, makeStyles, Radio, RadioGroup, tokens } from '@fluentui/react-components'
-import { addressOf, countOf, type Breakdown } from '../sheet'
+import { addressOf, breakdownTable, countOf, type Breakdown } from '../sheet'
 import { Section } from './controls'
-import { PlaceLink } from './place'
+import { PlaceLink, Sentence } from './place'
 import { useBooks, useBooksState } from './store'
 
 const useStyles = makeStyles({
@@ -15,6 +15,7 @@ const useStyles = makeStyles({
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase300,
   },
+  choices: { '& label': { fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 } },
   action: { justifySelf: 'start' },
 })
 
@@ -44,9 +45,12 @@ export function ReportView() {
   const books = useBooks()
   const classes = useStyles()
   const { breakdown, table, faults, working } = useBooksState()
+  const cells = useMemo(() => (breakdown ? breakdownTable('', breakdown).cells : []), [breakdown])
   const [wanted, setWanted] = useState<Place | null>(null)
-  if (!breakdown) return <p className={classes.quiet}>There is a table to write once the figures are computed.</p>
-  const place: Place = wanted === null || (wanted === 'where it was' && !table) ? (table ? 'where it was' : 'new sheet') : wanted
+  if (!breakdown)
+    return <p className={classes.quiet}>There is a table to write once the figures are computed.</p>
+  const place: Place =
+    wanted === null || (wanted === 'where it was' && !table) ? (table ? 'where it was' : 'new sheet') : wanted
   return (
     <div className={classes.view}>
       <Section title="Breakdown table">
@@ -59,8 +63,13 @@ export function ReportView() {
             'Not written yet. Once written, it follows the weights.'
           )}
         </p>
-        <Field label="Where" size="small" validationMessage={faults.table ?? null}>
+        <Field
+          label="Where"
+          size="small"
+          validationMessage={faults.table === undefined ? null : <Sentence text={faults.table} />}
+        >
           <RadioGroup
+            className={classes.choices}
             value={place}
             onChange={(_, { value }) => {
               if (value === 'where it was' || value === 'new sheet' || value === 'selection') setWanted(value)
@@ -82,6 +91,9 @@ export function ReportView() {
         </Button>
       </Section>
       <Section title="What it will hold" level={3}>
+        <p className={classes.text}>
+          {countOf(cells.length, 'row')} and {countOf(cells[0]?.length ?? 0, 'column')}:
+        </p>
         <ul className={classes.list}>
           {contents(breakdown).map((line) => (
             <li key={line}>{line}</li>

@@ -17,14 +17,16 @@ const useStyles = makeStyles({
     margin: 0,
     padding: tokens.spacingHorizontalM,
     backgroundColor: tokens.colorNeutralBackground3,
+    border: `1px solid ${tokens.colorTransparentStroke}`,
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
   },
   reading: {
-    // The longest usual sentence takes three lines: the rows below stay where they are while the selection moves.
-    minHeight: '64px',
+    // The longest usual sentence takes four lines: the rows below stay where they are while the selection moves.
+    minHeight: `calc(4 * ${tokens.lineHeightBase200})`,
     padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM}`,
     backgroundColor: tokens.colorNeutralBackground2,
+    border: `1px solid ${tokens.colorTransparentStroke}`,
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
     overflowWrap: 'anywhere',
@@ -84,9 +86,7 @@ export function RiskView() {
   return (
     <div className={classes.view}>
       <Figures breakdown={breakdown} />
-      {breakdown.sharesWithheld !== null && (
-        <p className={classes.withheld}>{breakdown.sharesWithheld}</p>
-      )}
+      {breakdown.sharesWithheld !== null && <p className={classes.withheld}>{breakdown.sharesWithheld}</p>}
       {breakdown.names.length > 0 && <Positioned breakdown={breakdown} />}
       {breakdown.byGroup.map(({ header }, index) => (
         <Section key={index} title={`By ${header}`}>

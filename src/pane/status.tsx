@@ -8,7 +8,7 @@ import {
   type FluentIcon,
 } from '@fluentui/react-icons'
 import { dateText, type BooksState, type Status } from '../sheet'
-import { PlaceLink, Sentence } from './place'
+import { Sentence } from './place'
 import { useBooksState, useLasting } from './store'
 
 const useStyles = makeStyles({
@@ -44,7 +44,10 @@ const useStyles = makeStyles({
 })
 
 const LOOK: {
-  readonly [kind in Status['kind']]: { readonly Icon: FluentIcon; readonly tone: 'good' | 'old' | 'bad' | 'plain' }
+  readonly [kind in Status['kind']]: {
+    readonly Icon: FluentIcon
+    readonly tone: 'good' | 'old' | 'bad' | 'plain'
+  }
 } = {
   'nothing linked': { Icon: Circle16Regular, tone: 'plain' },
   ready: { Icon: Circle16Regular, tone: 'plain' },
@@ -92,19 +95,16 @@ function StatusText({ state }: { state: BooksState }) {
           {then(lastDate(state))}
         </>
       )
-    case 'stale':
+    case 'stale': {
+      // The word leads, whether or not the sentence begins with it.
+      const rest = status.sentence.replace(/^Stale\b/, '')
       return (
         <>
           {word('Stale')}
-          {status.since && (
-            <>
-              {' since '}
-              <PlaceLink area={status.since} />
-            </>
-          )}
-          : {status.sentence}
+          <Sentence text={rest === status.sentence ? `: ${rest}` : rest} area={status.since} />
         </>
       )
+    }
     case 'failed':
       return (
         <>

@@ -10,7 +10,8 @@ import {
 /** What a host says about its colours; null where it says nothing. */
 export interface HostTheme {
   readonly dark: boolean
-  readonly highContrast: boolean
+  /** for hosts that offer such a theme of their own; a screen's forced colours are seen without being told */
+  readonly highContrast?: boolean
 }
 
 /** Sixteen steps of one blue, evenly spaced in OKLCH lightness at hue 232. */
@@ -46,11 +47,23 @@ function watchScreen(listener: () => void): () => void {
   }
 }
 
+export interface Look {
+  readonly theme: Theme
+  /** which way the browser draws what it draws itself: scroll bars, lists of choices, the calendar */
+  readonly scheme: 'light' | 'dark'
+}
+
+const LOOKS = {
+  light: { theme: LIGHT, scheme: 'light' },
+  dark: { theme: DARK, scheme: 'dark' },
+  contrast: { theme: teamsHighContrastTheme, scheme: 'dark' },
+} as const satisfies { readonly [name: string]: Look }
+
 /** The host's word first, else the screen's; forced colours win over both. */
-export function useTheme(
+export function useLook(
   hostTheme: () => HostTheme | null,
   onHostChange: (listener: () => void) => () => void,
-): Theme {
+): Look {
   return useSyncExternalStore(
     (listener) => {
       const endHost = onHostChange(listener)
@@ -62,8 +75,8 @@ export function useTheme(
     },
     () => {
       const told = hostTheme()
-      if (forcedColors.matches || told?.highContrast) return teamsHighContrastTheme
-      return (told?.dark ?? darkScheme.matches) ? DARK : LIGHT
+      if (forcedColors.matches || told?.highContrast) return LOOKS.contrast
+      return (told?.dark ?? darkScheme.matches) ? LOOKS.dark : LOOKS.light
     },
   )
 }
