@@ -221,7 +221,7 @@ export function kindOf(given: unknown): 'simple' | 'log' {
  * The estimator in words: "sample", "exponential" (decay factor 0.94), "exponential 0.97" (or "0,97"); sample where it was left out.
  *
  * @throws Fault "unknown-choice" | "out-of-range" | "shape"
- * @example estimatorOf('Exponential 0,97').decay // 0.97
+ * @example worksheetFunctions.VOLATILITY(1, [[.01], [.03], [.02]], 1, 'Exponential 0,5') // 0.0063888
  */
 export function estimatorOf(given: unknown): Weighting {
   const argument = 'estimator'
@@ -330,10 +330,10 @@ export function panelOf(argument: string, cells: Cells, content: 'returns' | 'pr
 /** The first row where it holds names; a corner above dates may be anything. */
 function namesRow(argument: string, cells: Cells): string[] | null {
   const first = cells[0]!
-  const counted = first.length > 1 ? first.slice(1) : first
-  const named = counted.filter((cell) => isText(cell) && !isIsoDate(cell)).length
-  if (named === 0 || 2 * named < counted.length) return null
   const side = first.length > 1 && isSide(cells)
+  const counted = side ? first.slice(1) : first
+  const named = counted.filter((cell) => isText(cell) && !isIsoDate(cell)).length
+  if (2 * named <= counted.length) return null
   return first.map((cell, column) => {
     if (isText(cell)) return cell.trim()
     if (column === 0 && side) return ''
@@ -441,9 +441,9 @@ function inOrder(argument: string, dates: Float64Array, top: number): Uint32Arra
  *               "out-of-range" (symmetric, but a covariance beyond its bound), with argument "risk", row and column
  * @source       |c_ij| <= sqrt(c_ii c_jj): Cauchy-Schwarz inequality; the rule of telling is this project's own
  * @cost         O(n^2)
- * @example      classifySquare(Float64Array.of(.04, .01, .01, .09), 2) // 'covariance'
- * @example      classifySquare(Float64Array.of(.01, -.02, .03, -.01), 2) // 'returns'
- * @example      classifySquare(Float64Array.of(1, .5, .5, 1), 2) // Fault "correlation-matrix"
+ * @example      worksheetFunctions.COVARIANCE([[.04, .01], [.01, .09]]) // [[0.04, 0.01], [0.01, 0.09]]
+ * @example      worksheetFunctions.COVARIANCE([[.01, -.02], [.03, -.01]]) // [[0.0002, 0.0001], [0.0001, 0.00005]]
+ * @example      worksheetFunctions.COVARIANCE([[1, .5], [.5, 1]]) // Fault "correlation-matrix"
  */
 export function classifySquare(values: Float64Array, n: number): 'covariance' | 'returns' {
   const deviations = Float64Array.from({ length: n }, (_, i) => Math.sqrt(values[i * n + i]!))

@@ -21,7 +21,7 @@ export function attempt<T>(
  * worksheet function knows only its own arguments and counts rows and columns from 1 within them.
  *
  * @param addressOf the address of a place as the user knows it, or null where it is no cell of theirs
- * @example explain(new Fault('text', 'found “abc”', 'a number is needed', { argument: 'weights', row: 2, column: 0 })) // 'weights, row 3, column 1: found “abc”; a number is needed.'
+ * @example explain(new Fault('text', 'found “abc”', 'a number is needed', { argument: 'weights', row: 2, column: 0 })) // "weights, row 3, column 1: found “abc”; a number is needed."
  */
 export function explain(fault: Fault, addressOf?: (where: Where) => string | null): string {
   const { argument } = fault.where

@@ -417,7 +417,7 @@ const UNDEFINED = 'not defined'
  * @helpurl https://localhost:3000/help.html#breakdown
  * @param names Names of the positions: one row or one column
  * @param weights Weights as fractions: one row or one column
- * @param risk Returns (one row a period, newest last, one column a position) or a covariance matrix, with or without a first row of names
+ * @param risk Returns (one row a period, newest last) or a covariance matrix; columns go by name where it has a first row of names, else by place
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
  * @returns (n+2) x 8: headings, one row a position, total
@@ -427,7 +427,7 @@ const UNDEFINED = 'not defined'
  * @throws Fault as VOLATILITY | "unmatched"
  * @source Tasche (2008), arXiv:0708.2542; Maillard, Roncalli & Teiletche (2010), JPM 36(4)
  * @cost as VOLATILITY
- * @example worksheetFunctions.BREAKDOWN([['A'], ['B']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['A', 0.5, 0.1, 0.17889, 0.08944, 0.8, 1.6, 0.89443]
+ * @example worksheetFunctions.BREAKDOWN([['A'], ['B']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ["A", 0.5, 0.1, 0.17889, 0.08944, 0.8, 1.6, 0.89443]
  */
 export function breakdown(
   names: unknown[][],
@@ -490,7 +490,7 @@ export function breakdown(
  * @throws Fault as VOLATILITY
  * @source Coleman & Litterman (2012), Quantitative Risk Management, appendix 10.1 (from memory)
  * @cost as VOLATILITY, and one pass of the returns for each group
- * @example worksheetFunctions.GROUPED([['X'], ['X']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ['X', 1, 0.1118, 0.1118, 1]
+ * @example worksheetFunctions.GROUPED([['X'], ['X']], [[.5], [.5]], [[.04, 0], [0, .01]])[1] // ["X", 1, 0.1118, 0.1118, 1]
  */
 export function grouped(
   groups: unknown[][],

@@ -315,6 +315,19 @@ describe('refusals name the argument, the place, what was found and what is need
       'weights, row 3, column 1: found “abc”; a number is needed.',
     ],
     [
+      'text among the first row of numbers',
+      [
+        'VOLATILITY',
+        half,
+        [
+          [0.01, 'abc'],
+          [0.02, 0.03],
+        ],
+      ],
+      'text',
+      'risk, row 1, column 2: found “abc”; a number is needed.',
+    ],
+    [
       'text that looks like a number',
       ['VOLATILITY', [['12.5%', 0.5]], C],
       'text',
