@@ -120,3 +120,26 @@ export function splitAddress(address: string): { sheet: string | null; cells: st
   const sheet = /^'.*'$/.test(name) ? name.slice(1, -1).replaceAll("''", "'") : name
   return { sheet, cells: address.slice(mark + 1) }
 }
+
+/** The fewest blocks, row by row, that hold just these cells; `cells` lists each row's columns in ascending order. */
+export function blocksOf(cells: Iterable<readonly [row: number, columns: readonly number[]]>): Rect[] {
+  const done: Rect[] = []
+  let open: Rect[] = []
+  for (const [row, columns] of cells) {
+    const runs: Rect[] = []
+    for (const column of columns) {
+      const run = runs.at(-1)
+      if (run?.right === column - 1) runs[runs.length - 1] = { ...run, right: column }
+      else runs.push({ top: row, left: column, bottom: row, right: column })
+    }
+    const next = runs.map((run) => {
+      const above = open.find(
+        ({ left, right, bottom }) => left === run.left && right === run.right && bottom === row - 1,
+      )
+      return above ? { ...run, top: above.top } : run
+    })
+    done.push(...open.filter(({ top, left }) => !next.some((run) => run.top === top && run.left === left)))
+    open = next
+  }
+  return [...done, ...open]
+}

@@ -8,6 +8,8 @@ import {
   Dimension,
   ICommandService,
   IUndoRedoService,
+  IUniverInstanceService,
+  UniverInstanceType,
   type IBorderData,
   type ICellData,
   type ICommandInfo,
@@ -17,6 +19,7 @@ import {
   type IRange,
   type IStyleData,
   type Nullable,
+  type Workbook,
   type Worksheet,
 } from '@univerjs/core'
 import type { FUniver } from '@univerjs/core/facade'
@@ -25,8 +28,11 @@ import {
   IActiveDirtyManagerService,
   IDefinedNamesService,
   RemoveDefinedNameMutation,
+  SetFormulaCalculationNotificationMutation,
+  SetFormulaCalculationStartMutation,
   SetDefinedNameMutation,
   type IDefinedNamesServiceParam,
+  type ISetFormulaCalculationNotificationMutation,
 } from '@univerjs/engine-formula'
 import {
   ClearSelectionFormatCommand,
@@ -69,7 +75,6 @@ export interface StoredCell {
 /** What the workbook carries beside its cells and the grid has no place for. */
 export interface SheetExtras {
   protected: boolean
-  veryHidden: boolean
   readonly page: Map<string, unknown>
   readonly outlines: { readonly axis: 'row' | 'column'; readonly from: number; readonly to: number }[]
 }
@@ -107,27 +112,39 @@ const WHOLE_WORKBOOK = 'AllDefaultWorkbook'
 const ERROR_VALUE =
   /^#(N\/A|VALUE!|REF!|DIV\/0!|NUM!|NAME\?|NULL!|SPILL!|CALC!|BUSY!|CYCLE!|ERROR!|GETTING_DATA|CONNECT!|BLOCKED!|UNKNOWN!|FIELD!)$/
 
+/** The grid begins to calculate 100 ms after a change, so one that has not begun by then has nothing to do. */
+const START_WITHIN_MS = 250
+
+const isEndOfCalculation = ({ id, params }: Readonly<ICommandInfo>): boolean =>
+  id === SetFormulaCalculationNotificationMutation.id &&
+  (params as ISetFormulaCalculationNotificationMutation).functionsExecutedState !== undefined
+
 export const isErrorValue = (text: string): boolean => ERROR_VALUE.test(text)
 
+/** Everything a cell holds beside its style, taken away. */
+export const NO_CONTENT: ICellData = { v: null, t: null, f: null, si: null, p: null }
+
 export class Book {
-  /** The add-in's settings, JSON values, saved with the workbook. */
-  readonly settings = new Map<string, unknown>()
   /** Formulas are not worked out between the operations of the request under way. */
   calculationSuspended = false
   /** True while an operation of the add-in's own is being carried out. */
   applying = false
+  /** The block an operation of the add-in's own fills, whatever it leaves as it was. */
+  filling: Rect | null = null
   readonly api: FUniver
   readonly injector: Injector
   readonly commands: ICommandService
   readonly #extras = new Map<string, SheetExtras>()
   readonly #dirtying: IActiveDirtyManagerService
   #dirty = false
-  #calculation: Promise<void> | null = null
+  #calculating = false
   #undoStep: IDisposable | null = null
 
   constructor(
     grid: Grid,
     readonly culture: Culture,
+    /** The add-in's settings, JSON values, saved with the workbook. */
+    readonly settings: Map<string, unknown>,
   ) {
     this.api = grid.api
     this.injector = grid.univer.__getInjector()
@@ -135,6 +152,10 @@ export class Book {
     this.#dirtying = this.injector.get(IActiveDirtyManagerService)
     this.commands.onCommandExecuted((command, options) => {
       if (this.#makesDirty(command, options)) this.#dirty = true
+      else if (command.id === SetFormulaCalculationStartMutation.id) {
+        this.#dirty = false
+        this.#calculating = true
+      } else if (isEndOfCalculation(command)) this.#calculating = false
     })
   }
 
@@ -152,24 +173,31 @@ export class Book {
   /** Resolves when every formula has been worked out after the changes made so far, the user's included. */
   async calculated(): Promise<void> {
     this.endUndoStep()
-    while (this.#dirty || this.#calculation) {
-      if (this.#dirty) {
-        this.#dirty = false
-        const calculation = this.injector.get(FormulaCalculationSessionService).waitForLatestApplied()
-        this.#calculation = calculation
-        const done = () => {
-          if (this.#calculation === calculation) this.#calculation = null
-        }
-        calculation.then(done, done)
-      }
-      await this.#calculation
-    }
+    const session = this.injector.get(FormulaCalculationSessionService)
+    // A calculation under way when a change came does not count for that change: the next one has to begin first. One that has not
+    // begun after so many waits is not going to (the grid found nothing to do).
+    for (let waits = 0; this.#dirty && waits < 5; waits++)
+      await session.waitForLatestApplied(undefined, START_WITHIN_MS)
+    this.#dirty = false
+    if (this.#calculating) await session.waitForLatestApplied(undefined, START_WITHIN_MS)
   }
 
   /** Works every formula out anew. */
   recalculate(): void {
     this.api.getFormula().executeCalculation()
     this.#dirty = true
+  }
+
+  /**
+   * The grid's own model of the workbook, for everything that reads: facades are dear to make. Asked for anew each time, since the page
+   * may have opened another file.
+   */
+  get model(): Workbook {
+    const model = this.injector
+      .get(IUniverInstanceService)
+      .getCurrentUnitOfType<Workbook>(UniverInstanceType.UNIVER_SHEET)
+    if (!model) throw new OfficeError('GeneralException', 'no workbook is open')
+    return model
   }
 
   get workbook(): FWorkbook {
@@ -179,11 +207,11 @@ export class Book {
   }
 
   get id(): string {
-    return this.workbook.getId()
+    return this.model.getUnitId()
   }
 
   sheets(): Sheet[] {
-    return this.workbook.getSheets().map((sheet) => new Sheet(this, sheet.getSheetId()))
+    return this.model.getSheets().map((sheet) => new Sheet(this, sheet.getSheetId()))
   }
 
   /** By name, as the host compares names, or by id. */
@@ -193,7 +221,7 @@ export class Book {
   }
 
   get activeSheet(): Sheet {
-    return new Sheet(this, this.workbook.getActiveSheet().getSheetId())
+    return new Sheet(this, this.model.getActiveSheet().getSheetId())
   }
 
   /** Adds a sheet at the end, without showing it. */
@@ -217,7 +245,7 @@ export class Book {
   extras(sheet: string): SheetExtras {
     const known = this.#extras.get(sheet)
     if (known) return known
-    const made: SheetExtras = { protected: false, veryHidden: false, page: new Map(), outlines: [] }
+    const made: SheetExtras = { protected: false, page: new Map(), outlines: [] }
     this.#extras.set(sheet, made)
     return made
   }
@@ -291,7 +319,9 @@ export class Book {
       cellValue,
       ...trigger,
     }
-    const before = SetRangeValuesUndoMutationFactory(this.injector, params)
+    const before = styleOnly
+      ? SetRangeValuesUndoMutationFactory(this.injector, params)
+      : this.#before(sheet, params)
     this.#undoStep ??= this.injector.get(IUndoRedoService).__tempBatchingUndoRedo(this.id)
     this.commands.syncExecuteCommand(SetRangeValuesMutation.id, params)
     this.injector.get(IUndoRedoService).pushUndoRedo({
@@ -299,6 +329,22 @@ export class Book {
       undoMutations: [{ id: SetRangeValuesMutation.id, params: { ...before, ...trigger } }],
       redoMutations: [{ id: SetRangeValuesMutation.id, params }],
     })
+  }
+
+  /** What takes a change of cells back: the grid's own way copies every cell deeply, which is slow for a large block of new ones. */
+  #before(sheet: Sheet, params: ISetRangeValuesMutationParams): ISetRangeValuesMutationParams {
+    const matrix = this.model.getSheetBySheetId(sheet.id)?.getCellMatrix()
+    const cellValue: Record<number, Record<number, ICellData>> = {}
+    for (const [row, line] of Object.entries(params.cellValue ?? {})) {
+      const old: Record<number, ICellData> = {}
+      for (const [column, cell] of Object.entries(line as Record<number, ICellData>)) {
+        if (cell.s) return SetRangeValuesUndoMutationFactory(this.injector, params)
+        const { s: _, ...stood } = matrix?.getValue(Number(row), Number(column)) ?? {}
+        old[Number(column)] = { ...NO_CONTENT, ...stood }
+      }
+      cellValue[Number(row)] = old
+    }
+    return { ...params, cellValue }
   }
 
   endUndoStep(): void {
@@ -315,7 +361,7 @@ export class Sheet {
   ) {}
 
   get exists(): boolean {
-    return this.book.workbook.getSheetBySheetId(this.id) !== null
+    return Boolean(this.book.model.getSheetBySheetId(this.id))
   }
 
   get facade(): FWorksheet {
@@ -325,7 +371,7 @@ export class Sheet {
   }
 
   get name(): string {
-    return this.facade.getSheetName()
+    return this.#grid.getName()
   }
 
   get extras(): SheetExtras {
@@ -333,7 +379,9 @@ export class Sheet {
   }
 
   get #grid(): Worksheet {
-    return this.facade.getSheet()
+    const sheet = this.book.model.getSheetBySheetId(this.id)
+    if (!sheet) throw new OfficeError('ItemNotFound', 'the sheet was deleted')
+    return sheet
   }
 
   /** Called by everything that changes the sheet. @throws OfficeError AccessDenied on a protected sheet */
@@ -391,31 +439,36 @@ export class Sheet {
     const formulas = this.book.injector.get(FormulaDataModel)
     const spilled = formulas.getArrayFormulaCellData()[this.book.id]?.[this.id]
     const covered = this.#coveredCells(rect)
-    const patterns = new Map<unknown, string>()
+    const ofColumns = new Map<number, string | undefined>()
+    const ofStyles = new Map<unknown, string | undefined>()
+    const once = <K>(known: Map<K, string | undefined>, key: K, find: () => string | undefined) => {
+      if (!known.has(key)) known.set(key, find())
+      return known.get(key)
+    }
     const out: R[][] = []
     for (let row = rect.top; row <= rect.bottom; row++) {
       const line: R[] = []
+      const ofRow = grid.getRowStyle(row)?.n?.pattern
       for (let column = rect.left; column <= rect.right; column++) {
         const cell = matrix.getValue(row, column)
-        if (!cell && !spilled?.[row]?.[column]) {
-          line.push(of(this.#blank(row, column)))
-          continue
-        }
-        const key = cell?.s ?? null
-        const style = key === null ? undefined : (patterns.get(key) ?? this.#pattern(row, column))
-        if (style !== undefined) patterns.set(key, style)
-        const pattern = style ?? this.#pattern(row, column)
-        if (covered?.has(row * COLUMNS + column))
-          line.push(of({ value: '', kind: 'Empty', formula: '', pattern }))
-        else line.push(of(this.#stored(cell, spilled?.[row]?.[column], row, column, pattern)))
+        const spill = spilled?.[row]?.[column]
+        const pattern =
+          (cell?.s ? once(ofStyles, cell.s, () => grid.getCellStyle(row, column)?.n?.pattern) : undefined) ??
+          ofRow ??
+          once(ofColumns, column, () => grid.getColumnStyle(column)?.n?.pattern) ??
+          'General'
+        const blank = (!cell && !spill) || covered?.has(row * COLUMNS + column)
+        line.push(
+          of(
+            blank
+              ? { value: '', kind: 'Empty', formula: '', pattern }
+              : this.#stored(cell, spill, row, column, pattern),
+          ),
+        )
       }
       out.push(line)
     }
     return out
-  }
-
-  #blank(row: number, column: number): StoredCell {
-    return { value: '', kind: 'Empty', formula: '', pattern: this.#pattern(row, column) }
   }
 
   #stored(
@@ -440,17 +493,6 @@ export class Sheet {
     if (isErrorValue(stored) && from?.t !== CellValueType.FORCE_STRING)
       return { ...base, value: stored, kind: 'Error' }
     return { ...base, value: stored, kind: stored === '' && !formula ? 'Empty' : 'String' }
-  }
-
-  #pattern(row: number, column: number): string {
-    if (row >= this.#grid.getRowCount() || column >= this.#grid.getColumnCount()) return 'General'
-    const own = this.#grid.getCellStyle(row, column)?.n?.pattern
-    return (
-      own ??
-      this.#grid.getRowStyle(row)?.n?.pattern ??
-      this.#grid.getColumnStyle(column)?.n?.pattern ??
-      'General'
-    )
   }
 
   /** Cells of merged areas that their top-left cell covers. */
@@ -482,14 +524,19 @@ export class Sheet {
     this.guard()
     this.hold(rect)
     const covered = this.#coveredCells(rect)
-    this.#change(
-      rect,
-      (row, column) => {
-        if (covered?.has((rect.top + row) * COLUMNS + rect.left + column)) return undefined
-        return cellAt(row, column)
-      },
-      false,
-    )
+    this.book.filling = rect
+    try {
+      this.#change(
+        rect,
+        (row, column) => {
+          if (covered?.has((rect.top + row) * COLUMNS + rect.left + column)) return undefined
+          return cellAt(row, column)
+        },
+        false,
+      )
+    } finally {
+      this.book.filling = null
+    }
   }
 
   /** Lays a style over every cell of a block; null takes all style away. */
@@ -612,6 +659,17 @@ export class Sheet {
     if (isEntireRow(rect)) facade.deleteRows(rect.top, height(rect))
     else if (isEntireColumn(rect)) facade.deleteColumns(rect.left, width(rect))
     else facade.getRange(this.rangeOf(rect)).deleteCells(shift === 'Up' ? Dimension.ROWS : Dimension.COLUMNS)
+  }
+
+  /** Hidden so that the user cannot show it again. The grid knows no such state; it is kept in the sheet's own data, for the file. */
+  get isVeryHidden(): boolean {
+    return this.#grid.getConfig().custom?.['visibility'] === 'veryHidden'
+  }
+
+  set isVeryHidden(on: boolean) {
+    const config = this.#grid.getConfig()
+    const { visibility: _, ...custom } = config.custom ?? {}
+    config.custom = on ? { ...custom, visibility: 'veryHidden' } : custom
   }
 
   get isShown(): boolean {

@@ -1,27 +1,28 @@
 /** What a value written through the API becomes in a cell, and what a cell shows: the host's rules of entry and display. */
 import { CellValueType, numfmt, type ICellData, type IStyleData } from '@univerjs/core'
-import { isErrorValue, type StoredCell } from './book'
+import { NO_CONTENT, isErrorValue, type StoredCell } from './book'
 import { OfficeError } from './error'
 
 const isText = (pattern: string): boolean => /^(@+|text)$/i.test(pattern)
 
-/** Everything a cell holds beside its style, taken away. */
-export const EMPTY: ICellData = { v: null, t: null, f: null, si: null, p: null }
-
 const stored = (v: string | number, t: CellValueType, s?: IStyleData): ICellData => ({
-  ...EMPTY,
+  ...NO_CONTENT,
   v,
   t,
   ...(s ? { s } : {}),
 })
 
-/** Text stays text when its look is changed later only if it is marked so; the grid would otherwise read "42" anew as a number. */
-const text = (v: string): ICellData =>
-  stored(v, v.trim() === '' || Number.isNaN(Number(v)) ? textType(v) : CellValueType.FORCE_STRING)
-const textType = (v: string): CellValueType =>
-  /^(true|false)$/i.test(v) || isErrorValue(v) ? CellValueType.FORCE_STRING : CellValueType.STRING
+/**
+ * Text that looks like something else is marked as text: when its style is changed later, the grid would otherwise read "42" anew as a
+ * number, and when it is edited, "=1+1" as a formula.
+ */
+function text(v: string): ICellData {
+  const looksOtherwise =
+    /^[=+\-@']|^(true|false)$/i.test(v) || isErrorValue(v) || (v.trim() !== '' && !Number.isNaN(Number(v)))
+  return stored(v, looksOtherwise ? CellValueType.FORCE_STRING : CellValueType.STRING)
+}
 
-const formula = (f: string): ICellData => ({ ...EMPTY, f })
+const formula = (f: string): ICellData => ({ ...NO_CONTENT, f })
 
 /**
  * What `value` becomes in a cell of number format `pattern`; undefined leaves the cell alone.
@@ -35,8 +36,8 @@ export function entered(value: unknown, pattern: string): ICellData | undefined 
   if (typeof value === 'boolean')
     return isText(pattern) ? text(String(value).toUpperCase()) : stored(value ? 1 : 0, CellValueType.BOOLEAN)
   if (typeof value !== 'string') throw new OfficeError('InvalidArgument', `${String(value)} is no cell value`)
-  if (value === '') return EMPTY
-  if (value.startsWith("'")) return value === "'" ? EMPTY : text(value.slice(1))
+  if (value === '') return NO_CONTENT
+  if (value.startsWith("'")) return value === "'" ? NO_CONTENT : text(value.slice(1))
   if (isText(pattern)) return text(value)
   if (isErrorValue(value)) return stored(value, CellValueType.STRING)
   const general = pattern === 'General'

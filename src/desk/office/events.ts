@@ -1,5 +1,11 @@
 /** Turns what happens in the grid into the host's events, and hands them out one task later, as the host does. */
-import { type ICellData, type ICommandInfo, type IExecutionOptions, type IRange } from '@univerjs/core'
+import {
+  type ICellData,
+  type ICommandInfo,
+  type IExecutionOptions,
+  type IRange,
+  type Nullable,
+} from '@univerjs/core'
 import {
   SetFormulaCalculationResultMutation,
   type ISetFormulaCalculationResultMutation,
@@ -21,7 +27,7 @@ import {
   type IMoveRangeMutationParams,
   type ISetRangeValuesMutationParams,
 } from '@univerjs/sheets'
-import { bounding, formatRect, rectAt, type Rect } from './addresses'
+import { blocksOf, bounding, formatRect, rectAt, type Rect } from './addresses'
 import { Sheet, type Book, type StoredCell } from './book'
 import type { Listener, RequestContext, Shift } from './request-context'
 
@@ -40,8 +46,11 @@ const STRUCTURE: Readonly<Record<string, { axis: Shift['axis']; sign: 1 | -1; ch
   [RemoveColMutation.id]: { axis: 'column', sign: -1, changeType: 'ColumnDeleted' },
 }
 
+/** More scattered cells than this are told as the one block that holds them. */
+const MOST_AREAS = 50
+
 /** Whether a change is one of content: the grid also writes results of formulas, moved references and styles this way. */
-const isContent = (cell: ICellData | null | undefined): boolean => !cell || 'v' in cell || 'p' in cell
+const isContent = (cell: Nullable<ICellData>): boolean => !cell || 'v' in cell || 'p' in cell
 
 export class Events {
   enabled = true
@@ -72,6 +81,11 @@ export class Events {
     )
     if (at >= 0) this.#listeners.splice(at, 1)
     return at >= 0
+  }
+
+  /** Forgets every listener. */
+  forget(): void {
+    this.#listeners = []
   }
 
   #executed({ id, params }: Readonly<ICommandInfo>, options?: IExecutionOptions): void {
@@ -146,17 +160,24 @@ export class Events {
 
   #valuesSet({ subUnitId, cellValue }: ISetRangeValuesMutationParams, options?: IExecutionOptions): void {
     if (options?.onlyLocal) return
-    let touched: Rect | undefined
-    for (const [row, line] of Object.entries(cellValue ?? {}))
-      for (const [column, cell] of Object.entries(line ?? {})) {
-        if (!isContent(cell as ICellData | null)) continue
-        const rect = { top: Number(row), left: Number(column), bottom: Number(row), right: Number(column) }
-        touched = touched ? bounding(touched, rect) : rect
-      }
-    if (!touched) return
-    const rect = touched
+    const touched = blocksOf(
+      Object.entries(cellValue ?? {}).map(([row, line]) => [
+        Number(row),
+        Object.entries(line ?? {})
+          .filter(([, cell]) => isContent(cell as Nullable<ICellData>))
+          .map(([column]) => Number(column)),
+      ]),
+    )
+    const [rect] = touched
+    if (!rect) return
+    // What the add-in fills is one range; a user's change of scattered cells is told as such, within reason.
+    const told = this.book.filling
+      ? [this.book.filling]
+      : touched.length > MOST_AREAS
+        ? [touched.reduce(bounding)]
+        : touched
     const before = this.#before
-    const single = before && rect.top === rect.bottom && rect.left === rect.right
+    const single = before && told.length === 1 && rect.top === rect.bottom && rect.left === rect.right
     const details = async () => {
       // A formula's value is not there before it has been worked out.
       await this.book.calculated()
@@ -171,7 +192,8 @@ export class Events {
         },
       }
     }
-    this.#changed(subUnitId, formatRect(rect), 'RangeEdited', single ? details : undefined)
+    const address = told.map((part) => formatRect(part)).join(',')
+    this.#changed(subUnitId, address, 'RangeEdited', single ? details : undefined)
   }
 
   #structureChanged(id: string, { subUnitId, range, trigger }: SheetParams): void {

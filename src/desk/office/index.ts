@@ -3,19 +3,22 @@
  * documentation leaves room, the stand-in takes the side that breaks careless code; what it does not have, it says it has not.
  */
 import type { Grid } from '../grid'
-import { Book, ENGLISH, type Culture } from './book'
+import { Book, ENGLISH, type Culture, type SheetExtras } from './book'
 import { OfficeError } from './error'
 import { Events } from './events'
 import { officeGlobal, type Theme } from './office'
 import { RequestContext, payloadSize, run, type Kind, type Operation, type Runtime } from './request-context'
 import { WORKBOOK } from './workbook'
 
-export type { Culture } from './book'
+export type { Culture, SheetExtras } from './book'
 export type { Theme } from './office'
 export { userOf, type User } from './user'
 
 export interface OfficeOptions {
   readonly culture?: Culture
+  /** Settings the workbook came with; the same map is kept up to date. */
+  readonly settings?: Map<string, unknown>
+  readonly officeTheme?: Theme
   /** Most bytes of a request or a response. */
   readonly payloadLimit?: number
   /** Told when the add-in shows or hides its pane. */
@@ -53,9 +56,14 @@ export interface OfficeStandIn {
   /** Whether the user is in the middle of editing a cell. */
   editing: boolean
   protect(sheet: string, on: boolean): void
-  /** What the grid cannot keep of a sheet: very hidden, page setup, outlines. By name or id. */
-  extras(sheet: string): Book['extras'] extends (sheet: string) => infer R ? R : never
-  setTheme(theme: Theme | undefined): void
+  /** What the grid cannot keep of a sheet, by name or id: its page setup and outlines. */
+  extras(sheet: string): SheetExtras
+  /** Changes the theme and tells who asked to be told. */
+  setOfficeTheme(theme: Theme | undefined): void
+  /** Does what the ribbon button of an action does. */
+  runAction(id: string): Promise<void>
+  /** Forgets handlers, actions and open contexts: the pane that made them is gone. */
+  reset(): void
   /** Resolves when formulas are worked out and events handed out. */
   settled(): Promise<void>
 }
@@ -87,7 +95,7 @@ class Host implements Runtime {
     grid: Grid,
     readonly options: OfficeOptions,
   ) {
-    this.book = new Book(grid, options.culture ?? ENGLISH)
+    this.book = new Book(grid, options.culture ?? ENGLISH, options.settings ?? new Map<string, unknown>())
     this.events = new Events(this.book, (change) => this.contexts.forEach((context) => context.shift(change)))
   }
 
@@ -176,6 +184,15 @@ class Host implements Runtime {
     if (struck) throw new OfficeError('GeneralException', 'a fault was injected', location)
   }
 
+  /** Whoever opened them is gone: their objects cannot be used again, and nobody is told of anything. */
+  reset(): void {
+    this.events.forget()
+    for (const context of this.contexts) context.expire(() => true)
+    this.contexts.clear()
+    this.#failing = []
+    this.#answerLost = false
+  }
+
   sheet(nameOrId: string) {
     const sheet = this.book.sheet(nameOrId)
     if (!sheet) throw new OfficeError('ItemNotFound', `there is no sheet "${nameOrId}"`)
@@ -210,7 +227,7 @@ const ENUMERATIONS = {
 /** The stand-in over a grid; its first three members are what a page assigns to its globals. */
 export function createOffice(grid: Grid, options: OfficeOptions = {}): OfficeStandIn {
   const host = new Host(grid, options)
-  const office = officeGlobal(host.book.culture, (shown) => options.onPane?.(shown))
+  const office = officeGlobal(host.book.culture, options.officeTheme, (shown) => options.onPane?.(shown))
   const excel = {
     ...ENUMERATIONS,
     RequestContext: class extends RequestContext {
@@ -222,7 +239,7 @@ export function createOffice(grid: Grid, options: OfficeOptions = {}): OfficeSta
   }
   return {
     // The shapes are checked where they are used: the add-in and the contract tests compile against the host's own declarations.
-    Office: office as unknown as typeof Office,
+    Office: office.api as unknown as typeof Office,
     Excel: excel as unknown as typeof Excel,
     OfficeExtension: { Error: OfficeError } as unknown as typeof OfficeExtension,
     faults: host.faults,
@@ -238,8 +255,11 @@ export function createOffice(grid: Grid, options: OfficeOptions = {}): OfficeSta
       host.sheet(sheet).extras.protected = on
     },
     extras: (sheet) => host.sheet(sheet).extras,
-    setTheme: (theme) => {
-      office.context.officeTheme = theme
+    setOfficeTheme: office.setTheme,
+    runAction: office.runAction,
+    reset: () => {
+      host.reset()
+      office.forget()
     },
     settled: async () => {
       await host.book.calculated()

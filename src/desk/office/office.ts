@@ -1,5 +1,6 @@
 /** The global `Office`: the host around the workbook, as far as an add-in's pane and ribbon button ask for it. */
 import type { Culture } from './book'
+import { OfficeError } from './error'
 
 export interface Theme {
   readonly bodyBackgroundColor: string
@@ -27,11 +28,16 @@ function atLeast(a: string, b: string): boolean {
   return true
 }
 
+type ThemeHandler = (event: { type: string; officeTheme: Theme | undefined }) => void
+
+const THEME_CHANGED = 'officeThemeChanged'
+
 type VisibilityHandler = (message: { visibilityMode: 'Taskpane' | 'Hidden' }) => void
 
-export function officeGlobal(culture: Culture, onPane: (shown: boolean) => void) {
+export function officeGlobal(culture: Culture, theme: Theme | undefined, onPane: (shown: boolean) => void) {
   const info = { host: 'Excel', platform: 'PC' }
   const visibilityHandlers = new Set<VisibilityHandler>()
+  const themeHandlers = new Set<ThemeHandler>()
   const actions = new Map<string, (event: unknown) => void>()
   let startup = 'none'
 
@@ -41,17 +47,13 @@ export function officeGlobal(culture: Culture, onPane: (shown: boolean) => void)
     return Promise.resolve()
   }
 
-  return {
-    /** What the ribbon button of an action runs. */
-    actions: {
-      associate: (id: string, action: (event: unknown) => void) => void actions.set(id, action),
-      run: (id: string) =>
-        new Promise<void>((resolve, reject) => {
-          const action = actions.get(id)
-          if (action) action({ source: { id }, completed: resolve })
-          else reject(new Error(`no action "${id}" is associated`))
-        }),
-    },
+  const checkType = (type: string) => {
+    if (type !== THEME_CHANGED) throw new OfficeError('NotImplemented', `the desk has no event ${type}`)
+  }
+  const done = (callback?: (result: { status: string }) => void) => callback?.({ status: 'succeeded' })
+
+  const api = {
+    actions: { associate: (id: string, action: (event: unknown) => void) => void actions.set(id, action) },
     addin: {
       setStartupBehavior: (behaviour: string) => {
         startup = behaviour
@@ -74,7 +76,28 @@ export function officeGlobal(culture: Culture, onPane: (shown: boolean) => void)
       displayLanguage: culture.name,
       diagnostics: { ...info, version: '16.0' },
       /** Some hosts have none. */
-      officeTheme: undefined as Theme | undefined,
+      officeTheme: theme,
+      document: {
+        addHandlerAsync: (
+          type: string,
+          handler: ThemeHandler,
+          callback?: (result: { status: string }) => void,
+        ) => {
+          checkType(type)
+          themeHandlers.add(handler)
+          done(callback)
+        },
+        removeHandlerAsync: (
+          type: string,
+          options?: { handler?: ThemeHandler },
+          callback?: (result: { status: string }) => void,
+        ) => {
+          checkType(type)
+          if (options?.handler) themeHandlers.delete(options.handler)
+          else themeHandlers.clear()
+          done(callback)
+        },
+      },
       requirements: {
         isSetSupported: (name: string, version = '1.0') => {
           const highest = SETS[name]
@@ -88,6 +111,27 @@ export function officeGlobal(culture: Culture, onPane: (shown: boolean) => void)
     PlatformType: { PC: 'PC', OfficeOnline: 'OfficeOnline', Mac: 'Mac' },
     StartupBehavior: { none: 'none', load: 'load' },
     VisibilityMode: { hidden: 'Hidden', taskpane: 'Taskpane' },
-    EventType: { OfficeThemeChanged: 'officeThemeChanged' },
+    EventType: { OfficeThemeChanged: THEME_CHANGED },
+    AsyncResultStatus: { Succeeded: 'succeeded', Failed: 'failed' },
+  }
+
+  return {
+    api,
+    /** Does what the ribbon button of an action does; resolves when the action says it is complete. */
+    runAction: (id: string) =>
+      new Promise<void>((resolve, reject) => {
+        const action = actions.get(id)
+        if (action) action({ source: { id }, completed: resolve })
+        else reject(new Error(`no action "${id}" is associated`))
+      }),
+    setTheme: (changed: Theme | undefined) => {
+      api.context.officeTheme = changed
+      for (const handler of themeHandlers) handler({ type: THEME_CHANGED, officeTheme: changed })
+    },
+    forget: () => {
+      themeHandlers.clear()
+      visibilityHandlers.clear()
+      actions.clear()
+    },
   }
 }

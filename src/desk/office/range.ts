@@ -25,8 +25,8 @@ import {
   width,
   type Rect,
 } from './addresses'
-import { type Sheet, type StoredCell } from './book'
-import { EMPTY, entered, shown } from './cells'
+import { NO_CONTENT, type Sheet, type StoredCell } from './book'
+import { entered, shown } from './cells'
 import { OfficeError } from './error'
 import type { Find, Kind, Scalar, Shift } from './request-context'
 import { WORKSHEET } from './worksheet'
@@ -239,24 +239,23 @@ interface Border {
   readonly edge: keyof typeof EDGES
 }
 
-/** For each edge of a range: the side of which cells it lies on. */
+/** For each edge of a range: the side of its cells it lies on, and the block of those cells. */
 const EDGES = {
-  EdgeTop: { side: 't', on: (row: number) => row === 0 },
-  EdgeBottom: { side: 'b', on: (row: number, _: number, rows: number) => row === rows - 1 },
-  EdgeLeft: { side: 'l', on: (_: number, column: number) => column === 0 },
-  EdgeRight: {
-    side: 'r',
-    on: (_: number, column: number, __: number, columns: number) => column === columns - 1,
-  },
-  InsideHorizontal: { side: 'b', on: (row: number, _: number, rows: number) => row < rows - 1 },
-  InsideVertical: {
-    side: 'r',
-    on: (_: number, column: number, __: number, columns: number) => column < columns - 1,
-  },
-} satisfies Record<
-  string,
-  { side: Side; on(row: number, column: number, rows: number, columns: number): boolean }
->
+  EdgeTop: { side: 't', cells: (rect: Rect) => ({ ...rect, bottom: rect.top }) },
+  EdgeBottom: { side: 'b', cells: (rect: Rect) => ({ ...rect, top: rect.bottom }) },
+  EdgeLeft: { side: 'l', cells: (rect: Rect) => ({ ...rect, right: rect.left }) },
+  EdgeRight: { side: 'r', cells: (rect: Rect) => ({ ...rect, left: rect.right }) },
+  InsideHorizontal: { side: 'b', cells: (rect: Rect) => ({ ...rect, bottom: rect.bottom - 1 }) },
+  InsideVertical: { side: 'r', cells: (rect: Rect) => ({ ...rect, right: rect.right - 1 }) },
+} satisfies Record<string, { side: Side; cells(rect: Rect): Rect }>
+
+/** Two neighbours share the line between them: where the other one keeps it. */
+const ACROSS: Readonly<Record<Side, { side: Side; down: number; right: number }>> = {
+  t: { side: 'b', down: -1, right: 0 },
+  b: { side: 't', down: 1, right: 0 },
+  l: { side: 'r', down: 0, right: -1 },
+  r: { side: 'l', down: 0, right: 1 },
+}
 
 const LINES: readonly { readonly style: string; readonly weight: string; readonly line: BorderStyleTypes }[] =
   [
@@ -270,23 +269,60 @@ const LINES: readonly { readonly style: string; readonly weight: string; readonl
     { style: 'Double', weight: 'Thick', line: BorderStyleTypes.DOUBLE },
   ]
 
-function firstLine({ place, edge }: Border): { line: BorderStyleTypes; rgb: string } {
-  const { side } = EDGES[edge]
-  const { rect, sheet } = place
-  const row = edge === 'EdgeBottom' ? rect.bottom : rect.top
-  const column = edge === 'EdgeRight' ? rect.right : rect.left
-  const drawn = sheet.border(row, column)[side]
-  return { line: drawn?.s ?? BorderStyleTypes.NONE, rgb: drawn?.cl.rgb ?? '#000000' }
+interface Line {
+  readonly line: BorderStyleTypes
+  readonly rgb: string
 }
 
-function drawLine({ place, edge }: Border, line: BorderStyleTypes, rgb: string): void {
-  const { side, on } = EDGES[edge]
-  const [rows, columns] = [height(place.rect), width(place.rect)]
-  const drawn = line === BorderStyleTypes.NONE ? null : { s: line, cl: { rgb } }
-  place.sheet.restyle(place.rect, (row, column) =>
-    on(row, column, rows, columns) ? { bd: { [side]: drawn } } : undefined,
+/** What all cells along an edge share of their line; null when they differ. */
+function along<R>({ place, edge }: Border, of: (line: Line) => R): R | null {
+  const { side, cells } = EDGES[edge]
+  const across = ACROSS[side]
+  const { sheet } = place
+  const strip: Place = { sheet, rect: cells(place.rect) }
+  function* drawn(): Generator<R> {
+    for (const row of lines(strip, 'row'))
+      for (const column of lines(strip, 'column')) {
+        const beyond = { row: row + across.down, column: column + across.right }
+        const line =
+          sheet.border(row, column)[side] ??
+          (beyond.row < 0 || beyond.column < 0 ? null : sheet.border(beyond.row, beyond.column)[across.side])
+        yield of({ line: line?.s ?? BorderStyleTypes.NONE, rgb: line?.cl.rgb ?? '#000000' })
+      }
+  }
+  return common(drawn())
+}
+
+/** Draws along an edge, each cell from the line it has; the neighbour's share of the same line goes, so that one truth is left. */
+function draw({ place, edge }: Border, of: (line: Line) => Line): void {
+  const { side, cells } = EDGES[edge]
+  const across = ACROSS[side]
+  const { sheet } = place
+  const rect = cells(place.rect)
+  if (height(rect) < 1 || width(rect) < 1) return
+  const beyond = {
+    top: Math.max(0, rect.top + across.down),
+    bottom: rect.bottom + across.down,
+    left: Math.max(0, rect.left + across.right),
+    right: rect.right + across.right,
+  }
+  sheet.restyle(rect, (row, column) => {
+    const one = rectAt(rect.top + row, rect.left + column, 1, 1)
+    const whole: Border = { place: { sheet, rect: one }, edge: SIDE_EDGE[side] }
+    const { line, rgb } = of(
+      along(whole, (known) => known) ?? { line: BorderStyleTypes.NONE, rgb: '#000000' },
+    )
+    return { bd: { [side]: line === BorderStyleTypes.NONE ? null : { s: line, cl: { rgb } } } }
+  })
+  if (beyond.top > beyond.bottom || beyond.left > beyond.right) return
+  sheet.restyle(beyond, (row, column) =>
+    sheet.border(beyond.top + row, beyond.left + column)[across.side]
+      ? { bd: { [across.side]: null } }
+      : undefined,
   )
 }
+
+const SIDE_EDGE = { t: 'EdgeTop', b: 'EdgeBottom', l: 'EdgeLeft', r: 'EdgeRight' } as const
 
 const kindOfLine = (line: BorderStyleTypes) =>
   LINES.find((known) => known.line === line) ?? { style: 'Continuous', weight: 'Thin' }
@@ -304,27 +340,26 @@ const BORDER: Kind<Border> = {
   scalars: {
     sideIndex: { read: ({ edge }) => edge },
     style: {
-      read: (border) => kindOfLine(firstLine(border).line).style,
-      write: (border: Border, style: string) => {
-        const { line, rgb } = firstLine(border)
-        drawLine(border, lineOf(style, kindOfLine(line).weight), rgb)
-      },
+      read: (border) => along(border, ({ line }) => kindOfLine(line).style),
+      write: (border: Border, style: string) =>
+        draw(border, ({ line, rgb }) => ({ line: lineOf(style, kindOfLine(line).weight), rgb })),
     },
     weight: {
-      read: (border) => kindOfLine(firstLine(border).line).weight,
-      write: (border: Border, weight: string) => {
-        const { line, rgb } = firstLine(border)
-        // A weight on an edge without a line draws one, as in the host.
-        const { style } = kindOfLine(line)
-        drawLine(border, lineOf(style === 'None' ? 'Continuous' : style, weight), rgb)
-      },
+      read: (border) => along(border, ({ line }) => kindOfLine(line).weight),
+      // A weight or a colour on an edge without a line draws one, as in the host.
+      write: (border: Border, weight: string) =>
+        draw(border, ({ line, rgb }) => {
+          const { style } = kindOfLine(line)
+          return { line: lineOf(style === 'None' ? 'Continuous' : style, weight), rgb }
+        }),
     },
     color: {
-      read: (border) => firstLine(border).rgb,
-      write: (border: Border, value: string) => {
-        const { line } = firstLine(border)
-        drawLine(border, line === BorderStyleTypes.NONE ? BorderStyleTypes.THIN : line, colour(value).rgb)
-      },
+      read: (border) => along(border, ({ rgb }) => rgb),
+      write: (border: Border, value: string) =>
+        draw(border, ({ line }) => ({
+          line: line === BorderStyleTypes.NONE ? BorderStyleTypes.THIN : line,
+          rgb: colour(value).rgb,
+        })),
     },
   },
 }
@@ -423,7 +458,7 @@ const FORMAT: Kind<Place> = {
 }
 
 /** What `clear` takes away, by its argument. */
-function clear({ sheet, rect }: Place, applyTo: string = 'All'): void {
+function clear({ sheet, rect }: Place, applyTo = 'All'): void {
   if (!['All', 'Contents', 'Formats'].includes(applyTo))
     throw new OfficeError('InvalidArgument', `clear("${applyTo}")`)
   sheet.guard()
@@ -431,7 +466,7 @@ function clear({ sheet, rect }: Place, applyTo: string = 'All'): void {
   if (applyTo !== 'Contents')
     for (const merge of sheet.merges(rect)) sheet.facade.getRange(sheet.rangeOf(merge)).breakApart()
   if (!stored) return
-  if (applyTo !== 'Formats') sheet.write(stored, () => EMPTY)
+  if (applyTo !== 'Formats') sheet.write(stored, () => NO_CONTENT)
   if (applyTo !== 'Contents') sheet.restyle(stored, () => null)
 }
 

@@ -451,8 +451,7 @@ export class RequestContext {
   /** The context an object belongs to. */
   static of(object: unknown): RequestContext | undefined {
     if (object instanceof RequestContext) return object
-    const context = nodeOf(object)?.context ?? (object as { context?: unknown } | null)?.context
-    return context instanceof RequestContext ? context : undefined
+    return nodeOf(object)?.context
   }
 
   queue(operation: Operation): void {
@@ -517,6 +516,11 @@ export class RequestContext {
   }
 }
 
+interface RunOptions {
+  readonly delayForCellEdit?: boolean
+  readonly previousObjects?: unknown
+}
+
 type Batch = (context: RequestContext) => Promise<unknown>
 
 /** The host's `Excel.run`, in all its forms: with a batch; with options, an object or objects to go on with, and a batch. */
@@ -524,14 +528,17 @@ export async function run(runtime: Runtime, first: unknown, second?: unknown): P
   const batch = (typeof first === 'function' ? first : second) as Batch | undefined
   if (typeof batch !== 'function') throw new OfficeError('InvalidArgument', 'run needs a batch function')
   const given = typeof first === 'function' ? undefined : first
-  const previous = (given as { previousObjects?: unknown } | undefined)?.previousObjects ?? given
+  // Options are plain; anything else is an object or objects to go on with.
+  const belongs = Array.isArray(given) || RequestContext.of(given) !== undefined
+  const options: RunOptions = belongs ? { previousObjects: given } : ((given ?? {}) as RunOptions)
+  const { previousObjects: previous, delayForCellEdit = false } = options
   const contexts = (Array.isArray(previous) ? previous : [previous]).map((object) =>
     RequestContext.of(object),
   )
   if (contexts.some((one) => one !== contexts[0])) throw new OfficeError('InvalidRequestContext')
   const context = contexts[0] ?? new RequestContext(runtime)
   context.holds = true
-  context.delayForCellEdit = (given as { delayForCellEdit?: boolean } | undefined)?.delayForCellEdit === true
+  context.delayForCellEdit = delayForCellEdit
   runtime.contexts.add(context)
   try {
     const result = batch(context) as Promise<unknown> | undefined

@@ -18,12 +18,12 @@ export interface User {
   renameSheet(sheet: string, name: string): void
   hideRows(sheet: string, from: number, count: number): void
   merge(sheet: string, address: string): void
-  undo(): Promise<unknown>
+  undo(): void
 }
 
 /** Rows and columns are counted from 1, as the user sees them. */
 export function userOf(grid: Grid): User {
-  const book = new Book(grid, ENGLISH)
+  const book = new Book(grid, ENGLISH, new Map())
   const commands = grid.univer.__getInjector().get(ICommandService)
   const sheetOf = (name: string): Sheet => {
     const sheet = book.sheet(name)
@@ -73,6 +73,6 @@ export function userOf(grid: Grid): User {
       void sheetOf(name)
         .facade.getRange(sheetOf(name).rangeOf(rectOf(address)))
         .merge({ isForceMerge: true }),
-    undo: () => grid.api.undo(),
+    undo: () => void book.workbook.undo(),
   }
 }

@@ -119,7 +119,7 @@ function setVisibility(sheet: Sheet, visibility: string): void {
     mustLeaveOne(sheet)
     sheet.facade.hideSheet()
   }
-  sheet.extras.veryHidden = visibility === 'VeryHidden'
+  sheet.isVeryHidden = visibility === 'VeryHidden'
 }
 
 function mustLeaveOne(sheet: Sheet): void {
@@ -147,7 +147,7 @@ export const WORKSHEET: Kind<Sheet> = {
       write: (sheet: Sheet, position: number) => void sheet.book.workbook.moveSheet(sheet.facade, position),
     },
     visibility: {
-      read: (sheet) => (sheet.isShown ? 'Visible' : sheet.extras.veryHidden ? 'VeryHidden' : 'Hidden'),
+      read: (sheet) => (sheet.isShown ? 'Visible' : sheet.isVeryHidden ? 'VeryHidden' : 'Hidden'),
       write: setVisibility,
     },
     tabColor: {
