@@ -764,4 +764,9 @@ it('a sentence takes the address of the cell where the pane knows it', () => {
   expect(explain(new Fault('host', 'the host gave up', 'another try is needed'))).toBe(
     'The host gave up; another try is needed.',
   )
+
+  const numerical = new Fault('too-few', 'returns: 1 date', 'at least 2 dates are needed', {
+    argument: 'returns',
+  })
+  expect(explain(numerical)).toBe('returns: 1 date; at least 2 dates are needed.')
 })
