@@ -252,8 +252,8 @@ function writeBook(sheet) {
     total.getCell(column).font = { bold: true, color: { argb: INK } }
   }
   for (const column of [4, 5, 6, 7]) numbers(sheet, column, FIRST, LAST + 1, PERCENT)
-  widths(sheet, [31, 14, 13, 11, 12, 14, 12])
-  sheet.views = [{ state: 'frozen', xSplit: 1, ySplit: 4 }]
+  widths(sheet, [31, 14, 13, 12, 14, 16, 14])
+  sheet.views = [{ state: 'frozen', ySplit: 4 }]
 }
 
 const sum = (column, result) => ({ formula: `SUM(${column}${FIRST}:${column}${LAST})`, result })
@@ -266,8 +266,8 @@ function writeReturns(sheet) {
     row.getCell(1).numFmt = 'yyyy-mm-dd'
   })
   for (let column = 2; column <= HOLDINGS.length + 1; column++) numbers(sheet, column, 2, WEEKS + 1, '0.00%')
-  sheet.getRow(1).height = 48
-  widths(sheet, [13, ...HOLDINGS.map(() => 12.5)])
+  sheet.getRow(1).height = 54
+  widths(sheet, [13, ...HOLDINGS.map(() => 14)])
   sheet.views = [{ state: 'frozen', xSplit: 1, ySplit: 1 }]
 }
 
@@ -316,6 +316,7 @@ function writeModel(sheet) {
     row.getCell(3).value = { formula: `B${top + i}*$B$4` }
     row.getCell(6).value = { formula: `Book!F${source}` }
     row.getCell(7).value = { formula: `IF(E${top + i}>F${top + i},"over","")` }
+    row.getCell(7).alignment = { horizontal: 'center' }
   })
   const spill = (column, formula) => {
     const ref = `${column}${top}:${column}${last}`
@@ -345,19 +346,23 @@ function writeModel(sheet) {
   }
   numbers(sheet, 7, top, last, 'General')
 
-  sheet.getCell('I3').value = 'The same as one table'
-  sheet.getCell('I3').font = { bold: true, color: { argb: INK } }
+  sheet.getCell(`I${top - 2}`).value = 'The same as one table'
+  sheet.getCell(`I${top - 2}`).font = { bold: true, color: { argb: INK } }
   const [rows, columns] = BREAKDOWN_SIZE
-  sheet.getCell('I4').value = {
+  sheet.getCell(`I${top - 1}`).value = {
     formula: add('BREAKDOWN', `Book!A${FIRST}:A${LAST}`, weights, returns, 'B5'),
     shareType: 'array',
-    ref: `I4:${String.fromCharCode('I'.charCodeAt(0) + columns - 1)}${3 + rows}`,
+    ref: `I${top - 1}:${String.fromCharCode('I'.charCodeAt(0) + columns - 1)}${top - 2 + rows}`,
   }
-  widths(sheet, [37, 11, 13, 13, 11, 9, 10, 3, 30, ...Array.from({ length: columns - 1 }, () => 13)])
+  header(sheet, top - 1, Array(columns).fill(null), 9)
+  ;[PERCENT, PERCENT, '0.000', '0.00%', PERCENT, '0.00', '0.00'].forEach((format, i) => {
+    numbers(sheet, 10 + i, top, top - 2 + rows, format)
+  })
+  widths(sheet, [40, 12, 15, 15, 12, 10, 12, 3, 31, ...Array.from({ length: columns - 1 }, () => 15)])
 }
 
-/** Rows and columns of BREAKDOWN's table for this book: a header, the holdings and a total. */
-export const BREAKDOWN_SIZE = [HOLDINGS.length + 2, 6]
+/** Rows and columns of BREAKDOWN's table for this book: headings, the holdings and a total; name and seven figures. */
+const BREAKDOWN_SIZE = [HOLDINGS.length + 2, 8]
 
 function writeReadMe(sheet) {
   title(sheet, 'What this workbook is', 'Everything in it is invented.')
@@ -386,20 +391,21 @@ function writeReadMe(sheet) {
 function title(sheet, text, below) {
   sheet.getCell('A1').value = text
   sheet.getCell('A1').font = { name: 'Calibri', size: 14, bold: true, color: { argb: INK } }
+  sheet.getRow(1).height = 24
   sheet.getCell('A2').value = below
   sheet.getCell('A2').font = { name: 'Calibri', size: 11, italic: true, color: { argb: 'FF5B6B75' } }
 }
 
-function header(sheet, row, labels) {
+function header(sheet, row, labels, first = 1) {
   labels.forEach((label, i) => {
-    const cell = sheet.getCell(row, i + 1)
-    cell.value = label
+    const cell = sheet.getCell(row, first + i)
+    if (label !== null) cell.value = label
     cell.font = { bold: true, color: { argb: INK } }
     cell.fill = SHADE
     cell.border = { bottom: LINE }
     cell.alignment = { wrapText: true, vertical: 'bottom', horizontal: i === 0 ? 'left' : 'center' }
   })
-  sheet.getRow(row).height = 32
+  sheet.getRow(row).height = 36
 }
 
 function numbers(sheet, column, first, last, format) {

@@ -112,6 +112,8 @@ export function createFrame(container: HTMLElement, actions: FrameActions, theme
       open.disabled = save.disabled = message !== null
     },
     say(message, failure = false) {
+      // Said again, it would be read out again.
+      if (status.textContent === message) return
       status.setAttribute('role', failure ? 'alert' : 'status')
       status.classList.toggle('desk-failure', failure)
       status.textContent = message

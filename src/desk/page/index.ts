@@ -23,7 +23,7 @@ export interface DeskOptions {
 export async function openDesk(container: HTMLElement, options: DeskOptions): Promise<Workspace> {
   let theme = screenTheme()
   let workspace: Workspace | undefined
-  let report = ''
+  let told: { readonly message: string; readonly failure: boolean } = { message: '', failure: false }
 
   const frame = createFrame(
     container,
@@ -32,6 +32,12 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
   )
   frame.setTheme(theme)
   frame.setBusy('Loading the workbook…')
+
+  /** Says something that stays, but for the moment in which a selected cell has more to say. */
+  function tell(message: string, failure = false): void {
+    told = { message, failure }
+    frame.say(message, failure)
+  }
 
   function setTheme(name: ThemeName): void {
     theme = name
@@ -43,9 +49,8 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
 
   async function show(bytes: ArrayBuffer, name: string): Promise<void> {
     if (!workspace) return
-    report = await workspace.open(bytes, name)
+    tell(await workspace.open(bytes, name))
     frame.setBookName(name)
-    frame.say(report)
     await loadPane(frame.pane, options.paneUrl, workspace.globals)
   }
 
@@ -55,7 +60,7 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
     try {
       await work()
     } catch (error) {
-      frame.say(error instanceof Error ? error.message : String(error), true)
+      tell(error instanceof Error ? error.message : String(error), true)
     } finally {
       frame.setBusy(null)
     }
@@ -71,21 +76,23 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
       if (!workspace) return
       const { bytes, name } = await workspace.save()
       download(bytes, name)
-      frame.say(`Saved ${name}.`)
+      tell(`Saved ${name}.`)
     })
   }
 
-  const [{ createWorkspace }, metadata, demo] = await Promise.all([
+  const loaded = Promise.all([
     // The grid's own code is large: the frame is on the screen before it.
     import('./workspace'),
     fetched(options.functionsMetadataUrl).then((response) => response.json() as Promise<FunctionsMetadata>),
     fetched(options.demoUrl).then((response) => response.arrayBuffer()),
   ])
+  loaded.catch(() => frame.setBusy('The desk could not be loaded. Build it again and reload the page.'))
+  const [{ createWorkspace }, metadata, demo] = await loaded
   const created = createWorkspace(frame.grid, {
     theme,
     metadata,
     namespace: options.namespace,
-    onCellMessage: (message) => frame.say(message ?? report),
+    onCellMessage: (message) => (message ? frame.say(message) : frame.say(told.message, told.failure)),
     onPane: frame.showPane,
   })
   workspace = created
