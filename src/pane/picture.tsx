@@ -82,9 +82,9 @@ const useStyles = makeStyles({
   },
   weight: {
     // Hollow against solid against hatched: the three are told apart where a theme draws all of them in one colour.
-    fill: tokens.colorNeutralBackground5,
+    fill: 'transparent',
     stroke: tokens.colorNeutralStrokeAccessible,
-    '@media (forced-colors: active)': { fill: 'Canvas', stroke: 'CanvasText' },
+    '@media (forced-colors: active)': { stroke: 'CanvasText' },
   },
   share: {
     fill: tokens.colorBrandForeground1,

@@ -10,6 +10,7 @@ const useStyles = makeStyles({
     lineHeight: 'inherit',
     overflowWrap: 'anywhere',
     textDecorationLine: 'underline',
+    '@media (forced-colors: active)': { color: 'LinkText' },
   },
   list: { listStyleType: 'none', margin: 0, padding: 0, display: 'grid', rowGap: tokens.spacingVerticalXS },
   finding: {

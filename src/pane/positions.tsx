@@ -57,7 +57,7 @@ const useStyles = makeStyles({
   name: { textAlign: 'left', overflowWrap: 'anywhere', paddingRight: tokens.spacingHorizontalS },
   open: {
     display: 'grid',
-    gridTemplateColumns: '16px minmax(0, 1fr)',
+    gridTemplateColumns: '14px minmax(0, 1fr)',
     alignItems: 'baseline',
     border: 'none',
     background: 'none',
@@ -90,8 +90,8 @@ const useStyles = makeStyles({
     lineHeight: tokens.lineHeightBase200,
     color: tokens.colorNeutralForeground3,
   },
-  narrow: { width: '56px' },
-  wide: { width: '82px' },
+  narrow: { width: '52px' },
+  wide: { width: '80px' },
 })
 
 type Key = 'name' | 'weight' | 'contribution' | 'share'
