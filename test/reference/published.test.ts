@@ -12,13 +12,28 @@ import { readJson } from './data'
 
 // Worked examples as printed. Citation, status (read or memory) and tolerance stand beside each figure in
 // data/published.json; every test is named by its citation and status, and compares at the printed digits.
+interface Inputs {
+  /** Decimals of capital, or amounts of money: whichever the source gives. */
+  readonly weights: number[]
+  readonly values?: number[]
+  readonly vol: number[]
+  readonly corr: number[][]
+  readonly corrs: number[]
+  readonly constantCorr: number
+  readonly z: number
+  readonly leverage: number
+  readonly activeWeights: number[]
+  readonly varB: number
+  readonly covAB: number
+}
+
 interface Check {
   readonly id: string
   readonly citation: string
   readonly status: 'read' | 'memory'
   readonly derived?: boolean
-  readonly inputs: Record<string, number[] & number[][] & number>
-  readonly outputs: Record<string, number[] & number>
+  readonly inputs: unknown
+  readonly outputs: Record<string, number | number[]>
   readonly tolerance: Record<string, number>
 }
 
@@ -29,16 +44,19 @@ const seen = new Set<string>()
 const z95 = 1.6448536269514722
 
 /** One example: `compute` works its figures from the inputs; the printed ones come from the file. */
-function example(
+function example<I = Inputs>(
   id: string,
-  compute: (inputs: Check['inputs'], outputs: Check['outputs']) => Record<string, ArrayLike<number> | number>,
+  compute: (inputs: I, printed: Record<string, number[]>) => Record<string, ArrayLike<number> | number>,
 ): void {
   const check = checks.find((entry) => entry.id === id)
   if (!check) throw new Error(`no published example ${id}`)
   seen.add(id)
   const status = check.derived ? `${check.status}, figures derived from the formula` : check.status
   test(`${id}: ${check.citation} (${status})`, () => {
-    const actual = compute(check.inputs, check.outputs)
+    const actual = compute(
+      check.inputs as I,
+      Object.fromEntries(Object.entries(check.outputs).map(([key, value]) => [key, [value].flat()])),
+    )
     expect(Object.keys(actual).length).toBeGreaterThan(0)
     for (const [figure, value] of Object.entries(actual)) {
       const printed = check.outputs[figure]
@@ -49,17 +67,20 @@ function example(
   })
 }
 
-const model = ({ vol, corr }: Check['inputs']): RiskModel =>
-  matrixModel(covarianceOf(vol!, corr!), (vol as number[]).length)
-const split = (
-  inputs: Check['inputs'],
-  weights: readonly number[] = inputs['weights'] ?? inputs['values']!,
-) => decompose(model(inputs), Float64Array.from(weights))
+const correlated = (rho: number) => [
+  [1, rho],
+  [rho, 1],
+]
+const identity = correlated(0)
+
+const model = ({ vol, corr }: Inputs): RiskModel => matrixModel(covarianceOf(vol!, corr!), vol.length)
+const split = (inputs: Inputs, weights: readonly number[] = inputs.values ?? inputs.weights) =>
+  decompose(model(inputs), Float64Array.from(weights))
 const times = (factor: number, values: Float64Array | null) => Float64Array.from(values!, (x) => x * factor)
 
 /** Risk lost when position i is taken out and nothing else changes. */
-const lostWithout = (inputs: Check['inputs'], i: number) => {
-  const values = [...(inputs['weights'] ?? inputs['values']!)] as number[]
+const lostWithout = (inputs: Inputs, i: number) => {
+  const values = [...(inputs.values ?? inputs.weights)]
   const whole = split(inputs).volatility
   values[i] = 0
   return whole - split(inputs, values).volatility
@@ -68,7 +89,7 @@ const lostWithout = (inputs: Check['inputs'], i: number) => {
 describe('published examples', () => {
   example('jorion-2ccy-printed', (inputs) => {
     const d = split(inputs)
-    const z = inputs['z'] as number
+    const z = inputs.z
     return {
       portfolioStdDev: d.volatility,
       portfolioVaR: z * d.volatility,
@@ -134,7 +155,7 @@ describe('published examples', () => {
 
   example('mrt-mv', (inputs) => {
     // Closed form on the printed support (asset 2 excluded): assets 3 and 4 first, which asset 1 does not correlate with.
-    const C = covarianceOf(inputs['vol']!, inputs['corr']!)
+    const C = covarianceOf(inputs.vol, inputs.corr)
     const [v1, v3, v4, c34] = [C[0]!, C[10]!, C[15]!, C[11]!]
     const w3 = (v4 - c34) / (v3 + v4 - 2 * c34)
     const v34 = (v3 * v4 - c34 * c34) / (v3 + v4 - 2 * c34)
@@ -152,29 +173,23 @@ describe('published examples', () => {
   })
 
   example('mrt-const-corr-0.3', (inputs, printed) => {
-    const rho = inputs['constantCorr'] as number
+    const rho = inputs.constantCorr
     const corr = [0, 1, 2, 3].map((i) => [0, 1, 2, 3].map((j) => (i === j ? 1 : rho)))
-    const d = decompose(
-      matrixModel(covarianceOf(inputs['vol']!, corr), 4),
-      Float64Array.from(printed['erc']!),
-    )
+    const d = decompose(matrixModel(covarianceOf(inputs.vol, corr), 4), Float64Array.from(printed['erc']!))
     expect(absoluteGap(d.share!, [0.25, 0.25, 0.25, 0.25])).toBeLessThanOrEqual(1e-12)
     // equal risk contributions as weights: inverse stand-alone risk at constant correlation
-    const inverse = inputs['vol']!.map((v) => 1 / v)
+    const inverse = inputs.vol.map((v) => 1 / v)
     return { erc: inverse.map((x) => x / inverse.reduce((a, b) => a + b, 0)) }
   })
 
   example('mrt-two-asset', (inputs, printed) => {
-    const w1 = printed['w1'] as number
-    for (const rho of inputs['corrs'] as number[]) {
-      const C = covarianceOf(inputs['vol']!, [
-        [1, rho],
-        [rho, 1],
-      ])
+    const w1 = printed['w1']![0]!
+    for (const rho of inputs.corrs) {
+      const C = covarianceOf(inputs.vol, correlated(rho))
       const { share } = decompose(matrixModel(C, 2), Float64Array.of(w1, 1 - w1))
       expect(absoluteGap(share!, [0.5, 0.5])).toBeLessThanOrEqual(1e-12)
     }
-    const [a, b] = inputs['vol'] as [number, number]
+    const [a, b] = inputs.vol as [number, number]
     return { w1: b / (a + b) }
   })
 
@@ -185,8 +200,8 @@ describe('published examples', () => {
 
   example('qian-eggs', (inputs) => {
     // The essay's analogy weighs variances by weight; a share of risk is another figure, as its author says elsewhere.
-    const [w, v] = [inputs['weights']!, inputs['vol']!]
-    const uncorrelated = { ...inputs, corr: [[1, 0], [0, 1]] } as unknown as Check['inputs'] // prettier-ignore
+    const [w, v] = [inputs.weights, inputs.vol]
+    const uncorrelated = { ...inputs, corr: identity }
     // 8100 / 8500: (6 x 15)^2 and (4 x 5)^2, by hand
     expect(split(uncorrelated).share![0]).toBeCloseTo(8100 / 8500, 12)
     // 6 x 9 and 4 x 1: in units of 5 squared
@@ -195,8 +210,8 @@ describe('published examples', () => {
   })
 
   example('cfa-l3-active-cash', (inputs, printed) => {
-    const weights = Float64Array.from(inputs['activeWeights']!)
-    const [varB, covAB] = [inputs['varB'] as number, inputs['covAB'] as number]
+    const weights = Float64Array.from(inputs.activeWeights)
+    const [varB, covAB] = [inputs.varB, inputs.covAB]
     // With returns relative to the benchmark (A + B) / 2, as in the exhibit; var A is not printed and is solved for.
     const relative = (varA: number) => {
       const total = [
@@ -205,9 +220,9 @@ describe('published examples', () => {
         [0, 0, 0],
       ]
       const benchmark = [0.5, 0.5, 0]
-      const with_ = total.map((row) => row.reduce((a, c, j) => a + c * benchmark[j]!, 0))
-      const own = with_.reduce((a, c, i) => a + c * benchmark[i]!, 0)
-      const C = total.flatMap((row, i) => row.map((c, j) => c - with_[i]! - with_[j]! + own))
+      const against = total.map((row) => row.reduce((a, c, j) => a + c * benchmark[j]!, 0))
+      const own = against.reduce((a, c, i) => a + c * benchmark[i]!, 0)
+      const C = total.flatMap((row, i) => row.map((c, j) => c - against[i]! - against[j]! + own))
       return decompose(matrixModel(Float64Array.from(C), 3), weights).share!
     }
     let [low, high] = [0.0045, 0.2]
@@ -243,17 +258,14 @@ describe('published examples', () => {
     const d = split(inputs)
     return {
       corrToPortfolio: d.correlation!,
-      product: d.correlation!.map((r, i) => r * inputs['vol']![i]! * inputs['weights']![i]!),
+      product: d.correlation!.map((r, i) => r * inputs.vol[i]! * inputs.weights[i]!),
     }
   })
 
   example('denault-riskless', (inputs) => {
-    const C = covarianceOf(
-      [...inputs['vol']!, 0],
-      [...inputs['corr']!.map((row) => [...row, 0]), [0, 0, 0, 1]],
-    )
-    const leverage = inputs['leverage'] as number
-    const weights = Float64Array.from([...inputs['weights']!.map((w) => w * leverage), 1 - leverage])
+    const C = covarianceOf([...inputs.vol, 0], [...inputs.corr.map((row) => [...row, 0]), [0, 0, 0, 1]])
+    const leverage = inputs.leverage
+    const weights = Float64Array.from([...inputs.weights.map((w) => w * leverage), 1 - leverage])
     const d = decompose(matrixModel(C, 4), weights)
     return {
       cashContribution: Math.abs(d.contribution[3]!),
@@ -268,10 +280,7 @@ describe('published examples', () => {
   })
 
   example('market-neutral-unstable-shares', (inputs) => {
-    const each = (inputs['corrs'] as number[]).map(
-      (rho) =>
-      split({ ...inputs, corr: [[1, rho], [rho, 1]] } as unknown as Check['inputs']), // prettier-ignore
-    )
+    const each = inputs.corrs.map((rho) => split({ ...inputs, corr: correlated(rho) }))
     return { risk: each.map((d) => d.volatility), share1: each.map((d) => d.share![0]!) }
   })
 
@@ -279,22 +288,24 @@ describe('published examples', () => {
     inverseHerfindahl: split(inputs).effectiveNumber!,
   }))
 
-  example('hull-ewma-problem', (inputs) => {
-    // The update C1 = 0.95 C0 + 0.05 r r' of the book, with this project's simple returns and correlation form.
-    const prices = Float64Array.from([...inputs['p0']!, ...inputs['p1']!])
-    const r = simpleReturns(prices, 2, 2)
-    const decay = inputs['decay'] as number
-    const rho = inputs['corr'] as unknown as number
-    const C0 = covarianceOf(inputs['vol']!, [[1, rho], [rho, 1]]) // prettier-ignore
-    const C1 = C0.map((c, k) => decay * c + (1 - decay) * r[k >> 1]! * r[k & 1]!)
-    const d = decompose(matrixModel(C1, 2), Float64Array.of(1, 0))
-    // correlation of the second with a portfolio of the first alone
-    return { cov0: C0[1]!, corr: d.correlation![1]! }
-  })
+  example<{ vol: number[]; corr: number; decay: number; p0: number[]; p1: number[] }>(
+    'hull-ewma-problem',
+    (inputs) => {
+      // The update C1 = 0.95 C0 + 0.05 r r' of the book, with this project's simple returns and correlation form.
+      const prices = Float64Array.from([...inputs.p0, ...inputs.p1])
+      const r = simpleReturns(prices, 2, 2)
+      const decay = inputs.decay
+      const C0 = covarianceOf(inputs.vol, correlated(inputs.corr))
+      const C1 = C0.map((c, k) => decay * c + (1 - decay) * r[k >> 1]! * r[k & 1]!)
+      const d = decompose(matrixModel(C1, 2), Float64Array.of(1, 0))
+      // correlation of the second with a portfolio of the first alone
+      return { cov0: C0[1]!, corr: d.correlation![1]! }
+    },
+  )
 
-  example('ewma-effective-days', (inputs) => {
+  example<{ decay: number[]; tolerance: number[] }>('ewma-effective-days', (inputs) => {
     // share of the weight older than K dates is decay^K: read off the model's own weights of 3000 dates
-    const days = (inputs['decay'] as number[]).map((decay, k) => {
+    const days = inputs.decay.map((decay, k) => {
       const { rowWeights } = returnsModel(
         Float64Array.from({ length: 3000 }, (_, t) => t),
         3000,
@@ -304,7 +315,7 @@ describe('published examples', () => {
           decay,
         },
       )
-      const limit = (inputs['tolerance'] as number[])[k]!
+      const limit = inputs.tolerance[k]!
       let older = 1
       let count = 0
       let before = older
