@@ -88,7 +88,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
           new Fault(
             fault.code,
             `${fault.found}; putting back what stood there failed too (${faultOf(second, place).found})`,
-            'close and reopen this workbook: the old cells are kept in it and will be put back then',
+            'close and reopen this workbook: what is left to put back is kept in it and is put back then',
           ),
           fault,
         )

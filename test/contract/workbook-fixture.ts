@@ -32,7 +32,12 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
       const cells: Record<string, unknown> = {}
       const inner = sheet.getSheet()
       inner.getCellMatrix().forValue((row, column, cell) => {
-        const { n, bl, it, ht, bd } = inner.getComposedCellStyle(row, column)
+        const { n, bl, it, ht } = inner.getComposedCellStyle(row, column)
+        // neighbours share a rule, whichever of them the grid keeps it with
+        const below = row + 1 < inner.getRowCount() ? inner.getComposedCellStyle(row + 1, column).bd?.t : null
+        const above = row > 0 ? inner.getComposedCellStyle(row - 1, column).bd?.b : null
+        const own = inner.getComposedCellStyle(row, column).bd
+        const bd = { t: own?.t ?? above, b: own?.b ?? below }
         const kept = bare({
           v: cell?.v,
           t: cell?.t,
