@@ -307,9 +307,9 @@ describe('Sizes', () => {
     expect(await code(failed)).toBe('RangeExceedsLimit')
   })
 
-  test('a block of 1260 x 500 numbers is written in parts and read back to the last digit', async () => {
+  test('a block of 252 x 500 numbers is written in parts and read back to the last digit', async () => {
     const { Excel } = desk()
-    const [rows, columns, part] = [1260, 500, 210]
+    const [rows, columns, part] = [252, 500, 126]
     const number = (row: number, column: number) => (row * columns + column) / 7
     const block = (from: number) =>
       Array.from({ length: part }, (_, row) =>
@@ -1433,6 +1433,32 @@ describe('Events', () => {
     user.deleteSheet('Another')
     await standIn.settled()
     expect(heard).toEqual(expect.arrayContaining(['added', 'renamed', 'activated', 'deleted']))
+  })
+
+  test('events can be switched off and on again', async () => {
+    const { Excel, user, heard } = await listening()
+    const enable = (on: boolean) =>
+      Excel.run(async (context) => {
+        context.runtime.enableEvents = on
+        context.runtime.load('enableEvents')
+        await context.sync()
+        expect(context.runtime.enableEvents).toBe(on)
+      })
+    await enable(false)
+    user.type(first, 'A1', 1)
+    expect(await heard()).toEqual([])
+    await enable(true)
+    user.type(first, 'A2', 1)
+    expect((await heard()).map(({ address }) => address)).toEqual(['A2'])
+  })
+
+  test('scattered cells changed at once are told as the areas they are', async () => {
+    const { user, write, heard } = await listening()
+    await write('A1:C3', 1)
+    await heard()
+    user.select(first, 'A1', 'C2:C3')
+    user.clearSelected()
+    expect((await heard()).map(({ address }) => address)).toEqual(['A1,C2:C3'])
   })
 
   test('after a reset nobody is told of anything', async () => {

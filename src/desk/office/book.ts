@@ -5,6 +5,7 @@
 import {
   BooleanNumber,
   CellValueType,
+  CommandType,
   Dimension,
   ICommandService,
   IUndoRedoService,
@@ -13,8 +14,8 @@ import {
   type IBorderData,
   type ICellData,
   type ICommandInfo,
-  type IDisposable,
   type IExecutionOptions,
+  type IMutationInfo,
   type Injector,
   type IRange,
   type IStyleData,
@@ -125,6 +126,8 @@ export const isErrorValue = (text: string): boolean => ERROR_VALUE.test(text)
 export const NO_CONTENT: ICellData = { v: null, t: null, f: null, si: null, p: null }
 
 export class Book {
+  /** Whether the add-in is to be told of what happens. */
+  eventsEnabled = true
   /** Formulas are not worked out between the operations of the request under way. */
   calculationSuspended = false
   /** True while an operation of the add-in's own is being carried out. */
@@ -138,7 +141,8 @@ export class Book {
   readonly #dirtying: IActiveDirtyManagerService
   #dirty = false
   #calculating = false
-  #undoStep: IDisposable | null = null
+  /** Changes of the request under way, to be one step of the user's undo; the newest is undone first. */
+  #step: { readonly undo: IMutationInfo[]; readonly redo: IMutationInfo[] } = { undo: [], redo: [] }
 
   constructor(
     grid: Grid,
@@ -150,6 +154,9 @@ export class Book {
     this.injector = grid.univer.__getInjector()
     this.commands = this.injector.get(ICommandService)
     this.#dirtying = this.injector.get(IActiveDirtyManagerService)
+    this.commands.beforeCommandExecuted(({ type }) => {
+      if (type === CommandType.COMMAND) this.endUndoStep()
+    })
     this.commands.onCommandExecuted((command, options) => {
       if (this.#makesDirty(command, options)) this.#dirty = true
       else if (command.id === SetFormulaCalculationStartMutation.id) {
@@ -322,13 +329,9 @@ export class Book {
     const before = styleOnly
       ? SetRangeValuesUndoMutationFactory(this.injector, params)
       : this.#before(sheet, params)
-    this.#undoStep ??= this.injector.get(IUndoRedoService).__tempBatchingUndoRedo(this.id)
     this.commands.syncExecuteCommand(SetRangeValuesMutation.id, params)
-    this.injector.get(IUndoRedoService).pushUndoRedo({
-      unitID: this.id,
-      undoMutations: [{ id: SetRangeValuesMutation.id, params: { ...before, ...trigger } }],
-      redoMutations: [{ id: SetRangeValuesMutation.id, params }],
-    })
+    this.#step.redo.push({ id: SetRangeValuesMutation.id, params })
+    this.#step.undo.unshift({ id: SetRangeValuesMutation.id, params: { ...before, ...trigger } })
   }
 
   /** What takes a change of cells back: the grid's own way copies every cell deeply, which is slow for a large block of new ones. */
@@ -347,9 +350,12 @@ export class Book {
     return { ...params, cellValue }
   }
 
+  /** Hands the changes so far over as one step of undo; commands of the grid's own make steps of theirs, in between. */
   endUndoStep(): void {
-    this.#undoStep?.dispose()
-    this.#undoStep = null
+    const { undo: undoMutations, redo: redoMutations } = this.#step
+    if (!redoMutations.length) return
+    this.#step = { undo: [], redo: [] }
+    this.injector.get(IUndoRedoService).pushUndoRedo({ unitID: this.id, undoMutations, redoMutations })
   }
 }
 

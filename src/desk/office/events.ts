@@ -52,8 +52,17 @@ const MOST_AREAS = 50
 /** Whether a change is one of content: the grid also writes results of formulas, moved references and styles this way. */
 const isContent = (cell: Nullable<ICellData>): boolean => !cell || 'v' in cell || 'p' in cell
 
+const touchedBlocks = (cellValue: ISetRangeValuesMutationParams['cellValue']): Rect[] =>
+  blocksOf(
+    Object.entries(cellValue ?? {}).map(([row, line]) => [
+      Number(row),
+      Object.entries(line ?? {})
+        .filter(([, cell]) => isContent(cell as Nullable<ICellData>))
+        .map(([column]) => Number(column)),
+    ]),
+  )
+
 export class Events {
-  enabled = true
   #listeners: Listener[] = []
   #active: string | undefined
   /** The single cell about to change, as it was. */
@@ -110,7 +119,7 @@ export class Events {
 
   /** Publishes an event a task later; `late` fills in what is only known then. */
   #publish(topic: string, sheet: string | undefined, event: Event, late?: () => Promise<Event>): void {
-    if (!this.enabled) return
+    if (!this.book.eventsEnabled) return
     const heard = () =>
       this.#listeners.filter((l) => l.topic === topic && (l.sheet === undefined || l.sheet === sheet))
     if (!heard().length) return
@@ -160,22 +169,12 @@ export class Events {
 
   #valuesSet({ subUnitId, cellValue }: ISetRangeValuesMutationParams, options?: IExecutionOptions): void {
     if (options?.onlyLocal) return
-    const touched = blocksOf(
-      Object.entries(cellValue ?? {}).map(([row, line]) => [
-        Number(row),
-        Object.entries(line ?? {})
-          .filter(([, cell]) => isContent(cell as Nullable<ICellData>))
-          .map(([column]) => Number(column)),
-      ]),
-    )
+    if (!this.#listeners.some(({ topic }) => topic === 'changed')) return
+    // What the add-in fills is one range; a user's change of scattered cells is told as such, within reason.
+    const touched = this.book.filling ? [this.book.filling] : touchedBlocks(cellValue)
     const [rect] = touched
     if (!rect) return
-    // What the add-in fills is one range; a user's change of scattered cells is told as such, within reason.
-    const told = this.book.filling
-      ? [this.book.filling]
-      : touched.length > MOST_AREAS
-        ? [touched.reduce(bounding)]
-        : touched
+    const told = touched.length > MOST_AREAS ? [touched.reduce(bounding)] : touched
     const before = this.#before
     const single = before && told.length === 1 && rect.top === rect.bottom && rect.left === rect.right
     const details = async () => {

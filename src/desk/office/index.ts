@@ -8,7 +8,7 @@ import { OfficeError } from './error'
 import { Events } from './events'
 import { officeGlobal, type Theme } from './office'
 import { RequestContext, payloadSize, run, type Kind, type Operation, type Runtime } from './request-context'
-import { WORKBOOK } from './workbook'
+import { ROOT } from './workbook'
 
 export type { Culture, SheetExtras } from './book'
 export type { Theme } from './office'
@@ -74,7 +74,7 @@ class Host implements Runtime {
   readonly book: Book
   readonly events: Events
   readonly contexts = new Set<RequestContext>()
-  readonly rootKind: Kind<never> = WORKBOOK
+  readonly rootKind: Kind<never> = ROOT
   readonly counts: Counts = {
     syncs: 0,
     reads: 0,

@@ -324,7 +324,7 @@ function eventHandlers(node: Node, member: string, source: EventSource<never>, q
   const { context } = node
   const remove = (handler: Handler) =>
     queue(member, 'listen', [], () => {
-      if (!context.runtime.unlisten({ topic: source.topic, handler, context }))
+      if (!context.host.unlisten({ topic: source.topic, handler, context }))
         throw new OfficeError('InvalidOperation', 'the handler was not added in this context')
     })
   return {
@@ -332,7 +332,7 @@ function eventHandlers(node: Node, member: string, source: EventSource<never>, q
     add(handler: Handler) {
       queue(member, 'listen', [], () => {
         const sheet = source.sheet?.(node.require())
-        context.runtime.listen({ topic: source.topic, sheet, handler, context })
+        context.host.listen({ topic: source.topic, sheet, handler, context })
       })
       return { context, remove: () => remove(handler) }
     },
@@ -421,17 +421,25 @@ export class RequestContext {
   #operations: Operation[] = []
   readonly #root: Node
 
-  constructor(readonly runtime: Runtime) {
-    this.#root = new Node(this, runtime.rootKind, null)
-    this.#root.target = runtime.root
+  constructor(readonly host: Runtime) {
+    this.#root = new Node(this, host.rootKind, null)
+    this.#root.target = host.root
   }
 
   get workbook(): object {
-    return this.#root.object
+    return this.#part('workbook')
   }
 
   get application(): object {
-    return (this.#root.object as { application: object }).application
+    return this.#part('application')
+  }
+
+  get runtime(): object {
+    return this.#part('runtime')
+  }
+
+  #part(name: string): object {
+    return (this.#root.object as Record<string, object>)[name] as object
   }
 
   readonly trackedObjects = {
@@ -445,7 +453,7 @@ export class RequestContext {
       if (!node || node.context !== this) throw new OfficeError('InvalidRequestContext')
       node.held = held
     }
-    if (held) this.runtime.contexts.add(this)
+    if (held) this.host.contexts.add(this)
   }
 
   /** The context an object belongs to. */
@@ -480,7 +488,7 @@ export class RequestContext {
     this.#operations = []
     if (operations.length) {
       try {
-        await this.runtime.execute(operations, this.delayForCellEdit)
+        await this.host.execute(operations, this.delayForCellEdit)
       } finally {
         this.expire((node) => node.held === null)
       }
@@ -502,7 +510,7 @@ export class RequestContext {
     this.holds = false
     this.delayForCellEdit = false
     this.expire((node) => node.held !== 'tracked')
-    if (!this.transients.size) this.runtime.contexts.delete(this)
+    if (!this.transients.size) this.host.contexts.delete(this)
   }
 
   /** Lets the objects follow their cells when rows or columns come or go. */

@@ -1,6 +1,6 @@
 /** A user at the grid, for tests and for the page: edits that are not the add-in's. */
 import { ICommandService } from '@univerjs/core'
-import { SetRangeValuesCommand } from '@univerjs/sheets'
+import { ClearSelectionContentCommand, SetRangeValuesCommand } from '@univerjs/sheets'
 import type { Grid } from '../grid'
 import { parseRect, type Rect } from './addresses'
 import { Book, ENGLISH, type Sheet } from './book'
@@ -18,6 +18,8 @@ export interface User {
   renameSheet(sheet: string, name: string): void
   hideRows(sheet: string, from: number, count: number): void
   merge(sheet: string, address: string): void
+  /** Empties the selected cells, as the Delete key does. */
+  clearSelected(): void
   undo(): void
 }
 
@@ -73,6 +75,7 @@ export function userOf(grid: Grid): User {
       void sheetOf(name)
         .facade.getRange(sheetOf(name).rangeOf(rectOf(address)))
         .merge({ isForceMerge: true }),
+    clearSelected: () => void commands.syncExecuteCommand(ClearSelectionContentCommand.id),
     undo: () => void book.workbook.undo(),
   }
 }

@@ -316,7 +316,7 @@ function selected(book: Book): Places {
   return { sheet, rects: book.selection() }
 }
 
-export const WORKBOOK: Kind<Book> = {
+const WORKBOOK: Kind<Book> = {
   name: 'Workbook',
   scalars: { name: { read: (book) => book.workbook.getName() } },
   parts: {
@@ -347,4 +347,26 @@ export const WORKBOOK: Kind<Book> = {
     },
   },
   events: { onSelectionChanged: { topic: 'selection' } },
+}
+
+const RUNTIME: Kind<Book> = {
+  name: 'Runtime',
+  scalars: {
+    enableEvents: {
+      read: (book) => book.eventsEnabled,
+      write: (book: Book, on: boolean) => {
+        book.eventsEnabled = on
+      },
+    },
+  },
+}
+
+/** What a context begins with. */
+export const ROOT: Kind<Book> = {
+  name: 'RequestContext',
+  parts: {
+    workbook: { kind: () => WORKBOOK, find: (book) => book },
+    application: { kind: () => APPLICATION, find: (book) => book },
+    runtime: { kind: () => RUNTIME, find: (book) => book },
+  },
 }
