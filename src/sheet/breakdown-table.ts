@@ -1,7 +1,7 @@
 import type { Breakdown } from './breakdown'
 import { CAUTION } from './breakdown'
 import type { Mark, Table, TableCell } from './table'
-import { dateText } from './wording'
+import { dateText, POSITION_HEADS } from './wording'
 
 const PERCENT = '0.00%'
 const SHARE = '0.0%'
@@ -14,16 +14,6 @@ const number = (value: number | null | undefined, format: string, mark?: Mark): 
   value === null || value === undefined || Number.isNaN(value)
     ? { value: '', format, ...marked(mark) }
     : { value, format, ...marked(mark) }
-
-const POSITION_HEADS = [
-  'Weight',
-  'Stand-alone risk',
-  'Marginal contribution to risk',
-  'Contribution to risk',
-  'Share of risk',
-  'Beta to portfolio',
-  'Correlation with portfolio',
-] as const
 
 /**
  * Lays a breakdown out as a table to be written: title and data dates, positions with a total row, the sum of parts and its

@@ -5,6 +5,7 @@ import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
 import type { BookModel, Match } from './matching'
+import { groupsOf, UNASSIGNED } from './matching'
 import type { ReturnsReading } from './returns'
 import type { Settings } from './settings'
 import { countOf, dateText, listOf, numberText, percentText, quote } from './wording'
@@ -50,9 +51,6 @@ const MOST_GROSS_CONTRIBUTION = 5
 export const CAUTION =
   'An estimate from past returns, not advice. Local rules and licensed practice come first.'
 
-/** The label of members whose group cell is blank: they are shown, never lost. */
-const UNASSIGNED = 'Unassigned'
-
 const ESTIMATORS = {
   sample: () => 'Sample covariance: every date counts alike, divisor T \u2212 1',
   exponential: (decay: number) =>
@@ -92,12 +90,7 @@ export function breakDown(
     })
 
   const byGroup = holdings.groupHeaders.map((header, k): GroupSection => {
-    const labels: string[] = []
-    const groupOf = Int32Array.from(holdings.holdings, ({ groups }) => {
-      const label = groups[k] === '' || groups[k] === undefined ? UNASSIGNED : groups[k]
-      const known = labels.indexOf(label)
-      return known >= 0 ? known : labels.push(label) - 1
-    })
+    const { groupOf, labels } = groupsOf(holdings.holdings.map(({ groups }) => groups[k]))
     const unassigned = groupOf.filter((group) => labels[group] === UNASSIGNED).length
     if (unassigned > 0)
       findings.push({

@@ -21,9 +21,9 @@ import {
   vectorOf,
   type Panel,
 } from './blocks'
-import { plainName } from './matching'
+import { groupsOf } from './matching'
 import { blockMemo } from './memo'
-import { countOf } from './wording'
+import { countOf, POSITION_HEADS } from './wording'
 
 /**
  * The bodies of the worksheet functions. Signatures and comments are what the host shows: the description of each function, its
@@ -449,16 +449,7 @@ export function breakdown(
     d.correlation ? orBlank(d.correlation[column]!) : UNDEFINED,
   ])
   return [
-    [
-      'Holding',
-      'Weight',
-      'Stand-alone risk',
-      'Marginal contribution to risk',
-      'Contribution to risk',
-      'Share of risk',
-      'Beta to portfolio',
-      'Correlation with portfolio',
-    ],
+    ['Holding', ...POSITION_HEADS],
     ...rows,
     [
       'Total',
@@ -502,14 +493,7 @@ export function grouped(
   const { labels } = labelsOf('groups', groups)
   const { decomposition: d, model } = bookOf(weights, risk, periods_per_year, estimator)
   if (labels.length !== d.weights.length) throw uneven('groups', 'group', labels.length, d.weights.length)
-  const shown: string[] = []
-  const known = new Map<string | null, number>()
-  const groupOf = Int32Array.from(labels, (label) => {
-    const key = label === null ? null : plainName(label)
-    const group = known.get(key) ?? shown.push(label ?? 'Unassigned') - 1
-    known.set(key, group)
-    return group
-  })
+  const { groupOf, labels: shown } = groupsOf(labels)
   const g = groupDecomposition(model, d, groupOf, shown.length)
   return [
     ['Group', 'Weight', 'Stand-alone risk', 'Contribution to risk', 'Share of risk'],

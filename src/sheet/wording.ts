@@ -55,3 +55,14 @@ export function listOf(items: readonly string[], most = 3): string {
   if (items.length > most) return `${items.slice(0, most).join(', ')} and ${items.length - most} more`
   return items.length < 2 ? (items[0] ?? '') : `${items.slice(0, -1).join(', ')} and ${items.at(-1) ?? ''}`
 }
+
+/** The columns of figures that a table of positions has, in their order. */
+export const POSITION_HEADS = [
+  'Weight',
+  'Stand-alone risk',
+  'Marginal contribution to risk',
+  'Contribution to risk',
+  'Share of risk',
+  'Beta to portfolio',
+  'Correlation with portfolio',
+] as const
