@@ -58,15 +58,7 @@ export interface Decomposition {
 export function decompose(model: RiskModel, weights: Float64Array): Decomposition {
   const { size } = model
   const { marginals, variance: computed } = model.apply(weights)
-  // the model's copy, turned into deviations below
-  const deviations = model.variances()
-  const [standAlone, marginal, contribution, share, beta, correlation] = columns(size)
-  let gross = 0
-  for (let i = 0; i < size; i++) {
-    const deviation = (deviations[i] = Math.sqrt(deviations[i]!))
-    standAlone[i] = Math.abs(weights[i]!) * deviation
-    gross += standAlone[i]!
-  }
+  const { deviations, standAlone, gross } = standAloneRisk(weights, model.variances())
   if (!Number.isFinite(computed) || !Number.isFinite(gross * gross)) {
     throw new Fault(
       'out-of-range',
@@ -74,10 +66,11 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
       'smaller weights or returns are needed (decimals, such as 0.05 for 5%)',
     )
   }
-  const common = { periodsPerYear: 1, weights: weights.slice(), standAlone }
   if (computed <= model.rounding * gross * gross) {
     return {
-      ...common,
+      periodsPerYear: 1,
+      weights: weights.slice(),
+      standAlone,
       volatility: 0,
       variance: 0,
       marginal: null,
@@ -92,9 +85,58 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
       difference: 0,
     }
   }
-
-  // Plain loops and few divisions: beside one pass over the block, callbacks and divisions would show.
   const volatility = Math.sqrt(computed)
+  const columns = eulerColumns(weights, marginals, deviations, volatility)
+  return {
+    periodsPerYear: 1,
+    weights: weights.slice(),
+    standAlone,
+    volatility,
+    variance: computed,
+    marginal: columns.marginal,
+    contribution: columns.contribution,
+    share: columns.share,
+    beta: columns.beta,
+    correlation: columns.correlation,
+    diversificationRatio: gross / volatility,
+    diversificationBenefit: gross - volatility,
+    effectiveNumber: 1 / columns.squares,
+    sumOfContributions: columns.sumOfContributions,
+    difference: columns.sumOfContributions - volatility,
+  }
+}
+
+// The two loops have functions of their own, few divisions and few allocations: beside one pass over the block of
+// returns, a callback for every number would show.
+
+function standAloneRisk(weights: Float64Array, variances: Float64Array) {
+  const deviations = new Float64Array(weights.length)
+  const standAlone = new Float64Array(weights.length)
+  let gross = 0
+  for (let i = 0; i < weights.length; i++) {
+    const deviation = Math.sqrt(variances[i]!)
+    const risk = Math.abs(weights[i]!) * deviation
+    deviations[i] = deviation
+    standAlone[i] = risk
+    gross += risk
+  }
+  return { deviations, standAlone, gross }
+}
+
+function eulerColumns(
+  weights: Float64Array,
+  marginals: Float64Array,
+  deviations: Float64Array,
+  volatility: number,
+) {
+  const size = weights.length
+  const room = new Float64Array(5 * size)
+  const column = (k: number) => room.subarray(k * size, (k + 1) * size)
+  const marginal = column(0)
+  const contribution = column(1)
+  const share = column(2)
+  const beta = column(3)
+  const correlation = column(4)
   const perUnit = 1 / volatility
   let sumOfContributions = 0
   let squares = 0
@@ -110,21 +152,7 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
     sumOfContributions += c
     squares += p * p
   }
-  return {
-    ...common,
-    volatility,
-    variance: computed,
-    marginal,
-    contribution,
-    share,
-    beta,
-    correlation,
-    diversificationRatio: gross / volatility,
-    diversificationBenefit: gross - volatility,
-    effectiveNumber: 1 / squares,
-    sumOfContributions,
-    difference: sumOfContributions - volatility,
-  }
+  return { marginal, contribution, share, beta, correlation, sumOfContributions, squares }
 }
 
 /**
@@ -221,11 +249,4 @@ export function groupDecomposition(
     contribution,
     share: d.share && contribution.map((c) => c / d.volatility),
   }
-}
-
-/** Six columns in one piece of memory: six allocations would cost as much as the arithmetic in them. */
-function columns(size: number) {
-  const room = new Float64Array(6 * size)
-  const column = (k: number) => room.subarray(k * size, (k + 1) * size)
-  return [column(0), column(1), column(2), column(3), column(4), column(5)] as const
 }

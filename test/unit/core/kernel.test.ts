@@ -19,10 +19,8 @@ const returns = Float64Array.from({ length: 60 }, (_, k) => Math.sin(k * k) / 10
 const weights = Float64Array.of(0.5, 0.3, -0.2)
 const expected = decompose(returnsModel(returns, 20, 3), weights)
 
-class Refused {
-  constructor() {
-    throw new Error('refused by the content security policy')
-  }
+function Refused(): never {
+  throw new Error('refused by the content security policy')
 }
 
 describe('the plain form takes over, with the same bits,', () => {
