@@ -1,4 +1,4 @@
-import { StrictMode, useState, type KeyboardEvent } from 'react'
+import { StrictMode, useEffect, useState, type KeyboardEvent } from 'react'
 import { createRoot } from 'react-dom/client'
 import {
   Button,
@@ -33,7 +33,8 @@ export interface PaneHost {
 }
 
 const useStyles = makeStyles({
-  provider: { height: '100%' },
+  // The whole window of the pane, whatever margins its page has.
+  provider: { position: 'fixed', inset: 0 },
   light: { colorScheme: 'light' },
   dark: { colorScheme: 'dark' },
   pane: {
@@ -69,6 +70,7 @@ const useStyles = makeStyles({
   // Docked below the view: when a message comes, nothing that is being read or pressed moves.
   messages: { display: 'grid', maxHeight: '40vh', overflowY: 'auto' },
   message: { borderRadius: 0, borderLeftWidth: 0, borderRightWidth: 0, borderBottomWidth: 0 },
+  messageText: { fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
   foot: {
     display: 'flex',
     justifyContent: 'space-between',
@@ -109,21 +111,40 @@ function BookPicker() {
   )
 }
 
+/** A line about what just happened, until it is put away. Drawn anew for each, so that the same words show again the next time. */
+function Notice({ text }: { text: string }) {
+  const classes = useStyles()
+  const [shown, setShown] = useState(true)
+  if (!shown) return null
+  return (
+    <MessageBar intent="info" layout="multiline" className={classes.message}>
+      <MessageBarBody className={classes.messageText}>
+        <Sentence text={text} />
+      </MessageBarBody>
+      <MessageBarActions
+        containerAction={
+          <Button
+            size="small"
+            appearance="transparent"
+            aria-label="Dismiss"
+            icon={<Dismiss16Regular />}
+            onClick={() => setShown(false)}
+          />
+        }
+      />
+    </MessageBar>
+  )
+}
+
 /** What just happened and what could be done: never a dialog, never in the way of the keyboard. */
 function Messages() {
   const classes = useStyles()
   const { notice, offers } = useBooksState()
-  const [dismissed, setDismissed] = useState<string | null>(null)
   return (
     <div className={classes.messages} aria-live="polite">
-      {offers.map((offer, index) => (
-        <MessageBar
-          key={`${index} ${offer.sentence}`}
-          intent="info"
-          layout="multiline"
-          className={classes.message}
-        >
-          <MessageBarBody>
+      {offers.map((offer) => (
+        <MessageBar key={offer.sentence} intent="info" layout="multiline" className={classes.message}>
+          <MessageBarBody className={classes.messageText}>
             <Sentence text={offer.sentence} />
           </MessageBarBody>
           <MessageBarActions>
@@ -136,24 +157,7 @@ function Messages() {
           </MessageBarActions>
         </MessageBar>
       ))}
-      {notice !== null && notice !== dismissed && (
-        <MessageBar key={notice} intent="info" layout="multiline" className={classes.message}>
-          <MessageBarBody>
-            <Sentence text={notice} />
-          </MessageBarBody>
-          <MessageBarActions
-            containerAction={
-              <Button
-                size="small"
-                appearance="transparent"
-                aria-label="Dismiss"
-                icon={<Dismiss16Regular />}
-                onClick={() => setDismissed(notice)}
-              />
-            }
-          />
-        </MessageBar>
-      )}
+      {notice !== null && <Notice key={notice} text={notice} />}
     </div>
   )
 }
@@ -210,16 +214,18 @@ function Pane({ version }: { version: string }) {
     if (breakdown && status.kind === 'up to date')
       setView((current) => (current === 'data' ? 'risk' : current))
   }
+  // On the window: the keys work wherever the focus is, also where a button that just went away has left it.
+  useEffect(() => {
+    const press = (event: globalThis.KeyboardEvent): void => {
+      if (event.key !== 'Enter' || !(event.ctrlKey || event.metaKey)) return
+      event.preventDefault()
+      void compute()
+    }
+    addEventListener('keydown', press)
+    return () => removeEventListener('keydown', press)
+  })
   return (
-    <div
-      className={classes.pane}
-      onKeyDown={(event) => {
-        if (event.key === 'Enter' && (event.ctrlKey || event.metaKey)) {
-          event.preventDefault()
-          void compute()
-        }
-      }}
-    >
+    <div className={classes.pane}>
       <header>
         <h1 className={classes.title}>Counterpoise</h1>
         <BookPicker />
@@ -227,7 +233,15 @@ function Pane({ version }: { version: string }) {
         <StatusLine compute={() => void compute()} canCompute={canCompute} />
       </header>
       <main className={classes.main}>
-        <div id="view" role="tabpanel" aria-labelledby={`tab-${view}`} className={classes.view} tabIndex={0}>
+        <div
+          // each view begins at its top
+          key={view}
+          id="view"
+          role="tabpanel"
+          aria-labelledby={`tab-${view}`}
+          className={classes.view}
+          tabIndex={0}
+        >
           {view === 'data' && <DataView />}
           {view === 'risk' && <RiskView />}
           {view === 'report' && <ReportView />}
@@ -260,7 +274,7 @@ function ThemedPane({ books, host }: { books: Books; host: PaneHost }) {
 /**
  * Draws the task pane into an element and keeps it in step with the books until the returned function is called.
  *
- * @param root  fills the pane's whole height; what stands in it is replaced
+ * @param root  what stands in it is replaced; the pane fills the whole window
  */
 export function openPane(root: HTMLElement, books: Books, host: PaneHost): () => void {
   const drawn = createRoot(root)

@@ -90,8 +90,9 @@ const useStyles = makeStyles({
     lineHeight: tokens.lineHeightBase200,
     color: tokens.colorNeutralForeground3,
   },
-  narrow: { width: '52px' },
-  wide: { width: '80px' },
+  weight: { width: '50px' },
+  contribution: { width: '78px' },
+  share: { width: '62px' },
 })
 
 type Key = 'name' | 'weight' | 'contribution' | 'share'
@@ -149,9 +150,9 @@ function Columns() {
   return (
     <colgroup>
       <col />
-      <col className={classes.narrow} />
-      <col className={classes.wide} />
-      <col className={classes.narrow} />
+      <col className={classes.weight} />
+      <col className={classes.contribution} />
+      <col className={classes.share} />
     </colgroup>
   )
 }
