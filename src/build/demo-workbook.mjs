@@ -414,6 +414,9 @@ function numbers(sheet, column, first, last, format) {
 
 const widths = (sheet, list) => list.forEach((width, i) => (sheet.getColumn(i + 1).width = width))
 
+// As a program; the tests take the parts.
 if (process.argv[1]?.endsWith('demo-workbook.mjs')) {
-  writeFileSync('assets/demo.xlsx', await demoWorkbook().xlsx.writeBuffer())
+  void demoWorkbook()
+    .xlsx.writeBuffer()
+    .then((bytes) => writeFileSync('assets/demo.xlsx', bytes))
 }

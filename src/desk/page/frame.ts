@@ -19,6 +19,7 @@ export interface FrameActions {
   open(file: File): void
   save(): void
   theme(name: ThemeName): void
+  focusGrid(): void
 }
 
 const NARROWEST = 320
@@ -91,10 +92,27 @@ export function createFrame(container: HTMLElement, actions: FrameActions, theme
     dialog,
   )
   container.classList.add('desk')
-  addEventListener('keydown', (event) => shortcut(event, open, save), { capture: true })
-  pane.addEventListener('load', () => {
-    pane.contentWindow?.addEventListener('keydown', (event) => shortcut(event, open, save), { capture: true })
-  })
+  const places: Place[] = [
+    { holds: () => bar.contains(document.activeElement), enter: () => open.focus() },
+    // Wherever else the focus is, it is the grid's: its editor lies outside of it in the document.
+    {
+      holds: () => !bar.contains(document.activeElement) && document.activeElement !== pane,
+      enter: () => actions.focusGrid(),
+    },
+    { holds: () => document.activeElement === pane, enter: () => enterPane(pane) },
+  ]
+  const onKey = (event: KeyboardEvent): void => {
+    shortcut(event, open, save)
+    if (event.key === 'F6' && !event.ctrlKey && !event.altKey && !event.metaKey) {
+      event.preventDefault()
+      event.stopPropagation()
+      goOn(pane.hidden ? places.slice(0, 2) : places, event.shiftKey)
+    }
+  }
+  addEventListener('keydown', onKey, { capture: true })
+  pane.addEventListener('load', () =>
+    pane.contentWindow?.addEventListener('keydown', onKey, { capture: true }),
+  )
 
   return {
     grid,
@@ -133,6 +151,29 @@ function shortcut(event: KeyboardEvent, open: HTMLButtonElement, save: HTMLButto
   event.preventDefault()
   event.stopPropagation()
   button.click()
+}
+
+interface Place {
+  holds(): boolean
+  enter(): void
+}
+
+/** F6, as in the host: the bar, the grid, the pane and round again. Tab alone cannot leave the grid, where it moves the selection. */
+function goOn(places: readonly Place[], back: boolean): void {
+  const now = places.findIndex(({ holds }) => holds())
+  const next = (now + (back ? -1 : 1) + places.length) % places.length
+  places[next]?.enter()
+}
+
+/** Into the pane, onto what had the focus there or else the first thing that takes it. */
+function enterPane(pane: HTMLIFrameElement): void {
+  const inside = pane.contentDocument
+  const last = inside?.activeElement
+  const first = inside?.querySelector<HTMLElement>(
+    'button:not([disabled]), [href], input, select, [tabindex="0"]',
+  )
+  pane.contentWindow?.focus()
+  if (!last || last === inside.body) first?.focus()
 }
 
 /** The line between grid and pane, moved by pointer and keys. */

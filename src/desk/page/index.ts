@@ -22,12 +22,17 @@ export interface DeskOptions {
  */
 export async function openDesk(container: HTMLElement, options: DeskOptions): Promise<Workspace> {
   let theme = screenTheme()
-  let workspace: Workspace | undefined
+  const parts: { workspace?: Workspace } = {}
   let told: { readonly message: string; readonly failure: boolean } = { message: '', failure: false }
 
   const frame = createFrame(
     container,
-    { open: (file) => void open(file), save: () => void save(), theme: setTheme },
+    {
+      open: (file) => void open(file),
+      save: () => void save(),
+      theme: setTheme,
+      focusGrid: () => parts.workspace?.focus(),
+    },
     theme,
   )
   frame.setTheme(theme)
@@ -42,12 +47,13 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
   function setTheme(name: ThemeName): void {
     theme = name
     frame.setTheme(name)
-    workspace?.setTheme(name)
+    parts.workspace?.setTheme(name)
     // A pane asks its host for the colours when it is looked at, and the user is looking at it now.
     frame.pane.contentWindow?.dispatchEvent(new Event('focus'))
   }
 
   async function show(bytes: ArrayBuffer, name: string): Promise<void> {
+    const { workspace } = parts
     if (!workspace) return
     tell(await workspace.open(bytes, name))
     frame.setBookName(name)
@@ -67,12 +73,13 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
   }
 
   async function open(file: File): Promise<void> {
-    if (workspace?.changed && !(await frame.askToDiscard())) return
+    if (parts.workspace?.changed && !(await frame.askToDiscard())) return
     await busy(`Opening ${file.name}…`, async () => show(await file.arrayBuffer(), file.name))
   }
 
   async function save(): Promise<void> {
     await busy('Saving…', async () => {
+      const { workspace } = parts
       if (!workspace) return
       const { bytes, name } = await workspace.save()
       download(bytes, name)
@@ -95,7 +102,7 @@ export async function openDesk(container: HTMLElement, options: DeskOptions): Pr
     onCellMessage: (message) => (message ? frame.say(message) : frame.say(told.message, told.failure)),
     onPane: frame.showPane,
   })
-  workspace = created
+  parts.workspace = created
   await busy('Loading the workbook…', () => show(demo, options.demoUrl.split('/').pop() ?? 'Workbook.xlsx'))
   return created
 }

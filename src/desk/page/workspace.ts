@@ -1,5 +1,6 @@
 /** The working parts of the desk, loaded after the first paint: grid, functions, stand-in, files. */
 import { CommandType, ICommandService, numberToABC } from '@univerjs/core'
+import { ILayoutService } from '@univerjs/preset-sheets-core'
 import { openWorkbook, saveWorkbook, sentenceOf } from '../files'
 import { createCustomFunctions, type CustomFunctionsStandIn, type FunctionsMetadata } from '../functions'
 import type { Grid } from '../grid'
@@ -15,6 +16,8 @@ export interface Workspace {
   readonly globals: PaneGlobals
   readonly changed: boolean
   setTheme(theme: ThemeName): void
+  /** Gives the keyboard to the grid. */
+  focus(): void
   /** Replaces the workbook; returns what to tell the user. */
   open(bytes: ArrayBuffer, name: string): Promise<string>
   save(): Promise<{ readonly bytes: ArrayBuffer; readonly name: string }>
@@ -45,20 +48,18 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
   let changed = false
   let opening = false
   const commands = grid.univer.__getInjector().get(ICommandService)
-  commands.onCommandExecuted(({ id, type, params }, { applyFormulaCalculationResult, onlyLocal } = {}) => {
-    if (
-      type === CommandType.MUTATION &&
-      id.startsWith('sheet.mutation.') &&
-      !opening &&
-      !onlyLocal &&
-      !applyFormulaCalculationResult
-    ) {
-      // Rows that fit their own text are no change of the user's.
-      if (!/row-auto-height|set-row-height-auto/.test(id) || params === undefined) changed = true
-    }
+  let savedSettings = '[]'
+  commands.onCommandExecuted(({ id, type }, { applyFormulaCalculationResult, onlyLocal } = {}) => {
+    if (opening || onlyLocal || applyFormulaCalculationResult || type !== CommandType.MUTATION) return
+    if (id.startsWith('sheet.mutation.') || id.endsWith('-defined-name')) changed = true
   })
+  const isChanged = (): boolean => changed || JSON.stringify([...settings]) !== savedSettings
+  const kept = (): void => {
+    changed = false
+    savedSettings = JSON.stringify([...settings])
+  }
   addEventListener('beforeunload', (event) => {
-    if (changed) event.preventDefault()
+    if (isChanged()) event.preventDefault()
   })
 
   api.addEvent(api.Event.SheetEditStarted, () => {
@@ -95,18 +96,19 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
       CustomFunctions: functions,
     },
     get changed() {
-      return changed
+      return isChanged()
     },
     setTheme(theme) {
       api.toggleDarkMode(isDark(theme))
       office.setOfficeTheme(officeThemeOf(theme))
     },
+    focus: () => grid.univer.__getInjector().get(ILayoutService).focus(),
     async open(bytes, name) {
       opening = true
       try {
         const report = await openWorkbook(grid, bytes, settings, name)
         office.reset()
-        changed = false
+        kept()
         return sentenceOf(report)
       } finally {
         opening = false
@@ -114,7 +116,7 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
     },
     async save() {
       const bytes = await saveWorkbook(grid, settings)
-      changed = false
+      kept()
       return { bytes, name: api.getActiveWorkbook()?.getName() ?? 'Workbook.xlsx' }
     },
     dispose() {
