@@ -1,4 +1,4 @@
-import { useId, useLayoutEffect, useRef, useState, type KeyboardEvent } from 'react'
+import { memo, useId, useLayoutEffect, useMemo, useRef, useState, type KeyboardEvent } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 // Fluent's own charts draw one bar a category along a horizontal axis and have no hatching; these primitives over d3's scales draw
 // the pair of signed bars and the pattern, and leave the text to the page, where it wraps and is read aloud.
@@ -117,10 +117,67 @@ function useWidth() {
   return { element, width }
 }
 
-interface Pair {
+interface RowProps {
+  readonly id: string
+  readonly position: number
+  readonly name: string
   readonly weight: number
   readonly risk: number
+  readonly weightText: string
+  readonly riskText: string
+  readonly label: string
+  readonly comparable: boolean
+  readonly across: (value: number) => number
+  /** id of the pattern of risk-reducing positions */
+  readonly hatch: string
+  readonly selected: boolean
+  readonly reachable: boolean
+  readonly select: (position: number) => void
 }
+
+/** Remembered between drawings: moving the selection through hundreds of rows draws two of them. */
+const Row = memo(function Row(row: RowProps) {
+  const classes = useStyles()
+  const { weight, risk, comparable, across } = row
+  const from = (value: number) => Math.min(across(0), across(value))
+  const length = (value: number) => Math.abs(across(value) - across(0))
+  const height = comparable ? 14 : 8
+  return (
+    <div
+      id={row.id}
+      role="option"
+      aria-selected={row.selected}
+      tabIndex={row.reachable ? 0 : -1}
+      className={mergeClasses(classes.row, row.selected && classes.selected)}
+      onClick={() => row.select(row.position)}
+      onFocus={() => row.select(row.position)}
+    >
+      <span className={classes.name}>{row.name}</span>
+      <span className={classes.number}>
+        <span className={classes.unseen}>, weight </span>
+        {row.weightText}
+      </span>
+      <span className={mergeClasses(classes.number, classes.leading)}>
+        <span className={classes.unseen}>, {row.label.toLowerCase()} </span>
+        {row.riskText}
+      </span>
+      <svg className={classes.drawing} width="100%" height={height} aria-hidden focusable="false">
+        {comparable && (
+          <Bar className={classes.weight} x={from(weight)} width={length(weight)} y={0.5} height={4} />
+        )}
+        <Bar
+          className={risk < 0 ? classes.reducing : classes.share}
+          {...(risk < 0 ? { fill: `url(#${row.hatch})` } : {})}
+          x={from(risk)}
+          width={length(risk)}
+          y={height - 7.5}
+          height={7}
+        />
+        <line className={classes.zero} x1={across(0)} x2={across(0)} y1={-1} y2={height + 1} />
+      </svg>
+    </div>
+  )
+})
 
 /**
  * Weight against share of risk (or, where shares are withheld, contribution to risk), one row a position, largest risk first; the
@@ -159,40 +216,12 @@ export default function Picture({
 
   // Weights and shares share one scale, so the two bars can be compared; contributions are in another unit and stand alone.
   const drawn = shown.flatMap((i) => (measure.comparable ? [weights[i]!, risk[i]!] : [risk[i]!]))
-  const across = scaleLinear<number>({
-    domain: [Math.min(0, ...drawn), Math.max(0, ...drawn)],
-    range: [1, Math.max(1, width - 9)],
-  })
-
-  const bars = ({ weight, risk }: Pair) => {
-    const from = (value: number) => Math.min(across(0), across(value))
-    const length = (value: number) => Math.abs(across(value) - across(0))
-    const height = measure.comparable ? 14 : 8
-    return (
-      <svg className={classes.drawing} width="100%" height={height} aria-hidden focusable="false">
-        {measure.comparable && (
-          <Bar
-            className={classes.weight}
-            x={from(weight)}
-            width={length(weight)}
-            y={0.5}
-            height={4}
-            strokeWidth={1}
-          />
-        )}
-        <Bar
-          className={risk < 0 ? classes.reducing : classes.share}
-          {...(risk < 0 ? { fill: `url(#${hatch})` } : {})}
-          x={from(risk)}
-          width={length(risk)}
-          y={height - 7.5}
-          height={7}
-          strokeWidth={1}
-        />
-        <line className={classes.zero} x1={across(0)} x2={across(0)} y1={-1} y2={height + 1} />
-      </svg>
-    )
-  }
+  const low = Math.min(0, ...drawn)
+  const high = Math.max(0, ...drawn)
+  const across = useMemo(
+    () => scaleLinear<number>({ domain: [low, high], range: [1, Math.max(1, width - 9)] }),
+    [low, high, width],
+  )
 
   const rowIds = useId()
   const move = (event: KeyboardEvent): void => {
@@ -214,27 +243,23 @@ export default function Picture({
   const reachable = shown.includes(selected) ? selected : (adding[0] ?? reducing[0])
   const rows = (positions: readonly number[]) =>
     positions.map((i) => (
-      <div
+      <Row
         key={i}
         id={`${rowIds}${i}`}
-        role="option"
-        aria-selected={i === selected}
-        tabIndex={i === reachable ? 0 : -1}
-        className={mergeClasses(classes.row, i === selected && classes.selected)}
-        onClick={() => select(i)}
-        onFocus={() => select(i)}
-      >
-        <span className={classes.name}>{breakdown.names[i]}</span>
-        <span className={classes.number}>
-          <span className={classes.unseen}>, weight </span>
-          {percentText(weights[i]!, digits)}
-        </span>
-        <span className={mergeClasses(classes.number, classes.leading)}>
-          <span className={classes.unseen}>, {measure.label.toLowerCase()} </span>
-          {percentText(risk[i]!, measure.digits)}
-        </span>
-        {bars({ weight: weights[i]!, risk: risk[i]! })}
-      </div>
+        position={i}
+        name={breakdown.names[i] ?? ''}
+        weight={weights[i]!}
+        risk={risk[i]!}
+        weightText={percentText(weights[i]!, digits)}
+        riskText={percentText(risk[i]!, measure.digits)}
+        label={measure.label}
+        comparable={measure.comparable}
+        across={across}
+        hatch={hatch}
+        selected={i === selected}
+        reachable={i === reachable}
+        select={select}
+      />
     ))
   const sum = (values: Float64Array): number => others.reduce((total, i) => total + values[i]!, 0)
 

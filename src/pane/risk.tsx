@@ -1,4 +1,4 @@
-import { lazy, Suspense, useState } from 'react'
+import { lazy, Suspense, useCallback, useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
 import { percentText, type Breakdown } from '../sheet'
 import { Section } from './controls'
@@ -53,6 +53,7 @@ function Positioned({ breakdown }: { breakdown: Breakdown }) {
   const measure = measureOf(breakdown)
   const classes = useStyles()
   const [chosen, setChosen] = useState<string | null>(null)
+  const select = useCallback((position: number) => setChosen(breakdown.names[position] ?? null), [breakdown])
   const largest = measure.values.reduce((best, value, i) => (value > measure.values[best]! ? i : best), 0)
   const found = chosen === null ? -1 : breakdown.names.indexOf(chosen)
   const selected = found < 0 ? largest : found
@@ -60,12 +61,7 @@ function Positioned({ breakdown }: { breakdown: Breakdown }) {
     <Section title={`Weight and ${measure.label.toLowerCase()}`}>
       <Reading breakdown={breakdown} position={selected} />
       <Suspense fallback={<p className={classes.quiet}>Drawing…</p>}>
-        <Picture
-          breakdown={breakdown}
-          measure={measure}
-          selected={selected}
-          select={(position) => setChosen(breakdown.names[position] ?? null)}
-        />
+        <Picture breakdown={breakdown} measure={measure} selected={selected} select={select} />
       </Suspense>
     </Section>
   )
