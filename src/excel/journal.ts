@@ -1,5 +1,5 @@
 import type { Area, CellValue, Json } from '../sheet'
-import { dress, type Look } from './looks'
+import { putBack, type Look } from './looks'
 import { rangeOf } from './reading'
 import { REQUEST_BYTES, type Request } from './requests'
 
@@ -208,7 +208,7 @@ export async function restore(
     ...changed.flatMap(mendSteps),
     ...journal.looks
       .filter(({ area }) => there.has(area.sheet))
-      .map((look) => step((context) => dress(context, look, true))),
+      .map((look) => step((context) => putBack(context, look))),
     ...journal.widths
       .filter(({ area }) => there.has(area.sheet))
       .map(({ area, points }) =>

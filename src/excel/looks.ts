@@ -29,40 +29,52 @@ export interface Look extends Face {
   readonly area: Area
 }
 
-/**
- * Sets an area off. Neighbours share a rule, so a new table draws the rules it needs and takes away only those inside it; what is put
- * back ("exactly") had its outer rules read before and gets them again.
- */
-export function dress(context: Excel.RequestContext, look: Look, exactly: boolean): void {
-  const { area, bold, italic, align, top, bottom } = look
-  const { format } = rangeOf(context, area)
-  format.font.bold = bold
-  format.font.italic = italic
-  format.horizontalAlignment = align as Excel.HorizontalAlignment
-  const rule = (edge: 'EdgeTop' | 'EdgeBottom' | 'InsideHorizontal', style: string) => {
-    format.borders.getItem(edge).style = style as Excel.BorderLineStyle
-  }
-  if (area.rows > 1) rule('InsideHorizontal', 'None')
-  if (exactly || bottom !== 'None') rule('EdgeBottom', bottom)
-  if (exactly) rule('EdgeTop', top)
-  else if (top !== 'None') {
-    // the same rule, but kept with the row above: taking away the rules inside a table finds it there on every host
-    const above = rangeOf(context, { ...area, row: area.row - 1 })
-    above.format.borders.getItem('EdgeBottom').style = top as Excel.BorderLineStyle
-  }
+type Edge = 'EdgeTop' | 'EdgeBottom' | 'InsideHorizontal'
+
+function rule(range: Excel.Range, edge: Edge, style: string): void {
+  range.format.borders.getItem(edge).style = style as Excel.BorderLineStyle
 }
 
-/** Makes plain what an earlier table of ours left behind; the rule over its first row, if any, belongs to a neighbour. */
-export function undress(context: Excel.RequestContext, area: Area, ours: Area): void {
-  dress(context, { ...PLAIN, area }, false)
-  if (area.row === ours.row) return
-  rangeOf(context, { ...area, row: area.row - 1 }).format.borders.getItem('EdgeBottom').style = 'None'
+/** Makes an area plain. Its outer rules stay: neighbours share them. */
+export function undress(context: Excel.RequestContext, area: Area): void {
+  const range = rangeOf(context, area)
+  range.format.font.bold = PLAIN.bold
+  range.format.font.italic = PLAIN.italic
+  range.format.horizontalAlignment = PLAIN.align as Excel.HorizontalAlignment
+  if (area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
+}
+
+/** Takes away the rule an earlier table of ours drew over an area, unless the area begins it: then the rule belongs to a neighbour. */
+export function unrule(context: Excel.RequestContext, area: Area, ours: Area): void {
+  if (area.row > ours.row) rule(rangeOf(context, { ...area, row: area.row - 1 }), 'EdgeBottom', PLAIN.bottom)
+}
+
+/** Sets a run of cells in one row off, in a table made plain before. */
+export function dress(context: Excel.RequestContext, { area, bold, italic, align, top, bottom }: Look): void {
+  const range = rangeOf(context, area)
+  if (bold) range.format.font.bold = true
+  if (italic) range.format.font.italic = true
+  if (align !== PLAIN.align) range.format.horizontalAlignment = align as Excel.HorizontalAlignment
+  if (bottom !== PLAIN.bottom) rule(range, 'EdgeBottom', bottom)
+  // a rule above is kept with the row above: taking away the rules inside a table finds it there on every host
+  if (top !== PLAIN.top) rule(rangeOf(context, { ...area, row: area.row - 1 }), 'EdgeBottom', top)
+}
+
+/** Gives an area the look it had, as it was surveyed. */
+export function putBack(context: Excel.RequestContext, look: Look): void {
+  const range = rangeOf(context, look.area)
+  range.format.font.bold = look.bold
+  range.format.font.italic = look.italic
+  range.format.horizontalAlignment = look.align as Excel.HorizontalAlignment
+  if (look.area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
+  rule(range, 'EdgeTop', look.top)
+  rule(range, 'EdgeBottom', look.bottom)
 }
 
 /**
- * The looks of a table that fills `target`: plain all over, then each run of cells with one mark. */
+ * The looks of a table that fills `target`: each run of cells with one mark. */
 export function looksOf(table: Table, target: Area): Look[] {
-  const looks: Look[] = [{ ...PLAIN, area: target }]
+  const looks: Look[] = []
   table.cells.forEach((cells, row) => {
     let from = 0
     while (from < cells.length) {

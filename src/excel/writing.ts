@@ -32,7 +32,7 @@ import {
   type Survey,
   typedText,
 } from './journal'
-import { dress, looksOf, pointsOf, surveyLooks, undress } from './looks'
+import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
 import { NAME_PREFIX, rangeOf } from './reading'
 import { faultOf, offers, PROTECTED_NEEDS, REQUEST_BYTES, type Request, type Requests } from './requests'
 
@@ -232,7 +232,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
           .filter(({ sheet }) => there(sheet))
           .flatMap((area) => clearSteps(area, patch.ours ?? area)),
         ...valueSteps(patch.table, target, 'all'),
-        ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look, false))),
+        step((queue) => undress(queue, target)),
+        ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look))),
       ]),
       ...wider.map(({ area, points }) =>
         step((queue) => void (rangeOf(queue, area).format.columnWidth = points)),
@@ -399,7 +400,8 @@ const clearSteps = (area: Area, ours: Area): Step[] => [
     const range = rangeOf(context, area)
     range.clear('Contents')
     range.numberFormat = Array.from({ length: area.rows }, () => Array<string>(area.columns).fill('General'))
-    undress(context, area, ours)
+    undress(context, area)
+    unrule(context, area, ours)
   }, area),
 ]
 
