@@ -35,7 +35,7 @@ function desk(options?: OfficeOptions) {
   return { ...standIn, standIn, grid, user, read, write }
 }
 
-afterAll(() => opened.forEach((grid) => grid.dispose()))
+afterEach(() => opened.splice(0).forEach((grid) => grid.dispose()))
 
 /** The code of the error a promise is rejected with. */
 const code = (promise: Promise<unknown>) =>
@@ -729,6 +729,43 @@ describe('Ranges', () => {
     })
   })
 
+  test('rows and columns have sizes, and columns fit their text', async () => {
+    const { Excel, write } = desk()
+    await write('A1:B1', [['a text of some length', 'x']])
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      sheet.getRange('2:3').format.rowHeight = 30
+      sheet.getRange('A:B').format.autofitColumns()
+      const [long, short] = [sheet.getRange('A1').format, sheet.getRange('B1').format]
+      const [tall, mixed] = [sheet.getRange('A2:A3').format, sheet.getRange('A1:A2').format]
+      for (const format of [long, short]) format.load('columnWidth')
+      for (const format of [tall, mixed]) format.load('rowHeight')
+      await context.sync()
+      expect(long.columnWidth).toBeGreaterThan(short.columnWidth)
+      expect([tall.rowHeight, mixed.rowHeight]).toEqual([30, null])
+    })
+  })
+
+  test('rows can be hidden and shown, and merged cells parted', async () => {
+    const { Excel } = desk()
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      const rows = sheet.getRange('2:3')
+      rows.rowHidden = true
+      rows.load('rowHidden')
+      sheet.getRange('A1:B2').merge()
+      sheet.getRange('A1:B2').unmerge()
+      const merged = sheet.getRange('A1:B2').getMergedAreasOrNullObject()
+      merged.load('address')
+      await context.sync()
+      expect([rows.rowHidden, merged.isNullObject]).toEqual([true, true])
+      rows.rowHidden = false
+      rows.load('rowHidden')
+      await context.sync()
+      expect(rows.rowHidden).toBe(false)
+    })
+  })
+
   test('clear takes away contents, formats or both', async () => {
     const { Excel, read } = desk()
     await Excel.run(async (context) => {
@@ -957,6 +994,58 @@ describe('Sheets', () => {
       store.load('visibility')
       await context.sync()
       expect(store.visibility).toBe('Visible')
+    })
+  })
+
+  test('a sheet has a place, a colour, gridlines and frozen panes', async () => {
+    const { Excel, grid } = desk()
+    await Excel.run(async (context) => {
+      const { worksheets } = context.workbook
+      const sheet = worksheets.add('Front')
+      sheet.position = 0
+      sheet.tabColor = '#112233'
+      sheet.showGridlines = false
+      sheet.freezePanes.freezeRows(2)
+      sheet.activate()
+      sheet.load('position,tabColor,showGridlines')
+      const active = worksheets.getActiveWorksheet().load('name')
+      const [firstOf, lastOf] = [worksheets.getFirst().load('name'), worksheets.getLast().load('name')]
+      await context.sync()
+      expect([sheet.position, sheet.tabColor, sheet.showGridlines]).toEqual([0, '#112233', false])
+      expect([active.name, firstOf.name, lastOf.name]).toEqual(['Front', 'Front', first])
+    })
+    expect(grid.api.getActiveWorkbook()?.getSheetByName('Front')?.getFreeze().ySplit).toBe(2)
+  })
+
+  test('page setup and outlines are kept for the file', async () => {
+    const { Excel, standIn } = desk()
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      sheet.pageLayout.orientation = 'Landscape'
+      sheet.pageLayout.setPrintArea('A1:D20')
+      sheet.pageLayout.headersFooters.defaultForAllPages.centerFooter = 'an estimate'
+      sheet.getRange('3:5').group('ByRows')
+      sheet.pageLayout.load('orientation')
+      await context.sync()
+      expect(sheet.pageLayout.orientation).toBe('Landscape')
+    })
+    const { page, outlines } = standIn.extras(first)
+    expect([...page]).toEqual([
+      ['orientation', 'Landscape'],
+      ['printArea', 'Sheet1!A1:D20'],
+      ['headersFooters.centerFooter', 'an estimate'],
+    ])
+    expect(outlines).toEqual([{ axis: 'row', from: 2, to: 4 }])
+  })
+
+  test('cells are found by place as well as by address', async () => {
+    const { Excel } = desk()
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      const found = [sheet.getCell(1, 2), sheet.getRangeByIndexes(1, 2, 3, 4), sheet.getRange('$C$2:D5')]
+      for (const range of found) range.load('address')
+      await context.sync()
+      expect(found.map(({ address }) => address)).toEqual(['Sheet1!C2', 'Sheet1!C2:F4', 'Sheet1!C2:D5'])
     })
   })
 
@@ -1555,6 +1644,22 @@ describe('The application and the host', () => {
       expect(context.application.calculationMode).toBe('Automatic')
       context.application.calculationMode = 'Manual'
       expect(await code(context.sync())).toBe('NotImplemented')
+    })
+  })
+
+  test('a read sees old results while calculation is suspended, until the sync is over', async () => {
+    const { Excel, write } = desk()
+    await write('A1:B1', [[1, '=A1*2']])
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      context.application.suspendApiCalculationUntilNextSync()
+      context.application.suspendScreenUpdatingUntilNextSync()
+      sheet.getRange('A1').values = [[10]]
+      const during = sheet.getRange('B1').load('values')
+      await context.sync()
+      const after = sheet.getRange('B1').load('values')
+      await context.sync()
+      expect([during.values, after.values]).toEqual([[[2]], [[20]]])
     })
   })
 
