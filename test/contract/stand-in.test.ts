@@ -1,10 +1,11 @@
 /**
- * The stand-in keeps the host's documented behaviours, one test each. Where the host's documentation says it, its page is named:
+ * The stand-in keeps the host's behaviours, one test each. What the host does was read in its documentation (learn.microsoft.com,
+ * Office Add-ins: the Excel object model, error handling, events, unbounded and special ranges, resource limits, and the reference of
+ * each member); error codes stand in `Excel.ErrorCodes` and `OfficeExtension.ErrorCodes` of @types/office-js. From memory, not looked up
+ * again: that a null object refuses writes, that an apostrophe is lost in a cell of text format too, that neighbours share a border,
+ * what is undone in one step, and that a failed request delivers nothing. No test here ran against Excel itself.
  *
- * - "Excel JavaScript object model", "Core concepts", "Error handling", "Events", "Ranges: unbounded", "Performance optimization",
- *   "Resource limits" and the reference of each member, at learn.microsoft.com/office/dev/add-ins (read).
- *
- * Numbers here are entered by the tests themselves; nothing is rounded, so they are compared exactly.
+ * Numbers are entered by the tests themselves; nothing is rounded, so they are compared exactly.
  */
 import { createOffice, userOf, type OfficeOptions } from '../../src/desk/office'
 import { headlessGrid } from '../../src/desk/grid'
