@@ -3,7 +3,7 @@ export interface HostTheme {
   readonly dark: boolean
 }
 
-/** The host's theme now. Excel announces no change of it: ask again when the pane is shown or gains the focus. */
+/** The host's theme now. */
 export function hostTheme(): HostTheme | null {
   // absent on the web, whatever the types say
   const theme = Office.context.officeTheme as Partial<Office.OfficeTheme> | undefined
@@ -18,6 +18,22 @@ export function hostTheme(): HostTheme | null {
   ]
   // relative luminance (WCAG 2.2) without its gamma step: enough to tell dark from light
   return { dark: 0.2126 * red + 0.7152 * green + 0.0722 * blue < 0.5 }
+}
+
+/**
+ * Tells of each change of the host's theme, where the host announces them; others are silent, so ask again when the pane gains the focus.
+ * @returns a function that ends it
+ */
+export function onThemeChanged(listener: (theme: HostTheme | null) => void): () => void {
+  const told = () => listener(hostTheme())
+  const type = Office.EventType.OfficeThemeChanged
+  // a host that does not know the event says so here or in the answer; either way nothing more is to be done
+  try {
+    Office.context.document.addHandlerAsync(type, told, () => undefined)
+  } catch {
+    return () => undefined
+  }
+  return () => Office.context.document.removeHandlerAsync(type, { handler: told })
 }
 
 /** Settles when the host can be spoken to; `host` is null outside an Office host. */

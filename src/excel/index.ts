@@ -1,3 +1,3 @@
 export { excelWorkbook } from './workbook'
 export { associateFunctions, type FunctionBody } from './functions'
-export { hostTheme, loadOnOpen, whenReady, type HostTheme } from './host'
+export { hostTheme, loadOnOpen, onThemeChanged, whenReady, type HostTheme } from './host'

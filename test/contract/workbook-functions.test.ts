@@ -1,6 +1,6 @@
 /** The guard every worksheet function is associated through, and what is asked of the host around the workbook. */
 import { Fault } from '../../src/core'
-import { associateFunctions, hostTheme, loadOnOpen, whenReady } from '../../src/excel'
+import { associateFunctions, hostTheme, loadOnOpen, onThemeChanged, whenReady } from '../../src/excel'
 import { closeAll, open } from './workbook-fixture'
 
 afterAll(closeAll)
@@ -113,12 +113,18 @@ describe('The host', () => {
       controlBackgroundColor: '#000000',
       controlForegroundColor: '#FFFFFF',
     }
-    office.setTheme({ bodyBackgroundColor: '#262626', ...colours })
+    office.setOfficeTheme({ bodyBackgroundColor: '#262626', ...colours })
     expect(hostTheme()).toEqual({ dark: true })
-    office.setTheme({ bodyBackgroundColor: '#F3F2F1', ...colours })
+    office.setOfficeTheme({ bodyBackgroundColor: '#F3F2F1', ...colours })
     expect(hostTheme()).toEqual({ dark: false })
-    office.setTheme({ bodyBackgroundColor: '#F3F2F1', ...colours, isDarkTheme: true })
+    office.setOfficeTheme({ bodyBackgroundColor: '#F3F2F1', ...colours, isDarkTheme: true })
     expect(hostTheme()).toEqual({ dark: true })
+    const told: unknown[] = []
+    const end = onThemeChanged((theme) => told.push(theme))
+    office.setOfficeTheme(undefined)
+    end()
+    office.setOfficeTheme({ bodyBackgroundColor: '#262626', ...colours })
+    expect(told).toEqual([null])
     await loadOnOpen(true)
     expect(await office.Office.addin.getStartupBehavior()).toBe('load')
     await loadOnOpen(false)
