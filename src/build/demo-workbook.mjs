@@ -403,7 +403,7 @@ function header(sheet, row, labels, first = 1) {
     cell.font = { bold: true, color: { argb: INK } }
     cell.fill = SHADE
     cell.border = { bottom: LINE }
-    cell.alignment = { wrapText: true, vertical: 'bottom', horizontal: i === 0 ? 'left' : 'center' }
+    cell.alignment = { wrapText: true, vertical: 'middle', horizontal: i === 0 ? 'left' : 'center' }
   })
   sheet.getRow(row).height = 36
 }

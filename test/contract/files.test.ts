@@ -380,7 +380,7 @@ describe('another program', () => {
   const title = office || process.env['CI'] ? '' : ' (skipped: LibreOffice is not installed)'
 
   run(
-    `LibreOffice opens a saved file with the same values${title}`,
+    `LibreOffice opens a saved file with the same values, and its own file comes back${title}`,
     async () => {
       if (!office) throw new Error('LibreOffice is not installed on the build machine')
       await show({
@@ -388,33 +388,53 @@ describe('another program', () => {
         A2: { v: 0.125 },
         A3: { v: 3 },
         B1: { v: '=1+1', t: CellValueType.FORCE_STRING },
-        B2: { f: '=SUM(A2:A3)*Half' },
         C1: { f: '=TRANSPOSE(A2:A3)' },
       })
+      // The name first: a formula entered before it stays #NAME? in the engine.
       book().insertDefinedName('Half', '=0.5')
+      book().getActiveSheet().getRange('B2').setValue({ f: '=SUM(A2:A3)*Half' })
       await calculated()
       settings.set('kept', 1)
       const folder = mkdtempSync(join(tmpdir(), 'files-'))
       try {
         writeFileSync(join(folder, 'saved.xlsx'), new Uint8Array(await saveWorkbook(grid, settings)))
-        execFileSync(
-          office,
-          [
-            `-env:UserInstallation=file://${folder}/profile`,
-            '--headless',
-            '--convert-to',
-            'csv:Text - txt - csv (StarCalc):44,34,76',
-            '--outdir',
-            folder,
-            join(folder, 'saved.xlsx'),
-          ],
-          { stdio: 'ignore', timeout: 100_000 },
-        )
+        const convert = (to: string, outdir: string) =>
+          execFileSync(
+            office,
+            [
+              `-env:UserInstallation=file://${folder}/profile`,
+              '--headless',
+              '--convert-to',
+              to,
+              '--outdir',
+              outdir,
+              join(folder, 'saved.xlsx'),
+            ],
+            { stdio: 'ignore', timeout: 100_000 },
+          )
+        convert('csv:Text - txt - csv (StarCalc):44,34,76', folder)
         expect(readFileSync(join(folder, 'saved.csv'), 'utf8').trim().split('\n')).toEqual([
           '"Größe, ""x""",=1+1,0.125,3',
           '0.125,1.5625,,',
           '3,,,',
         ])
+        // And what it writes itself is opened here, with the same values and the same names.
+        convert('xlsx', join(folder, 'theirs'))
+        const report = await openWorkbook(grid, readFileSync(join(folder, 'theirs/saved.xlsx')), settings)
+        expect(sentenceOf(report)).toBe('Opened 1 sheet.')
+        expect(['A1', 'B1', 'B2', 'C1', 'D1'].map((address) => cell(address).v)).toEqual([
+          'Größe, "x"',
+          '=1+1',
+          1.5625,
+          0.125,
+          3,
+        ])
+        expect(
+          book()
+            .getDefinedNames()
+            .map((name) => [name.getName(), name.getFormulaOrRefString()]),
+        ).toEqual([['Half', '=0.5']])
+        expect(settings.get('kept')).toBe(1)
       } finally {
         rmSync(folder, { recursive: true, force: true })
       }

@@ -104,6 +104,7 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
     },
     focus: () => grid.univer.__getInjector().get(ILayoutService).focus(),
     async open(bytes, name) {
+      await api.getActiveWorkbook()?.endEditingAsync(true)
       opening = true
       try {
         const report = await openWorkbook(grid, bytes, settings, name)
@@ -115,6 +116,8 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
       }
     },
     async save() {
+      // What is being typed is part of the workbook the user means to save.
+      await api.getActiveWorkbook()?.endEditingAsync(true)
       const bytes = await saveWorkbook(grid, settings)
       kept()
       return { bytes, name: api.getActiveWorkbook()?.getName() ?? 'Workbook.xlsx' }
