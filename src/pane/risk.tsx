@@ -1,5 +1,5 @@
 import { lazy, Suspense, useCallback, useState } from 'react'
-import { makeStyles, tokens } from '@fluentui/react-components'
+import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import { percentText, type Breakdown } from '../sheet'
 import { Section } from './controls'
 import { Figures } from './figures'
@@ -22,8 +22,6 @@ const useStyles = makeStyles({
     lineHeight: tokens.lineHeightBase200,
   },
   reading: {
-    // The longest usual sentence takes four lines: the rows below stay where they are while the selection moves.
-    minHeight: `calc(4 * ${tokens.lineHeightBase200})`,
     padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM}`,
     backgroundColor: tokens.colorNeutralBackground2,
     border: `1px solid ${tokens.colorTransparentStroke}`,
@@ -31,6 +29,8 @@ const useStyles = makeStyles({
     lineHeight: tokens.lineHeightBase200,
     overflowWrap: 'anywhere',
   },
+  // The longest usual sentence takes four lines: the rows below stay where they are while the selection moves.
+  steady: { minHeight: `calc(4 * ${tokens.lineHeightBase200})` },
   name: { fontWeight: tokens.fontWeightSemibold },
 })
 
@@ -41,7 +41,7 @@ function Reading({ breakdown, position }: { breakdown: Breakdown; position: numb
   const share = sharesOf(breakdown)?.[position]
   const digits = digitsFor(names.length)
   return (
-    <div className={classes.reading} role="status">
+    <div className={mergeClasses(classes.reading, share !== undefined && classes.steady)} role="status">
       <span className={classes.name}>{names[position]}</span>
       {share !== undefined && share < 0 && ', risk-reducing position'}: contribution to risk{' '}
       {percentText(d.contribution[position]!, digits + 1)}. {share !== undefined && sensitivity(share)}
@@ -83,7 +83,7 @@ export function RiskView() {
     <div className={classes.view}>
       <Figures breakdown={breakdown} />
       {breakdown.sharesWithheld !== null && <p className={classes.withheld}>{breakdown.sharesWithheld}</p>}
-      {breakdown.names.length > 0 && <Positioned breakdown={breakdown} />}
+      {breakdown.decomposition.volatility > 0 && <Positioned breakdown={breakdown} />}
       {breakdown.byGroup.map(({ header }, index) => (
         <Section key={index} title={`By ${header}`}>
           <Groups breakdown={breakdown} index={index} />
