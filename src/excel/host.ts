@@ -1,6 +1,8 @@
 /** The colours the host shows itself in; null where it does not say (then the browser's own preference holds). */
 export interface HostTheme {
   readonly dark: boolean
+  /** text and ground at the two ends of the scale, as the high contrast themes have them */
+  readonly highContrast?: boolean
 }
 
 /** The host's theme now. */
@@ -8,8 +10,10 @@ export function hostTheme(): HostTheme | null {
   // absent on the web, whatever the types say
   const theme = Office.context.officeTheme as Partial<Office.OfficeTheme> | undefined
   if (!theme) return null
+  const [ground, text] = [theme.bodyBackgroundColor ?? '', theme.bodyForegroundColor ?? '']
+  if (ground === '#000000' && text.toUpperCase() === '#FFFFFF') return { dark: true, highContrast: true }
   if (typeof theme.isDarkTheme === 'boolean') return { dark: theme.isDarkTheme }
-  const colour = /^#([0-9a-f]{2})([0-9a-f]{2})([0-9a-f]{2})$/i.exec(theme.bodyBackgroundColor ?? '')
+  const colour = /^#([0-9a-f]{2})([0-9a-f]{2})([0-9a-f]{2})$/i.exec(ground)
   if (!colour) return null
   const [red, green, blue] = colour.slice(1).map((part) => Number.parseInt(part, 16) / 255) as [
     number,

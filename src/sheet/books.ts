@@ -249,7 +249,9 @@ class OpenBooks implements Books {
 
   #heed(event: WorkbookEvent): void {
     if (event.kind === 'waiting') {
-      this.#notice = event.waiting ? 'Waiting until the cell being edited is finished.' : null
+      this.#notice = event.waiting
+        ? 'Waiting for the workbook. If a cell is being edited, finish it with Enter or Escape.'
+        : null
       this.#publish()
       return
     }

@@ -281,7 +281,7 @@ export function readHoldings(
     readonly expected: number | null
   }
   const rows: Row[] = []
-  const totals: string[] = []
+  const totals: number[] = []
   const headings: string[] = []
   const unheld: string[] = []
   let segment = 0
@@ -306,7 +306,7 @@ export function readHoldings(
     ) {
       const sums = agrees(shown.value, segment) || agrees(shown.value, whole)
       if (sums || TOTAL_ALONE.test(name)) {
-        totals.push(String(area.row + row + 1))
+        totals.push(row)
         if (!sums)
           find(
             'warns',
@@ -414,7 +414,8 @@ export function readHoldings(
   if (totals.length > 0)
     find(
       'notes',
-      `${totals.length === 1 ? 'Row' : 'Rows'} ${listOf(totals)} read as ${totals.length === 1 ? 'a total' : 'totals'} and left out.`,
+      `${totals.length === 1 ? 'Row' : 'Rows'} ${listOf(totals.map((row) => String(area.row + row + 1)))} read as ${totals.length === 1 ? 'a total' : 'totals'} and left out.`,
+      at(totals[0] ?? 0, measureColumn),
     )
   if (headings.length > 0)
     find(

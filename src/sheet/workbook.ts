@@ -85,7 +85,7 @@ export interface Recovery {
 
 /**
  * A host's cells, as the sheet folder needs them. Every method may throw a Fault of the codes "host", "editing", "missing",
- * "protected", "occupied", "selection" or "cancelled" and nothing else.
+ * "protected", "occupied", "selection", "cancelled" or, for a table to be written, "not-a-number", and nothing else.
  */
 export interface Workbook {
   culture(): Promise<Culture>

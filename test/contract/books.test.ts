@@ -195,6 +195,32 @@ describe('The written table', () => {
     expect(books.state().breakdown?.net).toBeCloseTo(1.3, 14)
   })
 
+  test('with 500 holdings of 1260 returns a new weight reads no returns again', async () => {
+    const names = Array.from({ length: 500 }, (_, i) => `Holding ${i + 1}`)
+    const holdings = [
+      ['Holding', 'Class', 'Weight'],
+      ...names.map((name, i) => [name, i % 2 ? 'Shares' : 'Bonds', 1 / 500]),
+    ]
+    const { books, select, writeTable, user, office, quiet, valuesAt } = await desk({
+      holdings,
+      returns: returnsOf(names, 1260),
+    })
+    select('Sheet1', 'A3:C503')
+    await books.takeSelection('holdings')
+    select('Returns', 'A1:SG1261')
+    await books.takeSelection('returns')
+    await books.compute()
+    await writeTable()
+    const before = books.state().returns
+    office.counts.reset()
+    user.type('Sheet1', 'C4', 0.1)
+    const state = await quiet()
+    expect([office.counts.syncs, office.counts.reads, office.counts.writes]).toEqual([2, 1, 1])
+    expect(state.returns).toBe(before)
+    expect(state.status).toEqual({ kind: 'up to date' })
+    expect(await valuesAt('Risk', 'C5')).toEqual([[0.1]])
+  }, 60_000)
+
   test('parts, total, sum and difference stand in it, and the parts add up', async () => {
     const { compute, writeTable, valuesAt } = await desk()
     await compute()
