@@ -56,9 +56,11 @@ export interface Decomposition {
  * @example        decompose(matrixModel(Float64Array.of(.04, 0, 0, .01), 2), Float64Array.of(0, 0)).share // null
  */
 export function decompose(model: RiskModel, weights: Float64Array): Decomposition {
-  const { size } = model
   const { marginals, variance: computed } = model.apply(weights)
-  const { deviations, standAlone, gross } = standAloneRisk(weights, model.variances())
+  const deviations = deviationsOf(model)
+  const columns = columnsOf(model.size)
+  const [standAlone, marginal, contribution, share, beta, correlation] = columns
+  const gross = fillStandAlone(standAlone, weights, deviations)
   if (!Number.isFinite(computed) || !Number.isFinite(gross * gross)) {
     throw new Fault(
       'out-of-range',
@@ -74,7 +76,7 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
       volatility: 0,
       variance: 0,
       marginal: null,
-      contribution: new Float64Array(size),
+      contribution,
       share: null,
       beta: null,
       correlation: null,
@@ -86,73 +88,86 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
     }
   }
   const volatility = Math.sqrt(computed)
-  const columns = eulerColumns(weights, marginals, deviations, volatility)
+  const { sumOfContributions, squares } = fillColumns(columns, weights, marginals, deviations, volatility)
   return {
     periodsPerYear: 1,
     weights: weights.slice(),
     standAlone,
     volatility,
     variance: computed,
-    marginal: columns.marginal,
-    contribution: columns.contribution,
-    share: columns.share,
-    beta: columns.beta,
-    correlation: columns.correlation,
+    marginal,
+    contribution,
+    share,
+    beta,
+    correlation,
     diversificationRatio: gross / volatility,
     diversificationBenefit: gross - volatility,
-    effectiveNumber: 1 / columns.squares,
-    sumOfContributions: columns.sumOfContributions,
-    difference: columns.sumOfContributions - volatility,
+    effectiveNumber: 1 / squares,
+    sumOfContributions,
+    difference: sumOfContributions - volatility,
   }
 }
 
-// The two loops have functions of their own, few divisions and few allocations: beside one pass over the block of
-// returns, a callback for every number would show.
+// Beside one pass over the block of returns, a callback for every number or an allocation for every column would show: the two
+// loops have functions of their own, columns share one allocation, and square roots are taken once a model.
 
-function standAloneRisk(weights: Float64Array, variances: Float64Array) {
-  const deviations = new Float64Array(weights.length)
-  const standAlone = new Float64Array(weights.length)
+const deviationsByModel = new WeakMap<RiskModel, Float64Array>()
+
+/** sigma_i, the volatility of each position of a model. */
+function deviationsOf(model: RiskModel): Float64Array {
+  const known = deviationsByModel.get(model)
+  if (known) return known
+  const deviations = model.variances().map(Math.sqrt)
+  deviationsByModel.set(model, deviations)
+  return deviations
+}
+
+/** Fills the stand-alone risks and returns their sum. */
+function fillStandAlone(standAlone: Float64Array, weights: Float64Array, deviations: Float64Array): number {
   let gross = 0
-  for (let i = 0; i < weights.length; i++) {
-    const deviation = Math.sqrt(variances[i]!)
-    const risk = Math.abs(weights[i]!) * deviation
-    deviations[i] = deviation
-    standAlone[i] = risk
-    gross += risk
-  }
-  return { deviations, standAlone, gross }
+  for (let i = 0; i < weights.length; i++) gross += standAlone[i] = Math.abs(weights[i]!) * deviations[i]!
+  return gross
 }
 
-function eulerColumns(
+function fillColumns(
+  [, marginal, contribution, share, beta, correlation]: Columns,
   weights: Float64Array,
   marginals: Float64Array,
   deviations: Float64Array,
   volatility: number,
 ) {
-  const size = weights.length
-  const room = new Float64Array(5 * size)
-  const column = (k: number) => room.subarray(k * size, (k + 1) * size)
-  const marginal = column(0)
-  const contribution = column(1)
-  const share = column(2)
-  const beta = column(3)
-  const correlation = column(4)
   const perUnit = 1 / volatility
   let sumOfContributions = 0
   let squares = 0
-  for (let i = 0; i < size; i++) {
+  for (let i = 0; i < weights.length; i++) {
     const m = marginals[i]! * perUnit
+    const b = m * perUnit
     const c = weights[i]! * m
-    const p = c * perUnit
+    const p = weights[i]! * b
     marginal[i] = m
     contribution[i] = c
     share[i] = p
-    beta[i] = m * perUnit
+    beta[i] = b
     correlation[i] = deviations[i] === 0 ? NaN : m / deviations[i]!
     sumOfContributions += c
     squares += p * p
   }
-  return { marginal, contribution, share, beta, correlation, sumOfContributions, squares }
+  return { sumOfContributions, squares }
+}
+
+type Columns = readonly [
+  standAlone: Float64Array,
+  marginal: Float64Array,
+  contribution: Float64Array,
+  share: Float64Array,
+  beta: Float64Array,
+  correlation: Float64Array,
+]
+
+function columnsOf(size: number): Columns {
+  const { buffer } = new Float64Array(6 * size)
+  const column = (k: number) => new Float64Array(buffer, k * size * 8, size)
+  return [column(0), column(1), column(2), column(3), column(4), column(5)]
 }
 
 /**
