@@ -10,15 +10,16 @@ interface Face {
   readonly bold: boolean
   readonly italic: boolean
   readonly align: string
+  readonly wrap: boolean
   readonly top: string
   readonly bottom: string
 }
 
-const PLAIN: Face = { bold: false, italic: false, align: 'General', top: 'None', bottom: 'None' }
+const PLAIN: Face = { bold: false, italic: false, align: 'General', wrap: false, top: 'None', bottom: 'None' }
 
 const FACES: { readonly [mark in Mark]: Face } = {
   title: { ...PLAIN, bold: true },
-  head: { ...PLAIN, bold: true, bottom: 'Continuous' },
+  head: { ...PLAIN, bold: true, wrap: true, bottom: 'Continuous' },
   total: { ...PLAIN, bold: true, top: 'Continuous' },
   note: { ...PLAIN, italic: true },
   alert: { ...PLAIN, bold: true, italic: true },
@@ -41,6 +42,7 @@ export function undress(context: Excel.RequestContext, area: Area): void {
   range.format.font.bold = PLAIN.bold
   range.format.font.italic = PLAIN.italic
   range.format.horizontalAlignment = PLAIN.align as Excel.HorizontalAlignment
+  range.format.wrapText = PLAIN.wrap
   if (area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
 }
 
@@ -50,11 +52,15 @@ export function unrule(context: Excel.RequestContext, area: Area, ours: Area): v
 }
 
 /** Sets a run of cells in one row off, in a table made plain before. */
-export function dress(context: Excel.RequestContext, { area, bold, italic, align, top, bottom }: Look): void {
+export function dress(
+  context: Excel.RequestContext,
+  { area, bold, italic, align, wrap, top, bottom }: Look,
+): void {
   const range = rangeOf(context, area)
   if (bold) range.format.font.bold = true
   if (italic) range.format.font.italic = true
   if (align !== PLAIN.align) range.format.horizontalAlignment = align as Excel.HorizontalAlignment
+  if (wrap) range.format.wrapText = true
   if (bottom !== PLAIN.bottom) rule(range, 'EdgeBottom', bottom)
   // a rule above is kept with the row above: taking away the rules inside a table finds it there on every host
   if (top !== PLAIN.top) rule(rangeOf(context, { ...area, row: area.row - 1 }), 'EdgeBottom', top)
@@ -66,6 +72,7 @@ export function putBack(context: Excel.RequestContext, look: Look): void {
   range.format.font.bold = look.bold
   range.format.font.italic = look.italic
   range.format.horizontalAlignment = look.align as Excel.HorizontalAlignment
+  range.format.wrapText = look.wrap
   if (look.area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
   rule(range, 'EdgeTop', look.top)
   rule(range, 'EdgeBottom', look.bottom)
@@ -111,6 +118,7 @@ const sameFace = (a: Face, b: Face): boolean =>
   a.bold === b.bold &&
   a.italic === b.italic &&
   a.align === b.align &&
+  a.wrap === b.wrap &&
   a.top === b.top &&
   a.bottom === b.bottom
 
@@ -127,7 +135,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
   while (open.length > 0) {
     const asked = open.map((area) => {
       const { format } = rangeOf(context, area)
-      format.load('horizontalAlignment')
+      format.load('horizontalAlignment,wrapText')
       format.font.load('bold,italic')
       const edges = (
         ['EdgeTop', 'EdgeBottom', ...(area.rows > 1 ? ['InsideHorizontal' as const] : [])] as const
@@ -143,6 +151,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
         bold: font.bold as boolean | null,
         italic: font.italic as boolean | null,
         align: format.horizontalAlignment as string | null,
+        wrap: format.wrapText as boolean | null,
         top: top ?? null,
         bottom: bottom ?? null,
       }

@@ -1,7 +1,7 @@
 import type { Breakdown } from './breakdown'
 import { CAUTION } from './breakdown'
 import type { Mark, Table, TableCell } from './table'
-import { dateText, POSITION_HEADS } from './wording'
+import { countOf, dateText, percentText, POSITION_HEADS } from './wording'
 
 const PERCENT = '0.00%'
 const SHARE = '0.0%'
@@ -14,6 +14,14 @@ const number = (value: number | null | undefined, format: string, mark?: Mark): 
   value === null || value === undefined || Number.isNaN(value)
     ? { value: '', format, ...marked(mark) }
     : { value, format, ...marked(mark) }
+
+/** What the figures were estimated from, as a part of a sentence. */
+function dataOf({ dates }: Breakdown): string {
+  if (!dates) return ', from a covariance matrix as given'
+  const span =
+    dates.first === null || dates.last === null ? '' : `, ${dateText(dates.first)} to ${dateText(dates.last)}`
+  return `, from ${countOf(dates.used, 'date')} of returns${span}`
+}
 
 /**
  * Lays a breakdown out as a table to be written: title and data dates, positions with a total row, the sum of parts and its
@@ -41,14 +49,14 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   /** cells between the name and the figures */
   const gap = (mark?: Mark): TableCell[] => Array.from({ length: labels - 1 }, () => text('', mark))
 
+  const told = findings.filter(({ weight }) => weight !== 'notes').map(({ sentence }) => sentence)
+  const warnings = sharesWithheld === null ? told : [sharesWithheld, ...told]
   add(text(`Contributions to risk: ${title}`, 'title'))
-  const { dates } = breakdown
-  add(
-    text(
-      `Volatility ${breakdown.horizon}${dates?.first != null && dates.last != null ? `, from returns of ${dateText(dates.first)} to ${dateText(dates.last)}` : ''}. ${CAUTION}`,
-      'note',
-    ),
-  )
+  add(text(`Volatility ${percentText(d.volatility, 2)} ${breakdown.horizon}${dataOf(breakdown)}.`))
+  add(text(CAUTION, 'note'))
+  if (warnings.length > 0)
+    add(text(`${countOf(warnings.length, 'warning')}, at the end of this table.`, 'alert'))
+  else blank()
   blank()
 
   add(...['Holding', ...groupHeaders, ...POSITION_HEADS, 'Note'].map((head) => text(head, 'head')))
@@ -152,24 +160,21 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
 
   blank()
   add(text('Settings', 'head'))
-  for (const [label, value] of settings) add(text(label), ...gap(), text(value))
+  for (const [label, value] of settings) add(text(label), text(value))
   add(
     text('Reading'),
-    ...gap(),
     text(
-      'Contributions add up to the volatility. A position 1% larger (of itself) moves volatility by its share of risk in percent (of itself), first order.',
+      'Contributions add up to the volatility. A position 1% larger (of itself) changes it by its share of risk in percent (of itself), first order.',
     ),
   )
   blank()
   add(text('Warnings', 'head'))
-  const told = findings.filter(({ weight }) => weight !== 'notes')
-  if (sharesWithheld !== null) add(text(sharesWithheld, 'alert'))
-  for (const { sentence } of told) add(text(sentence, 'alert'))
-  if (told.length === 0 && sharesWithheld === null) add(text('None'))
+  for (const sentence of warnings) add(text(sentence, 'alert'))
+  if (warnings.length === 0) add(text('None'))
 
   return {
     cells: rows,
-    widths: [30, ...groupHeaders.map(() => 18), 11, 12, 14, 13, 10, 10, 12, 22],
+    widths: [30, ...groupHeaders.map(() => 16), 11, 14, 16, 16, 11, 13, 15, 22],
     numeric: [false, ...groupHeaders.map(() => false), ...POSITION_HEADS.map(() => true), false],
   }
 }

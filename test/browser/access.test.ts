@@ -56,7 +56,7 @@ test('the whole main job goes by keyboard: take both blocks, compute, look, writ
   await tabTo(/^Write table/)
   await page.keyboard.press('Enter')
   await pane.getByText(/^Table written to/).waitFor()
-  expect(await desk.cell('Risk', 'A4')).toBe('Holding')
+  expect(await desk.cell('Risk', 'A6')).toBe('Holding')
 })
 
 describe.each(['Light', 'Dark', 'High contrast'])('In the %s theme', (theme) => {

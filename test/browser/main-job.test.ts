@@ -54,25 +54,25 @@ test('Write table puts the labelled table on a sheet of its own', async () => {
   await pane.getByRole('tab', { name: 'Report' }).click()
   await pane.getByRole('button', { name: 'Write table' }).click()
   await pane.getByText(/^Table written to/).waitFor()
-  expect(await desk.cells('Risk', 'A4:A5')).toEqual([['Holding'], ['Northern coast equities']])
+  expect(await desk.cells('Risk', 'A6:A7')).toEqual([['Holding'], ['Northern coast equities']])
 })
 
 test('a weight typed in the grid moves pane and table by itself', async () => {
   const { pane } = desk
   await pane.getByRole('tab', { name: 'Risk' }).click()
   const before = await volatilityShown()
-  const [contribution] = (await desk.cells('Risk', 'G5'))[0] ?? []
+  const [contribution] = (await desk.cells('Risk', 'G7'))[0] ?? []
   await desk.sheet('Book')
   await desk.goTo('D5')
   await desk.type('24%')
   await until(volatilityShown, (shown) => shown !== before, 'another volatility in the pane')
   await upToDate()
   await until(
-    () => desk.cell('Risk', 'D5'),
+    () => desk.cell('Risk', 'D7'),
     (weight) => weight === 0.24,
     'the new weight in the table',
   )
-  expect(await desk.cell('Risk', 'G5')).toBeGreaterThan(Number(contribution))
+  expect(await desk.cell('Risk', 'G7')).toBeGreaterThan(Number(contribution))
 })
 
 test('a function typed into a cell spills beside the table it agrees with, and recalculates', async () => {
@@ -114,7 +114,7 @@ test('saved and opened again, the book is still linked and the function still th
   await desk.type('30%')
   await until(volatilityShown, (shown) => shown !== before, 'another volatility in the pane')
   await until(
-    () => desk.cell('Risk', 'D5'),
+    () => desk.cell('Risk', 'D7'),
     (weight) => weight === 0.3,
     'the new weight in the table',
   )

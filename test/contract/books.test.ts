@@ -187,7 +187,7 @@ describe('The written table', () => {
     expect([office.counts.syncs, office.counts.reads, office.counts.writes]).toEqual([2, 1, 1])
     expect(state.status).toEqual({ kind: 'up to date' })
     const expected = contributionsOf(RETURNS, [0.8, 0.3, 0.4, -0.2], 52)
-    const written = await valuesAt('Risk', 'A5:F8')
+    const written = await valuesAt('Risk', 'A7:F10')
     written.forEach((row, i) => {
       expect(row[0]).toBe(NAMES[i])
       expect(row[5]).toBeCloseTo(expected[i] ?? NaN, 13)
@@ -218,14 +218,14 @@ describe('The written table', () => {
     expect([office.counts.syncs, office.counts.reads, office.counts.writes]).toEqual([2, 1, 1])
     expect(state.returns).toBe(before)
     expect(state.status).toEqual({ kind: 'up to date' })
-    expect(await valuesAt('Risk', 'C5')).toEqual([[0.1]])
+    expect(await valuesAt('Risk', 'C7')).toEqual([[0.1]])
   }, 60_000)
 
   test('parts, total, sum and difference stand in it, and the parts add up', async () => {
     const { compute, writeTable, valuesAt } = await desk()
     await compute()
     await writeTable()
-    const rows = await valuesAt('Risk', 'A4:J11')
+    const rows = await valuesAt('Risk', 'A6:J13')
     expect(rows[0]).toEqual([
       'Holding', 'Class', 'Weight', 'Stand-alone risk', 'Marginal contribution to risk', 'Contribution to risk', 'Share of risk',
       'Beta to portfolio', 'Correlation with portfolio', 'Note',
@@ -288,7 +288,7 @@ describe('The written table', () => {
     await writeTable()
     user.type('Sheet1', 'C4', 0.45)
     await quiet()
-    expect((await cells('Risk', 'A5:A8'))['values']).toEqual(odd.map((name) => [name]))
+    expect((await cells('Risk', 'A7:A10'))['values']).toEqual(odd.map((name) => [name]))
   })
 
   test('a holding added within the block makes it one row longer', async () => {
@@ -301,7 +301,7 @@ describe('The written table', () => {
     user.type('Sheet1', 'A7', [['Timber', 'Real assets', 0.05]])
     const state = await quiet()
     expect(state.status).toEqual({ kind: 'up to date' })
-    expect((await valuesAt('Risk', 'A5:A10')).flat()).toEqual([
+    expect((await valuesAt('Risk', 'A7:A12')).flat()).toEqual([
       'Northern shares', 'Southern shares', 'Harbour bonds', 'Timber', 'Index hedge', 'Total',
     ]) // prettier-ignore
     expect(state.table?.rows).toBeGreaterThan(20)
@@ -323,7 +323,7 @@ describe('The link', () => {
     user.type('Sheet1', 'C4', 0.9)
     await quiet()
     await new Promise((resolve) => setTimeout(resolve, 200))
-    const [row] = await valuesAt('Risk', 'A5:C5')
+    const [row] = await valuesAt('Risk', 'A7:C7')
     expect(row?.[2]).toBe(0.9)
   })
 
@@ -425,7 +425,7 @@ describe('The link', () => {
     const { books, compute, writeTable, user, quiet } = await desk({ holdings })
     await compute()
     await writeTable()
-    user.type('Sheet1', 'H1', '=Risk!F5*3')
+    user.type('Sheet1', 'H1', '=Risk!F7*3')
     for (let k = 0; k < 8 && books.state().status.kind !== 'failed'; k++) await quiet()
     expect(books.state().status).toMatchObject({
       kind: 'failed',

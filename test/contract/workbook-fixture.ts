@@ -1,5 +1,6 @@
 /** A workbook without a screen, the port over it, and a portrait of all it holds. */
 import { CellValueType } from '@univerjs/core'
+import { WrapStrategy } from '@univerjs/core'
 import { headlessGrid } from '../../src/desk/grid'
 import { createOffice, userOf, type OfficeOptions } from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
@@ -32,7 +33,7 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
       const cells: Record<string, unknown> = {}
       const inner = sheet.getSheet()
       inner.getCellMatrix().forValue((row, column, cell) => {
-        const { n, bl, it, ht } = inner.getComposedCellStyle(row, column)
+        const { n, bl, it, ht, tb } = inner.getComposedCellStyle(row, column)
         // neighbours share a rule, whichever of them the grid keeps it with
         const below = row + 1 < inner.getRowCount() ? inner.getComposedCellStyle(row + 1, column).bd?.t : null
         const above = row > 0 ? inner.getComposedCellStyle(row - 1, column).bd?.b : null
@@ -47,6 +48,7 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
           it: it || null,
           ht: ht || null,
           bd,
+          wrapped: tb === WrapStrategy.WRAP || null,
         })
         if (kept) cells[`R${row + 1}C${column + 1}`] = kept
       })
