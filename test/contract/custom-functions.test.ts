@@ -1,8 +1,9 @@
 /**
  * Worksheet functions in the desk behave as the host documents them.
  *
- * Sources, read: Office Add-ins documentation, "Custom functions parameter options", "Handle and return errors from your custom
- * function", "Autogenerate JSON metadata" and the declarations of custom-functions-runtime. Where a test follows observed behaviour of
+ * Sources: Office Add-ins documentation (from memory), "Custom functions parameter options", "Handle and return errors from your custom
+ * function", "Autogenerate JSON metadata" and the declarations of @types/custom-functions-runtime
+ * (read). Where a test follows observed behaviour of
  * the host that the documentation leaves open, its name says "common practice". Numbers are exact: the functions only echo or add.
  */
 import { readFileSync } from 'node:fs'

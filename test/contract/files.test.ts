@@ -1,8 +1,8 @@
 /**
  * Opening and saving .xlsx in the desk.
  *
- * Values here are echoed, so they are compared exactly. What a file must contain is stated from ECMA-376 part 1 (read) and [MS-XLSX]
- * (read), with the paragraph beside it; that other programs open the file is checked with LibreOffice where it is installed.
+ * Values here are echoed, so they are compared exactly. What a file must contain is stated from ECMA-376 part 1 and [MS-XLSX] (both
+ * from memory), with the paragraph beside it; that other programs open the file is checked with LibreOffice where it is installed.
  */
 import { execFileSync, spawnSync } from 'node:child_process'
 import { mkdtempSync, readFileSync, rmSync, writeFileSync } from 'node:fs'
@@ -171,7 +171,7 @@ describe('formulas', () => {
     expect(sentenceOf(report)).toBe('Opened 1 sheet. 1 formula cannot be calculated here, first S!B7.')
   })
 
-  // Prefixes of newer functions: [MS-XLSX] 2.2.2, future-function-list (read); LET's variables likewise.
+  // Prefixes of newer functions: [MS-XLSX] 2.2.2, future-function-list (from memory); LET's variables likewise.
   it.each([
     ['=XLOOKUP(A1,B1:B3,C1:C3)', '_xlfn.XLOOKUP(A1,B1:B3,C1:C3)'],
     ['=SORT(FILTER(A1:A3,A1:A3>0))', '_xlfn._xlws.SORT(_xlfn._xlws.FILTER(A1:A3,A1:A3>0))'],

@@ -1,8 +1,7 @@
 /**
- * The stand-in keeps the host's behaviours, one test each. What the host does was read in its documentation (learn.microsoft.com,
+ * The stand-in keeps the host's behaviours, one test each. What the host does is told by its documentation (learn.microsoft.com,
  * Office Add-ins: the Excel object model, error handling, events, unbounded and special ranges, resource limits, and the reference of
- * each member); error codes stand in `Excel.ErrorCodes` and `OfficeExtension.ErrorCodes` of @types/office-js. From memory, not looked up
- * again: that a null object refuses writes, that an apostrophe is lost in a cell of text format too, that neighbours share a border,
+ * each member; at second hand or from memory, not looked up again); error codes stand in `Excel.ErrorCodes` and `OfficeExtension.ErrorCodes` of @types/office-js. From memory alone: that a null object refuses writes, that an apostrophe is lost in a cell of text format too, that neighbours share a border,
  * what is undone in one step, and that a failed request delivers nothing. No test here ran against Excel itself.
  *
  * Numbers are entered by the tests themselves; nothing is rounded, so they are compared exactly.

@@ -2,7 +2,7 @@
  * What the file library leaves out, read from and written into the parts of the .xlsx package itself: defined names that are constants
  * or formulas, their comments and visibility, and the mark that tells a spilling formula from an old array formula.
  *
- * Source, read: ECMA-376 part 1, 18.2.5 (definedName), 18.3.1.4 (c, attribute cm), 18.9 (metadata); [MS-XLSX] 2.6.160 (dynamic array
+ * Source, from memory: ECMA-376 part 1, 18.2.5 (definedName), 18.3.1.4 (c, attribute cm), 18.9 (metadata); [MS-XLSX] 2.6.160 (dynamic array
  * properties).
  */
 import { unzip, zip } from '@cj-tech-master/excelts/browser'

@@ -15,7 +15,7 @@ import {
 export type Palette = readonly string[]
 
 const OFFICE_PALETTE: Palette =
-  // The theme a file without one is read with: ECMA-376 part 1, 20.1.6.2, in the order of 18.8.3 (light and dark swapped).
+  // The theme a file without one is read with: ECMA-376 part 1, 20.1.6.2 (from memory), in the order of 18.8.3 (light and dark swapped).
   [
     'FFFFFF',
     '000000',

@@ -4,7 +4,7 @@
  * A file marks functions newer than the format (`_xlfn.XLOOKUP`, `_xlfn._xlws.FILTER`), the variables of LET and LAMBDA (`_xlpm.x`) and
  * an add-in's functions (`_xldudf_POISE_RETURNS` for POISE.RETURNS); none of that is shown.
  *
- * Source, read: [MS-XLSX] 2.2.2 "Formulas", future-function-list and prefixes; the add-in form is as the host writes it (common
+ * Source, from memory: [MS-XLSX] 2.2.2 "Formulas", future-function-list and prefixes; the add-in form is as the host writes it (common
  * practice, no source).
  */
 import { NEW_EXCEL_FUNCTIONS } from '@univerjs/engine-formula'
