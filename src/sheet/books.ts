@@ -1,7 +1,7 @@
 import { Fault } from '../core'
 import type { Breakdown } from './breakdown'
 import type { Area, Culture } from './cells'
-import { addressOf } from './cells'
+import { addressOf, overlap } from './cells'
 import type { HoldingsReading } from './holdings'
 import type { Field, Status, Work } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
@@ -337,8 +337,13 @@ class OpenBooks implements Books {
 
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void> {
     return this.#command('table', async (book) => {
+      const earlier = book.table
       const area = await book.writeTable(where.kind)
-      this.#notice = `Table written to ${addressOf(area)}. It follows the weights.`
+      const left =
+        earlier && !overlap(earlier, area)
+          ? ` The earlier one in ${addressOf(earlier)} stays as it is and no longer follows.`
+          : ''
+      this.#notice = `Table written to ${addressOf(area)}. It follows the weights.${left}`
     })
   }
 

@@ -10,14 +10,15 @@ import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
 import type { BookModel, Match } from './matching'
 import { matchHoldings, modelOf } from './matching'
-import { dateInCell, numberInCell } from './numbers'
+import { growthBeside } from './growth'
+import { numberInCell } from './numbers'
 import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
 import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
 import type { Table } from './table'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
-import { countOf, dateText, listOf, quote } from './wording'
+import { countOf, listOf, quote } from './wording'
 
 /** Where in the pane a sentence belongs. */
 export type Field =
@@ -475,14 +476,10 @@ export class LinkedBook {
       throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'table' })
     const table = breakdownTable(this.title, this.breakdown)
     const target = at ?? (await this.#targetOf(where))
+    // an earlier table that the new one meets gives way to it; one that lies elsewhere stays, as figures of its time
+    const meets = this.table && overlap(this.table, areaOfTable(target, table)) ? { ours: this.table } : {}
     try {
-      return await this.#writeAt(
-        target,
-        table,
-        over,
-        this.table ? { ours: this.table } : {},
-        where === 'new sheet' ? target.sheet : undefined,
-      )
+      return await this.#writeAt(target, table, over, meets, where === 'new sheet' ? target.sheet : undefined)
     } catch (fault) {
       if (fault instanceof Fault && fault.code === 'occupied')
         this.#propose({
@@ -519,18 +516,11 @@ export class LinkedBook {
     ground: { ours?: Area; seen?: readonly (readonly CellValue[])[] },
     sheet?: string,
   ): Promise<Area> {
-    const { row, column } = target
-    const area: Area = {
-      sheet: target.sheet,
-      row,
-      column,
-      rows: table.cells.length,
-      columns: table.widths.length,
-    }
+    const area = areaOfTable(target, table)
     const moved = !sameArea(this.table, area)
     await this.workbook.write({
       ...(sheet === undefined ? {} : { sheet }),
-      patches: [{ at: { sheet: target.sheet, row, column }, table, over, ...ground }],
+      patches: [{ at: area, table, over, ...ground }],
       ...(moved ? { keep: { [this.keptName('table')]: area } } : {}),
     })
     this.table = area
@@ -563,74 +553,20 @@ export class LinkedBook {
 
   async #lookBeyond(holdings: Seen, returns: Seen): Promise<void> {
     this.proposals = this.proposals.filter(({ key }) => !key.startsWith('include '))
-    const own = [holdings.area, returns.area, this.table].filter((area) => area !== null)
-    const grown = (seen: Seen, sideways: boolean): Area | null => {
-      const { area, region } = seen
-      if (!region) return null
-      const rows = Math.max(area.rows, region.row + region.rows - area.row)
-      const columns = sideways
-        ? Math.max(area.columns, region.column + region.columns - area.column)
-        : area.columns
-      const wider = { ...area, rows, columns }
-      if (sameArea(wider, area)) return null
-      return own.some((other) => !sameArea(other, area) && overlap(other, wider)) ? null : wider
-    }
-    const moreHoldings = grown(holdings, false)
-    if (moreHoldings && !this.#asked.has(`include ${addressOf(moreHoldings)}`)) {
-      const reading = readHoldings(
-        await this.workbook.read(moreHoldings, { shape: true }),
-        this.settings,
-        this.culture,
-      )
-      const more = reading.holdings.slice(this.holdings?.holdings.length ?? 0)
-      if (more.length > 0 && reading.findings.every(({ weight }) => weight !== 'stops'))
-        this.#propose({
-          key: `include ${addressOf(moreHoldings)}`,
-          sentence: `${countOf(more.length, 'further holding')} found below ${addressOf(holdings.area)}: ${listOf(more.map(({ name }) => quote(name)))}.`,
-          button: 'Include',
-          accept: (work) => this.#include('holdings', moreHoldings, work),
-        })
-    }
-    const moreReturns = grown(returns, true)
-    if (moreReturns && this.returns && !this.#asked.has(`include ${addressOf(moreReturns)}`)) {
-      const sentence = await this.#describeMore(returns.area, moreReturns)
-      if (sentence)
-        this.#propose({
-          key: `include ${addressOf(moreReturns)}`,
-          sentence,
-          button: 'Include',
-          accept: (work) => this.#include('returns', moreReturns, work),
-        })
-    }
-  }
-
-  /** Says what a wider returns block would add; null when what stands there is neither dates nor named series. */
-  async #describeMore(area: Area, wider: Area): Promise<string | null> {
-    const isAcross = this.returns?.orientation === 'dates across'
-    const edge = isAcross
-      ? { ...wider, column: area.column + area.columns, columns: wider.columns - area.columns, rows: 1 }
-      : { ...wider, row: area.row + area.rows, rows: wider.rows - area.rows, columns: 1 }
-    const heads = isAcross
-      ? { ...wider, row: area.row + area.rows, rows: wider.rows - area.rows, columns: 1 }
-      : { ...wider, column: area.column + area.columns, columns: wider.columns - area.columns, rows: 1 }
-    const cellsOf = async (part: Area): Promise<readonly CellValue[]> =>
-      part.rows > 0 && part.columns > 0 ? (await this.workbook.read(part)).values.flat() : []
-    const along = await cellsOf(edge)
-    const beside = await cellsOf(heads)
-    const found: string[] = []
-    if (this.returns?.dates && along.length > 0) {
-      const days = along.map((value) => dateInCell(value, this.culture))
-      if (days.some((day) => day === null)) return null
-      const newest = Math.max(...days.map((day) => day ?? 0))
-      found.push(`${countOf(days.length, 'newer date')} to ${dateText(newest)}`)
-    }
-    if (beside.length > 0) {
-      if (beside.some((value) => typeof value !== 'string' || isBlank(value))) return null
-      found.push(
-        `${countOf(beside.length, 'further series', 'further series')} (${listOf(beside.map(quote))})`,
-      )
-    }
-    return found.length > 0 ? `${listOf(found)} found beside ${addressOf(area)}.` : null
+    const keyOf = (area: Area): string => `include ${addressOf(area)}`
+    const growths = await growthBeside(
+      this.workbook,
+      { holdings, returns, table: this.table },
+      { holdings: this.holdings, returns: this.returns, settings: this.settings, culture: this.culture },
+      (wider) => this.#asked.has(keyOf(wider)),
+    )
+    for (const { part, wider, sentence } of growths)
+      this.#propose({
+        key: keyOf(wider),
+        sentence,
+        button: 'Include',
+        accept: (work) => this.#include(part, wider, work),
+      })
   }
 
   async #include(part: 'holdings' | 'returns', wider: Area, work: Work): Promise<void> {
@@ -638,6 +574,15 @@ export class LinkedBook {
     await this.refresh('compute', work)
   }
 }
+
+/** What a table fills from its top-left cell on. */
+const areaOfTable = ({ sheet, row, column }: Area, table: Table): Area => ({
+  sheet,
+  row,
+  column,
+  rows: table.cells.length,
+  columns: table.widths.length,
+})
 
 const isFormula = (value: CellValue): boolean =>
   typeof value === 'string' && value.startsWith('=') && value.length > 1

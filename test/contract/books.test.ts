@@ -175,6 +175,58 @@ describe('Compute', () => {
   })
 })
 
+/**
+ * Roncalli, T., Introduction to Risk Parity and Budgeting, CRC 2013, Table 2.2 (p. 81); author's chapter-2 slides. Weights and outputs in
+ * percent read in the slides' text; volatilities and correlations from memory, they reproduce every printed figure. Tolerance: half a
+ * unit of the last printed digit.
+ */
+const RONCALLI = {
+  weights: [0.5, 0.2, 0.3],
+  volatilities: [0.3, 0.2, 0.15],
+  correlations: [
+    [1, 0.8, 0.5],
+    [0.8, 1, 0.3],
+    [0.5, 0.3, 1],
+  ],
+  risk: 20.87,
+  marginal: [29.4, 16.63, 9.49],
+  contribution: [14.7, 3.33, 2.85],
+  percent: [70.43, 15.93, 13.64],
+}
+
+describe('A covariance matrix in place of returns', () => {
+  test('gives the published figures, in pane and table', async () => {
+    const names = ['A', 'B', 'C']
+    const { volatilities, correlations } = RONCALLI
+    const { compute, writeTable, valuesAt } = await desk({
+      holdings: [
+        ['Holding', 'Class', 'Weight'],
+        ...names.map((name, i) => [name, 'Shares', RONCALLI.weights[i] ?? 0]),
+      ],
+      returns: [
+        ['', ...names],
+        ...correlations.map((row, i) => [
+          names[i] ?? '',
+          ...row.map((rho, j) => rho * (volatilities[i] ?? 0) * (volatilities[j] ?? 0)),
+        ]),
+      ],
+    })
+    const { breakdown, returns } = await compute()
+    expect(returns?.content).toBe('covariance')
+    const d = breakdown?.decomposition
+    expect(Math.abs((d?.volatility ?? NaN) * 100 - RONCALLI.risk)).toBeLessThan(0.005)
+    await writeTable()
+    const rows = await valuesAt('Risk', 'C7:G9')
+    rows.forEach(([, , marginal, contribution, share], i) => {
+      expect(Math.abs(Number(marginal) * 100 - (RONCALLI.marginal[i] ?? NaN))).toBeLessThanOrEqual(0.005)
+      expect(Math.abs(Number(contribution) * 100 - (RONCALLI.contribution[i] ?? NaN))).toBeLessThanOrEqual(
+        0.005,
+      )
+      expect(Math.abs(Number(share) * 100 - (RONCALLI.percent[i] ?? NaN))).toBeLessThanOrEqual(0.005)
+    })
+  })
+})
+
 describe('The written table', () => {
   test('it follows a new weight with one request that reads and one that writes', async () => {
     const { books, compute, writeTable, user, office, quiet, valuesAt } = await desk()
@@ -263,6 +315,51 @@ describe('The written table', () => {
     await offer?.accept()
     expect(books.state().table).toMatchObject({ sheet: 'Sheet1', row: 2, column: 4 })
     expect(await valuesAt('Sheet1', 'E3')).toEqual([['Contributions to risk: Sheet1']])
+  })
+
+  test('written elsewhere, the earlier table stays as it is and no longer follows', async () => {
+    const { books, compute, writeTable, user, quiet, valuesAt } = await desk()
+    await compute()
+    await writeTable()
+    await writeTable()
+    expect(books.state().notice).toBe(
+      "Table written to 'Risk 2'!A1:J40. It follows the weights. The earlier one in Risk!A1:J40 stays as it is and no longer follows.",
+    )
+    user.type('Sheet1', 'C4', 0.8)
+    await quiet()
+    expect(await valuesAt('Risk', 'C7')).toEqual([[0.5]])
+    expect(await valuesAt('Risk 2', 'C7')).toEqual([[0.8]])
+  })
+
+  test('a protected sheet is named and left as it is', async () => {
+    const { books, compute, writeTable, office, user, quiet, valuesAt } = await desk()
+    await compute()
+    await writeTable()
+    office.protect('Risk', true)
+    user.type('Sheet1', 'C4', 0.8)
+    const state = await quiet()
+    expect(state.status).toMatchObject({
+      kind: 'failed',
+      sentence: expect.stringMatching(/Risk.*protected/) as string,
+    })
+    expect(await valuesAt('Risk', 'C7')).toEqual([[0.5]])
+    office.protect('Risk', false)
+    await books.compute()
+    expect(await valuesAt('Risk', 'C7')).toEqual([[0.8]])
+  })
+
+  test('while a cell is being edited the pane says what it waits for, and goes on by itself', async () => {
+    const { books, compute, office, quiet } = await desk()
+    await compute()
+    office.editing = true
+    const written = books.writeTable({ kind: 'new sheet' })
+    await new Promise((resolve) => setTimeout(resolve, 700))
+    expect(books.state().notice).toBe(
+      'Waiting for the workbook. If a cell is being edited, finish it with Enter or Escape.',
+    )
+    office.editing = false
+    await written
+    expect((await quiet()).table).toMatchObject({ sheet: 'Risk' })
   })
 
   test('a write that fails half way leaves the workbook as it was and the figures up to date', async () => {
