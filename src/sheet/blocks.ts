@@ -1,7 +1,7 @@
 import { Fault, type FaultCode, type Weighting, type Where } from '../core'
 import { isBlank, PLAIN_CULTURE, type CellValue } from './cells'
 import { attempt } from './explain'
-import { plainName } from './matching'
+import { plainName } from './names'
 import { dateInCell } from './numbers'
 import { countOf, quote } from './wording'
 

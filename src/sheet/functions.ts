@@ -21,7 +21,7 @@ import {
   vectorOf,
   type Panel,
 } from './blocks'
-import { groupsOf } from './matching'
+import { groupsOf } from './names'
 import { blockMemo } from './memo'
 import { countOf, POSITION_HEADS } from './wording'
 

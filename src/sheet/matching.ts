@@ -4,6 +4,7 @@ import { addressOf } from './cells'
 import type { Finding } from './findings'
 import { firstAndCount } from './findings'
 import type { HoldingsReading } from './holdings'
+import { plainName } from './names'
 import type { ReturnsReading } from './returns'
 import type { Settings } from './settings'
 import { countOf, dateText, quote } from './wording'
@@ -12,32 +13,6 @@ import { countOf, dateText, quote } from './wording'
 export interface Match {
   readonly seriesOf: Int32Array
   readonly findings: readonly Finding[]
-}
-
-/** Names are the same when they differ in case and spacing alone. */
-export const plainName = (name: string): string =>
-  name.normalize('NFKC').toLowerCase().replace(/\s+/g, ' ').trim()
-
-/** The group of positions without a label: they are shown, never lost. */
-export const UNASSIGNED = 'Unassigned'
-
-/**
- * Numbers the groups in the order of their first member; labels that differ in case and spacing alone are one group, spelt as it
- * came first, and blank ones are together under "Unassigned".
- */
-export function groupsOf(labels: readonly (string | null | undefined)[]): {
-  readonly groupOf: Int32Array
-  readonly labels: readonly string[]
-} {
-  const shown: string[] = []
-  const known = new Map<string, number>()
-  const groupOf = Int32Array.from(labels, (label) => {
-    const key = plainName(label ?? '')
-    const group = known.get(key) ?? shown.push(key === '' ? UNASSIGNED : (label ?? '')) - 1
-    known.set(key, group)
-    return group
-  })
-  return { groupOf, labels: shown }
 }
 
 /**
