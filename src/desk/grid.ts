@@ -14,6 +14,7 @@ import { UniverSheetsNumfmtPlugin } from '@univerjs/sheets-numfmt'
 import '@univerjs/sheets-numfmt/facade'
 import { UniverSheetsTablePlugin } from '@univerjs/sheets-table'
 import '@univerjs/sheets-table/facade'
+import { followNames } from './names'
 
 export interface Grid {
   readonly univer: Univer
@@ -44,6 +45,7 @@ export function headlessGrid(workbook: Partial<IWorkbookData> = emptyWorkbook())
   univer.registerPlugin(UniverSheetsNumfmtPlugin, {})
   univer.registerPlugin(UniverSheetsTablePlugin, {})
   const api = FUniver.newAPI(univer)
+  followNames(univer, api)
   api.createWorkbook(workbook)
   return { univer, api, dispose: () => univer.dispose() }
 }

@@ -11,6 +11,7 @@ import { UniverSheetsTablePreset } from '@univerjs/preset-sheets-table'
 import tableEnglish from '@univerjs/preset-sheets-table/locales/en-US'
 import '@univerjs/preset-sheets-table/lib/index.css'
 import type { Grid } from '../grid'
+import { followNames } from '../names'
 
 export function openGridView(container: HTMLElement, dark: boolean): Grid {
   const univer = new Univer({
@@ -34,5 +35,6 @@ export function openGridView(container: HTMLElement, dark: boolean): Grid {
     else univer.registerPlugin(plugin)
   }
   const api = FUniver.newAPI(univer)
+  followNames(univer, api)
   return { univer, api, dispose: () => univer.dispose() }
 }
