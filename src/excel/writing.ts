@@ -2,8 +2,10 @@ import { Fault } from '../core'
 import {
   addressOf,
   cellOf,
+  countOf,
   isBlank,
   overlap,
+  quote,
   sameArea,
   type Area,
   type CellValue,
@@ -493,19 +495,20 @@ async function refuseObstacles(
 
 function refuseForeign(ground: Survey, ours: Area | undefined): void {
   let first: Area | null = null
+  let held: CellValue = ''
   let count = 0
   ground.typed.forEach((row, r) =>
     row.forEach((entry, c) => {
       const cell = cellOf(ground.area, r, c)
       if ((entry === '' && isBlank(ground.values[r]?.[c])) || (ours && overlap(cell, ours))) return
-      first ??= cell
+      if (!first) [first, held] = [cell, ground.values[r]?.[c] ?? entry]
       count++
     }),
   )
   if (!first) return
   throw new Fault(
     'occupied',
-    `${addressOf(first)}${count > 1 ? ` and ${count - 1} more cells in the way of the table hold` : ' is in the way of the table and holds'} something`,
-    'choose an empty place, or agree to replace what stands there',
+    `${addressOf(first)} is in the way of the table: it holds ${quote(held)}${count > 1 ? `, and ${countOf(count - 1, 'more cell')} ${count === 2 ? 'holds' : 'hold'} something` : ''}`,
+    'an empty place is needed, or your word that it may be replaced',
   )
 }

@@ -2,6 +2,7 @@ import { Fault } from '../core'
 import type { Breakdown } from './breakdown'
 import type { Area, Culture } from './cells'
 import { addressOf, overlap } from './cells'
+import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
 import type { Field, Status, Work } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
@@ -159,7 +160,10 @@ class OpenBooks implements Books {
       books: this.#books.map(({ id, title }) => ({ id, title })),
       current: book.id,
       title: book.title,
-      holdings: book.holdings,
+      holdings: book.holdings && {
+        ...book.holdings,
+        findings: byGravity([...book.holdings.findings, ...(book.match?.findings ?? [])]),
+      },
       returns: book.returns,
       settings: book.settings,
       breakdown: book.breakdown,
@@ -281,6 +285,7 @@ class OpenBooks implements Books {
   #command(field: Field | undefined, action: (book: LinkedBook, work: Work) => Promise<void>): Promise<void> {
     const book = this.#book
     this.#notice = null
+    book.dropQuestions()
     return this.#enqueue(
       book,
       async (work) => {

@@ -78,6 +78,8 @@ export class LinkedBook {
   settings: Settings
   holdings: HoldingsReading | null = null
   returns: ReturnsReading | null = null
+  /** which series each holding goes with, as soon as both blocks are read */
+  match: Match | null = null
   breakdown: Breakdown | null = null
   table: Area | null = null
   status: Status = { kind: 'nothing linked' }
@@ -228,6 +230,12 @@ export class LinkedBook {
   #readHoldings(): void {
     if (!this.#holdingsBlock) return
     this.holdings = readHoldings(this.#holdingsBlock, this.settings, this.culture)
+    this.#match()
+  }
+
+  #match(): void {
+    const { holdings, returns } = this
+    this.match = holdings && returns ? matchHoldings(holdings, returns, this.settings.riskless) : null
   }
 
   async #readReturns(area: Area, work: Work): Promise<void> {
@@ -240,6 +248,7 @@ export class LinkedBook {
     })
     this.#changed.returns = false
     this.returns = readReturns(block, this.settings, this.culture)
+    this.#match()
     // formulas are looked for along the newest and the oldest row only: a block is filled one way
     const row = (k: number): Area => ({ ...area, row: area.row + k, rows: 1 })
     const edges = await this.workbook.look([
@@ -273,6 +282,7 @@ export class LinkedBook {
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
     this.settings = { ...this.settings, ...change }
     if ('capital' in change && change.capital === null) this.#capitalArea = null
+    if ('riskless' in change) this.#match()
     if ('roles' in change || 'capital' in change) {
       this.#readHoldings()
       if (this.holdings) this.#settle('holdings')
@@ -319,7 +329,7 @@ export class LinkedBook {
         'select the returns block and use the selection',
         { argument: 'returns' },
       )
-    const match = matchHoldings(holdings, returns, this.settings.riskless)
+    const match = (this.match ??= matchHoldings(holdings, returns, this.settings.riskless))
     for (const [field, findings] of [
       ['holdings', holdings.findings],
       ['returns', returns.findings],
@@ -458,10 +468,21 @@ export class LinkedBook {
       return
     }
     const known = fits && this.#written !== null && sameFormats(this.#written, table)
-    await this.#writeAt(seen.area, table, 'blank', {
-      ours: seen.area,
-      ...(known && seen.formulas ? { seen: seen.formulas } : {}),
-    })
+    try {
+      await this.#writeAt(seen.area, table, 'blank', {
+        ours: seen.area,
+        ...(known && seen.formulas ? { seen: seen.formulas } : {}),
+      })
+    } catch (fault) {
+      if (!(fault instanceof Fault && fault.code === 'occupied')) throw fault
+      this.#proposeOver('where it was', seen.area, table)
+      this.faults = { ...this.faults, table: explain(fault) }
+      this.status = {
+        kind: 'stale',
+        since: seen.area,
+        sentence: `The table in ${addressOf(seen.area)} has to grow and cannot. ${explain(fault)}`,
+      }
+    }
   }
 
   // ---- writing
@@ -481,17 +502,21 @@ export class LinkedBook {
     try {
       return await this.#writeAt(target, table, over, meets, where === 'new sheet' ? target.sheet : undefined)
     } catch (fault) {
-      if (fault instanceof Fault && fault.code === 'occupied')
-        this.#propose({
-          key: `over ${addressOf(target)}`,
-          sentence: `${explain(fault)} Write over what stands there?`,
-          button: 'Write over it',
-          accept: async () => {
-            await this.writeTable(where, 'replace', target)
-          },
-        })
+      if (fault instanceof Fault && fault.code === 'occupied') this.#proposeOver(where, target, table)
       throw fault
     }
+  }
+
+  #proposeOver(where: 'new sheet' | 'selection' | 'where it was', target: Area, table: Table): void {
+    this.#propose({
+      key: `over ${addressOf(target)}`,
+      sentence: `Write over what stands in ${addressOf(areaOfTable(target, table))}?`,
+      button: 'Write over it',
+      accept: async () => {
+        await this.writeTable(where, 'replace', target)
+        if (this.linked) this.status = { kind: 'up to date' }
+      },
+    })
   }
 
   async #targetOf(where: 'new sheet' | 'selection' | 'where it was'): Promise<Area> {
@@ -536,6 +561,11 @@ export class LinkedBook {
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
       remember: { [`book.${this.id}`]: null },
     }
+  }
+
+  /** Takes off the questions that belonged to an earlier action. */
+  dropQuestions(): void {
+    this.proposals = this.proposals.filter(({ key }) => key.startsWith('include '))
   }
 
   // ---- what has grown beyond the linked blocks

@@ -161,6 +161,26 @@ describe('Compute', () => {
     expect(books.state().holdings?.holdings.map(({ name }) => name)).toEqual(NAMES)
   })
 
+  test('every holding without returns is among the findings before anything is computed', async () => {
+    const { books, select } = await desk({
+      holdings: [...HOLDINGS, ['Cash', 'Cash', 0.1], ['Loan', 'Cash', -0.1]],
+    })
+    select('Sheet1', 'A3:C9')
+    await books.takeSelection('holdings')
+    select('Returns', 'A1:E61')
+    await books.takeSelection('returns')
+    const stops = (): string[] =>
+      (books.state().holdings?.findings ?? [])
+        .filter(({ weight }) => weight === 'stops')
+        .map(({ sentence }) => sentence)
+    expect(stops().map((sentence) => sentence.slice(0, 39))).toEqual([
+      'Sheet1!C8: found no returns for “Cash” ',
+      'Sheet1!C9: found no returns for “Loan” ',
+    ])
+    await books.markRiskless('Cash', true)
+    expect(stops()).toHaveLength(1)
+  })
+
   test('a holding without returns is named with its cell until it is marked riskless', async () => {
     const { books, compute } = await desk({ holdings: [...HOLDINGS, ['Cash', 'Cash', 0.1]] })
     await compute()
@@ -315,6 +335,30 @@ describe('The written table', () => {
     await offer?.accept()
     expect(books.state().table).toMatchObject({ sheet: 'Sheet1', row: 2, column: 4 })
     expect(await valuesAt('Sheet1', 'E3')).toEqual([['Contributions to risk: Sheet1']])
+  })
+
+  test('a table that has to grow over foreign cells says so and asks', async () => {
+    const { books, compute, writeTable, user, quiet, valuesAt } = await desk({
+      returns: returnsOf([...NAMES, 'Timber'], 60),
+    })
+    await compute()
+    const { table } = await writeTable()
+    const below = `A${(table?.rows ?? 0) + 1}`
+    user.type('Risk', below, 'mine')
+    user.insertRows('Sheet1', 7, 1)
+    user.type('Sheet1', 'A7', [['Timber', 'Real assets', 0.05]])
+    const state = await quiet()
+    expect(state.status).toMatchObject({
+      kind: 'stale',
+      sentence: expect.stringMatching(
+        /^The table in Risk!A1:J40 has to grow and cannot\. Risk!A41 is in the way/,
+      ) as string,
+    })
+    expect(await valuesAt('Risk', below)).toEqual([['mine']])
+    expect(await valuesAt('Risk', 'A10')).toEqual([['Index hedge']])
+    await state.offers[0]?.accept()
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+    expect(await valuesAt('Risk', 'A10')).toEqual([['Timber']])
   })
 
   test('written elsewhere, the earlier table stays as it is and no longer follows', async () => {

@@ -301,7 +301,9 @@ describe('A write is refused, with nothing changed,', () => {
       user.type('Sheet1', 'B6', '=""')
     })
     expect(fault.code).toBe('occupied')
-    expect(fault.message).toMatch(/^Sheet1!C4 and 1 more cells? in the way/)
+    expect(fault.message).toMatch(
+      /^Sheet1!C4 is in the way of the table: it holds “.+”, and 1 more cell holds something/,
+    )
   })
 
   test('over a cell that is not ours beside the earlier table', async () => {
