@@ -1,0 +1,101 @@
+import { Fault } from '../../../src/core'
+import type { CellValue } from '../../../src/sheet'
+import { DEFAULT_SETTINGS, matchHoldings, modelOf, readHoldings, readReturns } from '../../../src/sheet'
+import { groupsOf } from '../../../src/sheet/names'
+import { blockOf, ENGLISH } from './blocks-of-cells'
+
+// Every block here is typed for its test.
+
+const found = { content: null, orientation: null, returnKind: 'simple' } as const
+const holdingsOf = (rows: CellValue[][]) => readHoldings(blockOf(rows), { roles: {}, capital: null }, ENGLISH)
+const returnsOf = (rows: CellValue[][]) => readReturns(blockOf(rows, 'Returns'), found, ENGLISH)
+const held = (...names: string[]) =>
+  holdingsOf([['Holding', 'Weight'], ...names.map((name) => [name, 1 / names.length])])
+const series = (...names: string[]) =>
+  returnsOf([names, ...[0.01, -0.02, 0.015, -0.005].map((r, t) => names.map((_, i) => r * (1 + i * t)))])
+const told = (
+  match: { findings: readonly { sentence: string; weight: string }[] },
+  weight: string,
+): string[] => match.findings.filter((finding) => finding.weight === weight).map(({ sentence }) => sentence)
+
+test('holdings find their series by name, wherever it stands', () => {
+  const match = matchHoldings(held('B', 'A'), series('A', 'B', 'C'), [])
+  expect([...match.seriesOf]).toEqual([1, 0])
+  expect(match.findings).toEqual([])
+})
+
+test('case and spacing do not part a holding from its series, and it is told', () => {
+  const match = matchHoldings(held('harbour  bonds', 'A'), series('A', 'Harbour bonds'), [])
+  expect([...match.seriesOf]).toEqual([1, 0])
+  expect(told(match, 'notes')).toEqual(['1 name matched but for case or spacing (first “harbour  bonds”).'])
+})
+
+test('a name like two series is not guessed at', () => {
+  const match = matchHoldings(held('BONDS'), series('Bonds', 'bonds'), [])
+  expect(told(match, 'stops')).toEqual([
+    'Book!B2: “BONDS” is like 2 series in Returns!A1:B5; one is needed: spell one of them alike.',
+  ])
+})
+
+test('two holdings cannot share a series', () => {
+  const match = matchHoldings(held('Bonds', 'bonds'), series('Bonds', 'Shares'), [])
+  expect(told(match, 'stops')).toEqual([
+    'Book!B3: “bonds” and “Bonds” both match the series “Bonds”; one holding a series is needed.',
+  ])
+})
+
+test('without names on one side, place decides, and only when the numbers are the same', () => {
+  const nameless = returnsOf([[0.01, 0.02], [-0.01, 0.01], [0.02, -0.03]]) // prettier-ignore
+  const match = matchHoldings(held('A', 'B'), nameless, [])
+  expect([...match.seriesOf]).toEqual([0, 1])
+  expect(told(match, 'warns')).toEqual([
+    'No names on the returns: holdings and series are matched by their place.',
+  ])
+  expect(told(matchHoldings(held('A', 'B', 'C'), nameless, []), 'stops')).toEqual([
+    'Returns!A1:B3: found 2 series for 3 holdings; without names on both sides as many are needed, in the same order.',
+  ])
+  expect([...matchHoldings(held('A', 'Cash', 'B'), nameless, ['Cash']).seriesOf]).toEqual([0, -1, 1])
+})
+
+test('a holding marked riskless has zero variance and needs no series', () => {
+  const holdings = held('A', 'Cash')
+  const returns = series('A', 'B')
+  const { model } = modelOf(matchHoldings(holdings, returns, ['cash']), holdings, returns, DEFAULT_SETTINGS)
+  expect(model.variances()[1]).toBe(0)
+  expect(model.variances()[0]).toBeGreaterThan(0)
+})
+
+test('a series that never moves counts as riskless, with a warning at its heading', () => {
+  const holdings = held('A', 'Cash')
+  const returns = returnsOf([['A', 'Cash'], [0.01, 0], [-0.02, 0], [0.03, 0]]) // prettier-ignore
+  const book = modelOf(matchHoldings(holdings, returns, []), holdings, returns, DEFAULT_SETTINGS)
+  expect(told(book, 'warns')).toEqual([
+    'Returns!B1: the returns of “Cash” never change, so it counts as riskless.',
+  ])
+})
+
+test('as many holdings as dates is warned of', () => {
+  const holdings = held('A', 'B', 'C', 'D', 'E')
+  const returns = series('A', 'B', 'C', 'D', 'E')
+  const book = modelOf(matchHoldings(holdings, returns, []), holdings, returns, DEFAULT_SETTINGS)
+  expect(told(book, 'warns')[0]).toMatch(
+    /^4 dates for 5 holdings: too few to tell all the correlations apart/,
+  )
+})
+
+test('a look-back by date wants dates, one longer than the data is told', () => {
+  const [holdings, returns] = [held('A', 'B'), series('A', 'B')]
+  const match = matchHoldings(holdings, returns, [])
+  const since = { ...DEFAULT_SETTINGS, lookBack: { kind: 'since', date: 46000 } } as const
+  expect(() => modelOf(match, holdings, returns, since)).toThrow(Fault)
+  const longer = { ...DEFAULT_SETTINGS, lookBack: { kind: 'last', dates: 99 } } as const
+  expect(told(modelOf(match, holdings, returns, longer), 'warns')[0]).toBe(
+    'The look-back of 99 dates reaches further than the 4 there are.',
+  )
+})
+
+test('groups are numbered as they come, alike but for case and spacing, blanks together', () => {
+  const { groupOf, labels } = groupsOf(['Shares', '', 'shares ', 'Bonds', null])
+  expect([...groupOf]).toEqual([0, 1, 0, 2, 1])
+  expect(labels).toEqual(['Shares', 'Unassigned', 'Bonds'])
+})
