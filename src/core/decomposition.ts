@@ -56,11 +56,12 @@ export interface Decomposition {
  * @example        decompose(matrixModel(Float64Array.of(.04, 0, 0, .01), 2), Float64Array.of(0, 0)).share // null
  */
 export function decompose(model: RiskModel, weights: Float64Array): Decomposition {
-  const { marginals, variance: computed } = model.apply(weights)
-  const deviations = deviationsOf(model)
   const columns = columnsOf(model.size)
-  const [standAlone, marginal, contribution, share, beta, correlation] = columns
+  const { variance: computed } = model.apply(weights, columns.marginal)
+  const { standAlone, marginal, contribution, share, beta, correlation } = columns
+  const { deviations, inverses } = deviationsOf(model)
   const gross = fillStandAlone(standAlone, weights, deviations)
+  columns.weights.set(weights)
   if (!Number.isFinite(computed) || !Number.isFinite(gross * gross)) {
     throw new Fault(
       'out-of-range',
@@ -71,7 +72,7 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
   if (computed <= model.rounding * gross * gross) {
     return {
       periodsPerYear: 1,
-      weights: weights.slice(),
+      weights: columns.weights,
       standAlone,
       volatility: 0,
       variance: 0,
@@ -88,10 +89,10 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
     }
   }
   const volatility = Math.sqrt(computed)
-  const { sumOfContributions, squares } = fillColumns(columns, weights, marginals, deviations, volatility)
+  const { sumOfContributions, squares } = fillColumns(columns, inverses, volatility)
   return {
     periodsPerYear: 1,
-    weights: weights.slice(),
+    weights: columns.weights,
     standAlone,
     volatility,
     variance: computed,
@@ -111,15 +112,22 @@ export function decompose(model: RiskModel, weights: Float64Array): Decompositio
 // Beside one pass over the block of returns, a callback for every number or an allocation for every column would show: the two
 // loops have functions of their own, columns share one allocation, and square roots are taken once a model.
 
-const deviationsByModel = new WeakMap<RiskModel, Float64Array>()
+interface Deviations {
+  /** sigma_i, the volatility of each position */
+  readonly deviations: Float64Array
+  /** 1 / sigma_i; NaN where sigma_i is 0 */
+  readonly inverses: Float64Array
+}
 
-/** sigma_i, the volatility of each position of a model. */
-function deviationsOf(model: RiskModel): Float64Array {
+const deviationsByModel = new WeakMap<RiskModel, Deviations>()
+
+function deviationsOf(model: RiskModel): Deviations {
   const known = deviationsByModel.get(model)
   if (known) return known
   const deviations = model.variances().map(Math.sqrt)
-  deviationsByModel.set(model, deviations)
-  return deviations
+  const made = { deviations, inverses: deviations.map((sigma) => (sigma === 0 ? NaN : 1 / sigma)) }
+  deviationsByModel.set(model, made)
+  return made
 }
 
 /** Fills the stand-alone risks and returns their sum. */
@@ -129,46 +137,48 @@ function fillStandAlone(standAlone: Float64Array, weights: Float64Array, deviati
   return gross
 }
 
+/** Fills the other columns; `marginal` holds C w on entry. */
 function fillColumns(
-  [, marginal, contribution, share, beta, correlation]: Columns,
-  weights: Float64Array,
-  marginals: Float64Array,
-  deviations: Float64Array,
+  { weights, marginal, contribution, share, beta, correlation }: Columns,
+  inverses: Float64Array,
   volatility: number,
 ) {
   const perUnit = 1 / volatility
   let sumOfContributions = 0
   let squares = 0
   for (let i = 0; i < weights.length; i++) {
-    const m = marginals[i]! * perUnit
+    const w = weights[i]!
+    const m = marginal[i]! * perUnit
     const b = m * perUnit
-    const c = weights[i]! * m
-    const p = weights[i]! * b
+    const c = w * m
+    const p = w * b
     marginal[i] = m
     contribution[i] = c
     share[i] = p
     beta[i] = b
-    correlation[i] = deviations[i] === 0 ? NaN : m / deviations[i]!
+    correlation[i] = m * inverses[i]!
     sumOfContributions += c
     squares += p * p
   }
   return { sumOfContributions, squares }
 }
 
-type Columns = readonly [
-  standAlone: Float64Array,
-  marginal: Float64Array,
-  contribution: Float64Array,
-  share: Float64Array,
-  beta: Float64Array,
-  correlation: Float64Array,
-]
-
-function columnsOf(size: number): Columns {
-  const { buffer } = new Float64Array(6 * size)
+/** Columns of a decomposition, n each, in one allocation. */
+function columnsOf(size: number) {
+  const { buffer } = new Float64Array(7 * size)
   const column = (k: number) => new Float64Array(buffer, k * size * 8, size)
-  return [column(0), column(1), column(2), column(3), column(4), column(5)]
+  return {
+    weights: column(0),
+    standAlone: column(1),
+    marginal: column(2),
+    contribution: column(3),
+    share: column(4),
+    beta: column(5),
+    correlation: column(6),
+  }
 }
+
+type Columns = ReturnType<typeof columnsOf>
 
 /**
  * The same figures scaled to a year by the square root of time; ratios (shares, betas, correlations) stay.

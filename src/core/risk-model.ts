@@ -16,9 +16,10 @@ export interface RiskModel {
   /**
    * C w and w'C w.
    *
+   * @param into   n; where C w goes, for whoever has room ready; left out: a new array
    * @throws Fault "shape" | "not-a-number" | "negative-variance"
    */
-  apply(weights: Float64Array): Applied
+  apply(weights: Float64Array, into?: Float64Array): Applied
   /** The diagonal of C; n, a copy. */
   variances(): Float64Array
   /** C in full; n x n row-major, a copy. Formed only when asked for: O(T n^2) for a returns model. */
@@ -129,7 +130,7 @@ export function returnsModel(
     correction,
     // y is a sum of n terms, each good to one rounding of its stand-alone volatility
     rounding: (size * Number.EPSILON) ** 2,
-    apply: (weights) => block.pass(checked(weights)),
+    apply: (weights, into) => block.pass(checked(weights), into),
     variances: () => variances.slice(),
     matrix: () => columnByColumn(variances, (weights) => block.pass(weights).marginals),
     centredRow: (date) => block.read(date),
@@ -246,9 +247,9 @@ export function matrixModel(matrix: Float64Array, size: number): RiskModel {
   return {
     size,
     rounding,
-    apply(weights) {
+    apply(weights, into) {
       checkBlock(weights, size, 1, 'weights')
-      const marginals = new Float64Array(size)
+      const marginals = into ?? new Float64Array(size)
       let variance = 0
       let gross = 0
       for (let i = 0, k = 0; i < size; i++) {

@@ -16,7 +16,7 @@ export interface Block {
   /** Row t as it was written; n, a copy. */
   read(date: number): Float64Array
   /** For weights w: y = Z w, g = Z'K y and v = y'K y, K = diag(k). Reads the block once; O(T n). */
-  pass(weights: Float64Array): Pass
+  pass(weights: Float64Array, marginalsInto?: Float64Array): Pass
   /** y of the same pass; T. */
   portfolio(weights: Float64Array): Float64Array
 }
@@ -103,9 +103,10 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
       for (let i = 0; i < size; i++) z[i] = numbers[start + (i >> 1) * 8 + (i & 1)]!
       return z
     },
-    pass: (weights) => {
+    pass: (weights, marginals = new Float64Array(size)) => {
       const variance = run(weights)
-      return { marginals: marginalsAt.slice(), variance }
+      marginals.set(marginalsAt)
+      return { marginals, variance }
     },
     portfolio: (weights) => {
       run(weights)
