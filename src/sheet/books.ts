@@ -2,14 +2,15 @@ import { Fault } from '../core'
 import type { Breakdown } from './breakdown'
 import type { Area, Culture } from './cells'
 import { addressOf, overlap } from './cells'
+import { explain } from './explain'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
-import type { Field, Status, Work } from './linked-book'
+import type { Cause, Field, Proposal, Status, Work } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
 import type { Json, Workbook, WorkbookEvent } from './workbook'
-import { listOf } from './wording'
+import { listOf, quote } from './wording'
 
 /** A long action under way; share is 0 to 1, or null while there is nothing to measure it by. */
 export interface Working {
@@ -69,9 +70,14 @@ export interface Books {
 /** Edits that come in quick succession are one refresh. */
 const SETTLING_MS = 120
 
+/** Where several causes are due at once, the first of these does what the others would, or must keep them from it. */
+const CAUSES: readonly Cause[] = ['compute', 'edit', 'look', 'calculation']
+
 /**
  * Opens the books a workbook holds: puts right what an interrupted write left, reads what is linked, and follows the workbook from
  * then on. Commands and refreshes run one after another.
+ *
+ * @throws Fault where the workbook cannot be asked for its books: going on without them would write over their links
  */
 export async function openBooks(workbook: Workbook): Promise<Books> {
   const books = new OpenBooks(workbook)
@@ -88,8 +94,9 @@ class OpenBooks implements Books {
   readonly #listeners = new Set<() => void>()
   #working: Working | null = null
   #notice: string | null = null
+  #waiting = false
   #queue: Promise<void> = Promise.resolve()
-  readonly #due = new Map<LinkedBook, 'edit' | 'calculation'>()
+  readonly #due = new Map<LinkedBook, Cause>()
   #timer: ReturnType<typeof setTimeout> | null = null
   #unwatch: (() => Promise<void>) | null = null
 
@@ -98,28 +105,30 @@ class OpenBooks implements Books {
   }
 
   async open(): Promise<void> {
-    await this.#enqueue(null, async () => {
-      const recovery = await this.#workbook.recover()
-      if (recovery)
-        this.#notice =
-          recovery.outcome === 'restored'
-            ? `A write was cut short the last time; ${listOf(recovery.areas.map(addressOf))} stands as it was before.`
-            : `A write was cut short the last time and could not be undone yet: ${listOf(recovery.areas.map(addressOf))} may be half written.`
-      this.#culture = await this.#workbook.culture()
-      const saved = await this.#workbook.recall()
-      const ids = Object.keys(saved)
-        .flatMap((key) => /^book\.(\d+)$/.exec(key)?.[1] ?? [])
-        .sort((a, b) => Number(a) - Number(b))
-      this.#books = ids.map((id) => this.#newBook(id, saved[`book.${id}`]))
-      this.#unwatch = await this.#workbook.watch((event) => {
-        this.#heed(event)
-      })
+    const recovery = await this.#workbook.recover()
+    const notices: string[] = []
+    if (recovery)
+      notices.push(
+        recovery.outcome === 'restored'
+          ? `A write was cut short the last time; ${listOf(recovery.areas.map(addressOf))} stands as it was before.`
+          : `A write was cut short the last time and could not be undone yet: ${listOf(recovery.areas.map(addressOf))} may be half written.`,
+      )
+    this.#culture = await this.#workbook.culture()
+    const saved = await this.#workbook.recall()
+    const ids = Object.keys(saved)
+      .flatMap((key) => /^book\.(\d+)$/.exec(key)?.[1] ?? [])
+      .sort((a, b) => Number(a) - Number(b))
+    this.#books = ids.map((id) => this.#newBook(id, saved[`book.${id}`]))
+    this.#unwatch = await this.#workbook.watch((event) => {
+      this.#heed(event)
     })
     if (this.#books.length === 0) this.#books = [this.#newBook('1')]
     this.#current = this.#books[0]?.id ?? '1'
+    notices.push(...this.#books.flatMap(({ unread }) => unread ?? []))
+    if (notices.length > 0) this.#notice = notices.join(' ')
     this.#publish()
     for (const book of this.#books)
-      if (book.linked) await this.#enqueue(book, (work) => book.refresh('open', work))
+      if (book.linked) await this.#enqueue(book, (work) => book.refresh('look', work))
   }
 
   async close(): Promise<void> {
@@ -174,16 +183,15 @@ class OpenBooks implements Books {
       offers: book.proposals.map((proposal) => ({
         sentence: proposal.sentence,
         button: proposal.button,
-        accept: () => {
-          book.settle(proposal, false)
-          return this.#enqueue(book, (work) => proposal.accept(work))
-        },
+        accept: () => this.#accept(book, proposal),
         decline: () => {
           book.settle(proposal, true)
           this.#publish()
         },
       })),
-      notice: this.#notice,
+      notice: this.#waiting
+        ? 'Waiting for the workbook. If a cell is being edited, finish it with Enter or Escape.'
+        : this.#notice,
     }
   }
 
@@ -237,7 +245,7 @@ class OpenBooks implements Books {
     }
     if (error.code === 'cancelled') {
       this.#notice = 'Cancelled; nothing was changed.'
-      if (book.status.kind === 'up to date')
+      if (book.status.kind === 'up to date' || (book.linked && book.status.kind === 'nothing linked'))
         book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
       return
     }
@@ -253,21 +261,16 @@ class OpenBooks implements Books {
 
   #heed(event: WorkbookEvent): void {
     if (event.kind === 'waiting') {
-      this.#notice = event.waiting
-        ? 'Waiting for the workbook. If a cell is being edited, finish it with Enter or Escape.'
-        : null
+      this.#waiting = event.waiting
       this.#publish()
       return
     }
     if (event.kind === 'selected' || (event.kind === 'edited' && event.ours)) return
     for (const book of this.#books) {
-      if (event.kind === 'calculated') {
-        if (book.heedCalculation(event.sheet) && !this.#due.has(book)) this.#due.set(book, 'calculation')
-      } else if (
-        event.kind === 'edited' ? book.heedEdit(event.area, event.sheet) : book.heedMove(event.sheet)
-      ) {
-        if (book.linked) this.#due.set(book, 'edit')
-      }
+      const cause = causeOf(event, book)
+      if (cause === null || !book.linked) continue
+      const due = this.#due.get(book)
+      if (due === undefined || CAUSES.indexOf(cause) < CAUSES.indexOf(due)) this.#due.set(book, cause)
     }
     this.#publish()
     if (this.#due.size === 0) return
@@ -276,7 +279,11 @@ class OpenBooks implements Books {
       this.#timer = null
       const due = [...this.#due]
       this.#due.clear()
-      for (const [book, cause] of due) void this.#enqueue(book, (work) => book.refresh(cause, work))
+      for (const [book, cause] of due)
+        void this.#enqueue(book, async (work) => {
+          // it may have been removed, or given other blocks, while this waited its turn
+          if (book.linked && this.#books.includes(book)) await book.refresh(cause, work)
+        })
     }, SETTLING_MS)
   }
 
@@ -289,15 +296,36 @@ class OpenBooks implements Books {
     return this.#enqueue(
       book,
       async (work) => {
-        if (field) {
-          const { [field]: answered, ...others } = book.faults
-          void answered
-          book.faults = others
-        }
+        if (field) dropFault(book, field)
         await action(book, work)
       },
       field,
     )
+  }
+
+  #accept(book: LinkedBook, proposal: Proposal): Promise<void> {
+    book.settle(proposal, false)
+    return this.#enqueue(
+      book,
+      async (work) => {
+        dropFault(book, proposal.field)
+        await proposal.accept(work)
+        const parted = await this.#partTables(book)
+        if (parted !== '') this.#notice = parted
+      },
+      proposal.field,
+    )
+  }
+
+  /** Two books that wrote to the same cells would undo each other's table at every edit: the one written over lets go of it. */
+  async #partTables(book: LinkedBook): Promise<string> {
+    const parted: string[] = []
+    for (const other of this.#books) {
+      if (other === book || !book.table || !other.table || !overlap(other.table, book.table)) continue
+      await other.releaseTable()
+      parted.push(`The table of ${quote(other.title)} was written over and no longer follows its book.`)
+    }
+    return parted.join(' ')
   }
 
   takeSelection(field: 'holdings' | 'returns' | 'capital'): Promise<void> {
@@ -341,19 +369,28 @@ class OpenBooks implements Books {
   }
 
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void> {
-    return this.#command('table', async (book) => {
+    return this.#command('table', async (book, work) => {
       const earlier = book.table
-      const area = await book.writeTable(where.kind)
+      const area = await book.writeTable(where.kind, work)
       const left =
         earlier && !overlap(earlier, area)
           ? ` The earlier one in ${addressOf(earlier)} stays as it is and no longer follows.`
           : ''
-      this.#notice = `Table written to ${addressOf(area)}. It follows the weights.${left}`
+      const parted = await this.#partTables(book)
+      this.#notice = `Table written to ${addressOf(area)}. It follows the weights.${left} ${parted}`.trim()
     })
   }
 
   reveal(area: Area): Promise<void> {
-    return this.#command(undefined, () => this.#workbook.reveal(area))
+    // no command on the book: its questions stay, and a place that is gone says nothing about its figures
+    return this.#enqueue(this.#book, async () => {
+      try {
+        await this.#workbook.reveal(area)
+      } catch (fault) {
+        if (!(fault instanceof Fault)) throw fault
+        this.#notice = explain(fault)
+      }
+    })
   }
 
   addBook(): Promise<void> {
@@ -375,12 +412,33 @@ class OpenBooks implements Books {
 
   removeBook(): Promise<void> {
     return this.#command(undefined, async (book) => {
-      if (book.linked) await this.#workbook.write(book.forget())
+      if (book.kept) await this.#workbook.write(book.forget())
       this.#books = this.#books.filter((other) => other !== book)
       this.#current = this.#book.id
       this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.`
     })
   }
+}
+
+/** How a book has to look again at its sheet after an event, if at all. */
+function causeOf(event: WorkbookEvent, book: LinkedBook): Cause | null {
+  switch (event.kind) {
+    case 'calculated':
+      return book.heedCalculation(event.sheet) ? 'calculation' : null
+    case 'edited':
+      return book.heedEdit(event.area, event.sheet)
+    case 'moved':
+    case 'sheet-removed':
+      return book.heedMove(event.sheet) ? 'edit' : null
+    default:
+      return null
+  }
+}
+
+function dropFault(book: LinkedBook, field: Field): void {
+  const { [field]: answered, ...others } = book.faults
+  void answered
+  book.faults = others
 }
 
 /** The field of the pane a fault belongs to, where its argument names one. */

@@ -99,10 +99,12 @@ async function moreOf(
   const found: string[] = []
   const days = dates ? (await valuesOf(dateCells)).map((value) => dateInCell(value, culture)) : []
   if (days.includes(null)) return null
-  if (days.length > 0)
-    found.push(
-      `${countOf(days.length, 'newer date')} to ${dateText(Math.max(...days.map((day) => day ?? 0)))}`,
-    )
+  if (days.length > 0) {
+    const newest = dates?.at(-1) ?? -Infinity
+    const kind = days.every((day) => day !== null && day > newest) ? 'newer date' : 'further date'
+    const last = days.reduce((latest: number, day) => Math.max(latest, day ?? 0), 0)
+    found.push(`${countOf(days.length, kind)} to ${dateText(last)}`)
+  }
   const names = await valuesOf(nameCells)
   if (names.some((value) => typeof value !== 'string' || isBlank(value))) return null
   if (names.length > 0)

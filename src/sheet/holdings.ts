@@ -204,7 +204,8 @@ export function readHoldings(
     const suggestion = proposed[k] ?? 'ignore'
     return {
       header,
-      role: settings.roles[header] ?? suggestion,
+      // a heading may be a word that every object knows, such as "constructor"
+      role: (Object.hasOwn(settings.roles, header) ? settings.roles[header] : null) ?? suggestion,
       proposed: suggestion,
       sample: sampleOf(byColumn[k] ?? []),
     }

@@ -36,6 +36,8 @@ export type Status =
 export interface Proposal {
   /** the same question is not asked twice */
   readonly key: string
+  /** where a fault met on the way belongs; an earlier one there is answered */
+  readonly field: Field
   readonly sentence: string
   readonly button: string
   readonly accept: (work: Work) => Promise<void>
@@ -48,6 +50,9 @@ export interface Work {
 }
 
 type Part = 'holdings' | 'returns' | 'table' | 'capital'
+
+/** Why a book looks at its sheet again; 'look' writes nothing: at opening, and when the user has edited the written table. */
+export type Cause = 'edit' | 'look' | 'calculation' | 'compute'
 
 /** Refreshes that follow recalculations alone, without an edit by the user, before the book takes itself for its own cause. */
 const MOST_UNASKED_REFRESHES = 3
@@ -87,17 +92,28 @@ export class LinkedBook {
   proposals: readonly Proposal[] = []
   /** whether names in the workbook hold the ranges, so that they follow inserted rows and survive a save */
   linked = false
+  /** whether the workbook keeps anything of this book: names or settings, of an earlier link too */
+  kept = false
+  /** what of its saved settings could not be read, as a sentence */
+  readonly unread: string | null
 
   #holdingsBlock: Block | null = null
   #weightsAreFormulas = false
   #returnsAreFormulas = false
   #capitalArea: Area | null = null
+  #capitalIsFormula = false
+  /** the status that only a table left behind has caused: the figures are good, and writing it ends it */
+  #tableStatus: Status | null = null
+  /** counts the user's edits to the blocks, so that figures read before one are not called up to date after it */
+  #edits = 0
+  /** the returns block being read, whose edits count although it is not known yet */
+  #reading: Area | null = null
   #model: { match: Match; returns: ReturnsReading; choices: string; book: BookModel } | null = null
   #written: Table | null = null
   #unasked = 0
   readonly #asked = new Set<string>()
   /** what has changed in the sheet since it was read */
-  readonly #changed = { holdings: false, returns: false, since: null as Area | null }
+  readonly #changed = { holdings: false, returns: false }
 
   constructor(
     readonly id: string,
@@ -108,14 +124,15 @@ export class LinkedBook {
     const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
     this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
     this.linked = entry !== null
+    this.kept = this.linked
     const { settings, unread } = entry
       ? settingsFromJson(entry.settings as Json)
       : { settings: DEFAULT_SETTINGS, unread: [] }
     this.settings = settings
-    if (unread.length > 0)
-      this.faults = {
-        holdings: `Settings saved with this workbook could not be read and stand at their defaults: ${listOf(unread)}.`,
-      }
+    this.unread =
+      unread.length > 0
+        ? `${this.title}: settings saved with this workbook could not be read and stand at their defaults: ${listOf(unread)}.`
+        : null
   }
 
   /** What is saved with the workbook about this book. */
@@ -129,26 +146,27 @@ export class LinkedBook {
 
   // ---- what the sheet's events mean
 
-  /** Notes an edit; tells whether it concerns this book and so calls for a refresh. */
-  heedEdit(area: Area | null, sheet: string): boolean {
+  /** Notes an edit by the user; tells how this book has to look again, if it concerns it. */
+  heedEdit(area: Area | null, sheet: string): Cause | null {
     const touches = (part: Area | null | undefined): boolean =>
       part !== null && part !== undefined && (area ? overlap(area, part) !== null : part.sheet === sheet)
+    // any edit may be what the next recalculation comes from
+    this.#unasked = 0
     const holdings = touches(this.holdings?.area) || touches(this.#capitalArea)
-    const returns = touches(this.returns?.area)
+    const returns = touches(this.returns?.area) || touches(this.#reading)
     const beside =
       area !== null &&
       this.linked &&
       (this.#isJustBeyond(this.holdings?.area, area) || this.#isJustBeyond(this.returns?.area, area))
     if (holdings) this.#changed.holdings = true
     if (returns) this.#changed.returns = true
-    if (!holdings && !returns) return beside
-    this.#unasked = 0
-    this.#changed.since ??= area
+    if (!holdings && !returns) return beside ? 'edit' : touches(this.table) ? 'look' : null
+    this.#edits++
     if (this.breakdown) {
       const place = area ? addressOf(area) : sheet
       this.status = { kind: 'stale', since: area, sentence: `Stale since ${place} was edited.` }
     }
-    return true
+    return 'edit'
   }
 
   #isJustBeyond(part: Area | undefined, area: Area): boolean {
@@ -161,13 +179,16 @@ export class LinkedBook {
   heedCalculation(sheet: string): boolean {
     if (!this.linked || !this.breakdown || this.#unasked > MOST_UNASKED_REFRESHES) return false
     const weights = this.#weightsAreFormulas && this.holdings?.area.sheet === sheet
+    const capital = this.#capitalIsFormula && this.#capitalArea?.sheet === sheet
     const returns = this.#returnsAreFormulas && this.returns?.area.sheet === sheet
     if (returns) this.#changed.returns = true
-    return weights || returns
+    return weights || capital || returns
   }
 
-  /** Rows, columns or a sheet came or went: everything has to be looked at again. */
+  /** Cells, rows, columns or a sheet came, went or got another name: everything has to be looked at again. */
   heedMove(sheet: string): boolean {
+    // cells that close a gap leave the block where it was, with other numbers in it
+    if (this.returns?.area.sheet === sheet || this.#reading?.sheet === sheet) this.#changed.returns = true
     const parts = [this.holdings?.area, this.returns?.area, this.table, this.#capitalArea]
     return this.linked && parts.some((part) => part?.sheet === sheet)
   }
@@ -183,6 +204,7 @@ export class LinkedBook {
       if (region && region.rows * region.columns > 1)
         this.#propose({
           key: `${part} ${addressOf(region)}`,
+          field: part,
           sentence: `Use the filled cells around it, ${addressOf(region)}, as the ${part}?`,
           button: 'Use them',
           accept: (later) => this.take(part, region, later),
@@ -209,22 +231,31 @@ export class LinkedBook {
   }
 
   async #takeCapital(area: Area, work: Work): Promise<void> {
-    const block = await this.workbook.read(area, { signal: work.signal })
-    const value = block.values[0]?.[0] ?? ''
-    const capital = numberInCell(value, this.culture)
-    if (area.rows * area.columns !== 1 || capital === null || capital <= 0)
+    const isOne = area.rows * area.columns === 1
+    const value = isOne ? (await this.workbook.read(area, { signal: work.signal })).values[0]?.[0] : ''
+    const capital = numberInCell(value ?? '', this.culture)
+    if (!isOne || capital === null || capital <= 0)
       throw new Fault(
         'selection',
-        area.rows * area.columns !== 1
-          ? `found ${countOf(area.rows * area.columns, 'cell')}`
-          : `found ${isBlank(value) ? 'a blank' : quote(value)}`,
+        isOne
+          ? `found ${isBlank(value) ? 'a blank' : quote(value)}`
+          : `found ${countOf(area.rows * area.columns, 'cell')}`,
         'one cell with a number above 0 is needed',
         { argument: 'capital' },
       )
-    this.#capitalArea = area
+    await this.#chooseCapital(capital, area, work)
+  }
+
+  /** Takes a figure of capital and the cell it is followed in, or null where it stands by itself. */
+  async #chooseCapital(capital: number | null, area: Area | null, work: Work): Promise<void> {
     this.settings = { ...this.settings, capital }
-    if (this.linked) await this.workbook.write({ patches: [], keep: { [this.keptName('capital')]: area } })
+    this.#capitalArea = area
     this.#readHoldings()
+    if (this.holdings) this.#settle('holdings')
+    if (this.linked) {
+      await this.#save({ [this.keptName('capital')]: area })
+      await this.refresh('compute', work)
+    } else if (this.breakdown) this.#compute()
   }
 
   #readHoldings(): void {
@@ -239,15 +270,24 @@ export class LinkedBook {
   }
 
   async #readReturns(area: Area, work: Work): Promise<void> {
-    const block = await this.workbook.read(area, {
-      shape: true,
-      signal: work.signal,
-      progress: (share) => {
-        work.progress('Reading the returns', share)
-      },
-    })
+    // what is edited from now on may miss the reading
     this.#changed.returns = false
-    this.returns = readReturns(block, this.settings, this.culture)
+    this.#reading = area
+    try {
+      const block = await this.workbook.read(area, {
+        shape: true,
+        signal: work.signal,
+        progress: (share) => {
+          work.progress('Reading the returns', share)
+        },
+      })
+      this.returns = readReturns(block, this.settings, this.culture)
+    } catch (fault) {
+      this.#changed.returns = true
+      throw fault
+    } finally {
+      this.#reading = null
+    }
     this.#match()
     // formulas are looked for along the newest and the oldest row only: a block is filled one way
     const row = (k: number): Area => ({ ...area, row: area.row + k, rows: 1 })
@@ -280,10 +320,10 @@ export class LinkedBook {
 
   /** Applies a change of settings; what it makes necessary is done at the next compute or refresh. */
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
+    if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
     this.settings = { ...this.settings, ...change }
-    if ('capital' in change && change.capital === null) this.#capitalArea = null
     if ('riskless' in change) this.#match()
-    if ('roles' in change || 'capital' in change) {
+    if ('roles' in change) {
       this.#readHoldings()
       if (this.holdings) this.#settle('holdings')
     }
@@ -375,24 +415,34 @@ export class LinkedBook {
       ...(keep ? { keep } : {}),
       remember: { [`book.${this.id}`]: this.toJson() },
     })
+    this.kept = true
   }
 
   /**
    * Looks at the sheet again in one request, reads anew what has changed, recomputes, and rewrites the table in one request when its
    * values differ.
    *
-   * @param cause 'edit' by the user, 'calculation' of formulas, 'open' (nothing is written), 'compute' on the user's word
+   * @param cause 'edit' by the user, 'calculation' of formulas, 'look' (nothing is written), 'compute' on the user's word
    */
-  async refresh(cause: 'edit' | 'calculation' | 'open' | 'compute', work: Work): Promise<void> {
+  async refresh(cause: Cause, work: Work): Promise<void> {
+    if (cause === 'compute') this.#unasked = 0
+    const edits = this.#edits
     const kept = (part: Part): { at: Area | { kept: string } } => ({ at: { kept: this.keptName(part) } })
     const [holdings, returns, table, capital] = await this.workbook.look([
       { ...kept('holdings'), values: true, shape: true, formulas: true, region: true },
       { ...kept('returns'), region: true },
       { ...kept('table'), formulas: true },
-      { ...kept('capital'), values: true },
+      { ...kept('capital'), values: true, formulas: true },
     ])
     if (!holdings) throw goneFault('holdings')
     if (!returns) throw goneFault('returns')
+    if (!capital && this.#capitalArea)
+      throw new Fault(
+        'missing',
+        `the cell of the capital, ${addressOf(this.#capitalArea)}, is gone`,
+        'point at another cell or type the capital',
+        { argument: 'capital' },
+      )
 
     const before = this.#holdingsBlock
     this.#weightsAreFormulas = holdings.formulas?.some((cells) => cells.some(isFormula)) ?? false
@@ -411,6 +461,7 @@ export class LinkedBook {
       this.settings = { ...this.settings, capital: capitalValue }
     }
     this.#capitalArea = capital?.area ?? null
+    this.#capitalIsFormula = capital?.formulas?.some((cells) => cells.some(isFormula)) ?? false
     const sameHoldings =
       before !== null &&
       sameArea(before.area, holdings.area) &&
@@ -439,14 +490,15 @@ export class LinkedBook {
     if (!sameReturns) await this.#readReturns(returns.area, work)
     this.table = table?.area ?? null
     this.#compute()
-    this.#changed.since = null
-    this.status = { kind: 'up to date' }
-    if (table) await this.#bringTableAlong(table, cause)
+    this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
+    // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
+    if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
     await this.#lookBeyond(holdings, returns)
   }
 
-  async #bringTableAlong(seen: Seen, cause: 'edit' | 'calculation' | 'open' | 'compute'): Promise<void> {
-    if (!this.breakdown) return
+  /** @returns what keeps the table behind the figures, or null */
+  async #bringTableAlong(seen: Seen, cause: Cause): Promise<Status | null> {
+    if (!this.breakdown) return null
     const table = breakdownTable(this.title, this.breakdown)
     const fits = seen.area.rows === table.cells.length && seen.area.columns === table.widths.length
     if (
@@ -457,27 +509,27 @@ export class LinkedBook {
       )
     ) {
       this.#written = table
-      return
+      return null
     }
-    if (cause === 'open') {
-      this.status = {
+    if (cause === 'look')
+      return {
         kind: 'stale',
         since: seen.area,
         sentence: `The table in ${addressOf(seen.area)} differs from the figures computed now. Compute brings it up to date.`,
       }
-      return
-    }
     const known = fits && this.#written !== null && sameFormats(this.#written, table)
     try {
       await this.#writeAt(seen.area, table, 'blank', {
         ours: seen.area,
         ...(known && seen.formulas ? { seen: seen.formulas } : {}),
       })
+      return null
     } catch (fault) {
-      if (!(fault instanceof Fault && fault.code === 'occupied')) throw fault
-      this.#proposeOver('where it was', seen.area, table)
+      if (!(fault instanceof Fault)) throw fault
       this.faults = { ...this.faults, table: explain(fault) }
-      this.status = {
+      if (fault.code !== 'occupied') return { kind: 'failed', sentence: explain(fault), area: seen.area }
+      this.#proposeOver('where it was', seen.area, table)
+      return {
         kind: 'stale',
         since: seen.area,
         sentence: `The table in ${addressOf(seen.area)} has to grow and cannot. ${explain(fault)}`,
@@ -487,14 +539,16 @@ export class LinkedBook {
 
   // ---- writing
 
-  /** Writes the table to a new sheet, at the selection, or where it was. */
+  /** Writes the table to a new sheet, at the selection, or where it was; figures that are behind the sheet are computed first. */
   async writeTable(
     where: 'new sheet' | 'selection' | 'where it was',
+    work: Work,
     over: 'blank' | 'replace' = 'blank',
     at?: Area,
   ): Promise<Area> {
     if (!this.breakdown)
       throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'table' })
+    if (this.status.kind !== 'up to date' && this.status !== this.#tableStatus) await this.compute(work)
     const table = breakdownTable(this.title, this.breakdown)
     const target = at ?? (await this.#targetOf(where))
     // an earlier table that the new one meets gives way to it; one that lies elsewhere stays, as figures of its time
@@ -510,11 +564,11 @@ export class LinkedBook {
   #proposeOver(where: 'new sheet' | 'selection' | 'where it was', target: Area, table: Table): void {
     this.#propose({
       key: `over ${addressOf(target)}`,
+      field: 'table',
       sentence: `Write over what stands in ${addressOf(areaOfTable(target, table))}?`,
       button: 'Write over it',
-      accept: async () => {
-        await this.writeTable(where, 'replace', target)
-        if (this.linked) this.status = { kind: 'up to date' }
+      accept: async (work) => {
+        await this.writeTable(where, work, 'replace', target)
       },
     })
   }
@@ -548,9 +602,20 @@ export class LinkedBook {
       patches: [{ at: area, table, over, ...ground }],
       ...(moved ? { keep: { [this.keptName('table')]: area } } : {}),
     })
+    this.kept = true
     this.table = area
     this.#written = table
+    // figures that only waited for their table are up to date with it
+    if (this.status === this.#tableStatus) this.status = { kind: 'up to date' }
+    this.#tableStatus = null
     return area
+  }
+
+  /** Lets go of a table that another book was written over. */
+  async releaseTable(): Promise<void> {
+    await this.workbook.write({ patches: [], keep: { [this.keptName('table')]: null } })
+    this.table = null
+    this.#written = null
   }
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
@@ -593,6 +658,7 @@ export class LinkedBook {
     for (const { part, wider, sentence } of growths)
       this.#propose({
         key: keyOf(wider),
+        field: part,
         sentence,
         button: 'Include',
         accept: (work) => this.#include(part, wider, work),

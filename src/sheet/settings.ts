@@ -76,11 +76,11 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
   const decay = positive(estimator.decay)
   const dates = positive(lookBack.dates)
   const date = positive(lookBack.date)
-  const roles: Record<string, Role> = {}
+  const roles: [string, Role][] = []
   for (const [header, role] of Object.entries(treeOf(saved.roles))) {
     const known = oneOf(role, ROLES)
     if (known === null) unread.push(`role of ${header}`)
-    else roles[header] = known
+    else roles.push([header, known])
   }
   const settings: Settings = {
     estimator:
@@ -108,10 +108,12 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     returnKind: read('returnKind', oneOf(saved.returnKind, ['simple', 'log'])) ?? 'simple',
     orientation: read('orientation', oneOf(saved.orientation, ['dates down', 'dates across'])),
     capital: read('capital', positive(saved.capital)),
-    riskless: Array.isArray(saved.riskless)
-      ? saved.riskless.filter((name): name is string => typeof name === 'string')
-      : [],
-    roles,
+    riskless:
+      read('riskless', Array.isArray(saved.riskless) ? saved.riskless : null)?.filter(
+        (name): name is string => typeof name === 'string',
+      ) ?? DEFAULT_SETTINGS.riskless,
+    // entry by entry: assigning to a heading such as "__proto__" would lose it
+    roles: Object.fromEntries(roles),
   }
   return { settings, unread }
 }

@@ -1,4 +1,4 @@
-import { DEFAULT_SETTINGS, type Settings } from '../../../src/sheet'
+import { DEFAULT_SETTINGS, type Role, type Settings } from '../../../src/sheet'
 import { settingsFromJson, settingsToJson } from '../../../src/sheet/settings'
 
 test('settings come back from a workbook as they were saved', () => {
@@ -31,4 +31,17 @@ test('what someone has spoilt falls back to its default and is named', () => {
 
 test.each([[null], ['text'], [[1, 2]], [7], [undefined]])('%j gives the defaults', (saved) => {
   expect(settingsFromJson(saved).settings).toEqual(DEFAULT_SETTINGS)
+})
+
+test('roles survive whatever their heading is called', () => {
+  const roles = JSON.parse('{ "__proto__": "weight", "constructor": "name" }') as Record<string, Role>
+  const { settings } = settingsFromJson(settingsToJson({ ...DEFAULT_SETTINGS, roles }))
+  expect(Object.entries(settings.roles)).toEqual([
+    ['__proto__', 'weight'],
+    ['constructor', 'name'],
+  ])
+})
+
+test('riskless holdings that are no list are named as unread', () => {
+  expect(settingsFromJson({ riskless: 'Cash' }).unread).toEqual(['riskless'])
 })
