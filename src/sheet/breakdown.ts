@@ -5,7 +5,7 @@ import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
 import type { BookModel, Match } from './matching'
-import { groupsOf, UNASSIGNED } from './names'
+import { groupsOf, plainName, UNASSIGNED } from './names'
 import type { ReturnsReading } from './returns'
 import type { Settings } from './settings'
 import { countOf, dateText, listOf, numberText, percentText, quote } from './wording'
@@ -91,7 +91,7 @@ export function breakDown(
 
   const byGroup = holdings.groupHeaders.map((header, k): GroupSection => {
     const { groupOf, labels } = groupsOf(holdings.holdings.map(({ groups }) => groups[k]))
-    const unassigned = groupOf.filter((group) => labels[group] === UNASSIGNED).length
+    const unassigned = holdings.holdings.filter(({ groups }) => plainName(groups[k] ?? '') === '').length
     if (unassigned > 0)
       findings.push({
         weight: 'notes',

@@ -59,8 +59,11 @@ export function columnIndex(letters: string): number {
   return column - 1
 }
 
+/** Sheet names that stand in quotes because they would pass for a cell, a row or a column, in either notation. */
+const LIKE_A_REFERENCE = /^(?:[A-Za-z]{1,3}\d+|[Rr]\d*|[Cc]\d*|[Rr]\d*[Cc]\d*)$/
+
 const quoted = (sheet: string): string =>
-  /^[\p{L}_][\p{L}\p{N}_.]*$/u.test(sheet) && !/^[A-Za-z]{1,3}\d+$|^[Rr]\d*[Cc]\d*$/.test(sheet)
+  /^[\p{L}_][\p{L}\p{N}_.]*$/u.test(sheet) && !LIKE_A_REFERENCE.test(sheet)
     ? sheet
     : `'${sheet.replaceAll("'", "''")}'`
 

@@ -7,7 +7,7 @@ export const UNASSIGNED = 'Unassigned'
 
 /**
  * Numbers the groups in the order of their first member; labels that differ in case and spacing alone are one group, spelt as it
- * came first, and blank ones are together under "Unassigned".
+ * came first, and blank ones are together under "Unassigned", with those that are labelled so.
  */
 export function groupsOf(labels: readonly (string | null | undefined)[]): {
   readonly groupOf: Int32Array
@@ -16,8 +16,9 @@ export function groupsOf(labels: readonly (string | null | undefined)[]): {
   const shown: string[] = []
   const known = new Map<string, number>()
   const groupOf = Int32Array.from(labels, (label) => {
-    const key = plainName(label ?? '')
-    const group = known.get(key) ?? shown.push(key === '' ? UNASSIGNED : (label ?? '')) - 1
+    const typed = plainName(label ?? '') === '' ? UNASSIGNED : (label ?? '')
+    const key = plainName(typed)
+    const group = known.get(key) ?? shown.push(typed) - 1
     known.set(key, group)
     return group
   })

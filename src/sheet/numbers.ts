@@ -48,7 +48,10 @@ const MONTH_NAMES = ['jan', 'feb', 'mar', 'apr', 'may', 'jun', 'jul', 'aug', 'se
 function serialOf(year: number, month: number, day: number): number | null {
   const time = Date.UTC(year, month - 1, day)
   const date = new Date(time)
-  return date.getUTCMonth() === month - 1 && date.getUTCDate() === day ? time / 86400000 + 25569 : null
+  // a year below 100 would be taken for one of the twentieth century
+  return date.getUTCFullYear() === year && date.getUTCMonth() === month - 1 && date.getUTCDate() === day
+    ? time / 86400000 + 25569
+    : null
 }
 
 /**
@@ -72,8 +75,8 @@ export function dateFromText(text: string, culture: Culture): number | null {
   return null
 }
 
-/** The day in a cell: a whole number between 1 Jan 1920 and 31 Dec 2119, or text that reads as a date. */
+/** The day in a cell, with its time of day where it has one: a number from 1 Jan 1920 to 31 Dec 2119, or text that reads as a date. */
 export function dateInCell(value: CellValue, culture: Culture): number | null {
-  if (typeof value === 'number') return value >= 7306 && value < 80354 ? value : null
+  if (typeof value === 'number') return value >= 7306 && value < 80355 ? value : null
   return typeof value === 'string' ? dateFromText(value, culture) : null
 }

@@ -99,3 +99,9 @@ test('groups are numbered as they come, alike but for case and spacing, blanks t
   expect([...groupOf]).toEqual([0, 1, 0, 2, 1])
   expect(labels).toEqual(['Shares', 'Unassigned', 'Bonds'])
 })
+
+test('a label that says unassigned itself is one group with the blanks', () => {
+  const { groupOf, labels } = groupsOf(['', 'unassigned', 'Bonds'])
+  expect([...groupOf]).toEqual([0, 0, 1])
+  expect(labels).toEqual(['Unassigned', 'Bonds'])
+})

@@ -60,6 +60,7 @@ test.each([
   ['27.11.26', GERMAN],
   ['1.5', GERMAN],
   ['November', ENGLISH],
+  ['0050-01-01', ENGLISH],
 ] as const)('%s is none', (text, culture) => {
   expect(dateFromText(text, culture)).toBeNull()
 })
