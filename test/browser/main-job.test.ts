@@ -75,6 +75,25 @@ test('a weight typed in the grid moves pane and table by itself', async () => {
   expect(await desk.cell('Risk', 'G7')).toBeGreaterThan(Number(contribution))
 })
 
+test('two undos take back a typed weight and the table that followed it', async () => {
+  const { page } = desk
+  await desk.goTo('D5')
+  await desk.type('25%')
+  const inTable = (): Promise<unknown> => desk.cell('Risk', 'D7')
+  await until(inTable, (weight) => weight === 0.25, 'the new weight in the table')
+  await upToDate()
+  await page.keyboard.press('Control+z')
+  await until(inTable, (weight) => weight === 0.24, 'the table as it was')
+  await page.keyboard.press('Control+z')
+  await until(
+    () => desk.cell('Book', 'D5'),
+    (weight) => weight === 0.24,
+    'the weight as it was',
+  )
+  await upToDate()
+  expect(await inTable()).toBe(0.24)
+})
+
 test('a function typed into a cell spills beside the table it agrees with, and recalculates', async () => {
   await desk.sheet('Book')
   await desk.goTo('I5')

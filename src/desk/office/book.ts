@@ -162,8 +162,9 @@ export class Book {
     this.injector = grid.univer.__getInjector()
     this.commands = this.injector.get(ICommandService)
     this.#dirtying = this.injector.get(IActiveDirtyManagerService)
-    this.commands.beforeCommandExecuted(({ type }) => {
-      if (type === CommandType.COMMAND) this.endUndoStep()
+    this.commands.beforeCommandExecuted(({ id, type }) => {
+      // the text in the formula bar is a document of the grid's own, brought along after every change
+      if (type === CommandType.COMMAND && !id.startsWith('doc.')) this.endUndoStep()
     })
     this.commands.onCommandExecuted((command, options) => {
       if (this.#makesDirty(command, options)) this.#dirty = true
