@@ -5,7 +5,9 @@ import { offers, type Request, type Requests } from './requests'
 
 /** Names of worksheets by the ids events carry. */
 export interface SheetNames {
+  /** Notes a name; where the sheet had another one before, tells of that. */
   note(id: string, name: string): void
+  onRenamed(listener: (before: string) => void): void
   /** Reads all names anew, in the request given. */
   load(request: Request): Promise<void>
   of(id: string): string | undefined
@@ -14,14 +16,21 @@ export interface SheetNames {
 
 export function sheetNames(): SheetNames {
   const names = new Map<string, string>()
+  let tell: (before: string) => void = () => undefined
+  const note = (id: string, name: string): void => {
+    const before = names.get(id)
+    names.set(id, name)
+    if (before !== undefined && before !== name) tell(before)
+  }
   return {
-    note: (id, name) => void names.set(id, name),
+    note,
+    onRenamed: (listener) => void (tell = listener),
     of: (id) => names.get(id),
     forget: (id) => void names.delete(id),
     async load({ context, sync }) {
       const sheets = context.workbook.worksheets.load('items/id,items/name')
       await sync()
-      for (const { id, name } of sheets.items) names.set(id, name)
+      for (const { id, name } of sheets.items) note(id, name)
     },
   }
 }
@@ -77,7 +86,7 @@ export async function watch(
 
   /** Events wait in line behind one whose sheet is new to us: its name has to be asked for. */
   const withSheet = (id: string, tell: (sheet: string) => void): Promise<void> => {
-    turn = turn.then(async () => {
+    const told = turn.then(async () => {
       if (ended) return
       if (names.of(id) === undefined) {
         // the sheet may be gone again; then there is nothing to tell
@@ -86,7 +95,9 @@ export async function watch(
       const sheet = names.of(id)
       if (sheet !== undefined && !ended) tell(sheet)
     })
-    return turn
+    // an event that somebody failed to take is the host's to report; those behind it are told all the same
+    turn = told.catch(() => undefined)
+    return told
   }
 
   const changed = (args: Excel.WorksheetChangedEventArgs) =>
@@ -136,6 +147,10 @@ export async function watch(
     }
     await names.load(request)
     return added
+  })
+  // hosts before 1.17 do not announce it: there it comes out when the sheet is looked at next
+  names.onRenamed((before) => {
+    if (!ended) listener({ kind: 'moved', sheet: before })
   })
   const stopWaiting = requests.onWaiting((waiting) => listener({ kind: 'waiting', waiting }))
 

@@ -69,7 +69,7 @@ export interface WritePlan {
 export type WorkbookEvent =
   /** cells were edited; `area` is null when the host does not say which; `ours` marks an echo of our own write */
   | { readonly kind: 'edited'; readonly sheet: string; readonly area: Area | null; readonly ours: boolean }
-  /** rows, columns or cells were inserted or deleted */
+  /** rows, columns or cells were inserted or deleted, or the sheet has got another name: then told under the one it had */
   | { readonly kind: 'moved'; readonly sheet: string }
   | { readonly kind: 'calculated'; readonly sheet: string }
   | { readonly kind: 'sheet-removed'; readonly sheet: string }

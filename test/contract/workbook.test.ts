@@ -465,6 +465,27 @@ describe('The watch', () => {
     expect(edits).toEqual([true, false])
   })
 
+  test.each([
+    ['at once where the host announces it', true],
+    ['when the sheet is looked at next where it does not', false],
+  ])('tells that a sheet has got another name, under the one it had: %s', async (_, announced) => {
+    const opened = open()
+    const { requirements } = opened.office.Office.context
+    const supported = requirements.isSetSupported
+    Object.assign(requirements, {
+      isSetSupported: (set: string, version: string) =>
+        version === '1.17' ? announced : supported(set, version),
+    })
+    const events: WorkbookEvent[] = []
+    await opened.book.watch((event) => events.push(event))
+    opened.user.renameSheet('Sheet1', 'Spring')
+    await opened.settle()
+    const moved = () => events.filter(({ kind }) => kind === 'moved')
+    expect(moved()).toHaveLength(announced ? 1 : 0)
+    await opened.book.look([{ at: { sheet: 'Spring', row: 0, column: 0, rows: 1, columns: 1 } }])
+    expect(moved()).toEqual([{ kind: 'moved', sheet: 'Sheet1' }])
+  })
+
   test('tells moves, recalculation, selections, new and removed sheets by the sheet’s name', async () => {
     const { user, events, office, settle } = await watched()
     user.type('Sheet1', 'A1', [[1, '=A1*2']])

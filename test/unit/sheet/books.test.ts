@@ -116,6 +116,12 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     refused,
     tell,
     put,
+    renameSheet(before: string, after: string) {
+      sheets[after] = sheets[before] ?? []
+      delete sheets[before]
+      for (const [name, area] of names) if (area.sheet === before) names.set(name, { ...area, sheet: after })
+      tell({ kind: 'moved', sheet: before })
+    },
     select: (address: string) => void (selected = areaAt(address)),
     /** A user types a value. */
     type(address: string, value: CellValue) {
@@ -429,6 +435,21 @@ describe('The link', () => {
     await again.compute()
     expect(again.state().status).toEqual({ kind: 'up to date' })
   })
+})
+
+test('sheets that get other names are followed under them', async () => {
+  const { books, compute, renameSheet, type, quiet, volatility } = await desk()
+  await compute()
+  const before = volatility()
+  renameSheet('Book', 'Holdings 2026')
+  renameSheet('Returns', 'Weeks')
+  await quiet()
+  type("'Holdings 2026'!B2", 0.9)
+  expect((await quiet()).breakdown?.decomposition.weights[0]).toBe(0.9)
+  type('Weeks!A3', -0.2)
+  await quiet()
+  expect(volatility()).toBeGreaterThan(2 * before)
+  expect(books.state().holdings?.area.sheet).toBe('Holdings 2026')
 })
 
 describe('What the pane is told', () => {
