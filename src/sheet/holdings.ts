@@ -72,6 +72,9 @@ const SINGLE: ReadonlySet<Role> = new Set([
 const TOTAL_WORD = /^(grand |sub-?\s?|over-?all )?(totals?|sum)\b/i
 const TOTAL_ALONE = /^(grand |sub-?\s?|over-?all )?(totals?|sum)\s*:?$/i
 
+/** A weight or an amount of money, with as many decimals as tell it from its neighbours. */
+const plainText = (value: number): string => numberText(value, Math.abs(value) < 100 ? 4 : 2)
+
 /** Sums that a person or a sheet rounded still count as the sum. */
 const agrees = (shown: number, sum: number): boolean =>
   Math.abs(shown - sum) <= 1e-6 * Math.max(1, Math.abs(sum))
@@ -82,6 +85,12 @@ interface Layout {
   readonly firstRow: number
   readonly titleRows: number
 }
+
+/** So far down from where titles end headings are looked for. */
+const MOST_ROWS_ABOVE = 10
+
+const isKnownHeader = (value: CellValue): boolean =>
+  typeof value === 'string' && HEADER_SIGNS.some(([, sign]) => sign.test(value))
 
 /** Where titles end, whether there are headings and where the holdings begin. */
 function layoutOf(block: Block, culture: Culture): Layout {
@@ -104,12 +113,27 @@ function layoutOf(block: Block, culture: Culture): Layout {
     }
     break
   }
-  const cells = values[row] ?? []
-  const isHeading =
-    filled(cells) > 0 && cells.every((value) => numberInCell(value, culture) === null && !isCellError(value))
-  return isHeading && row + 1 < values.length
-    ? { headerRow: row, firstRow: row + 1, titleRows }
-    : { headerRow: -1, firstRow: row, titleRows }
+  const isHeading = (k: number): boolean => {
+    const cells = values[k] ?? []
+    return (
+      k + 1 < values.length &&
+      filled(cells) > 0 &&
+      cells.every((value) => numberInCell(value, culture) === null && !isCellError(value))
+    )
+  }
+  if (isHeading(row)) return { headerRow: row, firstRow: row + 1, titleRows }
+  // figures of their own, such as the capital, may stand above the headings; they fill no more cells than these
+  let above = 0
+  let widest = 0
+  for (let k = row; k < Math.min(values.length, row + MOST_ROWS_ABOVE); k++) {
+    const cells = values[k] ?? []
+    const width = filled(cells)
+    if (isHeading(k) && width >= widest && cells.filter(isKnownHeader).length > 1)
+      return { headerRow: k, firstRow: k + 1, titleRows: titleRows + above }
+    widest = Math.max(widest, width)
+    if (width > 0) above++
+  }
+  return { headerRow: -1, firstRow: row, titleRows }
 }
 
 function sampleOf(column: readonly CellValue[]): string {
@@ -311,7 +335,7 @@ export function readHoldings(
         if (!sums)
           find(
             'warns',
-            `${where(row, measureColumn)}: the total shows ${numberText(shown.value, 4)} while the holdings above it sum to ${numberText(whole, 4)}.`,
+            `${where(row, measureColumn)}: the total shows ${plainText(shown.value)} while the holdings above it sum to ${plainText(whole)}.`,
             at(row, measureColumn),
           )
         segment = 0
@@ -380,7 +404,7 @@ export function readHoldings(
       )
   }
 
-  const divisor =
+  const capital =
     weightColumn >= 0
       ? 1
       : capitalOf(
@@ -392,6 +416,9 @@ export function readHoldings(
           findings,
           at,
         )
+  // without the capital there are no weights to speak of, and a finding has said so
+  const isWeighed = capital !== null
+  const divisor = capital ?? 1
   const holdings: Holding[] = rows.map(({ row, name, measure, amount, benchmark, limit, expected }) => ({
     name,
     weight: measure / divisor,
@@ -437,7 +464,7 @@ export function readHoldings(
       `Weights sum to ${numberText(net, 2)}: do they stand in percent points? They are used as they stand, as multiples of capital.`,
       at(layout.firstRow, weightColumn),
     )
-  else if (rows.length > 0 && Math.abs(net - 1) > 1e-6)
+  else if (rows.length > 0 && isWeighed && Math.abs(net - 1) > 1e-6)
     find(
       'notes',
       `Weights sum to ${percentText(net, 2)} (gross ${percentText(gross, 2)}); they are used as they stand.`,
@@ -457,14 +484,14 @@ export function readHoldings(
     limitHeader: columns[columnOf('limit')]?.header ?? null,
     net,
     gross,
-    summary: `${countOf(holdings.length, 'holding')}, net ${percentText(net)}, gross ${percentText(gross)}${left.length > 0 ? `; ${listOf(left)} left out` : ''}`,
+    summary: `${countOf(holdings.length, 'holding')}, ${isWeighed ? `net ${percentText(net)}, gross ${percentText(gross)}` : 'weights unknown without the capital'}${left.length > 0 ? `; ${listOf(left)} left out` : ''}`,
     findings: byGravity(findings),
   }
 }
 
 /**
  * What amounts and exposures are divided by: the capital pointed at, else the sum of the amounts; tells when that sum cannot stand
- * for the capital.
+ * for the capital, and is null then.
  */
 function capitalOf(
   parts: readonly { readonly row: number; readonly part: number }[],
@@ -474,15 +501,15 @@ function capitalOf(
   column: number,
   findings: Finding[],
   at: (row: number, column: number) => Area,
-): number {
+): number | null {
   if (capital !== null || parts.length === 0) return capital ?? 1
-  const stop = (found: string, place: Area): number => {
+  const stop = (found: string, place: Area): null => {
     findings.push({
       weight: 'stops',
       sentence: `${addressOf(place)}: found ${found}; the capital figure is needed: point at its cell.`,
       area: place,
     })
-    return 1
+    return null
   }
   if (measure === 'exposure') return stop('exposures without amounts', area)
   const negative = parts.find(({ part }) => part < 0)

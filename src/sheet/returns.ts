@@ -228,7 +228,9 @@ export function readReturns(
           view.cell(row, 0),
         )
       }
-    const known = dated.map(({ row, day }) => ({ row, day: day ?? 0 }))
+    // a cell that holds no date counts as its neighbour's here, so that it does not upset order and span as well
+    let last = dated.find(({ day }) => day !== null)?.day ?? 0
+    const known = dated.map(({ row, day }) => ({ row, day: (last = day ?? last), isRead: day !== null }))
     const sorted = known.every(({ day }, k) => k === 0 || day >= (known[k - 1]?.day ?? 0))
     if (!sorted) {
       const reversed = known.every(({ day }, k) => k === 0 || day <= (known[k - 1]?.day ?? 0))
@@ -242,7 +244,9 @@ export function readReturns(
     }
     periods.splice(0, periods.length, ...known.map(({ row }) => row))
     dates = known.map(({ day }) => day)
-    const twice = known.findIndex(({ day }, k) => k > 0 && day !== 0 && day === known[k - 1]?.day)
+    const twice = known.findIndex(
+      ({ day, isRead }, k) => isRead && known[k - 1]?.isRead === true && day === known[k - 1]?.day,
+    )
     if (twice > 0) {
       const cell = view.cell(known[twice]?.row ?? 0, 0)
       find(
@@ -318,13 +322,6 @@ export function readReturns(
       else placeOf.set(name, i)
     })
   } else find('notes', 'No names found: series match the holdings by place.')
-  if (settings.orientation === null && !guess.certain && dates === null)
-    find(
-      'warns',
-      `Neither dates nor names tell which way the block lies; read with dates ${isAcross ? 'across' : 'down'}.`,
-    )
-  if (dates === null)
-    find('notes', `No dates found: the last ${isAcross ? 'column' : 'row'} counts as the newest.`)
 
   const content =
     settings.content ?? contentOf(values, rows, columns, dates === null, findings, view, periods, series)
@@ -339,7 +336,13 @@ export function readReturns(
       )
     kept = null
   } else {
+    if (settings.orientation === null && !guess.certain && dates === null)
+      find(
+        'warns',
+        `Neither dates nor names tell which way the block lies; read with dates ${isAcross ? 'across' : 'down'}.`,
+      )
     if (dates) frequency = frequencyOf(dates)
+    else find('notes', `No dates found: the last ${isAcross ? 'column' : 'row'} counts as the newest.`)
     if (content === 'prices') {
       const bad = values.findIndex((value) => value <= 0)
       if (bad >= 0) {
@@ -361,7 +364,13 @@ export function readReturns(
   }
   if (columns === 0 || rows === 0)
     find('stops', `${addressOf(area)}: found no numbers; returns, prices or a covariance matrix are needed.`)
-  if (gaps > 0)
+  if (gaps > 0 && content === 'covariance')
+    find(
+      'stops',
+      `${addressOf(firstGap ?? area)}: found a blank among the covariances; a number is needed in every cell.`,
+      firstGap,
+    )
+  else if (gaps > 0)
     find(
       'notes',
       `${countOf(gaps, 'blank cell')} among the ${content} (first in ${addressOf(firstGap ?? area)}): dates on which a holding has a gap are left out.`,

@@ -105,6 +105,25 @@ test('titles, totals, subtotals, headings within the block and blank rows are le
   ])
 })
 
+test('figures of their own above the headings are left out with the titles', () => {
+  const reading = read(
+    [
+      ['Our book', ''],
+      ['Capital', 2000],
+      ['', ''],
+      ['Fund', 'Market value'],
+      ['Northern shares', 1200],
+      ['Harbour bonds', 800],
+    ],
+    { roles: {}, capital: 2000 },
+  )
+  expect(reading.holdings.map(({ name, weight }) => [name, weight])).toEqual([
+    ['Northern shares', 0.6],
+    ['Harbour bonds', 0.4],
+  ])
+  expect(sentences(reading)).toEqual(['2 title rows above the headings left out.'])
+})
+
 test('a name that begins with Total is a holding unless its figure is the sum', () => {
   const reading = read([...PLAIN, ['Total return bonds', 0.1]])
   expect(reading.holdings.map(({ name }) => name)).toContain('Total return bonds')
@@ -206,6 +225,18 @@ test('amounts are divided by their sum while none is negative, else the capital 
   const pointed = read(rows, { roles: {}, capital: 5000 })
   expect(pointed.holdings.map(({ weight }) => weight)).toEqual([0.6, 0.2, -0.1])
   expect(sentences(pointed, 'stops')).toEqual([])
+})
+
+test('without the capital no weights are told', () => {
+  const reading = read([
+    ['Fund', 'Market value'],
+    ['Northern shares', 1200],
+    ['Index hedge', -200],
+  ])
+  expect(reading.summary).toBe('2 holdings, weights unknown without the capital')
+  expect(sentences(reading)).toEqual([
+    'Book!B3: found a negative amount, so that the sum is not the capital; the capital figure is needed: point at its cell.',
+  ])
 })
 
 test('an exposure takes the place of the amount for the weight', () => {

@@ -222,3 +222,25 @@ test('what the user says about the block holds', () => {
   expect(read(square, { ...found, content: 'returns' }).content).toBe('returns')
   expect(read(weeks(3), { ...found, orientation: 'dates across' }).orientation).toBe('dates across')
 })
+
+test('a cell that holds no date stops, and upsets neither order nor span', () => {
+  const rows = weeks(20)
+  rows[6] = ['soon', 0.01, 0.02]
+  const reading = read(rows)
+  expect(sentences(reading)).toEqual(['Returns!A7: found “soon”; a date is needed.'])
+  expect(reading.summary).toBe('20 weekly returns of 2 series, 17 Jul 2026 to 27 Nov 2026')
+})
+
+test('nothing is said of dates beside a covariance matrix, and a blank in one stops', () => {
+  const matrix: CellValue[][] = [
+    ['', 'A', 'B'],
+    ['A', 0.04, 0.01],
+    ['B', 0.01, 0.09],
+  ]
+  expect(sentences(read(matrix))).toEqual([])
+  const holed = matrix.map((row) => [...row])
+  holed[1] = ['A', 0.04, '']
+  expect(sentences(read(holed, { ...found, content: 'covariance' }))).toEqual([
+    'Returns!C2: found a blank among the covariances; a number is needed in every cell.',
+  ])
+})
