@@ -253,12 +253,13 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     const item = request.context.workbook.settings.getItemOrNullObject(JOURNAL_KEY).load('value')
     await request.sync()
     if (item.isNullObject) return null
-    const journal = item.value as Journal
-    const areas = [...journal.grounds.map(({ area }) => area), ...(journal.created?.filled ?? [])]
+    let areas: Area[] = []
     try {
+      // anyone may have edited it: what cannot be read as a journal is one that cannot be put back
+      const journal = item.value as Journal
+      areas = [...journal.grounds.map(({ area }) => area), ...(journal.created?.filled ?? [])]
       await restore(request, journal, expectEcho, true)
-    } catch (error) {
-      if (error instanceof Fault && error.code === 'editing') throw error
+    } catch {
       unsettled = true
       return { outcome: 'failed', areas }
     }

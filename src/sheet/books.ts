@@ -107,12 +107,14 @@ class OpenBooks implements Books {
   async open(): Promise<void> {
     const recovery = await this.#workbook.recover()
     const notices: string[] = []
-    if (recovery)
+    if (recovery) {
+      const where = recovery.areas.length > 0 ? listOf(recovery.areas.map(addressOf)) : 'this workbook'
       notices.push(
         recovery.outcome === 'restored'
-          ? `A write was cut short the last time; ${listOf(recovery.areas.map(addressOf))} stands as it was before.`
-          : `A write was cut short the last time and could not be undone yet: ${listOf(recovery.areas.map(addressOf))} may be half written.`,
+          ? `A write was cut short the last time; ${where} stands as it was before.`
+          : `A write was cut short the last time and could not be undone yet: ${where} may be half written.`,
       )
+    }
     this.#culture = await this.#workbook.culture()
     const saved = await this.#workbook.recall()
     const ids = Object.keys(saved)

@@ -582,10 +582,14 @@ export class LinkedBook {
         })
       return this.table
     }
-    const taken = new Set((await this.workbook.sheets()).map((name) => name.toLowerCase()))
-    let sheet = 'Risk'
-    for (let k = 2; taken.has(sheet.toLowerCase()); k++) sheet = `Risk ${k}`
-    return { sheet, row: 0, column: 0, rows: 1, columns: 1 }
+    const shown = new Set((await this.workbook.sheets()).map((name) => name.toLowerCase()))
+    for (let k = 1; ; k++) {
+      const corner: Area = { sheet: k === 1 ? 'Risk' : `Risk ${k}`, row: 0, column: 0, rows: 1, columns: 1 }
+      if (shown.has(corner.sheet.toLowerCase())) continue
+      // a hidden sheet has its name too, and a table on it would not be seen
+      const [hidden] = await this.workbook.look([{ at: corner }])
+      if (!hidden) return corner
+    }
   }
 
   async #writeAt(

@@ -17,7 +17,7 @@ export interface Want {
   readonly region?: boolean
 }
 
-/** What a look found; null stands for a kept range that is gone (its cells or its sheet were deleted). */
+/** What a look found; null stands for a kept range that is gone (its cells or its sheet were deleted) and for a sheet that is not there. */
 export interface Seen {
   readonly area: Area
   readonly values?: readonly (readonly CellValue[])[]

@@ -276,6 +276,12 @@ describe('After an interrupted write', () => {
     expect(portrait()).toEqual({ ...before, settings: { 'counterpoise.a': 1 } })
   })
 
+  test('a journal that somebody has spoilt counts as one that could not be put back', async () => {
+    const { office } = await interrupted()
+    office.settings.set('counterpoise.journal', 'spoilt')
+    expect(await excelWorkbook().recover()).toEqual({ outcome: 'failed', areas: [] })
+  })
+
   test('recovery passes over a sheet that was deleted', async () => {
     const { user, office } = await interrupted()
     await office.Excel.run(async (context) => {

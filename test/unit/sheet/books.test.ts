@@ -20,6 +20,7 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
   const listeners = new Set<(event: WorkbookEvent) => void>()
   const held = new Map<string, Promise<void>>()
   const refused = new Map<string, Fault>()
+  const hidden = new Set<string>()
   const calls: string[] = []
   let selected = areaAt('Book!A1')
 
@@ -88,7 +89,7 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     },
     recover: () => Promise.resolve(null),
     reveal: () => step('reveal'),
-    sheets: () => Promise.resolve(Object.keys(sheets)),
+    sheets: () => Promise.resolve(Object.keys(sheets).filter((name) => !hidden.has(name))),
     watch(listener) {
       listeners.add(listener)
       return Promise.resolve(() => {
@@ -114,6 +115,10 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     settings,
     calls,
     refused,
+    hideSheet(name: string) {
+      sheets[name] ??= []
+      hidden.add(name)
+    },
     tell,
     put,
     renameSheet(before: string, after: string) {
@@ -340,6 +345,14 @@ describe('The written table', () => {
     await books.compute()
     expect(valueAt('Risk!B7')).toBe(0.6)
     expect(books.state().status).toEqual({ kind: 'up to date' })
+  })
+
+  test('on a new sheet it is not written to a hidden one of that name', async () => {
+    const { books, compute, hideSheet } = await desk()
+    await compute()
+    hideSheet('Risk')
+    await books.writeTable({ kind: 'new sheet' })
+    expect(books.state().table?.sheet).toBe('Risk 2')
   })
 
   test('it is written from figures that know the newest edit', async () => {
