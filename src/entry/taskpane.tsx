@@ -1,12 +1,14 @@
-import { excelWorkbook, hostTheme, loadOnOpen, whenReady } from '../excel'
+import { excelWorkbook, hostTheme, loadOnOpen, onThemeChanged, whenReady } from '../excel'
 import { openPane } from '../pane'
 import { openBooks, type Books } from '../sheet'
 
-/** The host announces no change of its colours: they are asked for again whenever the pane is looked at. */
-function onLook(listener: () => void): () => void {
+/** Some hosts announce a change of their colours; the others are asked again whenever the pane is looked at. */
+function onThemeChange(listener: () => void): () => void {
+  const endAnnouncements = onThemeChanged(listener)
   window.addEventListener('focus', listener)
   document.addEventListener('visibilitychange', listener)
   return () => {
+    endAnnouncements()
     window.removeEventListener('focus', listener)
     document.removeEventListener('visibilitychange', listener)
   }
@@ -31,7 +33,7 @@ async function start(root: HTMLElement): Promise<void> {
     return
   }
   const books = await openBooks(excelWorkbook())
-  openPane(root, books, { theme: hostTheme, onThemeChange: onLook, version: COUNTERPOISE_VERSION })
+  openPane(root, books, { theme: hostTheme, onThemeChange, version: COUNTERPOISE_VERSION })
   startWithTable(books)
 }
 

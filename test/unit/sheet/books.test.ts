@@ -123,7 +123,7 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     put,
     renameSheet(before: string, after: string) {
       sheets[after] = sheets[before] ?? []
-      delete sheets[before]
+      Reflect.deleteProperty(sheets, before)
       for (const [name, area] of names) if (area.sheet === before) names.set(name, { ...area, sheet: after })
       tell({ kind: 'moved', sheet: before })
     },
