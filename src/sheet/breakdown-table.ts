@@ -136,7 +136,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   figure(`Volatility ${breakdown.horizon}`, number(d.volatility, PERCENT))
   if (breakdown.expectedReturn)
     figure(
-      breakdown.horizon === 'a year' ? 'Expected return a year' : 'Expected return per period',
+      `Expected return ${breakdown.expectedReturn.horizon}`,
       number(breakdown.expectedReturn.value, PERCENT),
       breakdown.expectedReturn.label,
     )

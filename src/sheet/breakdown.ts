@@ -27,7 +27,12 @@ export interface Breakdown {
   readonly byGroup: readonly GroupSection[]
   readonly net: number
   readonly gross: number
-  readonly expectedReturn: { readonly value: number; readonly label: string } | null
+  /** by the year where it is the user's own, whatever the risk is scaled to */
+  readonly expectedReturn: {
+    readonly value: number
+    readonly label: string
+    readonly horizon: 'a year' | 'per period'
+  } | null
   /** 'a year', or 'per period' while nobody has said how many make a year */
   readonly horizon: 'a year' | 'per period'
   /** settings and conventions as label and value, as printed */
@@ -118,7 +123,7 @@ export function breakDown(
     byGroup,
     net: holdings.net,
     gross: holdings.gross,
-    expectedReturn: expectedReturnOf(holdings, match, book, periods ?? 1, findings),
+    expectedReturn: expectedReturnOf(holdings, match, book, periods, findings),
     horizon: periods === null ? 'per period' : 'a year',
     settings: settingLines(holdings, returns, book, settings, periods),
     findings: byGravity(findings),
@@ -138,7 +143,7 @@ function expectedReturnOf(
   holdings: HoldingsReading,
   match: Match,
   book: BookModel,
-  periods: number,
+  periods: number | null,
   findings: Finding[],
 ): Breakdown['expectedReturn'] {
   const held = holdings.holdings
@@ -148,6 +153,7 @@ function expectedReturnOf(
     return {
       value: held.reduce((sum, { weight, expected }) => sum + weight * (expected ?? 0), 0),
       label: `Expected return (column ${quote(column.header)})`,
+      horizon: 'a year',
     }
   if (column && blank.length < held.length)
     findings.push({
@@ -165,8 +171,9 @@ function expectedReturnOf(
       area: null,
     })
   return {
-    value: held.reduce((sum, { weight }, i) => sum + weight * (means[i] ?? 0), 0) * periods,
+    value: held.reduce((sum, { weight }, i) => sum + weight * (means[i] ?? 0), 0) * (periods ?? 1),
     label: 'Average past return, not a forecast',
+    horizon: periods === null ? 'per period' : 'a year',
   }
 }
 
@@ -219,9 +226,12 @@ function settingLines(
   ])
   if (settings.riskless.length > 0)
     lines.push(['Riskless', `${settings.riskless.join(', ')} (marked by the user)`])
+  const sums = `net ${percentText(holdings.net, 2)}, gross ${percentText(holdings.gross, 2)}`
   lines.push([
     'Capital',
-    `Net ${percentText(holdings.net, 2)}, gross ${percentText(holdings.gross, 2)}; weights are used as they stand`,
+    holdings.capital === null
+      ? `Weights are used as they stand: ${sums}`
+      : `Weights are amounts divided by ${numberText(holdings.capital, 2)}${settings.capital === null ? ' (their sum)' : ''}: ${sums}`,
   ])
   return lines
 }

@@ -39,6 +39,8 @@ export interface HoldingsReading {
   readonly named: boolean
   readonly groupHeaders: readonly string[]
   readonly limitHeader: string | null
+  /** what amounts were divided by to make weights of them; null where the block holds weights */
+  readonly capital: number | null
   readonly net: number
   readonly gross: number
   readonly summary: string
@@ -482,6 +484,7 @@ export function readHoldings(
     named: nameColumn >= 0,
     groupHeaders: groupColumns.map((column) => columns[column]?.header ?? ''),
     limitHeader: columns[columnOf('limit')]?.header ?? null,
+    capital: weightColumn >= 0 || measureColumn < 0 ? null : divisor,
     net,
     gross,
     summary: `${countOf(holdings.length, 'holding')}, ${isWeighed ? `net ${percentText(net)}, gross ${percentText(gross)}` : 'weights unknown without the capital'}${left.length > 0 ? `; ${listOf(left)} left out` : ''}`,
