@@ -34,7 +34,7 @@ export type Status =
 
 /** A question put to the user, with what happens on yes. */
 export interface Proposal {
-  /** the same question is not asked twice */
+  /** what kind of question it is and about which cells: the same one stands but once */
   readonly key: string
   /** where a fault met on the way belongs; an earlier one there is answered */
   readonly field: Field
@@ -104,7 +104,7 @@ export class LinkedBook {
   #capitalIsFormula = false
   /** the status that only a table left behind has caused: the figures are good, and writing it ends it */
   #tableStatus: Status | null = null
-  /** counts the user's edits to the blocks, so that figures read before one are not called up to date after it */
+  /** counts the user's edits to the blocks and the moves around them, so that figures read before one are not called up to date after it */
   #edits = 0
   /** the returns block being read, whose edits count although it is not known yet */
   #reading: Area | null = null
@@ -190,7 +190,9 @@ export class LinkedBook {
     // cells that close a gap leave the block where it was, with other numbers in it
     if (this.returns?.area.sheet === sheet || this.#reading?.sheet === sheet) this.#changed.returns = true
     const parts = [this.holdings?.area, this.returns?.area, this.table, this.#capitalArea]
-    return this.linked && parts.some((part) => part?.sheet === sheet)
+    const concerned = this.linked && parts.some((part) => part?.sheet === sheet)
+    if (concerned) this.#edits++
+    return concerned
   }
 
   // ---- reading
@@ -320,8 +322,8 @@ export class LinkedBook {
 
   /** Applies a change of settings; what it makes necessary is done at the next compute or refresh. */
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
-    if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
     this.settings = { ...this.settings, ...change }
+    if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
     if ('riskless' in change) this.#match()
     if ('roles' in change) {
       this.#readHoldings()
@@ -498,6 +500,7 @@ export class LinkedBook {
 
   /** @returns what keeps the table behind the figures, or null */
   async #bringTableAlong(seen: Seen, cause: Cause): Promise<Status | null> {
+    this.proposals = this.proposals.filter(({ key }) => !key.startsWith('grow '))
     if (!this.breakdown) return null
     const table = breakdownTable(this.title, this.breakdown)
     const fits = seen.area.rows === table.cells.length && seen.area.columns === table.widths.length
@@ -528,7 +531,7 @@ export class LinkedBook {
       if (!(fault instanceof Fault)) throw fault
       this.faults = { ...this.faults, table: explain(fault) }
       if (fault.code !== 'occupied') return { kind: 'failed', sentence: explain(fault), area: seen.area }
-      this.#proposeOver('where it was', seen.area, table)
+      this.#proposeOver('grow', 'where it was', seen.area, table)
       return {
         kind: 'stale',
         since: seen.area,
@@ -556,14 +559,20 @@ export class LinkedBook {
     try {
       return await this.#writeAt(target, table, over, meets, where === 'new sheet' ? target.sheet : undefined)
     } catch (fault) {
-      if (fault instanceof Fault && fault.code === 'occupied') this.#proposeOver(where, target, table)
+      if (fault instanceof Fault && fault.code === 'occupied') this.#proposeOver('over', where, target, table)
       throw fault
     }
   }
 
-  #proposeOver(where: 'new sheet' | 'selection' | 'where it was', target: Area, table: Table): void {
+  /** @param kind 'over' for a write the user asked for, 'grow' for a refresh that needs more room */
+  #proposeOver(
+    kind: 'over' | 'grow',
+    where: 'new sheet' | 'selection' | 'where it was',
+    target: Area,
+    table: Table,
+  ): void {
     this.#propose({
-      key: `over ${addressOf(target)}`,
+      key: `${kind} ${addressOf(areaOfTable(target, table))}`,
       field: 'table',
       sentence: `Write over what stands in ${addressOf(areaOfTable(target, table))}?`,
       button: 'Write over it',
@@ -644,9 +653,9 @@ export class LinkedBook {
     this.proposals = [...this.proposals.filter(({ key }) => key !== proposal.key), proposal]
   }
 
-  /** Takes a question off; one that was declined is not asked again. */
+  /** Takes a question off; one that came of a refresh and was declined is not asked again, one that answers a command is. */
   settle(proposal: Proposal, declined: boolean): void {
-    if (declined) this.#asked.add(proposal.key)
+    if (declined && /^(include|grow) /.test(proposal.key)) this.#asked.add(proposal.key)
     this.proposals = this.proposals.filter(({ key }) => key !== proposal.key)
   }
 

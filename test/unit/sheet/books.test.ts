@@ -4,7 +4,7 @@
  */
 import { Fault } from '../../../src/core'
 import type { Area, Books, CellValue, Json, Seen, Want, Workbook, WorkbookEvent } from '../../../src/sheet'
-import { openBooks, parseAddress } from '../../../src/sheet'
+import { addressOf, openBooks, overlap, parseAddress } from '../../../src/sheet'
 
 const areaAt = (address: string): Area => {
   const area = parseAddress(address)
@@ -63,6 +63,20 @@ function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     },
     async write({ patches, keep = {}, remember = {} }) {
       await step('write')
+      for (const { at, table, over, ours } of patches) {
+        const target = { ...at, rows: table.cells.length, columns: table.widths.length }
+        const foreign = cellsOf(target).some((row, r) =>
+          row.some(
+            (value, c) =>
+              value !== '' &&
+              !(
+                ours && overlap(ours, { ...at, row: at.row + r, column: at.column + c, rows: 1, columns: 1 })
+              ),
+          ),
+        )
+        if (over === 'blank' && foreign)
+          throw new Fault('occupied', `${addressOf(target)} is in the way`, 'an empty place is needed')
+      }
       for (const { at, table } of patches)
         table.cells.forEach((row, r) =>
           row.forEach(({ value }, c) => {
@@ -347,6 +361,18 @@ describe('The written table', () => {
     expect(books.state().status).toEqual({ kind: 'up to date' })
   })
 
+  test('a question about foreign cells that was declined is asked again with the next command', async () => {
+    const { books, compute, select, valueAt } = await desk()
+    await compute()
+    select('Book!A1')
+    await books.writeTable({ kind: 'selection' })
+    books.state().offers[0]?.decline()
+    expect(books.state().offers).toEqual([])
+    await books.writeTable({ kind: 'selection' })
+    expect(books.state().offers.map(({ button }) => button)).toEqual(['Write over it'])
+    expect(valueAt('Book!A1')).toBe('Holding')
+  })
+
   test('on a new sheet it is not written to a hidden one of that name', async () => {
     const { books, compute, hideSheet } = await desk()
     await compute()
@@ -396,10 +422,11 @@ describe('The written table', () => {
     await books.rename('Second')
     select('Risk!A1')
     await books.writeTable({ kind: 'selection' })
+    expect(books.state().faults.table).toMatch(/is in the way/)
+    await books.state().offers[0]?.accept()
+    expect(books.state().faults).toEqual({})
     expect(names.get('1_table')).toBeUndefined()
-    expect(books.state().notice).toMatch(
-      /The table of “Book” was written over and no longer follows its book\.$/,
-    )
+    expect(books.state().notice).toBe('The table of “Book” was written over and no longer follows its book.')
     type('Book!B2', 0.9)
     await quiet()
     expect(valueAt('Risk!A1')).toBe('Contributions to risk: Second')
