@@ -325,10 +325,12 @@ export function readHoldings(
     const nameCell = nameColumn < 0 ? '' : (cells[nameColumn] ?? '')
     const name = String(nameCell).trim()
     const shown = readNumber(cells[measureColumn] ?? '', culture)
+    // a holding may be called "Total …" and happen to weigh what stands above it; a total has no group of its own
+    const grouped = groupColumns.some((column) => !isBlank(cells[column]))
     if (
       nameColumn >= 0 &&
       shown.value !== null &&
-      (name === '' || TOTAL_WORD.test(name)) &&
+      (name === '' || TOTAL_ALONE.test(name) || (TOTAL_WORD.test(name) && !grouped)) &&
       rows.length > 0
     ) {
       const sums = agrees(shown.value, segment) || agrees(shown.value, whole)
@@ -484,7 +486,7 @@ export function readHoldings(
     named: nameColumn >= 0,
     groupHeaders: groupColumns.map((column) => columns[column]?.header ?? ''),
     limitHeader: columns[columnOf('limit')]?.header ?? null,
-    capital: weightColumn >= 0 || measureColumn < 0 ? null : divisor,
+    capital: weightColumn >= 0 || measureColumn < 0 ? null : capital,
     net,
     gross,
     summary: `${countOf(holdings.length, 'holding')}, ${isWeighed ? `net ${percentText(net)}, gross ${percentText(gross)}` : 'weights unknown without the capital'}${left.length > 0 ? `; ${listOf(left)} left out` : ''}`,

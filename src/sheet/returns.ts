@@ -193,7 +193,7 @@ export function readReturns(
     if (filled) series.push(column)
     else emptyColumns++
   }
-  const periods: number[] = []
+  let periods: number[] = []
   let emptyRows = 0
   for (let row = firstRow; row < view.rows; row++) {
     let filled = datedByContent && !isBlank(view.at(row, 0))
@@ -242,7 +242,7 @@ export function readReturns(
           : 'Dates are not in order; read in order of time.',
       )
     }
-    periods.splice(0, periods.length, ...known.map(({ row }) => row))
+    periods = known.map(({ row }) => row)
     dates = known.map(({ day }) => day)
     const twice = known.findIndex(
       ({ day, isRead }, k) => isRead && known[k - 1]?.isRead === true && day === known[k - 1]?.day,

@@ -6,7 +6,7 @@ export function blockOf(
   sheet = 'Book',
   extra: { hiddenRows?: ReadonlySet<number>; merged?: readonly Area[] } = {},
 ): Block {
-  const columns = Math.max(...rows.map((row) => row.length))
+  const columns = rows.reduce((most, row) => Math.max(most, row.length), 0)
   return {
     area: { sheet, row: 0, column: 0, rows: rows.length, columns },
     values: rows.map((row) => [...row, ...Array<CellValue>(columns - row.length).fill('')]),

@@ -129,6 +129,17 @@ test('a name that begins with Total is a holding unless its figure is the sum', 
   expect(reading.holdings.map(({ name }) => name)).toContain('Total return bonds')
 })
 
+test('a name that begins with Total is a holding where it has a group, whatever its figure', () => {
+  const reading = read([
+    ['Holding', 'Class', 'Weight'],
+    ['Meadow', 'Shares', 0.25],
+    ['Total return bonds', 'Bonds', 0.25],
+    ['Orchard', 'Shares', 0.5],
+    ['Total portfolio', '', 1],
+  ])
+  expect(reading.holdings.map(({ name }) => name)).toEqual(['Meadow', 'Total return bonds', 'Orchard'])
+})
+
 test('a total that does not sum is left out with a warning at its cell', () => {
   const reading = read([...PLAIN, ['Total', 0.98]])
   expect(reading.holdings).toHaveLength(2)

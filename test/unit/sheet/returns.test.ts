@@ -244,3 +244,13 @@ test('nothing is said of dates beside a covariance matrix, and a blank in one st
     'Returns!C2: found a blank among the covariances; a number is needed in every cell.',
   ])
 })
+
+test('two hundred thousand rows under repeated dates are told of like few', () => {
+  const rows = Array.from({ length: 200_000 }, (_, t) => [
+    FRIDAY - 25_000 + Math.floor(t / 8),
+    t % 2 ? 0.01 : -0.01,
+  ])
+  expect(sentences(read([['Date', 'A'], ...rows]), 'stops')).toEqual([
+    'Returns!A3: found 17 Jun 1958 a second time; one row a date is needed.',
+  ])
+})
