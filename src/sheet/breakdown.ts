@@ -37,6 +37,7 @@ export interface Breakdown {
   readonly horizon: 'a year' | 'per period'
   /** settings and conventions as label and value, as printed */
   readonly settings: readonly (readonly [string, string])[]
+  /** the warnings of both readings, and all that was found in matching and computing */
   readonly findings: readonly Finding[]
   /** why shares are not shown, or null */
   readonly sharesWithheld: string | null
@@ -81,7 +82,9 @@ export function breakDown(
 ): Breakdown {
   const weights = Float64Array.from(holdings.holdings, ({ weight }) => weight)
   const periods = settings.periodsPerYear ?? returns.proposedPeriodsPerYear
-  const findings: Finding[] = [...match.findings, ...book.findings]
+  // what was odd in the reading changes what the figures mean, so it goes with them wherever they are written
+  const odd = [...holdings.findings, ...returns.findings].filter(({ weight }) => weight === 'warns')
+  const findings: Finding[] = [...odd, ...match.findings, ...book.findings]
   const perPeriod = decompose(book.model, weights)
   const decomposition = annualise(perPeriod, periods ?? 1)
   if (periods === null)

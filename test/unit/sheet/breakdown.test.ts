@@ -79,3 +79,14 @@ test('an average of past returns is per period until the periods per year are kn
   expect(last(printed(rows))).toMatch(/^Expected return per period \| /)
   expect(last(printed(rows, { periodsPerYear: 12 }))).toMatch(/^Expected return a year \| /)
 })
+
+test('a warning from reading the blocks stands in the table as well', () => {
+  const lines = printed([
+    ['Holding', 'Weight'],
+    ['Meadow', 60],
+    ['Orchard', 40],
+  ])
+  expect(lines.slice(lines.indexOf('Warnings') + 1)).toContain(
+    'Weights sum to 100.00: do they stand in percent points? They are used as they stand, as multiples of capital.',
+  )
+})
