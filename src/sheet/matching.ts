@@ -162,6 +162,13 @@ export function modelOf(
   const shortestText = shortest
     ? `${quote(holdings.holdings[shortest[0]]?.name ?? '')} has the most gaps: ${shortest[1]} of ${inView} dates`
     : ''
+  if (inView < 2 && returns.rows >= 2)
+    throw new Fault(
+      'too-few',
+      `found ${countOf(inView, 'date')} of returns within the look-back`,
+      `at least 2 of the ${returns.rows} there are${spanText(returns.dates)} are needed`,
+      { argument: 'look-back' },
+    )
   if (rows.length < 2)
     throw new Fault(
       'too-few',
@@ -219,6 +226,9 @@ export function modelOf(
     findings,
   }
 }
+
+const spanText = (dates: readonly number[] | null): string =>
+  dates && dates.length > 0 ? `, ${dateText(dates[0] ?? 0)} to ${dateText(dates.at(-1) ?? 0)},` : ''
 
 /** The first row of the look-back. */
 function lookBackStart(returns: ReturnsReading, lookBack: Settings['lookBack'], findings: Finding[]): number {

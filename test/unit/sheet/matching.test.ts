@@ -94,6 +94,25 @@ test('a look-back by date wants dates, one longer than the data is told', () => 
   )
 })
 
+test('a look-back that leaves no returns says so at its own field, with the dates there are', () => {
+  const holdings = held('A', 'B')
+  const returns = returnsOf([
+    ['Month', 'A', 'B'],
+    [46022, 0.01, 0.02],
+    [46053, -0.02, 0.01],
+    [46081, 0.03, -0.01],
+  ])
+  const settings = { ...DEFAULT_SETTINGS, lookBack: { kind: 'since', date: 47484 } } as const
+  const compute = () => modelOf(matchHoldings(holdings, returns, []), holdings, returns, settings)
+  expect(compute).toThrow(
+    expect.objectContaining({
+      found: 'found 0 dates of returns within the look-back',
+      needed: 'at least 2 of the 3 there are, 31 Dec 2025 to 28 Feb 2026, are needed',
+      where: { argument: 'look-back' },
+    }),
+  )
+})
+
 test('groups are numbered as they come, alike but for case and spacing, blanks together', () => {
   const { groupOf, labels } = groupsOf(['Shares', '', 'shares ', 'Bonds', null])
   expect([...groupOf]).toEqual([0, 1, 0, 2, 1])
