@@ -135,6 +135,7 @@ export function createCustomFunctions(grid: Grid): CustomFunctionsStandIn {
   const roundEnds = commands.onCommandExecuted((command) => {
     if (command.id !== SetFormulaCalculationResultMutation.id) return
     for (const executor of executors.values()) executor.endRound()
+    messages.endRound()
   })
 
   const associateOne = (id: string, implementation: Implementation): void => {
@@ -194,7 +195,8 @@ export function createCustomFunctions(grid: Grid): CustomFunctionsStandIn {
     ErrorCode,
     register,
     messageAt(unitId, sheetId, row, column) {
-      return messages.get({ unitId, sheetId, row, column })
+      const sheet = grid.api.getWorkbook(unitId)?.getSheetBySheetId(sheetId)
+      return messages.get({ unitId, sheetId, row, column }, sheet?.getRange(row, column).getFormula() ?? '')
     },
     dispose() {
       roundEnds.dispose()
@@ -210,22 +212,33 @@ interface Cell {
   readonly column: number
 }
 
-/** The sentences of failed calls, by calling cell and function: one cell may call several. */
+/** The sentences of failed calls, by calling cell and function: one cell may call several. They are those of its latest calculation. */
 class Messages {
-  private readonly byCell = new Map<string, Map<string, string>>()
+  private readonly byCell = new Map<string, { round: number; readonly sentences: Map<string, string> }>()
+  private round = 0
+
+  endRound(): void {
+    this.round++
+  }
 
   set(cell: Cell, functionName: string, message: string | undefined): void {
     const key = keyOf(cell)
-    const ofCell = this.byCell.get(key) ?? new Map<string, string>()
-    if (message) ofCell.set(functionName, message)
-    else ofCell.delete(functionName)
-    if (ofCell.size > 0) this.byCell.set(key, ofCell)
+    const ofCell = this.byCell.get(key) ?? { round: this.round, sentences: new Map<string, string>() }
+    if (ofCell.round !== this.round) ofCell.sentences.clear()
+    ofCell.round = this.round
+    if (message) ofCell.sentences.set(functionName, message)
+    else ofCell.sentences.delete(functionName)
+    if (ofCell.sentences.size > 0) this.byCell.set(key, ofCell)
     else this.byCell.delete(key)
   }
 
-  get(cell: Cell): string | undefined {
-    const ofCell = this.byCell.get(keyOf(cell))
-    return ofCell && [...ofCell.values()].join(' ')
+  /** A formula typed over another may call none of our functions, and so leaves what that one said behind. */
+  get(cell: Cell, formula: string): string | undefined {
+    const called = formula.toUpperCase()
+    const told = [...(this.byCell.get(keyOf(cell))?.sentences ?? [])].filter(([name]) =>
+      called.includes(name),
+    )
+    return told.length > 0 ? told.map(([, sentence]) => sentence).join(' ') : undefined
   }
 }
 
@@ -301,10 +314,16 @@ class OfficeFunction extends BaseFunction {
 
   private call(cell: Cell, values: readonly BaseValueObject[]): BaseValueObject {
     const { parameters, options } = this.description
-    if (values.length > parameters.length) throw new CustomFunctionError(INVALID)
+    // The host refuses such a formula when it is entered; here the cell has to say why it fails.
+    if (values.length > parameters.length)
+      throw new CustomFunctionError(
+        INVALID,
+        `found ${values.length} arguments; at most ${parameters.length} are taken.`,
+      )
     const args = parameters.map((parameter, i) => incoming(values[i], parameter))
-    if (parameters.some((parameter, i) => !parameter.optional && args[i] === null))
-      throw new CustomFunctionError(INVALID)
+    const missing = parameters.find((parameter, i) => !parameter.optional && args[i] === null)
+    if (missing)
+      throw new CustomFunctionError(INVALID, `${missing.name}: found nothing; this argument is needed.`)
 
     const implementation = this.around.implementation()
     if (!implementation) {

@@ -197,9 +197,11 @@ describe('arguments', () => {
     },
   )
 
-  it('too few or too many are #VALUE!', async () => {
+  it('too few or too many are #VALUE!, and the cell says which', async () => {
     expect(await evaluate('=POISE.ONE()')).toBe('#VALUE!')
+    expect(messageAt('F1')).toBe('value: found nothing; this argument is needed.')
     expect(await evaluate2('=POISE.ONE(1,2)')).toBe('#VALUE!')
+    expect(messageAt('H9')).toBe('found 2 arguments; at most 1 are taken.')
   })
 
   it('end with an invocation that knows the address only where the function asks for it', async () => {
@@ -317,6 +319,16 @@ describe('failures', () => {
     write('A1', 'good')
     await calculated()
     expect(value('F1')).toBe('fine')
+    expect(messageAt('F1')).toBeUndefined()
+  })
+
+  it('are told by the formula that stands in the cell now, not by an earlier one', async () => {
+    await evaluate('=IFERROR(POISE.FAILS("missing"),"none")')
+    write('F1', '=POISE.ONE()')
+    await calculated()
+    expect(messageAt('F1')).toBe('value: found nothing; this argument is needed.')
+    write('F1', '=1/0')
+    await calculated()
     expect(messageAt('F1')).toBeUndefined()
   })
 
