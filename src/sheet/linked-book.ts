@@ -609,6 +609,7 @@ export class LinkedBook {
     sheet?: string,
   ): Promise<Area> {
     const area = areaOfTable(target, table)
+    this.#refuseOverSources(area)
     const moved = !sameArea(this.table, area)
     await this.workbook.write({
       ...(sheet === undefined ? {} : { sheet }),
@@ -622,6 +623,22 @@ export class LinkedBook {
     if (this.status === this.#tableStatus) this.status = { kind: 'up to date' }
     this.#tableStatus = null
     return area
+  }
+
+  /** Not even the user's word lets the table replace what it is computed from: the next refresh would have nothing to read. */
+  #refuseOverSources(area: Area): void {
+    for (const [part, source] of [
+      ['holdings', this.holdings?.area],
+      ['returns', this.returns?.area],
+      ['capital', this.#capitalArea],
+    ] as const)
+      if (source && overlap(area, source))
+        throw new Fault(
+          'selection',
+          `the table would fill ${addressOf(area)} and cover the ${part} in ${addressOf(source)}, which it is computed from`,
+          'choose another place',
+          { argument: 'table' },
+        )
   }
 
   /** Lets go of a table that another book was written over. */

@@ -340,6 +340,22 @@ describe('The written table', () => {
     expect(await valuesAt('Sheet1', 'E3')).toEqual([['Contributions to risk: Sheet1']])
   })
 
+  test('over the blocks it is computed from it is not written, nor offered', async () => {
+    const { compute, writeTable, select, books, quiet, valuesAt } = await desk()
+    await compute()
+    await writeTable()
+    const before = await valuesAt('Sheet1', 'A1:C7')
+    select('Sheet1', 'B1')
+    await books.writeTable({ kind: 'selection' })
+    const state = await quiet()
+    expect(state.faults.table).toMatch(
+      /^The table would fill Sheet1!B1:K\d+ and cover the holdings in Sheet1!A3:C7, which it is computed from; choose another place\.$/,
+    )
+    expect(state.offers).toEqual([])
+    expect(state.status).toEqual({ kind: 'up to date' })
+    expect(await valuesAt('Sheet1', 'A1:C7')).toEqual(before)
+  })
+
   test('a table that has to grow over foreign cells says so and asks', async () => {
     const { books, compute, writeTable, user, quiet, valuesAt } = await desk({
       returns: returnsOf([...NAMES, 'Timber'], 60),
