@@ -284,7 +284,11 @@ class OpenBooks implements Books {
       for (const [book, cause] of due)
         void this.#enqueue(book, async (work) => {
           // it may have been removed, or given other blocks, while this waited its turn
-          if (book.linked && this.#books.includes(book)) await book.refresh(cause, work)
+          if (!book.linked || !this.#books.includes(book)) return
+          const stood = book.table
+          await book.refresh(cause, work)
+          if (stood && !book.table)
+            this.#notice = `The table written to ${addressOf(stood)} is gone: its cells or its sheet were deleted. Report writes it anew.`
         })
     }, SETTLING_MS)
   }

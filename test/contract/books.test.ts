@@ -510,6 +510,19 @@ describe('The link', () => {
     expect(await valuesAt('Sheet1', 'A4:C4')).toEqual([['Northern shares', 'Shares', 0.5]])
   })
 
+  test('a written table whose sheet is deleted is told to be gone', async () => {
+    const { compute, writeTable, user, quiet } = await desk()
+    await compute()
+    const { table } = await writeTable()
+    user.deleteSheet('Risk')
+    const state = await quiet()
+    expect(state.table).toBeNull()
+    expect(state.status).toEqual({ kind: 'up to date' })
+    expect(state.notice).toBe(
+      `The table written to Risk!A1:J${table?.rows} is gone: its cells or its sheet were deleted. Report writes it anew.`,
+    )
+  })
+
   test('a weight that is no number fails with its cell, and a number there mends it', async () => {
     const { compute, user, quiet } = await desk()
     await compute()
