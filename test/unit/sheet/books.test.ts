@@ -362,15 +362,16 @@ describe('The written table', () => {
   })
 
   test('a question about foreign cells that was declined is asked again with the next command', async () => {
-    const { books, compute, select, valueAt } = await desk()
+    const { books, compute, select, type, valueAt } = await desk()
     await compute()
-    select('Book!A1')
+    type('Book!H1', 'mine')
+    select('Book!H1')
     await books.writeTable({ kind: 'selection' })
     books.state().offers[0]?.decline()
     expect(books.state().offers).toEqual([])
     await books.writeTable({ kind: 'selection' })
     expect(books.state().offers.map(({ button }) => button)).toEqual(['Write over it'])
-    expect(valueAt('Book!A1')).toBe('Holding')
+    expect(valueAt('Book!H1')).toBe('mine')
   })
 
   test('on a new sheet it is not written to a hidden one of that name', async () => {
