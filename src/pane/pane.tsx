@@ -204,9 +204,9 @@ function Views({ view, show }: { view: View; show: (view: View) => void }) {
 function Pane({ version }: { version: string }) {
   const books = useBooks()
   const classes = useStyles()
-  const { holdings, returns, breakdown } = useBooksState()
-  const [view, setView] = useState<View>(breakdown ? 'risk' : 'data')
-  const canCompute = holdings !== null && returns !== null
+  const { holdings, returns, linked } = useBooksState()
+  const [view, setView] = useState<View>(linked ? 'risk' : 'data')
+  const canCompute = linked || (holdings !== null && returns !== null)
   const compute = async (): Promise<void> => {
     if (!canCompute) return
     await books.compute()

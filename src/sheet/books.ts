@@ -36,6 +36,8 @@ export interface BooksState {
   readonly returns: ReturnsReading | null
   readonly settings: Settings
   readonly breakdown: Breakdown | null
+  /** whether names in the workbook hold the blocks of this book */
+  readonly linked: boolean
   /** where the linked table lies */
   readonly table: Area | null
   readonly status: Status
@@ -74,8 +76,8 @@ const SETTLING_MS = 120
 const CAUSES: readonly Cause[] = ['compute', 'edit', 'look', 'calculation']
 
 /**
- * Opens the books a workbook holds: puts right what an interrupted write left, reads what is linked, and follows the workbook from
- * then on. Commands and refreshes run one after another.
+ * Opens the books a workbook holds: puts right what an interrupted write left, follows the workbook from then on, and begins to
+ * read what is linked. Commands and refreshes run one after another.
  *
  * @throws Fault where the workbook cannot be asked for its books: going on without them would write over their links
  */
@@ -129,8 +131,9 @@ class OpenBooks implements Books {
     notices.push(...this.#books.flatMap(({ unread }) => unread ?? []))
     if (notices.length > 0) this.#notice = notices.join(' ')
     this.#publish()
+    // not waited for: whoever shows the books shows how far the first reading is
     for (const book of this.#books)
-      if (book.linked) await this.#enqueue(book, (work) => book.refresh('look', work))
+      if (book.linked) void this.#enqueue(book, (work) => book.refresh('look', work))
   }
 
   async close(): Promise<void> {
@@ -178,6 +181,7 @@ class OpenBooks implements Books {
       returns: book.returns,
       settings: book.settings,
       breakdown: book.breakdown,
+      linked: book.linked,
       table: book.table,
       status: book.status,
       working: this.#working,

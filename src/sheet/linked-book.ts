@@ -125,6 +125,8 @@ export class LinkedBook {
     this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
     this.linked = entry !== null
     this.kept = this.linked
+    if (this.linked)
+      this.status = { kind: 'stale', since: null, sentence: 'The linked blocks are not read yet.' }
     const { settings, unread } = entry
       ? settingsFromJson(entry.settings as Json)
       : { settings: DEFAULT_SETTINGS, unread: [] }

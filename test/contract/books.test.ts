@@ -477,6 +477,8 @@ describe('The link', () => {
     office.counts.reset()
     const again = await openBooks(book)
     running.push(again)
+    expect(again.state()).toMatchObject({ linked: true, status: { kind: 'stale' }, working: { share: null } })
+    while (again.state().working) await new Promise((resolve) => setTimeout(resolve, 10))
     expect(again.state().status).toEqual({ kind: 'up to date' })
     expect(again.state().holdings?.holdings).toHaveLength(4)
     expect(office.counts.writes).toBe(0)
