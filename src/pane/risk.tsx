@@ -81,6 +81,9 @@ export function RiskView() {
     )
   return (
     <div className={classes.view}>
+      {status.kind === 'failed' && (
+        <p className={classes.withheld}>Figures as last computed, before the failure told above.</p>
+      )}
       <Figures breakdown={breakdown} />
       {breakdown.sharesWithheld !== null && <p className={classes.withheld}>{breakdown.sharesWithheld}</p>}
       {breakdown.decomposition.volatility > 0 && <Positioned breakdown={breakdown} />}

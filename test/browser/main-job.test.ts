@@ -75,6 +75,19 @@ test('a weight typed in the grid moves pane and table by itself', async () => {
   expect(await desk.cell('Risk', 'G7')).toBeGreaterThan(Number(contribution))
 })
 
+test('a weight that is no number fails with its cell, and the figures are marked as earlier ones', async () => {
+  const { pane } = desk
+  const weight = await desk.cell('Book', 'D6')
+  await desk.sheet('Book')
+  await desk.goTo('D6')
+  await desk.type('lots')
+  await pane.getByText('found “lots”; a weight is needed.').first().waitFor()
+  await pane.getByText('Figures as last computed, before the failure told above.').waitFor()
+  await desk.goTo('D6')
+  await desk.type(String(weight))
+  await upToDate()
+})
+
 test('two undos take back a typed weight and the table that followed it', async () => {
   const { page } = desk
   await desk.goTo('D5')
