@@ -263,6 +263,14 @@ export default function Picture({
     ))
   const sum = (values: Float64Array): number => others.reduce((total, i) => total + values[i]!, 0)
 
+  const reducingHeading = (
+    <div className={classes.heading} aria-hidden>
+      <svg width="24" height="8">
+        <Bar className={classes.reducing} fill={`url(#${hatch})`} x={0.5} y={0.5} width={23} height={7} />
+      </svg>
+      Risk-reducing positions
+    </div>
+  )
   return (
     <div className={classes.picture} ref={element}>
       <svg className={classes.defs} aria-hidden focusable="false">
@@ -302,19 +310,7 @@ export default function Picture({
         </div>
         {reducing.length > 0 && others.length === 0 && (
           <div role="group" aria-label="Risk-reducing positions">
-            <div className={classes.heading} aria-hidden>
-              <svg width="24" height="8">
-                <Bar
-                  className={classes.reducing}
-                  fill={`url(#${hatch})`}
-                  x={0.5}
-                  y={0.5}
-                  width={23}
-                  height={7}
-                />
-              </svg>
-              Risk-reducing positions
-            </div>
+            {reducingHeading}
             {rows(reducing)}
           </div>
         )}
@@ -332,19 +328,7 @@ export default function Picture({
           </button>
           {reducing.length > 0 && (
             <div role="listbox" aria-label="Largest risk-reducing positions" onKeyDown={move}>
-              <div className={classes.heading} aria-hidden>
-                <svg width="24" height="8">
-                  <Bar
-                    className={classes.reducing}
-                    fill={`url(#${hatch})`}
-                    x={0.5}
-                    y={0.5}
-                    width={23}
-                    height={7}
-                  />
-                </svg>
-                Risk-reducing positions
-              </div>
+              {reducingHeading}
               {rows(reducing)}
             </div>
           )}
