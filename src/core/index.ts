@@ -1,3 +1,4 @@
+export { activeRisk, type ActiveConvention, type ActiveRisk } from './active'
 export { Fault, type FaultCode, type Where } from './fault'
 export { kernelForm, type KernelForm } from './kernel/block'
 export {
