@@ -1,5 +1,5 @@
 import { checkBlock, Fault } from './fault'
-import { kernelForm, openBlock, type KernelForm } from './kernel/block'
+import { kernelForm, openBlock, type KernelForm, type Sums } from './kernel/block'
 
 /**
  * A covariance C of n positions as a linear operator: what it does to weights matters, not how it is stored.
@@ -44,16 +44,38 @@ export interface ReturnsModel extends RiskModel {
   readonly means: Float64Array
   /** omega_t, the weight of each date; T, sum 1. */
   readonly rowWeights: Float64Array
-  /** C = divisor sum_t omega_t z_t z_t': T/(T-1) for "sample", 1 for "exponential". */
+  /** C = divisor sum_t omega_t z_t z_t': T/(T-1) for "sample", 1 for the others. */
   readonly correction: number
   /** z_t, the centred returns of one date; n, a copy. */
   centredRow(date: number): Float64Array
   /** y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves. */
   portfolioReturns(weights: Float64Array): Float64Array
+  /**
+   * sum over dates of a_t z_ti, one for each position: Z'a. With a_t = correction omega_t y_t it is C w.
+   *
+   * @param perDate  T; any finite numbers
+   * @param into     n; where the sums go, for whoever has room ready; left out: a new array
+   * @throws Fault   "shape" | "not-a-number"
+   */
+  weigh(perDate: Float64Array, into?: Float64Array): Float64Array
+  /**
+   * sum over dates of q_t z_ti^2 and of a_t z_ti, one of each for every position, in one pass.
+   *
+   * @param perDateOfSquares  q, T
+   * @param perDate           a, T
+   * @throws Fault            "shape" | "not-a-number"
+   */
+  squares(perDateOfSquares: Float64Array, perDate: Float64Array): Sums
 }
 
-/** How dates are weighted: all alike with divisor T-1, or decay^age (newest row last, weights scaled to sum 1). */
-export type Weighting = { readonly kind: 'sample' } | { readonly kind: 'exponential'; readonly decay: number }
+/**
+ * How dates are weighted: all alike, with divisor T-1 ("sample") or T ("population", what shrinkage and lagged terms
+ * start from), or decay^age (newest row last, weights scaled to sum 1).
+ */
+export type Weighting =
+  | { readonly kind: 'sample' }
+  | { readonly kind: 'population' }
+  | { readonly kind: 'exponential'; readonly decay: number }
 
 /**
  * The risk model of a block of returns. The covariance is never formed: the centred block is kept, and every
@@ -61,6 +83,7 @@ export type Weighting = { readonly kind: 'sample' } | { readonly kind: 'exponent
  *
  *   C = divisor sum_t omega_t (r_t - m)(r_t - m)',   m = sum_t omega_t r_t
  *   sample:       omega_t = 1/T,  divisor T/(T-1)
+ *   population:   omega_t = 1/T,  divisor 1
  *   exponential:  omega_t proportional to decay^(T-1-t), sum 1, divisor 1
  *
  * Means are taken in two passes (the mean, then the mean of what is left): returns riding on a large constant
@@ -120,6 +143,11 @@ export function returnsModel(
     checkBlock(weights, size, 1, 'weights')
     return weights
   }
+  const checkedDates = (perDate: Float64Array) => {
+    // as one row: the fault then counts numbers, not positions
+    checkBlock(perDate, 1, dates, 'numbers of dates')
+    return perDate
+  }
   return {
     size,
     dates,
@@ -135,6 +163,9 @@ export function returnsModel(
     matrix: () => columnByColumn(variances, (weights) => block.pass(weights).marginals),
     centredRow: (date) => block.read(date),
     portfolioReturns: (weights) => block.portfolio(checked(weights)),
+    weigh: (perDate, into) => block.weigh(checkedDates(perDate), into),
+    squares: (perDateOfSquares, perDate) =>
+      block.squares(checkedDates(perDateOfSquares), checkedDates(perDate)),
   }
 }
 
@@ -160,7 +191,7 @@ function columnMeans(returns: Float64Array, rowWeights: Float64Array, size: numb
 }
 
 function dateWeights(dates: number, weighting: Weighting): Float64Array {
-  if (weighting.kind === 'sample') return new Float64Array(dates).fill(1 / dates)
+  if (weighting.kind !== 'exponential') return new Float64Array(dates).fill(1 / dates)
   const { decay } = weighting
   if (!(decay > 0 && decay < 1)) {
     throw new Fault(
