@@ -47,7 +47,7 @@ export interface ReturnsModel extends RiskModel {
   /** C = divisor sum_t omega_t z_t z_t': T/(T-1) for "sample", 1 for the others. */
   readonly correction: number
   /** z_t, the centred returns of one date; n, a copy. */
-  centredRow(date: number): Float64Array
+  centredRow(date: number, into?: Float64Array): Float64Array
   /** y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves. */
   portfolioReturns(weights: Float64Array): Float64Array
   /**
@@ -161,7 +161,7 @@ export function returnsModel(
     apply: (weights, into) => block.pass(checked(weights), into),
     variances: () => variances.slice(),
     matrix: () => columnByColumn(variances, (weights) => block.pass(weights).marginals),
-    centredRow: (date) => block.read(date),
+    centredRow: (date, into) => block.read(date, into),
     portfolioReturns: (weights) => block.portfolio(checked(weights)),
     weigh: (perDate, into) => block.weigh(checkedDates(perDate), into),
     squares: (perDateOfSquares, perDate) =>

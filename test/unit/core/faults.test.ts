@@ -74,6 +74,16 @@ const cases: [string, () => unknown, Partial<Fault>][] = [
     { code: 'not-a-number', where: { argument: 'weights', row: 0, column: 0 } },
   ],
   [
+    'numbers of dates of which there is one too few',
+    () => returnsModel(Float64Array.of(1, 2), 2, 1).weigh(Float64Array.of(1)),
+    { code: 'shape', found: 'numbers of dates: 1 numbers' },
+  ],
+  [
+    'a number of a date that is not a number',
+    () => returnsModel(Float64Array.of(1, 2), 2, 1).squares(Float64Array.of(1, 2), Float64Array.of(1, NaN)),
+    { code: 'not-a-number', found: 'numbers of dates: NaN' },
+  ],
+  [
     'an asymmetric matrix, naming the pair',
     () => matrixModel(Float64Array.of(0.04, 0.01, 0.011, 0.09), 2),
     {
