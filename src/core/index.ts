@@ -1,5 +1,20 @@
 export { activeRisk, type ActiveConvention, type ActiveRisk } from './active'
+export {
+  backtest,
+  backtestGiven,
+  biasStatistic,
+  exceptionTests,
+  type Backtest,
+  type BacktestSettings,
+  type Band,
+  type BaselZone,
+  type BiasStatistic,
+  type ExceptionTests,
+  type GivenForecasts,
+  type MissingDates,
+} from './backtest'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
+export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
 export { Fault, type FaultCode, type Where } from './fault'
 export { kernelForm, type KernelForm } from './kernel/block'
 export { momentsOf, type Moments } from './moments'
@@ -23,11 +38,34 @@ export {
 } from './decomposition'
 export { logReturns, simpleReturns } from './returns'
 export { RISK_BAND, shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
+export {
+  autocorrelation,
+  frequencySteps,
+  laggedCrossCorrelation,
+  ljungBox,
+  longestRun,
+  outliers,
+  robustScale,
+  scalingFactor,
+  shareInRuns,
+  splitRatio,
+  unsmoothedVolatility,
+  type Frequency,
+  type FrequencySteps,
+  type Outliers,
+  type RobustScale,
+  type Run,
+  type SerialCorrelation,
+  type SplitRatio,
+  type TestResult,
+  type UnsmoothedVolatility,
+} from './series'
 export { shrinkageOf, type Shrinkage, type ShrinkageTarget } from './shrinkage'
 export { conditionOf, type Condition } from './spectrum'
 export {
   cornishFisherQuantile,
   fitStudent,
+  inCornishFisherDomain,
   tailRisk,
   type StudentFit,
   type TailChoice,

@@ -8,6 +8,7 @@ const LEFT_OUT: Readonly<Record<string, string>> = {
   'hull-ewma-5.2': 'updates around a mean of zero, which no estimator here does',
   'ucits-var-limits': 'limits are not set by this program',
   'us-derivatives-rule-limits': 'limits are not set by this program',
+  'basel-1996-multipliers': 'a framework that the one of 2019 replaced',
   'srri-bands': 'a regulator’s scale that is not shown',
   'priips-mrm-classes': 'a regulator’s scale that is not shown',
 }
