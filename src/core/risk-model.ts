@@ -48,8 +48,12 @@ export interface ReturnsModel extends RiskModel {
   readonly correction: number
   /** z_t, the centred returns of one date; n, a copy. */
   centredRow(date: number, into?: Float64Array): Float64Array
-  /** y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves. */
-  portfolioReturns(weights: Float64Array): Float64Array
+  /**
+   * y_t = z_t'w, the centred returns of the portfolio; T. Add w'means for the returns themselves.
+   *
+   * @param marginalsInto  n; where C w of the same pass goes, when it is wanted too
+   */
+  portfolioReturns(weights: Float64Array, marginalsInto?: Float64Array): Float64Array
   /**
    * sum over dates of a_t z_ti, one for each position: Z'a. With a_t = correction omega_t y_t it is C w.
    *
@@ -162,7 +166,7 @@ export function returnsModel(
     variances: () => variances.slice(),
     matrix: () => columnByColumn(variances, (weights) => block.pass(weights).marginals),
     centredRow: (date, into) => block.read(date, into),
-    portfolioReturns: (weights) => block.portfolio(checked(weights)),
+    portfolioReturns: (weights, marginalsInto) => block.portfolio(checked(weights), marginalsInto),
     weigh: (perDate, into) => block.weigh(checkedDates(perDate), into),
     squares: (perDateOfSquares, perDate) =>
       block.squares(checkedDates(perDateOfSquares), checkedDates(perDate)),

@@ -7,7 +7,7 @@ export type KernelForm = 'simd' | 'plain'
 /**
  * A centred block of returns Z, T x n, laid out for the kernel in memory of its own.
  *
- * Write every row once, then ask as often as needed. Every question but `read` reads the block once: O(T n).
+ * Write every row once, then ask as often as needed. Every question about weights or dates reads the block once: O(T n).
  */
 export interface Block {
   readonly form: KernelForm
@@ -18,7 +18,7 @@ export interface Block {
   /** For weights w: y = Z w, g = Z'K y and v = y'K y, K = diag(k). */
   pass(weights: Float64Array, marginalsInto?: Float64Array): Pass
   /** y of the same pass; T. */
-  portfolio(weights: Float64Array): Float64Array
+  portfolio(weights: Float64Array, marginalsInto?: Float64Array): Float64Array
   /** Z'a for a number a_t of each date (T): the sum of a_t z_t; n. Multipliers do not count. */
   weigh(perDate: Float64Array, into?: Float64Array): Float64Array
   /** For two numbers of each date, q_t and a_t: the sums of q_t z_ti^2 and of a_t z_ti. Multipliers do not count. */
@@ -126,8 +126,9 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
       marginals.set(sumsAt)
       return { marginals, variance }
     },
-    portfolio: (weights) => {
+    portfolio: (weights, marginals) => {
       run(weights)
+      marginals?.set(sumsAt)
       return numbers.slice(y, y + dates)
     },
     weigh: (perDate, into = new Float64Array(size)) => {
