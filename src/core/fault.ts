@@ -12,6 +12,7 @@ export type FaultCode =
   | 'correlation-matrix'
   | 'negative-variance'
   | 'zero-risk'
+  | 'collinear'
   | 'unknown-choice'
   // cells
   | 'text'

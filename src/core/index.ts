@@ -15,6 +15,13 @@ export {
 } from './backtest'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
 export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
+export {
+  BOOTSTRAP_GENERATOR,
+  bootstrap,
+  type BootstrapChoice,
+  type BootstrapResult,
+  type Spread,
+} from './bootstrap'
 export { Fault, type FaultCode, type Where } from './fault'
 export { kernelForm, type KernelForm } from './kernel/block'
 export { momentsOf, type Moments } from './moments'
