@@ -406,7 +406,6 @@ export function backtestGiven(
     })
   }
   checkGiven(returns, returns.length, 'returns')
-  checkGiven(valueAtRisk, returns.length, 'value_at_risk')
   if (volatility) {
     checkGiven(volatility, returns.length, 'volatility')
     const row = volatility.findIndex((sigma) => sigma < 0)
@@ -422,6 +421,7 @@ export function backtestGiven(
       )
     }
   }
+  checkGiven(valueAtRisk, returns.length, 'value_at_risk')
   return outcome(returns.slice(), volatility && volatility.slice(), valueAtRisk, {
     first: 0,
     confidence,

@@ -336,7 +336,8 @@ export function scalingFactor(autocorrelations: Float64Array, periods: number): 
     }
     variance += 2 * (periods - k) * rho
   }
-  if (variance < 0) {
+  // below 0 by no more than rounding is 0
+  if (variance < -(periods ** 2) * Number.EPSILON) {
     throw new Fault(
       'negative-variance',
       `over ${periods} periods these autocorrelations would give a variance of ${variance.toPrecision(3)}`,
@@ -344,7 +345,7 @@ export function scalingFactor(autocorrelations: Float64Array, periods: number): 
       { argument: 'autocorrelations' },
     )
   }
-  return Math.sqrt(variance)
+  return Math.sqrt(Math.max(0, variance))
 }
 
 /** A volatility per period as it is reported and as it would be without smoothing. */
