@@ -281,8 +281,8 @@ export interface BacktestSettings {
   readonly every: number
 }
 
-/** Numbers read between two reports of progress: some milliseconds of work. */
-const STRETCH = 1_000_000
+/** Numbers read between two reports of progress: a millisecond or two of work. */
+const STRETCH = 250_000
 
 /**
  * Forecasts each date from the dates before it, at today's weights, and compares with what happened.
@@ -343,7 +343,7 @@ export function* backtest(
         const rounding = size * Number.EPSILON * gross
         volatility[k] = variance <= rounding ** 2 ? 0 : Math.sqrt(variance)
         valueAtRisk[k] = losses ? losses.largest(Math.ceil((t - from) * p - 1e-9)) : z * volatility[k]
-        work += t - from
+        work += (t - from) * (estimator.kind === 'lagged' ? 2 + estimator.lags : 2)
       } else {
         volatility[k] = volatility[k - 1]!
         valueAtRisk[k] = valueAtRisk[k - 1]!

@@ -81,7 +81,10 @@ function laggedCorrelation(x: Float64Array, y: Float64Array, lag: number): Seria
   const [from, to] = commonSpan(x, y)
   const a = deviations(x.subarray(from, to))
   const b = x === y ? a : deviations(y.subarray(from, to))
-  if (a === null || b === null) return null
+  return a && b && correlationOf(a, b, lag)
+}
+
+function correlationOf(a: Deviations, b: Deviations, lag: number): SerialCorrelation | null {
   let products = 0
   let squares = 0
   let pairs = 0
@@ -132,15 +135,16 @@ function deviations(x: Float64Array): Deviations | null {
   const observed = x.filter((value) => !Number.isNaN(value))
   // not left to the sum of squares: the mean of equal numbers may round to another one
   if (observed.every((value) => value === observed[0])) return null
-  const rough = mean(observed)
-  const centre = rough + mean(observed.map((value) => value - rough))
-  const values = x.map((value) => value - centre)
+  // the mean, then the mean of what is left, which rounding hid from the first
+  let mean = 0
+  let rest = 0
+  for (const value of observed) mean += value / observed.length
+  for (const value of observed) rest += (value - mean) / observed.length
+  const values = x.map((value) => value - mean - rest)
   let squares = 0
   for (const value of values) if (!Number.isNaN(value)) squares += value * value
   return { values, count: observed.length, squares }
 }
-
-const mean = (values: Float64Array) => values.reduce((sum, value) => sum + value, 0) / values.length
 
 /** The outcome of a test: what was measured, and how often chance alone reaches that. */
 export interface TestResult {
@@ -162,11 +166,13 @@ export interface TestResult {
  */
 export function ljungBox(x: Float64Array, lags: number): TestResult | null {
   checkLag(lags, 1)
-  const count = x.reduce((sum, value) => sum + (Number.isNaN(value) ? 0 : 1), 0)
-  if (count <= lags) return null
+  const [from, to] = commonSpan(x, x)
+  const moved = deviations(x.subarray(from, to))
+  if (moved === null || moved.count <= lags) return null
+  const { count } = moved
   let sum = 0
   for (let lag = 1; lag <= lags; lag++) {
-    const r = laggedCorrelation(x, x, lag)
+    const r = correlationOf(moved, moved, lag)
     if (r === null) return null
     sum += r.value ** 2 / (count - lag)
   }
