@@ -262,32 +262,45 @@ function lossesOf(history: ReturnsModel, weights: Float64Array): { losses: Float
 }
 
 /**
- * Standardised normal quantile, corrected for skewness S and excess kurtosis K; the third-order form.
+ * The normal quantile z at a probability, corrected for skewness S and excess kurtosis K; the third-order form.
  *
  *   x = z + (z^2-1) S/6 + (z^3-3z) K/24 - (2z^3-5z) S^2/36
  *
- * @param probability     between 0 and 1
- * @returns               null outside the domain, where x does not rise with z throughout:
- *                        S^2/9 > 4 (K/8 - S^2/6) (1 - K/8 + 5 S^2/36)  or  |S| > 6 (sqrt(2) - 1)
- * @source                Cornish & Fisher (1937), Moments and Cumulants in the Specification of Distributions; domain: Maillard (2012), A
- *                        User's Guide to the Cornish Fisher Expansion, SSRN 1997178 (from memory, derived again from dx/dz >= 0)
- * @cost                  O(1)
- * @example               cornishFisherQuantile(.99, .1, 1) // 2.629904
- * @example               cornishFisherQuantile(.99, 0, 8.1) // null
+ * @param probability  between 0 and 1
+ * @returns            in units of the standard deviation; only within the domain (`inCornishFisherDomain`) the quantile of anything
+ * @source             Cornish & Fisher (1937), Moments and Cumulants in the Specification of Distributions, Revue de l'Institut
+ *                     International de Statistique 5, 307-320 (from memory)
+ * @cost               O(1)
+ * @example            cornishFisherQuantile(.99, .1, 1) // 2.629904
  */
-export function cornishFisherQuantile(
-  probability: number,
-  skewness: number,
-  excessKurtosis: number,
-): number | null {
-  const [S, K] = [skewness, excessKurtosis]
-  const square = S * S
-  // dx/dz = a z^2 + S/3 z + c is nowhere negative
-  const a = K / 8 - square / 6
-  const c = 1 - K / 8 + (5 * square) / 36
-  if (square / 9 > 4 * a * c || Math.abs(S) > 6 * (Math.SQRT2 - 1)) return null
+export function cornishFisherQuantile(probability: number, skewness: number, excessKurtosis: number): number {
   const z = normalQuantile(probability, 0, 1)
-  return z + ((z * z - 1) * S) / 6 + ((z ** 3 - 3 * z) * K) / 24 - ((2 * z ** 3 - 5 * z) * square) / 36
+  return (
+    z +
+    ((z * z - 1) * skewness) / 6 +
+    ((z ** 3 - 3 * z) * excessKurtosis) / 24 -
+    ((2 * z ** 3 - 5 * z) * skewness ** 2) / 36
+  )
+}
+
+/**
+ * Whether the expansion rises with z throughout, and so is the quantile function of a distribution.
+ *
+ *   S^2/9 <= 4 (K/8 - S^2/6) (1 - K/8 + 5 S^2/36)   and   |S| <= 6 (sqrt(2) - 1)
+ *
+ * Negative excess kurtosis lies outside, as does any skewness without enough of it.
+ *
+ * @source   Maillard (2012), A User's Guide to the Cornish Fisher Expansion, SSRN 1997178 (from memory; derived again from dx/dz >= 0)
+ * @cost     O(1)
+ * @example  inCornishFisherDomain(0, 8) // true
+ * @example  inCornishFisherDomain(0, 8.1) // false
+ */
+export function inCornishFisherDomain(skewness: number, excessKurtosis: number): boolean {
+  const square = skewness * skewness
+  // dx/dz = a z^2 + S/3 z + c; the bound on S keeps out a and c that are both negative
+  const a = excessKurtosis / 8 - square / 6
+  const c = 1 - excessKurtosis / 8 + (5 * square) / 36
+  return square / 9 <= 4 * a * c && Math.abs(skewness) <= 6 * (Math.SQRT2 - 1)
 }
 
 function cornishFisher(
@@ -299,8 +312,7 @@ function cornishFisher(
   if (volatility === 0) return { ...choice, ...NOTHING, valueAtRisk: 0 }
   const { skewness, excessKurtosis } = momentsOf(history.portfolioReturns(weights))
   if (skewness === null || excessKurtosis === null) throw motionless()
-  const x = cornishFisherQuantile(1 - choice.confidence, skewness, excessKurtosis)
-  if (x === null) {
+  if (!inCornishFisherDomain(skewness, excessKurtosis)) {
     throw new Fault(
       'out-of-range',
       `method: skewness ${skewness.toPrecision(3)} and excess kurtosis ${excessKurtosis.toPrecision(3)}, outside the domain of “cornish-fisher”`,
@@ -308,6 +320,7 @@ function cornishFisher(
       { argument: 'method' },
     )
   }
+  const x = cornishFisherQuantile(1 - choice.confidence, skewness, excessKurtosis)
   return { ...choice, ...NOTHING, valueAtRisk: -x * volatility, skewness, excessKurtosis }
 }
 
@@ -354,7 +367,7 @@ const DEGREES = [2, 2.5, 3, 3.5, 4, 5, 6, 8, 11, 16, 25, 50, 100, 300, 1000, 100
  * @source        Liu & Rubin (1995), ML Estimation of the t Distribution Using EM and Its Extensions, Statistica Sinica 5, 19-39; Kent,
  *                Tyler & Vardi (1994), Communications in Statistics - Simulation 23(2), 441-453 (both from memory)
  * @cost          some hundred passes over the values
- * @example       fitStudent(Float64Array.of(-5, -1, -.5, 0, .5, 1, 5)).location // 0
+ * @example       fitStudent(Float64Array.of(-3, -1, -.5, 0, .5, 1, 3)).location // 0
  * @example       fitStudent(Float64Array.of(1, 2, 3, 4)).degrees // Infinity
  */
 export function fitStudent(values: Float64Array): StudentFit | null {
