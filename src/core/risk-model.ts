@@ -73,6 +73,21 @@ export interface ReturnsModel extends RiskModel {
 }
 
 /**
+ * What rounding alone can make of the variance of these weights: a variance up to this is not told apart from zero.
+ *
+ * @throws Fault "out-of-range" where the sum of stand-alone volatilities is too large to be squared
+ */
+export function roundingOfVariance(model: RiskModel, weights: Float64Array): number {
+  const gross = model.variances().reduce((sum, c, i) => sum + Math.abs(weights[i]!) * Math.sqrt(c), 0)
+  if (Number.isFinite(gross * gross)) return model.rounding * gross * gross
+  throw new Fault(
+    'out-of-range',
+    'the variance is too large to be a number',
+    'smaller weights or returns are needed (decimals, such as 0.05 for 5%)',
+  )
+}
+
+/**
  * How dates are weighted: all alike, with divisor T-1 ("sample") or T ("population", what shrinkage and lagged terms
  * start from), or decay^age (newest row last, weights scaled to sum 1).
  */
