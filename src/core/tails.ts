@@ -140,7 +140,7 @@ function behind(history: ReturnsModel | null, model: RiskModel, kind: TailMethod
     throw new Fault(
       'unknown-choice',
       `method: “${kind}” without returns`,
-      'returns are needed; a covariance matrix serves “normal” and “student” with its degrees of freedom, such as “student 5”',
+      'returns are needed: a covariance matrix serves “normal” and “student” with degrees of freedom given, such as “student 5”',
       { argument: 'method' },
     )
   }

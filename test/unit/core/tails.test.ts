@@ -133,7 +133,7 @@ describe('a fault is raised for', () => {
 
 describe('the historical tail', () => {
   // losses 1..T in mixed order, so that the k-th largest is T + 1 - k
-  const ladder = (T: number) => series(...Array.from({ length: T }, (_, t) => -(((t * 7) % T) + 1)))
+  const ladder = (T: number) => series(...Array.from({ length: T }, (_, t) => -(((t * 13) % T) + 1)))
 
   it.each([
     [500, 0.95, 25],
@@ -148,11 +148,7 @@ describe('the historical tail', () => {
     (T, confidence, k) => {
       // counted by hand: T x (1 - confidence), rounded up
       const t = ofHistory(ladder(T), historical, { confidence })
-      const losses = Float64Array.from(
-        ladder(T).portfolioReturns(Float64Array.of(1)),
-        (y) => -(y + ladder(T).means[0]!),
-      ).sort()
-      expect(relativeGap(t.valueAtRisk, losses[T - k]!)).toBeLessThan(1e-14)
+      expect(relativeGap(t.valueAtRisk, T + 1 - k)).toBeLessThan(1e-14)
     },
   )
 
