@@ -7,7 +7,7 @@ import type { Finding } from './findings'
 import { byGravity, firstAndCount } from './findings'
 import { dateInCell, numberInCell } from './numbers'
 import type { Settings } from './settings'
-import { countOf, dateText, listOf, percentText, quote } from './wording'
+import { countOf, dateText, quote } from './wording'
 
 export interface ReturnsReading {
   readonly area: Area
@@ -27,6 +27,8 @@ export interface ReturnsReading {
   readonly columns: number
   /** the heading of a series, or its first cell: where faults about it point */
   readonly seriesCell: (series: number) => Area
+  /** the cell of a return, or of the later of the two prices it comes from; series -1 is the date's */
+  readonly cell: (row: number, series: number) => Area
 }
 
 /** Calendar spacing and how many such periods make a year: common practice, no source. */
@@ -360,7 +362,6 @@ export function readReturns(
         kept = dates?.slice(1) ?? null
       }
     }
-    warnOfOddReturns(values, outRows, columns, names, find)
   }
   if (columns === 0 || rows === 0)
     find('stops', `${addressOf(area)}: found no numbers; returns, prices or a covariance matrix are needed.`)
@@ -407,6 +408,7 @@ export function readReturns(
     rows: outRows,
     columns,
     seriesCell: (i) => view.cell(named ? top : firstRow, series[i] ?? 0),
+    cell: (t, i) => view.cell(periods[t + rows - outRows] ?? firstRow, i < 0 ? 0 : (series[i] ?? 0)),
   }
 }
 
@@ -457,43 +459,4 @@ function contentOf(
     size += Math.abs(value)
   }
   return seen > 0 && positive === seen && rows > 2 && size / seen > 0.5 ? 'prices' : 'returns'
-}
-
-/** Points at columns that hold something else than returns as fractions. */
-function warnOfOddReturns(
-  values: Float64Array,
-  rows: number,
-  columns: number,
-  names: readonly string[] | null,
-  find: (weight: Finding['weight'], sentence: string) => void,
-): void {
-  const levels: string[] = []
-  let large = 0
-  let seen = 0
-  for (let i = 0; i < columns; i++) {
-    let positive = 0
-    let size = 0
-    let count = 0
-    for (let t = 0; t < rows; t++) {
-      const value = values[t * columns + i] ?? NaN
-      if (Number.isNaN(value)) continue
-      count++
-      size += Math.abs(value)
-      if (value > 0) positive++
-    }
-    if (count > 2 && positive === count && size / count > 0.5)
-      levels.push(quote(names?.[i] ?? `series ${i + 1}`))
-    large += size
-    seen += count
-  }
-  if (levels.length > 0)
-    find(
-      'warns',
-      `${listOf(levels)} ${levels.length === 1 ? 'looks' : 'look'} like prices among returns: always above 0 and large.`,
-    )
-  else if (seen > 0 && large / seen > 0.2)
-    find(
-      'warns',
-      `The average size of a return is ${percentText(large / seen, 0)}: are these percentages typed without a percent sign? They are used as fractions.`,
-    )
 }

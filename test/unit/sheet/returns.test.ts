@@ -191,17 +191,20 @@ test('a correlation matrix and a matrix that is not symmetric stop', () => {
   ).toMatch(/Returns!/)
 })
 
-test('returns typed in percent points and prices among returns are suspected', () => {
-  const points = weeks(8).map((row, k) =>
-    k === 0 ? row : [row[0] ?? '', Number(row[1]) * 100, Number(row[2]) * 100],
-  )
-  expect(sentences(read(points), 'warns')[0]).toMatch(
-    /without a percent sign\? They are used as fractions\.$/,
-  )
-  const mixed = weeks(8).map((row, k) => (k === 0 ? row : [row[0] ?? '', row[1] ?? '', 100 + k]))
-  expect(sentences(read(mixed), 'warns')[0]).toBe(
-    '“B” looks like prices among returns: always above 0 and large.',
-  )
+test('every return knows its cell, and one made of prices that of the later price', () => {
+  const [head = [], ...body] = weeks(10)
+  const newestFirst = read([head, ...body.reverse()])
+  expect(newestFirst.cell(0, 1)).toMatchObject({ row: 10, column: 2, rows: 1, columns: 1 })
+  expect(newestFirst.cell(9, -1)).toMatchObject({ row: 1, column: 0 })
+  const across = read(transposed(weeks(10)))
+  expect(across.cell(3, 1)).toMatchObject({ row: 2, column: 4 })
+  const prices = read([
+    ['Date', 'A'],
+    [FRIDAY - 14, 100],
+    [FRIDAY - 7, 110],
+    [FRIDAY, 99],
+  ])
+  expect(prices.cell(1, 0)).toMatchObject({ row: 3, column: 1 })
 })
 
 test('a block of nothing but numbers is read by place with dates down, and says so', () => {
