@@ -262,11 +262,14 @@ function squaresByDates(model: ReturnsModel, portfolio: ScaledPortfolio, pairs: 
   const count = pairs.length / 2
   const column = () => new Float64Array(count)
   const rows = (length: number) => Array.from({ length }, column)
-  const difference = column().map((_, k) => shares[pairs[2 * k]!]! - (shares[pairs[2 * k + 1]!] ?? 0))
+  const first = pairs.filter((_, k) => k % 2 === 0)
+  const second = pairs.filter((_, k) => k % 2 === 1)
+  const difference = column().map((_, k) => shares[first[k]!]! - (shares[second[k]!] ?? 0))
   const share = column()
   const contribution = column()
   const floor = column()
   const window = column()
+  const entering = column()
   const before = column()
   // the last L rows of d and L+1 of influences, each written over when it is that old
   const earlierRows = rows(lags)
@@ -276,43 +279,43 @@ function squaresByDates(model: ReturnsModel, portfolio: ScaledPortfolio, pairs: 
   const rounding = (lags + 1) * model.dates * Number.EPSILON
   let windowOfVariance = 0
 
-  // d_t = (w_i z_ti - p_i y_t) / sqrt(v), the same for j taken off; influences omega_t (d_t (y_t + F y_t) + y_t F d_t)
   for (let t = 0; t < model.dates + lags; t++) {
-    const leaving = windowRows[t % (lags + 1)]!
-    windowOfVariance += (ofVariance[t] ?? 0) - (ofVariance[t - lags - 1] ?? 0)
-    for (let k = 0; k < count; k++) window[k]! -= leaving[k]!
-    leaving.fill(0)
     if (t < model.dates) {
+      // d_t = (w_i z_ti - p_i y_t) / sqrt(v), the same for j taken off; influences omega_t (d_t (y_t + F y_t) + y_t F d_t)
       model.centredRow(t, held)
       for (let i = 0; i < held.length; i++) held[i]! *= scale[i]!
-      before.fill(0)
+      if (lags > 0) before.fill(0)
       for (let lag = 1; lag <= Math.min(lags, t); lag++) {
         const kappa = 1 - lag / (lags + 1)
         const row = earlierRows[(t - lag) % lags]!
         for (let k = 0; k < count; k++) before[k]! += kappa * row[k]!
       }
-      const entering = earlierRows[t % lags]
+      const kept = earlierRows[t % lags]
       const y = returns[t]!
-      const both = y + lagged[t]!
+      const ofItself = omega[t]! * (y + lagged[t]!)
+      const ofEarlier = omega[t]! * y
       const bound = rounding * omega[t]! * (Math.abs(y) + Math.abs(lagged[t]!))
       for (let k = 0; k < count; k++) {
-        const a = z[pairs[2 * k]!]!
-        const b = z[pairs[2 * k + 1]!]!
+        const a = z[first[k]!]!
+        const b = z[second[k]!]!
         const c = difference[k]! * y
         const d = a - b - c
-        const influence = omega[t]! * (d * both + before[k]! * y)
-        leaving[k] = influence
-        window[k]! += influence
+        entering[k] = d * ofItself + before[k]! * ofEarlier
         const noise = bound * (Math.abs(a) + Math.abs(b) + Math.abs(c))
         floor[k]! += noise * noise
-        if (entering) entering[k] = d
+        if (kept) kept[k] = d
       }
+    } else {
+      entering.fill(0)
     }
+    const leaving = windowRows[t % (lags + 1)]!
+    windowOfVariance = windowOfVariance - (ofVariance[t - lags - 1] ?? 0) + (ofVariance[t] ?? 0)
     for (let k = 0; k < count; k++) {
-      const e = window[k]!
+      const e = (window[k] = window[k]! - leaving[k]! + entering[k]!)
       const ofContribution = e + (difference[k]! / 2) * windowOfVariance
       share[k]! += e * e
       contribution[k]! += ofContribution * ofContribution
+      leaving[k] = entering[k]!
     }
   }
   const finished = (sums: Float64Array) => sums.map((sum, k) => unlessRounding(sum / (lags + 1), floor[k]!))
