@@ -1,4 +1,5 @@
 import { checkBlock, Fault } from './fault'
+import { inOneGo } from './steps'
 
 /**
  * Returns with gaps (NaN): what each series has, the covariance of each pair's own overlap, and the moments that
@@ -72,7 +73,7 @@ export interface PairwiseCovariance {
  *                 the shorter of the two
  * @source         common practice, no source
  * @cost           O(T n^2); three products a date for a pair in which neither series covers the dates of the other, else one
- * @example        finish(pairwiseCovariance(Float64Array.of(.01, .03, .02, NaN, .03, .01), 3, 2)).matrix // [0.0001, -0.0002, -0.0002, 0.0002]
+ * @example        inOneGo(pairwiseCovariance(Float64Array.of(.01, .03, .02, NaN, .03, .01), 3, 2)).matrix // [0.0001, -0.0002, -0.0002, 0.0002]
  */
 export function* pairwiseCovariance(
   returns: Float64Array,
@@ -273,7 +274,7 @@ export interface HistoryGroup {
  * @source         Stambaugh (1997), Analyzing investments whose histories differ in length, Journal of Financial Economics 45, 285-331
  *                 (method from memory); Anderson (1957), Journal of the American Statistical Association 52, 200-203 (from memory)
  * @cost           O(T n^2) for the factor, O(n^3) for the recursion
- * @example        finish(completedMoments(Float64Array.of(.01, NaN, -.02, NaN, .03, .02, .02, .01, .01, -.01), 5, 2)).means // [0.01, 0.005]
+ * @example        inOneGo(completedMoments(Float64Array.of(.01, NaN, -.02, NaN, .03, .02, .02, .01, .01, -.01), 5, 2)).means // [0.01, 0.005]
  */
 export function* completedMoments(
   returns: Float64Array,
@@ -505,8 +506,7 @@ function withoutColumn(
     }
   }
   const factor = new Float64Array(left * left)
-  // to its end at once
-  for (const _ of addRowsInPlace(factor, left, left, rows, columns, 0));
+  inOneGo(addRowsInPlace(factor, left, left, rows, columns, 0))
   return factor
 }
 

@@ -69,6 +69,7 @@ export {
 } from './series'
 export { shrinkageOf, type Shrinkage, type ShrinkageTarget } from './shrinkage'
 export { conditionOf, type Condition } from './spectrum'
+export { inOneGo, partOf } from './steps'
 export {
   cornishFisherQuantile,
   fitStudent,
@@ -79,3 +80,22 @@ export {
   type TailMethod,
   type TailRisk,
 } from './tails'
+export {
+  completedMoments,
+  historyLengths,
+  pairwiseCovariance,
+  type CompletedMoments,
+  type HistoryGroup,
+  type HistoryLengths,
+  type PairwiseCovariance,
+} from './incomplete'
+export {
+  nearestCorrelation,
+  repairCovariance,
+  shrinkToDefinite,
+  smallestEigenvalue,
+  type CovarianceRepair,
+  type NearestOptions,
+  type Repair,
+  type ShrunkCorrelation,
+} from './nearest-correlation'

@@ -1,6 +1,8 @@
 import { EigenvalueDecomposition, WrapperMatrix1D } from 'ml-matrix'
 import { Fault } from './fault'
 import { matrixModel } from './risk-model'
+import { conditionOf } from './spectrum'
+import { inOneGo, partOf } from './steps'
 
 /**
  * Matrices that are no covariance: what each pair's own dates, or views of single correlations, leave with negative
@@ -53,7 +55,7 @@ export interface NearestOptions {
  *                 Newton algorithm for the nearest correlation matrix, IMA J. Numerical Analysis 30, 94-107 (all from memory)
  * @cost           one O(n^3) eigendecomposition a step, and O(r n^2) for each of its few conjugate gradients, r the number of
  *                 negative or of positive eigenvalues, whichever is less
- * @example        finish(nearestCorrelation(Float64Array.of(1, 1, 0, 1, 1, 1, 0, 1, 1), 3)).matrix // [1, 0.76069, 0.15730, 0.76069, 1, 0.76069, 0.15730, 0.76069, 1]
+ * @example        inOneGo(nearestCorrelation(Float64Array.of(1, 1, 0, 1, 1, 1, 0, 1, 1), 3)).matrix // [1, 0.76069, 0.15730, 0.76069, 1, 0.76069, 0.15730, 0.76069, 1]
  */
 export function* nearestCorrelation(
   matrix: Float64Array,
@@ -76,7 +78,10 @@ export function* nearestCorrelation(
     given,
     Float64Array.from({ length: size }, (_, i) => 1 - given[i * size + i]!),
   )
-  if (here.y.every((shift) => shift === 0) && here.values[0]! >= -roundingOf(given, size)) {
+  if (
+    here.y.every((shift) => shift === 0) &&
+    here.values[0]! >= -size * Number.EPSILON * here.values[size - 1]!
+  ) {
     const valid = { iterations: 0, residual: 0, distance: 0, converged: true }
     return { matrix: matrix.slice(), ...valid, multipliers: here.y }
   }
@@ -307,7 +312,7 @@ export interface ShrunkCorrelation {
  * All correlations made smaller by one factor, the largest that leaves no eigenvalue below rounding: quicker than the
  * nearest correlation matrix and positive definite, but farther away.
  *
- *   S = (1 - alpha) A + alpha I,   alpha = (e - l) / (1 - l),   l the smallest eigenvalue, e = n eps |A|_inf the rounding
+ *   S = (1 - alpha) A + alpha I,   alpha = (e - l) / (1 - l),   l the smallest eigenvalue, e = 2 n eps times the largest
  *
  * With the identity as the target an eigenvalue l becomes (1 - alpha) l + alpha, so that alpha needs no search.
  *
@@ -335,25 +340,34 @@ export function shrinkToDefinite(matrix: Float64Array, size: number): ShrunkCorr
       )
     }
   }
-  const smallestBefore = smallestOf(given, size)
-  const least = roundingOf(given, size)
-  if (smallestBefore >= -least) return { matrix: matrix.slice(), intensity: 0, distance: 0, smallestBefore }
-  const intensity = (least - smallestBefore) / (1 - smallestBefore)
-  const shrunk = given.map((value, k) => (k % (size + 1) === 0 ? 1 : (1 - intensity) * value))
-  return { matrix: shrunk, intensity, distance: frobenius(given, shrunk), smallestBefore }
+  return inOneGo(shrunk(given, size))
+}
+
+function* shrunk(given: Float64Array, size: number): Generator<number, ShrunkCorrelation> {
+  const { smallest, largest } = yield* conditionOf(matrixModel(given, size))
+  if (smallest >= 0) return { matrix: given.slice(), intensity: 0, distance: 0, smallestBefore: smallest }
+  const least = 2 * size * Number.EPSILON * largest!
+  const intensity = (least - smallest) / (1 - smallest)
+  const matrix = given.map((value, k) => (k % (size + 1) === 0 ? 1 : (1 - intensity) * value))
+  return { matrix, intensity, distance: frobenius(given, matrix), smallestBefore: smallest }
 }
 
 /**
- * The smallest eigenvalue of a symmetric matrix: below zero, the matrix is no covariance.
+ * The smallest eigenvalue of a symmetric matrix, positions of variance 0 left out; below zero, the matrix is no
+ * covariance.
  *
- * @param matrix   n x n row-major, symmetric; any diagonal of 0 or more
+ * @param matrix   n x n row-major, symmetric
  * @param size     n
- * @throws Fault   "shape" | "not-a-number" | "negative-variance" | "not-symmetric"
+ * @returns        0 where rounding hides it
+ * @throws Fault   "shape" | "not-a-number" | "negative-variance" | "not-symmetric" | "out-of-range" (a covariance beside a variance of 0)
+ * @source         as `conditionOf`
  * @cost           O(n^3)
  * @example        smallestEigenvalue(Float64Array.of(2, 3, 3, 2), 2) // -1
  */
 export function smallestEigenvalue(matrix: Float64Array, size: number): number {
-  return smallestOf(symmetric(matrix, size), size)
+  const given = symmetric(matrix, size)
+  checkRiskless(given, size)
+  return inOneGo(conditionOf(matrixModel(given, size))).smallest
 }
 
 export interface CovarianceRepair {
@@ -395,7 +409,7 @@ export interface CovarianceRepair {
  * @throws Fault   "shape" | "not-a-number" | "negative-variance" | "not-symmetric" | "out-of-range" (a covariance beside a variance of 0)
  * @source         as `nearestCorrelation` and `shrinkToDefinite`; keeping the variances: common practice, no source
  * @cost           O(n^3) where nothing is wrong; else as its method
- * @example        finish(repairCovariance(Float64Array.of(.04, .04, 0, .04, .04, .04, 0, .04, .04), 3, 'nearest')).matrix[1] // 0.030428
+ * @example        inOneGo(repairCovariance(Float64Array.of(.04, .04, 0, .04, .04, .04, 0, .04, .04), 3, 'nearest')).matrix[1] // 0.030428
  */
 export function* repairCovariance(
   matrix: Float64Array,
@@ -405,18 +419,7 @@ export function* repairCovariance(
   const given = symmetric(matrix, size)
   const deviations = Float64Array.from({ length: size }, (_, i) => Math.sqrt(given[i * size + i]!))
   const moving = Array.from(deviations.keys()).filter((i) => deviations[i]! > 0)
-  for (let i = 0; i < size; i++) {
-    for (let j = 0; j < size && deviations[i] === 0; j++) {
-      if (given[i * size + j] !== 0) {
-        throw new Fault(
-          'out-of-range',
-          `risk: a covariance of ${given[i * size + j]!} beside a variance of 0`,
-          'a covariance of 0 is needed there',
-          { argument: 'risk', row: i, column: j },
-        )
-      }
-    }
-  }
+  checkRiskless(given, size)
   const n = moving.length
   const correlations = new Float64Array(n * n)
   for (const [a, i] of moving.entries()) {
@@ -424,11 +427,10 @@ export function* repairCovariance(
       correlations[a * n + b] = i === j ? 1 : given[i * size + j]! / deviations[i]! / deviations[j]!
     }
   }
-  yield 0
-  const smallestBefore = n === 0 ? 0 : smallestOf(correlations, n)
-  yield 0.05
+  const smallestBefore =
+    n === 0 ? 0 : (yield* partOf(conditionOf(matrixModel(correlations, n)), 0, 0.1)).smallest
   const same = { how, distance: 0, iterations: 0, converged: true, smallestBefore }
-  if (n === 0 || smallestBefore >= -roundingOf(correlations, n)) {
+  if (smallestBefore >= 0) {
     return {
       ...same,
       matrix: matrix.slice(),
@@ -439,8 +441,9 @@ export function* repairCovariance(
   }
   const repaired =
     how === 'nearest'
-      ? yield* within(nearestCorrelation(correlations, n), 0.05, 0.95)
-      : { ...shrinkToDefinite(correlations, n), iterations: 0, converged: true }
+      ? yield* partOf(nearestCorrelation(correlations, n), 0.1, 0.9)
+      : { ...(yield* partOf(shrunk(correlations, n), 0.1, 0.9)), iterations: 0, converged: true }
+  const { smallest: smallestAfter } = yield* partOf(conditionOf(matrixModel(repaired.matrix, n)), 0.9, 1)
   const kept = matrix.slice()
   let largestChange = null
   let most = 0
@@ -460,7 +463,7 @@ export function* repairCovariance(
     how,
     changed: true,
     smallestBefore,
-    smallestAfter: smallestOf(repaired.matrix, n),
+    smallestAfter,
     largestChange,
     distance: repaired.distance,
     iterations: repaired.iterations,
@@ -468,12 +471,20 @@ export function* repairCovariance(
   }
 }
 
-/** The progress of a part as progress of the whole. */
-function* within<R>(work: Generator<number, R>, from: number, to: number): Generator<number, R> {
-  for (;;) {
-    const step = work.next()
-    if (step.done) return step.value
-    yield from + (to - from) * step.value
+/** No covariance but 0 goes with a variance of 0. */
+function checkRiskless(matrix: Float64Array, size: number): void {
+  for (let i = 0; i < size; i++) {
+    if (matrix[i * size + i] !== 0) continue
+    for (let j = 0; j < size; j++) {
+      const covariance = matrix[i * size + j]!
+      if (covariance === 0) continue
+      throw new Fault(
+        'out-of-range',
+        `risk: a covariance of ${covariance} beside a variance of 0`,
+        'a covariance of 0 is needed there',
+        { argument: 'risk', row: i, column: j },
+      )
+    }
   }
 }
 
@@ -488,19 +499,6 @@ function eigen(matrix: Float64Array, size: number): { values: Float64Array; vect
     for (let i = 0; i < size; i++) vectors[a * size + i] = eigenvectorMatrix.get(i, a)
   }
   return { values: Float64Array.from(realEigenvalues), vectors }
-}
-
-const smallestOf = (matrix: Float64Array, size: number) => eigen(matrix, size).values[0]!
-
-/** How far below zero rounding alone may put an eigenvalue: n eps times the largest sum of absolutes in a row. */
-function roundingOf(matrix: Float64Array, size: number): number {
-  let largest = 0
-  for (let i = 0; i < size; i++) {
-    let sum = 0
-    for (let j = 0; j < size; j++) sum += Math.abs(matrix[i * size + j]!)
-    largest = Math.max(largest, sum)
-  }
-  return size * Number.EPSILON * largest
 }
 
 /** A checked copy, symmetric to the last bit: what was so within 1e-8 is averaged. */
