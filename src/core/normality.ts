@@ -102,8 +102,8 @@ const LEAST_PIVOT = 1e-10
  * @returns        a run that yields the share of the work done and ends in the result; what cannot be tested is a verdict, no fault
  * @source         Mardia (1970), Measures of Multivariate Skewness and Kurtosis with Applications, Biometrika 57(3), 519-530 (from memory)
  * @cost           O(T n^2 + T^2 n) time, T n numbers of memory; p of the skewness to 3 digits once it has thousands of degrees of freedom
- * @example        mardia(returnsModel(Float64Array.of(1, 2, 3), 3, 1)).next().value.kurtosis // 1.5
- * @example        mardia(returnsModel(Float64Array.of(1, 2, 3, 5), 2, 2)).next().value.verdict // "too-few-dates"
+ * @example        inOneGo(mardia(returnsModel(Float64Array.of(1, 2, 3), 3, 1))).kurtosis // 1.5
+ * @example        inOneGo(mardia(returnsModel(Float64Array.of(1, 2, 3, 5), 2, 2))).verdict // "too-few-dates"
  */
 export function* mardia(model: ReturnsModel): Generator<number, BlockNormality> {
   const { dates } = model

@@ -1,4 +1,5 @@
 import {
+  inOneGo,
   jarqueBera,
   logReturns,
   mardia,
@@ -8,13 +9,6 @@ import {
 } from '../../src/core'
 import { relativeGap } from '../closeness'
 import { generatedReturns, readCsv, readJson } from './data'
-
-/** A run to its end in one go. */
-function finished<T>(run: Generator<number, T>): T {
-  let step = run.next()
-  while (!step.done) step = run.next()
-  return step.value
-}
 
 const FIGURES = [
   'skewness',
@@ -37,7 +31,7 @@ interface Series {
 test('the multivariate skewness and kurtosis of Iris setosa are those printed', () => {
   const { rows } = readCsv('iris_setosa.csv')
   const model = returnsModel(Float64Array.from(rows.flat()), 50, 4)
-  const m = finished(mardia(model))
+  const m = inOneGo(mardia(model))
   expect(relativeGap(m.skewnessStatistic!, 25.6643445196298)).toBeLessThan(1e-13)
   expect(relativeGap(m.skewnessPValue!, 0.177185884467652)).toBeLessThan(1e-13)
   expect(relativeGap(m.kurtosisStatistic!, 1.29499223711605)).toBeLessThan(1e-13)
@@ -102,17 +96,17 @@ describe.each(['eu_log', 'eu_simple', 'lcg60', 'lcg120'])('normality of %s', (na
     }
   }
   test('the block', () => {
-    const m = finished(mardia(model))
+    const m = inOneGo(mardia(model))
     if (!expected.block)
       return expect(m).toMatchObject({ verdict: 'too-few-dates', skewness: null, kurtosis: null })
     compare(m, expected.block)
     expect(m.verdict).toBe('heavy-tailed')
-    compare(finished(mardia(returnsModel(returns.slice((T - 100) * n), 100, n))), expected.last100!)
+    compare(inOneGo(mardia(returnsModel(returns.slice((T - 100) * n), 100, n))), expected.last100!)
   })
 
   test('the weighting of dates does not matter to the block', () => {
     if (!expected.block) return
     const weighted = returnsModel(returns, T, n, { kind: 'exponential', decay: 0.97 })
-    compare(finished(mardia(weighted)), expected.block)
+    compare(inOneGo(mardia(weighted)), expected.block)
   })
 })
