@@ -48,3 +48,84 @@ export function textbookDecomposition(C: readonly (readonly number[])[], w: read
 export function covarianceOf(vol: readonly number[], corr: readonly (readonly number[])[]): Float64Array {
   return Float64Array.from(vol.flatMap((a, i) => vol.map((b, j) => corr[i]![j]! * a * b)))
 }
+
+const centredOf = (rows: readonly (readonly number[])[]) => {
+  const means = rows[0]!.map((_, i) => rows.reduce((a, row) => a + row[i]!, 0) / rows.length)
+  return rows.map((row) => row.map((x, i) => x - means[i]!))
+}
+const meanOf = (values: readonly number[]) => values.reduce((a, x) => a + x, 0) / values.length
+const sumOver = (n: number, term: (i: number, j: number) => number) => {
+  let sum = 0
+  for (let i = 0; i < n; i++) for (let j = 0; j < n; j++) sum += term(i, j)
+  return sum
+}
+
+/**
+ * Shrinkage by double loops over the definitions, S with divisor T; every column must move.
+ *
+ *   identity     Ledoit & Wolf (2004), J. Multivariate Analysis 88(2), section 3.3 (from memory)
+ *   oas          Chen, Wiesel, Eldar & Hero (2010), IEEE Trans. Signal Processing 58(10), eq. 23 (from memory)
+ *   correlation  Ledoit & Wolf (2004), J. Portfolio Management 30(4), appendices A and B (from memory)
+ */
+export function textbookShrinkage(
+  rows: readonly (readonly number[])[],
+  target: 'identity' | 'oas' | 'correlation',
+): { intensity: number; S: number[][]; F: number[][]; C: number[][] } {
+  const x = centredOf(rows)
+  const T = x.length
+  const n = x[0]!.length
+  const S = x[0]!.map((_, i) => x[0]!.map((_, j) => meanOf(x.map((row) => row[i]! * row[j]!))))
+  const deviation = S.map((row, i) => Math.sqrt(row[i]!))
+  const trace = S.reduce((a, row, i) => a + row[i]!, 0)
+  const r = sumOver(n, (i, j) => (i === j ? 0 : S[i]![j]! / (deviation[i]! * deviation[j]!))) / (n * (n - 1))
+  const F = S.map((row, i) =>
+    row.map((s, j) => {
+      if (target === 'correlation') return i === j ? s : r * deviation[i]! * deviation[j]!
+      return i === j ? trace / n : 0
+    }),
+  )
+  const distance = sumOver(n, (i, j) => (S[i]![j]! - F[i]![j]!) ** 2)
+  const noise = (i: number, j: number) => meanOf(x.map((row) => (row[i]! * row[j]! - S[i]![j]!) ** 2))
+  const theta = (own: number, i: number, j: number) =>
+    meanOf(x.map((row) => (row[own]! ** 2 - S[own]![own]!) * (row[i]! * row[j]! - S[i]![j]!)))
+  const intensities = {
+    identity: () => {
+      const b = sumOver(n, noise) / T
+      return Math.min(b, distance) / distance
+    },
+    oas: () => {
+      const squares = sumOver(n, (i, j) => S[i]![j]! ** 2)
+      return Math.min(
+        1,
+        ((1 - 2 / n) * squares + trace ** 2) / ((T + 1 - 2 / n) * (squares - trace ** 2 / n)),
+      )
+    },
+    correlation: () => {
+      const pi = sumOver(n, noise)
+      const rho = sumOver(n, (i, j) => {
+        if (i === j) return noise(i, i)
+        const ratio = deviation[j]! / deviation[i]!
+        return (r / 2) * (ratio * theta(i, i, j) + theta(j, i, j) / ratio)
+      })
+      return Math.max(0, Math.min(1, (pi - rho) / distance / T))
+    },
+  }
+  const intensity = intensities[target]()
+  const C = S.map((row, i) => row.map((s, j) => (1 - intensity) * s + intensity * F[i]![j]!))
+  return { intensity, S, F, C }
+}
+
+/** Lagged terms by the definition: Newey & West (1987), Econometrica 55(3), eq. 5 (from memory), divisor T. */
+export function textbookLagged(rows: readonly (readonly number[])[], lags: number): number[][] {
+  const z = centredOf(rows)
+  const T = z.length
+  const G = (k: number, i: number, j: number) =>
+    z.slice(k).reduce((a, row, t) => a + row[i]! * z[t]![j]!, 0) / T
+  return z[0]!.map((_, i) =>
+    z[0]!.map((_, j) => {
+      let c = G(0, i, j)
+      for (let k = 1; k <= lags; k++) c += (1 - k / (lags + 1)) * (G(k, i, j) + G(k, j, i))
+      return c
+    }),
+  )
+}

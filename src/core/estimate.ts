@@ -2,6 +2,7 @@ import { Fault } from './fault'
 import { laggedModel } from './lagged'
 import { returnsModel, type ReturnsModel, type RiskModel, type Weighting } from './risk-model'
 import { shrinkageOf, shrunkModel, type Shrinkage, type ShrinkageTarget } from './shrinkage'
+import { inOneGo } from './steps'
 
 /** How a covariance is estimated from returns. "lagged": a whole number of dates, 1 to 10. */
 export type Estimator =
@@ -61,13 +62,5 @@ export function estimateModel(
       const base = plain(estimator)
       return { ...base, estimator, returns: base, shrinkage: null }
     }
-  }
-}
-
-/** The result of a computation in steps, without stopping between them. */
-function inOneGo<Result>(steps: Generator<number, Result>): Result {
-  for (;;) {
-    const step = steps.next()
-    if (step.done) return step.value
   }
 }

@@ -20,7 +20,7 @@ export function generatedReturns(
   seed: number,
   n: number,
   T: number,
-): { returns: Float64Array; state: number } {
+): { returns: Float64Array; factors: Float64Array; state: number } {
   const modulus = 2147483647
   let x = seed
   const step = () => (x = (16807 * x) % modulus)
@@ -36,6 +36,7 @@ export function generatedReturns(
     return { a, b, d: 0.005 + 0.015 * u() }
   })
   const returns = new Float64Array(T * n)
+  const factors = new Float64Array(T * 3)
   for (let t = 0, k = 0; t < T; t++) {
     const f = [z(), z(), z()] as const
     let c = 0
@@ -45,10 +46,11 @@ export function generatedReturns(
     }
     const m = Math.sqrt(5 / c)
     const F = [m * (0.009 * f[0]), m * (0.005 * f[1]), m * (0.003 * f[2])] as const
+    factors.set(F, t * 3)
     for (const { a, b, d } of assets) {
       const e = z()
       returns[k++] = a + (b[0] * F[0] + b[1] * F[1] + b[2] * F[2]) + m * (d * e)
     }
   }
-  return { returns, state: x }
+  return { returns, factors, state: x }
 }
