@@ -166,6 +166,8 @@ class DataChecks {
   readonly #inView: number
   readonly #common: number
   readonly #period: string
+  /** robust scale of a return, the middle one of the series */
+  readonly #usualScale: number
   /** series that a graver suspicion explains already */
   readonly #explained = new Set<number>()
 
@@ -193,6 +195,9 @@ class DataChecks {
       })
     this.#inView = returns.rows - facts.from
     this.#common = this.#commonDates()
+    this.#usualScale = -lowerMedian(
+      this.#held.filter(({ fact }) => fact.scale > 0).map(({ fact }) => -fact.scale),
+    )
     this.#period = PERIOD_WORDS[facts.steps?.usual ?? ''] ?? 'date'
   }
 
@@ -204,7 +209,7 @@ class DataChecks {
     this.#gaps()
     this.#dates()
     this.#farReturns()
-    this.#setQuietAside()
+    for (const { series, fact } of this.#held) if (this.#isQuiet(fact)) this.#explained.add(series)
     this.#stalePrices()
     this.#serialCorrelation()
     this.#closingTimes()
@@ -608,6 +613,8 @@ class DataChecks {
     const { dates } = this.#returns
     const { steps, from } = this.#facts
     if (!dates || !steps || this.#inView < 6) return
+    // dates twice leave the others in the wrong place
+    if (steps.steps.some((step) => step <= 0)) return
     if (steps.usual === 'other') {
       const known = [...steps.steps].filter((step) => step > 0)
       this.#tellOnce(
@@ -682,6 +689,11 @@ class DataChecks {
     const candidates = this.#held
       .filter(({ series }) => !this.#explained.has(series))
       .flatMap((held) => held.fact.far.map((far) => ({ held, far })))
+      // what is wild in cash is nothing beside the others
+      .filter(
+        ({ held: { fact }, far }) =>
+          !this.#isQuiet(fact) || Math.abs(far.value - fact.median) > this.#usualScale,
+      )
     const byDate = new Map<number, number>()
     for (const { far } of candidates) byDate.set(far.row, (byDate.get(far.row) ?? 0) + 1)
     const isMarket = (row: number): boolean => {
@@ -825,10 +837,8 @@ class DataChecks {
     return change > -1 ? splitRatio(change, Math.min(0.05, Math.max(0.02, scale))) : null
   }
 
-  #setQuietAside(): void {
-    const usual = -lowerMedian(this.#held.filter(({ fact }) => fact.scale > 0).map(({ fact }) => -fact.scale))
-    for (const { series, fact } of this.#held)
-      if (fact.scale < LEAST_MOVE * usual) this.#explained.add(series)
+  #isQuiet({ scale }: SeriesFact): boolean {
+    return scale < LEAST_MOVE * this.#usualScale
   }
 
   #stalePrices(): void {
@@ -860,7 +870,7 @@ class DataChecks {
       const back = broughtBack(every, lags)
       const corrections = back >= LEAST_BROUGHT_BACK ? this.#withLags(lags) : []
       return {
-        effect: `What happens in between shows late and all at once: about ${percentText(1 / every, 0)} of what it shares with other holdings falls on the same date, so its correlations and its share of risk look smaller than they are.`,
+        effect: `What happens in between shows late and all at once: about ${percentText(1 / every, 0)} of what it shares with other holdings falls on the same date, so its correlations with them look closer to 0 than they are.`,
         remedy: `Use prices of every ${this.#period} where there are any, or returns over ${every} ${this.#period}s for the whole book${corrections.length > 0 ? `; ${countOf(lags, 'lagged term')} bring back about ${percentText(back, 0)} of what it shares` : ''}.`,
         corrections,
       }
