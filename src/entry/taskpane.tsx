@@ -1,6 +1,7 @@
 import { excelWorkbook, hostTheme, loadOnOpen, onThemeChanged, whenReady } from '../excel'
 import { openPane } from '../pane'
 import { openBooks, type Books } from '../sheet'
+import { workerCalculator } from './worker-calculator'
 
 /** Some hosts announce a change of their colours; the others are asked again whenever the pane is looked at. */
 function onThemeChange(listener: () => void): () => void {
@@ -32,7 +33,7 @@ async function start(root: HTMLElement): Promise<void> {
     root.textContent = 'Counterpoise works inside a workbook: open it from the Data tab in Excel.'
     return
   }
-  const books = await openBooks(excelWorkbook())
+  const books = await openBooks(excelWorkbook(), workerCalculator())
   openPane(root, books, { theme: hostTheme, onThemeChange, version: COUNTERPOISE_VERSION })
   startWithTable(books)
 }

@@ -1,4 +1,4 @@
-import { Fault, type FaultCode, type Weighting, type Where } from '../core'
+import { Fault, type Estimator, type FaultCode, type Where } from '../core'
 import { isBlank, PLAIN_CULTURE, type CellValue } from './cells'
 import { attempt } from './explain'
 import { plainName } from './names'
@@ -217,28 +217,54 @@ export function kindOf(given: unknown): 'simple' | 'log' {
   throw new Fault('unknown-choice', `found ${quote(kind)}`, needed, { argument: 'kind' })
 }
 
+/** Decay factor where none is given: J.P. Morgan/Reuters (1996), Technical Document, for daily data (from memory). */
+const USUAL_DECAY = 0.94
+
+const TARGETS = { identity: 'identity', correlation: 'correlation', oas: 'oas' } as const
+
 /**
- * The estimator in words: "sample", "exponential" (decay factor 0.94), "exponential 0.97" (or "0,97"); sample where it was left out.
+ * The estimator in words: "sample", "exponential" (decay factor 0.94), "exponential 0.97" (or "0,97"), "shrink identity", "shrink
+ * correlation", "shrink oas", "lagged 1" to "lagged 10"; sample where it was left out.
  *
  * @throws Fault "unknown-choice" | "out-of-range" | "shape"
  * @example worksheetFunctions.VOLATILITY(1, [[.01], [.03], [.02]], 1, 'Exponential 0,5') // 0.0063888
  */
-export function estimatorOf(given: unknown): Weighting {
+export function estimatorOf(given: unknown): Estimator {
   const argument = 'estimator'
-  const needed = '“sample”, “exponential” or “exponential 0.97” is needed'
+  const needed =
+    '“sample”, “exponential 0.97”, “shrink identity”, “shrink correlation”, “shrink oas” or “lagged 2” is needed'
   const text = choiceOf(argument, given, needed) ?? 'sample'
-  if (text === 'sample') return { kind: 'sample' }
-  if (text === 'exponential') return { kind: 'exponential', decay: 0.94 }
-  const decay = /^exponential ([-+]?\d*[.,]?\d+)$/.exec(text)?.[1]?.replace(',', '.')
-  if (decay === undefined) throw new Fault('unknown-choice', `found ${quote(text)}`, needed, { argument })
-  if (Number(decay) > 0 && Number(decay) < 1) return { kind: 'exponential', decay: Number(decay) }
-  throw new Fault(
-    'out-of-range',
-    `found a decay factor of ${decay}`,
-    'a number between 0 and 1 is needed, such as 0.94',
-    { argument },
-  )
+  const [word = '', choice = '', ...more] = text.split(' ')
+  if (more.length === 0) {
+    if (word === 'sample' && choice === '') return { kind: 'sample' }
+    if (word === 'exponential') {
+      const decay = choice === '' ? USUAL_DECAY : decimalOf(choice)
+      if (decay > 0 && decay < 1) return { kind: 'exponential', decay }
+      if (!Number.isNaN(decay))
+        throw new Fault(
+          'out-of-range',
+          `found a decay factor of ${choice}`,
+          'a number between 0 and 1 is needed, such as 0.94',
+          { argument },
+        )
+    }
+    if (word === 'shrink' && Object.hasOwn(TARGETS, choice))
+      return { kind: 'shrinkage', target: TARGETS[choice as keyof typeof TARGETS] }
+    if (word === 'lagged') {
+      const lags = decimalOf(choice)
+      if (Number.isInteger(lags) && lags >= 1 && lags <= 10) return { kind: 'lagged', lags }
+      if (!Number.isNaN(lags))
+        throw new Fault('out-of-range', `found ${choice} lags`, 'a whole number from 1 to 10 is needed', {
+          argument,
+        })
+    }
+  }
+  throw new Fault('unknown-choice', `found ${quote(text)}`, needed, { argument })
 }
+
+/** A number with a point or a comma before its decimals; NaN for anything else. */
+const decimalOf = (text: string): number =>
+  /^[-+]?\d*[.,]?\d+$/.test(text) ? Number(text.replace(',', '.')) : NaN
 
 /** A block of returns, prices or covariances as numbers, oldest row first, without its names and dates. */
 export interface Panel {

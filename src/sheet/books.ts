@@ -1,14 +1,18 @@
 import { Fault } from '../core'
+import type { BootstrapChoice } from '../core'
 import type { Breakdown } from './breakdown'
+import type { Calculator, Work } from './calculator'
+import { steppingCalculator } from './calculator'
 import type { Area, Culture } from './cells'
 import { addressOf, overlap } from './cells'
 import { explain } from './explain'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
-import type { Cause, Field, Proposal, Status, Work } from './linked-book'
+import type { Cause, Field, Proposal, Status } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
+import type { BacktestChoice, Studies } from './studies'
 import type { Json, Workbook, WorkbookEvent } from './workbook'
 import { listOf, quote } from './wording'
 
@@ -34,8 +38,10 @@ export interface BooksState {
   readonly title: string
   readonly holdings: HoldingsReading | null
   readonly returns: ReturnsReading | null
+  readonly factors: ReturnsReading | null
   readonly settings: Settings
   readonly breakdown: Breakdown | null
+  readonly studies: Studies
   /** whether names in the workbook hold the blocks of this book */
   readonly linked: boolean
   /** where the linked table lies */
@@ -53,11 +59,16 @@ export interface BooksState {
 export interface Books {
   state(): BooksState
   subscribe(listener: () => void): () => void
-  takeSelection(field: 'holdings' | 'returns' | 'capital'): Promise<void>
+  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'capital'): Promise<void>
+  /** Lets go of the block of factor returns. */
+  dropFactors(): Promise<void>
   assignRole(header: string, role: Role): Promise<void>
   markRiskless(name: string, riskless: boolean): Promise<void>
   choose(change: Partial<Settings>): Promise<void>
   compute(): Promise<void>
+  bootstrap(choice: BootstrapChoice): Promise<void>
+  /** @param of the book's own past at today's weights, or a selected block of returns and forecasts */
+  backtest(choice: BacktestChoice, of: 'this book' | 'selection'): Promise<void>
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
   reveal(area: Area): Promise<void>
   addBook(): Promise<void>
@@ -81,14 +92,18 @@ const CAUSES: readonly Cause[] = ['compute', 'edit', 'look', 'calculation']
  *
  * @throws Fault where the workbook cannot be asked for its books: going on without them would write over their links
  */
-export async function openBooks(workbook: Workbook): Promise<Books> {
-  const books = new OpenBooks(workbook)
+export async function openBooks(
+  workbook: Workbook,
+  calculator: Calculator = steppingCalculator,
+): Promise<Books> {
+  const books = new OpenBooks(workbook, calculator)
   await books.open()
   return books
 }
 
 class OpenBooks implements Books {
   readonly #workbook: Workbook
+  readonly #calculator: Calculator
   #culture: Culture = { decimal: '.', group: ',', dateOrder: 'ymd' }
   #books: LinkedBook[] = []
   #current = '1'
@@ -102,8 +117,9 @@ class OpenBooks implements Books {
   #timer: ReturnType<typeof setTimeout> | null = null
   #unwatch: (() => Promise<void>) | null = null
 
-  constructor(workbook: Workbook) {
+  constructor(workbook: Workbook, calculator: Calculator) {
     this.#workbook = workbook
+    this.#calculator = calculator
   }
 
   async open(): Promise<void> {
@@ -146,7 +162,7 @@ class OpenBooks implements Books {
   }
 
   #newBook(id: string, saved?: Json): LinkedBook {
-    return new LinkedBook(id, this.#workbook, this.#culture, saved)
+    return new LinkedBook(id, this.#workbook, this.#culture, this.#calculator, saved)
   }
 
   get #book(): LinkedBook {
@@ -179,8 +195,10 @@ class OpenBooks implements Books {
         findings: byGravity([...book.holdings.findings, ...(book.match?.findings ?? [])]),
       },
       returns: book.returns,
+      factors: book.factors,
       settings: book.settings,
       breakdown: book.breakdown,
+      studies: book.studies,
       linked: book.linked,
       table: book.table,
       status: book.status,
@@ -255,11 +273,12 @@ class OpenBooks implements Books {
         book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
       return
     }
-    const place = fieldOf(error) ?? field
+    // what a study stumbles over says nothing about the blocks
+    const place = field === 'study' ? field : (fieldOf(error) ?? field)
     const sentence = sentenceOf(error)
     if (place) book.faults = { ...book.faults, [place]: sentence }
     // a table that could not be written leaves the figures as good as they were
-    if (place === 'table' || field === 'table') return
+    if (place === 'table' || field === 'table' || field === 'study') return
     if (book.breakdown || field === undefined) book.status = { kind: 'failed', sentence, area: areaOf(error) }
   }
 
@@ -338,10 +357,14 @@ class OpenBooks implements Books {
     return parted.join(' ')
   }
 
-  takeSelection(field: 'holdings' | 'returns' | 'capital'): Promise<void> {
+  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'capital'): Promise<void> {
     return this.#command(field, async (book, work) => {
       await book.take(field, await this.#workbook.selection(), work)
     })
+  }
+
+  dropFactors(): Promise<void> {
+    return this.#command('factors', (book, work) => book.dropFactors(work))
   }
 
   assignRole(header: string, role: Role): Promise<void> {
@@ -362,20 +385,34 @@ class OpenBooks implements Books {
 
   choose(change: Partial<Settings>): Promise<void> {
     const field: Field =
-      'estimator' in change
+      'estimator' in change || 'gaps' in change || 'repair' in change
         ? 'estimator'
-        : 'lookBack' in change
-          ? 'look-back'
-          : 'periodsPerYear' in change
-            ? 'periods per year'
-            : 'capital' in change
-              ? 'capital'
-              : 'returns'
+        : 'benchmark' in change || 'convention' in change
+          ? 'benchmark'
+          : 'tails' in change
+            ? 'tails'
+            : 'lookBack' in change
+              ? 'look-back'
+              : 'periodsPerYear' in change
+                ? 'periods per year'
+                : 'capital' in change
+                  ? 'capital'
+                  : 'returns'
     return this.#command(field, (book, work) => book.choose(change, work))
   }
 
   compute(): Promise<void> {
     return this.#command(undefined, (book, work) => book.compute(work))
+  }
+
+  bootstrap(choice: BootstrapChoice): Promise<void> {
+    return this.#command('study', (book, work) => book.bootstrap(choice, work))
+  }
+
+  backtest(choice: BacktestChoice, of: 'this book' | 'selection'): Promise<void> {
+    return this.#command('study', async (book, work) => {
+      await book.backtest(choice, of === 'selection' ? await this.#workbook.selection() : null, work)
+    })
   }
 
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void> {
@@ -466,6 +503,9 @@ function fieldOf(fault: Fault): Field | null {
       return 'estimator'
     case 'look-back':
     case 'capital':
+    case 'factors':
+    case 'benchmark':
+    case 'study':
     case 'table':
       return fault.where.argument
     case 'periods_per_year':

@@ -1,19 +1,42 @@
-import { annualise, decompose, groupDecomposition } from '../core'
-import type { Decomposition, GroupDecomposition } from '../core'
-import { addressOf } from './cells'
+import { annualise, decompose, groupDecomposition, jarqueBera, NORMALITY_LEVEL } from '../core'
+import type { BlockNormality, Decomposition, GroupDecomposition, SeriesNormality } from '../core'
+import type { Bands } from './bands'
+import { bandsOf } from './bands'
+import type { Active } from './benchmark'
+import { activeOf, grossRatio, MOST_GROSS_CONTRIBUTION } from './benchmark'
+import type { Blocks, BookModel } from './book-model'
 import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
-import type { BookModel, Match } from './matching'
+import type { Match } from './matching'
 import { groupsOf, plainName, UNASSIGNED } from './names'
-import type { ReturnsReading } from './returns'
+import type { NestedGroup } from './nesting'
+import { nestedGroups } from './nesting'
+import { settingLines } from './setting-lines'
 import type { Settings } from './settings'
-import { countOf, dateText, listOf, numberText, percentText, quote } from './wording'
+import type { Tails } from './tail-section'
+import { tailsOf } from './tail-section'
+import { countOf, listOf, numberText, percentText, quote } from './wording'
 
 export interface GroupSection {
   readonly header: string
   readonly labels: readonly string[]
   readonly parts: GroupDecomposition
+}
+
+/** Contributions to risk by factor and, of what the factors leave, by holding; they add up to the volatility. */
+export interface FactorSplit {
+  readonly names: readonly string[]
+  readonly systematic: Float64Array
+  readonly specific: Float64Array
+  /** share of each holding's variance that the factors explain; NaN for a riskless one */
+  readonly explained: Float64Array
+}
+
+/** Whether the book's returns look normal, which volatility as the one measure of risk leans on. */
+export interface NormalityVerdict {
+  readonly sentence: string
+  readonly book: SeriesNormality
 }
 
 /** Everything known about a book's risk at one moment, as the pane shows it and the table prints it. */
@@ -25,6 +48,16 @@ export interface Breakdown {
   /** scaled to a year where the periods per year are known */
   readonly decomposition: Decomposition
   readonly byGroup: readonly GroupSection[]
+  /** by the chosen nesting of group columns; empty while none is chosen */
+  readonly nested: readonly NestedGroup[]
+  /** or why there are none */
+  readonly bands: Bands | string
+  /** or why there are none */
+  readonly tails: Tails | string
+  /** null while there is no benchmark */
+  readonly active: Active | null
+  readonly factors: FactorSplit | null
+  readonly normality: NormalityVerdict | null
   readonly net: number
   readonly gross: number
   /** by the year where it is the user's own, whatever the risk is scaled to */
@@ -51,17 +84,8 @@ export interface Breakdown {
   } | null
 }
 
-/** Shares of a total that nearly cancels explode; beyond this many times the total they are withheld. A convention of our own. */
-const MOST_GROSS_CONTRIBUTION = 5
-
 export const CAUTION =
   'An estimate from past returns, not advice. Local rules and licensed practice come first.'
-
-const ESTIMATORS = {
-  sample: () => 'Sample covariance: every date counts alike, divisor T \u2212 1',
-  exponential: (decay: number) =>
-    `Exponential weighting, decay factor ${decay} (half-life ${numberText(Math.log(0.5) / Math.log(decay), 1)} dates); weighted means taken off, weights sum to 1`,
-}
 
 /**
  * Computes the breakdown of a book.
@@ -73,13 +97,8 @@ const ESTIMATORS = {
  * @throws Fault  what core's decompose throws
  * @cost          one pass of the model, and one for every group
  */
-export function breakDown(
-  holdings: HoldingsReading,
-  returns: ReturnsReading,
-  match: Match,
-  book: BookModel,
-  settings: Settings,
-): Breakdown {
+export function breakDown(blocks: Blocks, book: BookModel, settings: Settings): Breakdown {
+  const { holdings, returns, match } = blocks
   const weights = Float64Array.from(holdings.holdings, ({ weight }) => weight)
   const periods = settings.periodsPerYear ?? returns.proposedPeriodsPerYear
   // what was odd in the reading changes what the figures mean, so it goes with them wherever they are written
@@ -109,8 +128,7 @@ export function breakDown(
     return { header, labels, parts: groupDecomposition(book.model, decomposition, groupOf, labels.length) }
   })
 
-  const grossContribution = decomposition.contribution.reduce((sum, c) => sum + Math.abs(c), 0)
-  const ratio = grossContribution / decomposition.volatility
+  const ratio = grossRatio(decomposition.contribution, decomposition.volatility)
   const sharesWithheld =
     decomposition.share === null
       ? 'Shares of risk are not defined: the total risk is 0.'
@@ -118,12 +136,27 @@ export function breakDown(
         ? `Shares of risk are withheld: contributions nearly cancel (without their signs they are ${numberText(ratio, 1)} times the total), so shares of the total say little. Read the contributions.`
         : null
   const negative = decomposition.share?.some((share) => share < 0) ?? false
+  const names = holdings.holdings.map(({ name }) => name)
+  const active = activeOf(holdings, book, settings, periods, findings)
+  const tails = tailsOf(book, decomposition, settings.tails, names, returns, sharesWithheld, findings)
   return {
-    names: holdings.holdings.map(({ name }) => name),
+    names,
     groups: holdings.holdings.map(({ groups }) => groups.map((label) => (label === '' ? UNASSIGNED : label))),
     groupHeaders: holdings.groupHeaders,
     decomposition,
     byGroup,
+    nested: nestedGroups(
+      book.model,
+      decomposition,
+      holdings.holdings,
+      holdings.groupHeaders,
+      settings.nesting,
+    ),
+    bands: bandsOf(book, decomposition),
+    tails,
+    active,
+    factors: factorSplit(book, decomposition),
+    normality: normalityOf(book, weights),
     net: holdings.net,
     gross: holdings.gross,
     expectedReturn: expectedReturnOf(holdings, match, book, periods, findings),
@@ -164,8 +197,8 @@ function expectedReturnOf(
       sentence: `${quote(column.header)} is blank for ${listOf(blank.map(({ name }) => quote(name)))}: the average past return is shown instead.`,
       area: blank[0]?.cell ?? null,
     })
-  if (!book.returnsModel) return null
-  const { means } = book.returnsModel
+  if (!book.history) return null
+  const { means } = book.history
   const riskless = held.filter(({ weight }, i) => weight !== 0 && (match.seriesOf[i] ?? -1) < 0)
   if (riskless.length > 0)
     findings.push({
@@ -180,61 +213,51 @@ function expectedReturnOf(
   }
 }
 
-/** The settings and conventions that the figures depend on, in words. */
-function settingLines(
-  holdings: HoldingsReading,
-  returns: ReturnsReading,
-  book: BookModel,
-  settings: Settings,
-  periods: number | null,
-): readonly (readonly [string, string])[] {
-  const { estimator, lookBack } = settings
-  const lines: [string, string][] = [
-    ['Holdings', `${addressOf(holdings.area)}: ${holdings.summary}`],
-    [
-      returns.content === 'covariance' ? 'Covariance' : 'Returns',
-      `${addressOf(returns.area)}: ${returns.summary}`,
-    ],
-  ]
-  const { window } = book
-  if (window) {
-    const span =
-      window.first === null || window.last === null
-        ? ''
-        : `, ${dateText(window.first)} to ${dateText(window.last)}`
-    lines.push(
-      [
-        'Dates used',
-        `${window.used}${span}; ${window.dropped} left out for gaps (dates common to all holdings)`,
-      ],
-      [
-        'Look-back',
-        lookBack.kind === 'all'
-          ? 'All dates'
-          : lookBack.kind === 'last'
-            ? `Last ${countOf(lookBack.dates, 'date')}`
-            : `Since ${dateText(lookBack.date)}`,
-      ],
-      [
-        'Estimator',
-        estimator.kind === 'sample' ? ESTIMATORS.sample() : ESTIMATORS.exponential(estimator.decay),
-      ],
-    )
+/** What the factors make of the volatility, and what is each holding's own. */
+function factorSplit({ factors }: BookModel, d: Decomposition): FactorSplit | null {
+  if (!factors) return null
+  const { systematic, specific } = factors.model.split(d.weights)
+  const scale = Math.sqrt(d.periodsPerYear)
+  return {
+    names: factors.names,
+    systematic: systematic.map((part) => part * scale),
+    specific: specific.map((part) => part * scale),
+    explained: factors.model.rSquared,
   }
-  lines.push([
-    'Scaling',
-    periods === null
-      ? 'Per period, not scaled'
-      : `Per period times the square root of ${numberText(periods, Number.isInteger(periods) ? 0 : 2)} periods a year${settings.periodsPerYear === null ? ' (from the dates)' : ''}; holds for returns without autocorrelation`,
-  ])
-  if (settings.riskless.length > 0)
-    lines.push(['Riskless', `${settings.riskless.join(', ')} (marked by the user)`])
-  const sums = `net ${percentText(holdings.net, 2)}, gross ${percentText(holdings.gross, 2)}`
-  lines.push([
-    'Capital',
-    holdings.capital === null
-      ? `Weights are used as they stand: ${sums}`
-      : `Weights are amounts divided by ${numberText(holdings.capital, 2)}${settings.capital === null ? ' (their sum)' : ''}: ${sums}`,
-  ])
-  return lines
+}
+
+/** What the test of all series together says, as a part of a sentence; nothing where it could not be made. */
+const TOGETHER: { readonly [V in BlockNormality['verdict']]: string } = {
+  consistent: ', and the series together pass the test of Mardia',
+  'heavy-tailed': ', and the series together have heavy tails (Mardia)',
+  'light-tailed': ', and the series together have light tails (Mardia)',
+  asymmetric: ', and the series together lean to one side (Mardia)',
+  'too-few-dates': '',
+  'dependent-positions': '',
+}
+
+/** Whether returns look normal, and what it means for shares of volatility, in plain words. */
+function normalityOf({ history, normality }: BookModel, weights: Float64Array): NormalityVerdict | null {
+  if (!history || !normality) return null
+  const book = jarqueBera(history.portfolioReturns(weights))
+  const { statistic, pValue, skewness, excessKurtosis } = book
+  if (statistic === null || pValue === null) return null
+  const tested = normality.series.flatMap((series) => series.pValue ?? [])
+  // with many series some fail by chance, so the level is divided by their number (Bonferroni)
+  const failing = tested.filter((p) => p < NORMALITY_LEVEL / tested.length).length
+  const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test${TOGETHER[normality.block.verdict]}`
+  const figures = `Jarque–Bera ${numberText(statistic, 1)}, ${pValue < 0.001 ? 'p below 0.001' : `p ${numberText(pValue, 3)}`}; skewness ${numberText(skewness ?? 0, 2)}, excess kurtosis ${numberText(excessKurtosis ?? 0, 2)}`
+  const meaning = {
+    consistent:
+      'shows no sign against a normal distribution, so shares of volatility can be read as shares of large losses too',
+    'heavy-tailed':
+      'has heavier tails than a normal distribution: large losses come oftener than its volatility suggests, and shares of volatility need not be shares of large losses',
+    'light-tailed':
+      'has lighter tails than a normal distribution: large losses come more seldom than its volatility suggests',
+    'skewed-to-losses':
+      'leans to the side of losses: they are larger than its volatility suggests, and shares of volatility need not be shares of large losses',
+    'skewed-to-gains': 'leans to the side of gains: losses are smaller than its volatility suggests',
+    'not-tested': 'could not be tested',
+  }[book.verdict]
+  return { book, sentence: `The book’s past return at today’s weights ${meaning} (${figures}). ${others}.` }
 }

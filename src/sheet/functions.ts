@@ -7,6 +7,8 @@ import {
   logReturns,
   simpleReturns,
   type Decomposition,
+  type EstimatedModel,
+  type Estimator,
   type RiskModel,
 } from '../core'
 import {
@@ -35,7 +37,9 @@ import { countOf, POSITION_HEADS } from './wording'
  * column of dates, and dated rows are put in order. Columns belong to weights by place; BREAKDOWN alone goes by name. Figures come
  * back per period, or by the year where periods_per_year is given (square root of time), as fractions. Vectors come back in the
  * orientation of weights. The estimator is "sample" (divisor T-1; the default), "exponential" or "exponential 0.97" (decay factor, 0.94
- * where none is given; weighted mean taken off, weights scaled to sum 1).
+ * where none is given; weighted mean taken off, weights scaled to sum 1), "shrink identity" (Ledoit & Wolf 2004), "shrink correlation" (toward
+ * constant correlation, Ledoit & Wolf 2003), "shrink oas" (Chen et al. 2010) or "lagged 1" to "lagged 10" (Newey & West 1987); the latter
+ * four divide by T.
  *
  * All are estimates from the numbers given, no advice.
  */
@@ -45,6 +49,10 @@ const keptBlock = blockMemo()
 interface Book {
   readonly panel: Panel
   readonly model: RiskModel
+  /** the model of the returns behind it; null for a covariance matrix */
+  readonly estimated: EstimatedModel | null
+  /** one weight a column of risk, 0 where none is given */
+  readonly weights: Float64Array
   readonly decomposition: Decomposition
   /** the column of risk that each weight belongs to */
   readonly columnOf: Int32Array
@@ -52,17 +60,17 @@ interface Book {
 }
 
 function modelOf(argument: string, risk: unknown, estimator: unknown) {
-  const weighting = estimatorOf(estimator)
+  const how: Estimator = estimatorOf(estimator)
   const kept = keptBlock(argument, cellsOf(argument, risk))
-  if (kept.panel.kind === 'covariance' && weighting.kind !== 'sample') {
+  if (kept.panel.kind === 'covariance' && how.kind !== 'sample') {
     throw new Fault(
       'unknown-choice',
-      `found “${weighting.kind}” for a covariance matrix, which has no dates to weight`,
+      'found an estimator for a covariance matrix, which is taken as given',
       'no estimator is needed',
       { argument: 'estimator' },
     )
   }
-  return { kept, weighting }
+  return { kept, how }
 }
 
 function bookOf(
@@ -74,15 +82,23 @@ function bookOf(
 ): Book {
   const { values, across } = vectorOf('weights', weights)
   const periodsPerYear = periodsOf(periods)
-  const { kept, weighting } = modelOf('risk', risk, estimator)
+  const { kept, how } = modelOf('risk', risk, estimator)
   const { panel } = kept
   const columnOf = names === undefined ? inPlace(values, panel) : byName(values, panel, names)
   refuseHiddenBlanks('risk', panel, columnOf)
 
   const placed = new Float64Array(panel.columns)
   columnOf.forEach((column, k) => (placed[column] = values[k]!))
-  const decomposition = annualise(kept.decomposition(weighting, placed), periodsPerYear)
-  return { panel, model: kept.model(weighting), decomposition, columnOf, across }
+  const decomposition = annualise(kept.decomposition(how, placed), periodsPerYear)
+  return {
+    panel,
+    model: kept.model(how),
+    estimated: kept.estimated(how),
+    weights: placed,
+    decomposition,
+    columnOf,
+    across,
+  }
 }
 
 function inPlace(weights: Float64Array, panel: Panel): Int32Array {
@@ -176,7 +192,7 @@ export function returns(prices: unknown[][], kind?: unknown): number[][] {
  * @helpurl https://localhost:3000/help.html#covariance
  * @param returns Returns as fractions: one row a period, newest last, one column a position; names and dates may come along
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n x n covariances
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "unknown-choice" | "out-of-range"
  * @source sample: NIST/SEMATECH e-Handbook of Statistical Methods, section 6.5.4.1 (from memory); exponential: J.P. Morgan/Reuters,
@@ -190,9 +206,9 @@ export function covarianceMatrix(
   estimator?: unknown,
 ): number[][] {
   const periods = periodsOf(periods_per_year)
-  const { kept, weighting } = modelOf('returns', returns, estimator)
+  const { kept, how } = modelOf('returns', returns, estimator)
   refuseHiddenBlanks('returns', kept.panel)
-  const matrix = covariance(kept.model(weighting))
+  const matrix = covariance(kept.model(how))
   return rowsOf(
     matrix.map((value) => value * periods),
     kept.panel.columns,
@@ -205,7 +221,7 @@ export function covarianceMatrix(
  * @customfunction CORRELATION
  * @helpurl https://localhost:3000/help.html#correlation
  * @param returns Returns as fractions: one row a period, newest last, one column a position; names and dates may come along
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n x n correlations; blank in the row and column of a position that never moves
  * @throws Fault as COVARIANCE
  * @source Pearson correlation: NIST/SEMATECH e-Handbook of Statistical Methods (from memory)
@@ -213,10 +229,10 @@ export function covarianceMatrix(
  * @example worksheetFunctions.CORRELATION([[.04, .03], [.03, .09]]) // [[1, 0.5], [0.5, 1]]
  */
 export function correlationMatrix(returns: unknown[][], estimator?: unknown): unknown[][] {
-  const { kept, weighting } = modelOf('returns', returns, estimator)
+  const { kept, how } = modelOf('returns', returns, estimator)
   refuseHiddenBlanks('returns', kept.panel)
   const { columns } = kept.panel
-  const matrix = correlation(kept.model(weighting))
+  const matrix = correlation(kept.model(how))
   return Array.from({ length: columns }, (_, row) =>
     Array.from(matrix.subarray(row * columns, (row + 1) * columns), orBlank),
   )
@@ -233,7 +249,7 @@ const orBlank = (value: number): number | string => (Number.isNaN(value) ? '' : 
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns Volatility as a fraction
  * @remarks s = sqrt(w'C w)
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "not-symmetric" |
@@ -259,7 +275,7 @@ export function volatility(
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n volatilities as fractions
  * @remarks |w_i| sqrt(C_ii)
  * @throws Fault as VOLATILITY
@@ -285,7 +301,7 @@ export function standalone(
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions of volatility per unit of weight
  * @remarks (C w)_i / s
  * @throws Fault as VOLATILITY | "zero-risk"
@@ -311,7 +327,7 @@ export function marginal(
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions; 0 throughout where the portfolio has no risk
  * @remarks w_i (C w)_i / s
  * @throws Fault as VOLATILITY
@@ -336,7 +352,7 @@ export function contribution(
  * @helpurl https://localhost:3000/help.html#riskshare
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions; negative for a position that reduces risk
  * @remarks w_i (C w)_i / s^2
  * @throws Fault as VOLATILITY | "zero-risk"
@@ -356,7 +372,7 @@ export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: u
  * @helpurl https://localhost:3000/help.html#beta
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n betas
  * @remarks (C w)_i / s^2
  * @throws Fault as VOLATILITY | "zero-risk"
@@ -376,7 +392,7 @@ export function beta(weights: unknown[][], risk: unknown[][], estimator?: unknow
  * @helpurl https://localhost:3000/help.html#diversification
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns One number, at least 1
  * @remarks sum of |w_i| sqrt(C_ii) / s
  * @throws Fault as VOLATILITY | "zero-risk"
@@ -395,7 +411,7 @@ export function diversification(weights: unknown[][], risk: unknown[][], estimat
  * @helpurl https://localhost:3000/help.html#effective
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns One number; below 1 where large shares of risk offset each other
  * @remarks 1 / sum of squared shares of risk
  * @throws Fault as VOLATILITY | "zero-risk"
@@ -419,7 +435,7 @@ const UNDEFINED = 'not defined'
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last) or a covariance matrix; columns go by name where it has a first row of names, else by place
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns (n+2) x 8: headings, one row a position, total
  * @remarks Names find their columns by the first row of risk where it has one (case and spacing do not count; columns that are not held may be
  * there), else by place. The total of the stand-alone column is the sum before diversification, that of the contributions the
@@ -473,7 +489,7 @@ export function breakdown(
  * @param weights Weights as fractions: one row or one column
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
- * @param estimator "sample" (the default), "exponential" or "exponential 0.97"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns (g+2) x 5: headings, one row a group, total
  * @remarks Groups stand in the order of their first position; case and spacing do not tell groups apart; positions without a group stand
  * together as "Unassigned". A group's stand-alone risk is the volatility of its positions held alone; the total of that column is the

@@ -3,18 +3,38 @@ export type * from './workbook'
 export type * from './table'
 export { attempt, explain } from './explain'
 export { worksheetFunctions } from './functions'
-export { ROLES, DEFAULT_SETTINGS } from './settings'
-export type { LookBack, Role, Settings } from './settings'
+export { DEFAULT_SETTINGS, GAP_RULES, REPAIRS, ROLES } from './settings'
+export type {
+  BenchmarkChoice,
+  EstimatorChoice,
+  GapRule,
+  LookBack,
+  RepairRule,
+  Role,
+  Settings,
+  TailChoice,
+} from './settings'
 export type { Finding } from './findings'
 export { readHoldings } from './holdings'
 export type { Holding, HoldingsColumn, HoldingsReading } from './holdings'
 export { readReturns } from './returns'
 export type { ReturnsReading } from './returns'
-export { matchHoldings, modelOf } from './matching'
+export { matchHoldings } from './matching'
+export { modelChoices, modelOf } from './book-model'
+export type { Blocks, BookModel } from './book-model'
+export { cancelledFault, jobWords, startJob, steppingCalculator } from './calculator'
+export type { Calculator, JobInput, JobKind, JobResult, Work } from './calculator'
+export { BAND } from './bands'
+export type { Bands } from './bands'
+export type { Active } from './benchmark'
+export type { NestedGroup } from './nesting'
+export { withColumn } from './nesting'
+export type { Tails } from './tail-section'
 export { breakDown, CAUTION } from './breakdown'
 export type { Breakdown, GroupSection } from './breakdown'
 export { breakdownTable } from './breakdown-table'
 export { openBooks } from './books'
 export type { Books, BooksState, Offer, Working } from './books'
 export type { Field, Status } from './linked-book'
+export type { BacktestChoice, BacktestStudy, ErrorStudy, Studies } from './studies'
 export * from './wording'

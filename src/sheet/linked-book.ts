@@ -1,28 +1,44 @@
 import { Fault } from '../core'
+import type { BootstrapChoice, Decomposition } from '../core'
 import type { Breakdown } from './breakdown'
 import { breakDown } from './breakdown'
+import type { BookModel } from './book-model'
+import { modelChoices, modelOf } from './book-model'
 import { breakdownTable } from './breakdown-table'
+import type { Calculator, Work } from './calculator'
 import type { Area, Block, CellValue, Culture } from './cells'
 import { addressOf, isBlank, overlap, sameArea } from './cells'
 import { explain } from './explain'
 import type { Finding } from './findings'
 import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
-import type { BookModel, Match } from './matching'
-import { matchHoldings, modelOf } from './matching'
+import type { Match } from './matching'
+import { matchHoldings } from './matching'
 import { growthBeside } from './growth'
 import { numberInCell } from './numbers'
 import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
 import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
+import type { BacktestChoice, Studies } from './studies'
+import { backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import { countOf, listOf, quote } from './wording'
 
 /** Where in the pane a sentence belongs. */
 export type Field =
-  'holdings' | 'returns' | 'estimator' | 'look-back' | 'periods per year' | 'capital' | 'table'
+  | 'holdings'
+  | 'returns'
+  | 'factors'
+  | 'estimator'
+  | 'look-back'
+  | 'periods per year'
+  | 'capital'
+  | 'benchmark'
+  | 'tails'
+  | 'study'
+  | 'table'
 
 export type Status =
   | { readonly kind: 'nothing linked' }
@@ -43,13 +59,10 @@ export interface Proposal {
   readonly accept: (work: Work) => Promise<void>
 }
 
-/** A long action under way: where it tells its progress and hears that it is not wanted any more. */
-export interface Work {
-  readonly signal: AbortSignal
-  progress(what: string, share: number | null): void
-}
+type Part = 'holdings' | 'returns' | 'factors' | 'table' | 'capital'
 
-type Part = 'holdings' | 'returns' | 'table' | 'capital'
+/** A block whose rows are dates. */
+type SeriesPart = 'returns' | 'factors'
 
 /** Why a book looks at its sheet again; 'look' writes nothing: at opening, and when the user has edited the written table. */
 export type Cause = 'edit' | 'look' | 'calculation' | 'compute'
@@ -83,9 +96,13 @@ export class LinkedBook {
   settings: Settings
   holdings: HoldingsReading | null = null
   returns: ReturnsReading | null = null
+  /** the returns of factors, where the book has such a block */
+  factors: ReturnsReading | null = null
   /** which series each holding goes with, as soon as both blocks are read */
   match: Match | null = null
   breakdown: Breakdown | null = null
+  /** what was computed at length about the figures that stand now */
+  studies: Studies = NO_STUDIES
   table: Area | null = null
   status: Status = { kind: 'nothing linked' }
   faults: { readonly [F in Field]?: string } = {}
@@ -99,26 +116,33 @@ export class LinkedBook {
 
   #holdingsBlock: Block | null = null
   #weightsAreFormulas = false
-  #returnsAreFormulas = false
+  readonly #seriesAreFormulas = { returns: false, factors: false }
   #capitalArea: Area | null = null
   #capitalIsFormula = false
   /** the status that only a table left behind has caused: the figures are good, and writing it ends it */
   #tableStatus: Status | null = null
   /** counts the user's edits to the blocks and the moves around them, so that figures read before one are not called up to date after it */
   #edits = 0
-  /** the returns block being read, whose edits count although it is not known yet */
-  #reading: Area | null = null
-  #model: { match: Match; returns: ReturnsReading; choices: string; book: BookModel } | null = null
+  /** the block being read, whose edits count although it is not known yet */
+  #reading: { part: SeriesPart; area: Area } | null = null
+  #model: {
+    match: Match
+    returns: ReturnsReading
+    factors: ReturnsReading | null
+    choices: string
+    book: BookModel
+  } | null = null
   #written: Table | null = null
   #unasked = 0
   readonly #asked = new Set<string>()
   /** what has changed in the sheet since it was read */
-  readonly #changed = { holdings: false, returns: false }
+  readonly #changed = { holdings: false, returns: false, factors: false }
 
   constructor(
     readonly id: string,
     readonly workbook: Workbook,
     readonly culture: Culture,
+    readonly calculator: Calculator,
     saved?: Json,
   ) {
     const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
@@ -155,14 +179,17 @@ export class LinkedBook {
     // any edit may be what the next recalculation comes from
     this.#unasked = 0
     const holdings = touches(this.holdings?.area) || touches(this.#capitalArea)
-    const returns = touches(this.returns?.area) || touches(this.#reading)
+    const touched = (part: SeriesPart): boolean =>
+      touches(this[part]?.area) || (this.#reading?.part === part && touches(this.#reading.area))
+    const [returns, factors] = [touched('returns'), touched('factors')]
     const beside =
       area !== null &&
       this.linked &&
       (this.#isJustBeyond(this.holdings?.area, area) || this.#isJustBeyond(this.returns?.area, area))
     if (holdings) this.#changed.holdings = true
     if (returns) this.#changed.returns = true
-    if (!holdings && !returns) return beside ? 'edit' : touches(this.table) ? 'look' : null
+    if (factors) this.#changed.factors = true
+    if (!holdings && !returns && !factors) return beside ? 'edit' : touches(this.table) ? 'look' : null
     this.#edits++
     if (this.breakdown) {
       const place = area ? addressOf(area) : sheet
@@ -182,16 +209,23 @@ export class LinkedBook {
     if (!this.linked || !this.breakdown || this.#unasked > MOST_UNASKED_REFRESHES) return false
     const weights = this.#weightsAreFormulas && this.holdings?.area.sheet === sheet
     const capital = this.#capitalIsFormula && this.#capitalArea?.sheet === sheet
-    const returns = this.#returnsAreFormulas && this.returns?.area.sheet === sheet
-    if (returns) this.#changed.returns = true
-    return weights || capital || returns
+    const recalculated = SERIES.filter(
+      (part) => this.#seriesAreFormulas[part] && this[part]?.area.sheet === sheet,
+    )
+    for (const part of recalculated) this.#changed[part] = true
+    return weights || capital || recalculated.length > 0
   }
 
   /** Cells, rows, columns or a sheet came, went or got another name: everything has to be looked at again. */
   heedMove(sheet: string): boolean {
     // cells that close a gap leave the block where it was, with other numbers in it
-    if (this.returns?.area.sheet === sheet || this.#reading?.sheet === sheet) this.#changed.returns = true
-    const parts = [this.holdings?.area, this.returns?.area, this.table, this.#capitalArea]
+    for (const part of SERIES)
+      if (
+        this[part]?.area.sheet === sheet ||
+        (this.#reading?.part === part && this.#reading.area.sheet === sheet)
+      )
+        this.#changed[part] = true
+    const parts = [this.holdings?.area, this.returns?.area, this.factors?.area, this.table, this.#capitalArea]
     const concerned = this.linked && parts.some((part) => part?.sheet === sheet)
     if (concerned) this.#edits++
     return concerned
@@ -200,7 +234,7 @@ export class LinkedBook {
   // ---- reading
 
   /** Takes an area the user points at as the holdings or the returns. */
-  async take(part: 'holdings' | 'returns' | 'capital', area: Area, work: Work): Promise<void> {
+  async take(part: 'holdings' | SeriesPart | 'capital', area: Area, work: Work): Promise<void> {
     if (part === 'capital') return this.#takeCapital(area, work)
     if (area.rows * area.columns === 1) {
       const [seen] = await this.workbook.look([{ at: area, region: true }])
@@ -209,14 +243,14 @@ export class LinkedBook {
         this.#propose({
           key: `${part} ${addressOf(region)}`,
           field: part,
-          sentence: `Use the filled cells around it, ${addressOf(region)}, as the ${part}?`,
+          sentence: `Use the filled cells around it, ${addressOf(region)}, as the ${PART_WORDS[part]}?`,
           button: 'Use them',
           accept: (later) => this.take(part, region, later),
         })
       throw new Fault(
         'selection',
         'found one cell',
-        `a block is needed, with all rows and columns of the ${part}`,
+        `a block is needed, with all rows and columns of the ${PART_WORDS[part]}`,
         {
           argument: part,
         },
@@ -228,10 +262,17 @@ export class LinkedBook {
       this.#holdingsBlock = block
       this.#changed.holdings = false
       this.#readHoldings()
-    } else await this.#readReturns(area, work)
+    } else await this.#readSeries(part, area, work)
     // names still hold the earlier ranges until the next compute
     this.linked = false
     this.#settle(part)
+  }
+
+  /** Lets go of the block of factor returns. */
+  async dropFactors(work: Work): Promise<void> {
+    this.factors = null
+    if (this.linked) await this.#save({ [this.keptName('factors')]: null })
+    if (this.settings.estimator.kind === 'factors') await this.choose({ estimator: { kind: 'sample' } }, work)
   }
 
   async #takeCapital(area: Area, work: Work): Promise<void> {
@@ -259,7 +300,7 @@ export class LinkedBook {
     if (this.linked) {
       await this.#save({ [this.keptName('capital')]: area })
       await this.refresh('compute', work)
-    } else if (this.breakdown) this.#compute()
+    } else if (this.breakdown) await this.#compute(work)
   }
 
   #readHoldings(): void {
@@ -273,40 +314,42 @@ export class LinkedBook {
     this.match = holdings && returns ? matchHoldings(holdings, returns, this.settings.riskless) : null
   }
 
-  async #readReturns(area: Area, work: Work): Promise<void> {
+  async #readSeries(part: SeriesPart, area: Area, work: Work): Promise<void> {
     // what is edited from now on may miss the reading
-    this.#changed.returns = false
-    this.#reading = area
+    this.#changed[part] = false
+    this.#reading = { part, area }
     try {
       const block = await this.workbook.read(area, {
         shape: true,
         signal: work.signal,
         progress: (share) => {
-          work.progress('Reading the returns', share)
+          work.progress(part === 'returns' ? 'Reading the returns' : 'Reading the factor returns', share)
         },
       })
-      this.returns = readReturns(block, this.settings, this.culture)
+      // factors are returns or prices as the content says, whatever the user has said of the other block
+      const settings = part === 'returns' ? this.settings : FACTOR_SETTINGS
+      this[part] = readReturns(block, settings, this.culture)
     } catch (fault) {
-      this.#changed.returns = true
+      this.#changed[part] = true
       throw fault
     } finally {
       this.#reading = null
     }
-    this.#match()
+    if (part === 'returns') this.#match()
     // formulas are looked for along the newest and the oldest row only: a block is filled one way
     const row = (k: number): Area => ({ ...area, row: area.row + k, rows: 1 })
     const edges = await this.workbook.look([
       { at: row(area.rows - 1), formulas: true },
       { at: row(Math.min(1, area.rows - 1)), formulas: true },
     ])
-    this.#returnsAreFormulas = edges.some((edge) => edge?.formulas?.some((cells) => cells.some(isFormula)))
+    this.#seriesAreFormulas[part] = edges.some((edge) =>
+      edge?.formulas?.some((cells) => cells.some(isFormula)),
+    )
   }
 
   /** After a block was read: what the pane says, and whether there is enough to compute from. */
-  #settle(part: 'holdings' | 'returns'): void {
-    const stop = (part === 'holdings' ? this.holdings : this.returns)?.findings.find(
-      ({ weight }) => weight === 'stops',
-    )
+  #settle(part: 'holdings' | SeriesPart): void {
+    const stop = this[part]?.findings.find(({ weight }) => weight === 'stops')
     const { [part]: gone, ...others } = this.faults
     void gone
     this.faults = stop ? { ...others, [part]: stop.sentence } : others
@@ -315,7 +358,7 @@ export class LinkedBook {
       ? {
           kind: 'stale',
           since: null,
-          sentence: `Stale: the ${part} were read anew. Compute brings the figures up to date.`,
+          sentence: `Stale: the ${PART_WORDS[part]} were read anew. Compute brings the figures up to date.`,
         }
       : { kind: 'ready' }
   }
@@ -332,13 +375,13 @@ export class LinkedBook {
       if (this.holdings) this.#settle('holdings')
     }
     if (this.returns && ('content' in change || 'orientation' in change || 'returnKind' in change)) {
-      await this.#readReturns(this.returns.area, work)
+      await this.#readSeries('returns', this.returns.area, work)
       this.#settle('returns')
     }
     if (this.linked) {
       await this.#save()
       await this.refresh('compute', work)
-    } else if (this.breakdown) this.#compute()
+    } else if (this.breakdown) await this.#compute(work)
   }
 
   /** Gives the book another title; a written table carries it. */
@@ -357,7 +400,7 @@ export class LinkedBook {
    *
    * @throws Fault with the first finding that stops
    */
-  #compute(): void {
+  async #compute(work: Work): Promise<void> {
     const { holdings, returns } = this
     if (!holdings)
       throw new Fault(
@@ -377,20 +420,70 @@ export class LinkedBook {
     for (const [field, findings] of [
       ['holdings', holdings.findings],
       ['returns', returns.findings],
+      ['factors', (this.settings.estimator.kind === 'factors' && this.factors?.findings) || []],
       ['holdings', match.findings],
     ] as const) {
       const stop = findings.find(({ weight }) => weight === 'stops')
       if (stop) throw new PlacedFault(stop, field)
     }
-    const choices = JSON.stringify([this.settings.estimator, this.settings.lookBack])
+    const { factors } = this
+    const blocks = { match, holdings, returns, factors }
+    const wanted = modelChoices(this.settings)
+    const choices = JSON.stringify(wanted)
     const known = this.#model
     const book =
-      known?.returns === returns && known.choices === choices && sameSeries(known.match, match)
+      known?.returns === returns &&
+      known.factors === factors &&
+      known.choices === choices &&
+      sameSeries(known.match, match)
         ? known.book
-        : modelOf(match, holdings, returns, this.settings)
-    this.#model = { match, returns, choices, book }
-    this.breakdown = breakDown(holdings, returns, match, book, this.settings)
+        : await modelOf(blocks, wanted, this.calculator, work)
+    this.#model = { match, returns, factors, choices, book }
+    const earlier = this.breakdown?.decomposition
+    this.breakdown = breakDown(blocks, book, this.settings)
+    if (known?.book !== book || !sameFigures(earlier, this.breakdown.decomposition)) this.studies = NO_STUDIES
     this.faults = {}
+  }
+
+  /** Draws the history anew, to see how sure the figures are. */
+  async bootstrap(choice: BootstrapChoice, work: Work): Promise<void> {
+    const { book, breakdown } = this.#computed()
+    const study = await bootstrapStudy(
+      book,
+      breakdown.decomposition,
+      breakdown.bands,
+      choice,
+      this.calculator,
+      work,
+    )
+    this.studies = { ...this.studies, bootstrap: study }
+  }
+
+  /** Forecasts the past at today's weights, or tests the forecasts in a block. */
+  async backtest(choice: BacktestChoice, given: Area | null, work: Work): Promise<void> {
+    if (given) {
+      const block = await this.workbook.read(given, { shape: true, signal: work.signal })
+      const reading = readReturns(block, { ...FACTOR_SETTINGS, content: 'returns' }, this.culture)
+      const stop = reading.findings.find(({ weight }) => weight === 'stops')
+      if (stop) throw new PlacedFault(stop, 'study')
+      this.studies = { ...this.studies, backtest: givenBacktest(reading, choice.confidence) }
+      return
+    }
+    const { book, breakdown } = this.#computed()
+    const study = await backtestStudy(
+      book,
+      breakdown.decomposition,
+      choice,
+      this.settings,
+      this.calculator,
+      work,
+    )
+    this.studies = { ...this.studies, backtest: study }
+  }
+
+  #computed(): { book: BookModel; breakdown: Breakdown } {
+    if (this.#model && this.breakdown) return { book: this.#model.book, breakdown: this.breakdown }
+    throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'study' })
   }
 
   /** Computes on the user's word, links the ranges, and brings a written table along. */
@@ -401,11 +494,15 @@ export class LinkedBook {
       return
     }
     if (this.#changed.holdings && this.holdings) await this.take('holdings', this.holdings.area, work)
-    if (this.#changed.returns && this.returns) await this.take('returns', this.returns.area, work)
-    this.#compute()
+    for (const part of SERIES) {
+      const block = this[part]
+      if (this.#changed[part] && block) await this.take(part, block.area, work)
+    }
+    await this.#compute(work)
     await this.#save({
       [this.keptName('holdings')]: this.holdings?.area ?? null,
       [this.keptName('returns')]: this.returns?.area ?? null,
+      [this.keptName('factors')]: this.factors?.area ?? null,
       [this.keptName('capital')]: this.#capitalArea,
     })
     this.linked = true
@@ -432,14 +529,16 @@ export class LinkedBook {
     if (cause === 'compute') this.#unasked = 0
     const edits = this.#edits
     const kept = (part: Part): { at: Area | { kept: string } } => ({ at: { kept: this.keptName(part) } })
-    const [holdings, returns, table, capital] = await this.workbook.look([
+    const [holdings, returns, table, capital, factors] = await this.workbook.look([
       { ...kept('holdings'), values: true, shape: true, formulas: true, region: true },
       { ...kept('returns'), region: true },
       { ...kept('table'), formulas: true },
       { ...kept('capital'), values: true, formulas: true },
+      kept('factors'),
     ])
     if (!holdings) throw goneFault('holdings')
     if (!returns) throw goneFault('returns')
+    if (!factors && this.settings.estimator.kind === 'factors') throw goneFault('factors')
     if (!capital && this.#capitalArea)
       throw new Fault(
         'missing',
@@ -471,9 +570,13 @@ export class LinkedBook {
       sameArea(before.area, holdings.area) &&
       sameValues(before.values, holdings.values ?? []) &&
       !capitalMoved
-    const sameReturns =
-      this.returns !== null && sameArea(this.returns.area, returns.area) && !this.#changed.returns
-    if (cause === 'calculation' && sameHoldings && sameReturns) return
+    const stands = (part: SeriesPart, seen: Seen | null | undefined): boolean =>
+      seen
+        ? this[part] !== null && sameArea(this[part].area, seen.area) && !this.#changed[part]
+        : this[part] === null
+    const sameReturns = stands('returns', returns)
+    const sameFactors = stands('factors', factors)
+    if (cause === 'calculation' && sameHoldings && sameReturns && sameFactors) return
     if (cause === 'calculation' && ++this.#unasked > MOST_UNASKED_REFRESHES) {
       this.status = {
         kind: 'failed',
@@ -491,9 +594,11 @@ export class LinkedBook {
     }
     this.#changed.holdings = false
     this.#readHoldings()
-    if (!sameReturns) await this.#readReturns(returns.area, work)
+    if (!sameReturns) await this.#readSeries('returns', returns.area, work)
+    if (!factors) this.factors = null
+    else if (!sameFactors) await this.#readSeries('factors', factors.area, work)
     this.table = table?.area ?? null
-    this.#compute()
+    await this.#compute(work)
     this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
     if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
@@ -632,6 +737,7 @@ export class LinkedBook {
     for (const [part, source] of [
       ['holdings', this.holdings?.area],
       ['returns', this.returns?.area],
+      ['factor returns', this.factors?.area],
       ['capital', this.#capitalArea],
     ] as const)
       if (source && overlap(area, source))
@@ -652,7 +758,7 @@ export class LinkedBook {
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
   forget(): WritePlan {
-    const parts: Part[] = ['holdings', 'returns', 'table', 'capital']
+    const parts: Part[] = ['holdings', 'returns', 'factors', 'table', 'capital']
     return {
       patches: [],
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
@@ -715,16 +821,29 @@ const areaOfTable = ({ sheet, row, column }: Area, table: Table): Area => ({
 const isFormula = (value: CellValue): boolean =>
   typeof value === 'string' && value.startsWith('=') && value.length > 1
 
-const goneFault = (part: 'holdings' | 'returns'): Fault =>
+const SERIES: readonly SeriesPart[] = ['returns', 'factors']
+
+const PART_WORDS = { holdings: 'holdings', returns: 'returns', factors: 'factor returns' } as const
+
+const FACTOR_SETTINGS = { content: null, orientation: null, returnKind: 'simple' } as const
+
+const goneFault = (part: 'holdings' | SeriesPart): Fault =>
   new Fault(
     'missing',
-    `the range of the ${part} is gone: its cells or its sheet were deleted`,
-    `select the ${part} again and use the selection`,
+    `the range of the ${PART_WORDS[part]} is gone: its cells or its sheet were deleted`,
+    `select the ${PART_WORDS[part]} again and use the selection`,
     { argument: part },
   )
 
 const sameSeries = (a: Match, b: Match): boolean =>
   a.seriesOf.length === b.seriesOf.length && a.seriesOf.every((series, i) => series === b.seriesOf[i])
+
+/** Whether two decompositions are of the same weights, scaled alike. */
+const sameFigures = (a: Decomposition | undefined, b: Decomposition): boolean =>
+  a !== undefined &&
+  a.periodsPerYear === b.periodsPerYear &&
+  a.weights.length === b.weights.length &&
+  a.weights.every((weight, i) => weight === b.weights[i])
 
 const sameValues = (a: Block['values'], b: Block['values']): boolean =>
   a.length === b.length &&

@@ -1,10 +1,11 @@
 import {
   decompose,
+  estimateModel,
   matrixModel,
-  returnsModel,
   type Decomposition,
+  type EstimatedModel,
+  type Estimator,
   type RiskModel,
-  type Weighting,
 } from '../core'
 import { panelOf, type Cells, type Panel } from './blocks'
 
@@ -12,9 +13,11 @@ import { panelOf, type Cells, type Panel } from './blocks'
 export interface KeptBlock {
   readonly panel: Panel
   /** @throws Fault those of the models */
-  model(weighting: Weighting): RiskModel
+  model(estimator: Estimator): RiskModel
+  /** The same, where the block holds returns. */
+  estimated(estimator: Estimator): EstimatedModel | null
   /** @throws Fault those of the models and of `decompose` */
-  decomposition(weighting: Weighting, weights: Float64Array): Decomposition
+  decomposition(estimator: Estimator, weights: Float64Array): Decomposition
 }
 
 interface Entry extends KeptBlock {
@@ -45,16 +48,18 @@ export function blockMemo(): (argument: string, cells: Cells) => KeptBlock {
 }
 
 function entryOf(panel: Panel, cells: CellsCopy): Entry {
-  let models: { readonly key: string; readonly model: RiskModel; seen: Decomposition[] }[] = []
-  const made = (weighting: Weighting) => {
-    const key = JSON.stringify(weighting)
+  let models: {
+    readonly key: string
+    readonly model: RiskModel
+    readonly estimated: EstimatedModel | null
+    seen: Decomposition[]
+  }[] = []
+  const made = (estimator: Estimator) => {
+    const key = JSON.stringify(estimator)
     const { kind, values, rows, columns } = panel
-    const one = models.find((other) => other.key === key) ?? {
-      key,
-      model:
-        kind === 'covariance' ? matrixModel(values, columns) : returnsModel(values, rows, columns, weighting),
-      seen: [],
-    }
+    const known = models.find((other) => other.key === key)
+    const estimated = known || kind === 'covariance' ? null : estimateModel(values, rows, columns, estimator)
+    const one = known ?? { key, model: estimated ?? matrixModel(values, columns), estimated, seen: [] }
     models = [one, ...models.filter((other) => other !== one)].slice(0, MOST_MODELS)
     return one
   }
@@ -62,9 +67,10 @@ function entryOf(panel: Panel, cells: CellsCopy): Entry {
     panel,
     cells,
     bytes: () => cells.bytes + panel.values.byteLength * (1 + models.length),
-    model: (weighting) => made(weighting).model,
-    decomposition(weighting, weights) {
-      const one = made(weighting)
+    model: (estimator) => made(estimator).model,
+    estimated: (estimator) => made(estimator).estimated,
+    decomposition(estimator, weights) {
+      const one = made(estimator)
       const known = one.seen.find((d) => d.weights.every((weight, k) => weight === weights[k]))
       const d = known ?? decompose(one.model, weights)
       one.seen = [d, ...one.seen.filter((other) => other !== d)].slice(0, MOST_DECOMPOSITIONS)

@@ -1,4 +1,4 @@
-import type { Weighting } from '../core'
+import type { ActiveConvention, Estimator, TailMethod } from '../core'
 import type { Json } from './workbook'
 
 /** What a column of the holdings block holds. */
@@ -21,9 +21,34 @@ export type LookBack =
   | { readonly kind: 'last'; readonly dates: number }
   | { readonly kind: 'since'; readonly date: number }
 
+/** What the covariance is estimated by; 'factors' needs the book's block of factor returns. */
+export type EstimatorChoice = Estimator | { readonly kind: 'factors' }
+
+/** What is done about dates on which some holding has no return. */
+export const GAP_RULES = ['common dates', 'own overlap', 'completed'] as const
+export type GapRule = (typeof GAP_RULES)[number]
+
+/** How a matrix of pairs that does not hold together is mended. */
+export const REPAIRS = ['nearest', 'shrunk'] as const
+export type RepairRule = (typeof REPAIRS)[number]
+
+/** What the book is measured against; 'column': the benchmark weights of the holdings block, where it has any. */
+export type BenchmarkChoice =
+  { readonly kind: 'column' } | { readonly kind: 'none' } | { readonly kind: 'series'; readonly name: string }
+
+export interface TailChoice {
+  readonly method: TailMethod
+  /** above 0.5, below 1 */
+  readonly confidence: number
+  /** the horizon; more than 1 only where the method scales */
+  readonly periods: number
+}
+
 /** Everything a user chooses about one book; saved with the link. null means: take what the block itself suggests. */
 export interface Settings {
-  readonly estimator: Weighting
+  readonly estimator: EstimatorChoice
+  readonly gaps: GapRule
+  readonly repair: RepairRule
   readonly lookBack: LookBack
   readonly periodsPerYear: number | null
   readonly content: 'returns' | 'prices' | 'covariance' | null
@@ -35,10 +60,17 @@ export interface Settings {
   readonly riskless: readonly string[]
   /** roles the user has changed, by the column's header */
   readonly roles: { readonly [header: string]: Role }
+  readonly benchmark: BenchmarkChoice
+  readonly convention: ActiveConvention
+  readonly tails: TailChoice
+  /** group columns one within the other, by their headers, outermost first; empty: each column by itself */
+  readonly nesting: readonly string[]
 }
 
 export const DEFAULT_SETTINGS: Settings = {
   estimator: { kind: 'sample' },
+  gaps: 'common dates',
+  repair: 'nearest',
   lookBack: { kind: 'all' },
   periodsPerYear: null,
   content: null,
@@ -47,6 +79,10 @@ export const DEFAULT_SETTINGS: Settings = {
   capital: null,
   riskless: [],
   roles: {},
+  benchmark: { kind: 'column' },
+  convention: 'total returns',
+  tails: { method: { kind: 'historical' }, confidence: 0.95, periods: 1 },
+  nesting: [],
 }
 
 type Tree = { readonly [key: string]: Json }
@@ -71,9 +107,7 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     if (value === null && saved[key] !== undefined && saved[key] !== null) unread.push(key)
     return value
   }
-  const estimator = treeOf(saved.estimator)
   const lookBack = treeOf(saved.lookBack)
-  const decay = positive(estimator.decay)
   const dates = positive(lookBack.dates)
   const date = positive(lookBack.date)
   const roles: [string, Role][] = []
@@ -83,15 +117,9 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     else roles.push([header, known])
   }
   const settings: Settings = {
-    estimator:
-      read<Weighting>(
-        'estimator',
-        estimator.kind === 'sample'
-          ? { kind: 'sample' }
-          : estimator.kind === 'exponential' && decay !== null && decay < 1
-            ? { kind: 'exponential', decay }
-            : null,
-      ) ?? DEFAULT_SETTINGS.estimator,
+    estimator: read('estimator', estimatorFrom(saved.estimator)) ?? DEFAULT_SETTINGS.estimator,
+    gaps: read('gaps', oneOf(saved.gaps, GAP_RULES)) ?? DEFAULT_SETTINGS.gaps,
+    repair: read('repair', oneOf(saved.repair, REPAIRS)) ?? DEFAULT_SETTINGS.repair,
     lookBack:
       read<LookBack>(
         'lookBack',
@@ -108,18 +136,73 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     returnKind: read('returnKind', oneOf(saved.returnKind, ['simple', 'log'])) ?? 'simple',
     orientation: read('orientation', oneOf(saved.orientation, ['dates down', 'dates across'])),
     capital: read('capital', positive(saved.capital)),
-    riskless:
-      read('riskless', Array.isArray(saved.riskless) ? saved.riskless : null)?.filter(
-        (name): name is string => typeof name === 'string',
-      ) ?? DEFAULT_SETTINGS.riskless,
+    riskless: read('riskless', textsFrom(saved.riskless)) ?? DEFAULT_SETTINGS.riskless,
     // entry by entry: assigning to a heading such as "__proto__" would lose it
     roles: Object.fromEntries(roles),
+    benchmark: read('benchmark', benchmarkFrom(saved.benchmark)) ?? DEFAULT_SETTINGS.benchmark,
+    convention:
+      read('convention', oneOf(saved.convention, ['total returns', 'benchmark-relative returns'])) ??
+      DEFAULT_SETTINGS.convention,
+    tails: read('tails', tailsFrom(saved.tails)) ?? DEFAULT_SETTINGS.tails,
+    nesting: read('nesting', textsFrom(saved.nesting)) ?? DEFAULT_SETTINGS.nesting,
   }
   return { settings, unread }
+}
+
+const textsFrom = (json: Json | undefined): readonly string[] | null =>
+  Array.isArray(json) ? json.filter((text): text is string => typeof text === 'string') : null
+
+function estimatorFrom(json: Json | undefined): EstimatorChoice | null {
+  const { kind, decay, target, lags } = treeOf(json)
+  switch (kind) {
+    case 'sample':
+    case 'factors':
+      return { kind }
+    case 'exponential': {
+      const factor = positive(decay)
+      return factor !== null && factor < 1 ? { kind, decay: factor } : null
+    }
+    case 'shrinkage': {
+      const known = oneOf(target, ['identity', 'correlation', 'oas'])
+      return known && { kind, target: known }
+    }
+    case 'lagged': {
+      const count = positive(lags)
+      return count !== null && Number.isInteger(count) && count <= 10 ? { kind, lags: count } : null
+    }
+    default:
+      return null
+  }
+}
+
+function benchmarkFrom(json: Json | undefined): BenchmarkChoice | null {
+  const { kind, name } = treeOf(json)
+  if (kind === 'column' || kind === 'none') return { kind }
+  return kind === 'series' && typeof name === 'string' ? { kind, name } : null
+}
+
+function tailsFrom(json: Json | undefined): TailChoice | null {
+  const saved = treeOf(json)
+  const method = treeOf(saved.method)
+  const degrees = positive(method.degrees)
+  const plain = oneOf(method.kind, ['normal', 'historical', 'cornish-fisher'])
+  const known: TailMethod | null =
+    plain !== null
+      ? { kind: plain }
+      : method.kind === 'student' && (method.degrees === null || (degrees !== null && degrees > 2))
+        ? { kind: 'student', degrees }
+        : null
+  const confidence = positive(saved.confidence)
+  const periods = positive(saved.periods)
+  return known && confidence !== null && confidence > 0.5 && confidence < 1 && periods !== null
+    ? { method: known, confidence, periods }
+    : null
 }
 
 export const settingsToJson = (settings: Settings): Json => ({
   ...settings,
   estimator: { ...settings.estimator },
   lookBack: { ...settings.lookBack },
+  benchmark: { ...settings.benchmark },
+  tails: { ...settings.tails, method: { ...settings.tails.method } },
 })

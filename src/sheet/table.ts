@@ -1,4 +1,4 @@
-import type { CellValue } from './cells'
+import type { Area, CellValue } from './cells'
 
 /** How a cell of a written table is set off; a host maps it to fonts, fills and rules of its own. */
 export type Mark = 'title' | 'head' | 'total' | 'note' | 'alert'
@@ -9,6 +9,8 @@ export interface TableCell {
   /** number format in the en-US notation; text cells carry '@' */
   readonly format: string
   readonly mark?: Mark
+  /** where a press on the cell leads */
+  readonly link?: Area
 }
 
 /** A rectangle of cells as plain data: what is written to a sheet, shown in the pane or copied. */
@@ -19,4 +21,6 @@ export interface Table {
   readonly widths: readonly number[]
   /** columns (from 0) whose numbers line up right; headings follow them */
   readonly numeric: readonly boolean[]
+  /** how far each row is folded under those before it, 0 outermost; absent where nothing folds */
+  readonly levels?: readonly number[]
 }

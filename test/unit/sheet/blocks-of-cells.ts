@@ -1,3 +1,5 @@
+import type { Blocks, Settings } from '../../../src/sheet'
+import { modelChoices, modelOf, steppingCalculator } from '../../../src/sheet'
 import type { Area, Block, CellValue } from '../../../src/sheet'
 
 /** A block of cells lying at A1 of a sheet, rows as typed; short rows are filled with blanks. */
@@ -16,3 +18,10 @@ export function blockOf(
 
 export const ENGLISH = { decimal: '.', group: ',', dateOrder: 'mdy' } as const
 export const GERMAN = { decimal: ',', group: '.', dateOrder: 'dmy' } as const
+
+/** A calculator's caller who never cancels and looks at no progress. */
+export const idleWork = () => ({ signal: new AbortController().signal, progress: () => undefined })
+
+/** The model of blocks as a book computes it. */
+export const modelFor = (blocks: Omit<Blocks, 'factors'> & Partial<Blocks>, settings: Settings) =>
+  modelOf({ factors: null, ...blocks }, modelChoices(settings), steppingCalculator, idleWork())

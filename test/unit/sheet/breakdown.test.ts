@@ -4,11 +4,10 @@ import {
   breakdownTable,
   DEFAULT_SETTINGS,
   matchHoldings,
-  modelOf,
   readHoldings,
   readReturns,
 } from '../../../src/sheet'
-import { blockOf, ENGLISH } from './blocks-of-cells'
+import { blockOf, ENGLISH, modelFor } from './blocks-of-cells'
 
 // Every block here is typed for its test.
 
@@ -20,13 +19,14 @@ const RETURNS: CellValue[][] = [
 ]
 
 /** The written table, a line for each row: its filled cells. */
-function printed(rows: CellValue[][], change: Partial<Settings> = {}): string[] {
+async function printed(rows: CellValue[][], change: Partial<Settings> = {}): Promise<string[]> {
   const settings = { ...DEFAULT_SETTINGS, ...change }
   const holdings = readHoldings(blockOf(rows), settings, ENGLISH)
   const returns = readReturns(blockOf(RETURNS, 'Returns'), settings, ENGLISH)
   const match = matchHoldings(holdings, returns, settings.riskless)
-  const model = modelOf(match, holdings, returns, settings)
-  return breakdownTable('Book', breakDown(holdings, returns, match, model, settings)).cells.map((row) =>
+  const blocks = { holdings, returns, match, factors: null }
+  const model = await modelFor(blocks, settings)
+  return breakdownTable('Book', breakDown(blocks, model, settings)).cells.map((row) =>
     row
       .map(({ value }) => value)
       .filter((value) => value !== '')
@@ -40,15 +40,15 @@ const AMOUNTS: CellValue[][] = [
   ['Orchard', 400],
 ]
 
-test('what amounts are divided by is printed with the settings', () => {
-  expect(printed(AMOUNTS)).toContain(
+test('what amounts are divided by is printed with the settings', async () => {
+  expect(await printed(AMOUNTS)).toContain(
     'Capital | Weights are amounts divided by 1,000.00 (their sum): net 100.00%, gross 100.00%',
   )
-  expect(printed(AMOUNTS, { capital: 2000 })).toContain(
+  expect(await printed(AMOUNTS, { capital: 2000 })).toContain(
     'Capital | Weights are amounts divided by 2,000.00: net 50.00%, gross 50.00%',
   )
   expect(
-    printed([
+    await printed([
       ['Holding', 'Weight'],
       ['Meadow', 0.6],
       ['Orchard', 0.3],
@@ -56,32 +56,32 @@ test('what amounts are divided by is printed with the settings', () => {
   ).toContain('Capital | Weights are used as they stand: net 90.00%, gross 90.00%')
 })
 
-test('an expected return of the user’s own is by the year, whatever the risk is scaled to', () => {
+test('an expected return of the user’s own is by the year, whatever the risk is scaled to', async () => {
   const rows: CellValue[][] = [
     ['Holding', 'Weight', 'Expected return'],
     ['Meadow', 0.5, 0.06],
     ['Orchard', 0.5, 0.04],
   ]
   const line = /^Expected return .* \| Expected return \(column “Expected return”\)$/
-  expect(printed(rows).find((row) => line.test(row))).toMatch(/^Expected return a year \| 0\.05 /)
-  expect(printed(rows, { periodsPerYear: 12 }).find((row) => line.test(row))).toMatch(
+  expect((await printed(rows)).find((row) => line.test(row))).toMatch(/^Expected return a year \| 0\.05 /)
+  expect((await printed(rows, { periodsPerYear: 12 })).find((row) => line.test(row))).toMatch(
     /^Expected return a year \| 0\.05 /,
   )
 })
 
-test('an average of past returns is per period until the periods per year are known', () => {
+test('an average of past returns is per period until the periods per year are known', async () => {
   const rows: CellValue[][] = [
     ['Holding', 'Weight'],
     ['Meadow', 0.5],
     ['Orchard', 0.5],
   ]
   const last = (lines: string[]) => lines.find((row) => row.endsWith('| Average past return, not a forecast'))
-  expect(last(printed(rows))).toMatch(/^Expected return per period \| /)
-  expect(last(printed(rows, { periodsPerYear: 12 }))).toMatch(/^Expected return a year \| /)
+  expect(last(await printed(rows))).toMatch(/^Expected return per period \| /)
+  expect(last(await printed(rows, { periodsPerYear: 12 }))).toMatch(/^Expected return a year \| /)
 })
 
-test('a warning from reading the blocks stands in the table as well', () => {
-  const lines = printed([
+test('a warning from reading the blocks stands in the table as well', async () => {
+  const lines = await printed([
     ['Holding', 'Weight'],
     ['Meadow', 60],
     ['Orchard', 40],

@@ -4,10 +4,10 @@ import { worksheetFunctions } from '../../../src/sheet/functions'
 
 jest.mock('../../../src/core', () => {
   const actual = jest.requireActual<typeof core>('../../../src/core')
-  return { ...actual, returnsModel: jest.fn(actual.returnsModel), decompose: jest.fn(actual.decompose) }
+  return { ...actual, estimateModel: jest.fn(actual.estimateModel), decompose: jest.fn(actual.decompose) }
 })
 
-const models = core.returnsModel as jest.MockedFunction<typeof core.returnsModel>
+const models = core.estimateModel as jest.MockedFunction<typeof core.estimateModel>
 const decompositions = core.decompose as jest.MockedFunction<typeof core.decompose>
 const call = (id: string, ...args: unknown[]): unknown =>
   (worksheetFunctions[id] as (...given: unknown[]) => unknown)(...args)

@@ -488,9 +488,9 @@ describe('refusals name the argument, the place, what was found and what is need
     ],
     [
       'an estimator not known here',
-      ['VOLATILITY', half, R, 1, 'Shrink identity'],
+      ['VOLATILITY', half, R, 1, 'Shrink everything'],
       'unknown-choice',
-      'estimator: found “shrink identity”; “sample”, “exponential” or “exponential 0.97” is needed.',
+      'estimator: found “shrink everything”; “sample”, “exponential 0.97”, “shrink identity”, “shrink correlation”, “shrink oas” or “lagged 2” is needed.',
     ],
     [
       'a decay factor of 1',
@@ -502,13 +502,13 @@ describe('refusals name the argument, the place, what was found and what is need
       'an estimator that is a number',
       ['VOLATILITY', half, R, 1, 0.97],
       'unknown-choice',
-      'estimator: found 0.97; “sample”, “exponential” or “exponential 0.97” is needed.',
+      'estimator: found 0.97; “sample”, “exponential 0.97”, “shrink identity”, “shrink correlation”, “shrink oas” or “lagged 2” is needed.',
     ],
     [
       'an estimator for a covariance matrix',
       ['VOLATILITY', half, C, 1, 'exponential'],
       'unknown-choice',
-      'estimator: found “exponential” for a covariance matrix, which has no dates to weight; no estimator is needed.',
+      'estimator: found an estimator for a covariance matrix, which is taken as given; no estimator is needed.',
     ],
     [
       'no periods',

@@ -1,6 +1,5 @@
-import { Fault } from '../../../src/core'
 import type { CellValue } from '../../../src/sheet'
-import { DEFAULT_SETTINGS, matchHoldings, modelOf, readHoldings, readReturns } from '../../../src/sheet'
+import { matchHoldings, readHoldings, readReturns } from '../../../src/sheet'
 import { groupsOf } from '../../../src/sheet/names'
 import { blockOf, ENGLISH } from './blocks-of-cells'
 
@@ -55,62 +54,6 @@ test('without names on one side, place decides, and only when the numbers are th
     'Returns!A1:B3: found 2 series for 3 holdings; without names on both sides as many are needed, in the same order.',
   ])
   expect([...matchHoldings(held('A', 'Cash', 'B'), nameless, ['Cash']).seriesOf]).toEqual([0, -1, 1])
-})
-
-test('a holding marked riskless has zero variance and needs no series', () => {
-  const holdings = held('A', 'Cash')
-  const returns = series('A', 'B')
-  const { model } = modelOf(matchHoldings(holdings, returns, ['cash']), holdings, returns, DEFAULT_SETTINGS)
-  expect(model.variances()[1]).toBe(0)
-  expect(model.variances()[0]).toBeGreaterThan(0)
-})
-
-test('a series that never moves counts as riskless, with a warning at its heading', () => {
-  const holdings = held('A', 'Cash')
-  const returns = returnsOf([['A', 'Cash'], [0.01, 0], [-0.02, 0], [0.03, 0]]) // prettier-ignore
-  const book = modelOf(matchHoldings(holdings, returns, []), holdings, returns, DEFAULT_SETTINGS)
-  expect(told(book, 'warns')).toEqual([
-    'Returns!B1: the returns of “Cash” never change, so it counts as riskless.',
-  ])
-})
-
-test('as many holdings as dates is warned of', () => {
-  const holdings = held('A', 'B', 'C', 'D', 'E')
-  const returns = series('A', 'B', 'C', 'D', 'E')
-  const book = modelOf(matchHoldings(holdings, returns, []), holdings, returns, DEFAULT_SETTINGS)
-  expect(told(book, 'warns')[0]).toMatch(
-    /^4 dates for 5 holdings: too few to tell all the correlations apart/,
-  )
-})
-
-test('a look-back by date wants dates, one longer than the data is told', () => {
-  const [holdings, returns] = [held('A', 'B'), series('A', 'B')]
-  const match = matchHoldings(holdings, returns, [])
-  const since = { ...DEFAULT_SETTINGS, lookBack: { kind: 'since', date: 46000 } } as const
-  expect(() => modelOf(match, holdings, returns, since)).toThrow(Fault)
-  const longer = { ...DEFAULT_SETTINGS, lookBack: { kind: 'last', dates: 99 } } as const
-  expect(told(modelOf(match, holdings, returns, longer), 'warns')[0]).toBe(
-    'The look-back of 99 dates reaches further than the 4 there are.',
-  )
-})
-
-test('a look-back that leaves no returns says so at its own field, with the dates there are', () => {
-  const holdings = held('A', 'B')
-  const returns = returnsOf([
-    ['Month', 'A', 'B'],
-    [46022, 0.01, 0.02],
-    [46053, -0.02, 0.01],
-    [46081, 0.03, -0.01],
-  ])
-  const settings = { ...DEFAULT_SETTINGS, lookBack: { kind: 'since', date: 47484 } } as const
-  const compute = () => modelOf(matchHoldings(holdings, returns, []), holdings, returns, settings)
-  expect(compute).toThrow(
-    expect.objectContaining({
-      found: 'found 0 dates of returns within the look-back',
-      needed: 'at least 2 of the 3 there are, 31 Dec 2025 to 28 Feb 2026, are needed',
-      where: { argument: 'look-back' },
-    }),
-  )
 })
 
 test('groups are numbered as they come, alike but for case and spacing, blanks together', () => {

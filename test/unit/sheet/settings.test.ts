@@ -12,6 +12,12 @@ test('settings come back from a workbook as they were saved', () => {
     capital: 1000,
     riskless: ['Cash'],
     roles: { Stake: 'weight' },
+    gaps: 'own overlap',
+    repair: 'shrunk',
+    benchmark: { kind: 'series', name: 'Index' },
+    convention: 'benchmark-relative returns',
+    tails: { method: { kind: 'student', degrees: null }, confidence: 0.99, periods: 4 },
+    nesting: ['Region', 'Class'],
   }
   const saved = JSON.parse(JSON.stringify(settingsToJson(settings))) as Parameters<typeof settingsFromJson>[0]
   expect(settingsFromJson(saved)).toEqual({ settings, unread: [] })
@@ -40,6 +46,32 @@ test('roles survive whatever their heading is called', () => {
     ['__proto__', 'weight'],
     ['constructor', 'name'],
   ])
+})
+
+test.each<Settings['estimator']>([
+  { kind: 'sample' },
+  { kind: 'factors' },
+  { kind: 'shrinkage', target: 'correlation' },
+  { kind: 'lagged', lags: 10 },
+])('the estimator %j is read back', (estimator) => {
+  expect(settingsFromJson(settingsToJson({ ...DEFAULT_SETTINGS, estimator })).settings.estimator).toEqual(
+    estimator,
+  )
+})
+
+test.each([
+  ['estimator', { kind: 'shrinkage', target: 'zero' }],
+  ['estimator', { kind: 'lagged', lags: 11 }],
+  ['estimator', { kind: 'lagged', lags: 1.5 }],
+  ['gaps', 'filled'],
+  ['repair', 'hammer'],
+  ['benchmark', { kind: 'series' }],
+  ['convention', 'mine'],
+  ['tails', { method: { kind: 'student', degrees: 2 }, confidence: 0.99, periods: 1 }],
+  ['tails', { method: { kind: 'normal' }, confidence: 0.4, periods: 1 }],
+  ['nesting', 'Region'],
+])('%s %j falls back to its default and is named', (key, value) => {
+  expect(settingsFromJson({ [key]: value })).toEqual({ settings: DEFAULT_SETTINGS, unread: [key] })
 })
 
 test('riskless holdings that are no list are named as unread', () => {

@@ -1,0 +1,53 @@
+import { shareDifferences, standardErrors } from '../core'
+import type { Decomposition } from '../core'
+import type { BookModel } from './book-model'
+
+/** How sure the figures are: standard errors, scaled as the figures are. A 95% band is a figure and 1.96 of its errors either way. */
+export interface Bands {
+  readonly volatility: number
+  readonly contribution: Float64Array
+  /** null where shares are not defined */
+  readonly share: Float64Array | null
+  /** positions from the largest contribution down */
+  readonly order: readonly number[]
+  /** for the k-th of them: whether the band of its difference from the next holds 0, so that their order is not told apart */
+  readonly tied: readonly boolean[]
+  /** what has to be said beside them, or null */
+  readonly note: string | null
+}
+
+/** Two-sided 95% of a normal distribution: NIST/SEMATECH e-Handbook of Statistical Methods, section 1.3.6.7.1 (from memory). */
+export const BAND = 1.959963984540054
+
+/**
+ * The error bands of a decomposition, from the returns behind the model.
+ *
+ * @param d  scaled as it is shown; the bands come scaled alike
+ * @returns  or the sentence why there are none
+ * @cost     two passes of the returns, and O(T) a position for the ranks
+ */
+export function bandsOf(book: BookModel, d: Decomposition): Bands | string {
+  const { precision } = book
+  if (typeof precision === 'string') return precision
+  if (d.volatility === 0) return 'There is no risk whose error could be told.'
+  const { model, lags, note } = precision
+  const scale = Math.sqrt(d.periodsPerYear)
+  const errors = standardErrors(model, d.weights, lags)
+  const order = [...d.contribution.keys()].sort((a, b) => d.contribution[b]! - d.contribution[a]! || a - b)
+  const pairs = Int32Array.from(order.slice(1).flatMap((next, k) => [order[k]!, next]))
+  const differences = errors.share === null ? null : shareDifferences(model, d.weights, pairs, lags)
+  return {
+    volatility: errors.volatility * scale,
+    contribution: errors.contribution.map((error) => error * scale),
+    share: d.share === null ? null : errors.share,
+    order,
+    tied: order.map((position, k) => {
+      const next = order[k + 1]
+      if (next === undefined || differences === null || d.share === null) return false
+      const difference = d.share[position]! - d.share[next]!
+      // equal and certain, as two riskless positions are, is no tie of ranks
+      return differences[k]! > 0 && difference <= BAND * differences[k]!
+    }),
+    note,
+  }
+}

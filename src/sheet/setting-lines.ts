@@ -1,0 +1,91 @@
+import type { BookModel } from './book-model'
+import { GAP_WORDS } from './book-model'
+import { addressOf } from './cells'
+import type { HoldingsReading } from './holdings'
+import type { ReturnsReading } from './returns'
+import type { EstimatorChoice, Settings } from './settings'
+import { countOf, dateText, numberText, percentText } from './wording'
+
+const TARGETS = {
+  identity: 'a multiple of the identity (Ledoit & Wolf 2004)',
+  correlation: 'constant correlation, variances kept (Ledoit & Wolf 2003)',
+  oas: 'a multiple of the identity (Chen, Wiesel, Eldar & Hero 2010)',
+} as const
+
+/** What the covariance is estimated by, as one line. */
+export function estimatorText(estimator: EstimatorChoice): string {
+  switch (estimator.kind) {
+    case 'sample':
+      return 'Sample covariance: every date counts alike, divisor T \u2212 1'
+    case 'exponential':
+      return `Exponential weighting, decay factor ${estimator.decay} (half-life ${numberText(Math.log(0.5) / Math.log(estimator.decay), 1)} dates); weighted means taken off, weights sum to 1`
+    case 'population':
+      return 'Every date counts alike, divisor T'
+    case 'shrinkage':
+      return `Shrinkage of the covariance (divisor T) toward ${TARGETS[estimator.target]}`
+    case 'lagged':
+      return `${countOf(estimator.lags, 'lagged term')} with falling weights (Newey & West 1987), divisor T`
+    case 'factors':
+      return 'Factor model: exposures by least squares, what they leave counts as uncorrelated between holdings'
+  }
+}
+
+/** The settings and conventions that the figures depend on, as label and value. */
+export function settingLines(
+  holdings: HoldingsReading,
+  returns: ReturnsReading,
+  book: BookModel,
+  settings: Settings,
+  periods: number | null,
+): readonly (readonly [string, string])[] {
+  const { estimator, lookBack } = settings
+  const lines: (readonly [string, string])[] = [
+    ['Holdings', `${addressOf(holdings.area)}: ${holdings.summary}`],
+    [
+      returns.content === 'covariance' ? 'Covariance' : 'Returns',
+      `${addressOf(returns.area)}: ${returns.summary}`,
+    ],
+  ]
+  const { window } = book
+  if (window) {
+    const span =
+      window.first === null || window.last === null
+        ? ''
+        : `, ${dateText(window.first)} to ${dateText(window.last)}`
+    lines.push(
+      [
+        'Dates used',
+        `${window.used}${span}${window.dropped > 0 ? `; ${window.dropped} left out for gaps` : ''}`,
+      ],
+      ['Rule for gaps', sentenceCase(GAP_WORDS[settings.gaps])],
+      [
+        'Look-back',
+        lookBack.kind === 'all'
+          ? 'All dates'
+          : lookBack.kind === 'last'
+            ? `Last ${countOf(lookBack.dates, 'date')}`
+            : `Since ${dateText(lookBack.date)}`,
+      ],
+      ['Estimator', estimatorText(estimator)],
+      ...book.quality,
+    )
+  }
+  lines.push([
+    'Scaling',
+    periods === null
+      ? 'Per period, not scaled'
+      : `Per period times the square root of ${numberText(periods, Number.isInteger(periods) ? 0 : 2)} periods a year${settings.periodsPerYear === null ? ' (from the dates)' : ''}; holds for returns without autocorrelation`,
+  ])
+  if (settings.riskless.length > 0)
+    lines.push(['Riskless', `${settings.riskless.join(', ')} (marked by the user)`])
+  const sums = `net ${percentText(holdings.net, 2)}, gross ${percentText(holdings.gross, 2)}`
+  lines.push([
+    'Capital',
+    holdings.capital === null
+      ? `Weights are used as they stand: ${sums}`
+      : `Weights are amounts divided by ${numberText(holdings.capital, 2)}${settings.capital === null ? ' (their sum)' : ''}: ${sums}`,
+  ])
+  return lines
+}
+
+const sentenceCase = (text: string): string => text.charAt(0).toUpperCase() + text.slice(1)

@@ -1,0 +1,113 @@
+import { tailRisk } from '../core'
+import type { Decomposition, TailRisk } from '../core'
+import type { BookModel } from './book-model'
+import { attempt, explain } from './explain'
+import type { Finding } from './findings'
+import type { ReturnsReading } from './returns'
+import type { TailChoice } from './settings'
+import { countOf, numberText, percentText, quote } from './wording'
+
+/** The tail of the book's return, for the horizon and the confidence that were chosen. Losses are positive. */
+export interface Tails {
+  readonly risk: TailRisk
+  /** what the figures are, such as "95% confidence, 1 week, historical" */
+  readonly label: string
+  /** how they are computed, in words */
+  readonly method: string
+  /** why parts and shares are not shown, or null */
+  readonly partsWithheld: string | null
+  /** where shares of shortfall and of volatility part most, as a sentence; null where nothing parts them */
+  readonly difference: string | null
+}
+
+/** Fewer tail observations than this are told beside the figure; fewer than the second withhold its parts. Our own convention. */
+const FEW = 10
+const TOO_FEW = 5
+
+/** A share of shortfall this far from the share of volatility is pointed out. Our own convention. */
+const FAR = 0.02
+
+/**
+ * Value at risk and expected shortfall of a book with their parts.
+ *
+ * @param d  per period or scaled: shares alone are used
+ * @returns  or the sentence why there are none
+ */
+export function tailsOf(
+  book: BookModel,
+  d: Decomposition,
+  choice: TailChoice,
+  names: readonly string[],
+  returns: ReturnsReading,
+  sharesWithheld: string | null,
+  findings: Finding[],
+): Tails | string {
+  const { value: risk, fault } = attempt(() => tailRisk(book.model, d.weights, choice, book.history))
+  if (fault) return explain(fault, () => '')
+  const few = risk.tailObservations !== null && risk.tailObservations < FEW
+  const observations = numberText(risk.tailObservations ?? 0, 1)
+  if (few)
+    findings.push({
+      weight: 'warns',
+      sentence: `The tail figures at ${percentText(choice.confidence, 1)} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
+      area: null,
+    })
+  return {
+    risk,
+    label: `${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence, ${horizonOf(choice.periods, returns)}`,
+    method: methodText(risk),
+    partsWithheld:
+      risk.parts === null
+        ? risk.shortfall === null
+          ? 'This method gives no expected shortfall, and so no parts of it.'
+          : null
+        : risk.tailObservations !== null && risk.tailObservations < TOO_FEW
+          ? `Parts are withheld: ${observations} dates lie in the tail, and each part would be the accident of one or two of them.`
+          : sharesWithheld,
+    difference: differenceOf(risk, d, names),
+  }
+}
+
+const confidenceDigits = (confidence: number): number =>
+  Number((confidence * 100).toFixed(6)) % 1 === 0
+    ? 0
+    : Number((confidence * 1000).toFixed(6)) % 1 === 0
+      ? 1
+      : 2
+
+const PERIODS: { readonly [frequency: string]: string } = {
+  daily: 'day',
+  weekly: 'week',
+  monthly: 'month',
+  quarterly: 'quarter',
+  yearly: 'year',
+}
+
+/** The horizon in the book's own periods. */
+export const horizonOf = (periods: number, returns: ReturnsReading): string =>
+  countOf(periods, PERIODS[returns.frequency.split(',')[0] ?? ''] ?? 'period')
+
+function methodText(risk: TailRisk): string {
+  switch (risk.method.kind) {
+    case 'normal':
+      return 'Normal distribution with the volatility of the model, mean taken as zero'
+    case 'student':
+      return risk.degrees === Infinity
+        ? 'Student distribution fitted to the book’s returns: no tails fatter than normal were found, so it is the normal one'
+        : `Student distribution with ${numberText(risk.degrees ?? 0, 1)} degrees of freedom${risk.method.degrees === null ? ', fitted to the book’s returns,' : ''} and the volatility of the model, mean taken as zero`
+    case 'historical':
+      return `Past returns at today’s weights, every date counting alike: ${numberText(risk.tailObservations ?? 0, 1)} dates in the tail`
+    case 'cornish-fisher':
+      return `Normal distribution corrected for skewness ${numberText(risk.skewness ?? 0, 2)} and excess kurtosis ${numberText(risk.excessKurtosis ?? 0, 2)}, mean taken as zero`
+  }
+}
+
+function differenceOf(risk: TailRisk, d: Decomposition, names: readonly string[]): string | null {
+  const { shares } = risk
+  if (shares === null || d.share === null) return null
+  const { share } = d
+  const gaps = shares.map((value, i) => value - (share[i] ?? 0))
+  const most = gaps.reduce((best, gap, i) => (Math.abs(gap) > Math.abs(gaps[best] ?? 0) ? i : best), 0)
+  if (Math.abs(gaps[most] ?? 0) < FAR) return null
+  return `Shares of large losses are not those of volatility: ${quote(names[most] ?? '')} has ${percentText(share[most] ?? 0, 1)} of the volatility but ${percentText(shares[most] ?? 0, 1)} of the expected shortfall.`
+}

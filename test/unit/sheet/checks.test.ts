@@ -1,0 +1,1 @@
+import { mersenne, xoroshiro128plus } from 'pure-rand'
