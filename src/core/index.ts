@@ -23,7 +23,7 @@ export {
   type Spread,
 } from './bootstrap'
 export { Fault, type FaultCode, type Where } from './fault'
-export { kernelForm, type KernelForm } from './kernel/block'
+export { kernelForm, type KernelForm, type Sums } from './kernel/block'
 export { momentsOf, type Moments } from './moments'
 export { jarqueBera, mardia, NORMALITY_LEVEL, type BlockNormality, type SeriesNormality } from './normality'
 export {

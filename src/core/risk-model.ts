@@ -78,7 +78,9 @@ export interface ReturnsModel extends RiskModel {
  * @throws Fault "out-of-range" where the sum of stand-alone volatilities is too large to be squared
  */
 export function roundingOfVariance(model: RiskModel, weights: Float64Array): number {
-  const gross = model.variances().reduce((sum, c, i) => sum + Math.abs(weights[i]!) * Math.sqrt(c), 0)
+  const variances = model.variances()
+  let gross = 0
+  for (let i = 0; i < variances.length; i++) gross += Math.abs(weights[i]!) * Math.sqrt(variances[i]!)
   if (Number.isFinite(gross * gross)) return model.rounding * gross * gross
   throw new Fault(
     'out-of-range',

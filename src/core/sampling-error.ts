@@ -55,7 +55,7 @@ export const RISK_BAND = 1.959964
  * @example        standardErrors(returnsModel(Float64Array.of(.01, 0, -.02, .01, .01, -.01), 3, 2), Float64Array.of(.5, .5)).share // [0.35355, 0.35355]
  */
 export function standardErrors(model: ReturnsModel, weights: Float64Array, lags = 0): StandardErrors {
-  const effectiveDates = 1 / model.rowWeights.reduce((sum, omega) => sum + omega * omega, 0)
+  const effectiveDates = 1 / sumOfSquares(model.rowWeights)
   const portfolio = scaledPortfolio(model, weights, lags)
   if (!portfolio) {
     return { volatility: 0, contribution: new Float64Array(model.size), share: null, effectiveDates }
@@ -141,14 +141,17 @@ function scaledPortfolio(model: ReturnsModel, weights: Float64Array, lags: numbe
   const marginals = new Float64Array(model.size)
   const returns = model.portfolioReturns(weights, marginals)
   const lagged = earlier(returns, lags)
-  const variance = returns.reduce((sum, y, t) => sum + omega[t]! * y * (y + 2 * lagged[t]!), 0)
+  let variance = 0
+  for (let t = 0; t < model.dates; t++) variance += omega[t]! * returns[t]! * (returns[t]! + 2 * lagged[t]!)
   // as a decomposition: digits that rounding made carry no information
   if (correction * variance <= roundingOfVariance(model, weights)) return null
 
   const perRoot = 1 / Math.sqrt(variance)
-  for (let t = 0; t < returns.length; t++) {
-    returns[t]! *= perRoot
-    lagged[t]! *= perRoot
+  const ofVariance = new Float64Array(model.dates)
+  for (let t = 0; t < model.dates; t++) {
+    const y = (returns[t]! *= perRoot)
+    const before = (lagged[t]! *= perRoot)
+    ofVariance[t] = omega[t]! * (y * (y + 2 * before) - 1)
   }
   if (lags > 0) {
     const later = earlier(returns.slice().reverse(), lags).reverse()
@@ -170,7 +173,7 @@ function scaledPortfolio(model: ReturnsModel, weights: Float64Array, lags: numbe
     scale,
     covariances: marginals,
     shares: marginals.map((c, i) => scale[i]! * c),
-    ofVariance: returns.map((y, t) => omega[t]! * (y * (y + 2 * lagged[t]!) - 1)),
+    ofVariance,
   }
 }
 
@@ -205,6 +208,7 @@ function earlier(series: Float64Array, lags: number): Float64Array {
  * over either end included, divided by L+1: the same number, never below zero.
  */
 function longRunSquares(series: Float64Array, lags: number): number {
+  if (lags === 0) return sumOfSquares(series)
   let window = 0
   let total = 0
   for (let t = 0; t < series.length + lags; t++) {
@@ -326,13 +330,22 @@ function squaresByDates(model: ReturnsModel, portfolio: ScaledPortfolio, pairs: 
   }
 }
 
-function varianceSquares({ lags, omega, returns, ofVariance }: ScaledPortfolio): number {
-  const rounding = (lags + 1) * returns.length * Number.EPSILON
-  const largest = ofVariance.reduce(
-    (sum, e, t) => sum + (Math.abs(e) + omega[t]!) * (Math.abs(e) + omega[t]!),
-    0,
-  )
-  return unlessRounding(longRunSquares(ofVariance, lags), rounding ** 2 * largest)
+/** Of the variance itself, scaled. */
+function varianceSquares({ lags, omega, ofVariance }: ScaledPortfolio): number {
+  const rounding = (lags + 1) * omega.length * Number.EPSILON
+  let largest = 0
+  for (let t = 0; t < omega.length; t++) {
+    const bound = Math.abs(ofVariance[t]!) + omega[t]!
+    largest += bound * bound
+  }
+  return unlessRounding(longRunSquares(ofVariance, lags), rounding * rounding * largest)
+}
+
+// Written out: beside a streaming pass a callback for every date would show.
+function sumOfSquares(values: Float64Array): number {
+  let sum = 0
+  for (let t = 0; t < values.length; t++) sum += values[t]! * values[t]!
+  return sum
 }
 
 /** Each position with the empty one. */
