@@ -1,6 +1,8 @@
-import { useState, type ReactNode } from 'react'
+import { Suspense, useId, useState, type ReactNode } from 'react'
 import { Button, Field, Input, makeStyles, mergeClasses, Select, tokens } from '@fluentui/react-components'
+import { ChevronDown16Regular, ChevronRight16Regular } from '@fluentui/react-icons'
 import { Sentence } from './place'
+import { useKept } from './store'
 
 const useStyles = makeStyles({
   section: { display: 'grid', rowGap: tokens.spacingVerticalS, minWidth: 0 },
@@ -28,6 +30,39 @@ const useStyles = makeStyles({
     ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '1px' },
   },
   inside: { paddingTop: tokens.spacingVerticalS },
+  folded: { borderTop: `1px solid ${tokens.colorNeutralStroke2}`, minWidth: 0 },
+  foldedHead: { margin: 0, font: 'inherit' },
+  fold: {
+    display: 'grid',
+    gridTemplateColumns: '16px minmax(0, 1fr)',
+    columnGap: tokens.spacingHorizontalXS,
+    width: '100%',
+    padding: `${tokens.spacingVerticalS} 0`,
+    border: 'none',
+    background: 'none',
+    font: 'inherit',
+    color: 'inherit',
+    textAlign: 'left',
+    cursor: 'pointer',
+    ':hover': { backgroundColor: tokens.colorNeutralBackground3 },
+    ':focus-visible': { outline: `2px solid ${tokens.colorStrokeFocus2}`, outlineOffset: '-2px' },
+  },
+  foldIcon: { marginTop: '3px' },
+  headline: {
+    gridColumn: 2,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    fontVariantNumeric: 'tabular-nums',
+    color: tokens.colorNeutralForeground2,
+    overflowWrap: 'anywhere',
+  },
+  foldedInside: {
+    display: 'grid',
+    rowGap: tokens.spacingVerticalL,
+    minWidth: 0,
+    padding: `${tokens.spacingVerticalS} 0 ${tokens.spacingVerticalXXL}`,
+  },
+  waiting: { color: tokens.colorNeutralForeground3 },
   control: { minWidth: 0, width: '100%' },
 })
 
@@ -80,11 +115,55 @@ export function Disclosure({
   )
 }
 
+/**
+ * A section that is folded away to its title and its headline figure, and stays as the user left it while the pane is open. What is
+ * inside may come in a chunk of its own: it is asked for when the section is opened.
+ */
+export function Folded({
+  title,
+  headline,
+  children,
+}: {
+  title: string
+  headline: string
+  children: ReactNode
+}) {
+  const classes = useStyles()
+  const [open, setOpen] = useKept(`open: ${title}`, false)
+  const id = useId()
+  const Chevron = open ? ChevronDown16Regular : ChevronRight16Regular
+  return (
+    <section className={classes.folded} aria-labelledby={`${id}title`}>
+      <h2 className={classes.foldedHead}>
+        <button
+          type="button"
+          className={classes.fold}
+          aria-expanded={open}
+          aria-controls={open ? `${id}inside` : undefined}
+          onClick={() => setOpen(!open)}
+        >
+          <Chevron className={classes.foldIcon} aria-hidden />
+          <span id={`${id}title`} className={classes.title}>
+            {title}
+          </span>
+          <span className={classes.headline}>{headline}</span>
+        </button>
+      </h2>
+      {open && (
+        <div id={`${id}inside`} className={classes.foldedInside}>
+          <Suspense fallback={<span className={classes.waiting}>Drawing…</span>}>{children}</Suspense>
+        </div>
+      )}
+    </section>
+  )
+}
+
 /** A choice of one among a few, with the sentence of a fault below it. */
 export function Choice<T extends string>({
   label,
   value,
   choices,
+  more = [],
   hint,
   fault,
   choose,
@@ -92,11 +171,20 @@ export function Choice<T extends string>({
   label: string
   value: T
   choices: readonly (readonly [T, string])[]
+  /** further ones, under headings */
+  more?: readonly { readonly heading: string; readonly choices: readonly (readonly [T, string])[] }[]
   hint?: string | undefined
   fault?: string | undefined
   choose: (value: T) => void
 }) {
   const classes = useStyles()
+  const all = [...choices, ...more.flatMap((group) => group.choices)]
+  const options = (of: typeof choices) =>
+    of.map(([choice, text]) => (
+      <option key={choice} value={choice}>
+        {text}
+      </option>
+    ))
   return (
     <Field
       label={label}
@@ -109,14 +197,15 @@ export function Choice<T extends string>({
         className={classes.control}
         value={value}
         onChange={(_, data) => {
-          const chosen = choices.find(([choice]) => choice === data.value)
+          const chosen = all.find(([choice]) => choice === data.value)
           if (chosen) choose(chosen[0])
         }}
       >
-        {choices.map(([choice, text]) => (
-          <option key={choice} value={choice}>
-            {text}
-          </option>
+        {options(choices)}
+        {more.map((group) => (
+          <optgroup key={group.heading} label={group.heading}>
+            {options(group.choices)}
+          </optgroup>
         ))}
       </Select>
     </Field>

@@ -1,25 +1,26 @@
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import { countOf, dateText, numberText, percentText, type Breakdown } from '../sheet'
 import { Disclosure } from './controls'
+import { Headline } from './headline'
+import { bandText } from './measure'
 import { Findings, Sentence } from './place'
+import { NONE } from './positions'
 
 const useStyles = makeStyles({
   block: { display: 'grid', rowGap: tokens.spacingVerticalM, minWidth: 0 },
-  pair: { display: 'grid', gridTemplateColumns: '1fr 1fr', columnGap: tokens.spacingHorizontalL, margin: 0 },
-  // The figure first, its label below: labels of one and two lines leave the two figures on one line.
-  figure: { display: 'flex', flexDirection: 'column-reverse', justifyContent: 'flex-end', minWidth: 0 },
   label: {
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
     color: tokens.colorNeutralForeground2,
   },
   value: { margin: 0, fontVariantNumeric: 'tabular-nums', fontWeight: tokens.fontWeightSemibold },
-  big: { fontSize: tokens.fontSizeHero800, lineHeight: tokens.lineHeightHero800 },
-  // the smaller figure stands on the line of the larger
-  beside: {
-    fontSize: tokens.fontSizeBase600,
-    lineHeight: `calc(${tokens.lineHeightHero800} - 5px)`,
-    paddingTop: '5px',
+  band: {
+    margin: 0,
+    marginTop: `calc(-1 * ${tokens.spacingVerticalXS})`,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    fontVariantNumeric: 'tabular-nums',
+    color: tokens.colorNeutralForeground2,
   },
   rows: { margin: 0, display: 'grid' },
   row: {
@@ -37,14 +38,25 @@ const useStyles = makeStyles({
   settingLabel: { color: tokens.colorNeutralForeground3 },
 })
 
-const NONE = '–'
-
 function datesLine(dates: Breakdown['dates']): string {
   if (!dates) return 'from a covariance matrix'
   const { used, dropped, first, last } = dates
   const span = first !== null && last !== null ? `, ${dateText(first)} to ${dateText(last)}` : ''
   const left = dropped > 0 ? `; ${dropped} left out` : ''
   return `${countOf(used, 'date')}${span}${left}`
+}
+
+/** How sure the volatility is, or why that is not known. */
+function Band({ breakdown: { bands, decomposition } }: { breakdown: Breakdown }) {
+  const classes = useStyles()
+  return (
+    <p className={classes.band}>
+      {typeof bands === 'string'
+        ? `No error band: ${bands.charAt(0).toLowerCase()}${bands.slice(1)}`
+        : `95% band ${bandText(decomposition.volatility, bands.volatility, 2)}, standard error ${percentText(bands.volatility, 2)}.`}
+      {typeof bands !== 'string' && bands.note !== null && ` ${bands.note}`}
+    </p>
+  )
 }
 
 /** The portfolio's own figures, with what they rest on. */
@@ -64,20 +76,16 @@ export function Figures({ breakdown }: { breakdown: Breakdown }) {
   ]
   return (
     <div className={classes.block}>
-      <dl className={classes.pair}>
-        <div className={classes.figure}>
-          <dt className={classes.label}>Volatility {breakdown.horizon}</dt>
-          <dd className={mergeClasses(classes.value, classes.big)}>{percentText(d.volatility, 2)}</dd>
-        </div>
-        {expectedReturn && (
-          <div className={classes.figure}>
-            <dt className={classes.label}>{expectedReturn.label}</dt>
-            <dd className={mergeClasses(classes.value, classes.beside)}>
-              {percentText(expectedReturn.value, 2)}
-            </dd>
-          </div>
-        )}
-      </dl>
+      <Headline
+        leading
+        figures={[
+          [`Volatility ${breakdown.horizon}`, percentText(d.volatility, 2)],
+          ...(expectedReturn
+            ? ([[expectedReturn.label, percentText(expectedReturn.value, 2)]] as const)
+            : []),
+        ]}
+      />
+      <Band breakdown={breakdown} />
       <dl className={classes.rows}>
         {rows.map(([label, value, remark]) => (
           <div key={label} className={classes.row}>

@@ -1,9 +1,11 @@
-import type { Breakdown } from '../sheet'
+import { BAND, percentText, type Bands, type Breakdown } from '../sheet'
 
 /** The figure that positions are ranked and drawn by. */
 export interface Measure {
   readonly label: 'Share of risk' | 'Contribution to risk'
   readonly values: Float64Array
+  /** standard errors of the values; null where they are not known */
+  readonly errors: Float64Array | null
   readonly digits: number
   /** whether it is measured on the scale of weights, so that the two can be drawn side by side */
   readonly comparable: boolean
@@ -13,12 +15,22 @@ export interface Measure {
 export const digitsFor = (positions: number): number => (positions > 60 ? 2 : 1)
 
 /** Shares of risk; contributions where shares are withheld or there is no risk to share. */
-export function measureOf({ decomposition: d, sharesWithheld }: Breakdown): Measure {
-  return d.share && sharesWithheld === null
-    ? { label: 'Share of risk', values: d.share, digits: digitsFor(d.weights.length), comparable: true }
+export function measureOf(breakdown: Breakdown): Measure {
+  const { decomposition: d } = breakdown
+  const shares = sharesOf(breakdown)
+  const bands = bandsOf(breakdown)
+  return shares
+    ? {
+        label: 'Share of risk',
+        values: shares,
+        errors: bands?.share ?? null,
+        digits: digitsFor(d.weights.length),
+        comparable: true,
+      }
     : {
         label: 'Contribution to risk',
         values: d.contribution,
+        errors: bands?.contribution ?? null,
         digits: digitsFor(d.weights.length) + 1,
         comparable: false,
       }
@@ -27,3 +39,17 @@ export function measureOf({ decomposition: d, sharesWithheld }: Breakdown): Meas
 /** Shares as they may be shown, or null with the reason told elsewhere. */
 export const sharesOf = ({ decomposition, sharesWithheld }: Breakdown): Float64Array | null =>
   sharesWithheld === null ? decomposition.share : null
+
+/** The error bands, or null where there are none and the reason is told elsewhere. */
+export const bandsOf = ({ bands }: Breakdown): Bands | null => (typeof bands === 'string' ? null : bands)
+
+/** Both ends of the 95% band of a figure. */
+export const bandOf = (value: number, error: number): readonly [from: number, to: number] => [
+  value - BAND * error,
+  value + BAND * error,
+]
+
+export function bandText(value: number, error: number, digits: number): string {
+  const [from, to] = bandOf(value, error)
+  return `${percentText(from, digits)} to ${percentText(to, digits)}`
+}

@@ -1,4 +1,4 @@
-import { memo, useId, useLayoutEffect, useMemo, useRef, useState, type KeyboardEvent } from 'react'
+import { memo, useId, useMemo, useState, type KeyboardEvent } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 // Fluent's own charts draw one bar a category along a horizontal axis and have no hatching; these primitives over d3's scales draw
 // the pair of signed bars and the pattern, and leave the text to the page, where it wraps and is read aloud.
@@ -6,7 +6,8 @@ import { PatternLines } from '@visx/pattern'
 import { scaleLinear } from '@visx/scale'
 import { Bar } from '@visx/shape'
 import { percentText, type Breakdown } from '../sheet'
-import { digitsFor, type Measure } from './measure'
+import { bandOf, digitsFor, type Measure } from './measure'
+import { useWidth } from './width'
 
 const useStyles = makeStyles({
   picture: { position: 'relative', minWidth: 0 },
@@ -30,6 +31,16 @@ const useStyles = makeStyles({
     flexDirection: 'column',
     alignItems: 'flex-end',
     rowGap: tokens.spacingVerticalXXS,
+  },
+  bandKey: {
+    display: 'flex',
+    alignItems: 'center',
+    justifyContent: 'flex-end',
+    columnGap: tokens.spacingHorizontalXS,
+    padding: `0 ${tokens.spacingHorizontalXS}`,
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    color: tokens.colorNeutralForeground2,
   },
   row: {
     display: 'grid',
@@ -86,6 +97,12 @@ const useStyles = makeStyles({
     stroke: tokens.colorNeutralStrokeAccessible,
     '@media (forced-colors: active)': { stroke: 'CanvasText' },
   },
+  halo: { fill: 'none', stroke: tokens.colorNeutralBackground1, strokeWidth: '3px', strokeLinecap: 'square' },
+  band: {
+    fill: 'none',
+    stroke: tokens.colorNeutralForeground1,
+    '@media (forced-colors: active)': { stroke: 'CanvasText' },
+  },
   share: {
     fill: tokens.colorBrandForeground1,
     stroke: tokens.colorBrandForeground1,
@@ -97,25 +114,26 @@ const useStyles = makeStyles({
   },
 })
 
+/** Half the height of the caps at the ends of a band. */
+const CAP = 3
+
+/** The 95% band of a bar as a line with caps, over a halo that keeps it readable on the bar. */
+function Band({ from, to, y }: { from: number; to: number; y: number }) {
+  const classes = useStyles()
+  const path = `M${from} ${y - CAP}v${2 * CAP}M${from} ${y}H${to}M${to} ${y - CAP}v${2 * CAP}`
+  return (
+    <>
+      <path className={classes.halo} d={path} />
+      <path className={classes.band} d={path} />
+    </>
+  )
+}
+
 /** Positions that are all drawn without folding the middle away. */
 const ALL = 18
 const TOP = 10
 const BOTTOM = 5
 const STEP = 200
-
-/** The width of an element, followed as the pane is resized. */
-function useWidth() {
-  const element = useRef<HTMLDivElement>(null)
-  const [width, setWidth] = useState(0)
-  useLayoutEffect(() => {
-    const watched = element.current
-    if (!watched) return
-    const observer = new ResizeObserver(() => setWidth(watched.clientWidth))
-    observer.observe(watched)
-    return () => observer.disconnect()
-  }, [])
-  return { element, width }
-}
 
 interface RowProps {
   readonly id: string
@@ -123,6 +141,9 @@ interface RowProps {
   readonly name: string
   readonly weight: number
   readonly risk: number
+  /** the ends of the 95% band of `risk`; equal where there is none */
+  readonly low: number
+  readonly high: number
   readonly weightText: string
   readonly riskText: string
   readonly label: string
@@ -174,6 +195,7 @@ const Row = memo(function Row(row: RowProps) {
           height={7}
         />
         <line className={classes.zero} x1={across(0)} x2={across(0)} y1={-1} y2={height + 1} />
+        {row.high > row.low && <Band from={across(row.low)} to={across(row.high)} y={height - 4} />}
       </svg>
     </div>
   )
@@ -197,7 +219,7 @@ export default function Picture({
 }) {
   const classes = useStyles()
   const hatch = useId()
-  const { element, width } = useWidth()
+  const { element, width } = useWidth<HTMLDivElement>()
   const [middle, setMiddle] = useState(0)
   const { weights } = breakdown.decomposition
   const risk = measure.values
@@ -215,7 +237,8 @@ export default function Picture({
   const reducing = shown.filter((i) => risk[i]! < 0)
 
   // Weights and shares share one scale, so the two bars can be compared; contributions are in another unit and stand alone.
-  const drawn = shown.flatMap((i) => (measure.comparable ? [weights[i]!, risk[i]!] : [risk[i]!]))
+  const band = (i: number) => bandOf(risk[i]!, measure.errors?.[i] ?? 0)
+  const drawn = shown.flatMap((i) => (measure.comparable ? [weights[i]!, ...band(i)] : band(i)))
   const low = Math.min(0, ...drawn)
   const high = Math.max(0, ...drawn)
   const across = useMemo(
@@ -242,25 +265,30 @@ export default function Picture({
   /** The one row that Tab reaches: the selected one, or the first when that one is folded away. */
   const reachable = shown.includes(selected) ? selected : (adding[0] ?? reducing[0])
   const rows = (positions: readonly number[]) =>
-    positions.map((i) => (
-      <Row
-        key={i}
-        id={`${rowIds}${i}`}
-        position={i}
-        name={breakdown.names[i] ?? ''}
-        weight={weights[i]!}
-        risk={risk[i]!}
-        weightText={percentText(weights[i]!, digits)}
-        riskText={percentText(risk[i]!, measure.digits)}
-        label={measure.label}
-        comparable={measure.comparable}
-        across={across}
-        hatch={hatch}
-        selected={i === selected}
-        reachable={i === reachable}
-        select={select}
-      />
-    ))
+    positions.map((i) => {
+      const [from, to] = band(i)
+      return (
+        <Row
+          key={i}
+          id={`${rowIds}${i}`}
+          position={i}
+          name={breakdown.names[i] ?? ''}
+          weight={weights[i]!}
+          risk={risk[i]!}
+          low={from}
+          high={to}
+          weightText={percentText(weights[i]!, digits)}
+          riskText={percentText(risk[i]!, measure.digits)}
+          label={measure.label}
+          comparable={measure.comparable}
+          across={across}
+          hatch={hatch}
+          selected={i === selected}
+          reachable={i === reachable}
+          select={select}
+        />
+      )
+    })
   const sum = (values: Float64Array): number => others.reduce((total, i) => total + values[i]!, 0)
 
   const reducingHeading = (
@@ -300,6 +328,14 @@ export default function Picture({
           </svg>
         </span>
       </div>
+      {measure.errors && (
+        <div className={classes.bandKey} aria-hidden>
+          <svg width="24" height="8">
+            <Band from={1} to={23} y={4} />
+          </svg>
+          95% band
+        </div>
+      )}
       <div
         role="listbox"
         aria-label={`Weight and ${measure.label.toLowerCase()}, by position`}

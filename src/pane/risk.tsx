@@ -1,26 +1,27 @@
 import { lazy, Suspense, useCallback, useState } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { percentText, type Breakdown } from '../sheet'
-import { Section } from './controls'
+import { countOf, numberText, percentText, type Breakdown, type BooksState } from '../sheet'
+import { Folded, Section } from './controls'
 import { Figures } from './figures'
-import { digitsFor, measureOf, sharesOf } from './measure'
-import { Groups, Positions, sensitivity } from './positions'
-import { useBooksState } from './store'
+import { Remark } from './headline'
+import { bandText, digitsFor, measureOf, sharesOf } from './measure'
+import { Positions, sensitivity } from './positions'
+import { useBooksState, useKept } from './store'
 
-// The picture and its scales are loaded when there is something to draw: the first paint does without.
+// What is drawn, and what is folded away at first, is loaded when it is wanted: the first paint does without.
 const Picture = lazy(() => import('./picture'))
+const Groups = lazy(() => import('./groups'))
+const LargeLosses = lazy(() => import('./large-losses'))
+const AgainstBenchmark = lazy(() => import('./against-benchmark'))
+const Factors = lazy(() => import('./factors'))
+const HowSure = lazy(() => import('./how-sure'))
+const BackTest = lazy(() => import('./back-test'))
 
 const useStyles = makeStyles({
   view: { display: 'grid', rowGap: tokens.spacingVerticalXXL, minWidth: 0 },
+  sections: { minWidth: 0, borderBottom: `1px solid ${tokens.colorNeutralStroke2}` },
   quiet: { margin: 0, color: tokens.colorNeutralForeground2 },
-  withheld: {
-    margin: 0,
-    padding: tokens.spacingHorizontalM,
-    backgroundColor: tokens.colorNeutralBackground3,
-    border: `1px solid ${tokens.colorTransparentStroke}`,
-    fontSize: tokens.fontSizeBase200,
-    lineHeight: tokens.lineHeightBase200,
-  },
+  text: { margin: 0, fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
   reading: {
     padding: `${tokens.spacingVerticalS} ${tokens.spacingHorizontalM}`,
     backgroundColor: tokens.colorNeutralBackground2,
@@ -67,10 +68,106 @@ function Positioned({ breakdown }: { breakdown: Breakdown }) {
   )
 }
 
+// ---- what the folded sections say while they are folded
+
+/** The largest group of the first column. */
+function groupsHeadline({ byGroup }: Breakdown): string {
+  const [first] = byGroup
+  if (!first) return ''
+  const { contribution, share } = first.parts
+  const most = contribution.reduce((best, value, g) => (value > contribution[best]! ? g : best), 0)
+  const name = `${first.header}: ${first.labels[most] ?? ''}`
+  return share
+    ? `${name} has the largest share of risk, ${percentText(share[most]!, 1)}`
+    : `${name} contributes most, ${percentText(contribution[most]!, 2)}`
+}
+
+const tailsHeadline = ({ tails }: Breakdown): string =>
+  typeof tails === 'string'
+    ? 'Not computed'
+    : tails.risk.shortfall === null
+      ? `Value at risk ${percentText(tails.risk.valueAtRisk, 2)}, ${tails.label}`
+      : `Expected shortfall ${percentText(tails.risk.shortfall, 2)}, ${tails.label}`
+
+function factorsHeadline({ factors, decomposition }: Breakdown): string {
+  if (!factors) return 'The factor model is not the estimator'
+  const systematic = factors.systematic.reduce((sum, part) => sum + part, 0)
+  return `Systematic ${percentText(systematic, 2)} of the ${percentText(decomposition.volatility, 2)} of volatility`
+}
+
+const sureHeadline = ({ bands, decomposition }: Breakdown): string =>
+  typeof bands === 'string'
+    ? 'No error bands'
+    : `Volatility ${percentText(decomposition.volatility, 2)}, 95% band ${bandText(decomposition.volatility, bands.volatility, 2)}`
+
+function backTestHeadline({ backtest }: BooksState['studies']): string {
+  if (!backtest) return 'Forecasts against what happened: not run yet'
+  const { exceptions, expected, confidence } = backtest.result.tests
+  return `${countOf(exceptions, 'exception')}, ${numberText(expected, 1)} expected at ${percentText(confidence, 1)} confidence`
+}
+
+/** Up to its figures in brackets, the verdict's sentence says it all. */
+const verdict = (sentence: string): string => sentence.split(/ \(|\. /)[0] ?? sentence
+
+function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksState }) {
+  const classes = useStyles()
+  const { active, byGroup, normality, horizon } = breakdown
+  // both studies share one field of faults: the sentence stands where it was asked for
+  const [asked, setAsked] = useKept<'bootstrap' | 'back-test' | null>('study asked', null)
+  return (
+    <div className={classes.sections}>
+      {byGroup.length > 0 && (
+        <Folded title="Groups" headline={groupsHeadline(breakdown)}>
+          <Groups breakdown={breakdown} nesting={state.settings.nesting} />
+        </Folded>
+      )}
+      <Folded title="Large losses" headline={tailsHeadline(breakdown)}>
+        <LargeLosses breakdown={breakdown} choice={state.settings.tails} fault={state.faults.tails} />
+      </Folded>
+      {active && (
+        <Folded
+          title="Against the benchmark"
+          headline={`Tracking error (ex ante) ${percentText(active.risk.trackingError, 2)} ${horizon}`}
+        >
+          <AgainstBenchmark active={active} horizon={horizon} />
+        </Folded>
+      )}
+      {(breakdown.factors ?? state.factors) && (
+        <Folded title="Factors" headline={factorsHeadline(breakdown)}>
+          <Factors breakdown={breakdown} />
+        </Folded>
+      )}
+      {normality && (
+        <Folded title="Normality" headline={verdict(normality.sentence)}>
+          <p className={classes.text}>{normality.sentence}</p>
+        </Folded>
+      )}
+      <Folded title="How sure" headline={sureHeadline(breakdown)}>
+        <HowSure
+          breakdown={breakdown}
+          state={state}
+          fault={asked === 'bootstrap' ? state.faults.study : undefined}
+          asked={() => setAsked('bootstrap')}
+        />
+      </Folded>
+      {breakdown.dates && (
+        <Folded title="Back-test" headline={backTestHeadline(state.studies)}>
+          <BackTest
+            state={state}
+            fault={asked === 'back-test' ? state.faults.study : undefined}
+            asked={() => setAsked('back-test')}
+          />
+        </Folded>
+      )}
+    </div>
+  )
+}
+
 /** How much risk, and where it comes from. */
 export function RiskView() {
   const classes = useStyles()
-  const { breakdown, status } = useBooksState()
+  const state = useBooksState()
+  const { breakdown, status } = state
   if (!breakdown)
     return (
       <p className={classes.quiet}>
@@ -81,20 +178,14 @@ export function RiskView() {
     )
   return (
     <div className={classes.view}>
-      {status.kind === 'failed' && (
-        <p className={classes.withheld}>Figures as last computed, before the failure told above.</p>
-      )}
+      {status.kind === 'failed' && <Remark text="Figures as last computed, before the failure told above." />}
       <Figures breakdown={breakdown} />
-      {breakdown.sharesWithheld !== null && <p className={classes.withheld}>{breakdown.sharesWithheld}</p>}
+      {breakdown.sharesWithheld !== null && <Remark text={breakdown.sharesWithheld} />}
       {breakdown.decomposition.volatility > 0 && <Positioned breakdown={breakdown} />}
-      {breakdown.byGroup.map(({ header }, index) => (
-        <Section key={index} title={`By ${header}`}>
-          <Groups breakdown={breakdown} index={index} />
-        </Section>
-      ))}
       <Section title="Positions">
         <Positions breakdown={breakdown} />
       </Section>
+      <Sections breakdown={breakdown} state={state} />
     </div>
   )
 }

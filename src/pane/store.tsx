@@ -2,10 +2,16 @@ import { createContext, useContext, useEffect, useState, useSyncExternalStore, t
 import type { Books, BooksState } from '../sheet'
 
 const BooksContext = createContext<Books | null>(null)
+const KeptContext = createContext<Map<string, unknown>>(new Map())
 
-export const BooksProvider = ({ books, children }: { books: Books; children: ReactNode }) => (
-  <BooksContext value={books}>{children}</BooksContext>
-)
+export function BooksProvider({ books, children }: { books: Books; children: ReactNode }) {
+  const [kept] = useState(() => new Map<string, unknown>())
+  return (
+    <BooksContext value={books}>
+      <KeptContext value={kept}>{children}</KeptContext>
+    </BooksContext>
+  )
+}
 
 /** The commands, from anywhere in the pane. They never reject: what goes wrong arrives in the state. */
 export function useBooks(): Books {
@@ -34,4 +40,18 @@ export function useLasting(active: boolean, delay: number): boolean {
     }
   }, [active, delay])
   return active && lasting
+}
+
+/** A state that is there again when the view it belongs to is shown anew, until the pane is closed. */
+export function useKept<T>(key: string, initial: T): readonly [T, (value: T) => void] {
+  const kept = useContext(KeptContext)
+  // whoever keeps under a key takes from it again, so the type is the same
+  const [value, setValue] = useState<T>(() => (kept.has(key) ? (kept.get(key) as T) : initial))
+  return [
+    value,
+    (next) => {
+      kept.set(key, next)
+      setValue(next)
+    },
+  ]
 }

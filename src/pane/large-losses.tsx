@@ -1,0 +1,207 @@
+import { useState } from 'react'
+import { makeStyles, tokens } from '@fluentui/react-components'
+import { percentText, type Breakdown, type TailChoice, type Tails } from '../sheet'
+import { Choice, Entry, typedNumber } from './controls'
+import { digitsFor, sharesOf } from './measure'
+import { NONE } from './positions'
+import { useBooks } from './store'
+import { Headline, Remark } from './headline'
+import { FigureTable, Pairs, TieOut, WIDTHS } from './table'
+
+const useStyles = makeStyles({
+  fields: {
+    display: 'grid',
+    gridTemplateColumns: 'minmax(0, 1fr) minmax(0, 1fr)',
+    columnGap: tokens.spacingHorizontalM,
+    rowGap: tokens.spacingVerticalS,
+    alignItems: 'start',
+  },
+  wide: { gridColumn: '1 / -1' },
+  text: { margin: 0, fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
+})
+
+type Kind = TailChoice['method']['kind']
+
+const METHODS: readonly (readonly [Kind, string])[] = [
+  ['historical', 'Past returns'],
+  ['normal', 'Normal distribution'],
+  ['student', 'Student distribution'],
+  ['cornish-fisher', 'Normal, corrected for skewness and kurtosis'],
+]
+
+const HINTS: { readonly [K in Kind]: string } = {
+  historical: 'What these weights would have lost on each past date',
+  normal: 'The volatility alone; shares equal shares of risk',
+  student: 'Fatter tails than normal; shares equal shares of risk',
+  'cornish-fisher': 'Cornish–Fisher expansion; value at risk only',
+}
+
+/** What is asked of the tail: method, confidence, horizon. */
+function Fields({ choice, fault }: { choice: TailChoice; fault: string | undefined }) {
+  const books = useBooks()
+  const classes = useStyles()
+  const choose = (change: Partial<TailChoice>): void => void books.choose({ tails: { ...choice, ...change } })
+  const { method } = choice
+  return (
+    <div className={classes.fields}>
+      <div className={classes.wide}>
+        <Choice
+          label="Method"
+          value={method.kind}
+          choices={METHODS}
+          hint={HINTS[method.kind]}
+          fault={fault}
+          choose={(kind) => choose({ method: kind === 'student' ? { kind, degrees: null } : { kind } })}
+        />
+      </div>
+      <Entry
+        label="Confidence level, %"
+        shown={String(Number((choice.confidence * 100).toFixed(6)))}
+        read={(text) => {
+          const value = typedNumber(text.replace(/%$/, ''))
+          return value !== null && value > 50 && value < 100
+            ? { value: Number((value / 100).toFixed(8)) }
+            : { needed: 'A number between 50 and 100 is needed.' }
+        }}
+        commit={(confidence) => choose({ confidence })}
+      />
+      <Entry
+        label="Horizon, periods"
+        shown={String(choice.periods)}
+        hint={
+          method.kind === 'normal' || method.kind === 'student'
+            ? 'Scales with the square root of time'
+            : 'This method: 1'
+        }
+        read={(text) => {
+          const value = typedNumber(text)
+          return value !== null && value > 0 ? { value } : { needed: 'A number above 0 is needed.' }
+        }}
+        commit={(periods) => choose({ periods })}
+      />
+      {method.kind === 'student' && (
+        <Entry<number | null>
+          label="Degrees of freedom"
+          shown={method.degrees === null ? '' : String(method.degrees)}
+          hint="Empty: fitted"
+          read={(text) => {
+            if (text === '') return { value: null }
+            const value = typedNumber(text)
+            return value !== null && value > 2 ? { value } : { needed: 'A number above 2 is needed.' }
+          }}
+          commit={(degrees) => choose({ method: { kind: 'student', degrees } })}
+        />
+      )}
+    </div>
+  )
+}
+
+function Parts({ breakdown, tails }: { breakdown: Breakdown; tails: Tails }) {
+  const [opened, setOpened] = useState<ReadonlySet<string | number>>(new Set())
+  const { risk } = tails
+  const { parts, shares } = risk
+  if (!parts || !shares || risk.shortfall === null) return null
+  const ofRisk = sharesOf(breakdown)
+  const digits = digitsFor(breakdown.names.length)
+  const order = [...parts.keys()].sort((a, b) => parts[b]! - parts[a]!)
+  const points = (i: number): string => {
+    if (!ofRisk) return NONE
+    const shown = percentText(shares[i]! - ofRisk[i]!, digits).replace('%', '')
+    return /[1-9]/.test(shown) && !shown.startsWith('\u2212') ? `+${shown}` : shown
+  }
+  return (
+    <>
+      <FigureTable
+        label="Shares of large losses"
+        columns={[
+          { head: 'Position', width: null },
+          { head: 'Share of risk', width: WIDTHS.share - 8 },
+          { head: 'Share of expected shortfall', width: WIDTHS.contribution },
+          { head: 'Difference, points', width: WIDTHS.share + 4 },
+        ]}
+        rows={order.map((i) => ({
+          key: i,
+          name: breakdown.names[i] ?? '',
+          cells: [
+            ofRisk ? percentText(ofRisk[i]!, digits) : NONE,
+            percentText(shares[i]!, digits),
+            points(i),
+          ],
+          open: opened.has(i),
+          details: () => (
+            <Pairs
+              pairs={[
+                ['Weight', percentText(breakdown.decomposition.weights[i]!, digits)],
+                ['Contribution to expected shortfall', percentText(parts[i]!, digits + 2)],
+                ...(risk.valueAtRiskParts
+                  ? [
+                      [
+                        'Contribution to value at risk',
+                        percentText(risk.valueAtRiskParts[i]!, digits + 2),
+                      ] as const,
+                    ]
+                  : []),
+              ]}
+            />
+          ),
+        }))}
+        totals={[['Total', ofRisk ? percentText(1, digits) : NONE, percentText(1, digits), '']]}
+        toggle={(key) => {
+          const next = new Set(opened)
+          if (!next.delete(key)) next.add(key)
+          setOpened(next)
+        }}
+      />
+      <TieOut
+        parts="Contributions"
+        sum={parts.reduce((sum, part) => sum + part, 0)}
+        total="expected shortfall"
+        whole={risk.shortfall}
+      />
+    </>
+  )
+}
+
+/** Value at risk and expected shortfall, and what each position has of them. */
+export default function LargeLosses({
+  breakdown,
+  choice,
+  fault,
+}: {
+  breakdown: Breakdown
+  choice: TailChoice
+  fault: string | undefined
+}) {
+  const classes = useStyles()
+  const { tails } = breakdown
+  if (typeof tails === 'string')
+    return (
+      <>
+        <Fields choice={choice} fault={fault} />
+        <Remark text={tails} />
+      </>
+    )
+  const { risk } = tails
+  return (
+    <>
+      <Headline
+        figures={[
+          ['Value at risk', percentText(risk.valueAtRisk, 2)],
+          ['Expected shortfall', risk.shortfall === null ? NONE : percentText(risk.shortfall, 2)],
+        ]}
+      />
+      <p className={classes.text}>
+        Losses as positive fractions of capital, {tails.label}. {tails.method}.
+        {risk.standardError !== null &&
+          ` Standard error of the value at risk ${percentText(risk.standardError, 2)} at least: fat tails make it larger.`}
+      </p>
+      <Fields choice={choice} fault={fault} />
+      {tails.difference !== null && <p className={classes.text}>{tails.difference}</p>}
+      {tails.partsWithheld === null ? (
+        <Parts breakdown={breakdown} tails={tails} />
+      ) : (
+        <Remark text={tails.partsWithheld} />
+      )}
+    </>
+  )
+}
