@@ -1,4 +1,4 @@
-import { Fault, type Estimator, type FaultCode, type Where } from '../core'
+import { type Estimator, Fault, type FaultCode, type TailMethod, type Where } from '../core'
 import { isBlank, PLAIN_CULTURE, type CellValue } from './cells'
 import { attempt } from './explain'
 import { plainName } from './names'
@@ -545,4 +545,62 @@ export function refuseHiddenBlanks(argument: string, panel: Panel, columns?: Int
       { argument, ...panel.placeOf(count === leading ? 0 : panel.rows - count, column) },
     )
   }
+}
+
+/**
+ * How the tail of the return is taken to look, in words: "normal", "historical", "student" (degrees of freedom fitted), "student 5" (or
+ * "student 4,5"), "cornish-fisher"; normal where it was left out.
+ *
+ * @throws Fault "unknown-choice" | "out-of-range" | "shape"
+ * @example worksheetFunctions.VALUEATRISK(1, .04, .99, 1, 'Student 4,5') // 0.52578
+ */
+export function tailMethodOf(given: unknown): TailMethod {
+  const argument = 'method'
+  const needed = '“normal”, “historical”, “student”, “student 5” or “cornish-fisher” is needed'
+  const text = choiceOf(argument, given, needed) ?? 'normal'
+  if (text === 'normal' || text === 'historical' || text === 'cornish-fisher') return { kind: text }
+  if (text === 'student') return { kind: 'student', degrees: null }
+  const [word = '', choice = '', ...more] = text.split(' ')
+  const degrees = decimalOf(choice)
+  if (word !== 'student' || more.length > 0 || Number.isNaN(degrees)) {
+    throw new Fault('unknown-choice', `found ${quote(text)}`, needed, { argument })
+  }
+  if (degrees > 2) return { kind: 'student', degrees }
+  throw new Fault(
+    'out-of-range',
+    `found ${choice} degrees of freedom`,
+    'more than 2 are needed to have a volatility',
+    { argument },
+  )
+}
+
+/**
+ * The level of confidence of a tail figure; it cannot be left out.
+ *
+ * @throws Fault "text" | "blank" | "not-a-number" | "out-of-range" | "shape"
+ */
+export function confidenceOf(given: unknown): number {
+  const argument = 'confidence'
+  const confidence = numberOf(scalarOf(argument, given), { argument })
+  if (confidence > 0.5 && confidence < 1) return confidence
+  throw new Fault(
+    'out-of-range',
+    `found ${confidence}`,
+    'a number above 0.5 and below 1 is needed, such as 0.99 or 99%',
+    { argument },
+  )
+}
+
+/**
+ * How many periods ahead a tail figure looks; 1 where it was left out.
+ *
+ * @throws Fault "text" | "blank" | "not-a-number" | "out-of-range" | "shape"
+ */
+export function periodsAheadOf(given: unknown): number {
+  const argument = 'periods'
+  const value = scalarOf(argument, given)
+  if (value === null) return 1
+  const periods = numberOf(value, { argument })
+  if (periods > 0) return periods
+  throw new Fault('out-of-range', `found ${periods}`, 'a number above 0 is needed, such as 10', { argument })
 }

@@ -6,20 +6,25 @@ import {
   groupDecomposition,
   logReturns,
   simpleReturns,
+  tailRisk,
   type Decomposition,
   type EstimatedModel,
   type Estimator,
   type RiskModel,
+  type TailRisk,
 } from '../core'
 import {
   cellsOf,
   columnsNamed,
+  confidenceOf,
   estimatorOf,
   kindOf,
   labelsOf,
   panelOf,
+  periodsAheadOf,
   periodsOf,
   refuseHiddenBlanks,
+  tailMethodOf,
   vectorOf,
   type Panel,
 } from './blocks'
@@ -524,6 +529,134 @@ export function grouped(
   ]
 }
 
+interface Tail {
+  readonly book: Book
+  readonly risk: TailRisk
+}
+
+function tailOf(
+  weights: unknown,
+  risk: unknown,
+  confidence: unknown,
+  periods: unknown,
+  method: unknown,
+  estimator: unknown,
+): Tail {
+  const choice = {
+    confidence: confidenceOf(confidence),
+    periods: periodsAheadOf(periods),
+    method: tailMethodOf(method),
+  }
+  const book = bookOf(weights, risk, null, estimator)
+  return { book, risk: tailRisk(book.model, book.weights, choice, book.estimated?.returns ?? null) }
+}
+
+/** What only a method with an expected shortfall has. */
+function ofShortfall<T>(figure: T | null): T {
+  if (figure !== null) return figure
+  throw new Fault(
+    'unknown-choice',
+    'found “cornish-fisher”, which corrects a quantile and gives no mean beyond it',
+    '“normal”, “student”, “student 5” or “historical” is needed',
+    { argument: 'method' },
+  )
+}
+
+/**
+ * Value at risk of the portfolio: the loss that is exceeded with probability 1 - confidence only.
+ *
+ * @customfunction VALUEATRISK
+ * @helpurl https://localhost:3000/help.html#valueatrisk
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight), or a covariance matrix for "normal" and "student 5"
+ * @param confidence Level of confidence above 50% and below 100%, such as 99%
+ * @param periods Periods ahead, such as 10 (square root of time); 1 where left out and with "historical" and "cornish-fisher"
+ * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5", "historical" or "cornish-fisher"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns A loss as a fraction, positive
+ * @remarks "normal", "student" and "cornish-fisher" take the mean as zero and the volatility of the estimator; "historical" applies today's
+ * weights to the returns as they were and takes the loss number T (1 - confidence), rounded up, of the T dates: under ten such dates it
+ * is a rough figure. "cornish-fisher" is refused where skewness and excess kurtosis lie outside its domain. An estimate from the
+ * numbers given, not the largest loss there can be.
+ * @throws Fault as VOLATILITY | "out-of-range" (confidence, periods, degrees of freedom, the domain of "cornish-fisher") | "zero-risk"
+ * @source Jorion (2007), Value at Risk, 3rd ed., chapter 5 (from memory); Cornish & Fisher (1937) and Maillard (2012), SSRN 1997178 (from
+ *         memory)
+ * @cost as VOLATILITY; "historical" sorts T numbers, "student" fits in some hundred passes over T numbers
+ * @example worksheetFunctions.VALUEATRISK([[.5], [.5]], [[.04, 0], [0, .01]], .99) // 0.26009
+ * @example worksheetFunctions.VALUEATRISK(1, [[-.04], [-.01], [.02], [.03], [.01]], .8, 1, 'historical') // 0.04
+ */
+export function valueatrisk(
+  weights: unknown[][],
+  risk: unknown[][],
+  confidence: unknown,
+  periods?: unknown,
+  method?: unknown,
+  estimator?: unknown,
+): number {
+  return finite(tailOf(weights, risk, confidence, periods, method, estimator).risk.valueAtRisk)
+}
+
+/**
+ * Expected shortfall of the portfolio: the mean of the losses from value at risk on.
+ *
+ * @customfunction SHORTFALL
+ * @helpurl https://localhost:3000/help.html#shortfall
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight), or a covariance matrix for "normal" and "student 5"
+ * @param confidence Level of confidence above 50% and below 100%, such as 97.5%
+ * @param periods Periods ahead, such as 10 (square root of time); 1 where left out and with "historical"
+ * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5" or "historical"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns A loss as a fraction, positive
+ * @remarks Means and volatility as VALUEATRISK. "historical" is the mean of the worst T (1 - confidence) of T dates, the last of them by the
+ * fraction that is left: under ten such dates it is a rough figure.
+ * @throws Fault as VALUEATRISK | "unknown-choice" ("cornish-fisher", which gives value at risk alone)
+ * @source Acerbi & Tasche (2002), On the Coherence of Expected Shortfall, JBF 26(7), 1487-1503 (from memory)
+ * @cost as VALUEATRISK
+ * @example worksheetFunctions.SHORTFALL([[.5], [.5]], [[.04, 0], [0, .01]], .99) // 0.29798
+ */
+export function shortfall(
+  weights: unknown[][],
+  risk: unknown[][],
+  confidence: unknown,
+  periods?: unknown,
+  method?: unknown,
+  estimator?: unknown,
+): number {
+  return finite(ofShortfall(tailOf(weights, risk, confidence, periods, method, estimator).risk.shortfall))
+}
+
+/**
+ * Contribution of each position to expected shortfall; the contributions sum to SHORTFALL.
+ *
+ * @customfunction SHORTFALLPARTS
+ * @helpurl https://localhost:3000/help.html#shortfallparts
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight), or a covariance matrix for "normal" and "student 5"
+ * @param confidence Level of confidence above 50% and below 100%, such as 97.5%
+ * @param periods Periods ahead, such as 10 (square root of time); 1 where left out and with "historical"
+ * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5" or "historical"
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns n losses as fractions; negative for a position that gains when the portfolio loses most
+ * @remarks "normal" and "student": in proportion to CONTRIBUTION. "historical": the position's own mean loss on the dates that SHORTFALL is the
+ * mean of; dates that tie for the last place share it; under ten such dates the parts are the accident of a few of them.
+ * @throws Fault as SHORTFALL
+ * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
+ * @cost as VALUEATRISK
+ * @example worksheetFunctions.SHORTFALLPARTS([[.5], [.5]], [[.04, 0], [0, .01]], .99) // [[0.23838], [0.0596]]
+ */
+export function shortfallparts(
+  weights: unknown[][],
+  risk: unknown[][],
+  confidence: unknown,
+  periods?: unknown,
+  method?: unknown,
+  estimator?: unknown,
+): number[][] {
+  const tail = tailOf(weights, risk, confidence, periods, method, estimator)
+  return spilled(ofShortfall(tail.risk.parts), tail.book)
+}
+
 const sum = (values: Float64Array): number => finite(values.reduce((total, value) => total + value, 0))
 
 /** Every worksheet function by its id. */
@@ -541,4 +674,7 @@ export const worksheetFunctions: Readonly<Record<string, (...args: never[]) => u
   EFFECTIVE: effective,
   BREAKDOWN: breakdown,
   GROUPED: grouped,
+  VALUEATRISK: valueatrisk,
+  SHORTFALL: shortfall,
+  SHORTFALLPARTS: shortfallparts,
 }

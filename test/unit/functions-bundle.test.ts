@@ -35,6 +35,9 @@ const released: Record<string, string> = {
   EFFECTIVE: 'weights, risk, [estimator]',
   BREAKDOWN: 'names, weights, risk, [periods_per_year], [estimator]',
   GROUPED: 'groups, weights, risk, [periods_per_year], [estimator]',
+  VALUEATRISK: 'weights, risk, confidence, [periods], [method], [estimator]',
+  SHORTFALL: 'weights, risk, confidence, [periods], [method], [estimator]',
+  SHORTFALLPARTS: 'weights, risk, confidence, [periods], [method], [estimator]',
 }
 const blocks = ['prices', 'returns', 'weights', 'risk', 'names', 'groups']
 
@@ -78,7 +81,7 @@ describe('dist/functions.json', () => {
 
   it('spills where the result has more than one cell', () => {
     const single = described.filter(({ result }) => result.dimensionality !== 'matrix').map(({ id }) => id)
-    expect(single.sort()).toEqual(['DIVERSIFICATION', 'EFFECTIVE', 'VOLATILITY'])
+    expect(single.sort()).toEqual(['DIVERSIFICATION', 'EFFECTIVE', 'SHORTFALL', 'VALUEATRISK', 'VOLATILITY'])
   })
 
   it('points for help into help.html, where each function has its place', () => {
