@@ -1,10 +1,7 @@
 // npm run bench: prints JSON lines {name, n, T, median_ms}, then ratios to numpy where python3 has it.
 // Ours and numpy's runs take turns, so that a noisy machine slows both alike. Never part of the tests.
-import { spawn } from 'node:child_process'
-import { once } from 'node:events'
 import { createRequire } from 'node:module'
-import path from 'node:path'
-import { createInterface } from 'node:readline'
+import { numpy } from './numpy.mjs'
 
 const require = createRequire(import.meta.url)
 require('./typescript.cjs')
@@ -25,24 +22,6 @@ function randomReturns(count, scale) {
   })
 }
 
-/** numpy in a process of its own, asked for a few timings at a time; undefined where there is none. */
-async function numpy() {
-  const script = path.join(import.meta.dirname, 'decomposition.py')
-  const child = spawn('python3', [script, '--serve'], { stdio: ['pipe', 'pipe', 'ignore'] })
-  const lines = createInterface({ input: child.stdout })[Symbol.asyncIterator]()
-  const failed = once(child, 'error').then(() => ({ done: true }))
-  const first = await Promise.race([lines.next(), failed])
-  if (first.done) return undefined
-  return {
-    version: JSON.parse(first.value).numpy,
-    async time(name, n, T, repeats) {
-      child.stdin.write(`${JSON.stringify({ name, n, T, repeats })}\n`)
-      return JSON.parse((await lines.next()).value).ms
-    },
-    close: () => child.stdin.end(),
-  }
-}
-
 function timings(work, repeats) {
   const times = []
   for (let k = 0; k < repeats; k++) {
@@ -53,7 +32,7 @@ function timings(work, repeats) {
   return times
 }
 
-const reference = await numpy()
+const reference = await numpy('decomposition.py')
 print({ node: process.version, kernel: kernelForm, numpy: reference?.version ?? 'none: no ratios' })
 
 const T = 1260
