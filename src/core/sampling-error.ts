@@ -31,8 +31,8 @@ export const RISK_BAND = 1.959964
  *   volatility:    u_t = s (y_t^2 / v - 1) / 2
  *   contribution:  u_t = s (u_t of the share) + p_i (u_t of the volatility)
  *
- * With lags L > 0 the figures are those with lagged terms, s^2 = correction sum over |k| <= L of kappa_k sum_t omega_t
- * y_t y_(t-k), kappa_k = 1 - |k| / (L+1). A product of two dates counts at the later one, so that returns without
+ * With lags L > 0 the figures are those with lagged terms and divisor T, s^2 = sum over |k| <= L of kappa_k sum_t y_t
+ * y_(t-k) / T, kappa_k = 1 - |k| / (L+1). A product of two dates counts at the later one, so that returns without
  * autocorrelation have influence values without; se is the long-run one with the same kappa:
  *
  *   y_t^2     becomes  y_t^2 + 2 y_t F y_t,                          F x_t = sum_(k=1..L) kappa_k x_(t-k)
@@ -43,7 +43,7 @@ export const RISK_BAND = 1.959964
  *
  * @param model    a block of returns; equally weighted dates where lags are given
  * @param weights  n; decimals of capital
- * @param lags     L, a whole number from 0 to T-1; the errors reduce to the plain ones at 0
+ * @param lags     L, a whole number from 0 to T-1; 0 takes no lagged terms
  * @returns        per period; estimates that hold for many dates and run small for few: at T = 500 hardly without lags,
  *                 by about a tenth with ten of them (simulated)
  * @throws Fault   "shape" | "not-a-number" | "out-of-range" (lags; a variance too large for a double) |
@@ -137,7 +137,9 @@ interface Squares {
 
 function scaledPortfolio(model: ReturnsModel, weights: Float64Array, lags: number): ScaledPortfolio | null {
   checkLags(model, lags)
-  const { rowWeights: omega, correction } = model
+  const { rowWeights: omega } = model
+  // figures with lagged terms take divisor T
+  const correction = lags > 0 ? 1 : model.correction
   const marginals = new Float64Array(model.size)
   const returns = model.portfolioReturns(weights, marginals)
   const lagged = earlier(returns, lags)

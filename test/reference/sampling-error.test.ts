@@ -1,6 +1,8 @@
 import {
   bootstrap,
   decompose,
+  estimateModel,
+  inOneGo,
   logReturns,
   returnsModel,
   shareDifferences,
@@ -8,6 +10,7 @@ import {
   standardErrors,
   type BootstrapChoice,
   type BootstrapResult,
+  type Estimator,
   type ReturnsModel,
   type Spread,
   type Weighting,
@@ -67,19 +70,12 @@ function returnsOf(name: string): { set: ComputedSet; returns: Float64Array } {
   return { set, returns: (name === 'eu_log' ? logReturns : simpleReturns)(closes, T + 1, n) }
 }
 
-function finished<Result>(work: Generator<number, Result>): Result {
-  for (;;) {
-    const step = work.next()
-    if (step.done) return step.value
-  }
-}
-
 /** The settings of sampling_errors.json by their names there. */
-const settings: Record<string, { weighting: Weighting; lags: number }> = {
-  sample: { weighting: { kind: 'sample' }, lags: 0 },
-  'exponential 0.97': { weighting: { kind: 'exponential', decay: 0.97 }, lags: 0 },
-  'lagged 1': { weighting: { kind: 'population' }, lags: 1 },
-  'lagged 7': { weighting: { kind: 'population' }, lags: 7 },
+const settings: Record<string, { estimator: Estimator; lags: number }> = {
+  sample: { estimator: { kind: 'sample' }, lags: 0 },
+  'exponential 0.97': { estimator: { kind: 'exponential', decay: 0.97 }, lags: 0 },
+  'lagged 1': { estimator: { kind: 'lagged', lags: 1 }, lags: 1 },
+  'lagged 7': { estimator: { kind: 'lagged', lags: 7 }, lags: 7 },
 }
 
 describe.each(['eu_log', 'eu_simple', 'lcg60', 'lcg120'])('%s', (name) => {
@@ -104,8 +100,14 @@ describe.each(['eu_log', 'eu_simple', 'lcg60', 'lcg120'])('%s', (name) => {
     }
     for (const [setting, expected] of cases) {
       test(`volatility, contributions, shares and differences of shares: ${setting}`, () => {
-        const { weighting, lags } = settings[setting]!
-        const model = returnsModel(returns, T, n, weighting)
+        const { estimator, lags } = settings[setting]!
+        const estimated = estimateModel(returns, T, n, estimator)
+        const model = estimated.returns
+        // the figures whose errors these are
+        const figures = decompose(estimated, weights)
+        expect(relativeGap(figures.volatility, expected.volatility)).toBeLessThan(tolerance)
+        expect(relativeGap(figures.contribution, expected.contribution)).toBeLessThan(tolerance)
+        expect(relativeGap(figures.share!, expected.share)).toBeLessThan(tolerance)
         const { volatility, contribution, share } = standardErrors(model, weights, lags)
         expect(relativeGap(volatility, expected.se_volatility)).toBeLessThan(tolerance)
         expect(relativeGap(contribution, expected.se_contribution)).toBeLessThan(tolerance)
@@ -146,7 +148,7 @@ describe.each(Object.entries(simulations))('the simulation of %s', (id, simulate
 
   test('agrees with the bootstrap here but for the noise of both', () => {
     const replicates = 600
-    const drawn = finished(bootstrap(model, weights, { replicates, seed: 7, blockLength: 1 }))
+    const drawn = inOneGo(bootstrap(model, weights, { replicates, seed: 7, blockLength: 1 }))
     // 4.5 standard deviations: the largest of the 180 shares compared here is seldom beyond 3.5; bootstrap distributions with
     // an excess kurtosis up to 1 make those of a deviation sqrt(1.5) as large
     const noise = Math.sqrt((1 / replicates + 1 / simulated.replications_nonparametric) / 2)
@@ -173,7 +175,7 @@ describe('the bootstrap draws the dates that MT19937 gives in numpy, and takes t
     const weighting: Weighting = setting.startsWith('exponential')
       ? { kind: 'exponential', decay: 0.97 }
       : { kind: 'sample' }
-    const result = finished(bootstrap(returnsModel(returns, set.about.T, 4, weighting), weights, expected))
+    const result = inOneGo(bootstrap(returnsModel(returns, set.about.T, 4, weighting), weights, expected))
     compare(result.volatility, expected.volatility)
     compare(result.contribution, expected.contribution)
     compare(result.share!, expected.share)
@@ -196,7 +198,7 @@ test('the bootstrap and the closed form agree on the index returns within the no
   const { set, returns } = returnsOf('eu_log')
   const weights = Float64Array.from(set.about.weights.long)
   const model = returnsModel(returns, set.about.T, 4)
-  const result = finished(bootstrap(model, weights, { replicates: 2000, seed: 1, blockLength: 1 }))
+  const result = inOneGo(bootstrap(model, weights, { replicates: 2000, seed: 1, blockLength: 1 }))
   // nine figures: the largest of them is beyond 3.5 in one seed of two hundred; this seed is fixed
   expect(furthest(result, model, weights)).toBeLessThan(3.5)
   const { share } = decompose(model, weights)
