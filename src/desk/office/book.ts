@@ -39,8 +39,12 @@ import {
 import {
   ClearSelectionFormatCommand,
   SetBorderCommand,
+  SetColDataMutation,
+  SetColDataMutationFactory,
   SetRangeValuesMutation,
   SetRangeValuesUndoMutationFactory,
+  SetRowDataMutation,
+  SetRowDataMutationFactory,
   SetSelectionsOperation,
   SetStyleCommand,
   SetWorksheetColumnCountMutation,
@@ -62,6 +66,7 @@ import {
   width,
   type Rect,
 } from './addresses'
+import { levelOf, linkOf, withLevel, withLink, type Line, type Link } from './custom-data'
 import { OfficeError } from './error'
 
 export type CellValue = string | number | boolean
@@ -74,11 +79,10 @@ export interface StoredCell {
   readonly pattern: string
 }
 
-/** What the workbook carries beside its cells and the grid has no place for. */
+/** What a sheet carries beside its cells and the grid has no place for. */
 export interface SheetExtras {
   protected: boolean
   readonly page: Map<string, unknown>
-  readonly outlines: { readonly axis: 'row' | 'column'; readonly from: number; readonly to: number }[]
 }
 
 /** A table as the grid's table plug-in describes it. */
@@ -262,7 +266,7 @@ export class Book {
   extras(sheet: Worksheet): SheetExtras {
     const known = this.#extras.get(sheet)
     if (known) return known
-    const made: SheetExtras = { protected: false, page: new Map(), outlines: [] }
+    const made: SheetExtras = { protected: false, page: new Map() }
     this.#extras.set(sheet, made)
     return made
   }
@@ -344,6 +348,28 @@ export class Book {
     this.#step.undo.unshift({ id: SetRangeValuesMutation.id, params: { ...before, ...trigger } })
   }
 
+  /** Changes the custom data of rows or columns, in the same step of undo. */
+  changeLines(sheet: Sheet, axis: 'row' | 'column', lines: Readonly<Record<number, Line>>): void {
+    const model = this.model.getSheetBySheetId(sheet.id)
+    const ids = { unitId: this.id, subUnitId: sheet.id }
+    if (!model) return
+    const [id, params, before] =
+      axis === 'row'
+        ? [
+            SetRowDataMutation.id,
+            { ...ids, rowData: lines },
+            SetRowDataMutationFactory({ ...ids, rowData: lines }, model),
+          ]
+        : [
+            SetColDataMutation.id,
+            { ...ids, columnData: lines },
+            SetColDataMutationFactory({ ...ids, columnData: lines }, model),
+          ]
+    this.commands.syncExecuteCommand(id, params)
+    this.#step.redo.push({ id, params })
+    this.#step.undo.unshift({ id, params: before })
+  }
+
   /** What takes a change of cells back: the grid's own way copies every cell deeply, which is slow for a large block of new ones. */
   #before(sheet: Sheet, params: ISetRangeValuesMutationParams): ISetRangeValuesMutationParams {
     const matrix = this.model.getSheetBySheetId(sheet.id)?.getCellMatrix()
@@ -353,7 +379,7 @@ export class Book {
       for (const [column, cell] of Object.entries(line as Record<number, ICellData>)) {
         if (cell.s) return SetRangeValuesUndoMutationFactory(this.injector, params)
         const { s: _, ...stood } = matrix?.getValue(Number(row), Number(column)) ?? {}
-        old[Number(column)] = { ...NO_CONTENT, ...stood }
+        old[Number(column)] = { ...NO_CONTENT, ...('custom' in cell && withLink(null)), ...stood }
       }
       cellValue[Number(row)] = old
     }
@@ -640,6 +666,32 @@ export class Sheet {
         }
       }
     return null
+  }
+
+  link(row: number, column: number): Link | null {
+    return linkOf(this.#grid.getCellMatrix().getValue(row, column))
+  }
+
+  /** Lays one link over every cell of a block, or takes the links of all away. */
+  setLink(rect: Rect, link: Link | null): void {
+    this.guard()
+    this.hold(rect)
+    this.#change(
+      rect,
+      (row, column) => (link || this.link(rect.top + row, rect.left + column) ? withLink(link) : undefined),
+      false,
+    )
+  }
+
+  /** How deep a row or column is folded, 0 outermost. */
+  level(axis: 'row' | 'column', line: number): number {
+    const { rowData, columnData } = this.#grid.getConfig()
+    return levelOf((axis === 'row' ? rowData : columnData)[line])
+  }
+
+  setLevels(axis: 'row' | 'column', levels: ReadonlyMap<number, number>): void {
+    const lines = [...levels].map(([line, level]) => [line, withLevel(level)] as const)
+    this.book.changeLines(this, axis, Object.fromEntries(lines))
   }
 
   isHidden(axis: 'row' | 'column', line: number): boolean {

@@ -7,10 +7,12 @@ import { Book, ENGLISH, type Culture, type SheetExtras } from './book'
 import { OfficeError } from './error'
 import { Events } from './events'
 import { officeGlobal, type Theme } from './office'
+import { placeOfReference } from './range'
 import { RequestContext, payloadSize, run, type Kind, type Operation, type Runtime } from './request-context'
 import { ROOT } from './workbook'
 
 export type { Culture, SheetExtras } from './book'
+export { levelOf, linkOf, withLevel, withLink, type Line, type Link } from './custom-data'
 export type { Theme } from './office'
 export { userOf, type User } from './user'
 
@@ -56,8 +58,10 @@ export interface OfficeStandIn {
   /** Whether the user is in the middle of editing a cell. */
   editing: boolean
   protect(sheet: string, on: boolean): void
-  /** What the grid cannot keep of a sheet, by name or id: its page setup and outlines. */
+  /** What the grid cannot keep of a sheet, by name or id: its protection and page setup. */
   extras(sheet: string): SheetExtras
+  /** Does what a press on a cell does: goes where its link leads in this workbook. Links out of it are not followed. */
+  press(sheet: string, row: number, column: number): void
   /** Changes the theme and tells who asked to be told. */
   setOfficeTheme(theme: Theme | undefined): void
   /** Does what the ribbon button of an action does. */
@@ -206,7 +210,14 @@ const ENUMERATIONS = {
   EventTriggerSource: { unknown: 'Unknown', thisLocalAddin: 'ThisLocalAddin' },
   SheetVisibility: { visible: 'Visible', hidden: 'Hidden', veryHidden: 'VeryHidden' },
   RangeValueType: { empty: 'Empty', string: 'String', double: 'Double', boolean: 'Boolean', error: 'Error' },
-  ClearApplyTo: { all: 'All', contents: 'Contents', formats: 'Formats' },
+  ClearApplyTo: {
+    all: 'All',
+    contents: 'Contents',
+    formats: 'Formats',
+    hyperlinks: 'Hyperlinks',
+    removeHyperlinks: 'RemoveHyperlinks',
+  },
+  GroupOption: { byRows: 'ByRows', byColumns: 'ByColumns' },
   CalculationMode: {
     automatic: 'Automatic',
     automaticExceptTables: 'AutomaticExceptTables',
@@ -255,6 +266,11 @@ export function createOffice(grid: Grid, options: OfficeOptions = {}): OfficeSta
       host.sheet(sheet).extras.protected = on
     },
     extras: (sheet) => host.sheet(sheet).extras,
+    press: (name, row, column) => {
+      const sheet = host.sheet(name)
+      const place = placeOfReference(sheet, sheet.link(row, column)?.documentReference ?? '')
+      if (place?.sheet.isShown) host.book.select(place.sheet, [place.rect])
+    },
     setOfficeTheme: office.setTheme,
     runAction: office.runAction,
     reset: () => {

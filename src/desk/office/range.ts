@@ -27,6 +27,7 @@ import {
 } from './addresses'
 import { NO_CONTENT, type Sheet, type StoredCell } from './book'
 import { entered, shown } from './cells'
+import { DEEPEST } from './custom-data'
 import { OfficeError } from './error'
 import type { Find, Kind, Scalar, Shift } from './request-context'
 import { WORKSHEET } from './worksheet'
@@ -218,7 +219,17 @@ const FONT: Kind<Place> = {
       (style) => style.ff ?? 'Calibri',
       (ff) => ({ ff }),
     ),
+    underline: styled(
+      (style) => (style.ul?.s === BooleanNumber.TRUE ? 'Single' : 'None'),
+      (underline) => ({ ul: underlined(underline) }),
+    ),
   },
+}
+
+function underlined(underline: string): { s: BooleanNumber } {
+  if (underline !== 'None' && underline !== 'Single')
+    throw new OfficeError('NotImplemented', `the desk does not underline "${underline}"`)
+  return { s: underline === 'Single' ? BooleanNumber.TRUE : BooleanNumber.FALSE }
 }
 
 const FILL: Kind<Place> = {
@@ -457,17 +468,101 @@ const FORMAT: Kind<Place> = {
   },
 }
 
-/** What `clear` takes away, by its argument. */
+/** What `clear` takes away, by its argument: a link stays behind contents and formats that go. */
+const CLEARED: Readonly<Record<string, readonly ('contents' | 'formats' | 'links')[]>> = {
+  All: ['contents', 'formats', 'links'],
+  Contents: ['contents'],
+  Formats: ['formats'],
+  Hyperlinks: ['links'],
+  RemoveHyperlinks: ['links', 'formats'],
+}
+
 function clear({ sheet, rect }: Place, applyTo = 'All'): void {
-  if (!['All', 'Contents', 'Formats'].includes(applyTo))
-    throw new OfficeError('InvalidArgument', `clear("${applyTo}")`)
+  const cleared = CLEARED[applyTo]
+  if (!cleared) throw new OfficeError('InvalidArgument', `clear("${applyTo}")`)
   sheet.guard()
   const stored = intersect(rect, sheet.used(false, rect) ?? rectAt(rect.top, rect.left, 1, 1))
-  if (applyTo !== 'Contents')
+  if (applyTo === 'All' || applyTo === 'Formats')
     for (const merge of sheet.merges(rect)) sheet.facade.getRange(sheet.rangeOf(merge)).breakApart()
   if (!stored) return
-  if (applyTo !== 'Formats') sheet.write(stored, () => NO_CONTENT)
-  if (applyTo !== 'Contents') sheet.restyle(stored, () => null)
+  if (cleared.includes('contents')) sheet.write(stored, () => NO_CONTENT)
+  if (cleared.includes('formats')) sheet.restyle(stored, () => null)
+  if (cleared.includes('links')) sheet.setLink(stored, null)
+}
+
+const textOfCell = (value: unknown): string =>
+  typeof value === 'boolean' ? String(value).toUpperCase() : String(value)
+
+/** The link behind a cell as the host describes it; null where there is none. */
+function hyperlinkAt(sheet: Sheet, row: number, column: number): Excel.RangeHyperlink | null {
+  const link = sheet.link(row, column)
+  const value = sheet.map(rectAt(row, column, 1, 1), (cell) => cell.value)[0]?.[0]
+  return link && { ...link, textToDisplay: textOfCell(value) }
+}
+
+/**
+ * Lays a link over a range. What the host does beside it undoes careless code, so it is done here: the text to display goes into the
+ * top-left cell as an entry of its own, an empty cell shows where it leads, and every cell takes on the font of the host's style for
+ * links, whatever it had before.
+ */
+function setHyperlink({ sheet, rect }: Place, given: unknown): void {
+  const { address, documentReference, screenTip, textToDisplay } = (given ?? {}) as Excel.RangeHyperlink
+  const target = documentReference ?? address
+  if (!target || (documentReference && address))
+    throw new OfficeError('InvalidArgument', 'a link needs an address or a place in the document')
+  const [first] = sheet.map(rectAt(rect.top, rect.left, 1, 1), (cell) => cell)[0] ?? []
+  const text = textToDisplay ?? (first?.kind === 'Empty' ? target : undefined)
+  sheet.setLink(rect, {
+    ...(documentReference ? { documentReference } : { address: target }),
+    ...(screenTip ? { screenTip } : {}),
+  })
+  sheet.restyle(rect, () => LINK_FONT)
+  if (text === undefined) return
+  sheet.write(rectAt(rect.top, rect.left, 1, 1), () => entered(text, first?.pattern ?? 'General'))
+}
+
+const LINK_FONT: IStyleData = {
+  ul: { s: BooleanNumber.TRUE },
+  cl: { rgb: '#0563C1' },
+  ff: 'Calibri',
+  fs: 11,
+  bl: BooleanNumber.FALSE,
+  it: BooleanNumber.FALSE,
+}
+
+/** Of every cell the properties asked for. */
+function cellProperties(place: Place, wanted: Excel.CellPropertiesLoadOptions): Excel.CellProperties[][] {
+  const { hyperlink, ...others } = wanted
+  const [other] = Object.keys(others)
+  if (other !== undefined)
+    throw new OfficeError('NotImplemented', `the desk has no Range.getCellProperties with ${other}`)
+  readable(place)
+  return [...lines(place, 'row')].map((row) =>
+    [...lines(place, 'column')].map((column) =>
+      // the host's own types have no word for a cell without a link
+      hyperlink ? { hyperlink: hyperlinkAt(place.sheet, row, column) as Excel.RangeHyperlink } : {},
+    ),
+  )
+}
+
+/** Folds rows or columns one level deeper, or less deep. */
+function regroup({ sheet, rect }: Place, option: string, by: 1 | -1): void {
+  if (option !== 'ByRows' && option !== 'ByColumns')
+    throw new OfficeError('InvalidArgument', `"${option}" is no way to group`)
+  if (option === 'ByRows' ? isEntireColumn(rect) : isEntireRow(rect))
+    throw new OfficeError(
+      'InvalidArgument',
+      'whole columns are not grouped by rows, nor whole rows by columns',
+    )
+  sheet.guard()
+  const axis = option === 'ByRows' ? 'row' : 'column'
+  sheet.hold(rect)
+  const before = [...lines({ sheet, rect }, axis)].map((line) => [line, sheet.level(axis, line)] as const)
+  if (by > 0 && before.some(([, level]) => level >= DEEPEST))
+    throw new OfficeError('InvalidOperation', `more than ${DEEPEST} groups within each other`)
+  const changed = before.filter(([, level]) => level + by >= 0)
+  if (changed.length === 0) throw new OfficeError('InvalidOperation', 'nothing is grouped there')
+  sheet.setLevels(axis, new Map(changed.map(([line, level]) => [line, level + by])))
 }
 
 function hiddenLines(axis: 'row' | 'column'): Scalar<Place> {
@@ -600,6 +695,18 @@ export const RANGE: Kind<Place> = {
           [...lines(place, axis)].every((line) => place.sheet.isHidden(axis, line))
         return hidden('row') || hidden('column')
       },
+    },
+    hyperlink: {
+      read: (place) => {
+        const { top, left } = place.rect
+        const same = common(
+          mapped(lines(place, 'row'), (row) =>
+            common(mapped(lines(place, 'column'), (column) => JSON.stringify(place.sheet.link(row, column)))),
+          ),
+        )
+        return same === null ? null : hyperlinkAt(place.sheet, top, left)
+      },
+      write: setHyperlink,
     },
     hasSpill: {
       read: (place) =>
@@ -751,14 +858,11 @@ export const RANGE: Kind<Place> = {
       sheet.facade.getRange(sheet.rangeOf(rect)).breakApart()
     },
     select: ({ sheet, rect }) => sheet.book.select(sheet, [rect]),
-    // The grid has no outlines; what was grouped is kept for the file.
-    group: ({ sheet, rect }, option: string) => {
-      sheet.guard()
-      const axis = option === 'ByRows' ? 'row' : 'column'
-      const [from, to] = axis === 'row' ? [rect.top, rect.bottom] : [rect.left, rect.right]
-      sheet.extras.outlines.push({ axis, from, to })
-    },
+    // The grid folds nothing; how deep a line is folded is kept with it, for the file.
+    group: (place, option: string) => regroup(place, option, 1),
+    ungroup: (place, option: string) => regroup(place, option, -1),
   },
+  answers: { getCellProperties: cellProperties },
 }
 
 const AREAS: Kind<Places> = {

@@ -68,6 +68,10 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
   api.addEvent(api.Event.SheetEditEnded, () => {
     office.editing = false
   })
+  // The grid draws no links: a press on the cell is all there is of one.
+  api.addEvent(api.Event.CellClicked, ({ worksheet, row, column }) =>
+    office.press(worksheet.getSheetId(), row, column),
+  )
 
   const tellMessage = (): void => {
     const book = api.getActiveWorkbook()
