@@ -6,6 +6,7 @@ import {
   groupDecomposition,
   logReturns,
   simpleReturns,
+  standardErrors,
   tailRisk,
   type Decomposition,
   type EstimatedModel,
@@ -64,9 +65,17 @@ interface Book {
   readonly across: boolean
 }
 
-function modelOf(argument: string, risk: unknown, estimator: unknown) {
+function modelOf(argument: string, risk: unknown, estimator: unknown, returnsOnly = false) {
   const how: Estimator = estimatorOf(estimator)
   const kept = keptBlock(argument, cellsOf(argument, risk))
+  if (returnsOnly && kept.panel.kind === 'covariance') {
+    throw new Fault(
+      'shape',
+      'found a covariance matrix, which does not tell how many dates it rests on',
+      'returns are needed, one row a date',
+      { argument },
+    )
+  }
   if (kept.panel.kind === 'covariance' && how.kind !== 'sample') {
     throw new Fault(
       'unknown-choice',
@@ -84,13 +93,15 @@ function bookOf(
   periods: unknown,
   estimator: unknown,
   names?: unknown,
+  returnsOnly = false,
 ): Book {
   const { values, across } = vectorOf('weights', weights)
   const periodsPerYear = periodsOf(periods)
-  const { kept, how } = modelOf('risk', risk, estimator)
+  const argument = returnsOnly ? 'returns' : 'risk'
+  const { kept, how } = modelOf(argument, risk, estimator, returnsOnly)
   const { panel } = kept
-  const columnOf = names === undefined ? inPlace(values, panel) : byName(values, panel, names)
-  refuseHiddenBlanks('risk', panel, columnOf)
+  const columnOf = names === undefined ? inPlace(argument, values, panel) : byName(values, panel, names)
+  refuseHiddenBlanks(argument, panel, columnOf)
 
   const placed = new Float64Array(panel.columns)
   columnOf.forEach((column, k) => (placed[column] = values[k]!))
@@ -106,14 +117,14 @@ function bookOf(
   }
 }
 
-function inPlace(weights: Float64Array, panel: Panel): Int32Array {
+function inPlace(argument: string, weights: Float64Array, panel: Panel): Int32Array {
   if (weights.length !== panel.columns) {
     const turned = weights.length === panel.rows ? ' (its rows are as many: TRANSPOSE turns it)' : ''
     throw new Fault(
       'shape',
       `found ${countOf(panel.columns, 'column')} for ${countOf(weights.length, 'weight')}`,
       `one column for each weight is needed${turned}`,
-      { argument: 'risk' },
+      { argument },
     )
   }
   return Int32Array.from(weights, (_, k) => k)
@@ -126,7 +137,7 @@ function byName(weights: Float64Array, panel: Panel, names: unknown): Int32Array
     if (label !== null) return label
     throw new Fault('blank', 'found a blank cell', 'a name is needed', whereOf(k))
   })
-  return panel.names ? columnsNamed(told, panel.names, whereOf) : inPlace(weights, panel)
+  return panel.names ? columnsNamed(told, panel.names, whereOf) : inPlace('risk', weights, panel)
 }
 
 const uneven = (argument: string, noun: string, found: number, weights: number): Fault =>
@@ -140,13 +151,13 @@ const uneven = (argument: string, noun: string, found: number, weights: number):
   )
 
 /** A figure that divides by the total risk, or the fault where there is none to divide by. */
-function defined<T>(figure: T | null): T {
+function defined<T>(figure: T | null, argument = 'risk'): T {
   if (figure !== null) return figure
   throw new Fault(
     'zero-risk',
     'found a portfolio without risk',
     'a volatility above 0 is needed to divide by',
-    { argument: 'risk' },
+    { argument },
   )
 }
 
@@ -368,6 +379,33 @@ export function contribution(
 export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: unknown): number[][] {
   const book = bookOf(weights, risk, null, estimator)
   return spilled(defined(book.decomposition.share), book)
+}
+
+/**
+ * Standard error of each share of risk: a share and 1.96 of its errors either way make a band of 95%.
+ *
+ * @customfunction RISKSHAREERROR
+ * @helpurl https://localhost:3000/help.html#riskshareerror
+ * @param weights Weights as fractions: one row or one column
+ * @param returns Returns as fractions: one row a period, newest last, one column a weight; names and dates may come along
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns n fractions; 0 for the share of an only position
+ * @remarks From how far each date moves the share, u_t = (w_i z_ti y_t - p_i y_t^2) / v: sqrt(sum of omega_t^2 u_t^2), z and y the returns of
+ * position and portfolio less their means, omega the weights of the dates, v the variance, p the share. No normal distribution is assumed. Dates
+ * count as independent; "lagged" takes neighbouring dates together. With shrinkage it is the error of the shares before shrinkage. An
+ * estimate that runs small where dates are few.
+ * @throws Fault as VOLATILITY | "zero-risk" | "shape" (a covariance matrix)
+ * @source White (1980), A Heteroskedasticity-Consistent Covariance Matrix Estimator, Econometrica 48(4), 817-838; "lagged": Newey & West (1987),
+ *         Econometrica 55(3), 703-708 (both from memory)
+ * @cost O(T n), a few times that of VOLATILITY; O(T n L) for L lags
+ * @example worksheetFunctions.RISKSHAREERROR([[.5], [.5]], [[.01, 0], [-.02, .01], [.01, -.01]]) // [[0.35355], [0.35355]]
+ */
+export function riskshareerror(weights: unknown[][], returns: unknown[][], estimator?: unknown): number[][] {
+  const book = bookOf(weights, returns, null, estimator, undefined, true)
+  // a covariance matrix, which has none, was refused
+  const { returns: history, estimator: how } = book.estimated!
+  const { share } = standardErrors(history, book.weights, how.kind === 'lagged' ? how.lags : 0)
+  return spilled(defined(share, 'returns'), book)
 }
 
 /**
@@ -669,6 +707,7 @@ export const worksheetFunctions: Readonly<Record<string, (...args: never[]) => u
   MARGINAL: marginal,
   CONTRIBUTION: contribution,
   RISKSHARE: riskshare,
+  RISKSHAREERROR: riskshareerror,
   BETA: beta,
   DIVERSIFICATION: diversification,
   EFFECTIVE: effective,

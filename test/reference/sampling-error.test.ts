@@ -15,6 +15,7 @@ import {
   type Spread,
   type Weighting,
 } from '../../src/core'
+import { worksheetFunctions } from '../../src/sheet/functions'
 import { absoluteGap, relativeGap } from '../closeness'
 import { generatedReturns, readCsv, readJson } from './data'
 
@@ -180,6 +181,17 @@ describe('the bootstrap draws the dates that MT19937 gives in numpy, and takes t
     compare(result.contribution, expected.contribution)
     compare(result.share!, expected.share)
   })
+})
+
+test('RISKSHAREERROR gives in cells what was computed for the index returns, estimator by estimator', () => {
+  const { set, returns } = returnsOf('eu_log')
+  const block = Array.from({ length: set.about.T }, (_, t) => Array.from(returns.subarray(4 * t, 4 * t + 4)))
+  const call = worksheetFunctions['RISKSHAREERROR'] as (...cells: unknown[]) => number[][]
+  for (const [setting, expected] of Object.entries(computed.cases['eu_log.long']!)) {
+    const found = call([set.about.weights.long], block, setting)
+    expect(found).toHaveLength(1)
+    expect(relativeGap(found.flat(), expected.se_share)).toBeLessThan(tolerance)
+  }
 })
 
 /** The largest difference between errors of the bootstrap and of the closed form, in standard deviations of the former. */

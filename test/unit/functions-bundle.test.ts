@@ -30,6 +30,7 @@ const released: Record<string, string> = {
   MARGINAL: 'weights, risk, [periods_per_year], [estimator]',
   CONTRIBUTION: 'weights, risk, [periods_per_year], [estimator]',
   RISKSHARE: 'weights, risk, [estimator]',
+  RISKSHAREERROR: 'weights, returns, [estimator]',
   BETA: 'weights, risk, [estimator]',
   DIVERSIFICATION: 'weights, risk, [estimator]',
   EFFECTIVE: 'weights, risk, [estimator]',
