@@ -11,18 +11,28 @@ interface Face {
   readonly italic: boolean
   readonly align: string
   readonly wrap: boolean
-  readonly top: string
-  readonly bottom: string
+  readonly top: Rule
+  readonly bottom: Rule
 }
 
-const PLAIN: Face = { bold: false, italic: false, align: 'General', wrap: false, top: 'None', bottom: 'None' }
+/** A line along an edge; rules of ours have the weight and the colour the host gives them. */
+interface Rule {
+  readonly style: string
+  readonly weight?: string
+  readonly color?: string
+}
+
+const NONE: Rule = { style: 'None' }
+const LINE: Rule = { style: 'Continuous' }
+const PLAIN: Face = { bold: false, italic: false, align: 'General', wrap: false, top: NONE, bottom: NONE }
 
 const FACES: { readonly [mark in Mark]: Face } = {
   title: { ...PLAIN, bold: true },
-  head: { ...PLAIN, bold: true, wrap: true, bottom: 'Continuous' },
-  total: { ...PLAIN, bold: true, top: 'Continuous' },
+  head: { ...PLAIN, bold: true, wrap: true, bottom: LINE },
+  total: { ...PLAIN, bold: true, top: LINE },
   note: { ...PLAIN, italic: true },
   alert: { ...PLAIN, bold: true, italic: true },
+  wrapped: { ...PLAIN, wrap: true },
 }
 
 /** A face and the cells that have it. */
@@ -32,8 +42,12 @@ export interface Look extends Face {
 
 type Edge = 'EdgeTop' | 'EdgeBottom' | 'InsideHorizontal'
 
-function rule(range: Excel.Range, edge: Edge, style: string): void {
-  range.format.borders.getItem(edge).style = style as Excel.BorderLineStyle
+function rule(range: Excel.Range, edge: Edge, { style, weight, color }: Rule): void {
+  const border = range.format.borders.getItem(edge)
+  border.style = style as Excel.BorderLineStyle
+  if (color !== undefined) border.color = color
+  // last: a weight that does not go with a style changes it, and the style is there by then
+  if (weight !== undefined) border.weight = weight as Excel.BorderWeight
 }
 
 /** Makes an area plain. Its outer rules stay: neighbours share them. */
@@ -110,7 +124,7 @@ function faceOf(table: Table, row: number, column: number): Face {
   const mark = table.cells[row]?.[column]?.mark
   if (!mark) return PLAIN
   // over a first row there is nothing of ours to be parted from
-  if (row === 0) return { ...FACES[mark], top: 'None' }
+  if (row === 0) return { ...FACES[mark], top: NONE }
   return mark === 'head' && table.numeric[column] ? { ...FACES.head, align: 'Right' } : FACES[mark]
 }
 
@@ -139,12 +153,12 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
       format.font.load('bold,italic')
       const edges = (
         ['EdgeTop', 'EdgeBottom', ...(area.rows > 1 ? ['InsideHorizontal' as const] : [])] as const
-      ).map((edge) => format.borders.getItem(edge).load('style'))
+      ).map((edge) => format.borders.getItem(edge).load('style,weight,color'))
       return { area, format, edges }
     })
     await sync()
     open = asked.flatMap(({ area, format, edges }) => {
-      const [top, bottom, inside] = edges.map((edge) => edge.style as string | null)
+      const [top = null, bottom = null, inside] = edges.map(ruleOf)
       const { font } = format
       const look = {
         area,
@@ -152,10 +166,10 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
         italic: font.italic as boolean | null,
         align: format.horizontalAlignment as string | null,
         wrap: format.wrapText as boolean | null,
-        top: top ?? null,
-        bottom: bottom ?? null,
+        top,
+        bottom,
       }
-      const ruled = area.rows > 1 && [top, bottom, inside].some((style) => style !== 'None')
+      const ruled = area.rows > 1 && [top, bottom, inside].some((found) => found !== NONE)
       if (!ruled && isUniform(look)) {
         looks.push(look)
         return []
@@ -164,6 +178,16 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
     })
   }
   return looks
+}
+
+/** The line all of an edge has, or null when it is mixed. */
+function ruleOf({
+  style,
+  weight,
+  color,
+}: { [key in 'style' | 'weight' | 'color']: string | null }): Rule | null {
+  if (style === 'None') return NONE
+  return style !== null && weight !== null && color !== null ? { style, weight, color } : null
 }
 
 const isUniform = (look: { [key in keyof Look]: Look[key] | null }): look is Look =>

@@ -78,6 +78,7 @@ export interface Blocks {
 /**
  * Builds the risk model of a book's holdings: the look-back, the rule for gaps, the estimator. What is heavy is left to the calculator.
  *
+ * @param extent 'model alone' leaves out what is only told beside the figures: the condition number and the tests of normality
  * @throws Fault "too-few" when fewer than 2 dates are left, naming the series that leaves the fewest; "zero-risk" when nothing moves;
  *               "unknown-choice" for choices that do not go together; what the estimators throw
  * @cost         O(T n) here once, and the estimator's set-up in the calculator; later weight changes cost one pass
@@ -87,10 +88,11 @@ export async function modelOf(
   choices: ModelChoices,
   calculator: Calculator,
   work: Work,
+  extent: 'whole' | 'model alone' = 'whole',
 ): Promise<BookModel> {
   return blocks.returns.content === 'covariance'
     ? givenModel(blocks, choices)
-    : new Estimation(blocks, choices, calculator, work).model()
+    : new Estimation(blocks, choices, calculator, work).model(extent)
 }
 
 function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelChoices): BookModel {
@@ -152,7 +154,7 @@ class Estimation {
     this.#risky = [...blocks.match.seriesOf.keys()].filter((i) => (blocks.match.seriesOf[i] ?? -1) >= 0)
   }
 
-  async model(): Promise<BookModel> {
+  async model(extent: 'whole' | 'model alone'): Promise<BookModel> {
     const { returns, match } = this.#blocks
     const size = match.seriesOf.length
     const factors = this.#choices.estimator.kind === 'factors' ? this.#factors() : null
@@ -166,6 +168,7 @@ class Estimation {
       'set up',
       {
         rule,
+        bare: extent === 'model alone',
         repair: this.#choices.repair,
         estimator: estimator.kind === 'factors' ? null : estimator,
         returns: used.values,

@@ -8,6 +8,7 @@ import { addressOf, overlap } from './cells'
 import { explain } from './explain'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
+import type { CheckLine } from './inspection'
 import type { Cause, Field, Proposal, Status } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
@@ -41,6 +42,8 @@ export interface BooksState {
   readonly factors: ReturnsReading | null
   readonly settings: Settings
   readonly breakdown: Breakdown | null
+  /** what was found about the data; null while there is nothing to look over */
+  readonly checks: readonly CheckLine[] | null
   readonly studies: Studies
   /** whether names in the workbook hold the blocks of this book */
   readonly linked: boolean
@@ -70,6 +73,8 @@ export interface Books {
   /** @param of the book's own past at today's weights, or a selected block of returns and forecasts */
   backtest(choice: BacktestChoice, of: 'this book' | 'selection'): Promise<void>
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
+  /** Writes what was found about the data, cells as links, to a sheet of its own. */
+  writeChecks(): Promise<void>
   reveal(area: Area): Promise<void>
   addBook(): Promise<void>
   switchTo(id: string): Promise<void>
@@ -113,6 +118,8 @@ class OpenBooks implements Books {
   #notice: string | null = null
   #waiting = false
   #queue: Promise<void> = Promise.resolve()
+  /** actions that are under way or wait for their turn */
+  #waitingActions = 0
   readonly #due = new Map<LinkedBook, Cause>()
   #timer: ReturnType<typeof setTimeout> | null = null
   #unwatch: (() => Promise<void>) | null = null
@@ -198,6 +205,7 @@ class OpenBooks implements Books {
       factors: book.factors,
       settings: book.settings,
       breakdown: book.breakdown,
+      checks: book.checks,
       studies: book.studies,
       linked: book.linked,
       table: book.table,
@@ -231,6 +239,7 @@ class OpenBooks implements Books {
    * other error is a mistake of ours and is told as such rather than leaving "up to date" on the screen.
    */
   #enqueue(book: LinkedBook | null, action: (work: Work) => Promise<void>, field?: Field): Promise<void> {
+    this.#waitingActions++
     const run = this.#queue.then(async () => {
       const stop = new AbortController()
       const cancel = (): void => {
@@ -251,11 +260,26 @@ class OpenBooks implements Books {
         this.#tell(error, book ?? this.#book, field)
       } finally {
         this.#working = null
+        this.#waitingActions--
         this.#publish()
       }
     })
     this.#queue = run
+    void run.then(() => this.#inspect(book))
     return run
+  }
+
+  /** Looks over the data once nothing else waits: the figures come first. */
+  #inspect(book: LinkedBook | null): void {
+    if (!book?.inspectionDue || this.#waitingActions > 0 || !this.#books.includes(book)) return
+    void this.#enqueue(book, async (work) => {
+      try {
+        await book.inspect(work)
+      } catch (error) {
+        // a look that was cancelled, or that met bad data, says nothing about the figures
+        if (!(error instanceof Fault)) throw error
+      }
+    })
   }
 
   #tell(error: unknown, book: LinkedBook, field?: Field): void {
@@ -428,6 +452,13 @@ class OpenBooks implements Books {
     })
   }
 
+  writeChecks(): Promise<void> {
+    return this.#command('table', async (book, work) => {
+      const area = await book.writeChecks(serialToday(), work)
+      this.#notice = `Data checks written to ${addressOf(area)}. The list stays as it is until it is written again.`
+    })
+  }
+
   reveal(area: Area): Promise<void> {
     // no command on the book: its questions stay, and a place that is gone says nothing about its figures
     return this.#enqueue(this.#book, async () => {
@@ -465,6 +496,12 @@ class OpenBooks implements Books {
       this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.`
     })
   }
+}
+
+/** Today as a workbook counts days. */
+function serialToday(): number {
+  const now = new Date()
+  return Date.UTC(now.getFullYear(), now.getMonth(), now.getDate()) / 86400000 + 25569
 }
 
 /** How a book has to look again at its sheet after an event, if at all. */

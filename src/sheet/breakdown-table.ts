@@ -367,11 +367,8 @@ function addTails(
       'At least: fat tails make it larger',
     )
   if (risk.shortfall !== null) rows.figure('Expected shortfall', number(risk.shortfall, PERCENT))
-  if (partsWithheld !== null) {
-    rows.add([text(partsWithheld, 'note')])
-    return
-  }
-  if (difference !== null) rows.add([text(difference, 'note')])
+  // one row whatever it says: a new weight must not move the rows below
+  rows.add([text(partsWithheld ?? difference ?? '', 'note')])
   const { parts, shares } = risk
   if (parts === null) return
   rows.row(
@@ -385,13 +382,15 @@ function addTails(
     '',
     'head',
   )
+  const part = (value: number | undefined, format: string): TableCell =>
+    partsWithheld === null ? number(value, format) : text(WITHHELD)
   names.forEach((name, i) =>
     rows.row(
       [text(name)],
       {
         weight: number(d.weights[i], PERCENT),
-        'stand-alone': number(parts[i], PERCENT),
-        marginal: number(shares?.[i], SHARE),
+        'stand-alone': part(parts[i], PERCENT),
+        marginal: part(shares?.[i], SHARE),
         contribution: shareCell(d.share?.[i], sharesWithheld, d.share !== null),
       },
       '',
@@ -422,7 +421,7 @@ function addActive(rows: Rows, active: Active, horizon: string): void {
   rows.figure('Volatility of the benchmark', number(risk.benchmarkVolatility, PERCENT))
   rows.figure('Beta to the benchmark', number(risk.beta, RATIO))
   rows.figure('Correlation with the benchmark', number(risk.correlation, RATIO))
-  if (sharesWithheld !== null) rows.add([text(sharesWithheld, 'note')])
+  rows.add([text(sharesWithheld ?? '', 'note')])
   rows.row(
     [text('Holding', 'head')],
     {

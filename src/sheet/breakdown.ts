@@ -245,7 +245,7 @@ function normalityOf({ history, normality }: BookModel, weights: Float64Array): 
   const tested = normality.series.flatMap((series) => series.pValue ?? [])
   // with many series some fail by chance, so the level is divided by their number (Bonferroni)
   const failing = tested.filter((p) => p < NORMALITY_LEVEL / tested.length).length
-  const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test${TOGETHER[normality.block.verdict]}`
+  const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test${normality.block === null ? ' (so many numbers are not tested together)' : TOGETHER[normality.block.verdict]}`
   const figures = `Jarque–Bera ${numberText(statistic, 1)}, ${pValue < 0.001 ? 'p below 0.001' : `p ${numberText(pValue, 3)}`}; skewness ${numberText(skewness ?? 0, 2)}, excess kurtosis ${numberText(excessKurtosis ?? 0, 2)}`
   const meaning = {
     consistent:

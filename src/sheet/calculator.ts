@@ -26,6 +26,8 @@ import type {
   Shrinkage,
   Weighting,
 } from '../core'
+import type { FactsInput, SeriesFacts } from './series-facts'
+import { seriesFacts } from './series-facts'
 import type { GapRule, RepairRule } from './settings'
 
 /** A long action under way: where it tells its progress and hears that it is not wanted any more. */
@@ -48,6 +50,8 @@ export interface SetUpInput extends Returns {
   readonly repair: RepairRule
   /** null: a model that is set up elsewhere */
   readonly estimator: Estimator | null
+  /** without what is only told beside the figures */
+  readonly bare: boolean
   /** the returns of the dates common to all, where `returns` has gaps; else null: the same */
   readonly common: Float64Array | null
 }
@@ -61,8 +65,11 @@ export interface SetUp {
     readonly repair: Omit<CovarianceRepair, 'matrix'> | null
   } | null
   readonly condition: Condition | null
-  /** of each series and of all together, on the dates common to all; null where there are too few */
-  readonly normality: { readonly series: readonly SeriesNormality[]; readonly block: BlockNormality } | null
+  /** of each series and of all together (null where that would take long), on the dates common to all; null where there are too few */
+  readonly normality: {
+    readonly series: readonly SeriesNormality[]
+    readonly block: BlockNormality | null
+  } | null
 }
 
 /** The heavy computations: what goes in and what comes out is plain data, as both may cross to a worker and back. */
@@ -86,6 +93,7 @@ const JOBS = {
         0,
         0.5,
       )
+    if (input.bare) return { shrinkage, matrix, pairs, condition: null, normality: null }
     yield 0.6
     const model =
       matrix !== null
@@ -99,6 +107,10 @@ const JOBS = {
       condition,
       normality: yield* part(normalityOf(input.common ?? returns, size), 0.8, 1),
     }
+  },
+
+  *'series facts'(input: FactsInput): Generator<number, SeriesFacts> {
+    return yield* seriesFacts(input)
   },
 
   *bootstrap({
@@ -130,6 +142,9 @@ const JOBS = {
   },
 }
 
+/** Products beyond which the test of all series together is left out: seconds in which nobody sees any figure. */
+const MOST_PRODUCTS = 5e8
+
 /** Dates below which tests of normality say nothing. Our own convention. */
 const FEWEST_DATES = 20
 
@@ -141,7 +156,11 @@ function* normalityOf(returns: Float64Array, size: number): Generator<number, Se
     series.push(jarqueBera(Float64Array.from({ length: dates }, (_, t) => returns[t * size + i]!)))
     if (i % 50 === 49) yield (0.5 * i) / size
   }
-  return { series, block: yield* part(mardia(returnsModel(returns, dates, size)), 0.5, 1) }
+  const isLarge = dates * size * (dates + size) > MOST_PRODUCTS
+  return {
+    series,
+    block: isLarge ? null : yield* part(mardia(returnsModel(returns, dates, size)), 0.5, 1),
+  }
 }
 
 /** A generator's progress as a part of a longer one's. */
@@ -160,6 +179,7 @@ export type JobResult<K extends JobKind> = ReturnType<Jobs[K]> extends Generator
 
 const WORDS: { readonly [K in JobKind]: string } = {
   'set up': 'Setting up the risk model',
+  'series facts': 'Looking over the returns',
   bootstrap: 'Drawing dates anew',
   'back-test': 'Going through time',
 }

@@ -27,6 +27,8 @@ export type { Calculator, JobInput, JobKind, JobResult, Work } from './calculato
 export { BAND } from './bands'
 export type { Bands } from './bands'
 export type { Active } from './benchmark'
+export type { Check, CheckKind } from './checks'
+export type { CheckLine, CorrectedVolatility } from './inspection'
 export type { NestedGroup } from './nesting'
 export { withColumn } from './nesting'
 export type { Tails } from './tail-section'

@@ -14,7 +14,10 @@ import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
 import type { Match } from './matching'
 import { matchHoldings } from './matching'
+import { checksTable } from './checks-table'
 import { growthBeside } from './growth'
+import type { CheckLine } from './inspection'
+import { Inspection } from './inspection'
 import { numberInCell } from './numbers'
 import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
@@ -59,7 +62,7 @@ export interface Proposal {
   readonly accept: (work: Work) => Promise<void>
 }
 
-type Part = 'holdings' | 'returns' | 'factors' | 'table' | 'capital'
+type Part = 'holdings' | 'returns' | 'factors' | 'table' | 'capital' | 'checks'
 
 /** A block whose rows are dates. */
 type SeriesPart = 'returns' | 'factors'
@@ -101,6 +104,8 @@ export class LinkedBook {
   /** which series each holding goes with, as soon as both blocks are read */
   match: Match | null = null
   breakdown: Breakdown | null = null
+  /** what was found about the data, as soon as both blocks are read; null until then */
+  checks: readonly CheckLine[] | null = null
   /** what was computed at length about the figures that stand now */
   studies: Studies = NO_STUDIES
   table: Area | null = null
@@ -133,6 +138,8 @@ export class LinkedBook {
     book: BookModel
   } | null = null
   #written: Table | null = null
+  readonly #inspection = new Inspection()
+  #inspected: readonly unknown[] = []
   #unasked = 0
   readonly #asked = new Set<string>()
   /** what has changed in the sheet since it was read */
@@ -390,6 +397,36 @@ export class LinkedBook {
     if (!this.linked) return
     await this.#save()
     await this.refresh('compute', work)
+  }
+
+  // ---- the data
+
+  /** Whether the data have changed, or the choices about them, since they were looked over. */
+  get inspectionDue(): boolean {
+    const now = this.#inspectable()
+    return now.length !== this.#inspected.length || now.some((part, k) => part !== this.#inspected[k])
+  }
+
+  #inspectable(): readonly unknown[] {
+    return [this.holdings, this.returns, this.factors, this.match, this.settings]
+  }
+
+  /** Looks over the data: what may be wrong with them, and what the volatility would be with it mended. */
+  async inspect(work: Work): Promise<void> {
+    const { holdings, returns, factors, match } = this
+    this.#inspected = this.#inspectable()
+    const unfit = [holdings, returns, match].some(
+      (part) => part === null || part.findings.some(({ weight }) => weight === 'stops'),
+    )
+    this.checks =
+      unfit || !holdings || !returns || !match
+        ? null
+        : await this.#inspection.lines(
+            { holdings, returns, factors, match },
+            this.settings,
+            this.calculator,
+            work,
+          )
   }
 
   // ---- computing
@@ -689,6 +726,30 @@ export class LinkedBook {
     })
   }
 
+  /** Writes what was found about the data to a sheet of its own; an earlier list of this book gives way to it. */
+  async writeChecks(today: number, work: Work): Promise<Area> {
+    if (this.checks === null || this.inspectionDue) await this.inspect(work)
+    if (this.checks === null)
+      throw new Fault(
+        'missing',
+        'the data are not looked over yet',
+        'holdings and returns without faults that stop are needed',
+        { argument: 'table' },
+      )
+    const table = checksTable(this.title, this.checks, this.breakdown, today)
+    const [earlier] = await this.workbook.look([{ at: { kept: this.keptName('checks') } }])
+    const target = earlier?.area ?? (await this.#freeSheet('Data checks'))
+    const area = areaOfTable(target, table)
+    this.#refuseOverSources(area)
+    await this.workbook.write({
+      ...(earlier ? {} : { sheet: target.sheet }),
+      patches: [{ at: area, table, over: 'blank', ...(earlier ? { ours: earlier.area } : {}) }],
+      keep: { [this.keptName('checks')]: area },
+    })
+    this.kept = true
+    return area
+  }
+
   async #targetOf(where: 'new sheet' | 'selection' | 'where it was'): Promise<Area> {
     if (where === 'selection') return this.workbook.selection()
     if (where === 'where it was') {
@@ -698,9 +759,14 @@ export class LinkedBook {
         })
       return this.table
     }
-    const shown = new Set((await this.workbook.sheets()).map((name) => name.toLowerCase()))
+    return this.#freeSheet('Risk')
+  }
+
+  /** The corner of a sheet that is not there yet. */
+  async #freeSheet(name: string): Promise<Area> {
+    const shown = new Set((await this.workbook.sheets()).map((shownName) => shownName.toLowerCase()))
     for (let k = 1; ; k++) {
-      const corner: Area = { sheet: k === 1 ? 'Risk' : `Risk ${k}`, row: 0, column: 0, rows: 1, columns: 1 }
+      const corner: Area = { sheet: k === 1 ? name : `${name} ${k}`, row: 0, column: 0, rows: 1, columns: 1 }
       if (shown.has(corner.sheet.toLowerCase())) continue
       // a hidden sheet has its name too, and a table on it would not be seen
       const [hidden] = await this.workbook.look([{ at: corner }])
@@ -758,7 +824,7 @@ export class LinkedBook {
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
   forget(): WritePlan {
-    const parts: Part[] = ['holdings', 'returns', 'factors', 'table', 'capital']
+    const parts: Part[] = ['holdings', 'returns', 'factors', 'table', 'capital', 'checks']
     return {
       patches: [],
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),

@@ -300,17 +300,22 @@ describe('The written table', () => {
     const { compute, writeTable, valuesAt } = await desk()
     await compute()
     await writeTable()
-    const rows = await valuesAt('Risk', 'A6:J13')
+    const rows = await valuesAt('Risk', 'A6:N13')
     expect(rows[0]).toEqual([
-      'Holding', 'Class', 'Weight', 'Stand-alone risk', 'Marginal contribution to risk', 'Contribution to risk', 'Share of risk',
-      'Beta to portfolio', 'Correlation with portfolio', 'Note',
+      'Holding', 'Class', 'Weight', 'Stand-alone risk', 'Marginal contribution to risk', 'Contribution to risk',
+      '95% band, from', '95% band, to', 'Share of risk', '95% band, from', '95% band, to', 'Beta to portfolio', 'Correlation with portfolio', 'Note',
     ]) // prettier-ignore
     const sum = rows.slice(1, 5).reduce((total, row) => total + Number(row[5]), 0)
     const total = Number(rows[5]?.[5])
     expect(rows.slice(5).map((row) => row[0])).toEqual(['Total', 'Sum of parts', 'Difference'])
     expect(Math.abs(sum - total)).toBeLessThan(1e-12 * total)
     expect(Number(rows[6]?.[5])).toBeCloseTo(total, 14)
-    expect(rows[4]?.[9]).toBe('Risk-reducing position')
+    expect(rows[4]?.[13]).toBe('Risk-reducing position')
+    // the band stands around its figure
+    for (const row of rows.slice(1, 6)) {
+      expect(Number(row[6])).toBeLessThan(Number(row[5]))
+      expect(Number(row[7])).toBeGreaterThan(Number(row[5]))
+    }
   })
 
   test('nothing is written while its values do not change', async () => {
@@ -349,7 +354,7 @@ describe('The written table', () => {
     await books.writeTable({ kind: 'selection' })
     const state = await quiet()
     expect(state.faults.table).toMatch(
-      /^The table would fill Sheet1!B1:K\d+ and cover the holdings in Sheet1!A3:C7, which it is computed from; choose another place\.$/,
+      /^The table would fill Sheet1!B1:O\d+ and cover the holdings in Sheet1!A3:C7, which it is computed from; choose another place\.$/,
     )
     expect(state.offers).toEqual([])
     expect(state.status).toEqual({ kind: 'up to date' })
@@ -370,7 +375,7 @@ describe('The written table', () => {
     expect(state.status).toMatchObject({
       kind: 'stale',
       sentence: expect.stringMatching(
-        /^The table in Risk!A1:J40 has to grow and cannot\. Risk!A41 is in the way/,
+        /^The table in Risk!A1:N\d+ has to grow and cannot\. Risk!A\d+ is in the way/,
       ) as string,
     })
     expect(await valuesAt('Risk', below)).toEqual([['mine']])
@@ -385,8 +390,10 @@ describe('The written table', () => {
     await compute()
     await writeTable()
     await writeTable()
-    expect(books.state().notice).toBe(
-      "Table written to 'Risk 2'!A1:J40. It follows the weights. The earlier one in Risk!A1:J40 stays as it is and no longer follows.",
+    expect(books.state().notice).toEqual(
+      expect.stringMatching(
+        /^Table written to 'Risk 2'!A1:N\d+\. It follows the weights\. The earlier one in Risk!A1:N\d+ stays as it is and no longer follows\.$/,
+      ),
     )
     user.type('Sheet1', 'C4', 0.8)
     await quiet()
