@@ -179,14 +179,19 @@ function fatTailed(seed) {
 }
 
 /** WEEKS rows of one return for each holding, null where it has none. */
-export function weeklyReturns() {
+export const weeklyReturns = () => weeklyHistory().map(({ returns }) => returns)
+
+/** WEEKS rows of one return for each factor. */
+export const weeklyFactors = () => weeklyHistory().map(({ factors }) => Object.values(factors).map(rounded))
+
+function weeklyHistory() {
   const draw = fatTailed(SEED)
   const weekly = (perYear) => perYear / Math.sqrt(PER_YEAR)
   const names = Object.keys(FACTORS)
   let unreported = 0
   return Array.from({ length: WEEKS }, (_, week) => {
     const factors = Object.fromEntries(names.map((name) => [name, weekly(FACTORS[name]) * draw()]))
-    return HOLDINGS.map(({ name, load, own, mean }) => {
+    const returns = HOLDINGS.map(({ name, load, own, mean }) => {
       // Every holding draws every week, so that changing one leaves the others as they were.
       const noise = weekly(own) * draw()
       const common = names.reduce((sum, factor) => sum + (load[factor] ?? 0) * factors[factor], 0)
@@ -203,6 +208,7 @@ export function weeklyReturns() {
       }
       return rounded(value)
     })
+    return { factors, returns }
   })
 }
 
@@ -222,6 +228,7 @@ export function demoWorkbook() {
   workbook.calcProperties.fullCalcOnLoad = true
   writeBook(workbook.addWorksheet('Book'))
   writeReturns(workbook.addWorksheet('Returns'))
+  writeFactors(workbook.addWorksheet('Factors'))
   writeModel(workbook.addWorksheet('Model'))
   writeReadMe(workbook.addWorksheet('Read me'))
   return workbook
@@ -271,6 +278,21 @@ function writeReturns(sheet) {
   sheet.views = [{ state: 'frozen', xSplit: 1, ySplit: 1 }]
 }
 
+const FACTOR_NAMES = ['World shares', 'Interest rates', 'Real assets', 'Young markets']
+
+function writeFactors(sheet) {
+  header(sheet, 1, ['Week ending', ...FACTOR_NAMES])
+  weeklyFactors().forEach((returns, week) => {
+    const row = sheet.getRow(week + 2)
+    row.values = [new Date(LAST_FRIDAY - (WEEKS - 1 - week) * 7 * DAY), ...returns]
+    row.getCell(1).numFmt = 'yyyy-mm-dd'
+  })
+  for (let column = 2; column <= FACTOR_NAMES.length + 1; column++)
+    numbers(sheet, column, 2, WEEKS + 1, '0.00%')
+  widths(sheet, [13, ...FACTOR_NAMES.map(() => 14)])
+  sheet.views = [{ state: 'frozen', xSplit: 1, ySplit: 1 }]
+}
+
 /** What the user had before: ordinary formulas, with the add-in's functions where the risk comes in. */
 function writeModel(sheet) {
   const weights = `Book!D${FIRST}:D${LAST}`
@@ -297,6 +319,18 @@ function writeModel(sheet) {
     sheet.getCell(4 + i, 2).value = value
     sheet.getCell(4 + i, 2).numFmt = format
   })
+  const others = [
+    ['Value at risk, 95%, one week', add('VALUEATRISK', weights, returns, 0.95, 1, '"historical"'), '0.00%'],
+    ['Expected shortfall, the same', add('SHORTFALL', weights, returns, 0.95, 1, '"historical"'), '0.00%'],
+    ['Volatility with 3 lagged terms', add('VOLATILITY', weights, returns, 'B5', '"lagged 3"'), '0.00%'],
+    ['Volatility, newer weeks counting more', add('VOLATILITY', weights, returns, 'B5', '"exponential 0.97"'), '0.00%'],
+    ['Volatility, covariance shrunk', add('VOLATILITY', weights, returns, 'B5', '"shrink correlation"'), '0.00%'],
+  ] // prettier-ignore
+  others.forEach(([label, formula, format], i) => {
+    sheet.getCell(4 + i, 4).value = label
+    sheet.getCell(4 + i, 7).value = { formula }
+    sheet.getCell(4 + i, 7).numFmt = format
+  })
   const top = 14
   const last = top + HOLDINGS.length - 1
   header(sheet, top - 1, [
@@ -307,6 +341,7 @@ function writeModel(sheet) {
     'Share of risk',
     'Limit',
     'Over the limit',
+    'Standard error of share',
   ])
   HOLDINGS.forEach((_, i) => {
     const row = sheet.getRow(top + i)
@@ -324,12 +359,13 @@ function writeModel(sheet) {
   }
   spill('D', add('CONTRIBUTION', weights, returns, 'B5'))
   spill('E', add('RISKSHARE', weights, returns))
+  spill('H', add('RISKSHAREERROR', weights, returns))
   const total = sheet.getRow(last + 1)
   total.getCell(1).value = 'Total'
   for (const column of ['B', 'C', 'D', 'E']) {
     total.getCell(column).value = { formula: `SUM(${column}${top}:${column}${last})` }
   }
-  for (let column = 1; column <= 7; column++) {
+  for (let column = 1; column <= 8; column++) {
     total.getCell(column).border = { top: LINE }
     total.getCell(column).font = { bold: true, color: { argb: INK } }
   }
@@ -341,24 +377,25 @@ function writeModel(sheet) {
     [4, '0.00%'],
     [5, PERCENT],
     [6, PERCENT],
+    [8, PERCENT],
   ]) {
     numbers(sheet, column, top, last + 2, format)
   }
   numbers(sheet, 7, top, last, 'General')
 
-  sheet.getCell(`I${top - 2}`).value = 'The same as one table'
-  sheet.getCell(`I${top - 2}`).font = { bold: true, color: { argb: INK } }
+  sheet.getCell(`J${top - 2}`).value = 'The same as one table'
+  sheet.getCell(`J${top - 2}`).font = { bold: true, color: { argb: INK } }
   const [rows, columns] = BREAKDOWN_SIZE
-  sheet.getCell(`I${top - 1}`).value = {
+  sheet.getCell(`J${top - 1}`).value = {
     formula: add('BREAKDOWN', `Book!A${FIRST}:A${LAST}`, weights, returns, 'B5'),
     shareType: 'array',
-    ref: `I${top - 1}:${String.fromCharCode('I'.charCodeAt(0) + columns - 1)}${top - 2 + rows}`,
+    ref: `J${top - 1}:${String.fromCharCode('J'.charCodeAt(0) + columns - 1)}${top - 2 + rows}`,
   }
-  header(sheet, top - 1, Array(columns).fill(null), 9)
+  header(sheet, top - 1, Array(columns).fill(null), 10)
   ;[PERCENT, PERCENT, '0.000', '0.00%', PERCENT, '0.00', '0.00'].forEach((format, i) => {
-    numbers(sheet, 10 + i, top, top - 2 + rows, format)
+    numbers(sheet, 11 + i, top, top - 2 + rows, format)
   })
-  widths(sheet, [40, 12, 15, 15, 12, 10, 12, 3, 31, ...Array.from({ length: columns - 1 }, () => 15)])
+  widths(sheet, [40, 12, 15, 15, 12, 10, 12, 14, 3, 31, ...Array.from({ length: columns - 1 }, () => 15)])
 }
 
 /** Rows and columns of BREAKDOWN's table for this book: headings, the holdings and a total; name and seven figures. */
@@ -374,6 +411,7 @@ function writeReadMe(sheet) {
     'a limit on each share of risk, and an expected return.',
     'Returns: 260 weekly returns, oldest first. "Tidal power projects" starts two and a half years in; the cells before are empty.',
     '"Timber and orchard land" is valued every fourth week and stands still in between, which makes it look calmer than it is.',
+    'Factors: weekly returns of the four common factors, for whoever wants a factor model (A1:E261).',
     "Model: a small sheet that was there before, with the add-in's functions between ordinary formulas.",
     '',
     'To try: select the holdings with their header in Book (A4:G21) and choose "Use selection" in the pane; the same in Returns (A1:Q261);',

@@ -64,7 +64,7 @@ it('the desk opens it whole, and the functions in its model agree with the defin
     host.register(JSON.parse(await describeFunctions('src/sheet/functions.ts')) as FunctionsMetadata, 'POISE')
     associateFunctions(worksheetFunctions)
     const report = await openWorkbook(grid, committed, new Map(), 'demo.xlsx')
-    expect(sentenceOf(report)).toBe('Opened 4 sheets.')
+    expect(sentenceOf(report)).toBe('Opened 5 sheets.')
 
     const sheet = grid.api.getActiveWorkbook()?.getSheetByName('Model')
     const spilled = grid.univer.__getInjector().get(FormulaDataModel).getArrayFormulaCellData()
@@ -85,10 +85,16 @@ it('the desk opens it whole, and the functions in its model agree with the defin
     const total = (values: number[]) => values.reduce((sum, part) => sum + part, 0)
     expect(total(column(4)) / volatility).toBeCloseTo(1, 12)
     expect(total(column(5))).toBeCloseTo(1, 12)
+    // every error is a number, and none so large that nothing could be said
+    for (const error of column(8)) expect(error).toBeGreaterThanOrEqual(0)
+    expect(Math.max(...column(8))).toBeLessThan(0.1)
+    // a mean of the worst losses is no smaller than where they begin; both and the estimators stand in the model
+    expect(Number(value(5, 7))).toBeGreaterThanOrEqual(Number(value(4, 7)))
+    for (const row of [6, 7, 8]) expect(Math.abs(Number(value(row, 7)) / volatility - 1)).toBeLessThan(0.3)
     // The table of BREAKDOWN, in the place the file keeps free for it.
-    expect(value(13, 9)).toBe('Holding')
-    expect(value(30, 9)).toBe('Total')
-    expect(value(14, 13)).toBe(value(14, 4))
+    expect(value(13, 10)).toBe('Holding')
+    expect(value(30, 10)).toBe('Total')
+    expect(value(14, 14)).toBe(value(14, 4))
     expect(HOLDINGS.filter((_, i) => value(14 + i, 7) === 'over').map(({ name }) => name)).toEqual([
       'Delta young-market equities',
     ])
