@@ -2,6 +2,7 @@ import { lazy, Suspense } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import type { BacktestChoice, BacktestStudy, BooksState } from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
+import { confidenceText } from './measure'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
 
@@ -96,7 +97,7 @@ export default function BackTest({
         />
         <Entry
           label="Confidence level, %"
-          shown={String(Number((choice.confidence * 100).toFixed(6)))}
+          shown={confidenceText(choice.confidence).replace('%', '')}
           read={(text) => {
             const value = typedNumber(text.replace(/%$/, ''))
             return value !== null && value > 50 && value < 100

@@ -1,10 +1,9 @@
-import { useState } from 'react'
 import { Button, makeStyles, ToggleButton, tokens } from '@fluentui/react-components'
 import { percentText, withColumn, type Breakdown, type NestedGroup } from '../sheet'
 import { Section } from './controls'
 import { digitsFor, sharesOf } from './measure'
 import { NONE, riskColumns } from './positions'
-import { useBooks } from './store'
+import { useBooks, useKept } from './store'
 import { FigureTable, TieOut, type TableRow } from './table'
 
 const useStyles = makeStyles({
@@ -102,7 +101,7 @@ const pathsOf = (groups: readonly NestedGroup[], above = ''): readonly string[] 
 function Nested({ breakdown, nesting }: { breakdown: Breakdown; nesting: readonly string[] }) {
   const books = useBooks()
   const classes = useStyles()
-  const [opened, setOpened] = useState<ReadonlySet<string>>(new Set())
+  const [opened, setOpened] = useKept<ReadonlySet<string>>('groups open', new Set())
   const { nested, groupHeaders, decomposition } = breakdown
   const toggle = (path: string | number): void => {
     const next = new Set(opened)

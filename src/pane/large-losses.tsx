@@ -2,7 +2,7 @@ import { useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
 import { percentText, type Breakdown, type TailChoice, type Tails } from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
-import { digitsFor, sharesOf } from './measure'
+import { confidenceText, digitsFor, sharesOf } from './measure'
 import { NONE } from './positions'
 import { useBooks } from './store'
 import { Headline, Remark } from './headline'
@@ -56,7 +56,7 @@ function Fields({ choice, fault }: { choice: TailChoice; fault: string | undefin
       </div>
       <Entry
         label="Confidence level, %"
-        shown={String(Number((choice.confidence * 100).toFixed(6)))}
+        shown={confidenceText(choice.confidence).replace('%', '')}
         read={(text) => {
           const value = typedNumber(text.replace(/%$/, ''))
           return value !== null && value > 50 && value < 100
@@ -115,9 +115,9 @@ function Parts({ breakdown, tails }: { breakdown: Breakdown; tails: Tails }) {
         label="Shares of large losses"
         columns={[
           { head: 'Position', width: null },
-          { head: 'Share of risk', width: WIDTHS.share - 8 },
+          { head: 'Share of risk', width: 52 },
           { head: 'Share of expected shortfall', width: WIDTHS.contribution },
-          { head: 'Difference, points', width: WIDTHS.share + 4 },
+          { head: 'Difference, points', width: 66 },
         ]}
         rows={order.map((i) => ({
           key: i,

@@ -53,3 +53,6 @@ export function bandText(value: number, error: number, digits: number): string {
   const [from, to] = bandOf(value, error)
   return `${percentText(from, digits)} to ${percentText(to, digits)}`
 }
+
+/** A confidence level, as typed: 99%, 97.5%. */
+export const confidenceText = (confidence: number): string => `${Number((confidence * 100).toFixed(6))}%`

@@ -97,7 +97,11 @@ const useStyles = makeStyles({
     stroke: tokens.colorNeutralStrokeAccessible,
     '@media (forced-colors: active)': { stroke: 'CanvasText' },
   },
-  halo: { fill: 'none', stroke: tokens.colorNeutralBackground1, strokeWidth: '3px', strokeLinecap: 'square' },
+  bandOnBar: {
+    fill: 'none',
+    stroke: tokens.colorNeutralBackground1,
+    '@media (forced-colors: active)': { stroke: 'Canvas' },
+  },
   band: {
     fill: 'none',
     stroke: tokens.colorNeutralForeground1,
@@ -117,14 +121,37 @@ const useStyles = makeStyles({
 /** Half the height of the caps at the ends of a band. */
 const CAP = 3
 
-/** The 95% band of a bar as a line with caps, over a halo that keeps it readable on the bar. */
-function Band({ from, to, y }: { from: number; to: number; y: number }) {
+/**
+ * The 95% band of a bar as a line with caps: dark on the ground, light where it lies on the bar.
+ * @param bar where the bar begins and ends; both alike where the line shows on it anyway
+ */
+function Band({
+  from,
+  to,
+  bar: [start, end],
+  y,
+}: {
+  from: number
+  to: number
+  bar: readonly [start: number, end: number]
+  y: number
+}) {
   const classes = useStyles()
-  const path = `M${from} ${y - CAP}v${2 * CAP}M${from} ${y}H${to}M${to} ${y - CAP}v${2 * CAP}`
+  const cap = (x: number): string => `M${x} ${y - CAP}v${2 * CAP}`
+  const line = (a: number, b: number): string => (b > a ? `M${a} ${y}H${b}` : '')
+  const [inFrom, inTo] = [Math.max(from, start), Math.min(to, end)]
+  const isIn = (x: number): boolean => x > start && x < end
+  const within = line(inFrom, inTo) + [from, to].filter(isIn).map(cap).join('')
+  const beyond =
+    (inTo > inFrom ? line(from, inFrom) + line(inTo, to) : line(from, to)) +
+    [from, to]
+      .filter((x) => !isIn(x))
+      .map(cap)
+      .join('')
   return (
     <>
-      <path className={classes.halo} d={path} />
-      <path className={classes.band} d={path} />
+      {within !== '' && <path className={classes.bandOnBar} d={within} />}
+      {beyond !== '' && <path className={classes.band} d={beyond} />}
     </>
   )
 }
@@ -195,7 +222,15 @@ const Row = memo(function Row(row: RowProps) {
           height={7}
         />
         <line className={classes.zero} x1={across(0)} x2={across(0)} y1={-1} y2={height + 1} />
-        {row.high > row.low && <Band from={across(row.low)} to={across(row.high)} y={height - 4} />}
+        {row.high > row.low && (
+          <Band
+            from={across(row.low)}
+            to={across(row.high)}
+            // the line shows on the hatching of a risk-reducing position
+            bar={risk < 0 ? [0, 0] : [across(0), across(risk)]}
+            y={height - 4}
+          />
+        )}
       </svg>
     </div>
   )
@@ -331,7 +366,7 @@ export default function Picture({
       {measure.errors && (
         <div className={classes.bandKey} aria-hidden>
           <svg width="24" height="8">
-            <Band from={1} to={23} y={4} />
+            <Band from={1} to={23} bar={[0, 0]} y={4} />
           </svg>
           95% band
         </div>

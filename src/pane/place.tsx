@@ -78,6 +78,19 @@ const GRAVITY: {
   notes: { word: 'Note', Icon: Info16Regular },
 }
 
+type Gravity = Finding['weight']
+
+export function GravityIcon({ weight }: { weight: Gravity }) {
+  const classes = useStyles()
+  const { Icon } = GRAVITY[weight]
+  return <Icon className={classes[weight]} aria-hidden />
+}
+
+export function GravityWord({ weight }: { weight: Gravity }) {
+  const classes = useStyles()
+  return <span className={mergeClasses(classes.word, classes[weight])}>{GRAVITY[weight].word}.</span>
+}
+
 /** What was found while reading, each with its gravity as icon and word and a link to its cells. */
 export function Findings({
   findings,
@@ -93,19 +106,15 @@ export function Findings({
   if (findings.length === 0) return null
   return (
     <ul className={classes.list} aria-label={label}>
-      {findings.map((finding, index) => {
-        const { word, Icon } = GRAVITY[finding.weight]
-        return (
-          <li key={index} className={classes.finding}>
-            <Icon className={classes[finding.weight]} aria-hidden />
-            <span>
-              <span className={mergeClasses(classes.word, classes[finding.weight])}>{word}.</span>{' '}
-              <Sentence text={finding.sentence} area={finding.area} />
-              {after && <div className={classes.extra}>{after(finding)}</div>}
-            </span>
-          </li>
-        )
-      })}
+      {findings.map((finding, index) => (
+        <li key={index} className={classes.finding}>
+          <GravityIcon weight={finding.weight} />
+          <span>
+            <GravityWord weight={finding.weight} /> <Sentence text={finding.sentence} area={finding.area} />
+            {after && <div className={classes.extra}>{after(finding)}</div>}
+          </span>
+        </li>
+      ))}
     </ul>
   )
 }

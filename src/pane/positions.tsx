@@ -1,7 +1,7 @@
-import { useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
 import { numberText, percentText, type Breakdown } from '../sheet'
 import { bandsOf, bandText, digitsFor, sharesOf } from './measure'
+import { useKept } from './store'
 import { FigureTable, Pairs, TieOut, WIDTHS, type Sorting, type TableColumn } from './table'
 
 const useStyles = makeStyles({
@@ -94,8 +94,8 @@ function TiedMark() {
 /** Every position with its figures; a press on its name opens the rest of them. */
 export function Positions({ breakdown }: { breakdown: Breakdown }) {
   const classes = useStyles()
-  const [sorting, setSorting] = useState<Sorting>({ column: 2, descending: true })
-  const [opened, setOpened] = useState<ReadonlySet<string>>(new Set())
+  const [sorting, setSorting] = useKept<Sorting>('positions sorted', { column: 2, descending: true })
+  const [opened, setOpened] = useKept<ReadonlySet<string>>('positions open', new Set())
   const { decomposition: d, names } = breakdown
   const shares = sharesOf(breakdown)
   const digits = digitsFor(names.length)

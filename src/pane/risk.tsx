@@ -4,7 +4,7 @@ import { countOf, numberText, percentText, type Breakdown, type BooksState } fro
 import { Folded, Section } from './controls'
 import { Figures } from './figures'
 import { Remark } from './headline'
-import { bandText, digitsFor, measureOf, sharesOf } from './measure'
+import { bandText, confidenceText, digitsFor, measureOf, sharesOf } from './measure'
 import { Positions, sensitivity } from './positions'
 import { useBooksState, useKept } from './store'
 
@@ -103,11 +103,17 @@ const sureHeadline = ({ bands, decomposition }: Breakdown): string =>
 function backTestHeadline({ backtest }: BooksState['studies']): string {
   if (!backtest) return 'Forecasts against what happened: not run yet'
   const { exceptions, expected, confidence } = backtest.result.tests
-  return `${countOf(exceptions, 'exception')}, ${numberText(expected, 1)} expected at ${percentText(confidence, 1)} confidence`
+  return `${countOf(exceptions, 'exception')}, ${numberText(expected, 1)} expected at ${confidenceText(confidence)} confidence`
 }
 
-/** Up to its figures in brackets, the verdict's sentence says it all. */
-const verdict = (sentence: string): string => sentence.split(/ \(|\. /)[0] ?? sentence
+const VERDICTS: { readonly [V in NonNullable<Breakdown['normality']>['book']['verdict']]: string } = {
+  consistent: 'No sign against a normal distribution',
+  'heavy-tailed': 'Tails heavier than normal',
+  'light-tailed': 'Tails lighter than normal',
+  'skewed-to-losses': 'Past returns lean to the side of losses',
+  'skewed-to-gains': 'Past returns lean to the side of gains',
+  'not-tested': 'Not tested',
+}
 
 function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksState }) {
   const classes = useStyles()
@@ -138,7 +144,7 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
         </Folded>
       )}
       {normality && (
-        <Folded title="Normality" headline={verdict(normality.sentence)}>
+        <Folded title="Normality" headline={VERDICTS[normality.book.verdict]}>
           <p className={classes.text}>{normality.sentence}</p>
         </Folded>
       )}

@@ -30,8 +30,8 @@ const useStyles = makeStyles({
     fontWeight: tokens.fontWeightRegular,
     color: tokens.colorNeutralForeground2,
   },
-  plainHead: { padding: `${tokens.spacingVerticalXS} 0` },
-  left: { textAlign: 'left' },
+  plainHead: { padding: `${tokens.spacingVerticalXS} 0 ${tokens.spacingVerticalXS} 6px` },
+  left: { textAlign: 'left', paddingLeft: 0 },
   sort: {
     width: '100%',
     border: 'none',
@@ -47,13 +47,13 @@ const useStyles = makeStyles({
   sorted: { color: tokens.colorNeutralForeground1 },
   arrow: { verticalAlign: '-1px' },
   cell: {
-    padding: `${tokens.spacingVerticalXS} 0`,
+    padding: `${tokens.spacingVerticalXS} 0 ${tokens.spacingVerticalXS} 6px`,
     borderBottom: `1px solid ${tokens.colorNeutralStroke2}`,
     textAlign: 'right',
     verticalAlign: 'top',
     fontWeight: tokens.fontWeightRegular,
   },
-  name: { textAlign: 'left', overflowWrap: 'anywhere', paddingRight: tokens.spacingHorizontalS },
+  name: { textAlign: 'left', overflowWrap: 'anywhere', paddingLeft: 0 },
   open: {
     display: 'grid',
     gridTemplateColumns: '14px minmax(0, 1fr)',
