@@ -274,7 +274,7 @@ export interface HistoryGroup {
  * @source         Stambaugh (1997), Analyzing investments whose histories differ in length, Journal of Financial Economics 45, 285-331
  *                 (method from memory); Anderson (1957), Journal of the American Statistical Association 52, 200-203 (from memory)
  * @cost           O(T n^2) for the factor, O(n^3) for the recursion
- * @example        inOneGo(completedMoments(Float64Array.of(.01, NaN, -.02, NaN, .03, .02, .02, .01, .01, -.01), 5, 2)).means // [0.01, 0.005]
+ * @example        inOneGo(completedMoments(Float64Array.of(.01, NaN, -.02, NaN, .03, .02, .02, .01, .01, -.01), 5, 2)).means // [0.01, -0.00833]
  */
 export function* completedMoments(
   returns: Float64Array,

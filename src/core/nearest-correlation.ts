@@ -13,6 +13,8 @@ export interface Repair {
   /** Correlations; n x n row-major, ones on the diagonal, no eigenvalue below zero but for rounding. */
   readonly matrix: Float64Array
   readonly iterations: number
+  /** How many of the iterations were steps of alternating projections. */
+  readonly projections: number
   /** The largest |x_ii - 1| that was left when the iteration ended; the matrix is then scaled to ones exactly. */
   readonly residual: number
   /** |A - X|, Frobenius: every off-diagonal entry counts twice. */
@@ -82,7 +84,7 @@ export function* nearestCorrelation(
     here.y.every((shift) => shift === 0) &&
     here.values[0]! >= -size * Number.EPSILON * here.values[size - 1]!
   ) {
-    const valid = { iterations: 0, residual: 0, distance: 0, converged: true }
+    const valid = { iterations: 0, projections: 0, residual: 0, distance: 0, converged: true }
     return { matrix: matrix.slice(), ...valid, multipliers: here.y }
   }
   yield 0
@@ -90,14 +92,17 @@ export function* nearestCorrelation(
   const digitsWanted = Math.log(Math.max(here.residual / tolerance, 1 + 1e-9))
   const first = here.residual
   let iterations = 0
+  let projections = 0
   let share = 0
   while (here.residual > tolerance && iterations < maxIterations) {
     const newton = steps === 'newton' ? yield* newtonStep(here, share) : null
     const next = newton ?? dualAt(given, subtract(here.y, here.gradient))
-    // rounding has the last word: neither the dual nor its gradient comes down any more
-    if (!newton && next.value >= here.value && next.slope >= here.slope) break
+    // A projection never makes the gradient longer and lowers the dual by at least half its square. Where neither is to be
+    // seen, rounding has the last word.
+    if (!newton && next.slope >= here.slope && here.value - next.value < roundingOf(here)) break
     here = next
     iterations++
+    if (!newton) projections++
     share = Math.max(share, Math.min(0.99, Math.log(first / here.residual) / digitsWanted))
     yield share
   }
@@ -106,6 +111,7 @@ export function* nearestCorrelation(
   return {
     matrix: nearest,
     iterations,
+    projections,
     residual: here.residual,
     distance: frobenius(given, nearest),
     converged: here.residual <= tolerance,
@@ -193,19 +199,25 @@ function positivePart({ given, y, size, values, vectors, negative }: Dual): Floa
   return part
 }
 
+/** Of theta, a sum of n squares. */
+const roundingOf = ({ size, value }: Dual) => size * Number.EPSILON * Math.abs(value)
+
 /** A step that lowers theta enough (Armijo) or halves its gradient; null where Newton's direction gives none. */
 function* newtonStep(here: Dual, share: number): Generator<number, Dual | null> {
   const direction = yield* newtonDirection(here, share)
   const descent = dot(here.gradient, direction)
-  if (!(descent < 0)) return null
-  for (let length = 1; length >= 1 / 32; length /= 2) {
+  // nor is a direction without a usable length one, which nearly singular equations can give
+  if (!(descent < 0 && descent > -1e100)) return null
+  // near the minimum theta itself changes by less than its rounding, its gradient does not
+  const measurable = -1e-4 * descent > roundingOf(here)
+  for (let length = 1; length >= (measurable ? 1 / 4096 : 1); length /= 2) {
     const next = dualAt(
       here.given,
       here.y.map((value, i) => value + length * direction[i]!),
     )
     yield share
-    // near the minimum theta itself changes by less than its rounding, its gradient does not
-    if (next.value <= here.value + 1e-4 * length * descent || next.slope <= here.slope / 2) return next
+    if (measurable && next.value <= here.value + 1e-4 * length * descent) return next
+    if (next.slope <= here.slope / 2) return next
   }
   return null
 }

@@ -32,6 +32,9 @@ describe.each(Object.entries(cases))('%s', (_, expected) => {
 
   it(`is the nearest (${expected.input_source})`, () => {
     expect(nearest.converged).toBe(true)
+    // quadratic convergence: Newton's steps alone, and few; Qi & Sun (2006) report less than ten (from memory)
+    expect(nearest.projections).toBe(0)
+    expect(nearest.iterations).toBeLessThanOrEqual(6)
     expect(absoluteGap(nearest.matrix, expected.nearest.value.flat())).toBeLessThan(tolerance)
     expect(absoluteGap(nearest.distance, expected.distance_frobenius.value)).toBeLessThan(tolerance)
   })
