@@ -247,11 +247,22 @@ function addPositions(rows: Rows, breakdown: Breakdown, bands: Bands | null): vo
   rows.row([text('Difference')], { contribution: number(d.difference, ROUNDING) }, '')
 }
 
+/** A share of risk nearer to 0 than this shows as 0 and has no sign worth a word. */
+const LEAST_SHARE = 0.0005
+
+/** Whether a part is so far below 0 that it shows. */
+export const reducesRisk = (contribution: number, total: number): boolean =>
+  contribution < -LEAST_SHARE * total
+
 /** What is to be said of a position: that it reduces risk, and where its rank is not certain. */
 function notesOf({ decomposition: d }: Breakdown, bands: Bands | null): readonly string[] {
-  const notes = [...d.contribution].map((contribution) =>
-    contribution < 0 ? ['Risk-reducing position'] : [],
-  )
+  const notes = [...d.contribution].map((contribution, i) => {
+    if (!reducesRisk(contribution, d.volatility)) return []
+    const upper = bands ? contribution + BAND * (bands.contribution[i] ?? 0) : -1
+    return [
+      upper < 0 ? 'Risk-reducing position' : 'Risk-reducing position, not for certain: its band holds 0',
+    ]
+  })
   bands?.order.forEach((position, k) => {
     if (bands.tied[k]) notes[position]?.push(`Rank ${k + 1}, not told apart from rank ${k + 2}`)
   })
@@ -295,7 +306,7 @@ function addGroups(rows: Rows, breakdown: Breakdown): void {
           contribution: number(contribution, PERCENT),
           share: share(parts.share?.[g]),
         },
-        contribution < 0 ? 'Risk-reducing group' : '',
+        reducesRisk(contribution, d.volatility) ? 'Risk-reducing group' : '',
       )
     })
     total(sumOf(parts.weight), sumOf(parts.standAlone), sumOf(parts.contribution))
@@ -314,7 +325,7 @@ function addGroups(rows: Rows, breakdown: Breakdown): void {
         contribution: number(group.contribution, PERCENT),
         share: share(group.share),
       },
-      group.contribution < 0 ? 'Risk-reducing group' : '',
+      reducesRisk(group.contribution, d.volatility) ? 'Risk-reducing group' : '',
       undefined,
       depth,
     )

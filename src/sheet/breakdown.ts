@@ -247,9 +247,13 @@ function normalityOf({ history, normality }: BookModel, weights: Float64Array): 
   const failing = tested.filter((p) => p < NORMALITY_LEVEL / tested.length).length
   const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test${normality.block === null ? ' (so many numbers are not tested together)' : TOGETHER[normality.block.verdict]}`
   const figures = `Jarque–Bera ${numberText(statistic, 1)}, ${pValue < 0.001 ? 'p below 0.001' : `p ${numberText(pValue, 3)}`}; skewness ${numberText(skewness ?? 0, 2)}, excess kurtosis ${numberText(excessKurtosis ?? 0, 2)}`
+  const block = normality.block?.verdict
+  const partsDepart =
+    failing > 0 || block === 'heavy-tailed' || block === 'light-tailed' || block === 'asymmetric'
   const meaning = {
-    consistent:
-      'shows no sign against a normal distribution, so shares of volatility can be read as shares of large losses too',
+    consistent: partsDepart
+      ? 'shows no sign against a normal distribution, but the returns of its parts do: shares of volatility need not be shares of large losses'
+      : 'shows no sign against a normal distribution, so shares of volatility can be read as shares of large losses too',
     'heavy-tailed':
       'has heavier tails than a normal distribution: large losses come oftener than its volatility suggests, and shares of volatility need not be shares of large losses',
     'light-tailed':

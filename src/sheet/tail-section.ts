@@ -49,7 +49,7 @@ export function tailsOf(
   if (few)
     findings.push({
       weight: 'warns',
-      sentence: `The tail figures at ${percentText(choice.confidence, 1)} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
+      sentence: `The tail figures at ${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
       area: null,
     })
   return {
