@@ -61,14 +61,13 @@ export function standardErrors(model: ReturnsModel, weights: Float64Array, lags 
     return { volatility: 0, contribution: new Float64Array(model.size), share: null, effectiveDates }
   }
   const { volatility } = portfolio
-  const squares =
+  const { variance, contribution, share } =
     lags === 0 ? squaresBySums(model, portfolio) : squaresByDates(model, portfolio, eachAlone(model.size))
-  return {
-    volatility: (volatility / 2) * Math.sqrt(squares.variance),
-    contribution: squares.contribution.map((square) => volatility * Math.sqrt(square)),
-    share: squares.share.map(Math.sqrt),
-    effectiveDates,
+  for (let i = 0; i < model.size; i++) {
+    contribution[i] = volatility * Math.sqrt(contribution[i]!)
+    share[i] = Math.sqrt(share[i]!)
   }
+  return { volatility: (volatility / 2) * Math.sqrt(variance), contribution, share, effectiveDates }
 }
 
 /**
@@ -165,7 +164,12 @@ function scaledPortfolio(model: ReturnsModel, weights: Float64Array, lags: numbe
     const perUnit = perRoot / correction
     for (let i = 0; i < marginals.length; i++) marginals[i]! *= perUnit
   }
-  const scale = weights.map((w) => w * perRoot)
+  const scale = new Float64Array(model.size)
+  const shares = new Float64Array(model.size)
+  for (let i = 0; i < model.size; i++) {
+    scale[i] = weights[i]! * perRoot
+    shares[i] = scale[i]! * marginals[i]!
+  }
   return {
     lags,
     omega,
@@ -174,7 +178,7 @@ function scaledPortfolio(model: ReturnsModel, weights: Float64Array, lags: numbe
     lagged,
     scale,
     covariances: marginals,
-    shares: marginals.map((c, i) => scale[i]! * c),
+    shares,
     ofVariance,
   }
 }
@@ -239,8 +243,10 @@ function squaresBySums(model: ReturnsModel, portfolio: ScaledPortfolio): Squares
     sumOfFourth += third[t]! * y1
   }
   const { squares, sums: cubed } = model.squares(second, third)
-  const equal = model.weighting.kind !== 'exponential'
-  const single = equal ? covariances.map((c) => c * omega[0]!) : model.weigh(first)
+  // omega^2 y z adds up to omega times a covariance where all omega are alike
+  const alike = model.weighting.kind !== 'exponential'
+  const single = alike ? covariances : model.weigh(first)
+  const singleFactor = alike ? omega[0]! : 1
   const variance = varianceSquares(portfolio)
 
   const share = new Float64Array(model.size)
@@ -252,7 +258,8 @@ function squaresBySums(model: ReturnsModel, portfolio: ScaledPortfolio): Squares
     const own = a * a * squares[i]! + p * p * sumOfFourth
     const floor = model.dates * Number.EPSILON * own
     const squared = unlessRounding(own - 2 * a * p * cubed[i]!, floor)
-    const cross = squared === 0 ? 0 : a * (cubed[i]! - single[i]!) - p * (sumOfFourth - sumOfSecond)
+    const cross =
+      squared === 0 ? 0 : a * (cubed[i]! - singleFactor * single[i]!) - p * (sumOfFourth - sumOfSecond)
     share[i] = squared
     contribution[i] = unlessRounding(squared + p * cross + (p * p * variance) / 4, squared === 0 ? 0 : floor)
   }
