@@ -186,35 +186,35 @@ function basisOf(factors: ReturnsModel): Basis {
 function regressions(model: ReturnsModel, factors: ReturnsModel, { orthogonal, inverse }: Basis) {
   const { dates, size } = model
   const k = factors.size
-  const projections = new Float64Array(size * k)
-  const row = new Float64Array(size)
-  for (let t = 0; t < dates; t++) {
-    model.centredRow(t, row)
-    for (let i = 0, at = 0; i < size; i++) {
-      const z = row[i]!
-      for (let j = 0; j < k; j++, at++) projections[at] = projections[at]! + orthogonal[t * k + j]! * z
-    }
-  }
+  const projections = Array.from({ length: k }, (_, j) =>
+    model.weigh(Float64Array.from({ length: dates }, (_, t) => orthogonal[t * k + j]!)),
+  )
   const exposures = new Float64Array(size * k)
-  for (let i = 0; i < size; i++) {
-    for (let j = 0; j < k; j++) {
-      let sum = 0
-      for (let l = j; l < k; l++) sum += inverse[j * k + l]! * projections[i * k + l]!
-      exposures[i * k + j] = sum
-    }
-  }
+  /** the same, one factor after the other */
+  const slopes = Array.from({ length: k }, (_, j) =>
+    model.means.map((_, i) => {
+      let slope = 0
+      for (let l = j; l < k; l++) slope += inverse[j * k + l]! * projections[l]![i]!
+      return (exposures[i * k + j] = slope)
+    }),
+  )
   const residualSquares = new Float64Array(size)
+  const residuals = new Float64Array(size)
   const f = new Float64Array(k)
   for (let t = 0; t < dates; t++) {
-    model.centredRow(t, row)
+    model.centredRow(t, residuals)
     factors.centredRow(t, f)
-    for (let i = 0, at = 0; i < size; i++) {
-      let residual = row[i]!
-      for (let j = 0; j < k; j++, at++) residual -= exposures[at]! * f[j]!
-      residualSquares[i] = residualSquares[i]! + residual * residual
+    // position by position, each sum would wait for itself
+    for (let j = 0; j < k; j++) subtract(residuals, f[j]!, slopes[j]!)
+    for (let i = 0; i < size; i++) {
+      residualSquares[i] = residualSquares[i]! + residuals[i]! * residuals[i]!
     }
   }
   return { exposures, residualSquares }
+}
+
+function subtract(from: Float64Array, times: number, values: Float64Array): void {
+  for (let i = 0; i < from.length; i++) from[i] = from[i]! - times * values[i]!
 }
 
 /** x'A for A k x k. */

@@ -1,4 +1,5 @@
 import { Fault } from './fault'
+import { openBlock, type Block } from './kernel/block'
 import type { ReturnsModel, RiskModel } from './risk-model'
 
 /**
@@ -50,7 +51,7 @@ export interface Shrinkage {
  *                 Management 30(4), appendix; Chen, Wiesel, Eldar & Hero (2010), Shrinkage Algorithms for MMSE Covariance
  *                 Estimation, IEEE Trans. Signal Processing 58(10), eq. 23 (all from memory)
  * @cost           O(T n min(T, n)) time, 8 T n bytes while it runs
- * @example        shrinkageOf(returnsModel(Float64Array.of(.01, .02, .03, -.02, -.01, 0), 3, 2), 'oas').next().done // false
+ * @example        inOneGo(shrinkageOf(returnsModel(Float64Array.of(.1, .1, -.2, -.1, .3, .2, -.2, -.2), 4, 2), 'identity')).intensity // 0.19324
  */
 export function* shrinkageOf(returns: ReturnsModel, target: ShrinkageTarget): Generator<number, Shrinkage> {
   if (returns.weighting.kind === 'exponential') {
@@ -93,10 +94,13 @@ export function* shrinkageOf(returns: ReturnsModel, target: ShrinkageTarget): Ge
 const extreme = (values: Float64Array, of: (a: number, b: number) => number) =>
   values.reduce((a, b) => of(a, b))
 
+/** How much of the work it is, about, to read the returns by dates and to turn them over. */
+const MOMENTS_PART = 0.2
+
 /** What is summed over dates in one pass, and the returns in the order in which `normsOf` multiplies them. */
 interface Moments {
-  /** The shorter side of the block: the columns of returns (n), or its rows (T) where there are fewer of them. */
-  readonly lines: Float64Array
+  /** The shorter side of the block row by row: the columns of returns (n), or their dates (T) where those are fewer. */
+  readonly lines: Block
   /** sum_t |x_t|^4 */
   readonly fourth: number
   readonly meanCorrelation: number
@@ -114,16 +118,16 @@ function* momentsOf(
   const T = returns.dates
   const n = columns.length
   const transposed = n <= T
-  // whole tiles of four lines: lines of zeros add nothing
-  const lines = new Float64Array(Math.ceil(Math.min(n, T) / 4) * 4 * Math.max(n, T))
+  const lines = openBlock(Math.max(Math.min(n, T), 1), Math.max(n, T), returns.form)
   const x = new Float64Array(n)
   const quartic = new Float64Array(n)
   const cubic = new Float64Array(n)
   const crossed = new Float64Array(n)
   let fourth = 0
   let correlated = 0
+  const row = new Float64Array(returns.size)
   for (let t = 0; t < T; t++) {
-    const row = returns.centredRow(t)
+    returns.centredRow(t, row)
     let square = 0
     let standardised = 0
     let weighted = 0
@@ -132,8 +136,8 @@ function* momentsOf(
       square += value * value
       standardised += value / deviations[i]!
       weighted += value * deviations[i]!
-      lines[transposed ? i * T + t : t * n + i] = value
     }
+    if (!transposed) lines.write(t, x, 1)
     fourth += square * square
     correlated += standardised * standardised
     for (let i = 0; i < n; i++) {
@@ -143,9 +147,9 @@ function* momentsOf(
       cubic[i] = cubic[i]! + power * weighted
       crossed[i] = crossed[i]! + value * weighted
     }
-    // a few percent of the work that is done on pairs
-    if ((t & 15) === 0) yield (0.05 * t) / T
+    if ((t & 15) === 0) yield ((MOMENTS_PART / 2) * t) / T
   }
+  if (transposed) yield* writeColumns(lines, returns, columns)
 
   const meanCorrelation = n < 2 ? 0 : (correlated / T - n) / (n * (n - 1))
   let own = 0
@@ -161,6 +165,23 @@ function* momentsOf(
     weighted += (deviation * crossed[i]!) / T
   }
   return { lines, fourth, meanCorrelation, targetNoise: own + meanCorrelation * pairs, weighted }
+}
+
+/** The block turned over, some columns at a time: one more copy of all returns would take longer than reading them again. */
+function* writeColumns(lines: Block, returns: ReturnsModel, columns: Int32Array): Generator<number, void> {
+  const T = returns.dates
+  const AT_ONCE = 64
+  const turned = new Float64Array(AT_ONCE * T)
+  const row = new Float64Array(returns.size)
+  for (let from = 0; from < columns.length; from += AT_ONCE) {
+    const some = columns.subarray(from, from + AT_ONCE)
+    for (let t = 0; t < T; t++) {
+      returns.centredRow(t, row)
+      for (let k = 0; k < some.length; k++) turned[k * T + t] = row[some[k]!]!
+    }
+    for (let k = 0; k < some.length; k++) lines.write(from + k, turned.subarray(k * T, (k + 1) * T), 1)
+    yield (MOMENTS_PART / 2) * (1 + from / columns.length)
+  }
 }
 
 /**
@@ -181,7 +202,7 @@ function* normsOf(
   let squares = 0
   if (n <= T) {
     let distance = 0
-    yield* eachProduct(lines, n, T, (i, j, product) => {
+    yield* eachProduct(lines, n, (i, j, product) => {
       const s = product / T
       if (i === j) {
         squares += s * s
@@ -195,7 +216,7 @@ function* normsOf(
     })
     return { squares, distance, resolution: (T * Number.EPSILON * trace) ** 2 }
   }
-  yield* eachProduct(lines, T, n, (i, j, product) => {
+  yield* eachProduct(lines, T, (i, j, product) => {
     squares += (i === j ? 1 : 2) * (product / T) ** 2
   })
   const diagonal = deviations.reduce((sum, deviation) => sum + deviation ** 4, 0)
@@ -208,63 +229,27 @@ function* normsOf(
   return { squares, distance, resolution: n * Number.EPSILON * squares }
 }
 
-/**
- * The product of every pair of lines, i >= j, a tile of 2 x 4 pairs at a time: each number read serves several of them.
- *
- * @param lines  count x depth row-major, and zeros up to a multiple of four lines
- */
+/** The product of every pair of lines, i >= j, from tiles of 4 x 4; a few columns of tiles at a time, which stay in the cache. */
 function* eachProduct(
-  lines: Float64Array,
+  lines: Block,
   count: number,
-  depth: number,
   visit: (i: number, j: number, product: number) => void,
 ): Generator<number, void> {
-  const tile = new Float64Array(8)
-  for (let i = 0; i < count; i += 2) {
-    for (let j = 0; j <= i + 1; j += 4) {
-      fillTile(tile, lines, i * depth, j * depth, depth)
-      for (let k = 0; k < 8; k++) {
-        const [row, column] = [i + (k >> 2), j + (k & 3)]
-        if (column <= row && row < count) visit(row, column, tile[k]!)
+  const tiles = Math.ceil(count / 4)
+  for (let panel = 0; panel < tiles; panel += 4) {
+    for (let first = panel; first < tiles; first++) {
+      for (let second = panel; second < panel + 4 && second <= first; second++) {
+        const products = lines.products(first, second)
+        for (let k = 0; k < 16; k++) {
+          const i = 4 * first + (k >> 2)
+          const j = 4 * second + (k & 3)
+          if (j <= i && i < count) visit(i, j, products[k]!)
+        }
       }
+      // what is left are the pairs of the columns to come
+      yield 1 - (1 - MOMENTS_PART) * ((tiles - panel) / tiles) ** 2
     }
-    yield 0.05 + 0.95 * (i / count) ** 2
   }
-}
-
-function fillTile(tile: Float64Array, lines: Float64Array, a: number, b: number, depth: number): void {
-  let t0 = 0
-  let t1 = 0
-  let t2 = 0
-  let t3 = 0
-  let t4 = 0
-  let t5 = 0
-  let t6 = 0
-  let t7 = 0
-  for (let k = 0; k < depth; k++) {
-    const x0 = lines[a + k]!
-    const x1 = lines[a + depth + k]!
-    const y0 = lines[b + k]!
-    const y1 = lines[b + depth + k]!
-    const y2 = lines[b + 2 * depth + k]!
-    const y3 = lines[b + 3 * depth + k]!
-    t0 += x0 * y0
-    t1 += x0 * y1
-    t2 += x0 * y2
-    t3 += x0 * y3
-    t4 += x1 * y0
-    t5 += x1 * y1
-    t6 += x1 * y2
-    t7 += x1 * y3
-  }
-  tile[0] = t0
-  tile[1] = t1
-  tile[2] = t2
-  tile[3] = t3
-  tile[4] = t4
-  tile[5] = t5
-  tile[6] = t6
-  tile[7] = t7
 }
 
 /**

@@ -27,7 +27,7 @@ export interface Condition {
  * @source         Golub & Van Loan (2013), Matrix Computations, 4th ed., sections 8.3.1 and 8.4.1; Wilkinson (1965), The
  *                 Algebraic Eigenvalue Problem, ch. 5 (from memory)
  * @cost           O(n^3) and one question to the model for each position; 8 n^2 bytes
- * @example        conditionOf(matrixModel(Float64Array.of(.04, 0, 0, .01), 2)).next().done // false
+ * @example        inOneGo(conditionOf(matrixModel(Float64Array.of(2, 1, 1, 2), 2))).condition // 3
  */
 export function* conditionOf(model: RiskModel | ReturnsModel | EstimatedModel): Generator<number, Condition> {
   const variances = model.variances()

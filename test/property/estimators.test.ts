@@ -6,9 +6,11 @@ import {
   factorModel,
   inOneGo,
   returnsModel,
+  shrinkageOf,
   type Estimator,
   type RiskModel,
 } from '../../src/core'
+import { openBlock } from '../../src/core/kernel/block'
 import { relativeGap } from '../closeness'
 import { textbookLagged, textbookShrinkage } from '../textbook'
 
@@ -170,6 +172,46 @@ describe('shrinkage', () => {
           1e-9,
         )
         expect(Math.abs(of(rows.map((row) => [...row].reverse())).intensity - intensity)).toBeLessThan(1e-9)
+      }),
+    )
+  })
+})
+
+describe('the products of rows in the kernel', () => {
+  test('are the same bits in both forms, and those of the definition to rounding', () => {
+    fc.assert(
+      fc.property(block, ({ rows, dates, size }) => {
+        const [simd, plain] = (['simd', 'plain'] as const).map((form) => {
+          const opened = openBlock(dates, size, form)
+          expect(opened.form).toBe(form)
+          rows.forEach((row, t) => opened.write(t, Float64Array.from(row), 7))
+          return opened
+        })
+        for (let first = 0; 4 * first < dates; first++) {
+          for (let second = 0; 4 * second < dates; second++) {
+            const products = simd!.products(first, second)
+            expect(plain!.products(first, second)).toEqual(products)
+            products.forEach((product, k) => {
+              const [a, b] = [rows[4 * first + (k >> 2)] ?? [], rows[4 * second + (k & 3)] ?? []]
+              const terms = a.map((x, i) => x * (b[i] ?? 0))
+              const size = terms.reduce((sum, x) => sum + Math.abs(x), 0)
+              expect(Math.abs(product - terms.reduce((sum, x) => sum + x, 0))).toBeLessThanOrEqual(
+                4e-15 * size,
+              )
+            })
+          }
+        }
+      }),
+    )
+  })
+
+  test('give shrinkage the same intensity in both forms', () => {
+    fc.assert(
+      fc.property(block, ({ returns, dates, size }) => {
+        const [simd, plain] = (['simd', 'plain'] as const).map((form) =>
+          inOneGo(shrinkageOf(returnsModel(returns, dates, size, { kind: 'sample' }, form), 'correlation')),
+        )
+        expect(plain).toEqual(simd)
       }),
     )
   })

@@ -23,6 +23,11 @@ export interface Block {
   weigh(perDate: Float64Array, into?: Float64Array): Float64Array
   /** For two numbers of each date, q_t and a_t: the sums of q_t z_ti^2 and of a_t z_ti. Multipliers do not count. */
   squares(perDateOfSquares: Float64Array, perDate: Float64Array): Sums
+  /**
+   * The products z_s'z_t of four rows, s = 4 first .., with four, t = 4 second ..; 4 x 4, zeros for rows past the last.
+   * Reads those eight rows alone: O(n). Multipliers do not count. Overwritten by the next call.
+   */
+  products(first: number, second: number): Float64Array
 }
 
 export interface Pass {
@@ -50,11 +55,12 @@ interface WebAssemblyHost {
   ) => { readonly exports: object }
 }
 
-/** What passes.as exports; all but the last two arguments are byte offsets into the block's memory. */
+/** What passes.as exports; all arguments but the counts, which come last, are byte offsets into the block's memory. */
 interface Passes {
   onePass(z: number, w: number, k: number, y: number, g: number, rows: number, stride: number): number
   weigh(z: number, a: number, g: number, rows: number, stride: number): void
   squares(z: number, q: number, a: number, s: number, g: number, rows: number, stride: number): void
+  products(z: number, o: number, x: number, stride: number): void
 }
 
 const webAssembly = (globalThis as { readonly WebAssembly?: WebAssemblyHost }).WebAssembly
@@ -82,7 +88,7 @@ const roundUp = (count: number, multiple: number) => Math.ceil(count / multiple)
  * Layout: rows padded with zeros to a multiple of 4 numbers (`stride`) and the block to a multiple of 4 rows.
  * Padding changes no sum and spares the kernel all leftovers. Four rows are interleaved two numbers at a time,
  *   z[t][i] at (t>>2) 4 stride + (i>>1) 8 + (t&3) 2 + (i&1),
- * so that the kernel reads one straight stream. Behind the block: w, g, s (by position), k, y, q, a (by date).
+ * so that the kernel reads one straight stream. Behind the block: w, g, s (by position), k, y, q, a (by date), x (16 products).
  */
 export function openBlock(dates: number, size: number, wanted: KernelForm = kernelForm): Block {
   const rows = roundUp(dates, 4)
@@ -94,7 +100,8 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
   const y = k + rows
   const q = y + rows
   const a = q + rows
-  const total = a + rows
+  const x = a + rows
+  const total = x + 16
 
   const kernel = wanted === 'simd' ? simdKernel(total) : undefined
   const numbers = kernel?.numbers ?? new Float64Array(total)
@@ -104,6 +111,7 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
   const squaresAt = numbers.subarray(s, s + size)
   // a copy of a view costs a microsecond, a slice of the whole memory forty
   const portfolioAt = numbers.subarray(y, y + dates)
+  const productsAt = numbers.subarray(x, x + 16)
   const run = (weights: Float64Array) => {
     weightsAt.set(weights)
     sumsAt.fill(0)
@@ -148,6 +156,10 @@ export function openBlock(dates: number, size: number, wanted: KernelForm = kern
       squaresAt.fill(0)
       passes.squares(0, q * 8, a * 8, s * 8, g * 8, rows, stride)
       return { squares: squaresAt.slice(), sums: sumsAt.slice() }
+    },
+    products: (first, second) => {
+      passes.products(first * 32 * stride, second * 32 * stride, x * 8, stride)
+      return productsAt
     },
   }
 }
@@ -247,6 +259,37 @@ function plainPasses(numbers: Float64Array): Passes {
           s[i] = s[i]! + z0 * q0 * z0 + z1 * q1 * z1 + z2 * q2 * z2 + z3 * q3 * z3
         }
         addRows(tile, g, a[t]!, a[t + 1]!, a[t + 2]!, a[t + 3]!)
+      }
+    },
+    products(zBytes, oBytes, xBytes, stride) {
+      const z = at(zBytes, 4 * stride)
+      const o = at(oBytes, 4 * stride)
+      const x = at(xBytes, 16)
+      for (let r = 0; r < 4; r++) {
+        let even0 = 0
+        let even1 = 0
+        let even2 = 0
+        let even3 = 0
+        let odd0 = 0
+        let odd1 = 0
+        let odd2 = 0
+        let odd3 = 0
+        for (let p = 0; p < o.length; p += 8) {
+          const even = z[p + 2 * r]!
+          const odd = z[p + 2 * r + 1]!
+          even0 += o[p]! * even
+          odd0 += o[p + 1]! * odd
+          even1 += o[p + 2]! * even
+          odd1 += o[p + 3]! * odd
+          even2 += o[p + 4]! * even
+          odd2 += o[p + 5]! * odd
+          even3 += o[p + 6]! * even
+          odd3 += o[p + 7]! * odd
+        }
+        x[4 * r] = even0 + odd0
+        x[4 * r + 1] = even1 + odd1
+        x[4 * r + 2] = even2 + odd2
+        x[4 * r + 3] = even3 + odd3
       }
     },
   }

@@ -99,6 +99,48 @@ export function squares(z: usize, q: usize, a: usize, s: usize, g: usize, rows: 
   }
 }
 
+// x[r][c] = z[r] . o[c] for four rows z and four rows o; two rows z at a time, as many sums as registers hold
+export function products(z: usize, o: usize, x: usize, stride: usize): void {
+  const size = stride << 5
+  for (let half: usize = 0; half < 2; half++) {
+    let a0 = f64x2.splat(0)
+    let a1 = f64x2.splat(0)
+    let a2 = f64x2.splat(0)
+    let a3 = f64x2.splat(0)
+    let b0 = f64x2.splat(0)
+    let b1 = f64x2.splat(0)
+    let b2 = f64x2.splat(0)
+    let b3 = f64x2.splat(0)
+    let p = z + (half << 5)
+    for (let q = o, last = o + size; q < last; q += 64) {
+      const a = v128.load(p)
+      const b = v128.load(p, 16)
+      let pair = v128.load(q)
+      a0 = f64x2.add(a0, f64x2.mul(pair, a))
+      b0 = f64x2.add(b0, f64x2.mul(pair, b))
+      pair = v128.load(q, 16)
+      a1 = f64x2.add(a1, f64x2.mul(pair, a))
+      b1 = f64x2.add(b1, f64x2.mul(pair, b))
+      pair = v128.load(q, 32)
+      a2 = f64x2.add(a2, f64x2.mul(pair, a))
+      b2 = f64x2.add(b2, f64x2.mul(pair, b))
+      pair = v128.load(q, 48)
+      a3 = f64x2.add(a3, f64x2.mul(pair, a))
+      b3 = f64x2.add(b3, f64x2.mul(pair, b))
+      p += 64
+    }
+    store<f64>(x, f64x2.extract_lane(a0, 0) + f64x2.extract_lane(a0, 1))
+    store<f64>(x, f64x2.extract_lane(a1, 0) + f64x2.extract_lane(a1, 1), 8)
+    store<f64>(x, f64x2.extract_lane(a2, 0) + f64x2.extract_lane(a2, 1), 16)
+    store<f64>(x, f64x2.extract_lane(a3, 0) + f64x2.extract_lane(a3, 1), 24)
+    store<f64>(x, f64x2.extract_lane(b0, 0) + f64x2.extract_lane(b0, 1), 32)
+    store<f64>(x, f64x2.extract_lane(b1, 0) + f64x2.extract_lane(b1, 1), 40)
+    store<f64>(x, f64x2.extract_lane(b2, 0) + f64x2.extract_lane(b2, 1), 48)
+    store<f64>(x, f64x2.extract_lane(b3, 0) + f64x2.extract_lane(b3, 1), 56)
+    x += 64
+  }
+}
+
 // g += s0 z[0] + s1 z[1] + s2 z[2] + s3 z[3]: four rows into one sum for each position
 function addRows(z: usize, g: usize, width: usize, s0: f64, s1: f64, s2: f64, s3: f64): void {
   const m0 = f64x2.splat(s0)
