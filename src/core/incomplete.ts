@@ -113,16 +113,19 @@ export function* pairwiseCovariance(
     yield (0.1 * (i + 1)) / size
   }
 
+  const rowsOf = (all: Float64Array) => Array.from(counts, (_, i) => all.subarray(i * dates, (i + 1) * dates))
+  const series = rowsOf(deviations)
+  const there = rowsOf(present)
   const matrix = new Float64Array(size * size)
   for (let i = 0; i < size; i++) {
-    const [x, inX] = [deviations, present].map((all) => all.subarray(i * dates, (i + 1) * dates))
     for (let j = 0; j <= i; j++) {
-      const [y, inY] = [deviations, present].map((all) => all.subarray(j * dates, (j + 1) * dates))
       const overlap = overlaps[i * size + j]!
       // Deviations from a series' own mean sum to zero over its dates. Where the other series has all of them, the
       // other's mean multiplies zero and need not be known.
       const nested = overlap === counts[i] || overlap === counts[j]
-      const sum = nested ? product(x!, y!, 0, dates) : commonProducts(x!, inX!, y!, inY!, overlap)
+      const sum = nested
+        ? product(series[i]!, series[j]!, 0, dates)
+        : commonProducts(series[i]!, there[i]!, series[j]!, there[j]!, overlap)
       matrix[i * size + j] = matrix[j * size + i] = sum / (overlap - 1)
     }
     yield 0.1 + 0.9 * ((i + 1) / size) ** 2
@@ -319,39 +322,15 @@ export function* completedMoments(
     active = before
   }
 
-  // in the order of the factor, where what is known so far lies together
   const moving = order.length
-  const orderedMeans = new Float64Array(moving)
-  const ordered = new Float64Array(moving * moving)
-  const unexplained = new Float64Array(moving)
-  let known = 0
-  for (const [g, { moving: added }] of steps.entries()) {
-    const { slopes, residuals } = regressions[g]!
-    for (let a = 0; a < added; a++) {
-      // the intercept stands before the slopes
-      const slopesOfA = slopes.subarray(a * (known + 1) + 1, (a + 1) * (known + 1))
-      const row = ordered.subarray((known + a) * moving, (known + a + 1) * moving)
-      orderedMeans[known + a] = slopes[a * (known + 1)]! + product(slopesOfA, orderedMeans, 0, known)
-      unexplained[known + a] = residuals[a * added + a]!
-      for (let l = 0; l < known; l++) row[l] = product(slopesOfA, ordered, l * moving, known)
-      for (let l = 0; l < known; l++) ordered[l * moving + known + a] = row[l]!
-      for (let b = 0; b <= a; b++) {
-        const slopesOfB = slopes.subarray(b * (known + 1) + 1, (b + 1) * (known + 1))
-        row[known + b] = ordered[(known + b) * moving + known + a] =
-          residuals[a * added + b]! + product(slopesOfB, row, 0, known)
-      }
-      yield 0.8 + (0.2 * (known + a + 1)) / moving
-    }
-    known += added
-  }
-
+  const ordered = yield* carriedForward(regressions, moving)
   const means = Float64Array.from(constant, (never, i) => (never ? returns[(dates - 1) * size + i]! : 0))
   const matrix = new Float64Array(size * size)
   const residualVariances = new Float64Array(size)
   for (const [a, i] of order.entries()) {
-    means[i] = orderedMeans[a]!
-    residualVariances[i] = unexplained[a]!
-    for (const [b, j] of order.entries()) matrix[i * size + j] = ordered[a * moving + b]!
+    means[i] = ordered.means[a]!
+    residualVariances[i] = ordered.residualVariances[a]!
+    for (const [b, j] of order.entries()) matrix[i * size + j] = ordered.matrix[a * moving + b]!
   }
   return {
     means,
@@ -363,6 +342,36 @@ export function* completedMoments(
       redundant: Int32Array.from(regressions[g]!.redundant, (c) => order[c - 1]!).sort(),
     })),
   }
+}
+
+/** Moments of the series in the order of their regressions, each group from those before it. */
+function* carriedForward(
+  regressions: readonly Regression[],
+  size: number,
+): Generator<number, Pick<CompletedMoments, 'means' | 'matrix' | 'residualVariances'>> {
+  const means = new Float64Array(size)
+  const matrix = new Float64Array(size * size)
+  const residualVariances = new Float64Array(size)
+  let known = 0
+  for (const { slopes, residuals, size: added } of regressions) {
+    for (let a = 0; a < added; a++) {
+      // the intercept stands before the slopes
+      const slopesOfA = slopes.subarray(a * (known + 1) + 1, (a + 1) * (known + 1))
+      const row = matrix.subarray((known + a) * size, (known + a + 1) * size)
+      means[known + a] = slopes[a * (known + 1)]! + product(slopesOfA, means, 0, known)
+      residualVariances[known + a] = residuals[a * added + a]!
+      for (let l = 0; l < known; l++) row[l] = product(slopesOfA, matrix, l * size, known)
+      for (let l = 0; l < known; l++) matrix[l * size + known + a] = row[l]!
+      for (let b = 0; b <= a; b++) {
+        const slopesOfB = slopes.subarray(b * (known + 1) + 1, (b + 1) * (known + 1))
+        row[known + b] = matrix[(known + b) * size + known + a] =
+          residuals[a * added + b]! + product(slopesOfB, row, 0, known)
+      }
+      yield 0.8 + (0.2 * (known + a + 1)) / size
+    }
+    known += added
+  }
+  return { means, matrix, residualVariances }
 }
 
 function product(left: Float64Array, right: Float64Array, at: number, length: number): number {
@@ -444,6 +453,8 @@ function* addRowsInPlace(
 const WORK_BETWEEN_YIELDS = 1e6
 
 interface Regression {
+  /** m */
+  readonly size: number
   /** m x k: a row per series of the group; the intercept, then the slope on each longer series. */
   readonly slopes: Float64Array
   /** m x m: residual covariance. */
@@ -488,7 +499,7 @@ function regressionOf(factor: Float64Array, width: number, k: number, m: number,
       residuals[a * m + b] = residuals[b * m + a] = sum / dates
     }
   }
-  return { slopes, residuals, redundant }
+  return { size: m, slopes, residuals, redundant }
 }
 
 /** The triangular factor of the same rows without one column; rare, and so built anew rather than rotated. */
