@@ -108,7 +108,7 @@ function Line({ line, now }: { line: CheckLine; now: number | null }) {
 const NOUNS = { stops: 'stop', warns: 'warning', notes: 'note' } as const
 
 /** How many there are of each gravity. */
-function countsOf(lines: readonly CheckLine[]): string {
+export function countsOf(lines: readonly CheckLine[]): string {
   const counts = (['stops', 'warns', 'notes'] as const).flatMap((weight) => {
     const count = lines.filter(({ check }) => check.weight === weight).length
     return count > 0 ? countOf(count, NOUNS[weight]) : []

@@ -57,9 +57,9 @@ export function DataView() {
     <div className={classes.view}>
       <Holdings state={state} />
       <Returns state={state} />
+      <Checks state={state} />
       <FactorReturns state={state} />
       <Benchmark state={state} />
-      <Checks state={state} />
       <Book state={state} />
     </div>
   )

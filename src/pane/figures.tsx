@@ -1,5 +1,6 @@
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { countOf, dateText, numberText, percentText, type Breakdown } from '../sheet'
+import { countOf, dateText, numberText, percentText, type BooksState, type Breakdown } from '../sheet'
+import { countsOf } from './checks'
 import { Disclosure } from './controls'
 import { Headline } from './headline'
 import { bandText } from './measure'
@@ -60,7 +61,7 @@ function Band({ breakdown: { bands, decomposition } }: { breakdown: Breakdown })
 }
 
 /** The portfolio's own figures, with what they rest on. */
-export function Figures({ breakdown }: { breakdown: Breakdown }) {
+export function Figures({ breakdown, checks }: { breakdown: Breakdown; checks: BooksState['checks'] }) {
   const classes = useStyles()
   const { decomposition: d, expectedReturn, effectiveWithheld } = breakdown
   const rows: readonly (readonly [label: string, value: string, remark?: string | null])[] = [
@@ -73,6 +74,9 @@ export function Figures({ breakdown }: { breakdown: Breakdown }) {
     ],
     ['Net weight', percentText(breakdown.net, 1)],
     ['Gross weight', percentText(breakdown.gross, 1)],
+    ...(checks
+      ? [['Data checks (under Data)', checks.length > 0 ? countsOf(checks) : 'nothing found'] as const]
+      : []),
   ]
   return (
     <div className={classes.block}>

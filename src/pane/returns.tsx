@@ -1,4 +1,4 @@
-import { type BooksState, type LookBack, type ReturnsReading } from '../sheet'
+import type { Area, BooksState, Finding, LookBack, ReturnsReading } from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
 import { EstimatorFields, GapFields } from './estimator'
 import { Findings } from './place'
@@ -153,9 +153,19 @@ function ReturnsFields({ state, reading }: { state: BooksState; reading: Returns
   )
 }
 
+/** What was found in reading, without what a data check tells of the same cells with more to it. */
+function untold(findings: readonly Finding[], checks: BooksState['checks']): readonly Finding[] {
+  const told = (checks ?? []).flatMap(({ check }) => check.areas)
+  const begins = (area: Area, at: Area): boolean =>
+    area.sheet === at.sheet && area.row === at.row && area.column === at.column
+  return findings.filter(
+    ({ weight, area }) => weight === 'stops' || !area || !told.some((cells) => begins(cells, area)),
+  )
+}
+
 /** The step of the returns: what was read, which dates count, and what the covariance is estimated by. */
 export function Returns({ state }: { state: BooksState }) {
-  const { holdings, returns, faults } = state
+  const { holdings, returns, faults, checks } = state
   return (
     <Step
       title="Returns"
@@ -169,7 +179,7 @@ export function Returns({ state }: { state: BooksState }) {
       {returns && (
         <>
           <Findings
-            findings={returns.findings}
+            findings={untold(returns.findings, checks)}
             label="Found in the returns"
             after={(finding) => <RisklessChoice finding={finding} />}
           />

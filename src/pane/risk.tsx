@@ -185,7 +185,7 @@ export function RiskView() {
   return (
     <div className={classes.view}>
       {status.kind === 'failed' && <Remark text="Figures as last computed, before the failure told above." />}
-      <Figures breakdown={breakdown} />
+      <Figures breakdown={breakdown} checks={state.checks} />
       {breakdown.sharesWithheld !== null && <Remark text={breakdown.sharesWithheld} />}
       {breakdown.decomposition.volatility > 0 && <Positioned breakdown={breakdown} />}
       <Section title="Positions">

@@ -94,7 +94,7 @@ const useStyles = makeStyles({
 const STEP = 100
 
 /** Widths in pixels of columns of figures, by what stands in them; the first column takes what is left. */
-export const WIDTHS = { weight: 50, contribution: 78, share: 62 } as const
+export const WIDTHS = { weight: 54, contribution: 84, share: 62 } as const
 
 export interface TableColumn {
   readonly head: string
