@@ -56,8 +56,12 @@ export interface Check extends Finding {
 
 // What is told and what is not. Our own conventions where no source is named.
 
-/** A return is far out beyond so many robust scales (median, 1.4826 x median distance from it). */
+/**
+ * A return is far out beyond so many robust scales (median, 1.4826 x median distance from it), and more likely wrong than wild beyond so
+ * many: of Student t with 5 degrees, fat tails for weekly returns, 1 in 8,400 lies beyond 10 and 1 in 250,000 beyond 20.
+ */
 const FAR = 10
+const LIKELY_WRONG = 20
 /** A split shows already at fewer, as its size says what it is; so many holdings far out on one date are the market. */
 const FAR_FOR_A_SPLIT = 6
 const FEWEST_FOR_A_MARKET = 3
@@ -733,7 +737,7 @@ class DataChecks {
       else if (isFar || undone)
         outliers.push({
           held,
-          weight: 'warns',
+          weight: undone || Math.abs(far.multiple) > LIKELY_WRONG ? 'warns' : 'notes',
           sentence: `${addressOf(area)}: the return of ${quote(held.name)} ${this.#when(far.row)} is ${size}${undone ? ', and the next one takes it back: a wrong price?' : '.'}`,
           areas: undone ? [area, this.#returns.cell(after.row, series)] : [area],
           mended: undone ? this.#shared(far, after) : [[far.row, fact.median]],
@@ -912,7 +916,7 @@ class DataChecks {
   }
 
   #chance({ standardError }: TimeCorrelation): string {
-    return `by chance all ${this.#held.length} series would stay within ${numberText(this.#limit() * standardError)} of 0 in ${percentText(1 - CHANCE, 0)} of cases`
+    return `by chance all ${this.#held.length} series would stay within ${numberText(this.#limit() * standardError)} of 0 in at least ${percentText(1 - CHANCE, 0)} of cases`
   }
 
   #serialCorrelation(): void {
