@@ -9,7 +9,7 @@ import type { Match } from './matching'
 import { plainName } from './names'
 import type { ReturnsReading } from './returns'
 import type { GapRule, Settings } from './settings'
-import { countOf, dateText, numberText, percentText, quote } from './wording'
+import { countOf, dateText, numberText, quote } from './wording'
 
 /** The dates a model rests on. */
 export interface Window {

@@ -5,7 +5,7 @@ import { CAUTION } from './breakdown'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableCell } from './table'
 import type { Tails } from './tail-section'
-import { countOf, dateText, numberText, percentText, POSITION_HEADS } from './wording'
+import { countOf, dateText, percentText, POSITION_HEADS } from './wording'
 
 const PERCENT = '0.00%'
 const SHARE = '0.0%'

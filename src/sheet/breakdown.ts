@@ -16,7 +16,7 @@ import { settingLines } from './setting-lines'
 import type { Settings } from './settings'
 import type { Tails } from './tail-section'
 import { tailsOf } from './tail-section'
-import { countOf, listOf, numberText, percentText, quote } from './wording'
+import { countOf, listOf, numberText, quote } from './wording'
 
 export interface GroupSection {
   readonly header: string

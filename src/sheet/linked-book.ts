@@ -27,6 +27,8 @@ import type { BacktestChoice, Studies } from './studies'
 import { backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
+import type { Place, Sources } from './written-table'
+import { areaOfTable, WrittenTable } from './written-table'
 import { countOf, listOf, quote } from './wording'
 
 /** Where in the pane a sentence belongs. */
@@ -108,7 +110,6 @@ export class LinkedBook {
   checks: readonly CheckLine[] | null = null
   /** what was computed at length about the figures that stand now */
   studies: Studies = NO_STUDIES
-  table: Area | null = null
   status: Status = { kind: 'nothing linked' }
   faults: { readonly [F in Field]?: string } = {}
   proposals: readonly Proposal[] = []
@@ -137,7 +138,8 @@ export class LinkedBook {
     choices: string
     book: BookModel
   } | null = null
-  #written: Table | null = null
+  readonly #table: WrittenTable
+  readonly #checksList: WrittenTable
   readonly #inspection = new Inspection()
   #inspected: readonly unknown[] = []
   #unasked = 0
@@ -152,6 +154,8 @@ export class LinkedBook {
     readonly calculator: Calculator,
     saved?: Json,
   ) {
+    this.#table = new WrittenTable(workbook, this.keptName('table'), 'Risk')
+    this.#checksList = new WrittenTable(workbook, this.keptName('checks'), 'Data checks')
     const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
     this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
     this.linked = entry !== null
@@ -166,6 +170,11 @@ export class LinkedBook {
       unread.length > 0
         ? `${this.title}: settings saved with this workbook could not be read and stand at their defaults: ${listOf(unread)}.`
         : null
+  }
+
+  /** Where the written table lies. */
+  get table(): Area | null {
+    return this.#table.area
   }
 
   /** What is saved with the workbook about this book. */
@@ -634,7 +643,7 @@ export class LinkedBook {
     if (!sameReturns) await this.#readSeries('returns', returns.area, work)
     if (!factors) this.factors = null
     else if (!sameFactors) await this.#readSeries('factors', factors.area, work)
-    this.table = table?.area ?? null
+    this.#table.area = table?.area ?? null
     await this.#compute(work)
     this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
@@ -647,29 +656,16 @@ export class LinkedBook {
     this.proposals = this.proposals.filter(({ key }) => !key.startsWith('grow '))
     if (!this.breakdown) return null
     const table = breakdownTable(this.title, this.breakdown)
-    const fits = seen.area.rows === table.cells.length && seen.area.columns === table.widths.length
-    if (
-      fits &&
-      seen.formulas &&
-      table.cells.every((row, r) =>
-        row.every((cell, c) => sameCell(cell.value, seen.formulas?.[r]?.[c] ?? '')),
-      )
-    ) {
-      this.#written = table
-      return null
-    }
+    if (this.#table.stands(seen, table)) return null
     if (cause === 'look')
       return {
         kind: 'stale',
         since: seen.area,
         sentence: `The table in ${addressOf(seen.area)} differs from the figures computed now. Compute brings it up to date.`,
       }
-    const known = fits && this.#written !== null && sameFormats(this.#written, table)
     try {
-      await this.#writeAt(seen.area, table, 'blank', {
-        ours: seen.area,
-        ...(known && seen.formulas ? { seen: seen.formulas } : {}),
-      })
+      await this.#table.rewrite(seen, table, this.#sources())
+      this.#tableFollows()
       return null
     } catch (fault) {
       if (!(fault instanceof Fault)) throw fault
@@ -687,34 +683,31 @@ export class LinkedBook {
   // ---- writing
 
   /** Writes the table to a new sheet, at the selection, or where it was; figures that are behind the sheet are computed first. */
-  async writeTable(
-    where: 'new sheet' | 'selection' | 'where it was',
-    work: Work,
-    over: 'blank' | 'replace' = 'blank',
-    at?: Area,
-  ): Promise<Area> {
+  async writeTable(where: Place, work: Work, over: 'blank' | 'replace' = 'blank', at?: Area): Promise<Area> {
     if (!this.breakdown)
       throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'table' })
     if (this.status.kind !== 'up to date' && this.status !== this.#tableStatus) await this.compute(work)
     const table = breakdownTable(this.title, this.breakdown)
-    const target = at ?? (await this.#targetOf(where))
-    // an earlier table that the new one meets gives way to it; one that lies elsewhere stays, as figures of its time
-    const meets = this.table && overlap(this.table, areaOfTable(target, table)) ? { ours: this.table } : {}
+    const target = at ?? (await this.#table.corner(where))
     try {
-      return await this.#writeAt(target, table, over, meets, where === 'new sheet' ? target.sheet : undefined)
+      const area = await this.#table.write(where, target, table, over, this.#sources())
+      this.#tableFollows()
+      return area
     } catch (fault) {
       if (fault instanceof Fault && fault.code === 'occupied') this.#proposeOver('over', where, target, table)
       throw fault
     }
   }
 
+  /** After a write: figures that only waited for their table are up to date with it. */
+  #tableFollows(): void {
+    this.kept = true
+    if (this.status === this.#tableStatus) this.status = { kind: 'up to date' }
+    this.#tableStatus = null
+  }
+
   /** @param kind 'over' for a write the user asked for, 'grow' for a refresh that needs more room */
-  #proposeOver(
-    kind: 'over' | 'grow',
-    where: 'new sheet' | 'selection' | 'where it was',
-    target: Area,
-    table: Table,
-  ): void {
+  #proposeOver(kind: 'over' | 'grow', where: Place, target: Area, table: Table): void {
     this.#propose({
       key: `${kind} ${addressOf(areaOfTable(target, table))}`,
       field: 'table',
@@ -738,88 +731,26 @@ export class LinkedBook {
       )
     const table = checksTable(this.title, this.checks, this.breakdown, today)
     const [earlier] = await this.workbook.look([{ at: { kept: this.keptName('checks') } }])
-    const target = earlier?.area ?? (await this.#freeSheet('Data checks'))
-    const area = areaOfTable(target, table)
-    this.#refuseOverSources(area)
-    await this.workbook.write({
-      ...(earlier ? {} : { sheet: target.sheet }),
-      patches: [{ at: area, table, over: 'blank', ...(earlier ? { ours: earlier.area } : {}) }],
-      keep: { [this.keptName('checks')]: area },
-    })
+    const list = this.#checksList
+    list.area = earlier?.area ?? null
+    const place = list.area ? 'where it was' : 'new sheet'
+    const area = await list.write(place, await list.corner(place), table, 'blank', this.#sources())
     this.kept = true
     return area
   }
 
-  async #targetOf(where: 'new sheet' | 'selection' | 'where it was'): Promise<Area> {
-    if (where === 'selection') return this.workbook.selection()
-    if (where === 'where it was') {
-      if (!this.table)
-        throw new Fault('missing', 'no table has been written yet', 'choose a new sheet or a selection', {
-          argument: 'table',
-        })
-      return this.table
-    }
-    return this.#freeSheet('Risk')
-  }
-
-  /** The corner of a sheet that is not there yet. */
-  async #freeSheet(name: string): Promise<Area> {
-    const shown = new Set((await this.workbook.sheets()).map((shownName) => shownName.toLowerCase()))
-    for (let k = 1; ; k++) {
-      const corner: Area = { sheet: k === 1 ? name : `${name} ${k}`, row: 0, column: 0, rows: 1, columns: 1 }
-      if (shown.has(corner.sheet.toLowerCase())) continue
-      // a hidden sheet has its name too, and a table on it would not be seen
-      const [hidden] = await this.workbook.look([{ at: corner }])
-      if (!hidden) return corner
-    }
-  }
-
-  async #writeAt(
-    target: Area,
-    table: Table,
-    over: 'blank' | 'replace',
-    ground: { ours?: Area; seen?: readonly (readonly CellValue[])[] },
-    sheet?: string,
-  ): Promise<Area> {
-    const area = areaOfTable(target, table)
-    this.#refuseOverSources(area)
-    const moved = !sameArea(this.table, area)
-    await this.workbook.write({
-      ...(sheet === undefined ? {} : { sheet }),
-      patches: [{ at: area, table, over, ...ground }],
-      ...(moved ? { keep: { [this.keptName('table')]: area } } : {}),
-    })
-    this.kept = true
-    this.table = area
-    this.#written = table
-    // figures that only waited for their table are up to date with it
-    if (this.status === this.#tableStatus) this.status = { kind: 'up to date' }
-    this.#tableStatus = null
-    return area
-  }
-
-  /** Not even the user's word lets the table replace what it is computed from: the next refresh would have nothing to read. */
-  #refuseOverSources(area: Area): void {
-    for (const [part, source] of [
+  #sources(): Sources {
+    return [
       ['holdings', this.holdings?.area],
       ['returns', this.returns?.area],
       ['factor returns', this.factors?.area],
       ['capital', this.#capitalArea],
-    ] as const)
-      if (source && overlap(area, source))
-        throw new Fault(
-          'selection',
-          `the table would fill ${addressOf(area)} and cover the ${part} in ${addressOf(source)}, which it is computed from`,
-          'choose another place',
-          { argument: 'table' },
-        )
+    ]
   }
 
   /** Lets go of a table that another book was written over. */
-  async releaseTable(): Promise<void> {
-    await this.workbook.write({ patches: [], keep: { [this.keptName('table')]: null } })
-    this.table = null
-    this.#written = null
+  releaseTable(): Promise<void> {
+    return this.#table.release()
   }
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
@@ -875,15 +806,6 @@ export class LinkedBook {
   }
 }
 
-/** What a table fills from its top-left cell on. */
-const areaOfTable = ({ sheet, row, column }: Area, table: Table): Area => ({
-  sheet,
-  row,
-  column,
-  rows: table.cells.length,
-  columns: table.widths.length,
-})
-
 const isFormula = (value: CellValue): boolean =>
   typeof value === 'string' && value.startsWith('=') && value.length > 1
 
@@ -914,13 +836,3 @@ const sameFigures = (a: Decomposition | undefined, b: Decomposition): boolean =>
 const sameValues = (a: Block['values'], b: Block['values']): boolean =>
   a.length === b.length &&
   a.every((row, r) => row.length === b[r]?.length && row.every((value, c) => value === b[r]?.[c]))
-
-/** Text that begins like a formula may come back behind an apostrophe. */
-const sameCell = (ours: CellValue, typed: CellValue): boolean =>
-  ours === typed || (typeof ours === 'string' && typed === `'${ours}`)
-
-const sameFormats = (a: Table, b: Table): boolean =>
-  a.cells.length === b.cells.length &&
-  a.cells.every((row, r) =>
-    row.every((cell, c) => cell.format === b.cells[r]?.[c]?.format && cell.mark === b.cells[r]?.[c]?.mark),
-  )
