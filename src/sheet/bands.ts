@@ -1,4 +1,4 @@
-import { shareDifferences, standardErrors } from '../core'
+import { RISK_BAND, shareDifferences, standardErrors } from '../core'
 import type { Decomposition } from '../core'
 import type { BookModel } from './book-model'
 
@@ -16,8 +16,8 @@ export interface Bands {
   readonly note: string | null
 }
 
-/** Two-sided 95% of a normal distribution: NIST/SEMATECH e-Handbook of Statistical Methods, section 1.3.6.7.1 (from memory). */
-export const BAND = 1.959963984540054
+/** How many standard errors a 95% band reaches to either side. */
+export const BAND = RISK_BAND
 
 /**
  * The error bands of a decomposition, from the returns behind the model.
