@@ -87,6 +87,7 @@ export function* pairwiseCovariance(
     })
   }
   const { counts } = historyLengths(returns, dates, size)
+  yield 0
   const overlaps = commonDates(returns, dates, size)
   const smallestOverlap = fewest(overlaps, size)
   if (smallestOverlap.dates < least) throw tooFewCommon(smallestOverlap, counts, least)
@@ -290,6 +291,7 @@ export function* completedMoments(
       throw brokenHistory(returns, dates, size, i, starts[i]!)
     }
   }
+  yield 0
   const groups = byLength(starts, dates)
   const short = groups.find(({ dates: own, longer }) => own <= longer + 1)
   if (short) throw shortHistory(short)
@@ -457,7 +459,7 @@ interface Regression {
   readonly size: number
   /** m x k: a row per series of the group; the intercept, then the slope on each longer series. */
   readonly slopes: Float64Array
-  /** m x m: residual covariance. */
+  /** m x m: residual covariance, on and below the diagonal. */
   readonly residuals: Float64Array
   /** Columns of the factor that were left out. */
   readonly redundant: readonly number[]
@@ -491,12 +493,13 @@ function regressionOf(factor: Float64Array, width: number, k: number, m: number,
       for (let c = r + 1; c < used; c++) rest -= triangle[r * stride + c]! * slopes[a * k + kept[c]!]!
       slopes[a * k + kept[r]!] = rest / triangle[r * stride + r]!
     }
-    for (let b = 0; b <= a; b++) {
-      let sum = 0
-      for (let r = used; r <= used + b; r++) {
-        sum += triangle[r * stride + used + a]! * triangle[r * stride + used + b]!
-      }
-      residuals[a * m + b] = residuals[b * m + a] = sum / dates
+  }
+  // row by row of the triangle, as it lies in memory
+  for (let r = used; r < used + m; r++) {
+    const row = triangle.subarray(r * stride + used, r * stride + used + m)
+    for (let a = r - used; a < m; a++) {
+      const left = row[a]! / dates
+      for (let b = r - used; b <= a; b++) residuals[a * m + b] = residuals[a * m + b]! + left * row[b]!
     }
   }
   return { size: m, slopes, residuals, redundant }
