@@ -12,10 +12,11 @@ import { Workbook } from '@cj-tech-master/excelts/browser'
 import { BooleanNumber, CellValueType, type ICellData, type IWorkbookData } from '@univerjs/core'
 import { FormulaDataModel, IDefinedNamesService } from '@univerjs/engine-formula'
 import { openWorkbook, saveWorkbook, sentenceOf, type Settings } from '../../src/desk/files'
-import { textOf, unpack } from '../../src/desk/files/archive'
+import { pack, textOf, unpack } from '../../src/desk/files/archive'
 import { needsArray, shownFormula, storedFormula } from '../../src/desk/files/formula-text'
 import { createCustomFunctions, type CustomFunctionsStandIn } from '../../src/desk/functions'
 import { headlessGrid, type Grid } from '../../src/desk/grid'
+import { levelOf, linkOf, withLevel, withLink } from '../../src/desk/office'
 
 let grid: Grid
 let functions: CustomFunctionsStandIn
@@ -323,6 +324,95 @@ describe('names and tables', () => {
   })
 })
 
+describe('links and folded rows', () => {
+  const inside = { documentReference: "'My sheet'!D9", screenTip: 'Go to "D9" & <more>' }
+  const outside = { address: 'https://example.org/?a=1&b=2' }
+  const shape = {
+    rowData: {
+      1: withLevel(1),
+      2: { ...withLevel(2), hd: BooleanNumber.TRUE },
+      // a row without cells
+      6: withLevel(1),
+    },
+    columnData: { 3: withLevel(1) },
+  }
+  const filled = () =>
+    show(
+      {
+        A1: { v: '=here', t: CellValueType.FORCE_STRING, ...withLink(inside) },
+        A2: { v: 'out', ...withLink(outside) },
+        A3: { f: '=1+1', ...withLink(inside) },
+        A4: withLink(inside),
+        B1: { v: 1 },
+      },
+      shape,
+    )
+  const levels = (rows: number) => {
+    const { rowData } = book().getActiveSheet().getSheet().getConfig()
+    return Array.from({ length: rows }, (_, row) => levelOf(rowData[row]))
+  }
+
+  it('come back, whatever stands in the cells', async () => {
+    await filled()
+    const { report } = await again()
+    expect(report.notKept).toEqual([])
+    expect(['A1', 'A2', 'A3', 'A4', 'B1'].map((address) => linkOf(cell(address)))).toEqual([
+      inside,
+      outside,
+      inside,
+      inside,
+      null,
+    ])
+    expect([cell('A1').v, cell('A2').v, cell('A3').f]).toEqual(['=here', 'out', '=1+1'])
+    expect(levels(8)).toEqual([0, 1, 2, 0, 0, 0, 1, 0])
+    const { rowData, columnData } = book().getActiveSheet().getSheet().getConfig()
+    expect([rowData[2]?.hd, levelOf(columnData[3])]).toEqual([BooleanNumber.TRUE, 1])
+  })
+
+  it('stand in the file as the format has them', async () => {
+    await filled()
+    const parts = await unpack((await again()).bytes)
+    const sheet = textOf(parts, 'xl/worksheets/sheet1.xml')
+    // 18.3.1.47 (hyperlink): location for a place in the workbook, a relationship for one outside it
+    expect(sheet).toContain(
+      '<hyperlink ref="A1" location="\'My sheet\'!D9" tooltip="Go to &quot;D9&quot; &amp; &lt;more&gt;"/>'.replaceAll(
+        "'",
+        '&apos;',
+      ),
+    )
+    expect(sheet).toContain('<hyperlink ref="A2" r:id="rIdLink1"/>')
+    expect(textOf(parts, 'xl/worksheets/_rels/sheet1.xml.rels')).toContain(
+      'Target="https://example.org/?a=1&amp;b=2" TargetMode="External"',
+    )
+    // 18.3.1.99 (worksheet): links come before the margins of the page
+    expect(sheet.indexOf('<hyperlinks>')).toBeLessThan(sheet.indexOf('<pageMargins'))
+    expect(sheet.indexOf('</sheetData>')).toBeLessThan(sheet.indexOf('<hyperlinks>'))
+    // 18.3.1.73 (row) and 18.3.1.81 (sheetFormatPr)
+    expect(sheet).toMatch(/<row r="3"[^>]* hidden="1"[^>]* outlineLevel="2"/)
+    expect(sheet).toContain('outlineLevelRow="2"')
+    expect(sheet).not.toContain('collapsed')
+  })
+
+  it('are read from a link on several cells and from an outline with its control above', async () => {
+    const workbook = new Workbook()
+    const made = workbook.addWorksheet('S')
+    made.addRows([[1], [2], [3]])
+    made.getRow(2).outlineLevel = 1
+    made.properties.outlineProperties = { summaryBelow: false, summaryRight: true }
+    const parts = await unpack(new Uint8Array(await workbook.xlsx.writeBuffer()))
+    const path = 'xl/worksheets/sheet1.xml'
+    // without a relationship and with a name for its text, as other programs write it
+    const link = '<hyperlinks><hyperlink ref="A1:A2" location="S!A3" display="3"/></hyperlinks>'
+    parts[path] = new TextEncoder().encode(textOf(parts, path).replace('<pageMargins', `${link}<pageMargins`))
+    await openWorkbook(grid, await pack(parts), settings)
+    const found = ['A1', 'A2', 'A3'].map((address) => linkOf(cell(address)))
+    expect(found).toEqual([{ documentReference: 'S!A3' }, { documentReference: 'S!A3' }, null])
+    expect(levels(3)).toEqual([0, 1, 0])
+    const { bytes } = await again()
+    expect(textOf(await unpack(bytes), path)).toContain('<outlinePr summaryBelow="0" summaryRight="1"/>')
+  })
+})
+
 describe('settings', () => {
   it('travel with the file, whatever their length, and show nowhere', async () => {
     await show({ A1: { v: 1 } })
@@ -390,6 +480,10 @@ describe('another program', () => {
         B1: { v: '=1+1', t: CellValueType.FORCE_STRING },
         C1: { f: '=TRANSPOSE(A2:A3)' },
       })
+      const link = { documentReference: "'My sheet'!A3" }
+      book().getActiveSheet().getRange('A1').setValue(withLink(link))
+      const rows = book().getActiveSheet().getSheet().getConfig().rowData
+      for (const row of [1, 2]) rows[row] = withLevel(row)
       // The name first: a formula entered before it stays #NAME? in the engine.
       book().insertDefinedName('Half', '=0.5')
       book().getActiveSheet().getRange('B2').setValue({ f: '=SUM(A2:A3)*Half' })
@@ -435,6 +529,9 @@ describe('another program', () => {
             .map((name) => [name.getName(), name.getFormulaOrRefString()]),
         ).toEqual([['Half', '=0.5']])
         expect(settings.get('kept')).toBe(1)
+        expect(linkOf(cell('A1'))).toEqual(link)
+        const { rowData } = book().getActiveSheet().getSheet().getConfig()
+        expect([0, 1, 2].map((row) => levelOf(rowData[row]))).toEqual([0, 1, 2])
       } finally {
         rmSync(folder, { recursive: true, force: true })
       }

@@ -1,9 +1,9 @@
 /**
  * What the file library leaves out, read from and written into the parts of the .xlsx package itself: defined names that are constants
- * or formulas, their comments and visibility, and the mark that tells a spilling formula from an old array formula.
+ * or formulas, their comments and visibility, links behind cells, and the mark that tells a spilling formula from an old array formula.
  *
- * Source, from memory: ECMA-376 part 1, 18.2.5 (definedName), 18.3.1.4 (c, attribute cm), 18.9 (metadata); [MS-XLSX] 2.6.160 (dynamic array
- * properties).
+ * Source, from memory: ECMA-376 part 1, 18.2.5 (definedName), 18.3.1.4 (c, attribute cm), 18.3.1.47 (hyperlink), 18.3.1.99 (worksheet, the
+ * order of its parts), 18.9 (metadata); [MS-XLSX] 2.6.160 (dynamic array properties).
  */
 import { unzip, zip } from '@cj-tech-master/excelts/browser'
 
@@ -17,6 +17,14 @@ export interface StoredName {
   readonly hidden?: boolean
   /** Position of the sheet the name is limited to. */
   readonly sheet?: number
+}
+
+/** A link behind the cells of `ref`. */
+export interface StoredLink {
+  readonly ref: string
+  readonly address?: string
+  readonly documentReference?: string
+  readonly screenTip?: string
 }
 
 const WORKBOOK = 'xl/workbook.xml'
@@ -55,10 +63,7 @@ export const textOf = (parts: Parts, path: string): string =>
 export function namesIn(parts: Parts): StoredName[] {
   const entries = textOf(parts, WORKBOOK).matchAll(/<definedName\b([^>]*)>([^<]*)<\/definedName>/g)
   return [...entries].map(([, attributes = '', formula = '']) => {
-    const attribute = (name: string): string | undefined => {
-      const found = new RegExp(`\\b${name}="([^"]*)"`).exec(attributes)?.[1]
-      return found === undefined ? undefined : plain(found)
-    }
+    const attribute = attributesIn(attributes)
     const sheet = attribute('localSheetId')
     const comment = attribute('comment')
     return {
@@ -69,6 +74,113 @@ export function namesIn(parts: Parts): StoredName[] {
       ...(sheet === undefined ? {} : { sheet: Number(sheet) }),
     }
   })
+}
+
+function attributesIn(xml: string): (name: string) => string | undefined {
+  return (name) => {
+    const found = new RegExp(`(?:^|\\s)${name}="([^"]*)"`).exec(xml)?.[1]
+    return found === undefined ? undefined : plain(found)
+  }
+}
+
+/** The part of each sheet, by its name. */
+function sheetPaths(parts: Parts): Map<string, string> {
+  const targets = relationsIn(textOf(parts, RELATIONS))
+  const sheets = textOf(parts, WORKBOOK).matchAll(/<sheet\b([^>]*)>/g)
+  return new Map(
+    [...sheets].map(([, attributes = '']) => {
+      const target = targets.get(relationId(attributes) ?? '') ?? ''
+      return [
+        attributesIn(attributes)('name') ?? '',
+        target.startsWith('/') ? target.slice(1) : `xl/${target}`,
+      ]
+    }),
+  )
+}
+
+/** Targets by id. */
+const relationsIn = (xml: string): Map<string, string> =>
+  new Map(
+    [...xml.matchAll(/<Relationship\b([^>]*)>/g)].map(([, attributes = '']) => {
+      const attribute = attributesIn(attributes)
+      return [attribute('Id') ?? '', attribute('Target') ?? '']
+    }),
+  )
+
+/** The id of a relationship, whatever prefix its namespace has. */
+const relationId = (attributes: string): string | undefined => /\s\w+:id="([^"]*)"/.exec(attributes)?.[1]
+
+const relationsOf = (path: string): string => path.replace(/([^/]+)$/, '_rels/$1.rels')
+
+/** Takes the links out of the sheets, by name: the file library loses those within the workbook, and formulas with a link behind them. */
+export function takeLinks(parts: Parts): Map<string, StoredLink[]> {
+  const links = new Map<string, StoredLink[]>()
+  for (const [name, path] of sheetPaths(parts)) {
+    const xml = textOf(parts, path)
+    const [block] = /<hyperlinks\b[^>]*>.*?<\/hyperlinks>/s.exec(xml) ?? []
+    if (block === undefined) continue
+    const targets = relationsIn(textOf(parts, relationsOf(path)))
+    links.set(
+      name,
+      [...block.matchAll(/<hyperlink\b([^>]*)>/g)].map(([, attributes = '']) => {
+        const attribute = attributesIn(attributes)
+        const [outside, location] = [targets.get(relationId(attributes) ?? ''), attribute('location')]
+        const screenTip = attribute('tooltip')
+        return {
+          ref: attribute('ref') ?? '',
+          // a place in a document elsewhere is a part of its address
+          ...(outside ? { address: location ? `${outside}#${location}` : outside } : {}),
+          ...(!outside && location ? { documentReference: location } : {}),
+          ...(screenTip ? { screenTip } : {}),
+        }
+      }),
+    )
+    parts[path] = new TextEncoder().encode(xml.replace(block, ''))
+  }
+  return links
+}
+
+/** What comes after links in a sheet. */
+const BEHIND_LINKS =
+  /<(?:printOptions|pageMargins|pageSetup|headerFooter|rowBreaks|colBreaks|drawing|picture|legacyDrawing|mc:AlternateContent|tableParts|extLst)\b|<\/worksheet>/
+
+/** Puts links behind the cells of sheets, by name. */
+export function putLinks(parts: Parts, links: ReadonlyMap<string, readonly StoredLink[]>): void {
+  const paths = sheetPaths(parts)
+  for (const [name, list] of links) {
+    const path = paths.get(name)
+    if (path === undefined || list.length === 0) continue
+    const outside: string[] = []
+    const entries = list.map(({ ref, address, documentReference, screenTip }) => {
+      if (address) outside.push(address)
+      const attributes = [
+        `ref="${ref}"`,
+        ...(address ? [`r:id="rIdLink${outside.length}"`] : []),
+        ...(documentReference ? [`location="${marked(documentReference)}"`] : []),
+        ...(screenTip ? [`tooltip="${marked(screenTip)}"`] : []),
+      ]
+      return `<hyperlink ${attributes.join(' ')}/>`
+    })
+    const cells = textOf(parts, path)
+    const end = Math.max(cells.indexOf('</sheetData>'), cells.indexOf('<sheetData/>'))
+    const before = end + (BEHIND_LINKS.exec(cells.slice(end))?.index ?? 0)
+    const xml = `${cells.slice(0, before)}<hyperlinks>${entries.join('')}</hyperlinks>${cells.slice(before)}`
+    parts[path] = new TextEncoder().encode(xml)
+    if (outside.length > 0) putRelations(parts, relationsOf(path), outside)
+  }
+}
+
+function putRelations(parts: Parts, path: string, targets: readonly string[]): void {
+  const type = 'http://schemas.openxmlformats.org/officeDocument/2006/relationships/hyperlink'
+  parts[path] ??= new TextEncoder().encode(
+    '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n' +
+      '<Relationships xmlns="http://schemas.openxmlformats.org/package/2006/relationships"></Relationships>',
+  )
+  const entries = targets.map(
+    (target, k) =>
+      `<Relationship Id="rIdLink${k + 1}" Type="${type}" Target="${marked(target)}" TargetMode="External"/>`,
+  )
+  replace(parts, path, '</Relationships>', `${entries.join('')}</Relationships>`)
 }
 
 export function putNames(parts: Parts, names: readonly StoredName[]): void {

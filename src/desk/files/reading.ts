@@ -13,7 +13,8 @@ import {
   type IWorksheetData,
 } from '@univerjs/core'
 import type { IDefinedNamesServiceParam } from '@univerjs/engine-formula'
-import { namesIn, textOf, unpack, type Parts } from './archive'
+import { withLevel, withLink } from '../office'
+import { namesIn, takeLinks, textOf, unpack, type Parts, type StoredLink } from './archive'
 import { gridStyle, paletteOf, type Palette } from './cell-style'
 import { shownFormula } from './formula-text'
 import { DEFAULT_HEIGHT, DEFAULT_WIDTH, PIXELS, SETTINGS_SHEET, pixelsOf, type Settings } from './measures'
@@ -46,7 +47,7 @@ export async function readFile(
   unitId: string,
   name: string,
 ): Promise<Opened> {
-  const { parts, workbook } = await parse(bytes)
+  const { parts, workbook, links } = await parse(bytes)
   const sheets = workbook.worksheets.filter((sheet) => sheet.name !== SETTINGS_SHEET)
   if (sheets.length === 0) throw new Error('The file holds no worksheet.')
   const losses = new Losses(parts)
@@ -54,7 +55,7 @@ export async function readFile(
   const ids = sheets.map((_, i) => `sheet-${i + 1}`)
   const converted = sheets.map((sheet, i): [string, Partial<IWorksheetData>] => [
     ids[i] ?? '',
-    gridSheet(sheet, ids[i] ?? '', palette, losses),
+    gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, losses),
   ])
   const names = gridNames(
     parts,
@@ -89,13 +90,21 @@ export async function readFile(
   }
 }
 
-async function parse(bytes: ArrayBuffer | Uint8Array): Promise<{ parts: Parts; workbook: Workbook }> {
+interface Parsed {
+  readonly parts: Parts
+  readonly workbook: Workbook
+  /** by sheet */
+  readonly links: ReadonlyMap<string, readonly StoredLink[]>
+}
+
+async function parse(bytes: ArrayBuffer | Uint8Array): Promise<Parsed> {
   try {
     const parts = await unpack(bytes)
     if (!parts['xl/workbook.xml']) throw new Error('no workbook part')
+    const links = takeLinks(parts)
     const workbook = new Workbook()
     await workbook.xlsx.loadFromFiles(parts)
-    return { parts, workbook }
+    return { parts, workbook, links }
   } catch (cause) {
     throw new Error('The file is not an .xlsx workbook that can be read here.', { cause })
   }
@@ -134,7 +143,13 @@ export function counted(count: number, noun: string): string {
   return `${count} ${head}s${tail}`
 }
 
-function gridSheet(sheet: Worksheet, id: string, palette: Palette, losses: Losses): Partial<IWorksheetData> {
+function gridSheet(
+  sheet: Worksheet,
+  id: string,
+  links: readonly StoredLink[],
+  palette: Palette,
+  losses: Losses,
+): Partial<IWorksheetData> {
   const spilledInto = new Set<string>()
   const cellData: Record<number, Record<number, ICellData>> = {}
   const rowData: IObjectArrayPrimitiveType<Partial<IRowData>> = {}
@@ -142,6 +157,7 @@ function gridSheet(sheet: Worksheet, id: string, palette: Palette, losses: Losse
     const look = {
       ...(row.height ? { h: Math.round(row.height * PIXELS), ia: BooleanNumber.FALSE } : {}),
       ...(row.hidden ? { hd: BooleanNumber.TRUE } : {}),
+      ...(row.outlineLevel ? withLevel(row.outlineLevel) : {}),
     }
     if (Object.keys(look).length > 0) rowData[number - 1] = look
     row.eachCell({ includeEmpty: true }, (cell, column) => {
@@ -151,6 +167,15 @@ function gridSheet(sheet: Worksheet, id: string, palette: Palette, losses: Losse
       if (Object.keys(data).length > 0) (cellData[number - 1] ??= {})[column - 1] = data
     })
   })
+  for (const { ref, ...link } of links) {
+    const { startRow, startColumn, endRow, endColumn } = rangeOf(ref)
+    // a link may lie on whole rows or columns: what is not used of them stays without
+    for (let row = startRow; row <= Math.min(endRow, sheet.rowCount - 1); row++)
+      for (let column = startColumn; column <= Math.min(endColumn, sheet.columnCount - 1); column++) {
+        const line = (cellData[row] ??= {})
+        line[column] = { ...line[column], ...withLink(link) }
+      }
+  }
   const { state, conditionalFormattings, autoFilter, sheetProtection } = sheet
   losses.add('conditional format', conditionalFormattings.flatMap(({ rules }) => rules).length)
   losses.add('filter', autoFilter ? 1 : 0)
@@ -185,15 +210,22 @@ function gridSheet(sheet: Worksheet, id: string, palette: Palette, losses: Losse
     showGridlines: view?.showGridLines === false ? BooleanNumber.FALSE : BooleanNumber.TRUE,
     ...(colour ? { tabColor: `#${colour.slice(-6)}` } : {}),
     ...(view?.zoomScale ? { zoomRatio: view.zoomScale / 100 } : {}),
-    // The grid has no third state of its own.
-    ...(state === 'veryHidden' ? { custom: { visibility: 'veryHidden' } } : {}),
+    custom: {
+      // The grid has no third state of its own, and no outlines.
+      ...(state === 'veryHidden' ? { visibility: 'veryHidden' } : {}),
+      ...(sheet.properties.outlineProperties ? { outline: sheet.properties.outlineProperties } : {}),
+    },
   }
 }
 
 function gridColumns(sheet: Worksheet): IObjectArrayPrimitiveType<Partial<IColumnData>> {
   const columns: IObjectArrayPrimitiveType<Partial<IColumnData>> = {}
-  for (const { min, max, width, hidden } of sheet.model.cols ?? []) {
-    const look = { ...(width ? { w: pixelsOf(width) } : {}), ...(hidden ? { hd: BooleanNumber.TRUE } : {}) }
+  for (const { min, max, width, hidden, outlineLevel } of sheet.model.cols ?? []) {
+    const look = {
+      ...(width ? { w: pixelsOf(width) } : {}),
+      ...(hidden ? { hd: BooleanNumber.TRUE } : {}),
+      ...(outlineLevel ? withLevel(outlineLevel) : {}),
+    }
     // A file may give a width to all 16,384 columns at once.
     for (let column = min; column <= Math.min(max, sheet.columnCount + SPARE_COLUMNS); column++)
       columns[column - 1] = look
@@ -221,10 +253,6 @@ function contentOf(cell: Cell, spilledInto: Set<string>, losses: Losses): ICellD
     if ('richText' in value) {
       losses.add('cell with formats on part of its text', value.richText.length > 1 ? 1 : 0)
       return literal(value.richText.map(({ text }) => text).join(''))
-    }
-    if ('hyperlink' in value) {
-      losses.add('link behind a text')
-      return literal(value.text)
     }
     if ('checkbox' in value) return literal(value.checkbox)
   }

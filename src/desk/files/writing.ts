@@ -22,7 +22,8 @@ import {
   IFunctionService,
 } from '@univerjs/engine-formula'
 import type { Grid } from '../grid'
-import { markSpilling, pack, putNames, unpack, type StoredName } from './archive'
+import { levelOf, linkOf, type Line } from '../office'
+import { markSpilling, pack, putLinks, putNames, unpack, type StoredLink, type StoredName } from './archive'
 import { fileStyle } from './cell-style'
 import { needsArray, storedFormula } from './formula-text'
 import {
@@ -74,11 +75,14 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
     return look
   }
 
+  const links = new Map<string, StoredLink[]>()
   for (const id of data.sheetOrder) {
     const sheet = data.sheets[id]
     if (!sheet) continue
     const target = workbook.addWorksheet(sheet.name ?? id, { state: visibilityOf(sheet) })
     const cells = withSpills(sheet.cellData ?? {}, formulas.getArrayFormulaCellData()?.[data.id]?.[id])
+    const linked: StoredLink[] = []
+    links.set(target.name, linked)
     const arrays = formulas.getArrayFormulaRange()?.[data.id]?.[id]
     const content = (row: number, column: number): CellValue =>
       contentOf(cells[row]?.[column], addressOf(arrays?.[row]?.[column] ?? at(row, column)), addIn)
@@ -92,12 +96,15 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
       if (value !== null) cellThere.value = value
       const look = lookOf(cell)
       if (look) cellThere.style = look
+      const link = linkOf(cell)
+      if (link) linked.push({ ref: addressOf(at(row, column)), ...link })
     })
     writeShape(target, sheet)
   }
   writeSettings(workbook, settings)
 
   const parts = await unpack(new Uint8Array(await workbook.xlsx.writeBuffer()))
+  putLinks(parts, links)
   putNames(parts, namesOf(data.id, data.sheetOrder, injector.get(IDefinedNamesService), addIn))
   markSpilling(parts)
   return pack(parts)
@@ -168,6 +175,7 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
     if (w !== undefined && w !== defaultWidth) target.getColumn(column + 1).width = widthOf(w)
     if (hd === BooleanNumber.TRUE) target.getColumn(column + 1).hidden = true
   }
+  target.properties.outlineLevelCol = writeLevels(sheet.columnData, (column) => target.getColumn(column + 1))
   const defaultHeight = sheet.defaultRowHeight ?? DEFAULT_HEIGHT
   for (const [row, { h, hd }] of entries(sheet.rowData)) {
     // The library forgets a hidden row without cells unless it has a height.
@@ -175,6 +183,13 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
       Object.assign(target.getRow(row + 1), { hidden: true, height: (h ?? defaultHeight) / PIXELS })
     else if (h !== undefined && h !== defaultHeight) target.getRow(row + 1).height = h / PIXELS
   }
+  target.properties.outlineLevelRow = writeLevels(sheet.rowData, (row) => {
+    const line = target.getRow(row + 1)
+    // nor does it keep the level of such a row
+    if (!line.hasValues) line.height ??= defaultHeight / PIXELS
+    return line
+  })
+  if (sheet.custom?.['outline']) target.properties.outlineProperties = sheet.custom['outline'] as Outline
   for (const range of sheet.mergeData ?? []) target.mergeCellsWithoutStyle(addressOf(range))
   const { xSplit = 0, ySplit = 0 } = sheet.freeze ?? {}
   const common = {
@@ -186,6 +201,27 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
       ? { ...common, state: 'frozen', xSplit, ySplit }
       : { ...common, state: 'normal' },
   ]
+}
+
+type Outline = NonNullable<Worksheet['properties']['outlineProperties']>
+
+/**
+ * Writes how deep rows or columns are folded. Those that are folded away are hidden ones in the file as well.
+ * @returns the deepest
+ */
+function writeLevels(
+  lines: Record<number, Line> | undefined,
+  lineAt: (line: number) => { outlineLevel: number | undefined },
+): number {
+  let deepest = 0
+  for (const [at, line] of entries(lines)) {
+    const level = levelOf(line)
+    if (level === 0) continue
+    // the library's own idea of which lines are folded marks the deepest ones, folded or not
+    Object.defineProperty(Object.assign(lineAt(at), { outlineLevel: level }), 'collapsed', { value: false })
+    deepest = Math.max(deepest, level)
+  }
+  return deepest
 }
 
 function writeTable(
