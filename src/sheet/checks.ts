@@ -365,9 +365,13 @@ class DataChecks {
 
   #commonDates(): number {
     const { values, rows, columns } = this.#returns
+    const series = Int32Array.from(this.#held, (held) => held.series)
     let common = 0
-    for (let t = this.#facts.from; t < rows; t++)
-      if (this.#held.every(({ series }) => !Number.isNaN(values[t * columns + series]!))) common++
+    for (let t = this.#facts.from; t < rows; t++) {
+      let k = 0
+      while (k < series.length && !Number.isNaN(values[t * columns + series[k]!])) k++
+      if (k === series.length) common++
+    }
     return common
   }
 

@@ -121,7 +121,8 @@ export function* seriesFacts(input: FactsInput): Generator<number, SeriesFacts> 
   const facts: SeriesFact[] = []
   const levelled: Float64Array[] = []
   for (let i = 0; i < columns; i++) {
-    const x = Float64Array.from({ length }, (_, t) => values[(from + t) * columns + i]!)
+    const x = new Float64Array(length)
+    for (let t = 0; t < length; t++) x[t] = values[(from + t) * columns + i]!
     const fact = factOf(x, from)
     facts.push(fact)
     if (isDaily) levelled.push(x.map((value) => levelOf(value, fact)))
