@@ -761,7 +761,9 @@ class DataChecks {
         remedy: 'Look the split up; adjust the prices before it, or put the return right.',
         corrections: [
           this.#withReturns(
-            found.length === 1 ? 'With the split undone' : 'With these splits undone',
+            found.length === 1
+              ? `With the split undone (${this.#day(found[0]?.far.row ?? 0)})`
+              : 'With these splits undone',
             seriesIn(found),
             (x, i) => {
               for (const { held, far, rest } of found) if (held.series === i) x[far.row] = rest
@@ -774,6 +776,7 @@ class DataChecks {
     this.#tell('outlier', outliers, ['return', 'returns'], (about) => {
       const found = about as typeof outliers
       const isUndone = found.some(({ mended }) => mended.length > 1)
+      const day = this.#day(found[0]?.far.row ?? 0)
       return {
         effect: `${share(found)}, and so of much that is said about its risk.`,
         remedy:
@@ -781,9 +784,9 @@ class DataChecks {
         corrections: [
           this.#withReturns(
             isUndone && found.length === 1
-              ? 'With the move and its return spread evenly'
+              ? `With the move and its return spread evenly (${day})`
               : found.length === 1
-                ? 'With the median in its place'
+                ? `With the median in its place (${day})`
                 : 'With medians in their place',
             seriesIn(found),
             (x, i) => {

@@ -393,6 +393,16 @@ describe('one fault, one line', () => {
     expect(absoluteGap(corrected(check, 1).slice(90, 92), [0, 0])).toBeLessThan(1e-12)
   })
 
+  test('two far returns of one series are two lines, each with a correction of its own', () => {
+    const { checks } = look(changed(changed(rows, 50, 1, 0.9), 60, 1, 0.7))
+    expect(checks.map(({ corrections }) => corrections[0]?.label)).toEqual([
+      'With the median in its place (25 Nov 2022)',
+      'With the median in its place (3 Feb 2023)',
+    ])
+    expect(corrected(checks[0], 1)[60]).toBe(0.7)
+    expect(corrected(checks[1], 1)[50]).toBe(0.9)
+  })
+
   test('two faults of one kind are two lines, three are one', () => {
     const two = changed(changed(rows, 50, 1, NAN), 60, 2, NAN)
     expect(kinds(look(two)).filter((kind) => kind === 'gaps')).toHaveLength(2)
