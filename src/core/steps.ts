@@ -20,7 +20,7 @@ export function inOneGo<Result>(steps: Generator<number, Result>): Result {
  * A computation as a part of a longer one: its share done becomes that between two shares of the whole.
  *
  * @throws Fault   what the computation throws
- * @example        partOf(pairwiseCovariance(Float64Array.of(.01, .03, .02), 3, 1), .5, 1).next().value // 0.55
+ * @example        partOf(pairwiseCovariance(Float64Array.of(.01, .03, .02), 3, 1), .5, 1).next().value // 0.5
  */
 export function* partOf<Result>(
   steps: Generator<number, Result>,
