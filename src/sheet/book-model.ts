@@ -404,7 +404,7 @@ class Estimation {
 
   /** What was found about the eigenvalues of a matrix of pairs, and what was done about it. */
   #repaired({ how, changed, smallestBefore, largestChange, converged }: PairRepair): string {
-    const before = `Smallest eigenvalue of the correlations ${smallestBefore.toPrecision(2)}`
+    const before = `Smallest eigenvalue of the correlations ${smallestBefore.toPrecision(2).replaceAll('-', '\u2212')}`
     if (!changed || largestChange === null) return `${before}: nothing to mend`
     const { i, j, before: was, after } = largestChange
     const method =

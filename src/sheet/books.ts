@@ -120,6 +120,7 @@ class OpenBooks implements Books {
   #queue: Promise<void> = Promise.resolve()
   /** actions that are under way or wait for their turn */
   #waitingActions = 0
+  #closed = false
   readonly #due = new Map<LinkedBook, Cause>()
   #timer: ReturnType<typeof setTimeout> | null = null
   #unwatch: (() => Promise<void>) | null = null
@@ -160,6 +161,7 @@ class OpenBooks implements Books {
   }
 
   async close(): Promise<void> {
+    this.#closed = true
     if (this.#timer) clearTimeout(this.#timer)
     this.#listeners.clear()
     const unwatch = this.#unwatch
@@ -271,7 +273,8 @@ class OpenBooks implements Books {
 
   /** Looks over the data once nothing else waits: the figures come first. */
   #inspect(book: LinkedBook | null): void {
-    if (!book?.inspectionDue || this.#waitingActions > 0 || !this.#books.includes(book)) return
+    if (this.#closed || !book?.inspectionDue || this.#waitingActions > 0 || !this.#books.includes(book))
+      return
     void this.#enqueue(book, async (work) => {
       try {
         await book.inspect(work)

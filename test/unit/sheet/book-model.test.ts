@@ -1,5 +1,5 @@
 import { Fault } from '../../../src/core'
-import type { CellValue } from '../../../src/sheet'
+import type { CellValue, Settings } from '../../../src/sheet'
 import { DEFAULT_SETTINGS, matchHoldings, readHoldings, readReturns } from '../../../src/sheet'
 import { blockOf, ENGLISH, modelFor } from './blocks-of-cells'
 
@@ -80,4 +80,148 @@ test('a look-back that leaves no returns says so at its own field, with the date
       where: { argument: 'look-back' },
     }),
   )
+})
+
+// ---- rules for gaps, estimators, factors, benchmark
+
+const wave = (t: number, i: number): number => 0.02 * Math.sin(1 + 1.7 * t + 2.3 * i * i + 0.1 * t * i)
+const DAY = 46000
+/** A dated block of waves under the names; `gap` says where there is none. */
+const dated = (names: string[], rows: number, gap: (t: number, i: number) => boolean = () => false) =>
+  returnsOf([
+    ['Date', ...names],
+    ...Array.from({ length: rows }, (_, t) => [
+      DAY + 7 * t,
+      ...names.map((_, i) => (gap(t, i) ? '' : wave(t, i))),
+    ]),
+  ])
+const bookOf = (returns: ReturnType<typeof dated>, change: Partial<Settings>, names = ['A', 'B', 'C']) => {
+  const holdings = held(...names)
+  return modelFor(
+    { match: matchHoldings(holdings, returns, []), holdings, returns },
+    { ...DEFAULT_SETTINGS, ...change },
+  )
+}
+const line = (book: { quality: readonly (readonly [string, string])[] }, label: string) =>
+  book.quality.find(([name]) => name === label)?.[1]
+
+test('each rule for gaps uses the dates it says, and only common dates leave some out', async () => {
+  // C begins after 20 of 60 dates
+  const returns = dated(['A', 'B', 'C'], 60, (t, i) => i === 2 && t < 20)
+  const common = await bookOf(returns, {})
+  expect(common.window).toMatchObject({ used: 40, dropped: 20 })
+  expect(told(common, 'warns')[0]).toMatch(/^20 of 60 dates left out, where a holding has no return; “C”/)
+  for (const gaps of ['own overlap', 'completed'] as const) {
+    const other = await bookOf(returns, { gaps })
+    expect(other.window).toMatchObject({ used: 60, dropped: 0 })
+    expect(told(other, 'warns')).toEqual([])
+    // series without gaps keep every date they have
+    const alone = await bookOf(returns, {}, ['A', 'B'])
+    const divisor = gaps === 'completed' ? 59 / 60 : 1
+    expect(other.model.variances()[0]! / (alone.model.variances()[0]! * divisor)).toBeCloseTo(1, 10)
+    expect(other.precision).toMatch(/has no error bands here/)
+    // histories stay those of the dates all share
+    expect(other.history?.dates).toBe(40)
+  }
+})
+
+test('without gaps a rule for them changes nothing', async () => {
+  const returns = dated(['A', 'B', 'C'], 30)
+  const [common, overlap] = await Promise.all([
+    bookOf(returns, {}),
+    bookOf(returns, { gaps: 'own overlap', estimator: { kind: 'lagged', lags: 2 } }),
+  ])
+  expect(overlap.window).toEqual(common.window)
+})
+
+test('a rule for gaps that the estimator has no part in is refused', async () => {
+  const returns = dated(['A', 'B', 'C'], 30, (t, i) => i === 1 && t < 5)
+  await expect(
+    bookOf(returns, { gaps: 'completed', estimator: { kind: 'exponential', decay: 0.97 } }),
+  ).rejects.toMatchObject({ code: 'unknown-choice', where: { argument: 'estimator' } })
+})
+
+test('a pair without dates in common is named', async () => {
+  const returns = dated(['A', 'B', 'C'], 30, (t, i) => (i === 1 && t < 15) || (i === 2 && t >= 15))
+  await expect(bookOf(returns, { gaps: 'own overlap' })).rejects.toMatchObject({ code: 'missing-data' })
+})
+
+test('correlations that do not hold together are mended, told and printed', async () => {
+  const x = [0.01, -0.02, 0.03, -0.01]
+  const returns = returnsOf([
+    ['A', 'B', 'C'],
+    ...x.map((r) => [r, r, '']),
+    ...x.map((r) => ['', r, r]),
+    ...x.map((r) => [r, '', -r]),
+  ])
+  for (const repair of ['nearest', 'shrunk'] as const) {
+    const book = await bookOf(returns, { gaps: 'own overlap', repair })
+    expect(told(book, 'warns')[0]).toMatch(
+      /^Correlations from each pair’s own overlap do not hold together and were .*; the largest change is from /,
+    )
+    expect(line(book, 'Eigenvalue check')).toMatch(/^Smallest eigenvalue of the correlations −\d\.\d+; /)
+    expect(line(book, 'Shortest overlap')).toMatch(/^4 dates: “A” and “B”$/)
+    // what is left of the variance of any mix is not below 0
+    for (const w of [
+      [1, -1, 1],
+      [1, 1, -1],
+      [-1, 1, 1],
+    ])
+      // prettier-ignore
+      expect(book.model.apply(Float64Array.from(w)).variance).toBeGreaterThanOrEqual(0)
+  }
+})
+
+test('shrinkage prints its intensity, and warns of volatilities that lie far apart', async () => {
+  const rows = Array.from({ length: 40 }, (_, t) => [wave(t, 0), 10 * wave(t, 1), wave(t, 2)])
+  const returns = returnsOf([['A', 'B', 'C'], ...rows])
+  const toIdentity = await bookOf(returns, { estimator: { kind: 'shrinkage', target: 'identity' } })
+  expect(Number(line(toIdentity, 'Shrinkage intensity'))).toBeGreaterThan(0)
+  expect(told(toIdentity, 'warns')[0]).toMatch(/^The volatilities of the holdings differ \d+\.\d-fold/)
+  const toCorrelation = await bookOf(returns, { estimator: { kind: 'shrinkage', target: 'correlation' } })
+  expect(told(toCorrelation, 'warns')).toEqual([])
+  expect(toCorrelation.precision).toMatchObject({
+    lags: 0,
+    note: expect.stringContaining('before shrinkage'),
+  })
+})
+
+test('factor returns are matched by date, whatever their order, and dates without them are left out', async () => {
+  const returns = dated(['A', 'B', 'C'], 40)
+  const factor = (t: number): number => wave(t, 0) + wave(t, 1)
+  const rows = Array.from({ length: 30 }, (_, t) => [DAY + 7 * (39 - t), factor(39 - t)])
+  const factors = returnsOf([['Date', 'Market'], ...rows])
+  const holdings = held('A', 'B', 'C')
+  const book = await modelFor(
+    { match: matchHoldings(holdings, returns, []), holdings, returns, factors },
+    { ...DEFAULT_SETTINGS, estimator: { kind: 'factors' } },
+  )
+  expect(book.window).toMatchObject({ used: 30, dropped: 10, first: DAY + 70 })
+  expect(told(book, 'warns')[0]).toBe('10 of 40 dates left out, 10 for want of factor returns.')
+  expect(book.factors?.names).toEqual(['Market'])
+  // parts by factor and by holding are the whole
+  const weights = Float64Array.of(0.5, 0.3, 0.2)
+  const { systematic, specific, volatility } = book.factors!.model.split(weights)
+  const sum = (values: Float64Array) => values.reduce((total, value) => total + value, 0)
+  expect(sum(systematic) + sum(specific)).toBeCloseTo(volatility, 12)
+})
+
+test('a factor model without factor returns says where to select them', async () => {
+  await expect(bookOf(dated(['A', 'B', 'C'], 30), { estimator: { kind: 'factors' } })).rejects.toMatchObject({
+    code: 'missing',
+    where: { argument: 'factors' },
+  })
+})
+
+test('a benchmark series is a position of its own, on the dates it shares', async () => {
+  const returns = dated(['A', 'B', 'C', 'Index'], 40, (t, i) => i === 3 && t < 4)
+  const book = await bookOf(returns, { benchmark: { kind: 'series', name: 'index' } })
+  expect(book.benchmark?.name).toBe('Index')
+  expect(book.benchmark?.model.size).toBe(4)
+  expect(book.window).toMatchObject({ used: 40 })
+  expect(told(book, 'warns')[0]).toMatch(/^Risk against the benchmark rests on 36 of 40 dates/)
+  await expect(bookOf(returns, { benchmark: { kind: 'series', name: 'Gold' } })).rejects.toMatchObject({
+    code: 'unmatched',
+    where: { argument: 'benchmark' },
+  })
 })

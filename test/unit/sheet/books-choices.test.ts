@@ -1,0 +1,290 @@
+/**
+ * What a user can ask of a book beyond its figures: estimators, the look over the data, studies, the benchmark. Over a workbook of
+ * plain arrays; figures are compared with each other.
+ */
+import type { Books, BooksState, CellValue } from '../../../src/sheet'
+import { openBooks } from '../../../src/sheet'
+import { plainWorkbook } from './plain-workbook'
+
+const NAMES = ['Meadow', 'Orchard', 'Mill', 'Index']
+const WEEKS = 120
+const FIRST = 45000
+/** Returns of no common period; the mill begins in the 41st week. */
+const value = (t: number, i: number): number =>
+  Number((0.02 * Math.sin(1 + 1.7 * t + 2.3 * i * i + 0.1 * t * i) + 0.01 * Math.sin(t * t)).toFixed(6))
+const RETURNS: CellValue[][] = [
+  ['Week', ...NAMES],
+  ...Array.from({ length: WEEKS }, (_, t) => [
+    FIRST + 7 * t,
+    ...NAMES.map((_, i) => (i === 2 && t < 40 ? '' : value(t, i))),
+  ]),
+]
+const HOLDINGS: CellValue[][] = [
+  ['Holding', 'Class', 'Region', 'Weight', 'Benchmark weight'],
+  ['Meadow', 'Land', 'North', 0.5, 0.6],
+  ['Orchard', 'Land', 'South', 0.3, 0.4],
+  ['Mill', 'Works', 'North', 0.2, ''],
+]
+const FACTORS: CellValue[][] = [
+  ['Week', 'Common'],
+  ...Array.from({ length: WEEKS }, (_, t) => [FIRST + 7 * t, value(t, 0) + value(t, 1)]),
+]
+
+const running: Books[] = []
+afterEach(async () => {
+  for (const books of running.splice(0)) await books.close()
+})
+
+async function desk() {
+  const workbook = plainWorkbook({
+    Book: HOLDINGS.map((row) => [...row]),
+    Returns: RETURNS.map((row) => [...row]),
+    Factors: FACTORS.map((row) => [...row]),
+    Given: [
+      ['Return', 'Value at risk'],
+      [-0.03, 0.02],
+      [0.01, 0.02],
+      [-0.01, 0.02],
+      ['', 0.02],
+    ],
+  })
+  const books = await openBooks(workbook.port)
+  running.push(books)
+  const take = async (field: 'holdings' | 'returns' | 'factors', address: string): Promise<void> => {
+    workbook.select(address)
+    await books.takeSelection(field)
+  }
+  await take('holdings', 'Book!A1:E4')
+  await take('returns', `Returns!A1:E${WEEKS + 1}`)
+  await books.compute()
+  /** Until edits have settled and what they set off is done. */
+  const quiet = async () => {
+    do await new Promise((resolve) => setTimeout(resolve, 150))
+    while (books.state().working)
+    return books.state()
+  }
+  const volatility = (): number => books.state().breakdown?.decomposition.volatility ?? NaN
+  return { ...workbook, books, take, quiet, volatility }
+}
+
+describe('The look over the data', () => {
+  test('tells the short history with the volatility each correction gives, and taking one gives just that', async () => {
+    const { books, quiet, volatility } = await desk()
+    const { checks } = await quiet()
+    const line = checks?.find(({ check }) => check.kind === 'short history')
+    expect(line?.check.sentence).toMatch(/Returns!D2:D41.*“Mill”/)
+    expect(line?.corrections.length).toBeGreaterThan(1)
+    const before = volatility()
+    for (const correction of line?.corrections ?? []) {
+      expect(correction.volatility).not.toBeCloseTo(before, 6)
+      await books.choose(correction.change ?? {})
+      expect(books.state().status).toEqual({ kind: 'up to date' })
+      expect(volatility()).toBeCloseTo(Number(correction.volatility), 12)
+      await books.choose({ gaps: 'common dates', estimator: { kind: 'sample' } })
+    }
+    expect(volatility()).toBe(before)
+  })
+
+  test('follows a weight and an edit of the returns', async () => {
+    const { quiet, type } = await desk()
+    const correction = ({ checks }: Pick<BooksState, 'checks'>) =>
+      checks?.find(({ check }) => check.kind === 'short history')?.corrections[0]?.volatility
+    const before = correction(await quiet())
+    type('Book!D2', 0.9)
+    const after = correction(await quiet())
+    expect(after).not.toBe(before)
+    type('Returns!B60', 0.9)
+    const { checks } = await quiet()
+    expect(checks?.some(({ check }) => check.kind === 'outlier' && /Returns!B60/.test(check.sentence))).toBe(
+      true,
+    )
+  })
+
+  test('is there before anything is computed, and gone while a block cannot be read', async () => {
+    const workbook = plainWorkbook({
+      Book: HOLDINGS.map((row) => [...row]),
+      Returns: RETURNS.map((row) => [...row]),
+    })
+    const books = await openBooks(workbook.port)
+    running.push(books)
+    workbook.select('Book!A1:E4')
+    await books.takeSelection('holdings')
+    expect(books.state().checks).toBeNull()
+    workbook.select(`Returns!A1:E${WEEKS + 1}`)
+    await books.takeSelection('returns')
+    await new Promise((resolve) => setTimeout(resolve, 100))
+    expect(books.state().breakdown).toBeNull()
+    expect(books.state().checks?.length).toBeGreaterThan(0)
+  })
+
+  test('is written to a sheet of its own, and the next list takes the place of the first', async () => {
+    const { books, quiet, valueAt, type } = await desk()
+    await quiet()
+    await books.writeChecks()
+    expect(books.state().notice).toMatch(/^Data checks written to 'Data checks'!A1:H\d+\./)
+    expect(valueAt("'Data checks'!A5")).toBe('Weight')
+    type('Returns!B60', 0.9)
+    await quiet()
+    await books.writeChecks()
+    expect(books.state().notice).toMatch(/^Data checks written to 'Data checks'!A1:H\d+\./)
+    expect(books.state().faults.table).toBeUndefined()
+  })
+})
+
+describe('Choices', () => {
+  test('every estimator gives figures of its own that add up, and is saved', async () => {
+    const { books, volatility, settings } = await desk()
+    const seen = new Set([volatility()])
+    for (const estimator of [
+      { kind: 'exponential', decay: 0.9 },
+      { kind: 'shrinkage', target: 'identity' },
+      { kind: 'shrinkage', target: 'correlation' },
+      { kind: 'shrinkage', target: 'oas' },
+      { kind: 'lagged', lags: 3 },
+    ] as const) {
+      await books.choose({ estimator })
+      const { status, breakdown, faults } = books.state()
+      expect([estimator, faults]).toEqual([estimator, {}])
+      expect(status).toEqual({ kind: 'up to date' })
+      expect(breakdown?.decomposition.sumOfContributions).toBeCloseTo(volatility(), 12)
+      expect(typeof breakdown?.bands).toBe('object')
+      expect(settings.get('book.1')).toMatchObject({ settings: { estimator } })
+      seen.add(volatility())
+    }
+    expect(seen.size).toBe(6)
+  })
+
+  test('a factor model wants its block first, then splits the volatility among factors and holdings', async () => {
+    const { books, take, names, volatility } = await desk()
+    await books.choose({ estimator: { kind: 'factors' } })
+    expect(books.state().faults.factors ?? books.state().faults.estimator).toMatch(/factor returns/)
+    await take('factors', `Factors!A1:B${WEEKS + 1}`)
+    await books.compute()
+    const { breakdown, status } = books.state()
+    expect(status).toEqual({ kind: 'up to date' })
+    expect(names.get('1_factors')?.sheet).toBe('Factors')
+    const { systematic, specific } = breakdown!.factors!
+    const sum = (values: Float64Array) => values.reduce((total, part) => total + part, 0)
+    expect(sum(systematic) + sum(specific)).toBeCloseTo(volatility(), 12)
+    await books.dropFactors()
+    expect(books.state().settings.estimator).toEqual({ kind: 'sample' })
+    expect(names.has('1_factors')).toBe(false)
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+  })
+
+  test('an edit of the factor returns is followed', async () => {
+    const { books, take, type, quiet, volatility } = await desk()
+    await take('factors', `Factors!A1:B${WEEKS + 1}`)
+    await books.compute()
+    await books.choose({ estimator: { kind: 'factors' } })
+    const before = volatility()
+    type('Factors!B90', 0.5)
+    expect((await quiet()).status).toEqual({ kind: 'up to date' })
+    expect(volatility()).not.toBe(before)
+  })
+
+  test('the benchmark is the column, a series or none, and the book less itself has no active risk', async () => {
+    const { books, type, quiet } = await desk()
+    const { active } = books.state().breakdown!
+    expect(active?.label).toBe('Column “Benchmark weight” of the holdings')
+    await books.choose({ benchmark: { kind: 'series', name: 'Index' } })
+    expect(books.state().breakdown?.active?.names.at(-1)).toBe('Index')
+    await books.choose({ benchmark: { kind: 'none' } })
+    expect(books.state().breakdown?.active).toBeNull()
+    await books.choose({ benchmark: { kind: 'column' } })
+    type('Book!D2', 0.6)
+    type('Book!D3', 0.4)
+    type('Book!D4', 0)
+    const own = (await quiet()).breakdown?.active
+    expect(own?.risk.trackingError).toBe(0)
+    expect(own?.risk.share).toBeNull()
+    expect(own?.sharesWithheld).toMatch(/^Shares are not defined: the book is its benchmark/)
+  })
+
+  test('a benchmark series that is not there says so at its own field', async () => {
+    const { books } = await desk()
+    await books.choose({ benchmark: { kind: 'series', name: 'Gold' } })
+    expect(books.state().faults.benchmark).toMatch(/found no series “Gold”/i)
+  })
+
+  test('nested groups add up to their parents and to the whole', async () => {
+    const { books, volatility } = await desk()
+    await books.choose({ nesting: ['Region', 'Class'] })
+    const { nested } = books.state().breakdown!
+    expect(nested.map(({ label }) => label)).toEqual(['North', 'South'])
+    for (const group of nested)
+      expect(group.children.reduce((sum, { contribution }) => sum + contribution, 0)).toBeCloseTo(
+        group.contribution,
+        14,
+      )
+    expect(nested.reduce((sum, { contribution }) => sum + contribution, 0)).toBeCloseTo(volatility(), 14)
+    expect(nested[0]?.children.map(({ positions }) => positions)).toEqual([[0], [2]])
+  })
+
+  test('a tail method that does not go with the horizon says why, and the figures stand', async () => {
+    const { books, volatility } = await desk()
+    const before = volatility()
+    await books.choose({ tails: { method: { kind: 'historical' }, confidence: 0.95, periods: 4 } })
+    expect(books.state().breakdown?.tails).toMatch(/needed/)
+    expect(volatility()).toBe(before)
+    await books.choose({ tails: { method: { kind: 'normal' }, confidence: 0.95, periods: 4 } })
+    expect(books.state().breakdown?.tails).toMatchObject({ label: '95% confidence, 4 weeks' })
+  })
+})
+
+describe('Studies', () => {
+  const bootstrap = { replicates: 200, seed: 5, blockLength: 1 }
+
+  test('a bootstrap agrees with the bands, stands beside the figures, and goes with them', async () => {
+    const { books, type, quiet } = await desk()
+    await books.bootstrap(bootstrap)
+    const { studies, breakdown } = books.state()
+    const bands = breakdown!.bands
+    if (typeof bands === 'string') throw new Error(bands)
+    const ratio = studies.bootstrap!.result.volatility.deviation / bands.volatility
+    // 200 replicates leave 5% of a standard deviation, 80 dates a bias of their own: 25% is far beyond both
+    expect(Math.abs(ratio - 1)).toBeLessThan(0.25)
+    expect(studies.bootstrap?.method).toMatch(/seed 5$/)
+    await books.choose({ tails: { method: { kind: 'normal' }, confidence: 0.99, periods: 1 } })
+    expect(books.state().studies.bootstrap).toBe(studies.bootstrap)
+    type('Book!D2', 0.7)
+    expect((await quiet()).studies.bootstrap).toBeNull()
+  })
+
+  test('a back-test goes through the past at today’s weights, with a sentence for each test', async () => {
+    const { books } = await desk()
+    await books.backtest({ window: 40, confidence: 0.95, method: 'normal' }, 'this book')
+    const { studies, faults } = books.state()
+    expect(faults.study).toBeUndefined()
+    const study = studies.backtest!
+    expect(study.result.returns).toHaveLength(40)
+    expect(study.dates?.at(-1)).toBe(FIRST + 7 * (WEEKS - 1))
+    expect(study.lines.map(([label]) => label)).toEqual([
+      'Exceptions',
+      'Number of exceptions (Kupiec)',
+      'Independence (Christoffersen)',
+      'Both together',
+      'Zone (Basel Committee, MAR32)',
+      'Bias statistic',
+    ])
+  })
+
+  test('forecasts made elsewhere are tested from a selection; a date without a return counts as an exception', async () => {
+    const { books, select } = await desk()
+    select('Given!A1:B5')
+    await books.backtest({ window: null, confidence: 0.95, method: 'normal' }, 'selection')
+    const { faults, studies } = books.state()
+    expect(faults.study).toBeUndefined()
+    expect([...studies.backtest!.result.exceptions]).toEqual([1, 0, 0, 1])
+    select('Book!A1:E4')
+    await books.backtest({ window: null, confidence: 0.95, method: 'normal' }, 'selection')
+    expect(books.state().faults.study).toBeDefined()
+  })
+
+  test('a window longer than the history is told at its own field and leaves the figures alone', async () => {
+    const { books } = await desk()
+    await books.backtest({ window: 500, confidence: 0.95, method: 'normal' }, 'this book')
+    expect(books.state().faults.study).toMatch(/found 80 dates for a window of 500/i)
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+  })
+})
