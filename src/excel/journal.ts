@@ -1,7 +1,9 @@
-import type { Area, CellValue, Json } from '../sheet'
+import { overlap, type Area, type CellValue, type Json } from '../sheet'
+import { putLinkBack, targetOf, type LinkedCell, type Target } from './links'
 import { putBack, type Look } from './looks'
+import { FOLD_PREFIX, refold, type Folding } from './outline'
 import { rangeOf } from './reading'
-import { REQUEST_BYTES, type Request } from './requests'
+import { REQUEST_BYTES, type Request, type Requests } from './requests'
 
 /** Settings of ours begin so; the journal of a write under way is one of them. */
 export const SETTING_PREFIX = 'counterpoise.'
@@ -22,6 +24,8 @@ export interface Ground {
 export interface Survey extends Pick<Ground, 'area' | 'typed'> {
   readonly formats: readonly (readonly string[])[]
   readonly values: readonly (readonly CellValue[])[]
+  /** the cells of the area, counted from its corner, that have a link behind them */
+  readonly links: readonly { readonly row: number; readonly column: number; readonly target: Target }[]
 }
 
 /** All that a write is about to change, as it stands before. */
@@ -30,6 +34,9 @@ export interface Journal {
   readonly created: { readonly sheet: string; readonly filled: readonly Area[] } | null
   readonly grounds: readonly Ground[]
   readonly looks: readonly Look[]
+  readonly links: readonly LinkedCell[]
+  /** null where the write groups no rows and ungroups none */
+  readonly folding: Folding | null
   readonly widths: readonly { readonly area: Area; readonly points: number }[]
   /** full names and what they refer to; null where there was no such name */
   readonly names: { readonly [name: string]: string | null }
@@ -140,14 +147,16 @@ function mendSteps({ area, typed, formats }: Mending): Step[] {
 export async function surveyGrounds({ context, sync }: Request, areas: readonly Area[]): Promise<Survey[]> {
   const grounds: Survey[] = []
   for (const area of areas) {
-    // values, formulas, kinds and formats: four answers a cell
-    const step = Math.max(1, Math.floor(REQUEST_BYTES / (80 * area.columns)))
+    // values, formulas, kinds, formats and links: five answers a cell
+    const step = Math.max(1, Math.floor(REQUEST_BYTES / (100 * area.columns)))
     const typed: CellValue[][] = []
     const formats: string[][] = []
     const values: CellValue[][] = []
+    const links: { row: number; column: number; target: Target }[] = []
     for (let from = 0; from < area.rows; from += step) {
       const range = rangeOf(context, rowsOf(area, from, Math.min(step, area.rows - from)))
       range.load('values,formulas,valueTypes,numberFormat')
+      const properties = range.getCellProperties({ hyperlink: true })
       await sync()
       ;(range.formulas as CellValue[][]).forEach((row, r) => {
         values.push(range.values[r] as CellValue[])
@@ -159,15 +168,21 @@ export async function surveyGrounds({ context, sync }: Request, areas: readonly 
           ),
         )
       })
+      properties.value.forEach((row, r) =>
+        row.forEach(({ hyperlink }, column) => {
+          const target = targetOf(hyperlink)
+          if (target) links.push({ row: from + r, column, target })
+        }),
+      )
       range.untrack()
     }
-    grounds.push({ area, typed, formats, values })
+    grounds.push({ area, typed, formats, values, links })
   }
   return grounds
 }
 
 /**
- * Puts back what a journal holds: the cells that differ from it, looks, widths, names and settings; a sheet the write made goes again,
+ * Puts back what a journal holds: the cells that differ from it, links, looks, groups, widths, names and settings; a sheet the write made goes again,
  * unless something else has come to stand on it. May be done twice. The journal is saved anew at the head of the work and goes with its end,
  * so that this can be interrupted as well.
  *
@@ -175,6 +190,7 @@ export async function surveyGrounds({ context, sync }: Request, areas: readonly 
  */
 export async function restore(
   request: Request,
+  requests: Requests,
   journal: Journal,
   expectEcho: (area: Area) => void,
   careful: boolean,
@@ -183,7 +199,7 @@ export async function restore(
   const { names, settings, worksheets } = context.workbook
   const nameItems = Object.keys(journal.names).map((name) => ({
     name,
-    item: names.getItemOrNullObject(name).load('name'),
+    item: names.getItemOrNullObject(name).load('formula'),
   }))
   const settingItems = Object.keys(journal.settings).map((key) => ({
     key,
@@ -199,12 +215,39 @@ export async function restore(
     request,
     grounds.map(({ area }) => area),
   )
-  const changed = grounds.flatMap((ground, k) => difference(ground, now[k], careful))
+  // setting a link may change what stands in its cell
+  const links = journal.links.filter(({ area }) =>
+    grounds.some((ground, k) => {
+      const at = overlap(ground.area, area)
+      return (
+        at && !userCame(ground, now[k], at.row - ground.area.row, at.column - ground.area.column, careful)
+      )
+    }),
+  )
+  const changed = grounds.flatMap((ground, k) => difference(ground, now[k], careful, links))
   const { created } = journal
   const discard = created !== null && there.has(created.sheet) && (await holdsOnly(request, created))
 
+  // the names that remember groups are changed before the groups, so groups are as they were while those names are
+  const { folding } = journal
+  const refolded =
+    folding !== null &&
+    nameItems.some(
+      ({ name, item }) =>
+        name.startsWith(FOLD_PREFIX) && (item.isNullObject ? null : item.formula) !== journal.names[name],
+    )
+  if (refolded) {
+    const stand = (areas: readonly Area[]) => areas.filter(({ sheet }) => there.has(sheet))
+    await refold(requests, { before: stand(folding.before), after: stand(folding.after) })
+  }
+
   const steps: Step[] = [
     { bytes: JSON.stringify(journal).length, run: () => settings.add(JOURNAL_KEY, journal) },
+    ...links.map((cell) => ({
+      bytes: 600,
+      touches: cell.area,
+      run: (context: Excel.RequestContext) => putLinkBack(context, cell),
+    })),
     ...changed.flatMap(mendSteps),
     ...journal.looks
       .filter(({ area }) => there.has(area.sheet))
@@ -226,30 +269,51 @@ export async function restore(
   await perform(request, steps, expectEcho)
 }
 
+/** Whether a cell holds neither its old entry nor the write's although time has passed: a user came in between, and it stays. */
+function userCame(
+  { typed, after }: Ground,
+  now: Survey | undefined,
+  r: number,
+  c: number,
+  careful: boolean,
+): boolean {
+  const found = now?.typed[r]?.[c]
+  return careful && found !== typed[r]?.[c] && found !== (after ? after[r]?.[c] : '')
+}
+
 /**
  * The cells of a ground that no longer hold what they held, in the rows from the first such to the last.
- * @param careful leaves alone what is neither the old entry nor the write's: a user came in between
+ * @param careful leaves alone what is neither the old entry nor the write's
+ * @param links   cells to be put back in any case
  */
-function difference(ground: Ground, now: Survey | undefined, careful: boolean): Mending[] {
-  const { typed, formats, after, area } = ground
-  const stays = (entry: CellValue, r: number, c: number) => {
-    const found = now?.typed[r]?.[c]
-    return careful && found !== entry && found !== (after ? after[r]?.[c] : '')
-  }
-  const alters = typed.map((row, r) =>
-    row.some(
-      (entry, c) =>
-        !stays(entry, r, c) &&
-        (entry !== now?.typed[r]?.[c] || (formats !== null && formats[r]?.[c] !== now.formats[r]?.[c])),
-    ),
+function difference(
+  ground: Ground,
+  now: Survey | undefined,
+  careful: boolean,
+  links: readonly LinkedCell[],
+): Mending[] {
+  const { typed, formats, area } = ground
+  const linked = new Set(
+    links.flatMap((cell) => {
+      const at = overlap(area, cell.area)
+      return at ? [at.row - area.row] : []
+    }),
+  )
+  const stays = (r: number, c: number) => userCame(ground, now, r, c, careful)
+  const alters = typed.map(
+    (row, r) =>
+      linked.has(r) ||
+      row.some(
+        (entry, c) =>
+          !stays(r, c) &&
+          (entry !== now?.typed[r]?.[c] || (formats !== null && formats[r]?.[c] !== now.formats[r]?.[c])),
+      ),
   )
   const from = alters.indexOf(true)
   if (from < 0) return []
   const to = alters.lastIndexOf(true) + 1
   const mended = <T>(cells: readonly (readonly T[])[]) =>
-    cells
-      .slice(from, to)
-      .map((row, k) => row.map((cell, c) => (stays(typed[from + k]?.[c] ?? '', from + k, c) ? null : cell)))
+    cells.slice(from, to).map((row, k) => row.map((cell, c) => (stays(from + k, c) ? null : cell)))
   return [{ area: rowsOf(area, from, to - from), typed: mended(typed), formats: formats && mended(formats) }]
 }
 
@@ -277,7 +341,14 @@ async function holdsOnly(
 /** The steps that make a name refer to something, or to be gone. */
 export function nameSteps(name: string, refersTo: string | null, exists: boolean): Step[] {
   if (!exists) {
-    return refersTo === null ? [] : [step(({ workbook }) => void workbook.names.add(name, refersTo))]
+    if (refersTo === null) return []
+    return [
+      step(({ workbook }) => {
+        const item = workbook.names.add(name, refersTo)
+        // the user's list of names is for those that say something to a user
+        if (name.startsWith(FOLD_PREFIX)) item.visible = false
+      }),
+    ]
   }
   return [
     step(({ workbook }) => {

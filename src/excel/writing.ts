@@ -34,7 +34,28 @@ import {
   type Survey,
   typedText,
 } from './journal'
+import {
+  askLinkedCells,
+  askPlainFont,
+  link,
+  linksOf,
+  relink,
+  unlink,
+  type Font,
+  type LinkedCell,
+} from './links'
 import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
+import {
+  askNeighbours,
+  fold,
+  FOLD_PREFIX,
+  foldsOf,
+  meet,
+  rememberedFolds,
+  unfold,
+  type Fold,
+  type Folding,
+} from './outline'
 import { NAME_PREFIX, rangeOf } from './reading'
 import { faultOf, offers, PROTECTED_NEEDS, REQUEST_BYTES, type Request, type Requests } from './requests'
 
@@ -50,6 +71,12 @@ interface Fill {
   readonly patch: Patch
   readonly target: Area
   readonly leftovers: readonly Area[]
+}
+
+/** What a write does about groups of rows. */
+interface Refolding extends Folding {
+  /** the names that remember them, by what they refer to before and after; null where there is none */
+  readonly names: readonly { readonly name: string; readonly was: string | null; readonly is: Area | null }[]
 }
 
 export function openWriter(requests: Requests, expectEcho: (area: Area) => void): Writer {
@@ -72,19 +99,26 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     journal: Journal,
     steps: readonly Step[],
   ): Promise<void> {
+    const { folding } = journal
     const head: Step = {
       bytes: JSON.stringify(journal).length,
       run: ({ workbook }) => void workbook.settings.add(JOURNAL_KEY, journal),
     }
     const tail = step(({ workbook }) => workbook.settings.getItem(JOURNAL_KEY).delete())
     try {
-      await perform(request, [head, ...steps, tail], expectEcho)
+      if (folding && folding.before.length > 0) {
+        await perform(request, [head, ...steps], expectEcho)
+        await unfold(requests, folding.before)
+        await perform(request, [...foldSteps(folding), tail], expectEcho)
+      } else {
+        await perform(request, [head, ...steps, ...(folding ? foldSteps(folding) : []), tail], expectEcho)
+      }
     } catch (error) {
       const fault = faultOf(error, place)
       unsettled = true
       try {
         // a failed batch may leave its context unusable, so this is a batch of its own
-        await requests.run(place, (fresh) => restore(fresh, journal, expectEcho, false))
+        await requests.run(place, (fresh) => restore(fresh, requests, journal, expectEcho, false))
       } catch (second) {
         throw withCause(
           new Fault(
@@ -118,6 +152,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         after: afterOf(patch.table),
       })),
       looks: [],
+      links: [],
+      folding: null,
       widths: [],
       names: {},
       settings: Object.fromEntries(Object.keys(remember).map((key) => [key, known.get(key) ?? null])),
@@ -160,6 +196,10 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     const settingItems = Object.keys(remember).map(
       (key) => [key, settings.getItemOrNullObject(key).load('value')] as const,
     )
+    names.load('items/name,items/formula')
+    const plainFont = fills.some(({ patch, target }) => linksOf(patch.table, target).length > 0)
+      ? askPlainFont(context)
+      : null
     await sync()
 
     const there = (sheet: string) => sheets.get(sheet)?.isNullObject === false
@@ -187,6 +227,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     }
     const areas = onOld.flatMap((fill) => fill.areas)
     const surveyed = await surveyGrounds(request, areas)
+    const refolding = askRefolding(context, fills, there, rememberedFolds(names.items))
     const spilled = await refuseObstacles(request, onOld, surveyed)
     const grounds = surveyed.map(({ area, typed, formats }): Ground => ({
       area,
@@ -194,7 +235,17 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       after: afterAt(area),
       typed: typed.map((row, r) => row.map((entry, c) => (spilled(area, r, c) ? '' : entry))),
     }))
+    const links = fills.flatMap(({ patch, target }) =>
+      linksOf(patch.table, target).map((wanted) => ({ ...wanted, ours: patch.ours })),
+    )
+    const asked = askLinkedCells(
+      context,
+      surveyed,
+      links.flatMap(({ area }) => (there(area.sheet) ? [area] : [])),
+    )
     const looks = await surveyLooks(request, areas)
+    const linkedCells = asked()
+    const folding = refolding()
 
     const columns = fills.flatMap(({ patch, target }) =>
       patch.table.widths.map((characters, c) => {
@@ -218,10 +269,13 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
             },
       grounds,
       looks,
+      links: linkedCells,
+      folding: folding && { before: folding.before, after: folding.after },
       widths: wider.flatMap(({ area, format }) => (format ? [{ area, points: format.columnWidth }] : [])),
-      names: Object.fromEntries(
-        nameItems.map(([name, item]) => [name, item.isNullObject ? null : String(item.formula)]),
-      ),
+      names: Object.fromEntries([
+        ...nameItems.map(([name, item]) => [name, item.isNullObject ? null : String(item.formula)] as const),
+        ...(folding?.names ?? []).map(({ name, was }) => [name, was] as const),
+      ]),
       settings: Object.fromEntries(
         settingItems.map(([key, item]) => [key, item.isNullObject ? null : (item.value as Json)]),
       ),
@@ -233,6 +287,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         ...leftovers
           .filter(({ sheet }) => there(sheet))
           .flatMap((area) => clearSteps(area, patch.ours ?? area)),
+        ...linkSteps(linkedCells, patch, target, leftovers, plainFont),
         ...valueSteps(patch.table, target, 'all'),
         step((queue) => undress(queue, target)),
         ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look))),
@@ -244,6 +299,9 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         const area = keep[name] ?? null
         return nameSteps(name, area && absoluteReference(area), !item.isNullObject)
       }),
+      ...(folding?.names ?? []).flatMap(({ name, was, is }) =>
+        nameSteps(name, is && absoluteReference(is), was !== null),
+      ),
       ...settingItems.flatMap(([key, item]) => settingSteps(key, remember[key] ?? null, !item.isNullObject)),
     ]
     await commit(request, place, journal, steps)
@@ -258,7 +316,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       // anyone may have edited it: what cannot be read as a journal is one that cannot be put back
       const journal = item.value as Journal
       areas = [...journal.grounds.map(({ area }) => area), ...(journal.created?.filled ?? [])]
-      await restore(request, journal, expectEcho, true)
+      await restore(request, requests, journal, expectEcho, true)
     } catch {
       unsettled = true
       return { outcome: 'failed', areas }
@@ -407,6 +465,101 @@ const clearSteps = (area: Area, ours: Area): Step[] => [
     unrule(context, area, ours)
   }, area),
 ]
+
+const foldSteps = ({ after }: Folding): Step[] =>
+  after.map((area) => step((context) => fold(context, [area])))
+
+/** The steps that set the links of a table and take away those that stood where it goes. They come before its values. */
+function linkSteps(
+  cells: readonly LinkedCell[],
+  { table, ours }: Patch,
+  target: Area,
+  leftovers: readonly Area[],
+  plainFont: (() => Font) | null,
+): Step[] {
+  const known = new Map(cells.map((cell) => [addressOf(cell.area), cell]))
+  const links = linksOf(table, target)
+  const linked = new Set(links.map(({ area }) => addressOf(area)))
+  const gone = cells.filter(
+    ({ area, target: led }) =>
+      led !== null &&
+      !linked.has(addressOf(area)) &&
+      [target, ...leftovers].some((place) => overlap(place, area) !== null),
+  )
+  return [
+    ...gone.map((cell) => ({ bytes: 600, run: (queue: Excel.RequestContext) => unlink(queue, cell, ours) })),
+    ...links.map(({ area, to }) => ({
+      bytes: 600,
+      touches: area,
+      run(queue: Excel.RequestContext) {
+        const cell = known.get(addressOf(area))
+        if (cell) relink(queue, cell, to, ours)
+        // on a sheet of its own nothing stood there: the cell looks as nobody has formatted it
+        else if (plainFont) link(queue, area, to, plainFont())
+      },
+    })),
+  ]
+}
+
+/**
+ * Asks what is to be done about groups of rows: those remembered under a table go, and its own come where nothing but the table stands in
+ * the rows that fold. The answer is there after the next sync; null when groups stay as they are.
+ */
+function askRefolding(
+  context: Excel.RequestContext,
+  fills: readonly Fill[],
+  there: (sheet: string) => boolean,
+  remembered: readonly Fold[],
+): () => Refolding | null {
+  const touched = fills.flatMap(({ target, leftovers }) => [target, ...leftovers])
+  const old = remembered.filter(
+    ({ area }) =>
+      area === null || (there(area.sheet) && touched.some((place) => overlap(place, area) !== null)),
+  )
+  const wanted = fills.flatMap(({ patch: { table, ours }, target }) => {
+    const folds = foldsOf(table, target)
+    if (folds.length === 0) return []
+    const others = fills.some(
+      (fill) => fill.target !== target && folds.some((area) => meet(area, fill.target)),
+    )
+    if (others) return []
+    return [
+      { folds, crowded: there(target.sheet) ? askNeighbours(context, folds, spanOf(target, ours)) : null },
+    ]
+  })
+  return () => {
+    const after = wanted.flatMap(({ folds, crowded }) => (crowded?.() ? [] : folds))
+    const before = old.flatMap(({ area }) => area ?? []).sort((a, b) => b.rows - a.rows)
+    const listed = (areas: readonly Area[]) => areas.map(addressOf).sort().join()
+    if (old.length === before.length && listed(before) === listed(after)) return null
+    const kept = new Set(remembered.filter((known) => !old.includes(known)).map(({ name }) => name))
+    const fresh: string[] = []
+    for (let k = 1; fresh.length < after.length; k++)
+      if (!kept.has(FOLD_PREFIX + k)) fresh.push(FOLD_PREFIX + k)
+    const is = new Map(after.map((area, k) => [fresh[k] ?? '', area]))
+    const was = new Map(old.map(({ name, refersTo }) => [name, refersTo]))
+    return {
+      before,
+      after,
+      names: [...new Set([...was.keys(), ...is.keys()])].map((name) => ({
+        name,
+        was: was.get(name) ?? null,
+        is: is.get(name) ?? null,
+      })),
+    }
+  }
+}
+
+/** The columns a table takes, with those it took before: they are its own as well. */
+function spanOf(target: Area, ours: Area | undefined): Area {
+  if (!ours || !overlap(target, ours)) return target
+  const column = Math.min(target.column, ours.column)
+  return {
+    ...target,
+    column,
+    columns: Math.max(target.column + target.columns, ours.column + ours.columns) - column,
+  }
+}
 
 /**
  * Refuses to write over what must stay: foreign cells where the user has not agreed, merged cells, results that a formula elsewhere spills.

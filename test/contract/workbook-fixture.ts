@@ -2,7 +2,7 @@
 import { CellValueType } from '@univerjs/core'
 import { WrapStrategy } from '@univerjs/core'
 import { headlessGrid } from '../../src/desk/grid'
-import { createOffice, userOf, type OfficeOptions } from '../../src/desk/office'
+import { createOffice, levelOf, linkOf, userOf, type OfficeOptions } from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
 import type { Table, TableCell, Workbook } from '../../src/sheet'
 
@@ -26,19 +26,19 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
   const user = userOf(grid)
   const settle = () => office.settled()
 
-  /** Everything the workbook holds, cell by cell with its look, names and settings: nothing in it that an undone write may change. */
+  /** Everything the workbook holds, cell by cell with its look and link, groups of rows, names and settings: nothing in it that an undone write may change. */
   function portrait() {
     const workbook = grid.api.getActiveWorkbook()
     const sheets = workbook?.getSheets().map((sheet) => {
       const cells: Record<string, unknown> = {}
+      const rules: Record<string, unknown> = {}
       const inner = sheet.getSheet()
       inner.getCellMatrix().forValue((row, column, cell) => {
-        const { n, bl, it, ht, tb } = inner.getComposedCellStyle(row, column)
-        // neighbours share a rule, whichever of them the grid keeps it with
-        const below = row + 1 < inner.getRowCount() ? inner.getComposedCellStyle(row + 1, column).bd?.t : null
-        const above = row > 0 ? inner.getComposedCellStyle(row - 1, column).bd?.b : null
-        const own = inner.getComposedCellStyle(row, column).bd
-        const bd = { t: own?.t ?? above, b: own?.b ?? below }
+        const { n, bl, it, ht, tb, ul, cl, ff, fs } = inner.getComposedCellStyle(row, column)
+        // neighbours share a rule, whichever of them the grid keeps it with: it is told as the one under the upper row
+        const { t: over, b: under } = inner.getComposedCellStyle(row, column).bd ?? {}
+        if (over) rules[`R${row}C${column + 1}`] = over
+        if (under) rules[`R${row + 1}C${column + 1}`] = under
         const kept = bare({
           v: cell?.v,
           t: cell?.t,
@@ -47,13 +47,20 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
           bl: bl || null,
           it: it || null,
           ht: ht || null,
-          bd,
           wrapped: tb === WrapStrategy.WRAP || null,
+          link: linkOf(cell),
+          // what a cell looks like without a style of its own says nothing
+          underlined: ul?.s || null,
+          colour: cl?.rgb === '#000000' ? null : cl?.rgb,
+          font: ff === 'Calibri' ? null : ff,
+          size: fs === 11 ? null : fs,
         })
         if (kept) cells[`R${row + 1}C${column + 1}`] = kept
       })
       const widths = Array.from({ length: 12 }, (_, column) => sheet.getColumnWidth(column))
-      return { name: sheet.getSheetName(), cells, widths }
+      const { rowData } = inner.getConfig()
+      const levels = Array.from({ length: 30 }, (_, row) => levelOf(rowData[row]))
+      return { name: sheet.getSheetName(), cells, rules, widths, levels }
     })
     const names = workbook
       ?.getDefinedNames()
@@ -134,6 +141,17 @@ export const breakdown = (shares: readonly number[] = [0.7, -0.1, 0.4]): Table =
     ]),
     [text('Total', 'total'), number(1, '0.0%', 'total')],
   ])
+
+/** A table that folds, `levels` rows below one another, each with a label that leads to a cell of Sheet1. */
+export const folding = (...levels: readonly number[]): Table => ({
+  ...tableOf(
+    levels.map((level, k) => [
+      { ...text(`=Group ${level}`), link: { sheet: 'Sheet1', row: k, column: 7, rows: 1, columns: 1 } },
+      number(1 / (k + 1)),
+    ]),
+  ),
+  levels,
+})
 
 /** The values a table shows. */
 export const valuesOf = (table: Table) => table.cells.map((row) => row.map(({ value }) => value))

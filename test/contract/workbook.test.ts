@@ -7,6 +7,7 @@ import {
   blank,
   breakdown,
   closeAll,
+  folding,
   number,
   open,
   refusal,
@@ -372,8 +373,8 @@ describe('A later write', () => {
       ['', ''],
       ['mine too', ''],
     ])
-    const left = portrait().sheets?.[0]?.cells ?? {}
-    expect(Object.keys(left).filter((cell) => /^R[678]/.test(cell))).toEqual([])
+    const { cells: left = {}, rules = {} } = portrait().sheets?.[0] ?? {}
+    expect(Object.keys({ ...left, ...rules }).filter((cell) => /^R[678]/.test(cell))).toEqual([])
   })
 
   test('of new values alone is one request, also with settings that are known', async () => {
@@ -421,6 +422,233 @@ describe('A later write', () => {
     const [a, b] = await book.look([{ at: { kept: 'a' } }, { at: { kept: 'b' } }])
     expect(a?.area).toEqual(area('C1:D9'))
     expect(b).toBeNull()
+  })
+})
+
+describe('Links and groups', () => {
+  type Opened = ReturnType<typeof open>
+  const levels = ({ portrait }: Opened, name = 'Sheet1') =>
+    portrait()
+      .sheets?.find((sheet) => sheet.name === name)
+      ?.levels.slice(0, 8)
+  const links = ({ office }: Opened, address: string, sheet = 'Sheet1') =>
+    office.Excel.run(async (context) => {
+      const range = context.workbook.worksheets.getItem(sheet).getRange(address)
+      const properties = range.getCellProperties({ hyperlink: true })
+      await context.sync()
+      return properties.value.map((row) => row.map(({ hyperlink }) => hyperlink?.documentReference ?? null))
+    })
+  const fontOf = ({ office }: Opened, address: string, sheet = 'Sheet1') =>
+    office.Excel.run(async (context) => {
+      const { font } = context.workbook.worksheets.getItem(sheet).getRange(address).format
+      font.load('name,size,color,underline')
+      await context.sync()
+      const { name, size, color, underline } = font
+      return { name, size, color, underline }
+    })
+  const names = ({ office }: Opened) =>
+    office.Excel.run(async (context) => {
+      const { names: all } = context.workbook
+      all.load('items/name,items/formula,items/visible')
+      await context.sync()
+      return all.items.map(({ name, formula, visible }) => [name, formula, visible])
+    })
+  const plain = { name: 'Calibri', size: 11, color: '#000000', underline: 'None' }
+
+  test('a linked label stays the text it is, in the cell’s own font, underlined', async () => {
+    const opened = open()
+    const { book, office, cells } = opened
+    await office.Excel.run(async (context) => {
+      const { font } = context.workbook.worksheets.getItem('Sheet1').getRange('B2').format
+      Object.assign(font, { name: 'Arial', size: 20, color: '#FF0000' })
+      await context.sync()
+    })
+    const table = folding(0, 0)
+    await book.write({
+      sheet: 'Risk',
+      patches: [
+        { at, table, over: 'blank' },
+        { at: { ...at, sheet: 'Risk' }, table, over: 'blank' },
+      ],
+    })
+    for (const sheet of ['Sheet1', 'Risk']) {
+      expect(await links(opened, 'B2:C3', sheet)).toEqual([
+        ['Sheet1!H1', null],
+        ['Sheet1!H2', null],
+      ])
+      const { formulas, valueTypes } = await cells(sheet, 'B2:C3')
+      expect(formulas).toEqual(valuesOf(table))
+      expect(valueTypes?.[0]?.[0]).toBe('String')
+      expect(await fontOf(opened, 'B3', sheet)).toEqual({ ...plain, underline: 'Single' })
+    }
+    expect(await fontOf(opened, 'B2')).toEqual({
+      name: 'Arial',
+      size: 20,
+      color: '#FF0000',
+      underline: 'Single',
+    })
+  })
+
+  test('links go with the table that had them, and with their underline', async () => {
+    const opened = open()
+    const { book } = opened
+    await book.write({ patches: [{ at, table: folding(0, 0, 0), over: 'blank' }] })
+    const table = tableOf([[text('no link'), number(1)]])
+    await book.write({ patches: [{ at, table, over: 'blank', ours: area('B2:C4') }] })
+    expect(await links(opened, 'B2:C4')).toEqual([
+      [null, null],
+      [null, null],
+      [null, null],
+    ])
+    expect(await fontOf(opened, 'B2:C4')).toEqual(plain)
+  })
+
+  test('a link of the user’s goes where the user lets a table replace it', async () => {
+    const opened = open()
+    const { book, office, cells } = opened
+    await office.Excel.run(async (context) => {
+      const range = context.workbook.worksheets.getItem('Sheet1').getRange('B2')
+      range.hyperlink = { address: 'https://example.org', textToDisplay: 'mine' }
+      await context.sync()
+    })
+    await book.write({ patches: [{ at, table: tableOf([[text('ours')]]), over: 'replace' }] })
+    expect((await cells('Sheet1', 'B2')).values).toEqual([['ours']])
+    expect(await links(opened, 'B2')).toEqual([[null]])
+    expect(await fontOf(opened, 'B2')).toEqual(plain)
+  })
+
+  test('rows fold under those before them, remembered in names that do not show', async () => {
+    const opened = open()
+    await opened.book.write({ patches: [{ at, table: folding(0, 1, 2, 2, 1, 0), over: 'blank' }] })
+    expect(levels(opened)).toEqual([0, 0, 1, 2, 2, 1, 0, 0])
+    expect(await names(opened)).toEqual([
+      ['Poise_fold_1', '=Sheet1!$B$3:$C$6', false],
+      ['Poise_fold_2', '=Sheet1!$B$4:$C$5', false],
+    ])
+  })
+
+  test('groups follow the table: inserted rows, another shape, none at all', async () => {
+    const opened = open()
+    const { book, user } = opened
+    const write = (table: Parameters<typeof valuesOf>[0], ours: string, row = 1) =>
+      book.write({ patches: [{ at: { ...at, row }, table, over: 'blank', ours: area(ours) }] })
+    await write(folding(0, 1, 2, 0), 'B2:C5')
+    user.insertRows('Sheet1', 1, 2)
+    expect(levels(opened)).toEqual([0, 0, 0, 0, 1, 2, 0, 0])
+    await write(folding(0, 1, 0, 1), 'B4:C7', 3)
+    expect(levels(opened)).toEqual([0, 0, 0, 0, 1, 0, 1, 0])
+    await write(tableOf([[text('flat'), number(1)]]), 'B4:C7', 3)
+    expect(levels(opened)).toEqual([0, 0, 0, 0, 0, 0, 0, 0])
+    expect(await names(opened)).toEqual([])
+  })
+
+  test('groups that stay as they are are left alone, folded or not', async () => {
+    const opened = open()
+    const { book, user, office } = opened
+    await book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank' }] })
+    user.hideRows('Sheet1', 3, 2)
+    await book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank', ours: area('B2:C4') }] })
+    const hidden = (address: string) =>
+      office.Excel.run(async (context) => {
+        const range = context.workbook.worksheets.getItem('Sheet1').getRange(address).load('rowHidden')
+        await context.sync()
+        return range.rowHidden
+      })
+    expect([await hidden('3:4'), levels(opened)]).toEqual([true, [0, 0, 1, 1, 0, 0, 0, 0]])
+    await book.write({ patches: [{ at, table: folding(0, 0, 1), over: 'blank', ours: area('B2:C4') }] })
+    expect([await hidden('3:4'), levels(opened)]).toEqual([false, [0, 0, 0, 1, 0, 0, 0, 0]])
+  })
+
+  test('nothing folds where cells that are not the table’s stand in its rows', async () => {
+    const opened = open()
+    const { book, user } = opened
+    user.type('Sheet1', 'A3', 'mine')
+    await book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank' }] })
+    expect(levels(opened)).toEqual([0, 0, 0, 0, 0, 0, 0, 0])
+    user.type('Sheet1', 'A3', '')
+    user.type('Sheet1', 'A2', 'beside a row that does not fold')
+    await book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank', ours: area('B2:C4') }] })
+    expect(levels(opened)).toEqual([0, 0, 1, 1, 0, 0, 0, 0])
+    user.type('Sheet1', 'Z4', 'mine')
+    await book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank', ours: area('B2:C4') }] })
+    expect(levels(opened)).toEqual([0, 0, 0, 0, 0, 0, 0, 0])
+  })
+
+  test('two tables written side by side do not fold each other away', async () => {
+    const opened = open()
+    await opened.book.write({
+      sheet: 'Risk',
+      patches: [
+        { at: { ...at, sheet: 'Risk' }, table: folding(0, 1, 1), over: 'blank' },
+        { at: { sheet: 'Risk', row: 2, column: 5 }, table: tableOf([[text('x')]]), over: 'blank' },
+      ],
+    })
+    expect(levels(opened, 'Risk')).toEqual([0, 0, 0, 0, 0, 0, 0, 0])
+  })
+
+  test('groups that the user took away by hand, all or some, are no obstacle', async () => {
+    for (const [rows, act] of [
+      ['3:6', 'ungroup'],
+      ['4:4', 'ungroup'],
+    ] as const) {
+      const opened = open()
+      const { book, office } = opened
+      await book.write({ patches: [{ at, table: folding(0, 1, 2, 0, 1), over: 'blank' }] })
+      await office.Excel.run(async (context) => {
+        const range = context.workbook.worksheets.getItem('Sheet1').getRange(rows)
+        range[act]('ByRows')
+        range[act]('ByRows')
+        await context.sync()
+      }).catch(() => undefined)
+      await book.write({ patches: [{ at, table: folding(0, 0, 1), over: 'blank', ours: area('B2:C6') }] })
+      expect(levels(opened)).toEqual([0, 0, 0, 1, 0, 0, 0, 0])
+    }
+  })
+
+  test('a host that will not group leaves everything as it was, and says so', async () => {
+    const opened = open()
+    const { book, office, portrait } = opened
+    await office.Excel.run(async (context) => {
+      const rows = context.workbook.worksheets.getItem('Sheet1').getRange('3:4')
+      for (let level = 0; level < 7; level++) rows.group('ByRows' as Excel.GroupOption)
+      await context.sync()
+    })
+    const before = portrait()
+    const fault = await refusal(book.write({ patches: [{ at, table: folding(0, 1, 1), over: 'blank' }] }))
+    expect(fault).toMatchObject({ code: 'host', message: expect.stringContaining('nothing was changed') })
+    expect({ ...portrait(), sheets: null }).toEqual({ ...before, sheets: null })
+  })
+
+  test('without links and groups a write takes no request more, with the same ones none either', async () => {
+    const requests = async (table: Parameters<typeof valuesOf>[0]) => {
+      const { book, office } = open()
+      office.counts.reset()
+      await book.write({ patches: [{ at, table, over: 'blank' }] })
+      const first = office.counts.syncs
+      await book.write({ patches: [{ at, table, over: 'blank', ours: area('B2:C4') }] })
+      return [first, office.counts.syncs - first]
+    }
+    const { levels: _, cells, ...rest } = folding(0, 1, 1)
+    const flat = { ...rest, cells: cells.map((row) => row.map(({ link: __, ...cell }) => cell)) }
+    expect(await requests(folding(0, 1, 1))).toEqual(await requests(flat))
+  })
+
+  test('a refresh of values is one request and leaves links and groups alone', async () => {
+    const opened = open()
+    const { book, office, cells } = opened
+    const table = folding(0, 1, 1)
+    await book.write({ patches: [{ at, table, over: 'blank' }] })
+    const seen = valuesOf(table)
+    office.counts.reset()
+    const fresh = {
+      ...table,
+      cells: table.cells.map((row) => row.map((cell, c) => (c === 1 ? number(0.5) : cell))),
+    }
+    await book.write({ patches: [{ at, table: fresh, over: 'blank', ours: area('B2:C4'), seen }] })
+    expect(office.counts.syncs).toBe(1)
+    expect((await cells('Sheet1', 'B2:C4')).values).toEqual(valuesOf(fresh))
+    expect(await links(opened, 'B2:B4')).toEqual([['Sheet1!H1'], ['Sheet1!H2'], ['Sheet1!H3']])
+    expect(levels(opened)).toEqual([0, 0, 1, 1, 0, 0, 0, 0])
   })
 })
 
