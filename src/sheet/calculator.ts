@@ -9,6 +9,7 @@ import {
   mardia,
   matrixModel,
   pairwiseCovariance,
+  partOf,
   repairCovariance,
   returnsModel,
   shrinkageOf,
@@ -80,15 +81,15 @@ const JOBS = {
     let matrix: Float64Array | null = null
     let pairs: SetUp['pairs'] = null
     if (rule === 'own overlap') {
-      const { matrix: raw, smallestOverlap } = yield* part(pairwiseCovariance(returns, dates, size), 0, 0.1)
-      const { matrix: mended, ...repair } = yield* part(repairCovariance(raw, size, input.repair), 0.1, 0.6)
+      const { matrix: raw, smallestOverlap } = yield* partOf(pairwiseCovariance(returns, dates, size), 0, 0.1)
+      const { matrix: mended, ...repair } = yield* partOf(repairCovariance(raw, size, input.repair), 0.1, 0.6)
       matrix = mended
       pairs = { overlap: smallestOverlap, repair }
     } else if (rule === 'completed') {
-      matrix = (yield* part(completedMoments(returns, dates, size), 0, 0.6)).matrix
+      matrix = (yield* partOf(completedMoments(returns, dates, size), 0, 0.6)).matrix
       pairs = { overlap: null, repair: null }
     } else if (estimator?.kind === 'shrinkage')
-      shrinkage = yield* part(
+      shrinkage = yield* partOf(
         shrinkageOf(returnsModel(returns, dates, size, { kind: 'population' }), estimator.target),
         0,
         0.5,
@@ -99,13 +100,13 @@ const JOBS = {
       matrix !== null
         ? matrixModel(matrix, size)
         : estimator && estimateModel(returns, dates, size, estimator, shrinkage ?? undefined)
-    const condition = model && (yield* part(conditionOf(model), 0.6, 0.8))
+    const condition = model && (yield* partOf(conditionOf(model), 0.6, 0.8))
     return {
       shrinkage,
       matrix,
       pairs,
       condition,
-      normality: yield* part(normalityOf(input.common ?? returns, size), 0.8, 1),
+      normality: yield* partOf(normalityOf(input.common ?? returns, size), 0.8, 1),
     }
   },
 
@@ -159,16 +160,7 @@ function* normalityOf(returns: Float64Array, size: number): Generator<number, Se
   const isLarge = dates * size * (dates + size) > MOST_PRODUCTS
   return {
     series,
-    block: isLarge ? null : yield* part(mardia(returnsModel(returns, dates, size)), 0.5, 1),
-  }
-}
-
-/** A generator's progress as a part of a longer one's. */
-function* part<T>(steps: Generator<number, T>, from: number, to: number): Generator<number, T> {
-  for (;;) {
-    const step = steps.next()
-    if (step.done) return step.value
-    yield from + (to - from) * step.value
+    block: isLarge ? null : yield* partOf(mardia(returnsModel(returns, dates, size)), 0.5, 1),
   }
 }
 

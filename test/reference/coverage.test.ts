@@ -4,6 +4,7 @@ import { readJson } from './data'
 
 /** Examples that no test compares with, and why. */
 const LEFT_OUT: Readonly<Record<string, string>> = {
+  'enb-two-assets': 'effective numbers of uncorrelated bets, another figure than that of positions here',
   'ewma-half-life': 'a logarithm, shown by the pane and not a function of its own',
   'hull-ewma-5.2': 'updates around a mean of zero, which no estimator here does',
   'ucits-var-limits': 'limits are not set by this program',
