@@ -3,13 +3,15 @@ import type { Estimator, FactorModel, ReturnsModel, RiskModel } from '../core'
 import type { Calculator, SetUp, Work } from './calculator'
 import type { Area } from './cells'
 import { addressOf } from './cells'
+import type { CurrencyModel } from './currency'
+import { currencyModel, currencySeries, inBaseCurrency } from './currency'
 import type { Finding } from './findings'
 import type { HoldingsReading } from './holdings'
 import type { Match } from './matching'
 import { plainName } from './names'
 import type { ReturnsReading } from './returns'
 import type { GapRule, Settings } from './settings'
-import { countOf, dateText, numberText, quote } from './wording'
+import { countOf, dateText, listOf, numberText, quote } from './wording'
 
 /** The dates a model rests on. */
 export interface Window {
@@ -48,6 +50,8 @@ export interface BookModel {
   readonly precision: Precision | string
   /** where the benchmark is one series: a model of its own, with that series as the last position */
   readonly benchmark: { readonly model: RiskModel; readonly name: string } | null
+  /** with the series of the currencies as further positions, or why there is none; null where risk is not split by currency */
+  readonly currency: CurrencyModel | string | null
   readonly factors: { readonly model: FactorModel; readonly names: readonly string[] } | null
   readonly window: Window | null
   /** what the model rests on, as label and value */
@@ -96,13 +100,19 @@ export async function modelOf(
 }
 
 function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelChoices): BookModel {
-  const size = match.seriesOf.length
-  const matrix = new Float64Array(size * size)
-  for (let i = 0; i < size; i++)
-    for (let j = 0; j < size; j++) {
-      const [a, b] = [match.seriesOf[i] ?? -1, match.seriesOf[j] ?? -1]
-      if (a >= 0 && b >= 0) matrix[i * size + j] = returns.values[a * returns.columns + b] ?? NaN
-    }
+  inBaseCurrency(returns, match.seriesOf, match.currencies)
+  const modelOfSeries = (series: readonly number[]): RiskModel => {
+    const size = series.length
+    const matrix = new Float64Array(size * size)
+    series.forEach((a, i) =>
+      series.forEach((b, j) => {
+        if (a >= 0 && b >= 0) matrix[i * size + j] = returns.values[a * returns.columns + b] ?? NaN
+      }),
+    )
+    return matrixModel(matrix, size)
+  }
+  const { currencies } = match
+  const foreign = currencies && currencySeries(currencies)
   const findings: Finding[] = []
   if (estimator.kind !== 'sample')
     findings.push({
@@ -117,11 +127,17 @@ function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelC
       area: null,
     })
   return {
-    model: matrixModel(matrix, size),
+    model: modelOfSeries([...match.seriesOf]),
     history: null,
     data: null,
     precision: 'A covariance matrix does not tell how many dates it rests on.',
     benchmark: null,
+    currency:
+      currencies &&
+      foreign &&
+      (foreign.length === 0
+        ? nothingForeign(currencies.base)
+        : currencyModel(modelOfSeries([...match.seriesOf, ...foreign]), currencies, foreign)),
     factors: null,
     window: null,
     quality: [],
@@ -147,7 +163,8 @@ class Estimation {
   readonly #risky: readonly number[]
 
   constructor(blocks: Blocks, choices: ModelChoices, calculator: Calculator, work: Work) {
-    this.#blocks = blocks
+    const { match, returns } = blocks
+    this.#blocks = { ...blocks, returns: inBaseCurrency(returns, match.seriesOf, match.currencies) }
     this.#choices = choices
     this.#calculator = calculator
     this.#work = work
@@ -162,6 +179,7 @@ class Estimation {
     const used = rule === 'common dates' ? common : all
     const history = common.rows.length < 2 ? null : returnsModel(common.values, common.rows.length, size)
     this.#lookForStillSeries(used, size)
+    this.#lookForCurrencyGaps(all.rows)
 
     const { estimator } = this.#choices
     const made = await this.#calculator.run(
@@ -193,6 +211,7 @@ class Estimation {
         serials: returns.dates && common.rows.map((t) => returns.dates?.[t] ?? NaN),
       },
       benchmark: this.#benchmark(used),
+      currency: extent === 'whole' ? this.#currency(used, rule) : null,
       window: {
         used: used.rows.length,
         dropped: all.rows.length - used.rows.length,
@@ -319,6 +338,23 @@ class Estimation {
       })
   }
 
+  /** Dates that foreign holdings lose for want of their currency's return: the rule for gaps knows them by the holdings alone. */
+  #lookForCurrencyGaps(rows: readonly number[]): void {
+    const { match, returns } = this.#blocks
+    const { currencies } = match
+    if (currencies?.returnsIn !== 'local') return
+    for (const series of currencySeries(currencies)) {
+      const gaps = rows.filter((t) => Number.isNaN(returns.values[t * returns.columns + series])).length
+      const label = currencies.labels[currencies.seriesOf.indexOf(series)] ?? ''
+      if (gaps > 0)
+        this.#findings.push({
+          weight: 'warns',
+          sentence: `${quote(label)} has no return on ${gaps} of ${countOf(rows.length, 'date')}: holdings in ${label} have none in ${currencies.base} there.`,
+          area: returns.seriesCell(series),
+        })
+    }
+  }
+
   // ---- the three kinds of model
 
   #fromEstimator(
@@ -384,7 +420,12 @@ class Estimation {
     }
   }
 
-  #fromPairs(matrix: Float64Array, size: number, rule: GapRule, { pairs, condition }: SetUp): Estimate {
+  #fromPairs(
+    matrix: Float64Array,
+    size: number,
+    rule: GapRule,
+    { pairs, completed, condition }: SetUp,
+  ): Estimate {
     const quality: [string, string][] = []
     if (pairs?.overlap) {
       const { i, j, dates } = pairs.overlap
@@ -394,6 +435,11 @@ class Estimation {
       ])
     }
     if (pairs?.repair) quality.push(['Eigenvalue check', this.#repaired(pairs.repair)])
+    for (const { columns, dates, longer } of completed?.slice(1) ?? [])
+      quality.push([
+        'Completed',
+        `${listOf(Array.from(columns, (i) => this.#nameOf(i)))}: ${countOf(dates, 'date')}, the others by regression on ${countOf(longer, 'longer series', 'longer series')} (Stambaugh 1997)`,
+      ])
     return {
       model: matrixModel(matrix, size),
       factors: null,
@@ -521,6 +567,33 @@ class Estimation {
       })
     return { model: estimateModel(values, complete.length, size, known), name: returns.names?.[column] ?? '' }
   }
+
+  /**
+   * The series of the currencies as further positions, on the same dates: there their parts add up to the figures. What more positions would
+   * change the estimate of the others, or of dates without a currency's return, is no such model.
+   */
+  #currency({ values, rows }: Returns, rule: GapRule): BookModel['currency'] {
+    const { match, returns } = this.#blocks
+    const { estimator } = this.#choices
+    const { currencies } = match
+    if (!currencies) return null
+    const foreign = currencySeries(currencies)
+    if (foreign.length === 0) return nothingForeign(currencies.base)
+    if (estimator.kind === 'shrinkage' || estimator.kind === 'factors' || rule !== 'common dates')
+      return `The split by currency goes with the sample covariance, exponential weighting and lagged terms, on the dates common to all holdings. ${rule !== 'common dates' ? `Under the rule for gaps “${GAP_WORDS[rule]}”` : estimator.kind === 'factors' ? 'In a factor model' : 'With shrinkage'} the parts would not add up to the figures shown.`
+    const of = (t: number, series: number): number => returns.values[t * returns.columns + series] ?? NaN
+    const gappy = foreign.find((series) => rows.some((t) => Number.isNaN(of(t, series))))
+    if (gappy !== undefined)
+      return `The split by currency needs a return of every currency on every date used: ${quote(returns.names?.[gappy] ?? '')} has none on ${rows.filter((t) => Number.isNaN(of(t, gappy))).length} of ${countOf(rows.length, 'date')}.`
+    const held = match.seriesOf.length
+    const size = held + foreign.length
+    const block = new Float64Array(rows.length * size)
+    rows.forEach((t, k) => {
+      block.set(values.subarray(k * held, (k + 1) * held), k * size)
+      foreign.forEach((series, f) => (block[k * size + held + f] = of(t, series)))
+    })
+    return currencyModel(estimateModel(block, rows.length, size, estimator), currencies, foreign)
+  }
 }
 
 type Estimate = Pick<BookModel, 'model' | 'factors' | 'precision' | 'quality'>
@@ -539,6 +612,9 @@ export const GAP_WORDS: { readonly [R in GapRule]: string } = {
   'own overlap': 'each pair’s own overlap',
   completed: 'completed from the longer histories',
 }
+
+const nothingForeign = (base: string): string =>
+  `Every holding stands in ${base}, the base currency: there is nothing to split.`
 
 const conditionLine = (condition: SetUp['condition']): readonly (readonly [string, string])[] =>
   condition?.condition === null || condition === null

@@ -23,6 +23,7 @@ import type {
   Condition,
   CovarianceRepair,
   Estimator,
+  HistoryGroup,
   SeriesNormality,
   Shrinkage,
   Weighting,
@@ -65,6 +66,8 @@ export interface SetUp {
     readonly overlap: { readonly i: number; readonly j: number; readonly dates: number } | null
     readonly repair: Omit<CovarianceRepair, 'matrix'> | null
   } | null
+  /** series that start together, and how many longer ones each was completed from; null under another rule */
+  readonly completed: readonly HistoryGroup[] | null
   readonly condition: Condition | null
   /** of each series and of all together (null where that would take long), on the dates common to all; null where there are too few */
   readonly normality: {
@@ -80,21 +83,23 @@ const JOBS = {
     let shrinkage: Shrinkage | null = null
     let matrix: Float64Array | null = null
     let pairs: SetUp['pairs'] = null
+    let completed: SetUp['completed'] = null
     if (rule === 'own overlap') {
       const { matrix: raw, smallestOverlap } = yield* partOf(pairwiseCovariance(returns, dates, size), 0, 0.1)
       const { matrix: mended, ...repair } = yield* partOf(repairCovariance(raw, size, input.repair), 0.1, 0.6)
       matrix = mended
       pairs = { overlap: smallestOverlap, repair }
     } else if (rule === 'completed') {
-      matrix = (yield* partOf(completedMoments(returns, dates, size), 0, 0.6)).matrix
-      pairs = { overlap: null, repair: null }
+      const moments = yield* partOf(completedMoments(returns, dates, size), 0, 0.6)
+      matrix = moments.matrix
+      completed = moments.groups
     } else if (estimator?.kind === 'shrinkage')
       shrinkage = yield* partOf(
         shrinkageOf(returnsModel(returns, dates, size, { kind: 'population' }), estimator.target),
         0,
         0.5,
       )
-    if (input.bare) return { shrinkage, matrix, pairs, condition: null, normality: null }
+    if (input.bare) return { shrinkage, matrix, pairs, completed, condition: null, normality: null }
     yield 0.6
     const model =
       matrix !== null
@@ -105,6 +110,7 @@ const JOBS = {
       shrinkage,
       matrix,
       pairs,
+      completed,
       condition,
       normality: yield* partOf(normalityOf(input.common ?? returns, size), 0.8, 1),
     }
