@@ -132,7 +132,9 @@ export function Checks({ state }: { state: BooksState }) {
         <p className={quiet}>Nothing found. Nothing is ever changed in your data by itself.</p>
       ) : (
         <>
-          <p className={quiet}>{countsOf(checks)}. Nothing is changed by itself.</p>
+          <p className={quiet}>
+            {countsOf(checks)}. Nothing is changed by itself; Report writes them as a list.
+          </p>
           <ul className={classes.list} aria-label="Found in the data">
             {checks.map((line, k) => (
               <Line

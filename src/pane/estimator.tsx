@@ -31,8 +31,8 @@ const TARGET_HINTS: { readonly [T in keyof typeof TARGETS]: string } = {
 const LAGS = Array.from({ length: 10 }, (_, k) => String(k + 1))
 
 /** Weights halve over this many dates. */
-const halfLifeOf = (decay: number): number => Math.log(0.5) / Math.log(decay)
-const decayOf = (halfLife: number): number => 0.5 ** (1 / halfLife)
+export const halfLifeOf = (decay: number): number => Math.log(0.5) / Math.log(decay)
+export const decayOf = (halfLife: number): number => 0.5 ** (1 / halfLife)
 
 /** As many digits as a reader tells apart; the figure itself keeps all of them. */
 const shortened = (value: number, digits: number): string => String(Number(value.toPrecision(digits)))

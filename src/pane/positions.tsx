@@ -1,6 +1,6 @@
 import { makeStyles, tokens } from '@fluentui/react-components'
 import { numberText, percentText, type Breakdown } from '../sheet'
-import { bandsOf, bandText, digitsFor, sharesOf } from './measure'
+import { bandOf, bandsOf, bandText, digitsFor, sharesOf } from './measure'
 import { useKept } from './store'
 import { FigureTable, Pairs, TieOut, WIDTHS, type Sorting, type TableColumn } from './table'
 
@@ -44,6 +44,7 @@ function Details({ breakdown, position }: { breakdown: Breakdown; position: numb
   const digits = digitsFor(d.weights.length)
   const bands = bandsOf(breakdown)
   const shareError = bands?.share?.[position]
+  const isCertain = share === undefined || shareError === undefined || bandOf(share, shareError)[1] < 0
   return (
     <>
       <Pairs
@@ -70,7 +71,10 @@ function Details({ breakdown, position }: { breakdown: Breakdown; position: numb
       />
       {share !== undefined && (
         <p className={classes.sentence}>
-          {share < 0 && 'Risk-reducing position. '}
+          {share < 0 &&
+            (isCertain
+              ? 'Risk-reducing position. '
+              : 'Risk-reducing position, not for certain: its band holds 0. ')}
           {sensitivity(share)}
         </p>
       )}

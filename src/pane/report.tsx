@@ -1,7 +1,9 @@
 import { useMemo, useState } from 'react'
 import { Button, Field, makeStyles, Radio, RadioGroup, tokens } from '@fluentui/react-components'
-import { addressOf, breakdownTable, countOf, type Breakdown } from '../sheet'
+import { addressOf, breakdownTable, countOf, type BooksState, type Breakdown } from '../sheet'
+import { countsOf } from './checks'
 import { Section } from './controls'
+import { bandsOf } from './measure'
 import { PlaceLink, Sentence } from './place'
 import { useBooks, useBooksState } from './store'
 
@@ -22,29 +24,60 @@ const useStyles = makeStyles({
 type Place = 'where it was' | 'new sheet' | 'selection'
 
 /** What a table of this breakdown holds, in the order it is written. */
-function contents({ names, byGroup, sharesWithheld }: Breakdown): readonly string[] {
+function contents(breakdown: Breakdown, nesting: readonly string[]): readonly string[] {
+  const { names, byGroup, nested, sharesWithheld, tails, active, factors } = breakdown
   const figures = [
     'weight',
     'stand-alone risk',
     'marginal contribution to risk',
     'contribution to risk',
     ...(sharesWithheld === null ? ['share of risk'] : []),
+    ...(bandsOf(breakdown) ? ['95% bands'] : []),
     'beta and correlation with the portfolio',
   ]
   return [
-    'The portfolio’s volatility, expected return and diversification',
     `${countOf(names.length, 'position')}: ${figures.join(', ')}`,
     'Total, sum of parts and their difference',
     ...byGroup.map(({ header, labels }) => `By ${header}: ${countOf(labels.length, 'group')}`),
-    'Settings and the dates of the data',
+    ...(nested.length > 0 ? [`By ${nesting.join(', then ')}, rows that fold`] : []),
+    ...(typeof tails === 'string' ? [] : [`Large losses: ${tails.label}`]),
+    ...(active ? ['Against the benchmark: parts of the tracking error'] : []),
+    ...(factors ? ['Factors, and what is specific to holdings'] : []),
+    'The portfolio’s volatility, expected return and diversification',
+    'Settings, warnings and the dates of the data',
   ]
+}
+
+/** The list of what was found about the data, on a sheet of its own. */
+function ChecksList({ state }: { state: BooksState }) {
+  const books = useBooks()
+  const classes = useStyles()
+  const { checks, working } = state
+  if (!checks) return null
+  return (
+    <Section title="List of data checks">
+      <p className={classes.text}>
+        {checks.length > 0 ? countsOf(checks) : 'Nothing found'}; written to a sheet of its own, with links to
+        the cells.
+      </p>
+      <Button
+        size="small"
+        className={classes.action}
+        disabledFocusable={working !== null}
+        onClick={() => void books.writeChecks()}
+      >
+        Write list
+      </Button>
+    </Section>
+  )
 }
 
 /** What to write where. */
 export function ReportView() {
   const books = useBooks()
   const classes = useStyles()
-  const { breakdown, table, faults, working } = useBooksState()
+  const state = useBooksState()
+  const { breakdown, table, faults, working, settings } = state
   const cells = useMemo(() => (breakdown ? breakdownTable('', breakdown).cells : []), [breakdown])
   const [wanted, setWanted] = useState<Place | null>(null)
   if (!breakdown)
@@ -95,11 +128,12 @@ export function ReportView() {
           {countOf(cells.length, 'row')} and {countOf(cells[0]?.length ?? 0, 'column')}:
         </p>
         <ul className={classes.list}>
-          {contents(breakdown).map((line) => (
+          {contents(breakdown, settings.nesting).map((line) => (
             <li key={line}>{line}</li>
           ))}
         </ul>
       </Section>
+      <ChecksList state={state} />
     </div>
   )
 }

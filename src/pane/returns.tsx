@@ -154,7 +154,7 @@ function ReturnsFields({ state, reading }: { state: BooksState; reading: Returns
 }
 
 /** What was found in reading, without what a data check tells of the same cells with more to it. */
-function untold(findings: readonly Finding[], checks: BooksState['checks']): readonly Finding[] {
+export function untold(findings: readonly Finding[], checks: BooksState['checks']): readonly Finding[] {
   const told = (checks ?? []).flatMap(({ check }) => check.areas)
   const begins = (area: Area, at: Area): boolean =>
     area.sheet === at.sheet && area.row === at.row && area.column === at.column
