@@ -175,11 +175,9 @@ class Estimation {
     const { returns, match } = this.#blocks
     const size = match.seriesOf.length
     const factors = this.#choices.estimator.kind === 'factors' ? this.#factors() : null
-    const { all, common, rule } = this.#dates(factors)
-    const used = rule === 'common dates' ? common : all
-    const history = common.rows.length < 2 ? null : returnsModel(common.values, common.rows.length, size)
+    const { all, used, common, rule } = this.#dates(factors)
     this.#lookForStillSeries(used, size)
-    this.#lookForCurrencyGaps(all.rows)
+    this.#lookForCurrencyGaps(all)
 
     const { estimator } = this.#choices
     const made = await this.#calculator.run(
@@ -200,8 +198,16 @@ class Estimation {
       made.matrix !== null
         ? this.#fromPairs(made.matrix, size, rule, made)
         : factors !== null
-          ? this.#fromFactors(used, size, factors, history)
+          ? this.#fromFactors(used, size, factors)
           : this.#fromEstimator(used, size, estimator as Estimator, made)
+    // means and past returns are those of dates that count alike; a model that has them is not made twice
+    const { precision } = estimate
+    const has = typeof precision !== 'string' && precision.model.weighting.kind !== 'exponential'
+    const history = has
+      ? precision.model
+      : common.rows.length < 2
+        ? null
+        : returnsModel(common.values, common.rows.length, size)
     return {
       ...estimate,
       history,
@@ -214,7 +220,7 @@ class Estimation {
       currency: extent === 'whole' ? this.#currency(used, rule) : null,
       window: {
         used: used.rows.length,
-        dropped: all.rows.length - used.rows.length,
+        dropped: all.length - used.rows.length,
         first: returns.dates?.[used.rows[0] ?? 0] ?? null,
         last: returns.dates?.[used.rows.at(-1) ?? 0] ?? null,
       },
@@ -243,7 +249,12 @@ class Estimation {
   }
 
   /** The dates of the look-back, those common to all holdings, and the rule that holds about the others. */
-  #dates(factors: FactorRows | null): { all: Returns; common: Returns; rule: GapRule } {
+  #dates(factors: FactorRows | null): {
+    all: readonly number[]
+    used: Returns
+    common: Returns
+    rule: GapRule
+  } {
     const { returns, match } = this.#blocks
     const start = lookBackStart(returns, this.#choices.lookBack, this.#findings)
     const inView = returns.rows - start
@@ -282,7 +293,8 @@ class Estimation {
         'choose the sample estimator, or the dates common to all holdings',
         { argument: 'estimator' },
       )
-    if (rule !== 'common dates') return { all: this.#returnsOf(all), common: this.#returnsOf(common), rule }
+    if (rule !== 'common dates')
+      return { all, used: this.#returnsOf(all), common: this.#returnsOf(common), rule }
 
     if (common.length < 2)
       throw new Fault(
@@ -308,7 +320,8 @@ class Estimation {
         sentence: `${countOf(common.length, 'date')} for ${countOf(this.#risky.length, 'holding')}: too few to tell all the correlations apart; some mixes of these holdings look riskless without being so.`,
         area: null,
       })
-    return { all: this.#returnsOf(all), common: this.#returnsOf(common), rule }
+    const used = this.#returnsOf(common)
+    return { all, used, common: used, rule }
   }
 
   /** Series that never change count as riskless, and it is said; nothing at all that moves is a fault. */
@@ -396,12 +409,7 @@ class Estimation {
     }
   }
 
-  #fromFactors(
-    { values, rows }: Returns,
-    size: number,
-    factors: FactorRows,
-    history: ReturnsModel | null,
-  ): Estimate {
+  #fromFactors({ values, rows }: Returns, size: number, factors: FactorRows): Estimate {
     const count = factors.names.length
     const block = new Float64Array(rows.length * count)
     rows.forEach((t, k) => block.set(factors.at(t), k * count))
@@ -409,13 +417,11 @@ class Estimation {
     return {
       model,
       factors: { model, names: factors.names },
-      precision: history
-        ? {
-            model: history,
-            lags: 0,
-            note: 'Error of the sample covariance of the same dates, not of the factor model.',
-          }
-        : 'Too few dates are common to all holdings.',
+      precision: {
+        model: model.returns,
+        lags: 0,
+        note: 'Error of the sample covariance of the same dates, not of the factor model.',
+      },
       quality: [this.#counts(this.#risky.length, rows.length), ['Factors', factors.names.join(', ')]],
     }
   }
