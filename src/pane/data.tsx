@@ -3,6 +3,7 @@ import type { BooksState } from '../sheet'
 import { Benchmark } from './benchmark'
 import { Checks } from './checks'
 import { AskedButton, Entry, Section } from './controls'
+import { Currency } from './currency'
 import { FactorReturns } from './factor-returns'
 import { Holdings } from './holdings'
 import { Returns } from './returns'
@@ -60,6 +61,7 @@ export function DataView() {
       <Checks state={state} />
       <FactorReturns state={state} />
       <Benchmark state={state} />
+      <Currency state={state} />
       <Book state={state} />
     </div>
   )

@@ -25,7 +25,7 @@ type Place = 'where it was' | 'new sheet' | 'selection'
 
 /** What a table of this breakdown holds, in the order it is written. */
 function contents(breakdown: Breakdown, nesting: readonly string[]): readonly string[] {
-  const { names, byGroup, nested, sharesWithheld, tails, active, factors } = breakdown
+  const { names, byGroup, nested, sharesWithheld, tails, active, factors, currency } = breakdown
   const figures = [
     'weight',
     'stand-alone risk',
@@ -42,6 +42,7 @@ function contents(breakdown: Breakdown, nesting: readonly string[]): readonly st
     ...(nested.length > 0 ? [`By ${nesting.join(', then ')}, rows that fold`] : []),
     ...(typeof tails === 'string' ? [] : [`Large losses: ${tails.label}`]),
     ...(active ? ['Against the benchmark: parts of the tracking error'] : []),
+    ...(currency ? [`Local and currency parts, base currency ${currency.base}`] : []),
     ...(factors ? ['Factors, and what is specific to holdings'] : []),
     'The portfolio’s volatility, expected return and diversification',
     'Settings, warnings and the dates of the data',

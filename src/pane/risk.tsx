@@ -1,6 +1,13 @@
 import { lazy, Suspense, useCallback, useState } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { countOf, numberText, percentText, type Breakdown, type BooksState } from '../sheet'
+import {
+  countOf,
+  numberText,
+  percentText,
+  type Breakdown,
+  type BooksState,
+  type CurrencyRisk,
+} from '../sheet'
 import { Folded, Section } from './controls'
 import { Figures } from './figures'
 import { Remark } from './headline'
@@ -13,6 +20,7 @@ const Picture = lazy(() => import('./picture'))
 const Groups = lazy(() => import('./groups'))
 const LargeLosses = lazy(() => import('./large-losses'))
 const AgainstBenchmark = lazy(() => import('./against-benchmark'))
+const Currencies = lazy(() => import('./currencies'))
 const Factors = lazy(() => import('./factors'))
 const HowSure = lazy(() => import('./how-sure'))
 const BackTest = lazy(() => import('./back-test'))
@@ -106,6 +114,12 @@ function backTestHeadline({ backtest }: BooksState['studies']): string {
   return `${countOf(exceptions, 'exception')}, ${numberText(expected, 1)} expected at ${confidenceText(confidence)} confidence`
 }
 
+function currencyHeadline({ parts, base }: CurrencyRisk, { decomposition }: Breakdown): string {
+  if (typeof parts === 'string') return 'Not split'
+  const foreign = parts.currency.reduce((sum, part) => sum + part, 0)
+  return `Currencies against ${base}: ${percentText(foreign, 2)} of the ${percentText(decomposition.volatility, 2)} of volatility`
+}
+
 const VERDICTS: { readonly [V in NonNullable<Breakdown['normality']>['book']['verdict']]: string } = {
   consistent: 'No sign against a normal distribution',
   'heavy-tailed': 'Tails heavier than normal',
@@ -117,7 +131,7 @@ const VERDICTS: { readonly [V in NonNullable<Breakdown['normality']>['book']['ve
 
 function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksState }) {
   const classes = useStyles()
-  const { active, byGroup, normality, horizon } = breakdown
+  const { active, byGroup, currency, normality, horizon } = breakdown
   // both studies share one field of faults: the sentence stands where it was asked for
   const [asked, setAsked] = useKept<'bootstrap' | 'back-test' | null>('study asked', null)
   return (
@@ -141,6 +155,11 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
       {(breakdown.factors ?? state.factors) && (
         <Folded title="Factors" headline={factorsHeadline(breakdown)}>
           <Factors breakdown={breakdown} />
+        </Folded>
+      )}
+      {currency && (
+        <Folded title="Currencies" headline={currencyHeadline(currency, breakdown)}>
+          <Currencies breakdown={breakdown} currency={currency} />
         </Folded>
       )}
       {normality && (
