@@ -13,6 +13,7 @@ export {
   type GivenForecasts,
   type MissingDates,
 } from './backtest'
+export { currencySplit, type CurrencyPart, type CurrencySplit } from './currency'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
 export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
 export {

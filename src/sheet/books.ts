@@ -296,6 +296,8 @@ class OpenBooks implements Books {
     }
     if (error.code === 'cancelled') {
       this.#notice = 'Cancelled; nothing was changed.'
+      // figures that a cancelled study stands beside are as good as they were
+      if (field === 'study') return
       if (book.status.kind === 'up to date' || (book.linked && book.status.kind === 'nothing linked'))
         book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
       return
@@ -424,7 +426,9 @@ class OpenBooks implements Books {
                 ? 'periods per year'
                 : 'capital' in change
                   ? 'capital'
-                  : 'returns'
+                  : 'currency' in change
+                    ? 'currency'
+                    : 'returns'
     return this.#command(field, (book, work) => book.choose(change, work))
   }
 
@@ -545,6 +549,7 @@ function fieldOf(fault: Fault): Field | null {
     case 'capital':
     case 'factors':
     case 'benchmark':
+    case 'currency':
     case 'study':
     case 'table':
       return fault.where.argument

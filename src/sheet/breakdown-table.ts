@@ -2,6 +2,8 @@ import { BAND, type Bands } from './bands'
 import type { Active } from './benchmark'
 import type { Breakdown, FactorSplit } from './breakdown'
 import { CAUTION } from './breakdown'
+import type { CurrencyRisk } from './currency'
+import { CURRENCY_READING } from './currency'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableCell } from './table'
 import type { Tails } from './tail-section'
@@ -123,7 +125,16 @@ class Rows {
  * @cost    O(positions + groups)
  */
 export function breakdownTable(title: string, breakdown: Breakdown): Table {
-  const { decomposition: d, groupHeaders, settings, findings, sharesWithheld, tails, active } = breakdown
+  const {
+    decomposition: d,
+    groupHeaders,
+    settings,
+    findings,
+    sharesWithheld,
+    tails,
+    active,
+    currency,
+  } = breakdown
   const bands = typeof breakdown.bands === 'string' ? null : breakdown.bands
   const columns = HEADS.map(([column]) => column).filter(
     (column) => bands !== null || !(column.endsWith(' low') || column.endsWith(' high')),
@@ -135,7 +146,9 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   rows.add([text(`Contributions to risk: ${title}`, 'title')])
   const band = bands ? ` (95% band ${bandText(d.volatility, bands.volatility, 2)})` : ''
   rows.add([
-    text(`Volatility ${percentText(d.volatility, 2)} ${breakdown.horizon}${band}${dataOf(breakdown)}.`),
+    text(
+      `Volatility ${percentText(d.volatility, 2)} ${breakdown.horizon}${currency ? ` in ${currency.base}` : ''}${band}${dataOf(breakdown)}.`,
+    ),
   ])
   rows.add([text(CAUTION, 'note')])
   if (warnings.length > 0)
@@ -147,6 +160,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   addGroups(rows, breakdown)
   if (typeof tails !== 'string') addTails(rows, breakdown, tails)
   if (active) addActive(rows, active, breakdown.horizon)
+  if (currency) addCurrency(rows, breakdown, currency)
   if (breakdown.factors) addFactors(rows, breakdown, breakdown.factors)
   addBook(rows, breakdown, bands)
 
@@ -482,6 +496,44 @@ function addActive(rows: Rows, active: Active, horizon: string): void {
     '',
     'total',
   )
+}
+
+function addCurrency(rows: Rows, { names, decomposition: d }: Breakdown, currency: CurrencyRisk): void {
+  const { base, labels, parts } = currency
+  rows.blank()
+  rows.add([text(`Currency: local and currency parts, base currency ${base}`, 'head')])
+  if (typeof parts === 'string') {
+    rows.add([text(parts, 'note')])
+    return
+  }
+  rows.add([text(CURRENCY_READING, 'note')])
+  const heads = { 'stand-alone': 'Local part', marginal: 'Currency part', contribution: CONTRIBUTION }
+  const row = (
+    cells: readonly string[],
+    [weight, local, foreign, contribution]: readonly [number, number, number, number],
+    mark?: Mark,
+  ): void =>
+    rows.row(
+      cells.map((label) => text(label, mark)),
+      {
+        weight: number(weight, PERCENT, mark),
+        'stand-alone': number(local, PERCENT, mark),
+        marginal: number(foreign, PERCENT, mark),
+        contribution: number(contribution, PERCENT, mark),
+      },
+      '',
+      mark,
+    )
+  const sums = [sumOf(d.weights), sumOf(parts.local), sumOf(parts.currency), d.volatility] as const
+  rows.row([text('Holding', 'head'), text('Currency', 'head')], { weight: WEIGHT, ...heads }, '', 'head')
+  names.forEach((name, i) =>
+    row([name, labels[i] ?? ''], [d.weights[i]!, parts.local[i]!, parts.currency[i]!, d.contribution[i]!]),
+  )
+  row(['Total'], sums, 'total')
+  rows.row([text('Currency', 'head')], { weight: 'Exposure', ...heads }, '', 'head')
+  for (const { label, exposure, local, currency: foreign, contribution } of parts.byCurrency)
+    row([label], [exposure, local, foreign, contribution])
+  row(['Total'], sums, 'total')
 }
 
 function addFactors(rows: Rows, { names, decomposition: d }: Breakdown, split: FactorSplit): void {

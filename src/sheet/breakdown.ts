@@ -5,6 +5,8 @@ import { bandsOf } from './bands'
 import type { Active } from './benchmark'
 import { activeOf, grossRatio, MOST_GROSS_CONTRIBUTION } from './benchmark'
 import type { Blocks, BookModel } from './book-model'
+import type { CurrencyRisk } from './currency'
+import { currencyRiskOf } from './currency'
 import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -56,6 +58,8 @@ export interface Breakdown {
   readonly tails: Tails | string
   /** null while there is no benchmark */
   readonly active: Active | null
+  /** null while no base currency is chosen */
+  readonly currency: CurrencyRisk | null
   readonly factors: FactorSplit | null
   readonly normality: NormalityVerdict | null
   readonly net: number
@@ -103,7 +107,12 @@ export function breakDown(blocks: Blocks, book: BookModel, settings: Settings): 
   const periods = settings.periodsPerYear ?? returns.proposedPeriodsPerYear
   // what was odd in the reading changes what the figures mean, so it goes with them wherever they are written
   const odd = [...holdings.findings, ...returns.findings].filter(({ weight }) => weight === 'warns')
-  const findings: Finding[] = [...odd, ...match.findings, ...book.findings]
+  const findings: Finding[] = [
+    ...odd,
+    ...match.findings,
+    ...(match.currencies?.findings ?? []),
+    ...book.findings,
+  ]
   const perPeriod = decompose(book.model, weights)
   const decomposition = annualise(perPeriod, periods ?? 1)
   if (periods === null)
@@ -155,13 +164,14 @@ export function breakDown(blocks: Blocks, book: BookModel, settings: Settings): 
     bands: bandsOf(book, decomposition),
     tails,
     active,
+    currency: currencyRiskOf(match.currencies, book.currency, decomposition),
     factors: factorSplit(book, decomposition),
     normality: normalityOf(book, weights),
     net: holdings.net,
     gross: holdings.gross,
     expectedReturn: expectedReturnOf(holdings, match, book, periods, findings),
     horizon: periods === null ? 'per period' : 'a year',
-    settings: settingLines(holdings, returns, book, settings, periods),
+    settings: settingLines(blocks, book, settings, periods),
     findings: byGravity(findings),
     sharesWithheld,
     effectiveWithheld:

@@ -23,6 +23,8 @@ export interface Holding {
   readonly amount: number | null
   /** one label a group column, '' where the cell is blank */
   readonly groups: readonly string[]
+  /** the label of its currency, '' where the cell is blank or there is no such column */
+  readonly currency: string
   readonly benchmark: number | null
   readonly limit: number | null
   /** expected return a year */
@@ -37,7 +39,9 @@ export interface HoldingsReading {
   readonly holdings: readonly Holding[]
   /** whether the block has a column of names; without one, holdings match the returns by place */
   readonly named: boolean
+  /** columns that group the holdings; the one of the currency is among them */
   readonly groupHeaders: readonly string[]
+  readonly currencyHeader: string | null
   readonly limitHeader: string | null
   /** what amounts were divided by to make weights of them; null where the block holds weights */
   readonly capital: number | null
@@ -56,20 +60,25 @@ const HEADER_SIGNS: readonly (readonly [Role, RegExp])[] = [
   ['weight', /\b(weights?|wgt|allocation|share of (capital|assets|portfolio)|% of (capital|assets|portfolio|nav))\b|^%$/i],
   ['exposure', /\b(exposure|notional)\b/i],
   ['amount', /\b(amount|market value|value|balance|holding value|position value)\b/i],
-  ['group', /\b(class|region|sector|country|currency|manager|industry|style|strategy|theme|group|type)\b/i],
+  ['currency', /\b(currency|ccy)\b/i],
+  ['group', /\b(class|region|sector|country|manager|industry|style|strategy|theme|group|type)\b/i],
   ['name', /\b(name|holdings?|asset|position|security|instrument|investment|fund)\b/i],
 ] // prettier-ignore
 
-/** Roles that one column alone can have; a second candidate is left out and can be chosen by hand. */
+/** Roles that one column alone can have; a second candidate is left out (a second currency groups) and can be chosen by hand. */
 const SINGLE: ReadonlySet<Role> = new Set([
   'name',
   'weight',
   'amount',
   'exposure',
+  'currency',
   'benchmark weight',
   'limit',
   'expected return',
 ])
+
+/** A currency is a label that holdings share, so its column groups them as well. */
+const isGroup = (role: Role | undefined): boolean => role === 'group' || role === 'currency'
 
 const TOTAL_WORD = /^(grand |sub-?\s?|over-?all )?(totals?|sum)\b/i
 const TOTAL_ALONE = /^(grand |sub-?\s?|over-?all )?(totals?|sum)\s*:?$/i
@@ -158,7 +167,7 @@ function proposeRoles(
   const taken = new Set<Role>()
   const take = (role: Role): Role => {
     if (!SINGLE.has(role)) return role
-    if (taken.has(role)) return 'ignore'
+    if (taken.has(role)) return role === 'currency' ? 'group' : 'ignore'
     taken.add(role)
     return role
   }
@@ -166,7 +175,7 @@ function proposeRoles(
     const content = contents[k]
     const role = header === null ? null : (HEADER_SIGNS.find(([, sign]) => sign.test(header))?.[0] ?? null)
     if (role === null || role === 'ignore' || !content || content.filled.length === 0) return role
-    const wantsText = role === 'name' || role === 'group'
+    const wantsText = role === 'name' || isGroup(role)
     return (wantsText ? !content.numeric : content.numbers.length > 0) ? take(role) : null
   })
   return fromHeader.map((role, k): Role => {
@@ -237,7 +246,7 @@ export function readHoldings(
     }
   })
   const columnOf = (role: Role): number => columns.findIndex((column) => column.role === role)
-  const groupColumns = columns.flatMap((column, k) => (column.role === 'group' ? [k] : []))
+  const groupColumns = columns.flatMap((column, k) => (isGroup(column.role) ? [k] : []))
   for (const role of SINGLE) {
     const holders = columns.flatMap((column, k) => (column.role === role ? [k] : []))
     if (holders.length > 1)
@@ -250,6 +259,7 @@ export function readHoldings(
   const weightColumn = columnOf('weight')
   const amountColumn = columnOf('amount')
   const exposureColumn = columnOf('exposure')
+  const currencyColumn = columnOf('currency')
   const measureColumn = weightColumn >= 0 ? weightColumn : exposureColumn >= 0 ? exposureColumn : amountColumn
   if (measureColumn < 0)
     find(
@@ -266,7 +276,7 @@ export function readHoldings(
     if (!shared) continue
     const [row, column] = [shared.row - area.row, shared.column - area.column]
     if (row < layout.firstRow) continue
-    if (shared.columns === 1 && columns[column]?.role === 'group') {
+    if (shared.columns === 1 && isGroup(columns[column]?.role)) {
       for (let k = 1; k < shared.rows; k++)
         filledDown.set(`${row + k},${column}`, values[row]?.[column] ?? '')
     } else if (columns.slice(column, column + shared.columns).some(({ role }) => role !== 'ignore'))
@@ -423,13 +433,14 @@ export function readHoldings(
   // without the capital there are no weights to speak of, and a finding has said so
   const isWeighed = capital !== null
   const divisor = capital ?? 1
+  const label = (row: number, column: number): string =>
+    String(filledDown.get(`${row},${column}`) ?? values[row]?.[column] ?? '').trim()
   const holdings: Holding[] = rows.map(({ row, name, measure, amount, benchmark, limit, expected }) => ({
     name,
     weight: measure / divisor,
     amount,
-    groups: groupColumns.map((column) =>
-      String(filledDown.get(`${row},${column}`) ?? values[row]?.[column] ?? '').trim(),
-    ),
+    groups: groupColumns.map((column) => label(row, column)),
+    currency: currencyColumn < 0 ? '' : label(row, currencyColumn),
     benchmark,
     limit,
     expected,
@@ -485,6 +496,7 @@ export function readHoldings(
     holdings,
     named: nameColumn >= 0,
     groupHeaders: groupColumns.map((column) => columns[column]?.header ?? ''),
+    currencyHeader: columns[currencyColumn]?.header ?? null,
     limitHeader: columns[columnOf('limit')]?.header ?? null,
     capital: weightColumn >= 0 || measureColumn < 0 ? null : capital,
     net,

@@ -6,6 +6,7 @@ export { worksheetFunctions } from './functions'
 export { DEFAULT_SETTINGS, GAP_RULES, REPAIRS, ROLES } from './settings'
 export type {
   BenchmarkChoice,
+  CurrencyChoice,
   EstimatorChoice,
   GapRule,
   LookBack,
@@ -27,6 +28,8 @@ export type { Calculator, JobInput, JobKind, JobResult, Work } from './calculato
 export { BAND } from './bands'
 export type { Bands } from './bands'
 export type { Active } from './benchmark'
+export { CURRENCY_READING } from './currency'
+export type { CurrencyParts, CurrencyRisk } from './currency'
 export type { Check, CheckKind } from './checks'
 export type { CheckLine, CorrectedVolatility } from './inspection'
 export type { NestedGroup } from './nesting'

@@ -5,6 +5,7 @@ import { modelChoices, modelOf } from './book-model'
 import type { Calculator, Work } from './calculator'
 import type { Check, Correction } from './checks'
 import { checksOf } from './checks'
+import { currencyKey } from './currency'
 import { explain } from './explain'
 import type { ReturnsReading } from './returns'
 import type { SeriesFacts } from './series-facts'
@@ -43,7 +44,11 @@ export class Inspection {
   ): Promise<readonly CheckLine[]> {
     const facts = await this.#factsOf(blocks.returns, settings, calculator, work)
     if (facts === null) return []
-    const key = JSON.stringify([modelChoices(settings), [...blocks.match.seriesOf]])
+    const key = JSON.stringify([
+      modelChoices(settings),
+      [...blocks.match.seriesOf],
+      currencyKey(blocks.match.currencies),
+    ])
     if (this.#modelsOf?.returns !== blocks.returns || this.#modelsOf.key !== key) this.#models.clear()
     this.#modelsOf = { returns: blocks.returns, key }
 

@@ -8,6 +8,7 @@ import { breakdownTable } from './breakdown-table'
 import type { Calculator, Work } from './calculator'
 import type { Area, Block, CellValue, Culture } from './cells'
 import { addressOf, isBlank, overlap, sameArea } from './cells'
+import { currencyKey } from './currency'
 import { explain } from './explain'
 import type { Finding } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -40,6 +41,7 @@ export type Field =
   | 'look-back'
   | 'periods per year'
   | 'capital'
+  | 'currency'
   | 'benchmark'
   | 'tails'
   | 'study'
@@ -327,7 +329,8 @@ export class LinkedBook {
 
   #match(): void {
     const { holdings, returns } = this
-    this.match = holdings && returns ? matchHoldings(holdings, returns, this.settings.riskless) : null
+    const { riskless, currency } = this.settings
+    this.match = holdings && returns ? matchHoldings(holdings, returns, riskless, currency) : null
   }
 
   async #readSeries(part: SeriesPart, area: Area, work: Work): Promise<void> {
@@ -385,7 +388,10 @@ export class LinkedBook {
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
     this.settings = { ...this.settings, ...change }
     if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
-    if ('riskless' in change) this.#match()
+    if ('riskless' in change || 'currency' in change) this.#match()
+    const missing =
+      'currency' in change && this.match?.currencies?.findings.find(({ weight }) => weight === 'stops')
+    if (missing) this.faults = { ...this.faults, currency: missing.sentence }
     if ('roles' in change) {
       this.#readHoldings()
       if (this.holdings) this.#settle('holdings')
@@ -462,12 +468,14 @@ export class LinkedBook {
         'select the returns block and use the selection',
         { argument: 'returns' },
       )
-    const match = (this.match ??= matchHoldings(holdings, returns, this.settings.riskless))
+    const { riskless, currency } = this.settings
+    const match = (this.match ??= matchHoldings(holdings, returns, riskless, currency))
     for (const [field, findings] of [
       ['holdings', holdings.findings],
       ['returns', returns.findings],
       ['factors', (this.settings.estimator.kind === 'factors' && this.factors?.findings) || []],
       ['holdings', match.findings],
+      ['currency', match.currencies?.findings ?? []],
     ] as const) {
       const stop = findings.find(({ weight }) => weight === 'stops')
       if (stop) throw new PlacedFault(stop, field)
@@ -824,7 +832,9 @@ const goneFault = (part: 'holdings' | SeriesPart): Fault =>
   )
 
 const sameSeries = (a: Match, b: Match): boolean =>
-  a.seriesOf.length === b.seriesOf.length && a.seriesOf.every((series, i) => series === b.seriesOf[i])
+  a.seriesOf.length === b.seriesOf.length &&
+  a.seriesOf.every((series, i) => series === b.seriesOf[i]) &&
+  currencyKey(a.currencies) === currencyKey(b.currencies)
 
 /** Whether two decompositions are of the same weights, scaled alike. */
 const sameFigures = (a: Decomposition | undefined, b: Decomposition): boolean =>

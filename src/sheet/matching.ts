@@ -1,4 +1,6 @@
 import { addressOf } from './cells'
+import type { CurrencyMatch } from './currency'
+import { matchCurrencies } from './currency'
 import type { Finding } from './findings'
 import { firstAndCount } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -10,18 +12,51 @@ import { countOf, quote } from './wording'
 /** Which series each holding goes with: a column of the returns, or -1 for a holding marked riskless. */
 export interface Match {
   readonly seriesOf: Int32Array
+  /** null where risk is not split by currency; its findings are apart, as they belong to another choice */
+  readonly currencies: CurrencyMatch | null
   readonly findings: readonly Finding[]
 }
 
 /**
  * Matches holdings to series by name: exactly, else but for case and spacing; by place only where there are no names on one side.
- * A holding without a series is told by name unless the user has marked it riskless.
+ * A holding without a series is told by name unless the user has marked it riskless. A riskless one in a foreign currency goes with the series
+ * of its currency, as that is what moves it in the base currency.
+ *
+ * @param currency null: holdings are not told apart by currency
  */
 export function matchHoldings(
   holdings: HoldingsReading,
   returns: ReturnsReading,
   riskless: Settings['riskless'],
+  currency: Settings['currency'] = null,
 ): Match {
+  const match = matchByName(holdings, returns, riskless)
+  if (currency === null) return { ...match, currencies: null }
+  const currencies = matchCurrencies(holdings, returns, currency)
+  const free = new Set(riskless.map(plainName))
+  const moved: Finding[] = []
+  const seriesOf = match.seriesOf.map((series, i) => {
+    const [rate, holding] = [currencies.seriesOf[i] ?? -1, holdings.holdings[i]]
+    if (series >= 0 || rate < 0 || !holding || !free.has(plainName(holding.name))) return series
+    moved.push({
+      weight: 'warns',
+      sentence: `${addressOf(holding.cell)}: ${quote(holding.name)} is marked as riskless and stands in ${currencies.labels[i] ?? ''}: it moves with that currency against ${currency.base}.`,
+      area: holding.cell,
+    })
+    return rate
+  })
+  return {
+    seriesOf,
+    currencies: { ...currencies, findings: [...currencies.findings, ...firstAndCount(moved, 'holdings')] },
+    findings: match.findings,
+  }
+}
+
+function matchByName(
+  holdings: HoldingsReading,
+  returns: ReturnsReading,
+  riskless: Settings['riskless'],
+): Omit<Match, 'currencies'> {
   const findings: Finding[] = []
   const names = returns.names
   const free = new Set(riskless.map(plainName))

@@ -13,6 +13,8 @@ export interface ReturnsReading {
   readonly area: Area
   readonly content: 'returns' | 'prices' | 'covariance'
   readonly orientation: 'dates down' | 'dates across'
+  /** how returns were formed from prices; those that were typed count as simple */
+  readonly returnKind: Settings['returnKind']
   readonly names: readonly string[] | null
   /** serial numbers, oldest first, one a row of `values`; null when the block has no dates */
   readonly dates: readonly number[] | null
@@ -395,6 +397,7 @@ export function readReturns(
     area,
     content,
     orientation: isAcross ? 'dates across' : 'dates down',
+    returnKind: content === 'prices' ? settings.returnKind : 'simple',
     names,
     dates: kept,
     frequency: content === 'covariance' ? 'no dates' : frequency.name,

@@ -1,8 +1,7 @@
-import type { BookModel } from './book-model'
+import type { Blocks, BookModel } from './book-model'
 import { GAP_WORDS } from './book-model'
 import { addressOf } from './cells'
-import type { HoldingsReading } from './holdings'
-import type { ReturnsReading } from './returns'
+import { currencyText } from './currency'
 import type { EstimatorChoice, Settings } from './settings'
 import { countOf, dateText, numberText, percentText } from './wording'
 
@@ -32,8 +31,7 @@ export function estimatorText(estimator: EstimatorChoice): string {
 
 /** The settings and conventions that the figures depend on, as label and value. */
 export function settingLines(
-  holdings: HoldingsReading,
-  returns: ReturnsReading,
+  { holdings, returns, match }: Blocks,
   book: BookModel,
   settings: Settings,
   periods: number | null,
@@ -78,6 +76,7 @@ export function settingLines(
   ])
   if (settings.riskless.length > 0)
     lines.push(['Riskless', `${settings.riskless.join(', ')} (marked by the user)`])
+  if (match.currencies) lines.push(['Base currency', currencyText(match.currencies, returns)])
   const sums = `net ${percentText(holdings.net, 2)}, gross ${percentText(holdings.gross, 2)}`
   lines.push([
     'Capital',

@@ -8,6 +8,7 @@ export const ROLES = [
   'amount',
   'exposure',
   'group',
+  'currency',
   'benchmark weight',
   'limit',
   'expected return',
@@ -36,6 +37,15 @@ export type RepairRule = (typeof REPAIRS)[number]
 export type BenchmarkChoice =
   { readonly kind: 'column' } | { readonly kind: 'none' } | { readonly kind: 'series'; readonly name: string }
 
+/**
+ * The currency all figures are in, and what the returns of foreign holdings stand in: the base currency, or each its own ('local'), from
+ * which they are brought to the base currency first.
+ */
+export interface CurrencyChoice {
+  readonly base: string
+  readonly returnsIn: 'base' | 'local'
+}
+
 export interface TailChoice {
   readonly method: TailMethod
   /** above 0.5, below 1 */
@@ -62,6 +72,8 @@ export interface Settings {
   readonly roles: { readonly [header: string]: Role }
   readonly benchmark: BenchmarkChoice
   readonly convention: ActiveConvention
+  /** null: risk is not split by currency, and returns are taken as they stand */
+  readonly currency: CurrencyChoice | null
   readonly tails: TailChoice
   /** group columns one within the other, by their headers, outermost first; empty: each column by itself */
   readonly nesting: readonly string[]
@@ -81,6 +93,7 @@ export const DEFAULT_SETTINGS: Settings = {
   roles: {},
   benchmark: { kind: 'column' },
   convention: 'total returns',
+  currency: null,
   tails: { method: { kind: 'historical' }, confidence: 0.95, periods: 1 },
   nesting: [],
 }
@@ -143,6 +156,7 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     convention:
       read('convention', oneOf(saved.convention, ['total returns', 'benchmark-relative returns'])) ??
       DEFAULT_SETTINGS.convention,
+    currency: read('currency', currencyFrom(saved.currency)),
     tails: read('tails', tailsFrom(saved.tails)) ?? DEFAULT_SETTINGS.tails,
     nesting: read('nesting', textsFrom(saved.nesting)) ?? DEFAULT_SETTINGS.nesting,
   }
@@ -181,6 +195,13 @@ function benchmarkFrom(json: Json | undefined): BenchmarkChoice | null {
   return kind === 'series' && typeof name === 'string' ? { kind, name } : null
 }
 
+function currencyFrom(json: Json | undefined): CurrencyChoice | null {
+  const saved = treeOf(json)
+  const base = typeof saved.base === 'string' ? saved.base.trim() : ''
+  const returnsIn = oneOf(saved.returnsIn, ['base', 'local'])
+  return base !== '' && returnsIn !== null ? { base, returnsIn } : null
+}
+
 function tailsFrom(json: Json | undefined): TailChoice | null {
   const saved = treeOf(json)
   const method = treeOf(saved.method)
@@ -204,5 +225,6 @@ export const settingsToJson = (settings: Settings): Json => ({
   estimator: { ...settings.estimator },
   lookBack: { ...settings.lookBack },
   benchmark: { ...settings.benchmark },
+  currency: settings.currency && { ...settings.currency },
   tails: { ...settings.tails, method: { ...settings.tails.method } },
 })

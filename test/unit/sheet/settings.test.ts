@@ -16,6 +16,7 @@ test('settings come back from a workbook as they were saved', () => {
     repair: 'shrunk',
     benchmark: { kind: 'series', name: 'Index' },
     convention: 'benchmark-relative returns',
+    currency: { base: 'EUR', returnsIn: 'local' },
     tails: { method: { kind: 'student', degrees: null }, confidence: 0.99, periods: 4 },
     nesting: ['Region', 'Class'],
   }
@@ -46,6 +47,16 @@ test('roles survive whatever their heading is called', () => {
     ['__proto__', 'weight'],
     ['constructor', 'name'],
   ])
+})
+
+test.each([
+  [{ base: ' ', returnsIn: 'base' }],
+  [{ base: 'EUR', returnsIn: 'mixed' }],
+  [{ base: 7, returnsIn: 'base' }],
+  ['EUR'],
+])('the currency %j is none and is named', (currency) => {
+  const { settings, unread } = settingsFromJson({ currency })
+  expect([settings.currency, unread]).toEqual([null, ['currency']])
 })
 
 test.each<Settings['estimator']>([
