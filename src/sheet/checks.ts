@@ -4,6 +4,7 @@ import type { SplitRatio } from '../core'
 import type { Blocks } from './book-model'
 import type { Area } from './cells'
 import { addressOf } from './cells'
+import { currencySeries } from './currency'
 import type { Finding } from './findings'
 import { byGravity } from './findings'
 import { plainName } from './names'
@@ -133,7 +134,7 @@ const RULES: readonly {
 
 /**
  * Looks for faults in the data of a book. Nothing is changed by it: what can be mended comes with its corrections, and the user chooses.
- * Only series that are held, or the benchmark, are told of; many findings of one kind are one line.
+ * Only series that are held, the benchmark or a currency of the holdings are told of; many findings of one kind are one line.
  *
  * @param facts of the same returns and look-back
  * @returns     the gravest first; none for a covariance matrix
@@ -143,7 +144,7 @@ export function checksOf(blocks: Blocks, settings: Settings, facts: SeriesFacts)
   return blocks.returns.content === 'covariance' ? [] : new DataChecks(blocks, settings, facts).all()
 }
 
-/** A series that is held or the benchmark. */
+/** A series that is held, the benchmark, or what a currency of the holdings returns. */
 interface Held {
   readonly series: number
   readonly name: string
@@ -184,6 +185,9 @@ class DataChecks {
       const series = match.seriesOf[k] ?? -1
       if (series >= 0) names.set(series, name)
     })
+    // a currency's series is in the figures as those of the holdings are
+    for (const series of match.currencies ? currencySeries(match.currencies) : [])
+      names.set(series, returns.names?.[series] ?? '')
     const { benchmark } = settings
     const benchmarkSeries =
       benchmark.kind === 'series'
@@ -854,7 +858,9 @@ class DataChecks {
 
   #stalePrices(): void {
     const isStale = ({ fact }: Held): boolean =>
-      fact.still.length >= LONG_STILL || (fact.still.length >= SHORT_STILL && fact.stillShare >= MOST_STILL)
+      fact.still.length >= LONG_STILL ||
+      (fact.every !== null && fact.still.length >= fact.every - 1) ||
+      (fact.still.length >= SHORT_STILL && fact.stillShare >= MOST_STILL)
     const stale = this.#held.filter((held) => !this.#explained.has(held.series) && isStale(held))
     for (const { series } of stale) this.#explained.add(series)
     const suspicion = (held: Held): Suspicion => {

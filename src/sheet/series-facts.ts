@@ -49,6 +49,7 @@ export interface SeriesFact {
   /** mean size of a return, and whether all are above 0 */
   readonly size: number
   readonly isPositive: boolean
+  /** of its returns, or of those that are not 0 where many are */
   readonly median: number
   readonly scale: number
   /** beyond NEAREST_FAR robust scales */
@@ -75,6 +76,9 @@ export const NEAREST_FAR = 6
 
 /** So many dates a year at least are daily returns. */
 const DAILY = 200
+
+/** Share of zeros that a median distance bears. */
+const MOST_ZEROS = 0.25
 
 /** Distances a series may weigh with in the average of all, in robust scales: one wild value must not become everyone's. */
 const MOST_IN_AVERAGE = 5
@@ -171,6 +175,7 @@ function factOf(x: Float64Array, from: number): SeriesFact {
   let count = 0
   let sum = 0
   let size = 0
+  let zeros = 0
   let isPositive = true
   let isConstant = true
   for (let t = Math.max(first, 0); t <= last; t++) {
@@ -182,6 +187,7 @@ function factOf(x: Float64Array, from: number): SeriesFact {
     count++
     sum += value
     size += Math.abs(value)
+    if (value === 0) zeros++
     if (value <= 0) isPositive = false
     if (value !== x[first]) isConstant = false
   }
@@ -189,7 +195,12 @@ function factOf(x: Float64Array, from: number): SeriesFact {
   let squares = 0
   for (const value of x) if (!Number.isNaN(value)) squares += (value - mean) ** 2
 
-  const { scale, rows, multiples } = outliers(x, NEAREST_FAR)
+  // where a price is often not renewed, how far it moves is seen in the moves alone
+  const isStill = zeros < count && zeros > MOST_ZEROS * count
+  const { scale, rows, multiples } = outliers(
+    isStill ? x.map((value) => (value === 0 ? NaN : value)) : x,
+    NEAREST_FAR,
+  )
   const still = longestRun(x)
   return {
     first: first < 0 ? -1 : from + first,

@@ -226,6 +226,18 @@ it.each<[string, (cells: Cells) => void, string, readonly string[]]>([
     for (const text of [sentence, effect, remedy]) expect(text).toMatch(/^\S.*[.?]$/)
 })
 
+it('a head of monthly dates can be left out: the look-back then starts with the first return over a week', () => {
+  let secondWeek = 0
+  const { planted } = after((cells) => {
+    rowsOf(cells, 2, 13).forEach((row, k) => (row[0] = at(cells[13], 0) - 30 * (12 - k)))
+    // row 14 is a month after row 13, row 15 a week after that
+    secondWeek = at(cells[14], 0)
+  })
+  const [correction] = planted[0]?.corrections ?? []
+  expect(correction?.change).toEqual({ lookBack: { kind: 'since', date: secondWeek } })
+  expect(after(() => undefined, correction?.change ?? {}).planted).toEqual([])
+})
+
 /** Working days in the place of weeks. */
 function asDaily(cells: Cells): void {
   const friday = at(cells[260], 0)

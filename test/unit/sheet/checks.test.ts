@@ -369,6 +369,28 @@ describe('one fault, one line', () => {
     expect(kinds(look(daily)).filter((kind) => kind === 'closing times')).toEqual([])
   })
 
+  test.each([2, 3])(
+    'a daily series valued every %i days is told as that alone, though it lags behind the others',
+    (every) => {
+      const daily = drawn(normals(67), 800, 6)
+      const own = column(daily, 2)
+      const late = own.map((_, t) =>
+        t % every === every - 1 ? own.slice(t + 1 - every, t + 1).reduce((sum, value) => sum + value, 0) : 0,
+      )
+      expect(kinds(look(withColumn(daily, 2, late), { step: 1 }))).toEqual(['stale prices'])
+    },
+  )
+
+  test('a series tied to the others on both neighbouring days has no closing time of its own', () => {
+    const draw = normals(71)
+    const news = Array.from({ length: 802 }, draw)
+    const daily = Array.from({ length: 800 }, (_, t) => [
+      0.01 * (news[t + 1] ?? 0),
+      ...Array.from({ length: 7 }, () => 0.005 * ((news[t] ?? 0) + (news[t + 2] ?? 0) + draw())),
+    ])
+    expect(kinds(look(daily, { step: 1 }))).toEqual([])
+  })
+
   test('constant series are told as that alone, and as nothing else', () => {
     for (const value of [0, 0.001])
       expect(
@@ -387,6 +409,8 @@ describe('one fault, one line', () => {
   test('a move that is far out and taken back is one line', () => {
     const planted = changed(changed(rows, 90, 1, 9), 91, 1, -0.9)
     expect(kinds(look(planted))).toEqual(['outlier'])
+    // a half up and a third down make an autocorrelation of -0.46 all by themselves
+    expect(kinds(look(changed(changed(rows, 90, 1, 0.5), 91, 1, -1 / 3)))).toEqual(['outlier'])
     const [check] = look(planted).checks
     expect(check?.areas.map(addressOf)).toEqual(['Returns!C92', 'Returns!C93'])
     // 10 times and a tenth: nothing is left, so both become 0
