@@ -1,6 +1,7 @@
 import { addressOf, cellOf, overlap, type Area, type Table } from '../sheet'
-import type { Survey } from './journal'
+import type { Step, Survey } from './journal'
 import { rangeOf } from './reading'
+import type { Fill } from './writing'
 
 /**
  * Links behind cells. Setting one, the host gives the cell the font of its style for links (underlined, coloured, whatever size the
@@ -10,7 +11,7 @@ import { rangeOf } from './reading'
 export type Target = Pick<Excel.RangeHyperlink, 'address' | 'documentReference' | 'screenTip'>
 
 /** What the style for links takes over of a cell's look. */
-export interface Font {
+interface Font {
   readonly name: string
   readonly size: number
   readonly color: string
@@ -79,46 +80,47 @@ export function askLinkedCells(
 const ownColour = ({ area, target, font }: LinkedCell, ours: Area | undefined): string =>
   target && !(ours && overlap(area, ours)) ? '#000000' : font.color
 
-/** Takes a link away, and what the host leaves of it. */
-export function unlink(context: Excel.RequestContext, cell: LinkedCell, ours: Area | undefined): void {
-  const range = rangeOf(context, cell.area)
-  range.clear('Hyperlinks')
-  dressLink(range, { ...cell.font, color: ownColour(cell, ours), underline: 'None' })
+/** The steps that set the links of a table and take away those that stood where it goes. They come before its values. */
+export function linkSteps(
+  cells: readonly LinkedCell[],
+  { patch: { table, ours }, target, leftovers }: Fill,
+  plainFont: (() => Font) | null,
+): Step[] {
+  const known = new Map(cells.map((cell) => [addressOf(cell.area), cell]))
+  const links = linksOf(table, target)
+  const linked = new Set(links.map(({ area }) => addressOf(area)))
+  const gone = cells.filter(
+    ({ area, target: led }) =>
+      led !== null &&
+      !linked.has(addressOf(area)) &&
+      [target, ...leftovers].some((place) => overlap(place, area) !== null),
+  )
+  const setting = (area: Area, to: Target | null): Step => ({
+    bytes: 600,
+    // an empty cell is filled with where its link leads, for a moment
+    ...(to && { touches: area }),
+    run(context) {
+      const cell = known.get(addressOf(area))
+      // on a sheet of its own nothing stood there: the cell looks as nobody has formatted it
+      const font = cell?.font ?? plainFont?.()
+      if (!font) return
+      put(context, area, to, {
+        ...font,
+        color: cell ? ownColour(cell, ours) : font.color,
+        underline: to ? 'Single' : 'None',
+      })
+    },
+  })
+  return [...gone.map(({ area }) => setting(area, null)), ...links.map(({ area, to }) => setting(area, to))]
 }
-
-/** Sets a link; the cell's value is to be written afterwards. */
-export function link(
-  context: Excel.RequestContext,
-  area: Area,
-  to: Target,
-  font: Font,
-  color = font.color,
-): void {
-  const range = rangeOf(context, area)
-  range.hyperlink = to
-  dressLink(range, { ...font, color, underline: 'Single' })
-}
-
-/** Sets the link of a table in a cell that was surveyed. */
-export const relink = (
-  context: Excel.RequestContext,
-  cell: LinkedCell,
-  to: Target,
-  ours: Area | undefined,
-): void => link(context, cell.area, to, cell.font, ownColour(cell, ours))
 
 /** Gives a cell the link and the font it had; its value is to be written afterwards. */
-export function putLinkBack(context: Excel.RequestContext, { area, target, font }: LinkedCell): void {
+export const putLinkBack = (context: Excel.RequestContext, { area, target, font }: LinkedCell): void =>
+  put(context, area, target, font)
+
+function put(context: Excel.RequestContext, area: Area, target: Target | null, font: Font): void {
   const range = rangeOf(context, area)
   if (target) range.hyperlink = target
   else range.clear('Hyperlinks')
-  dressLink(range, font)
-}
-
-function dressLink(range: Excel.Range, { name, size, color, underline }: Font): void {
-  const { font } = range.format
-  font.name = name
-  font.size = size
-  font.color = color
-  font.underline = underline as Excel.RangeUnderlineStyle
+  Object.assign(range.format.font, font)
 }

@@ -3,6 +3,7 @@ import { addressOf, overlap, parseAddress, type Area, type Table } from '../shee
 import { SHEET_COLUMNS } from './addresses'
 import { NAME_PREFIX, rangeOf } from './reading'
 import type { Requests } from './requests'
+import type { Fill } from './writing'
 
 /**
  * Rows that fold under those before them. The host groups whole rows and counts: each grouping makes them one level deeper, each
@@ -23,6 +24,12 @@ export interface Folding {
   readonly after: readonly Area[]
 }
 
+/** What a write does about groups of rows. */
+export interface Refolding extends Folding {
+  /** the names that remember them, by what they refer to before and after; null where there is none */
+  readonly names: readonly { readonly name: string; readonly was: string | null; readonly is: Area | null }[]
+}
+
 /** A run of ours by the name that remembers it; null when its rows were deleted. */
 export interface Fold {
   readonly name: string
@@ -41,9 +48,8 @@ export const rememberedFolds = (names: readonly Excel.NamedItem[]): Fold[] =>
 
 /**
  * The runs in which a table that fills `target` folds.
- * @example foldsOf({ cells, widths, numeric, levels: [0, 1, 2, 1, 0] }, area) // rows 2 to 4, and row 3 within
  */
-export function foldsOf({ levels = [] }: Table, target: Area): Area[] {
+function foldsOf({ levels = [] }: Table, target: Area): Area[] {
   const folds: Area[] = []
   for (let depth = 1; depth <= DEEPEST; depth++) {
     let from = 0
@@ -61,11 +67,7 @@ export function foldsOf({ levels = [] }: Table, target: Area): Area[] {
  * next sync.
  * @param table the columns that are the table's, now or before
  */
-export function askNeighbours(
-  context: Excel.RequestContext,
-  folds: readonly Area[],
-  table: Area,
-): () => boolean {
+function askNeighbours(context: Excel.RequestContext, folds: readonly Area[], table: Area): () => boolean {
   const row = Math.min(...folds.map((fold) => fold.row))
   const rows = Math.max(...folds.map((fold) => fold.row + fold.rows)) - row
   const right = table.column + table.columns
@@ -79,6 +81,66 @@ export function askNeighbours(
     return used
   })
   return () => beside.some((used) => !used.isNullObject)
+}
+
+/**
+ * Asks what is to be done about groups of rows: those remembered under a table go, and its own come where nothing but the table stands in
+ * the rows that fold. The answer is there after the next sync; null when groups stay as they are.
+ */
+export function askRefolding(
+  context: Excel.RequestContext,
+  fills: readonly Fill[],
+  there: (sheet: string) => boolean,
+  remembered: readonly Fold[],
+): () => Refolding | null {
+  const touched = fills.flatMap(({ target, leftovers }) => [target, ...leftovers])
+  const old = remembered.filter(
+    ({ area }) =>
+      area === null || (there(area.sheet) && touched.some((place) => overlap(place, area) !== null)),
+  )
+  const wanted = fills.flatMap(({ patch: { table, ours }, target }) => {
+    const folds = foldsOf(table, target)
+    if (folds.length === 0) return []
+    const others = fills.some(
+      (fill) => fill.target !== target && folds.some((area) => meet(area, fill.target)),
+    )
+    if (others) return []
+    return [
+      { folds, crowded: there(target.sheet) ? askNeighbours(context, folds, spanOf(target, ours)) : null },
+    ]
+  })
+  return () => {
+    const after = wanted.flatMap(({ folds, crowded }) => (crowded?.() ? [] : folds))
+    const before = old.flatMap(({ area }) => area ?? []).sort((a, b) => b.rows - a.rows)
+    const listed = (areas: readonly Area[]) => areas.map(addressOf).sort().join()
+    if (old.length === before.length && listed(before) === listed(after)) return null
+    const kept = new Set(remembered.filter((known) => !old.includes(known)).map(({ name }) => name))
+    const fresh: string[] = []
+    for (let k = 1; fresh.length < after.length; k++)
+      if (!kept.has(FOLD_PREFIX + k)) fresh.push(FOLD_PREFIX + k)
+    const is = new Map(after.map((area, k) => [fresh[k] ?? '', area]))
+    const was = new Map(old.map(({ name, refersTo }) => [name, refersTo]))
+    return {
+      before,
+      after,
+      names: [...new Set([...was.keys(), ...is.keys()])].map((name) => ({
+        name,
+        was: was.get(name) ?? null,
+        is: is.get(name) ?? null,
+      })),
+    }
+  }
+}
+
+/** The columns a table takes, with those it took before: they are its own as well. */
+function spanOf(target: Area, ours: Area | undefined): Area {
+  if (!ours || !overlap(target, ours)) return target
+  const column = Math.min(target.column, ours.column)
+  return {
+    ...target,
+    column,
+    columns: Math.max(target.column + target.columns, ours.column + ours.columns) - column,
+  }
 }
 
 const rowsOf = (context: Excel.RequestContext, area: Area): Excel.Range =>
@@ -111,7 +173,10 @@ export async function unfold(requests: Requests, folds: readonly Area[]): Promis
   })
 }
 
-/** Puts grouping back as it was before a write that stopped anywhere in changing it. May be done twice. */
+/**
+ * Puts grouping back as it was before a write that stopped anywhere in changing it. May be done twice. How far the write came cannot be
+ * told, so a level of the user's own in those very rows may go with ours.
+ */
 export async function refold(requests: Requests, { before, after }: Folding): Promise<void> {
   await flatten(requests, [before, after])
   if (before.length === 0) return
@@ -153,7 +218,7 @@ const isRefusal = (error: unknown): boolean => error instanceof Fault && error.c
 const entireRow = (area: Area): Area => ({ ...area, column: 0, columns: 1 })
 
 /** Whether two areas share a row. */
-export const meet = (a: Area, b: Area): boolean => overlap(entireRow(a), entireRow(b)) !== null
+const meet = (a: Area, b: Area): boolean => overlap(entireRow(a), entireRow(b)) !== null
 
 /** The rows of runs as blocks that do not overlap. */
 function outermost(folds: readonly Area[]): Area[] {

@@ -34,28 +34,9 @@ import {
   type Survey,
   typedText,
 } from './journal'
-import {
-  askLinkedCells,
-  askPlainFont,
-  link,
-  linksOf,
-  relink,
-  unlink,
-  type Font,
-  type LinkedCell,
-} from './links'
+import { askLinkedCells, askPlainFont, linkSteps, linksOf } from './links'
 import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
-import {
-  askNeighbours,
-  fold,
-  FOLD_PREFIX,
-  foldsOf,
-  meet,
-  rememberedFolds,
-  unfold,
-  type Fold,
-  type Folding,
-} from './outline'
+import { askRefolding, fold, rememberedFolds, unfold, type Folding } from './outline'
 import { NAME_PREFIX, rangeOf } from './reading'
 import { faultOf, offers, PROTECTED_NEEDS, REQUEST_BYTES, type Request, type Requests } from './requests'
 
@@ -67,16 +48,10 @@ export interface Writer {
 }
 
 /** A patch with the area it fills and what it clears of an earlier table. */
-interface Fill {
+export interface Fill {
   readonly patch: Patch
   readonly target: Area
   readonly leftovers: readonly Area[]
-}
-
-/** What a write does about groups of rows. */
-interface Refolding extends Folding {
-  /** the names that remember them, by what they refer to before and after; null where there is none */
-  readonly names: readonly { readonly name: string; readonly was: string | null; readonly is: Area | null }[]
 }
 
 export function openWriter(requests: Requests, expectEcho: (area: Area) => void): Writer {
@@ -197,9 +172,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       (key) => [key, settings.getItemOrNullObject(key).load('value')] as const,
     )
     names.load('items/name,items/formula')
-    const plainFont = fills.some(({ patch, target }) => linksOf(patch.table, target).length > 0)
-      ? askPlainFont(context)
-      : null
+    const linked = fills.flatMap(({ patch, target }) => linksOf(patch.table, target).map(({ area }) => area))
+    const plainFont = linked.length > 0 ? askPlainFont(context) : null
     await sync()
 
     const there = (sheet: string) => sheets.get(sheet)?.isNullObject === false
@@ -235,16 +209,13 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       after: afterAt(area),
       typed: typed.map((row, r) => row.map((entry, c) => (spilled(area, r, c) ? '' : entry))),
     }))
-    const links = fills.flatMap(({ patch, target }) =>
-      linksOf(patch.table, target).map((wanted) => ({ ...wanted, ours: patch.ours })),
-    )
-    const asked = askLinkedCells(
+    const askedLinks = askLinkedCells(
       context,
       surveyed,
-      links.flatMap(({ area }) => (there(area.sheet) ? [area] : [])),
+      linked.filter(({ sheet }) => there(sheet)),
     )
     const looks = await surveyLooks(request, areas)
-    const linkedCells = asked()
+    const links = askedLinks()
     const folding = refolding()
 
     const columns = fills.flatMap(({ patch, target }) =>
@@ -269,7 +240,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
             },
       grounds,
       looks,
-      links: linkedCells,
+      links,
       folding: folding && { before: folding.before, after: folding.after },
       widths: wider.flatMap(({ area, format }) => (format ? [{ area, points: format.columnWidth }] : [])),
       names: Object.fromEntries([
@@ -287,7 +258,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         ...leftovers
           .filter(({ sheet }) => there(sheet))
           .flatMap((area) => clearSteps(area, patch.ours ?? area)),
-        ...linkSteps(linkedCells, patch, target, leftovers, plainFont),
+        ...linkSteps(links, { patch, target, leftovers }, plainFont),
         ...valueSteps(patch.table, target, 'all'),
         step((queue) => undress(queue, target)),
         ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look))),
@@ -468,98 +439,6 @@ const clearSteps = (area: Area, ours: Area): Step[] => [
 
 const foldSteps = ({ after }: Folding): Step[] =>
   after.map((area) => step((context) => fold(context, [area])))
-
-/** The steps that set the links of a table and take away those that stood where it goes. They come before its values. */
-function linkSteps(
-  cells: readonly LinkedCell[],
-  { table, ours }: Patch,
-  target: Area,
-  leftovers: readonly Area[],
-  plainFont: (() => Font) | null,
-): Step[] {
-  const known = new Map(cells.map((cell) => [addressOf(cell.area), cell]))
-  const links = linksOf(table, target)
-  const linked = new Set(links.map(({ area }) => addressOf(area)))
-  const gone = cells.filter(
-    ({ area, target: led }) =>
-      led !== null &&
-      !linked.has(addressOf(area)) &&
-      [target, ...leftovers].some((place) => overlap(place, area) !== null),
-  )
-  return [
-    ...gone.map((cell) => ({ bytes: 600, run: (queue: Excel.RequestContext) => unlink(queue, cell, ours) })),
-    ...links.map(({ area, to }) => ({
-      bytes: 600,
-      touches: area,
-      run(queue: Excel.RequestContext) {
-        const cell = known.get(addressOf(area))
-        if (cell) relink(queue, cell, to, ours)
-        // on a sheet of its own nothing stood there: the cell looks as nobody has formatted it
-        else if (plainFont) link(queue, area, to, plainFont())
-      },
-    })),
-  ]
-}
-
-/**
- * Asks what is to be done about groups of rows: those remembered under a table go, and its own come where nothing but the table stands in
- * the rows that fold. The answer is there after the next sync; null when groups stay as they are.
- */
-function askRefolding(
-  context: Excel.RequestContext,
-  fills: readonly Fill[],
-  there: (sheet: string) => boolean,
-  remembered: readonly Fold[],
-): () => Refolding | null {
-  const touched = fills.flatMap(({ target, leftovers }) => [target, ...leftovers])
-  const old = remembered.filter(
-    ({ area }) =>
-      area === null || (there(area.sheet) && touched.some((place) => overlap(place, area) !== null)),
-  )
-  const wanted = fills.flatMap(({ patch: { table, ours }, target }) => {
-    const folds = foldsOf(table, target)
-    if (folds.length === 0) return []
-    const others = fills.some(
-      (fill) => fill.target !== target && folds.some((area) => meet(area, fill.target)),
-    )
-    if (others) return []
-    return [
-      { folds, crowded: there(target.sheet) ? askNeighbours(context, folds, spanOf(target, ours)) : null },
-    ]
-  })
-  return () => {
-    const after = wanted.flatMap(({ folds, crowded }) => (crowded?.() ? [] : folds))
-    const before = old.flatMap(({ area }) => area ?? []).sort((a, b) => b.rows - a.rows)
-    const listed = (areas: readonly Area[]) => areas.map(addressOf).sort().join()
-    if (old.length === before.length && listed(before) === listed(after)) return null
-    const kept = new Set(remembered.filter((known) => !old.includes(known)).map(({ name }) => name))
-    const fresh: string[] = []
-    for (let k = 1; fresh.length < after.length; k++)
-      if (!kept.has(FOLD_PREFIX + k)) fresh.push(FOLD_PREFIX + k)
-    const is = new Map(after.map((area, k) => [fresh[k] ?? '', area]))
-    const was = new Map(old.map(({ name, refersTo }) => [name, refersTo]))
-    return {
-      before,
-      after,
-      names: [...new Set([...was.keys(), ...is.keys()])].map((name) => ({
-        name,
-        was: was.get(name) ?? null,
-        is: is.get(name) ?? null,
-      })),
-    }
-  }
-}
-
-/** The columns a table takes, with those it took before: they are its own as well. */
-function spanOf(target: Area, ours: Area | undefined): Area {
-  if (!ours || !overlap(target, ours)) return target
-  const column = Math.min(target.column, ours.column)
-  return {
-    ...target,
-    column,
-    columns: Math.max(target.column + target.columns, ours.column + ours.columns) - column,
-  }
-}
 
 /**
  * Refuses to write over what must stay: foreign cells where the user has not agreed, merged cells, results that a formula elsewhere spills.
