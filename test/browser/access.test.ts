@@ -59,11 +59,37 @@ test('the whole main job goes by keyboard: take both blocks, compute, look, writ
   expect(await desk.cell('Risk', 'A6')).toBe('Holding')
 })
 
+test('the sections behind the figures open by keyboard, and both studies run', async () => {
+  const { page, pane } = desk
+  await pane.getByRole('tab', { name: 'Report' }).focus()
+  await page.keyboard.press('ArrowLeft')
+  await pane.getByRole('tab', { name: 'Risk', selected: true }).waitFor()
+  const open = async (section: string): Promise<void> => {
+    await tabTo(new RegExp(`^${section}`))
+    await page.keyboard.press('Enter')
+    await pane.getByRole('button', { name: new RegExp(`^${section}`), expanded: true }).waitFor()
+  }
+  /** Runs a study of the section that was opened last; what is inside comes a moment after its heading. */
+  const run = async (name: string): Promise<void> => {
+    await pane.getByRole('button', { name }).waitFor()
+    await tabTo(new RegExp(`^${name}`))
+    await page.keyboard.press('Enter')
+  }
+  for (const section of ['Groups', 'Large losses', 'Against the benchmark', 'Normality']) await open(section)
+  await open('How sure')
+  await run('Run the bootstrap')
+  await pane.getByText(/in closed form \(ratio/).waitFor()
+  await open('Back-test')
+  await run('Run the back-test')
+  await pane.getByRole('img', { name: /against the value at risk/ }).waitFor()
+})
+
 describe.each(['Light', 'Dark', 'High contrast'])('In the %s theme', (theme) => {
   test.each(['Data', 'Risk', 'Report'])('axe finds nothing to object to in the view %s', async (view) => {
     const { page, pane } = desk
     await page.getByRole('combobox').first().selectOption({ label: theme })
     await pane.getByRole('tab', { name: view }).click()
+    for (const line of await pane.getByText('What it does, what can be done').all()) await line.click()
     await page.waitForTimeout(500)
     const frame = await (await page.locator('#pane').elementHandle())?.contentFrame()
     if (!frame) throw new Error('the pane has no frame')
