@@ -530,7 +530,7 @@ function addCurrency(rows: Rows, { names, decomposition: d }: Breakdown, currenc
     row([name, labels[i] ?? ''], [d.weights[i]!, parts.local[i]!, parts.currency[i]!, d.contribution[i]!]),
   )
   row(['Total'], sums, 'total')
-  rows.row([text('Currency', 'head')], { weight: 'Exposure', ...heads }, '', 'head')
+  rows.row([text('Currency', 'head')], { weight: WEIGHT, ...heads }, '', 'head')
   for (const { label, exposure, local, currency: foreign, contribution } of parts.byCurrency)
     row([label], [exposure, local, foreign, contribution])
   row(['Total'], sums, 'total')

@@ -7,6 +7,7 @@ import { activeOf, grossRatio, MOST_GROSS_CONTRIBUTION } from './benchmark'
 import type { Blocks, BookModel } from './book-model'
 import type { CurrencyRisk } from './currency'
 import { currencyRiskOf } from './currency'
+import type { Check, CheckKind } from './checks'
 import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -91,6 +92,9 @@ export interface Breakdown {
 export const CAUTION =
   'An estimate from past returns, not advice. Local rules and licensed practice come first.'
 
+/** Suspicions about the data that the model tells itself, by what it did about them. */
+const TOLD_BY_THE_MODEL: ReadonlySet<CheckKind> = new Set(['constant', 'short history', 'gaps', 'few dates'])
+
 /**
  * Computes the breakdown of a book.
  *
@@ -98,10 +102,16 @@ export const CAUTION =
  *
  * A share is also an elasticity: a position 1% larger (of itself) moves volatility by p_i percent (of itself), first order.
  *
+ * @param checks  of the data: those that warn stand with the figures
  * @throws Fault  what core's decompose throws
  * @cost          one pass of the model, and one for every group
  */
-export function breakDown(blocks: Blocks, book: BookModel, settings: Settings): Breakdown {
+export function breakDown(
+  blocks: Blocks,
+  book: BookModel,
+  settings: Settings,
+  checks: readonly Check[] = [],
+): Breakdown {
   const { holdings, returns, match } = blocks
   const weights = Float64Array.from(holdings.holdings, ({ weight }) => weight)
   const periods = settings.periodsPerYear ?? returns.proposedPeriodsPerYear
@@ -112,6 +122,7 @@ export function breakDown(blocks: Blocks, book: BookModel, settings: Settings): 
     ...match.findings,
     ...(match.currencies?.findings ?? []),
     ...book.findings,
+    ...checks.filter(({ weight, kind }) => weight === 'warns' && !TOLD_BY_THE_MODEL.has(kind)),
   ]
   const perPeriod = decompose(book.model, weights)
   const decomposition = annualise(perPeriod, periods ?? 1)

@@ -177,9 +177,9 @@ export function currencyRiskOf(
   weights.set(d.weights)
   const scale = Math.sqrt(d.periodsPerYear)
   const split = currencySplit(model.model, weights, model.currencyOf)
-  // the rest of the contributions shown beside it, not of the larger model's: the same but for rounding
-  const currency = split.currency.slice(0, labels.length).map((part) => part * scale)
-  const local = d.contribution.map((contribution, i) => contribution - (currency[i] ?? 0))
+  const scaled = (parts: Float64Array): Float64Array =>
+    parts.slice(0, labels.length).map((part) => part * scale)
+  const [local, currency] = [scaled(split.local), scaled(split.currency)]
 
   const series = [...new Set(match.seriesOf)].sort((a, b) => Number(a >= 0) - Number(b >= 0))
   const byCurrency = series.map((of) => {

@@ -32,18 +32,41 @@ export interface CorrectedVolatility {
  */
 export class Inspection {
   #facts: { returns: ReturnsReading; key: string; facts: SeriesFacts | null } | null = null
+  #found: { of: readonly unknown[]; checks: readonly Check[] } | null = null
   readonly #models = new Map<string, RiskModel | string>()
   #modelsOf: { returns: ReturnsReading; key: string } | null = null
 
-  /** @throws Fault "cancelled" */
+  /**
+   * What may be wrong with the data.
+   *
+   * @throws Fault "cancelled"
+   */
+  async checks(
+    blocks: Blocks,
+    settings: Settings,
+    calculator: Calculator,
+    work: Work,
+  ): Promise<readonly Check[]> {
+    const facts = await this.#factsOf(blocks.returns, settings, calculator, work)
+    const { match, holdings, returns } = blocks
+    const of = [facts, match, holdings, returns, settings]
+    if (!this.#found || of.some((part, k) => part !== this.#found?.of[k]))
+      this.#found = { of, checks: facts === null ? [] : checksOf(blocks, settings, facts) }
+    return this.#found.checks
+  }
+
+  /**
+   * The same, with the volatility that each correction gives.
+   *
+   * @throws Fault "cancelled"
+   */
   async lines(
     blocks: Blocks,
     settings: Settings,
     calculator: Calculator,
     work: Work,
   ): Promise<readonly CheckLine[]> {
-    const facts = await this.#factsOf(blocks.returns, settings, calculator, work)
-    if (facts === null) return []
+    const checks = await this.checks(blocks, settings, calculator, work)
     const key = JSON.stringify([
       modelChoices(settings),
       [...blocks.match.seriesOf],
@@ -55,7 +78,7 @@ export class Inspection {
     const weights = Float64Array.from(blocks.holdings.holdings, ({ weight }) => weight)
     const scale = Math.sqrt(settings.periodsPerYear ?? blocks.returns.proposedPeriodsPerYear ?? 1)
     const lines: CheckLine[] = []
-    for (const check of checksOf(blocks, settings, facts)) {
+    for (const check of checks) {
       const corrections: CorrectedVolatility[] = []
       for (const correction of check.corrections) {
         const model = await this.#modelOf(check, correction, blocks, settings, calculator, work)

@@ -493,8 +493,9 @@ export class LinkedBook {
         ? known.book
         : await modelOf(blocks, wanted, this.calculator, work)
     this.#model = { match, returns, factors, choices, book }
+    const checks = await this.#inspection.checks(blocks, this.settings, this.calculator, work)
     const earlier = this.breakdown?.decomposition
-    this.breakdown = breakDown(blocks, book, this.settings)
+    this.breakdown = breakDown(blocks, book, this.settings, checks)
     if (known?.book !== book || !sameFigures(earlier, this.breakdown.decomposition)) this.studies = NO_STUDIES
     this.faults = {}
   }

@@ -376,7 +376,7 @@ export function readReturns(
   else if (gaps > 0)
     find(
       'notes',
-      `${countOf(gaps, 'blank cell')} among the ${content} (first in ${addressOf(firstGap ?? area)}): dates on which a holding has a gap are left out.`,
+      `${countOf(gaps, 'blank cell')} among the ${content} (first in ${addressOf(firstGap ?? area)}): gaps, for which there is a rule among the choices.`,
       firstGap,
     )
   if (texts > 0)
