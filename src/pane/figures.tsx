@@ -63,7 +63,7 @@ function Band({ breakdown: { bands, decomposition } }: { breakdown: Breakdown })
 /** The portfolio's own figures, with what they rest on. */
 export function Figures({ breakdown, checks }: { breakdown: Breakdown; checks: BooksState['checks'] }) {
   const classes = useStyles()
-  const { decomposition: d, expectedReturn, effectiveWithheld } = breakdown
+  const { decomposition: d, expectedReturn, effectiveWithheld, currency } = breakdown
   const rows: readonly (readonly [label: string, value: string, remark?: string | null])[] = [
     ['Diversification benefit', percentText(d.diversificationBenefit, 2)],
     ['Diversification ratio', d.diversificationRatio === null ? NONE : numberText(d.diversificationRatio, 2)],
@@ -83,7 +83,10 @@ export function Figures({ breakdown, checks }: { breakdown: Breakdown; checks: B
       <Headline
         leading
         figures={[
-          [`Volatility ${breakdown.horizon}`, percentText(d.volatility, 2)],
+          [
+            `Volatility ${breakdown.horizon}${currency ? ` in ${currency.base}` : ''}`,
+            percentText(d.volatility, 2),
+          ],
           ...(expectedReturn
             ? ([[expectedReturn.label, percentText(expectedReturn.value, 2)]] as const)
             : []),
