@@ -1,7 +1,6 @@
-import { excelWorkbook, hostTheme, loadOnOpen, onThemeChanged, whenReady } from '../excel'
+import { hostTheme, loadOnOpen, onThemeChanged, whenReady } from '../excel'
 import { openPane } from '../pane'
-import { openBooks, type Books } from '../sheet'
-import { workerCalculator } from './worker-calculator'
+import type { Books } from '../sheet'
 
 /** Some hosts announce a change of their colours; the others are asked again whenever the pane is looked at. */
 function onThemeChange(listener: () => void): () => void {
@@ -33,9 +32,19 @@ async function start(root: HTMLElement): Promise<void> {
     root.textContent = 'Counterpoise works inside a workbook: open it from the Data tab in Excel.'
     return
   }
-  const books = await openBooks(excelWorkbook(), workerCalculator())
-  openPane(root, books, { theme: hostTheme, onThemeChange, version: COUNTERPOISE_VERSION })
-  startWithTable(books)
+  // what computes comes in a chunk of its own: the pane is drawn before it is there
+  const opening = import('./books').then(({ openWorkbook }) => openWorkbook())
+  const closePane = openPane(root, opening, {
+    theme: hostTheme,
+    onThemeChange,
+    version: COUNTERPOISE_VERSION,
+  })
+  try {
+    startWithTable(await opening)
+  } catch (error) {
+    closePane()
+    throw error
+  }
 }
 
 const root = document.getElementById('pane')!

@@ -1,4 +1,4 @@
-import { StrictMode, useEffect, useState, type KeyboardEvent } from 'react'
+import { lazy, StrictMode, Suspense, useEffect, useState, type KeyboardEvent } from 'react'
 import { createRoot } from 'react-dom/client'
 import {
   Button,
@@ -17,11 +17,13 @@ import { Dismiss16Regular } from '@fluentui/react-icons'
 import { CAUTION, type Books } from '../sheet'
 import { DataView } from './data'
 import { Sentence } from './place'
-import { ReportView } from './report'
 import { RiskView } from './risk'
 import { StatusLine } from './status'
 import { BooksProvider, useBooks, useBooksState } from './store'
 import { useLook, type HostTheme } from './theme'
+
+// It lays out the table that it would write, and nobody begins with it.
+const ReportView = lazy(() => import('./report'))
 
 /** What the pane asks of the host it stands in. */
 export interface PaneHost {
@@ -69,6 +71,10 @@ const useStyles = makeStyles({
   },
   // Docked below the view: when a message comes, nothing that is being read or pressed moves.
   messages: { display: 'grid', maxHeight: '40vh', overflowY: 'auto' },
+  opening: {
+    padding: `${tokens.spacingVerticalL} ${tokens.spacingHorizontalL}`,
+    color: tokens.colorNeutralForeground2,
+  },
   message: { borderRadius: 0, borderLeftWidth: 0, borderRightWidth: 0, borderBottomWidth: 0 },
   messageText: { fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
   foot: {
@@ -244,7 +250,11 @@ function Pane({ version }: { version: string }) {
         >
           {view === 'data' && <DataView />}
           {view === 'risk' && <RiskView />}
-          {view === 'report' && <ReportView />}
+          {view === 'report' && (
+            <Suspense>
+              <ReportView />
+            </Suspense>
+          )}
         </div>
       </main>
       <Messages />
@@ -256,7 +266,24 @@ function Pane({ version }: { version: string }) {
   )
 }
 
-function ThemedPane({ books, host }: { books: Books; host: PaneHost }) {
+/** The books as soon as they are open. Who opens them tells what went wrong. */
+function useOpened(opening: Promise<Books>): Books | null {
+  const [books, setBooks] = useState<Books | null>(null)
+  useEffect(() => {
+    let asked = true
+    opening.then(
+      (opened) => asked && setBooks(opened),
+      () => undefined,
+    )
+    return () => {
+      asked = false
+    }
+  }, [opening])
+  return books
+}
+
+function ThemedPane({ opening, host }: { opening: Promise<Books>; host: PaneHost }) {
+  const books = useOpened(opening)
   const classes = useStyles()
   const { theme, scheme } = useLook(
     () => host.theme(),
@@ -264,23 +291,30 @@ function ThemedPane({ books, host }: { books: Books; host: PaneHost }) {
   )
   return (
     <FluentProvider theme={theme} className={mergeClasses(classes.provider, classes[scheme])}>
-      <BooksProvider books={books}>
-        <Pane version={host.version} />
-      </BooksProvider>
+      {books ? (
+        <BooksProvider books={books}>
+          <Pane version={host.version} />
+        </BooksProvider>
+      ) : (
+        <div className={classes.opening} role="status">
+          Opening the workbook…
+        </div>
+      )}
     </FluentProvider>
   )
 }
 
 /**
- * Draws the task pane into an element and keeps it in step with the books until the returned function is called.
+ * Draws the task pane into an element and keeps it in step with the books until the returned function is called. It is there before the
+ * books are open; where they cannot be opened it goes on waiting, and whoever opens them takes it away and says why.
  *
  * @param root  what stands in it is replaced; the pane fills the whole window
  */
-export function openPane(root: HTMLElement, books: Books, host: PaneHost): () => void {
+export function openPane(root: HTMLElement, opening: Promise<Books>, host: PaneHost): () => void {
   const drawn = createRoot(root)
   drawn.render(
     <StrictMode>
-      <ThemedPane books={books} host={host} />
+      <ThemedPane opening={opening} host={host} />
     </StrictMode>,
   )
   return () => drawn.unmount()

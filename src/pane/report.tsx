@@ -74,7 +74,7 @@ function ChecksList({ state }: { state: BooksState }) {
 }
 
 /** What to write where. */
-export function ReportView() {
+export default function ReportView() {
   const books = useBooks()
   const classes = useStyles()
   const state = useBooksState()

@@ -89,9 +89,6 @@ export interface Breakdown {
   } | null
 }
 
-export const CAUTION =
-  'An estimate from past returns, not advice. Local rules and licensed practice come first.'
-
 /** Suspicions about the data that the model tells itself, by what it did about them. */
 const TOLD_BY_THE_MODEL: ReadonlySet<CheckKind> = new Set(['constant', 'short history', 'gaps', 'few dates'])
 

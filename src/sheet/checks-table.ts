@@ -1,10 +1,9 @@
 import type { Breakdown } from './breakdown'
-import { CAUTION } from './breakdown'
 import type { Area } from './cells'
 import { addressOf } from './cells'
 import type { CheckLine } from './inspection'
 import type { Mark, Table, TableCell } from './table'
-import { countOf, dateText } from './wording'
+import { CAUTION, countOf, dateText } from './wording'
 
 const HEADS: readonly (readonly [head: string, width: number])[] = [
   ['Weight', 10],

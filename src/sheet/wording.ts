@@ -66,3 +66,7 @@ export const POSITION_HEADS = [
   'Beta to portfolio',
   'Correlation with portfolio',
 ] as const
+
+/** What stands beside all figures, wherever they are shown. */
+export const CAUTION =
+  'An estimate from past returns, not advice. Local rules and licensed practice come first.'

@@ -53,6 +53,7 @@ test('the whole main job goes by keyboard: take both blocks, compute, look, writ
   await pane.getByRole('tab', { name: 'Risk', selected: true }).focus()
   await page.keyboard.press('ArrowRight')
   await pane.getByRole('tab', { name: 'Report', selected: true }).waitFor()
+  await pane.getByRole('button', { name: 'Write table' }).waitFor()
   await tabTo(/^Write table/)
   await page.keyboard.press('Enter')
   await pane.getByText(/^Table written to/).waitFor()
