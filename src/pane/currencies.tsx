@@ -41,7 +41,7 @@ export default function Currencies({
           [`Currency part, against ${base}`, percentText(foreign, 2)],
         ]}
       />
-      <p className={classes.text}>{CURRENCY_READING}</p>
+      <p className={classes.text}>{CURRENCY_READING.join(' ')}</p>
       <Section title="By currency" level={3}>
         <FigureTable
           label="By currency"

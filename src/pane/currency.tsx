@@ -11,16 +11,15 @@ export function Currency({ state }: { state: BooksState }) {
   const { holdings, returns, settings, faults } = state
   const { currency } = settings
   if (!holdings || !returns || (holdings.currencyHeader === null && currency === null)) return null
-  const labels = [...new Set(holdings.holdings.map((holding) => holding.currency))].filter(
-    (label) => label !== '',
-  )
+  const all = [...new Set(holdings.holdings.map((holding) => holding.currency))]
+  const labels = all.filter((label) => label !== '')
   return (
     <Section title="Currency">
       <div className={classes.cell}>
         <Entry
           label="Base currency"
           shown={currency?.base ?? ''}
-          hint={`Empty: risk is not split by currency.${labels.length > 0 ? ` In the holdings: ${listOf(labels, 6)}.` : ''}`}
+          hint={`Empty: risk is not split by currency.${labels.length > 0 ? ` In the holdings: ${listOf(labels, 6)}.` : ''}${all.includes('') ? ' Blank cells count as in the base currency.' : ''}`}
           read={(text) => ({ value: text })}
           commit={(base) =>
             void books.choose({

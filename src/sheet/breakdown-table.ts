@@ -500,12 +500,12 @@ function addActive(rows: Rows, active: Active, horizon: string): void {
 function addCurrency(rows: Rows, { names, decomposition: d }: Breakdown, currency: CurrencyRisk): void {
   const { base, labels, parts } = currency
   rows.blank()
-  rows.add([text(`Currency: local and currency parts, base currency ${base}`, 'head')])
+  rows.add([text(`Currency: base ${base}`, 'head')])
   if (typeof parts === 'string') {
     rows.add([text(parts, 'note')])
     return
   }
-  rows.add([text(CURRENCY_READING, 'note')])
+  for (const sentence of CURRENCY_READING) rows.add([text(sentence, 'note')])
   const heads = { 'stand-alone': 'Local part', marginal: 'Currency part', contribution: CONTRIBUTION }
   const row = (
     cells: readonly string[],

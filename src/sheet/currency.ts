@@ -204,5 +204,7 @@ export function currencyText({ base, returnsIn }: CurrencyMatch, { returnKind }:
 }
 
 /** What the two parts are, beside them. */
-export const CURRENCY_READING =
-  'Currency part: weight times the covariance of the currency’s return with the portfolio’s, over the volatility. Local part: the rest of the contribution, with the small product of local and currency return in it.'
+export const CURRENCY_READING = [
+  'Currency part: weight times the covariance of the currency’s return with the portfolio’s, over the volatility.',
+  'Local part: the rest of the contribution, with the small product of local and currency return in it.',
+] as const

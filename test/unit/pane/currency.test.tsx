@@ -87,6 +87,9 @@ describe('the choice', () => {
     const plain = HOLDINGS.map(([name, , weight]) => [name!, weight!])
     expect(drawn({}, plain)).toBe('')
     expect(drawn({})).toContain('In the holdings: EUR and USD.')
+    expect(drawn({})).not.toContain('Blank cells')
+    const blank = HOLDINGS.map(([name, label, weight]) => [name!, label === 'EUR' ? '' : label!, weight!])
+    expect(drawn({}, blank)).toContain('In the holdings: USD. Blank cells count as in the base currency.')
   })
 
   test('asks what foreign returns stand in once there is a base currency, and shows its fault', () => {

@@ -326,8 +326,8 @@ test('the written table states the base currency and both parts, which add up in
   const { cells } = breakdownTable('Book', await breakdownOf(chosen('local')))
   const rows = cells.map((row) => row.map(({ value }) => value).filter((value) => value !== ''))
   expect(rows[1]?.[0]).toMatch(/^Volatility 1\.17% a year in EUR \(95% band .*\), from 10 dates/)
-  const at = rows.findIndex(([first]) => first === 'Currency: local and currency parts, base currency EUR')
-  const section = rows.slice(at + 2, at + 12)
+  const at = rows.findIndex(([first]) => first === 'Currency: base EUR')
+  const section = rows.slice(at + 3, at + 13)
   expect(section.map((row) => row.filter((value) => typeof value === 'string'))).toEqual([
     ['Holding', 'Currency', 'Weight', 'Local part', 'Currency part', 'Contribution to risk'],
     ['Harbour', 'EUR'],
