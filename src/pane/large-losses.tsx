@@ -1,12 +1,12 @@
 import { useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
-import { percentText, type Breakdown, type TailChoice, type Tails } from '../sheet'
+import { numberText, percentText, type Breakdown, type TailChoice, type Tails } from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
 import { confidenceText, digitsFor, sharesOf } from './measure'
 import { NONE } from './positions'
 import { useBooks } from './store'
 import { Headline, Remark } from './headline'
-import { FigureTable, Pairs, TieOut, WIDTHS } from './table'
+import { FigureTable, Pairs, TieOut } from './table'
 
 const useStyles = makeStyles({
   fields: {
@@ -115,9 +115,9 @@ function Parts({ breakdown, tails }: { breakdown: Breakdown; tails: Tails }) {
         label="Shares of large losses"
         columns={[
           { head: 'Position', width: null },
-          { head: 'Share of risk', width: 52 },
-          { head: 'Share of expected shortfall', width: WIDTHS.contribution },
-          { head: 'Difference, points', width: 66 },
+          { head: 'Share of risk', width: 54 },
+          { head: 'Share of expected shortfall', width: 72 },
+          { head: 'Difference, points', width: 72 },
         ]}
         rows={order.map((i) => ({
           key: i,
@@ -167,10 +167,13 @@ export default function LargeLosses({
   breakdown,
   choice,
   fault,
+  capital,
 }: {
   breakdown: Breakdown
   choice: TailChoice
   fault: string | undefined
+  /** what the amounts of the holdings were divided by; null where they are weights */
+  capital: number | null
 }) {
   const classes = useStyles()
   const { tails } = breakdown
@@ -195,10 +198,19 @@ export default function LargeLosses({
         {risk.standardError !== null &&
           ` Standard error of the value at risk ${percentText(risk.standardError, 2)} at least: fat tails make it larger.`}
       </p>
+      {capital !== null && (
+        <p className={classes.text}>
+          Of the capital of {numberText(capital, 0)}: value at risk{' '}
+          {numberText(risk.valueAtRisk * capital, 0)}
+          {risk.shortfall !== null && `, expected shortfall ${numberText(risk.shortfall * capital, 0)}`}.
+        </p>
+      )}
       <Fields choice={choice} fault={fault} />
-      {tails.difference !== null && <p className={classes.text}>{tails.difference}</p>}
       {tails.partsWithheld === null ? (
-        <Parts breakdown={breakdown} tails={tails} />
+        <>
+          {tails.difference !== null && <p className={classes.text}>{tails.difference}</p>}
+          <Parts breakdown={breakdown} tails={tails} />
+        </>
       ) : (
         <Remark text={tails.partsWithheld} />
       )}

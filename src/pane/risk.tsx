@@ -142,7 +142,12 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
         </Folded>
       )}
       <Folded title="Large losses" headline={tailsHeadline(breakdown)}>
-        <LargeLosses breakdown={breakdown} choice={state.settings.tails} fault={state.faults.tails} />
+        <LargeLosses
+          breakdown={breakdown}
+          choice={state.settings.tails}
+          fault={state.faults.tails}
+          capital={state.holdings?.capital ?? null}
+        />
       </Folded>
       {active && (
         <Folded

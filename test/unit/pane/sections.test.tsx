@@ -77,8 +77,15 @@ describe('error bands', () => {
 })
 
 describe('large losses', () => {
-  const drawn = (breakdown: Breakdown) =>
-    draw(<LargeLosses breakdown={breakdown} choice={DEFAULT_SETTINGS.tails} fault={undefined} />)
+  const drawn = (breakdown: Breakdown, capital: number | null = null) =>
+    draw(
+      <LargeLosses
+        breakdown={breakdown}
+        choice={DEFAULT_SETTINGS.tails}
+        fault={undefined}
+        capital={capital}
+      />,
+    )
   const parametric = { method: { kind: 'normal' }, confidence: 0.99, periods: 1 } as const
 
   test('show shares of the shortfall beside shares of risk; under a normal distribution they are the same', async () => {
@@ -96,9 +103,24 @@ describe('large losses', () => {
   test('say in place why parts are withheld, and show no table of them', async () => {
     // six dates at 95% confidence: a third of a date in the tail
     const breakdown = await breakdownOf()
-    const { said, rows } = drawn(breakdown)
+    const { tails } = breakdown
+    if (typeof tails === 'string') throw new Error(tails)
+    const { said, rows } = drawn({ ...breakdown, tails: { ...tails, difference: 'Ferry has more of it.' } })
     expect(said).toContain('Parts are withheld')
+    expect(said).not.toContain('Ferry')
     expect(rows).toEqual([])
+  })
+
+  test('are told in money too where the holdings are amounts', async () => {
+    const breakdown = await breakdownOf()
+    const { tails } = breakdown
+    if (typeof tails === 'string') throw new Error(tails)
+    const risk = { ...tails.risk, valueAtRisk: 0.02, shortfall: 0.03 }
+    // by hand: 2% and 3% of 1,500
+    expect(drawn({ ...breakdown, tails: { ...tails, risk } }, 1500).said).toContain(
+      'Of the capital of 1,500: value at risk 30, expected shortfall 45.',
+    )
+    expect(drawn(breakdown).said).not.toContain('Of the capital')
   })
 
   test('say in place why there are none, and keep the fields that may mend it', async () => {
