@@ -54,6 +54,8 @@ export interface BookModel {
   readonly currency: CurrencyModel | string | null
   readonly factors: { readonly model: FactorModel; readonly names: readonly string[] } | null
   readonly window: Window | null
+  /** the rule for gaps that had a part in it; 'common dates' where there were none */
+  readonly rule: GapRule
   /** what the model rests on, as label and value */
   readonly quality: readonly (readonly [string, string])[]
   readonly normality: SetUp['normality']
@@ -140,6 +142,7 @@ function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelC
         : currencyModel(modelOfSeries([...match.seriesOf, ...foreign]), currencies, foreign)),
     factors: null,
     window: null,
+    rule: 'common dates',
     quality: [],
     normality: null,
     findings,
@@ -224,6 +227,7 @@ class Estimation {
         first: returns.dates?.[used.rows[0] ?? 0] ?? null,
         last: returns.dates?.[used.rows.at(-1) ?? 0] ?? null,
       },
+      rule,
       normality: made.normality,
       findings: this.#findings,
     }

@@ -11,6 +11,13 @@ const TARGETS = {
   oas: 'a multiple of the identity (Chen, Wiesel, Eldar & Hero 2010)',
 } as const
 
+/** What goes with a rule for gaps that leaves no date out. */
+const PAIRED = {
+  'own overlap': 'Sample covariance of each pair over the dates it shares, divisor those dates \u2212 1',
+  completed:
+    'Maximum likelihood under normal returns, divisor T: each shorter history by regression on the longer ones (Stambaugh 1997)',
+} as const
+
 /** What the covariance is estimated by, as one line. */
 export function estimatorText(estimator: EstimatorChoice): string {
   switch (estimator.kind) {
@@ -64,7 +71,7 @@ export function settingLines(
             ? `Last ${countOf(lookBack.dates, 'date')}`
             : `Since ${dateText(lookBack.date)}`,
       ],
-      ['Estimator', estimatorText(estimator)],
+      ['Estimator', book.rule === 'common dates' ? estimatorText(estimator) : PAIRED[book.rule]],
       ...book.quality,
     )
   }
