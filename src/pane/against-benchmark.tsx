@@ -14,10 +14,10 @@ const useStyles = makeStyles({
 /** Tracking error and what each active weight has of it. */
 export default function AgainstBenchmark({
   active,
-  horizon,
+  breakdown: { horizon, names: held },
 }: {
   active: Active
-  horizon: Breakdown['horizon']
+  breakdown: Breakdown
 }) {
   const classes = useStyles()
   const { risk, names, sharesWithheld } = active
@@ -62,7 +62,8 @@ export default function AgainstBenchmark({
         rows={[
           ...order.map((i) => ({
             key: i,
-            name: names[i] ?? '',
+            // a benchmark of one series stands after the holdings and may bear the name of one
+            name: i < held.length ? (names[i] ?? '') : `${names[i] ?? ''} (the benchmark)`,
             cells: [
               percentText(weights[i]!, digits),
               percentText(risk.contribution[i]!, digits + 1),

@@ -9,7 +9,7 @@ const useStyles = makeStyles({
   drawing: { display: 'block', overflow: 'visible' },
   zero: {
     stroke: tokens.colorNeutralStroke1,
-    '@media (forced-colors: active)': { stroke: 'GrayText' },
+    '@media (forced-colors: active)': { stroke: 'CanvasText' },
   },
   returns: {
     fill: 'none',
@@ -32,6 +32,7 @@ const useStyles = makeStyles({
     fontSize: tokens.fontSizeBase100,
     fontVariantNumeric: 'tabular-nums',
     fontFamily: tokens.fontFamilyBase,
+    '@media (forced-colors: active)': { fill: 'CanvasText' },
   },
   key: {
     display: 'flex',

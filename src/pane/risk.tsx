@@ -154,7 +154,7 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
           title="Against the benchmark"
           headline={`Tracking error (ex ante) ${percentText(active.risk.trackingError, 2)} ${horizon}`}
         >
-          <AgainstBenchmark active={active} horizon={horizon} />
+          <AgainstBenchmark active={active} breakdown={breakdown} />
         </Folded>
       )}
       {(breakdown.factors ?? state.factors) && (

@@ -135,9 +135,9 @@ describe('large losses', () => {
 })
 
 describe('the benchmark', () => {
-  const drawn = ({ active, horizon }: Breakdown) => {
-    if (!active) throw new Error('no benchmark')
-    return draw(<AgainstBenchmark active={active} horizon={horizon} />)
+  const drawn = (breakdown: Breakdown) => {
+    if (!breakdown.active) throw new Error('no benchmark')
+    return draw(<AgainstBenchmark active={breakdown.active} breakdown={breakdown} />)
   }
 
   test.each(['total returns', 'benchmark-relative returns'] as const)(
@@ -155,6 +155,13 @@ describe('the benchmark', () => {
       expect(said).toContain('difference 0.0000%')
     },
   )
+
+  test('that is one series has a row of its own, told from the holding of that name', async () => {
+    const { rows } = drawn(await breakdownOf({ benchmark: { kind: 'series', name: 'Ferry' } }))
+    const weights = new Map(rows.map(([name, weight]) => [name, weight]))
+    expect(weights.get('Ferry')).toBe('20.0%')
+    expect(weights.get('Ferry (the benchmark)')).toBe('\u2212100.0%')
+  })
 
   test('equal to the book gives a tracking error of 0 and shares that are not defined', async () => {
     const same = HOLDINGS.map((row, k) => (k === 0 ? row : [...row.slice(0, 4), row[1]!]))
