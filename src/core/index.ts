@@ -44,25 +44,28 @@ export {
   type Decomposition,
   type GroupDecomposition,
 } from './decomposition'
+export { MOST_LAGS, shareBroughtBack, usualLags } from './lagged'
 export { logReturns, simpleReturns } from './returns'
+export { longestRun, rhythm, shareInRuns, withoutRuns, type Run } from './runs'
 export { RISK_BAND, shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
 export {
   autocorrelation,
+  carefulError,
   frequencySteps,
+  jointLimit,
   laggedCrossCorrelation,
   ljungBox,
-  longestRun,
   outliers,
   robustScale,
   scalingFactor,
-  shareInRuns,
   splitRatio,
+  unsmoothedReturns,
   unsmoothedVolatility,
+  unsmoothingFactor,
   type Frequency,
   type FrequencySteps,
   type Outliers,
   type RobustScale,
-  type Run,
   type SerialCorrelation,
   type SplitRatio,
   type TestResult,

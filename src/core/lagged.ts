@@ -2,7 +2,7 @@ import { Fault } from './fault'
 import type { ReturnsModel, RiskModel } from './risk-model'
 
 /** More lags than this say more about noise than about slow prices. */
-const MOST_LAGS = 10
+export const MOST_LAGS = 10
 
 /**
  * The risk model of returns with covariances across dates (long-run covariance): where holdings react late, or prices
@@ -76,6 +76,32 @@ export function laggedModel(returns: ReturnsModel, lags: number): RiskModel {
       return matrix
     },
   }
+}
+
+/**
+ * How many lagged terms suit so many dates: floor( 4 (T / 100)^(2/9) ).
+ *
+ * @param dates  T
+ * @source       Newey & West (1994), Automatic Lag Selection in Covariance Matrix Estimation, REStud 61(4), 631-653 (from memory)
+ * @example      usualLags(260) // 4
+ */
+export const usualLags = (dates: number): number => Math.floor(4 * (dates / 100) ** (2 / 9))
+
+/**
+ * How much of its covariance with others lagged terms bring back, where a series shows every k dates what happened in all of them: a share 1/k
+ * falls on each of the lags 0 to k - 1, and a lag counts with its weight 1 - lag/(L + 1).
+ *
+ * @param every  k; whole number from 1
+ * @param lags   L; whole number from 0
+ * @returns      0 to 1
+ * @source       derived here from the weights of `laggedModel`
+ * @example      shareBroughtBack(4, 7) // 0.8125
+ * @example      shareBroughtBack(4, 0) // 0.25
+ */
+export function shareBroughtBack(every: number, lags: number): number {
+  let sum = 0
+  for (let lag = 0; lag < Math.min(every, lags + 1); lag++) sum += 1 - lag / (lags + 1)
+  return sum / every
 }
 
 /**

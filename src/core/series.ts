@@ -1,6 +1,7 @@
 import gammainc from '@stdlib/math-base-special-gammainc'
 import normalQuantile from '@stdlib/stats-base-dists-normal-quantile'
 import { Fault } from './fault'
+import type { Run } from './runs'
 
 // Statistics of one series at a time, for looking at data before anything is computed from them. NaN marks a gap. What a series does
 // not define (a correlation of something that never moves) is null: looking at bad data must not stop at the first bad series.
@@ -146,6 +147,38 @@ function deviations(x: Float64Array): Deviations | null {
   return { values, count: observed.length, squares }
 }
 
+/**
+ * The standard error of a correlation over time by whichever of its two bands is the wider: both allow for chance, and the wider one is the careful
+ * one.
+ *
+ * @example carefulError({ value: .3, pairs: 99, band: .196, robustBand: .294 }) // 0.15
+ */
+export const carefulError = ({ band, robustBand }: SerialCorrelation): number =>
+  Math.max(band, robustBand) / BAND
+
+/**
+ * How many standard errors from 0 so many normal estimates all stay within, with a probability of at least 1 - chance: each gets an equal part of
+ * the chance, whatever ties the estimates together.
+ *
+ *   the normal quantile at 1 - chance / (2 count)
+ *
+ * @param count    whole number from 1
+ * @param chance   above 0, below 1
+ * @throws Fault   "out-of-range"
+ * @source         the inequality of Bonferroni; Dunn (1961), Multiple Comparisons Among Means, JASA 56, 52-64 (from memory)
+ * @example        jointLimit(1, .05) // 1.959964
+ * @example        jointLimit(6, .01) // 3.1440
+ */
+export function jointLimit(count: number, chance: number): number {
+  checkWhole(count, 1, 'count', 'such as 10')
+  if (!(chance > 0 && chance < 1)) {
+    throw new Fault('out-of-range', `chance ${chance}`, 'a number between 0 and 1 is needed, such as 0.01', {
+      argument: 'chance',
+    })
+  }
+  return normalQuantile(1 - chance / 2 / count, 0, 1)
+}
+
 /** The outcome of a test: what was measured, and how often chance alone reaches that. */
 export interface TestResult {
   readonly statistic: number
@@ -178,58 +211,6 @@ export function ljungBox(x: Float64Array, lags: number): TestResult | null {
   }
   const statistic = count * (count + 2) * sum
   return { statistic, pValue: gammainc(statistic / 2, lags / 2, true, true) }
-}
-
-/** Rows that follow one another; length 0 where there are none. */
-export interface Run {
-  /** Row of its first date. */
-  readonly start: number
-  readonly length: number
-}
-
-/**
- * The longest run of one and the same number, the earliest of several. A gap ends a run. Returns of exactly 0 in a row mean a price that
- * was not renewed.
- *
- * @param x     T; NaN where there is a gap
- * @param value default 0
- * @source      common practice, no source
- * @cost        O(T)
- * @example     longestRun(Float64Array.of(.01, 0, 0, 0, -.02, 0)) // {"start": 1, "length": 3}
- */
-export function longestRun(x: Float64Array, value = 0): Run {
-  return runsOf(x, value).reduce((longest, run) => (run.length > longest.length ? run : longest), {
-    start: 0,
-    length: 0,
-  })
-}
-
-/**
- * The share of observations that stand in runs of one and the same number.
- *
- * @param x     T; NaN where there is a gap, which is no observation
- * @param value default 0
- * @param least the shortest run that counts; default 2
- * @returns     0 to 1; 0 where there are no observations
- * @source      common practice, no source
- * @cost        O(T)
- * @example     shareInRuns(Float64Array.of(.01, 0, 0, 0, -.02, 0, .01, .02, .01, .03)) // 0.3
- */
-export function shareInRuns(x: Float64Array, value = 0, least = 2): number {
-  const count = x.reduce((sum, entry) => sum + (Number.isNaN(entry) ? 0 : 1), 0)
-  const inRuns = runsOf(x, value).reduce((sum, { length }) => sum + (length >= least ? length : 0), 0)
-  return count === 0 ? 0 : inRuns / count
-}
-
-function runsOf(x: Float64Array, value: number): Run[] {
-  const runs: Run[] = []
-  for (let t = 0; t < x.length; t++) {
-    if (x[t] !== value) continue
-    const start = t
-    while (t + 1 < x.length && x[t + 1] === value) t++
-    runs.push({ start, length: t + 1 - start })
-  }
-  return runs
 }
 
 /** Centre and width of a series that single wild values cannot move. */
@@ -354,6 +335,44 @@ export function scalingFactor(autocorrelations: Float64Array, periods: number): 
   return Math.sqrt(Math.max(0, variance))
 }
 
+/**
+ * The volatility behind smoothed returns over that of the returns themselves (see `unsmoothedVolatility`): sqrt( (1 + rho) / (1 - rho) ).
+ *
+ * @param rho    the share of the last reported return in each; above -1, below 1
+ * @throws Fault "out-of-range"
+ * @source       as for `unsmoothedVolatility`
+ * @example      unsmoothingFactor(.6) // 2
+ */
+export function unsmoothingFactor(rho: number): number {
+  checkSmoothing(rho)
+  return Math.sqrt((1 + rho) / (1 - rho))
+}
+
+/**
+ * Returns without smoothing, where each reported one takes a share rho of the one reported before.
+ *
+ *   u_t = (r_t - rho r_(t-1)) / (1 - rho)
+ *
+ * @param x      T; NaN where there is a gap
+ * @param rho    above -1, below 1
+ * @returns      T; NaN for the first one, at gaps and on the date after one
+ * @throws Fault "out-of-range" (rho)
+ * @source       Geltner (1993), J. of Real Estate Research 8(3), 325-345 (from memory)
+ * @cost         O(T)
+ * @example      unsmoothedReturns(Float64Array.of(.02, .01, .03), .5) // [NaN, 0, 0.05]
+ */
+export function unsmoothedReturns(x: Float64Array, rho: number): Float64Array {
+  checkSmoothing(rho)
+  return x.map((value, t) => (t === 0 ? NaN : (value - rho * x[t - 1]!) / (1 - rho)))
+}
+
+function checkSmoothing(rho: number): void {
+  if (Math.abs(rho) < 1) return
+  throw new Fault('out-of-range', `rho ${rho}`, 'a number between -1 and 1 is needed, such as 0.3', {
+    argument: 'rho',
+  })
+}
+
 /** A volatility per period as it is reported and as it would be without smoothing. */
 export interface UnsmoothedVolatility {
   /** Standard deviation as reported, divisor N - 1. */
@@ -388,7 +407,7 @@ export function unsmoothedVolatility(x: Float64Array): UnsmoothedVolatility | nu
   if (correlation === null || moved === null) return null
   const volatility = Math.sqrt(moved.squares / (moved.count - 1))
   const rho = correlation.value
-  const factor = rho > 0 && rho < 1 ? Math.sqrt((1 + rho) / (1 - rho)) : null
+  const factor = rho > 0 && rho < 1 ? unsmoothingFactor(rho) : null
   return { volatility, unsmoothed: factor && factor * volatility, factor, autocorrelation: correlation }
 }
 
