@@ -28,8 +28,8 @@ import type {
   Shrinkage,
   Weighting,
 } from '../core'
-import type { FactsInput, SeriesFacts } from './series-facts'
-import { seriesFacts } from './series-facts'
+import type { FactsInput, SeriesFacts } from './checks'
+import { seriesFacts } from './checks'
 import type { GapRule, RepairRule } from './settings'
 
 /** A long action under way: where it tells its progress and hears that it is not wanted any more. */

@@ -416,7 +416,7 @@ export function readReturns(
 }
 
 /** Returns between neighbouring dates; one that starts or ends in a gap is a gap. */
-function changesOf(
+export function changesOf(
   prices: Float64Array,
   rows: number,
   columns: number,

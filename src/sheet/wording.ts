@@ -41,6 +41,21 @@ export function numberText(value: number, digits = 2): string {
 export const countOf = (count: number, noun: string, plural = `${noun}s`): string =>
   `${count.toLocaleString('en-US')} ${count === 1 ? noun : plural}`
 
+const ENDINGS: { readonly [lastDigit: number]: string } = { 1: 'st', 2: 'nd', 3: 'rd' }
+
+/**
+ * Which one of a row of things.
+ * @example ordinal(2) // 'second'
+ * @example ordinal(21) // '21st'
+ * @example ordinal(112) // '112th'
+ */
+export function ordinal(k: number): string {
+  if (k === 2) return 'second'
+  if (k === 3) return 'third'
+  const isTeen = Math.floor(k / 10) % 10 === 1
+  return `${k}${isTeen ? 'th' : (ENDINGS[k % 10] ?? 'th')}`
+}
+
 /** What a user typed, in quotes and cut to a readable length. */
 export function quote(text: unknown): string {
   const shown = String(text)

@@ -1,6 +1,6 @@
 /**
  * No number here is from outside: series are drawn with a fixed seed or typed, and what is expected follows from how they are made.
- * Thresholds are the program's own conventions and are stated in src/sheet/checks.ts.
+ * Thresholds are the program's own conventions and are stated in src/sheet/checks.
  */
 import { Matrix, solve } from 'ml-matrix'
 import { uniformInt } from 'pure-rand/distribution/uniformInt'
@@ -8,7 +8,7 @@ import { mersenne } from 'pure-rand/generator/mersenne'
 import type { CellValue, Settings } from '../../../src/sheet'
 import { addressOf } from '../../../src/sheet'
 import type { Check, CheckKind } from '../../../src/sheet/checks'
-import { seriesFacts } from '../../../src/sheet/series-facts'
+import { seriesFacts } from '../../../src/sheet/checks'
 import { absoluteGap } from '../../closeness'
 import { textbookCovariance } from '../../textbook'
 import { blockOf } from './blocks-of-cells'

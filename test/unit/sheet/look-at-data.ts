@@ -2,7 +2,7 @@ import type { Block, ReturnsReading, Settings } from '../../../src/sheet'
 import { DEFAULT_SETTINGS, matchHoldings, PLAIN_CULTURE, readHoldings, readReturns } from '../../../src/sheet'
 import { addressOf } from '../../../src/sheet'
 import { checksOf, type Check } from '../../../src/sheet/checks'
-import { factsInput, seriesFacts, type FactsInput, type SeriesFacts } from '../../../src/sheet/series-facts'
+import { factsInput, seriesFacts, type FactsInput, type SeriesFacts } from '../../../src/sheet/checks'
 
 export function factsOf(input: FactsInput): SeriesFacts {
   const steps = seriesFacts(input)

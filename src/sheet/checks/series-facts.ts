@@ -1,15 +1,16 @@
-import normalQuantile from '@stdlib/stats-base-dists-normal-quantile'
 import {
   autocorrelation,
+  carefulError,
   frequencySteps,
   laggedCrossCorrelation,
   longestRun,
   outliers,
+  rhythm,
   shareInRuns,
-} from '../core'
-import type { FrequencySteps, Run, SerialCorrelation } from '../core'
-import type { ReturnsReading } from './returns'
-import type { Settings } from './settings'
+} from '../../core'
+import type { FrequencySteps, Run, SerialCorrelation } from '../../core'
+import type { ReturnsReading } from '../returns'
+import type { Settings } from '../settings'
 
 /** What goes in: plain data, as it may cross to a worker. Rows before `from` lie before the look-back and are not looked at. */
 export interface FactsInput {
@@ -82,9 +83,6 @@ const MOST_ZEROS = 0.25
 
 /** Distances a series may weigh with in the average of all, in robust scales: one wild value must not become everyone's. */
 const MOST_IN_AVERAGE = 5
-
-/** Standard errors in the bands of the statistics asked. */
-const BAND = normalQuantile(0.975, 0, 1)
 
 /** The first row of the look-back; the number of rows where it reaches no return. */
 function firstRow(returns: ReturnsReading, lookBack: Settings['lookBack']): number {
@@ -163,9 +161,8 @@ export function* seriesFacts(input: FactsInput): Generator<number, SeriesFacts> 
 const levelOf = (value: number, { median, scale }: SeriesFact): number =>
   scale > 0 ? Math.max(-MOST_IN_AVERAGE, Math.min(MOST_IN_AVERAGE, (value - median) / scale)) : NaN
 
-/** Both bands allow for chance; the wider one is the careful one. */
 const inErrors = (found: SerialCorrelation | null): TimeCorrelation | null =>
-  found && { value: found.value, standardError: Math.max(found.band, found.robustBand) / BAND }
+  found && { value: found.value, standardError: carefulError(found) }
 
 function factOf(x: Float64Array, from: number): SeriesFact {
   const first = x.findIndex((value) => !Number.isNaN(value))
@@ -220,28 +217,9 @@ function factOf(x: Float64Array, from: number): SeriesFact {
     })),
     still: { ...still, start: from + still.start },
     stillShare: shareInRuns(x),
-    every: rhythmOf(x),
+    every: rhythm(x),
     serial: inErrors(autocorrelation(x, 1)),
     follows: null,
     leads: null,
   }
-}
-
-/** Moves that a rhythm needs to be seen in. */
-const FEWEST_MOVES = 5
-
-/** k of a series that moves every k-th date in four of five cases, with zeros in between; null for one that moves at any date. */
-function rhythmOf(x: Float64Array): number | null {
-  const steps: number[] = []
-  let previous = -1
-  x.forEach((value, t) => {
-    if (value === 0 || Number.isNaN(value)) return
-    if (previous >= 0) steps.push(t - previous)
-    previous = t
-  })
-  if (steps.length < FEWEST_MOVES) return null
-  const counts = new Map<number, number>()
-  for (const step of steps) counts.set(step, (counts.get(step) ?? 0) + 1)
-  const [every, times] = [...counts].reduce((most, next) => (next[1] > most[1] ? next : most))
-  return every > 1 && times >= 0.8 * steps.length ? every : null
 }
