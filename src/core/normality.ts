@@ -78,6 +78,10 @@ export interface BlockNormality {
   readonly kurtosisStatistic: number | null
   /** Two-sided. */
   readonly kurtosisPValue: number | null
+  /** b2 less its mean over its deviation, both as they are for T normal dates rather than for endlessly many. */
+  readonly exactKurtosisStatistic: number | null
+  /** Two-sided. */
+  readonly exactKurtosisPValue: number | null
   /**
    * "consistent" with a joint normal distribution, or what speaks against one, tails first: heavy tails alone make the test of skewness
    * reject as well, so that it says little beside them. Or why nothing was tested: no more dates than positions, or one position that the
@@ -95,12 +99,22 @@ const LEAST_PIVOT = 1e-10
 /**
  * Tests a block of returns for joint normality by its multivariate skewness and kurtosis (Mardia), dates weighing the same.
  *
- * The block is whitened by a Cholesky factor of its correlations, after which both figures are plain sums of products of dates. The
- * distributions of the statistics are those of long series: with T not far above m both reject too seldom.
+ * The block is whitened by a Cholesky factor of its correlations, after which both figures are plain sums of products of dates.
+ *
+ * Skewness and the first form of the kurtosis statistic are those of long series. With m not far below T the one of skewness rejects too
+ * seldom, and the one of kurtosis takes normal returns for light-tailed: b2 of T normal dates lies about m / sqrt(2 T) deviations below
+ * m (m+2). Its second form goes by the moments that b2 has at T dates, and tails are heavy or light where both forms say so:
+ *
+ *   mean      m (m+2) (T-1) / (T+1)
+ *   variance  8 m (m+2) (T-3) (T-m-1) (T-m+1) / ((T+1)^2 (T+3) (T+5))
+ *
+ * Where that variance is 0 (T = m+1, when b2 is the same whatever the returns) the second form is 0, and skewness alone decides.
  *
  * @param model    T x n; positions that never move are left out
  * @returns        a run that yields the share of the work done and ends in the result; what cannot be tested is a verdict, no fault
- * @source         Mardia (1970), Measures of Multivariate Skewness and Kurtosis with Applications, Biometrika 57(3), 519-530 (from memory)
+ * @source         Mardia (1970), Measures of Multivariate Skewness and Kurtosis with Applications, Biometrika 57(3), 519-530; moments of b2 at T
+ *                 dates: Mardia (1974), Applications of Some Measures of Multivariate Skewness and Kurtosis in Testing Normality and
+ *                 Robustness Studies, Sankhya B 36, 115-128 (both from memory)
  * @cost           O(T n^2 + T^2 n) time, T n numbers of memory; p of the skewness to 3 digits once it has thousands of degrees of freedom
  * @example        inOneGo(mardia(returnsModel(Float64Array.of(1, 2, 3), 3, 1))).kurtosis // 1.5
  * @example        inOneGo(mardia(returnsModel(Float64Array.of(1, 2, 3, 5), 2, 2))).verdict // "too-few-dates"
@@ -171,7 +185,13 @@ export function* mardia(model: ReturnsModel): Generator<number, BlockNormality> 
   const kurtosis = squares / dates
   const normal = size * (size + 2)
   const kurtosisStatistic = (kurtosis - normal) / Math.sqrt((8 * normal) / dates)
-  const kurtosisPValue = erfc(Math.abs(kurtosisStatistic) / Math.SQRT2)
+  const kurtosisPValue = twoSided(kurtosisStatistic)
+  const spread =
+    (8 * normal * (dates - 3) * (dates - size - 1) * (dates - size + 1)) /
+    ((dates + 1) ** 2 * (dates + 3) * (dates + 5))
+  const exactKurtosisStatistic =
+    spread > 0 ? (kurtosis - (normal * (dates - 1)) / (dates + 1)) / Math.sqrt(spread) : 0
+  const exactKurtosisPValue = twoSided(exactKurtosisStatistic)
   return {
     dates,
     size,
@@ -182,8 +202,11 @@ export function* mardia(model: ReturnsModel): Generator<number, BlockNormality> 
     kurtosis,
     kurtosisStatistic,
     kurtosisPValue,
+    exactKurtosisStatistic,
+    exactKurtosisPValue,
     verdict:
-      kurtosisPValue < NORMALITY_LEVEL
+      Math.max(kurtosisPValue, exactKurtosisPValue) < NORMALITY_LEVEL &&
+      kurtosisStatistic > 0 === exactKurtosisStatistic > 0
         ? kurtosisStatistic > 0
           ? 'heavy-tailed'
           : 'light-tailed'
@@ -193,6 +216,8 @@ export function* mardia(model: ReturnsModel): Generator<number, BlockNormality> 
     dependent: null,
   }
 }
+
+const twoSided = (statistic: number): number => erfc(Math.abs(statistic) / Math.SQRT2)
 
 /** The columns that move, each in units of its deviation and about its plain mean, whatever the weighting of the model. */
 function standardised(model: ReturnsModel, moving: Int32Array, deviations: Float64Array): Float64Array {
@@ -238,6 +263,8 @@ const untested = (
   kurtosis: null,
   kurtosisStatistic: null,
   kurtosisPValue: null,
+  exactKurtosisStatistic: null,
+  exactKurtosisPValue: null,
   verdict,
   dependent,
 })

@@ -394,6 +394,48 @@ describe('the verdict on normality', () => {
     expect(relativeGap(result.kurtosis!, excessKurtosis! + 3)).toBeLessThan(1e-13)
   })
 
+  // Mean 3 (T-1)/(T+1) and variance 24 T (T-2)(T-3) / ((T+1)^2 (T+3)(T+5)) of the kurtosis of T normal numbers: D'Agostino, Belanger &
+  // D'Agostino (1990), The American Statistician 44(4) (from memory). Tolerance 1e-12: the kurtosis itself is good to 1e-13.
+  it('on one position measures its kurtosis by the moments that of so many normal numbers has', () => {
+    const T = 120
+    const values = generatedReturns(3, 1, T).returns
+    const variance = (24 * T * (T - 2) * (T - 3)) / ((T + 1) ** 2 * (T + 3) * (T + 5))
+    const expected = (momentsOf(values).excessKurtosis! + 3 - (3 * (T - 1)) / (T + 1)) / Math.sqrt(variance)
+    const { result } = block(returnsModel(values, T, 1))
+    expect(relativeGap(result.exactKurtosisStatistic!, expected)).toBeLessThan(1e-12)
+  })
+
+  it('has nothing to say of the tails where one date more than positions leaves them no choice', () => {
+    const { result } = block(returnsModel(generatedReturns(4, 5, 6).returns, 6, 5))
+    // S^-1 distances are all T - 1 then (algebra); tolerance for a factor of five columns
+    expect(relativeGap(result.kurtosis!, 25)).toBeLessThan(1e-9)
+    expect(result).toMatchObject({ exactKurtosisStatistic: 0, exactKurtosisPValue: 1 })
+    expect(result.verdict).not.toBe('light-tailed')
+  })
+
+  // At 5% a right test rejects 3 of 60 normal blocks; 9 or more has a probability of 0.003 (binomial). Sums of twelve uniform numbers, made
+  // by Park & Miller's generator, stand for normal ones: their excess kurtosis of -0.1 is far below what 80 dates can show.
+  it('seldom calls normal returns light-tailed, however many positions there are', () => {
+    let x = 20261201
+    const uniform = () => (x = (16807 * x) % 2147483647) / 2147483647
+    const normals = (count: number) =>
+      Float64Array.from({ length: count }, () => {
+        let sum = -6
+        for (let k = 0; k < 12; k++) sum += uniform()
+        return sum
+      })
+    let rejected = 0
+    let rejectedByLongSeries = 0
+    for (let k = 0; k < 60; k++) {
+      const { result } = block(returnsModel(normals(80 * 20), 80, 20))
+      if (result.verdict === 'light-tailed' || result.verdict === 'heavy-tailed') rejected++
+      if (result.kurtosisPValue! < 0.05) rejectedByLongSeries++
+    }
+    expect(rejected).toBeLessThan(9)
+    // what the verdict was spared
+    expect(rejectedByLongSeries).toBeGreaterThan(20)
+  })
+
   it('on a large block comes with shares of the work done, rising to 1', () => {
     const { shares } = block(returnsModel(generatedReturns(9, 150, 400).returns, 400, 150))
     expect(shares.length).toBeGreaterThan(1)
