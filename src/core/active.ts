@@ -40,7 +40,8 @@ export interface ActiveRisk {
  *   total returns:               c_i = a_i (C a)_i / s_A
  *   benchmark-relative returns:  c_i = a_i ((C a)_i - b'C a) / s_A,   net line (sum of a) b'C a / s_A
  *
- * A book equal to its benchmark has tracking error 0, contributions 0, and shares null.
+ * A book equal to its benchmark has tracking error 0, contributions 0, and shares null. An active weight that is no more than the last
+ * digits of its two weights is 0: amounts over their sum and typed fractions are seldom the same double.
  *
  * @param weights    n; decimals of capital, of any sign and sum
  * @param benchmark  n; likewise
@@ -60,7 +61,10 @@ export function activeRisk(
 ): ActiveRisk {
   checkBlock(weights, model.size, 1, 'weights')
   checkBlock(benchmark, model.size, 1, 'benchmark')
-  const active = weights.map((weight, i) => weight - benchmark[i]!)
+  const active = weights.map((weight, i) => {
+    const difference = weight - benchmark[i]!
+    return Math.abs(difference) <= 4 * Number.EPSILON * Math.abs(weight) ? 0 : difference
+  })
   const decomposition = decompose(model, active)
   const trackingError = decomposition.volatility
   const netWeight = active.reduce((sum, weight) => sum + weight, 0)

@@ -7,6 +7,7 @@ import { momentsOf } from './moments'
 import { returnsModel } from './risk-model'
 import type { TestResult } from './series'
 import { shrinkageOf, shrunkModel } from './shrinkage'
+import { partOf } from './steps'
 
 /** How many standard errors a 95% band reaches to either side: 1.959964. */
 const TWO_SIDED = normalQuantile(0.975, 0, 1)
@@ -52,7 +53,7 @@ export interface ExceptionTests {
 /** Where a count of exceptions falls by the rule of the Basel Committee. */
 export interface BaselZone {
   readonly zone: 'green' | 'amber' | 'red'
-  /** Fewest exceptions of the amber zone: that many or fewer have a probability of 95% or more. */
+  /** Fewest exceptions of the amber zone: that many or fewer have a probability of 95% or more; at least 1. */
   readonly amberFrom: number
   /** Fewest exceptions of the red zone: that many or fewer have a probability of 99.99% or more. */
   readonly redFrom: number
@@ -163,8 +164,8 @@ function zoneOf(x: number, dates: number, p: number): BaselZone {
     while (binomialCdf(count, dates, p) < probability) count++
     return count
   }
-  // below its mean no count is nearly so probable
-  const amberFrom = first(0.95, Math.floor(dates * p))
+  // below its mean no count is nearly so probable; of a few dates 0 exceptions are, and no zone but the green one starts at none
+  const amberFrom = first(0.95, Math.max(1, Math.floor(dates * p)))
   const redFrom = first(0.9999, amberFrom)
   return {
     zone: x >= redFrom ? 'red' : x >= amberFrom ? 'amber' : 'green',
@@ -335,7 +336,11 @@ export function* backtest(
         if (estimator.kind === 'shrinkage') {
           const block = returns.subarray(from * size, t * size)
           const base = returnsModel(block, t - from, size, { kind: 'population' })
-          const shrinkage = yield* within(shrinkageOf(base, estimator.target), t / dates, every / dates)
+          const shrinkage = yield* partOf(
+            shrinkageOf(base, estimator.target),
+            t / dates,
+            Math.min(t + every, dates) / dates,
+          )
           variance = shrunkModel(base, shrinkage).apply(weights).variance
         } else {
           variance = varianceOf(book.subarray(from, t), estimator)
@@ -452,19 +457,6 @@ function outcome(
     missing: Int32Array.from(places.filter(lacks)),
     tests: exceptionTests(counts ? exceptions : exceptions.filter((_, k) => !lacks(k)), settings.confidence),
     bias: scores && scored >= 2 ? biasStatistic(scores) : null,
-  }
-}
-
-/** A computation in steps as a part of a longer one: its share done is that part of the whole. */
-function* within<Result>(
-  steps: Generator<number, Result>,
-  before: number,
-  part: number,
-): Generator<number, Result> {
-  for (;;) {
-    const step = steps.next()
-    if (step.done) return step.value
-    yield before + part * step.value
   }
 }
 

@@ -77,3 +77,11 @@ test('a benchmark held as a position of its own with weight 1 is the same as its
     }),
   )
 })
+
+test('weights that differ from the benchmark in their last digits alone are no active weights', () => {
+  // 0.1 + 0.2 is not 0.3 in binary; nor are amounts over their sum the fractions they stand for
+  const model = returnsModel(Float64Array.of(0.01, 0.02, -0.03, 0.01, 0.02, -0.01), 3, 2)
+  const a = activeRisk(model, Float64Array.of(0.1 + 0.2, 0.7), Float64Array.of(0.3, 0.7))
+  expect(0.1 + 0.2).not.toBe(0.3)
+  expect(a).toMatchObject({ trackingError: 0, netWeight: 0, share: null })
+})

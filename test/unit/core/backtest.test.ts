@@ -146,7 +146,15 @@ describe('a back-test', () => {
       first: 250,
       every: 10,
     }).progress
-    for (const reports of [progress, shrunk]) {
+    // the last forecast stands for fewer dates than the others
+    const uneven = run(long.subarray(0, 300 * 40), 300, 40, new Float64Array(40).fill(1 / 40), {
+      ...settings,
+      estimator: { kind: 'shrinkage', target: 'correlation' },
+      window: 250,
+      first: 250,
+      every: 49,
+    }).progress
+    for (const reports of [progress, shrunk, uneven]) {
       expect(reports.length).toBeGreaterThan(1)
       expect(reports).toEqual(reports.slice().sort((a, b) => a - b))
       expect(reports[0]).toBeGreaterThanOrEqual(0)
@@ -289,6 +297,13 @@ describe('tests of exceptions', () => {
     const tests = exceptionTests(Uint8Array.of(0), 0.99)
     expect(Object.values(tests.steps)).toEqual([0, 0, 0, 0])
     expect(tests.independence).toEqual({ statistic: 0, pValue: 1 })
+  })
+
+  test('no record without an exception leaves the green zone, however short', () => {
+    // 0.99^5 = 0.951: the rule of 95% alone would put the amber zone at no exception
+    expect(exceptionTests(new Uint8Array(5), 0.99).zone).toMatchObject({ zone: 'green', amberFrom: 1 })
+    expect(exceptionTests(new Uint8Array(1), 0.99999).zone).toMatchObject({ zone: 'green', redFrom: 1 })
+    expect(exceptionTests(Uint8Array.of(1, 0, 0, 0, 0), 0.99).zone.zone).toBe('amber')
   })
 
   test('an add-on is known for 250 dates at 99% only', () => {
