@@ -129,18 +129,15 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
 export default function HowSure(props: Asked) {
   const classes = useStyles()
   const { bands } = props.breakdown
+  // what has no closed form here has no histories to draw from either
+  if (typeof bands === 'string') return <Remark text={bands} />
   return (
     <>
-      {typeof bands === 'string' ? (
-        <Remark text={bands} />
-      ) : (
-        <p className={classes.text}>
-          Standard error of the volatility {percentText(bands.volatility, 2)}. All bands are in closed form,
-          from what each date adds to the figure: no normal distribution is assumed, so fat tails widen them.
-          {bands.note !== null && ` ${bands.note}`} The bands of positions are under their names, in
-          Positions.
-        </p>
-      )}
+      <p className={classes.text}>
+        Standard error of the volatility {percentText(bands.volatility, 2)}. All bands are in closed form,
+        from what each date adds to the figure: no normal distribution is assumed, so fat tails widen them.
+        {bands.note !== null && ` ${bands.note}`} The bands of positions are under their names, in Positions.
+      </p>
       <DrawnAnew {...props} />
     </>
   )

@@ -180,15 +180,13 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
           asked={() => setAsked('bootstrap')}
         />
       </Folded>
-      {breakdown.dates && (
-        <Folded title="Back-test" headline={backTestHeadline(state.studies)}>
-          <BackTest
-            state={state}
-            fault={asked === 'back-test' ? state.faults.study : undefined}
-            asked={() => setAsked('back-test')}
-          />
-        </Folded>
-      )}
+      <Folded title="Back-test" headline={backTestHeadline(state.studies)}>
+        <BackTest
+          state={state}
+          fault={asked === 'back-test' ? state.faults.study : undefined}
+          asked={() => setAsked('back-test')}
+        />
+      </Folded>
     </div>
   )
 }

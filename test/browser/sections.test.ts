@@ -56,6 +56,11 @@ test('the volatility that a data check promises is the one that its correction g
   expect(promise?.[1]).toBe(before)
   await check.getByRole('button', { name: /^Apply: With each pair/ }).click()
   await pane.getByText('Up to date', { exact: true }).waitFor()
+  // the button is gone with what it offered: the focus stays with the line
+  const focused = await check
+    .locator('summary')
+    .evaluate((summary) => summary === summary.ownerDocument.activeElement)
+  expect(focused).toBe(true)
   await show('Risk')
   expect(await until(volatilityShown, (shown) => shown !== before, 'another volatility')).toBe(promise?.[2])
   await show('Data')

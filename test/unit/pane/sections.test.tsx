@@ -4,6 +4,7 @@ import { decayOf, halfLifeOf } from '../../../src/pane/estimator'
 import Factors from '../../../src/pane/factors'
 import { Figures } from '../../../src/pane/figures'
 import Groups from '../../../src/pane/groups'
+import HowSure from '../../../src/pane/how-sure'
 import LargeLosses from '../../../src/pane/large-losses'
 import { bandText, confidenceText } from '../../../src/pane/measure'
 import { Positions } from '../../../src/pane/positions'
@@ -260,4 +261,13 @@ test('decay factor and half-life say the same', () => {
 
 test('a confidence level reads as it was typed', () => {
   expect([0.99, 0.975, 0.9995].map(confidenceText)).toEqual(['99%', '97.5%', '99.95%'])
+})
+
+test('where there are no error bands the reason stands in their place, and no study is offered', async () => {
+  const breakdown = { ...(await breakdownOf()), bands: 'Too few dates.' }
+  const state = { working: null, studies: { bootstrap: null, backtest: null } } as unknown as BooksState
+  const { said } = draw(
+    <HowSure breakdown={breakdown} state={state} fault={undefined} asked={() => undefined} />,
+  )
+  expect(said).toBe('Too few dates.')
 })
