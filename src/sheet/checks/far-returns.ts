@@ -7,7 +7,7 @@ import type { Evidence, Held } from './evidence'
 import { dayOf, isQuiet, whenOf } from './evidence'
 import type { FarReturn, SeriesFact } from './series-facts'
 import { NEAREST_FAR } from './series-facts'
-import type { Check, Found, Suspicion } from './telling'
+import type { Advice, Check, Found, Suspicion, Told } from './telling'
 import { lineOf, told } from './telling'
 
 // Missed splits, single returns far out, and dates on which the whole market moved. The thresholds are our own conventions.
@@ -48,44 +48,26 @@ export function farReturns(evidence: Evidence, open: readonly Held[]): Found {
         !isQuiet(evidence, held) || Math.abs(far.value - held.fact.median) > evidence.usualScale,
     )
   const byDate = new Map<number, FarOne[]>()
-  for (const one of all) byDate.set(one.far.row, [...(byDate.get(one.far.row) ?? []), one])
+  for (const one of all) {
+    const movers = byDate.get(one.far.row)
+    if (movers) movers.push(one)
+    else byDate.set(one.far.row, [one])
+  }
   const isMarket = ({ length }: readonly FarOne[]): boolean =>
     length >= FEWEST_FOR_A_MARKET && length >= LEAST_SHARE_FOR_A_MARKET * evidence.held.length
-  const market = [...byDate.values()].filter(isMarket)
-  const found = all
-    .filter((one) => !market.some((movers) => movers.includes(one)))
-    .flatMap((one) => suspicionOf(evidence, one) ?? [])
+  const single = all.filter(({ far }) => !isMarket(byDate.get(far.row) ?? []))
+  const suspicions = single.flatMap((one) => suspicionOf(evidence, one) ?? [])
+  const of = (kind: FarSuspicion['kind']): readonly FarSuspicion[] =>
+    suspicions.filter((suspicion) => suspicion.kind === kind)
   const noun = ['return', 'returns'] as const
   return {
     checks: [
-      ...told(
-        'missed split',
-        found.filter(({ kind }) => kind === 'missed split'),
-        (about) => ({
-          effect: `${shareText(about)}; if it is a split, that part of its risk is not there.`,
-          remedy: 'Look the split up; adjust the prices before it, or put the return right.',
-          corrections: mended(evidence, about, 'With the split undone', 'With these splits undone'),
-        }),
-        noun,
+      ...told('missed split', of('missed split'), (about) => adviceOnSplits(evidence, about), noun),
+      ...told('outlier', of('outlier'), (about) => adviceOnOutliers(evidence, about), noun),
+      ...marketMoves(
+        evidence,
+        [...byDate].filter(([, movers]) => isMarket(movers)),
       ),
-      ...told(
-        'outlier',
-        found.filter(({ kind }) => kind === 'outlier'),
-        (about) => {
-          const isTakenBack = about.some((suspicion) => suspicion.mended.length > 1)
-          const one = isTakenBack
-            ? 'With the move and its return spread evenly'
-            : 'With the median in its place'
-          return {
-            effect: `${shareText(about)}, and so of much that is said about its risk.`,
-            remedy:
-              'Check it against another source and put it right if it is wrong; if it is right it belongs in the figures.',
-            corrections: mended(evidence, about, one, 'With medians in their place'),
-          }
-        },
-        noun,
-      ),
-      ...marketMoves(evidence, market),
     ],
   }
 }
@@ -155,48 +137,51 @@ function splitOf(far: FarReturn, { scale }: SeriesFact, isLog: boolean): SplitRa
   return change > -1 ? splitRatio(change, Math.min(MOST_ROOM, Math.max(LEAST_ROOM, scale))) : null
 }
 
-const shareText = (about: readonly FarOne[]): string =>
-  about
-    .slice(0, 1)
-    .map(
-      ({ held, far }) =>
-        `This one return makes up ${percentText(far.share, 0)} of the variance of ${quote(held.name)}`,
-    )
-    .join()
+const adviceOnSplits = (evidence: Evidence, about: Told<FarSuspicion>): Advice => ({
+  effect: `${shareText(about)}; if it is a split, that part of its risk is not there.`,
+  remedy: 'Look the split up; adjust the prices before it, or put the return right.',
+  corrections: [withMended(evidence, about, 'With the split undone', 'With these splits undone')],
+})
 
-function mended(
-  evidence: Evidence,
-  about: readonly FarSuspicion[],
-  one: string,
-  many: string,
-): readonly Correction[] {
-  const [first, ...others] = about
-  const label = first && others.length === 0 ? `${one} (${dayOf(evidence, first.far.row)})` : many
-  return [
-    withReturns(evidence, label, about, (x, held) => {
-      for (const suspicion of about)
-        if (suspicion.held === held) for (const [row, value] of suspicion.mended) x[row] = value
-      return x
-    }),
-  ]
+function adviceOnOutliers(evidence: Evidence, about: Told<FarSuspicion>): Advice {
+  const spread = 'With the move and its return spread evenly'
+  const one = about[0].mended.length > 1 ? spread : 'With the median in its place'
+  return {
+    effect: `${shareText(about)}, and so of much that is said about its risk.`,
+    remedy:
+      'Check it against another source and put it right if it is wrong; if it is right it belongs in the figures.',
+    corrections: [withMended(evidence, about, one, 'With medians in their place')],
+  }
+}
+
+const shareText = ([{ held, far }]: Told<FarSuspicion>): string =>
+  `This one return makes up ${percentText(far.share, 0)} of the variance of ${quote(held.name)}`
+
+function withMended(evidence: Evidence, about: Told<FarSuspicion>, one: string, many: string): Correction {
+  const label = about.length === 1 ? `${one} (${dayOf(evidence, about[0].far.row)})` : many
+  return withReturns(evidence, label, about, (x, held) => {
+    for (const suspicion of about)
+      if (suspicion.held === held) for (const [row, value] of suspicion.mended) x[row] = value
+    return x
+  })
 }
 
 /** One line for all dates on which many moved at once. */
-function marketMoves(evidence: Evidence, market: readonly (readonly FarOne[])[]): readonly Check[] {
-  const days = market
-    .map((movers) => ({ movers, row: movers[0]?.far.row ?? 0 }))
-    .sort((a, b) => a.row - b.row)
+function marketMoves(
+  evidence: Evidence,
+  market: readonly (readonly [row: number, movers: readonly FarOne[]])[],
+): readonly Check[] {
+  const days = [...market].sort(([a], [b]) => a - b)
   const [first, ...others] = days
   if (!first) return []
+  const [row, movers] = first
   const more = others.length > 0 ? `, and so on ${countOf(others.length, 'more date')}` : ''
   return [
     lineOf({
       kind: 'outlier',
       weight: 'notes',
-      text: `${countOf(first.movers.length, 'holding')} moved more than ${NEAREST_FAR} times their usual distance from the middle ${whenOf(evidence, first.row)}${more}.`,
-      areas: days.flatMap(({ movers, row }) =>
-        movers.map(({ held }) => evidence.returns.cell(row, held.series)),
-      ),
+      text: `${countOf(movers.length, 'holding')} moved more than ${NEAREST_FAR} times their usual distance from the middle ${whenOf(evidence, row)}${more}.`,
+      areas: days.flatMap(([day, those]) => those.map(({ held }) => evidence.returns.cell(day, held.series))),
       effect:
         'Moves of many at once are the market’s as a rule: they make the tails of the book, which normal figures understate.',
       remedy: 'Nothing to mend unless a whole row is wrong; compare historical value at risk and shortfall.',

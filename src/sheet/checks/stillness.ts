@@ -3,7 +3,7 @@ import { countOf, ordinal, percentText, quote } from '../wording'
 import { mostLags, withLags, withReturns } from './corrections'
 import type { Evidence, Held } from './evidence'
 import { cellsOf, dayOf, range } from './evidence'
-import type { Advice, Found, Suspicion } from './telling'
+import type { Advice, Found, Suspicion, Told } from './telling'
 import { suspect, told } from './telling'
 
 // Series that never change, and prices that are not renewed. The thresholds are our own conventions.
@@ -75,7 +75,7 @@ function suspicionOf(evidence: Evidence, held: Held): Suspicion {
   }
 }
 
-function adviceOnRhythm(evidence: Evidence, about: readonly Suspicion[]): Advice {
+function adviceOnRhythm(evidence: Evidence, about: Told): Advice {
   const { period } = evidence
   const every = Math.max(...about.map(({ held }) => held.fact.every ?? 1))
   const lags = mostLags(evidence, 2 * every - 1)
@@ -92,7 +92,7 @@ function adviceOnRhythm(evidence: Evidence, about: readonly Suspicion[]): Advice
   }
 }
 
-function adviceOnRests(evidence: Evidence, about: readonly Suspicion[]): Advice {
+function adviceOnRests(evidence: Evidence, about: Told): Advice {
   const longest = Math.max(...about.map(({ held }) => held.fact.still.length))
   const asGaps = withReturns(evidence, `With ${LONG_STILL} or more zeros in a row as gaps`, about, (x) =>
     withoutRuns(x, LONG_STILL),

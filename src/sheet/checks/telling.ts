@@ -80,22 +80,27 @@ export const suspect = (evidence: Evidence, held: Held, text: string): Suspicion
 /** More of a kind than this are told in one line. */
 const MOST_ONE_BY_ONE = 2
 
+/** The suspicions that are told in one line. */
+export type Told<S extends Suspicion = Suspicion> = readonly [S, ...S[]]
+
 /** Few suspicions of a kind are told one by one; of many the first is told and the others are counted. */
 export function told<S extends Suspicion>(
   kind: CheckKind,
   suspicions: readonly S[],
-  advise: (about: readonly S[]) => Advice,
+  advise: (about: Told<S>) => Advice,
   [one, many]: readonly [one: string, many: string] = ['series', 'series'],
 ): readonly Check[] {
-  const lines =
-    suspicions.length > MOST_ONE_BY_ONE ? [suspicions] : suspicions.map((suspicion) => [suspicion])
+  const [first, ...others] = suspicions
+  if (!first) return []
+  const lines: readonly Told<S>[] =
+    suspicions.length > MOST_ONE_BY_ONE ? [[first, ...others]] : suspicions.map((suspicion) => [suspicion])
   return lines.map((line) => {
-    const others = line.length - 1
-    const alike = others > 0 ? ` ${countOf(others, `more ${one}`, `more ${many}`)} like it.` : ''
+    const more = line.length - 1
+    const alike = more > 0 ? ` ${countOf(more, `more ${one}`, `more ${many}`)} like it.` : ''
     return lineOf({
       kind,
       weight: line.some(({ weight }) => weight === 'warns') ? 'warns' : 'notes',
-      text: `${line[0]?.text ?? ''}${alike}`,
+      text: line[0].text + alike,
       areas: line.flatMap(({ areas }) => areas),
       names: [...new Set(line.map(({ held }) => held.name))],
       ...advise(line),

@@ -3,7 +3,7 @@ import { numberText, percentText, quote } from '../wording'
 import { withLags, withReturns } from './corrections'
 import type { Evidence, Held } from './evidence'
 import type { TimeCorrelation } from './series-facts'
-import type { Advice, Found, Suspicion } from './telling'
+import type { Advice, Found, Suspicion, Told } from './telling'
 import { suspect, told } from './telling'
 
 // Returns that go with their own last ones, or with the others' of the day before or after. The thresholds are our own conventions.
@@ -55,11 +55,11 @@ export function serialCorrelation(evidence: Evidence, open: readonly Held[]): Fo
   }
 }
 
-function adviceOnSmoothing(evidence: Evidence, about: readonly Suspicion[]): Advice {
-  const rhoOf = (held: Held | undefined): number => held?.fact.serial?.value ?? 0
-  const first = about[0]?.held
+function adviceOnSmoothing(evidence: Evidence, about: Told): Advice {
+  const rhoOf = ({ fact }: Held): number => fact.serial?.value ?? 0
+  const first = about[0].held
   return {
-    effect: `Prices that are smoothed or late look calmer than they are: if that is it, the volatility of ${quote(first?.name)} is about ${numberText(unsmoothingFactor(rhoOf(first)))} times what its returns show, and its correlations with the others are too small.`,
+    effect: `Prices that are smoothed or late look calmer than they are: if that is it, the volatility of ${quote(first.name)} is about ${numberText(unsmoothingFactor(rhoOf(first)))} times what its returns show, and its correlations with the others are too small.`,
     remedy:
       'Use traded prices where there are any, count lagged terms, or look at the figures with the smoothing undone.',
     corrections: [
