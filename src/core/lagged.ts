@@ -81,7 +81,7 @@ export function laggedModel(returns: ReturnsModel, lags: number): RiskModel {
 /**
  * How many lagged terms suit so many dates: floor( 4 (T / 100)^(2/9) ).
  *
- * @param dates  T
+ * @param dates  T, from 0
  * @source       Newey & West (1994), Automatic Lag Selection in Covariance Matrix Estimation, REStud 61(4), 631-653 (from memory)
  * @example      usualLags(260) // 4
  */
@@ -93,12 +93,21 @@ export const usualLags = (dates: number): number => Math.floor(4 * (dates / 100)
  *
  * @param every  k; whole number from 1
  * @param lags   L; whole number from 0
- * @returns      0 to 1
+ * @returns      above 0, at most 1
+ * @throws Fault "out-of-range"
  * @source       derived here from the weights of `laggedModel`
  * @example      shareBroughtBack(4, 7) // 0.8125
  * @example      shareBroughtBack(4, 0) // 0.25
  */
 export function shareBroughtBack(every: number, lags: number): number {
+  if (!Number.isInteger(every) || every < 1 || !Number.isInteger(lags) || lags < 0) {
+    throw new Fault(
+      'out-of-range',
+      `${lags} lags for a series shown every ${every} dates`,
+      'whole numbers are needed, from 0 and from 1',
+      { argument: Number.isInteger(every) && every >= 1 ? 'lags' : 'every' },
+    )
+  }
   let sum = 0
   for (let lag = 0; lag < Math.min(every, lags + 1); lag++) sum += 1 - lag / (lags + 1)
   return sum / every

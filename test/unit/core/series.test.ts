@@ -1,16 +1,26 @@
 import {
   autocorrelation,
+  carefulError,
+  estimateModel,
   frequencySteps,
+  jointLimit,
   laggedCrossCorrelation,
   ljungBox,
   longestRun,
   outliers,
+  rhythm,
   robustScale,
   scalingFactor,
+  shareBroughtBack,
   shareInRuns,
   splitRatio,
+  unsmoothedReturns,
   unsmoothedVolatility,
+  unsmoothingFactor,
+  usualLags,
+  withoutRuns,
 } from '../../../src/core'
+import { absoluteGap, relativeGap } from '../../closeness'
 
 /** Independent numbers from -0.5 to 0.5: the Park-Miller generator. */
 function independent(seed: number, count: number): Float64Array {
@@ -69,6 +79,34 @@ describe('autocorrelation', () => {
   })
 })
 
+describe('the limit of chance', () => {
+  // scipy 1.17.1, stats.norm.isf(chance / 2 / count); 1e-12: the last digits of two ways to a quantile
+  test.each([
+    [1, 0.05, 1.9599639845400545],
+    [6, 0.01, 3.1439802870690796],
+    [40, 0.01, 3.6622599308877013],
+  ])('of %i estimates and %d in all', (count, chance, expected) => {
+    expect(absoluteGap(jointLimit(count, chance), expected)).toBeLessThan(1e-12)
+  })
+
+  test('is kept by all of 10 series in about 95 of 100 books of them', () => {
+    // (1 - 0.05/10)^10 = 0.951 for independent series, a little more by the wider of two bands. Of 400 books the share is known to
+    // sqrt(.05 x .95 / 400) = 1.1%; three of those
+    const limit = jointLimit(10, 0.05)
+    const all = independent(77, 400 * 10 * 100)
+    const isWithin = (_: unknown, k: number): boolean => {
+      const found = autocorrelation(all.subarray(100 * k, 100 * (k + 1)), 1)!
+      return Math.abs(found.value) <= limit * carefulError(found)
+    }
+    const series = Array.from({ length: 4000 }, isWithin)
+    const books = Array.from({ length: 400 }, (_, k) => series.slice(10 * k, 10 * (k + 1)).every(Boolean))
+    const share = books.filter(Boolean).length / 400
+    expect(share).toBeGreaterThan(0.951 - 0.033)
+    // a limit that lets nothing through would say nothing
+    expect(share).toBeLessThan(0.995)
+  })
+})
+
 describe('lagged cross-correlation', () => {
   test('finds which market follows which', () => {
     const news = independent(3, 400)
@@ -103,6 +141,97 @@ describe('runs', () => {
     expect(shareInRuns(Float64Array.of(0, 0, NaN, 1, 0), 0, 1)).toBe(0.75)
     expect(shareInRuns(Float64Array.of(0, 0, 0, 1), 0, 4)).toBe(0)
     expect(shareInRuns(Float64Array.of(NaN))).toBe(0)
+  })
+})
+
+describe('runs that become gaps', () => {
+  test('are those of the length asked for or longer, in a copy', () => {
+    const x = Float64Array.of(0, 0, 1, -0, 0, 0, NaN, 0, 0, 0, 0)
+    expect([...withoutRuns(x, 3)]).toEqual([0, 0, 1, NaN, NaN, NaN, NaN, NaN, NaN, NaN, NaN])
+    expect([...withoutRuns(x, 4)]).toEqual([0, 0, 1, -0, 0, 0, NaN, NaN, NaN, NaN, NaN])
+    expect([...withoutRuns(Float64Array.of(7, 7, 0, 0), 2, 7)]).toEqual([NaN, NaN, 0, 0])
+    expect(x[3]).toBe(-0)
+  })
+})
+
+describe('rhythm', () => {
+  const moving = (dates: readonly number[], rest = 0): Float64Array => {
+    const x = new Float64Array(60).fill(rest)
+    for (const t of dates) x[t] = 0.01
+    return x
+  }
+
+  test('is seen in six moves, through zeros as through gaps', () => {
+    expect(rhythm(moving([3, 7, 11, 15, 19, 23]))).toBe(4)
+    expect(rhythm(moving([3, 7, 11, 15, 19, 23], NaN))).toBe(4)
+    expect(rhythm(moving([3, 7, 11, 15, 19]))).toBeNull()
+  })
+
+  test('is kept in four of five steps', () => {
+    expect(rhythm(moving([3, 7, 11, 15, 19, 24]))).toBe(4)
+    expect(rhythm(moving([3, 7, 11, 15, 20, 25]))).toBeNull()
+  })
+
+  test('is none in a series that moves at every date', () => {
+    expect(rhythm(independent(21, 60))).toBeNull()
+    expect(rhythm(new Float64Array(60))).toBeNull()
+  })
+})
+
+describe('smoothing', () => {
+  test('is undone where it was put in by the same share; a gap costs the date after it as well', () => {
+    const own = independent(31, 200)
+    for (const rho of [0.3, 0.7, -0.4]) {
+      let last = 0
+      const smooth = own.map((value) => (last = (1 - rho) * value + rho * last))
+      // 1e-14: a few roundings of numbers up to 0.5, divided by 1 - rho
+      expect(absoluteGap(unsmoothedReturns(smooth, rho).subarray(1), own.subarray(1))).toBeLessThan(1e-14)
+      smooth[50] = NaN
+      const undone = unsmoothedReturns(smooth, rho)
+      expect([0, 49, 50, 51, 52].map((t) => Number.isNaN(undone[t]))).toEqual([
+        true,
+        false,
+        true,
+        true,
+        false,
+      ])
+    }
+  })
+
+  test('of a share that is the autocorrelation makes volatility smaller by its factor', () => {
+    // over 200,000 dates the deviation of each is known to 0.2%, the factor to twice that
+    const own = independent(32, 200_000)
+    let last = 0
+    const smooth = own.map((value) => (last = 0.4 * value + 0.6 * last))
+    const spread = (x: Float64Array): number => Math.sqrt(x.reduce((sum, value) => sum + value * value, 0))
+    expect(relativeGap(spread(own) / spread(smooth), unsmoothingFactor(0.6))).toBeLessThan(0.01)
+  })
+})
+
+describe('lagged terms', () => {
+  test.each([
+    [2, 3],
+    [4, 7],
+    [4, 2],
+    [12, 10],
+  ])('bring back of a series shown every %i dates, with %i of them, what the model says', (every, lags) => {
+    // single moves of +1 and -1, far enough apart not to meet, once at each place in a block; shown at the end of its block
+    const apart = every * Math.ceil((2 * every + lags + 1) / every)
+    const rows = new Float64Array(2 * 2 * every * apart)
+    for (let k = 0; k < 2 * every; k++) {
+      const move = k % 2 === 0 ? 1 : -1
+      const start = k * apart
+      rows[2 * (start + (k >> 1))] = move
+      rows[2 * (start + every - 1) + 1] = move
+    }
+    const covariances = estimateModel(rows, rows.length / 2, 2, { kind: 'lagged', lags }).matrix()
+    // 1e-14: sums of a few dozen products of exact numbers
+    expect(relativeGap(shareBroughtBack(every, lags), covariances[1]! / covariances[0]!)).toBeLessThan(1e-14)
+  })
+
+  test('that suit the dates grow slowly with them', () => {
+    // 4 (T/100)^(2/9): 4 at T = 100 and 4 x 2 at T = 100 x 2^(9/2) = 2262.7
+    expect([0, 1, 99, 100, 2262, 2263].map(usualLags)).toEqual([0, 1, 3, 4, 7, 8])
   })
 })
 
@@ -269,6 +398,21 @@ test.each<[string, () => unknown, object]>([
     () => scalingFactor(Float64Array.of(-0.9), 12),
     { code: 'negative-variance' },
   ],
+  ['no estimate at all', () => jointLimit(0, 0.01), { code: 'out-of-range', where: { argument: 'count' } }],
+  ['a chance of 0', () => jointLimit(5, 0), { code: 'out-of-range', where: { argument: 'chance' } }],
+  ['a chance of 1', () => jointLimit(5, 1), { code: 'out-of-range', where: { argument: 'chance' } }],
+  [
+    'smoothing that keeps all of the last return',
+    () => unsmoothedReturns(Float64Array.of(0.1, 0.2), 1),
+    { code: 'out-of-range', where: { argument: 'rho' } },
+  ],
+  ['the factor of such smoothing', () => unsmoothingFactor(-1), { code: 'out-of-range' }],
+  [
+    'a series shown every 0 dates',
+    () => shareBroughtBack(0, 2),
+    { code: 'out-of-range', where: { argument: 'every' } },
+  ],
+  ['half a lag', () => shareBroughtBack(2, 0.5), { code: 'out-of-range', where: { argument: 'lags' } }],
   ['a price of 0', () => splitRatio(-1), { code: 'out-of-range', where: { argument: 'change' } }],
   [
     'a tolerance below 0',
