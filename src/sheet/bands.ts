@@ -1,6 +1,7 @@
 import { RISK_BAND, shareDifferences, standardErrors } from '../core'
 import type { Decomposition } from '../core'
 import type { BookModel } from './book-model'
+import { countOf } from './wording'
 
 /** How sure the figures are: standard errors, scaled as the figures are. A 95% band is a figure and 1.96 of its errors either way. */
 export interface Bands {
@@ -18,6 +19,23 @@ export interface Bands {
 
 /** How many standard errors a 95% band reaches to either side. */
 export const BAND = RISK_BAND
+
+/** Equally counting dates below which bands are said to run narrow. Our own convention. */
+const FEW_DATES = 60
+
+/**
+ * That bands of few dates are too narrow. Simulated with five positions and Student returns of 5 degrees of freedom, 4,000 times each: bands of
+ * the volatility hold the true one 73, 80, 83, 86 and 91 times in 100 at 10, 20, 30, 60 and 260 dates, those of a share 76, 83, 87, 89 and 93.
+ */
+function narrowness(effective: number, dates: number): string | null {
+  if (effective >= FEW_DATES) return null
+  const alike = countOf(Math.round(effective), 'date')
+  const rest =
+    Math.round(effective) === dates
+      ? `The bands rest on ${alike}`
+      : `By their weights ${countOf(dates, 'date')} tell as much as ${alike} that count alike`
+  return `${rest}. With so few they run narrow: where returns have fat tails they hold the true figure less than 90 times in 100, not 95.`
+}
 
 /**
  * The error bands of a decomposition, from the returns behind the model.
@@ -48,6 +66,8 @@ export function bandsOf(book: BookModel, d: Decomposition): Bands | string {
       // equal and certain, as two riskless positions are, is no tie of ranks
       return differences[k]! > 0 && difference <= BAND * differences[k]!
     }),
-    note,
+    note:
+      [note, narrowness(errors.effectiveDates, model.dates)].filter((part) => part !== null).join(' ') ||
+      null,
   }
 }

@@ -81,6 +81,8 @@ export async function bootstrapStudy(
   const scale = Math.sqrt(d.periodsPerYear)
   const scaled = (values: Float64Array): Float64Array => values.map((value) => value * scale)
   const { volatility, contribution } = result
+  // what is said beside the bands is that they are not those of the figures themselves
+  const plain = precision.note === null && precision.lags === 0
   return {
     result: {
       ...result,
@@ -95,11 +97,13 @@ export async function bootstrapStudy(
         upper: scaled(contribution.upper),
       },
     },
-    method: `${countOf(choice.replicates, 'history', 'histories')} of ${countOf(data.rows.length, 'date')}, drawn ${choice.blockLength === 1 ? 'date by date' : `in circular blocks of ${countOf(choice.blockLength, 'date')}`} with replacement; ${BOOTSTRAP_GENERATOR}, seed ${choice.seed}`,
+    method: `${countOf(choice.replicates, 'history', 'histories')} of ${countOf(data.rows.length, 'date')}, drawn ${choice.blockLength === 1 ? 'date by date' : `in circular blocks of ${countOf(choice.blockLength, 'date')}`} with replacement${plain ? '' : '; figures drawn are those without shrinkage, factors or lagged terms'}; ${BOOTSTRAP_GENERATOR}, seed ${choice.seed}`,
     agreement:
       typeof bands === 'string'
         ? bands
-        : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
+        : bands.volatility === 0
+          ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
+          : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
   }
 }
 
@@ -142,6 +146,11 @@ export async function backtestStudy(
       'at least 2 dates more than the window are needed',
       { argument: 'study' },
     )
+  // the largest of N losses is beaten with a probability of 1 / (N + 1) already
+  const tooFew =
+    choice.method === 'historical' && Number((first * (1 - choice.confidence)).toFixed(8)) < 1
+      ? ` (${choice.window === null ? 'at first ' : ''}fewer than the ${Math.ceil(Number((1 / (1 - choice.confidence)).toFixed(8)))} dates that ${percentText(choice.confidence, 1)} confidence needs: the largest loss stands for it, which is exceeded oftener)`
+      : ''
   // an intensity moves slowly, and each costs a set-up of its own
   const every = estimator.kind === 'shrinkage' ? 20 : 1
   const result = await calculator.run(
@@ -158,7 +167,7 @@ export async function backtestStudy(
   return {
     result,
     dates: data.serials?.slice(first) ?? null,
-    method: `Forecasts at today’s weights from the ${choice.window === null ? `dates before (first after ${first})` : `${choice.window} dates before`}; ${estimatorText(estimator)}${every > 1 ? `, estimated anew every ${every} dates` : ''}; value at risk ${choice.method === 'normal' ? 'from a normal distribution with mean zero' : 'from the losses of the window'}`,
+    method: `Forecasts at today’s weights from the ${choice.window === null ? `dates before (first after ${first})` : `${choice.window} dates before`}; ${estimatorText(estimator)}${every > 1 ? `, estimated anew every ${every} dates` : ''}; value at risk ${choice.method === 'normal' ? 'from a normal distribution with mean zero' : `from the losses of ${choice.window === null ? 'these dates' : 'the window'}${tooFew}`}${book.rule === 'common dates' ? '' : `; run on the ${countOf(dates, 'date')} common to all holdings, whatever the rule for gaps`}`,
     lines: backtestLines(result),
   }
 }
@@ -167,7 +176,7 @@ export async function backtestStudy(
  * Tests forecasts that were made elsewhere: a block with the portfolio's returns, and beside them the forecast volatility or value at
  * risk of the same dates, told by its heading.
  *
- * @throws Fault "shape" for a block of other columns; those of the tests
+ * @throws Fault "shape" for a block of other columns; "out-of-range" for values at risk that are all below 0; those of the tests
  */
 export function givenBacktest(reading: ReturnsReading, confidence: number): BacktestStudy {
   const { columns, rows, values, names } = reading
@@ -182,6 +191,13 @@ export function givenBacktest(reading: ReturnsReading, confidence: number): Back
     Float64Array.from({ length: rows }, (_, t) => values[t * 2 + k]!)
   const isVolatility = /volatil|deviation/i.test(names[1] ?? '')
   const forecasts = column(1)
+  if (!isVolatility && forecasts.some((loss) => loss < 0) && !forecasts.some((loss) => loss > 0))
+    throw new Fault(
+      'out-of-range',
+      `found no number above 0 under ${quote(names[1] ?? '')}`,
+      'values at risk as positive losses are needed, such as 0.02',
+      { argument: 'study' },
+    )
   const result = backtestGiven(
     column(0),
     isVolatility
@@ -208,6 +224,13 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
   const { exceptions, expected, dates, coverage, independence, conditionalCoverage, accepted, power, zone } =
     tests
   const sure = percentText(confidence, 1)
+  const { quietToQuiet, quietToException, exceptionToQuiet, exceptionToException } = tests.steps
+  const [fromQuiet, fromException] = [
+    quietToQuiet + quietToException,
+    exceptionToQuiet + exceptionToException,
+  ]
+  const stepsFromBoth = fromQuiet > 0 && fromException > 0
+  const bringsTheNext = exceptionToException * fromQuiet > quietToException * fromException
   const lines: (readonly [string, string, string])[] = [
     [
       'Exceptions',
@@ -227,17 +250,23 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
     ],
     [
       'Independence (Christoffersen)',
-      `p ${probability(independence.pValue)}`,
-      independence.pValue < LEVEL
-        ? 'Exceptions come in clusters: the forecast follows changes of volatility too slowly.'
-        : 'No sign that one exception brings the next; with few exceptions the test sees little.',
+      stepsFromBoth ? `p ${probability(independence.pValue)}` : 'not tested',
+      !stepsFromBoth
+        ? `No date follows ${fromQuiet === 0 ? 'a quiet one' : 'an exception'}: whether one exception brings the next cannot be seen.`
+        : independence.pValue >= LEVEL
+          ? 'No sign that one exception brings the next; with few exceptions the test sees little.'
+          : bringsTheNext
+            ? 'Exceptions come in clusters, as where a forecast follows changes of volatility too slowly.'
+            : 'Exceptions follow one another more seldom than chance would have it.',
     ],
     [
       'Both together',
-      `p ${probability(conditionalCoverage.pValue)}`,
-      conditionalCoverage.pValue < LEVEL
-        ? 'The record speaks against the forecast.'
-        : 'The record does not speak against the forecast.',
+      stepsFromBoth ? `p ${probability(conditionalCoverage.pValue)}` : 'not tested',
+      !stepsFromBoth
+        ? 'The number of exceptions alone can be tested.'
+        : conditionalCoverage.pValue < LEVEL
+          ? 'The record speaks against the forecast.'
+          : 'The record does not speak against the forecast.',
     ],
     [
       'Zone (Basel Committee, MAR32)',
@@ -255,7 +284,7 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
           ? 'Risk was forecast too low.'
           : bias.value < from
             ? 'Risk was forecast too high.'
-            : 'Neither too low nor too high.'
+            : 'No sign that risk was forecast too low or too high.'
       }`,
     ])
   }

@@ -47,6 +47,18 @@ async function desk() {
       [-0.01, 0.02],
       ['', 0.02],
     ],
+    // losses as negative numbers, as some write them; and a record without any exception
+    Signed: [
+      ['Return', 'Value at risk'],
+      [-0.03, -0.02],
+      [0.01, -0.02],
+    ],
+    Calm: [['Return', 'Value at risk'], ...Array.from({ length: 30 }, (_, t) => [value(t, 0), 0.5])],
+    // an exception every other date: they never follow one another
+    Regular: [
+      ['Return', 'Value at risk'],
+      ...Array.from({ length: 30 }, (_, t) => [t % 2 === 0 ? -0.03 : 0.01, 0.02]),
+    ],
   })
   const books = await openBooks(workbook.port)
   running.push(books)
@@ -279,6 +291,64 @@ describe('Studies', () => {
     select('Book!A1:E4')
     await books.backtest({ window: null, confidence: 0.95, method: 'normal' }, 'selection')
     expect(books.state().faults.study).toBeDefined()
+  })
+
+  test('values at risk that are all below 0 are refused, not taken for forecasts of a gain', async () => {
+    const { books, select } = await desk()
+    select('Signed!A1:B3')
+    await books.backtest({ window: null, confidence: 0.95, method: 'normal' }, 'selection')
+    expect(books.state().faults.study).toMatch(/found no number above 0 under “Value at risk”/i)
+  })
+
+  test('independence is not tested where no date follows an exception, and clusters are told from alternation', async () => {
+    const { books, select } = await desk()
+    const lines = async (address: string) => {
+      select(address)
+      await books.backtest({ window: null, confidence: 0.95, method: 'normal' }, 'selection')
+      return new Map(
+        books
+          .state()
+          .studies.backtest!.lines.map(([label, figure, meaning]) => [label, `${figure}: ${meaning}`]),
+      )
+    }
+    const calm = await lines('Calm!A1:B31')
+    expect(calm.get('Independence (Christoffersen)')).toMatch(/^not tested: No date follows an exception/)
+    expect(calm.get('Both together')).toMatch(/^not tested/)
+    expect((await lines('Regular!A1:B31')).get('Independence (Christoffersen)')).toMatch(
+      /^p below 0\.001: Exceptions follow one another more seldom/,
+    )
+  })
+
+  test('a window too short for its confidence is told, and so are the dates of a back-test under another rule for gaps', async () => {
+    const { books } = await desk()
+    const method = async (window: number | null, confidence: number) => {
+      await books.backtest({ window, confidence, method: 'historical' }, 'this book')
+      return books.state().studies.backtest!.method
+    }
+    expect(await method(40, 0.99)).toMatch(/fewer than the 100 dates that 99\.0% confidence needs/)
+    expect(await method(40, 0.95)).not.toMatch(/fewer/)
+    expect(await method(20, 0.95)).not.toMatch(/fewer/)
+    await books.choose({ gaps: 'own overlap' })
+    expect(await method(40, 0.95)).toMatch(/run on the 80 dates common to all holdings/)
+  })
+
+  test('bands of few dates, or of dates that count for few, say that they run narrow', async () => {
+    const { books } = await desk()
+    const note = () => {
+      const { bands } = books.state().breakdown!
+      return typeof bands === 'string' ? bands : bands.note
+    }
+    expect(note()).toBeNull()
+    // 1 / sum of squared weights: (1 + 0.9) / (1 - 0.9) = 19 for a long history, whatever was before it
+    await books.choose({ estimator: { kind: 'exponential', decay: 0.9 } })
+    expect(note()).toMatch(/^By their weights 80 dates tell as much as 19 dates that count alike\. .*narrow/)
+    await books.choose({ estimator: { kind: 'sample' }, lookBack: { kind: 'last', dates: 24 } })
+    expect(note()).toMatch(/^The bands rest on 24 dates\./)
+    await books.choose({ estimator: { kind: 'lagged', lags: 2 }, lookBack: { kind: 'all' } })
+    await books.bootstrap(bootstrap)
+    expect(books.state().studies.bootstrap?.method).toMatch(
+      /those without shrinkage, factors or lagged terms/,
+    )
   })
 
   test('a window longer than the history is told at its own field and leaves the figures alone', async () => {
