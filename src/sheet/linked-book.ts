@@ -281,6 +281,12 @@ export class LinkedBook {
       this.#changed.holdings = false
       this.#readHoldings()
     } else await this.#readSeries(part, area, work)
+    if (part === 'factors' && this.linked && this.settings.estimator.kind !== 'factors') {
+      // no figure rests on them: the book stays as it is, and knows where they are
+      this.#heedStops(part)
+      await this.#save({ [this.keptName('factors')]: area })
+      return
+    }
     // names still hold the earlier ranges until the next compute
     this.linked = false
     this.#settle(part)
@@ -318,7 +324,7 @@ export class LinkedBook {
     if (this.linked) {
       await this.#save({ [this.keptName('capital')]: area })
       await this.refresh('compute', work)
-    } else if (this.breakdown) await this.#compute(work)
+    } else if (this.breakdown) await this.compute(work)
   }
 
   #readHoldings(): void {
@@ -366,12 +372,17 @@ export class LinkedBook {
     )
   }
 
-  /** After a block was read: what the pane says, and whether there is enough to compute from. */
-  #settle(part: 'holdings' | SeriesPart): void {
+  /** After a block was read: what keeps it from being used stands at its field. */
+  #heedStops(part: 'holdings' | SeriesPart): void {
     const stop = this[part]?.findings.find(({ weight }) => weight === 'stops')
     const { [part]: gone, ...others } = this.faults
     void gone
     this.faults = stop ? { ...others, [part]: stop.sentence } : others
+  }
+
+  /** After a block was read: what the pane says, and whether there is enough to compute from. */
+  #settle(part: 'holdings' | SeriesPart): void {
+    this.#heedStops(part)
     if (!this.holdings || !this.returns) return
     this.status = this.breakdown
       ? {
@@ -384,7 +395,7 @@ export class LinkedBook {
 
   // ---- choices
 
-  /** Applies a change of settings; what it makes necessary is done at the next compute or refresh. */
+  /** Applies a change of settings; where there are figures they are computed anew, from the blocks as they are taken now. */
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
     this.settings = { ...this.settings, ...change }
     if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
@@ -403,7 +414,7 @@ export class LinkedBook {
     if (this.linked) {
       await this.#save()
       await this.refresh('compute', work)
-    } else if (this.breakdown) await this.#compute(work)
+    } else if (this.breakdown) await this.compute(work)
   }
 
   /** Gives the book another title; a written table carries it. */

@@ -184,6 +184,27 @@ describe('Choices', () => {
     expect(books.state().status).toEqual({ kind: 'up to date' })
   })
 
+  test('factor returns that no figure rests on leave the figures up to date, and the choice of the model computes', async () => {
+    const { books, take, names, volatility } = await desk()
+    const before = volatility()
+    await take('factors', `Factors!A1:B${WEEKS + 1}`)
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+    expect(names.get('1_factors')?.sheet).toBe('Factors')
+    await books.choose({ estimator: { kind: 'factors' } })
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+    expect(books.state().breakdown?.factors?.names).toEqual(['Common'])
+    expect(volatility()).not.toBe(before)
+  })
+
+  test('a choice made after a block was taken anew computes from that block and links it', async () => {
+    const { books, take, names } = await desk()
+    await take('returns', `Returns!A1:E${WEEKS - 9}`)
+    expect(books.state().status.kind).toBe('stale')
+    await books.choose({ estimator: { kind: 'lagged', lags: 1 } })
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+    expect(names.get('1_returns')?.rows).toBe(WEEKS - 9)
+  })
+
   test('an edit of the factor returns is followed', async () => {
     const { books, take, type, quiet, volatility } = await desk()
     await take('factors', `Factors!A1:B${WEEKS + 1}`)
