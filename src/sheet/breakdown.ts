@@ -244,34 +244,43 @@ function factorSplit({ factors }: BookModel, d: Decomposition): FactorSplit | nu
   }
 }
 
-/** What the test of all series together says, as a part of a sentence; nothing where it could not be made. */
+/** What the test of all series together says, as a part of a sentence, or why it could not be made. */
 const TOGETHER: { readonly [V in BlockNormality['verdict']]: string } = {
   consistent: ', and the series together pass the test of Mardia',
   'heavy-tailed': ', and the series together have heavy tails (Mardia)',
   'light-tailed': ', and the series together have light tails (Mardia)',
   asymmetric: ', and the series together lean to one side (Mardia)',
-  'too-few-dates': '',
-  'dependent-positions': '',
+  'too-few-dates': ' (there are too few dates to test them together)',
+  'dependent-positions': ' (they are not tested together, as one of them follows from the others)',
 }
+
+/** Dates below which the test of Jarque and Bera rejects too seldom to be silent about it. Our own convention. */
+const FEW_DATES = 100
 
 /** Whether returns look normal, and what it means for shares of volatility, in plain words. */
 function normalityOf({ history, normality }: BookModel, weights: Float64Array): NormalityVerdict | null {
   if (!history || !normality) return null
   const book = jarqueBera(history.portfolioReturns(weights))
-  const { statistic, pValue, skewness, excessKurtosis } = book
+  const { observations, statistic, pValue, skewness, excessKurtosis } = book
   if (statistic === null || pValue === null) return null
   const tested = normality.series.flatMap((series) => series.pValue ?? [])
   // with many series some fail by chance, so the level is divided by their number (Bonferroni)
   const failing = tested.filter((p) => p < NORMALITY_LEVEL / tested.length).length
-  const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test${normality.block === null ? ' (so many numbers are not tested together)' : TOGETHER[normality.block.verdict]}`
+  const others = `${failing} of ${countOf(tested.length, 'series', 'series')} ${failing === 1 ? 'fails' : 'fail'} the same test, at 5% over all of them${normality.block === null ? ' (so many numbers are not tested together)' : TOGETHER[normality.block.verdict]}`
   const figures = `Jarque–Bera ${numberText(statistic, 1)}, ${pValue < 0.001 ? 'p below 0.001' : `p ${numberText(pValue, 3)}`}; skewness ${numberText(skewness ?? 0, 2)}, excess kurtosis ${numberText(excessKurtosis ?? 0, 2)}`
+  const few =
+    observations < FEW_DATES
+      ? ` With ${countOf(observations, 'date')} these tests see strong departures only.`
+      : ''
   const block = normality.block?.verdict
   const partsDepart =
     failing > 0 || block === 'heavy-tailed' || block === 'light-tailed' || block === 'asymmetric'
   const meaning = {
     consistent: partsDepart
       ? 'shows no sign against a normal distribution, but the returns of its parts do: shares of volatility need not be shares of large losses'
-      : 'shows no sign against a normal distribution, so shares of volatility can be read as shares of large losses too',
+      : block === 'consistent'
+        ? 'shows no sign against a normal distribution, nor do its parts together: as far as these dates tell, shares of volatility can be read as shares of large losses too'
+        : 'shows no sign against a normal distribution; its parts were not tested together, so that shares of large losses may still be others',
     'heavy-tailed':
       'has heavier tails than a normal distribution: large losses come oftener than its volatility suggests, and shares of volatility need not be shares of large losses',
     'light-tailed':
@@ -281,5 +290,8 @@ function normalityOf({ history, normality }: BookModel, weights: Float64Array): 
     'skewed-to-gains': 'leans to the side of gains: losses are smaller than its volatility suggests',
     'not-tested': 'could not be tested',
   }[book.verdict]
-  return { book, sentence: `The book’s past return at today’s weights ${meaning} (${figures}). ${others}.` }
+  return {
+    book,
+    sentence: `The book’s past return at today’s weights ${meaning} (${figures}). ${others}.${few}`,
+  }
 }

@@ -1,5 +1,6 @@
 import { tailRisk } from '../core'
 import type { Decomposition, TailRisk } from '../core'
+import { grossRatio, MOST_GROSS_CONTRIBUTION } from './benchmark'
 import type { BookModel } from './book-model'
 import { attempt, explain } from './explain'
 import type { Finding } from './findings'
@@ -46,6 +47,7 @@ export function tailsOf(
   if (fault) return explain(fault, () => '')
   const few = risk.tailObservations !== null && risk.tailObservations < FEW
   const observations = numberText(risk.tailObservations ?? 0, 1)
+  const ratio = risk.parts && risk.shortfall ? grossRatio(risk.parts, Math.abs(risk.shortfall)) : 0
   if (few)
     findings.push({
       weight: 'warns',
@@ -55,15 +57,19 @@ export function tailsOf(
   return {
     risk,
     label: `${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence, ${horizonOf(choice.periods, returns)}`,
-    method: methodText(risk),
+    method: `${methodText(risk)}${restsOn(risk, book)}`,
     partsWithheld:
       risk.parts === null
         ? risk.shortfall === null
           ? 'This method gives no expected shortfall, and so no parts of it.'
           : null
-        : risk.tailObservations !== null && risk.tailObservations < TOO_FEW
-          ? `Parts are withheld: ${observations} dates lie in the tail, and each part would be the accident of one or two of them.`
-          : sharesWithheld,
+        : risk.shares === null
+          ? 'Parts are not shown: there is no loss to share, as the expected shortfall is not above 0.'
+          : risk.tailObservations !== null && risk.tailObservations < TOO_FEW
+            ? `Parts are withheld: ${observations} dates lie in the tail, and each part would be the accident of one or two of them.`
+            : ratio > MOST_GROSS_CONTRIBUTION
+              ? `Parts are withheld: they nearly cancel (without their signs they are ${numberText(ratio, 1)} times the expected shortfall), so each says little of it.`
+              : sharesWithheld,
     difference: differenceOf(risk, d, names),
   }
 }
@@ -101,6 +107,15 @@ function methodText(risk: TailRisk): string {
       return `Normal distribution corrected for skewness ${numberText(risk.skewness ?? 0, 2)} and excess kurtosis ${numberText(risk.excessKurtosis ?? 0, 2)}, mean taken as zero`
   }
 }
+
+/** The dates of past returns, where the model rests on others. */
+const restsOn = ({ degrees, method }: TailRisk, { rule, history }: BookModel): string =>
+  rule === 'common dates' ||
+  history === null ||
+  method.kind === 'normal' ||
+  (method.kind === 'student' && (method.degrees !== null || degrees === null))
+    ? ''
+    : `; from the ${countOf(history.dates, 'date')} common to all holdings alone`
 
 function differenceOf(risk: TailRisk, d: Decomposition, names: readonly string[]): string | null {
   const { shares } = risk
