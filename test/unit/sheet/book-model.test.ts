@@ -225,3 +225,17 @@ test('a benchmark series is a position of its own, on the dates it shares', asyn
     where: { argument: 'benchmark' },
   })
 })
+
+test('a benchmark series is not shrunk toward being one holding among others', async () => {
+  const returns = dated(['A', 'B', 'C', 'Index'], 40)
+  const benchmark = { kind: 'series', name: 'Index' } as const
+  const plain = await bookOf(returns, { benchmark })
+  for (const target of ['identity', 'correlation', 'oas'] as const) {
+    const shrunk = await bookOf(returns, { benchmark, estimator: { kind: 'shrinkage', target } })
+    expect(shrunk.benchmark?.model.matrix()).toEqual(plain.benchmark?.model.matrix())
+    expect(told(shrunk, 'warns').at(-1)).toMatch(
+      /^Risk against the benchmark series is the sample covariance’s/,
+    )
+  }
+  expect(told(plain, 'warns')).toEqual([])
+})
