@@ -97,9 +97,15 @@ function commonRows(
   from: number,
   held: readonly Held[],
 ): readonly number[] {
-  return range(from, rows).filter((t) =>
-    held.every(({ series }) => !Number.isNaN(values[t * columns + series]!)),
-  )
+  // plain loops over plain numbers: this looks at every return there is
+  const series = Int32Array.from(held, (one) => one.series)
+  const common: number[] = []
+  for (let t = from; t < rows; t++) {
+    let k = 0
+    while (k < series.length && !Number.isNaN(values[t * columns + series[k]!]!)) k++
+    if (k === series.length) common.push(t)
+  }
+  return common
 }
 
 /** A series that moves less than this beside the others usually do, such as cash, carries no risk to speak of. Our own convention. */

@@ -13,22 +13,26 @@ const CHANCE = 0.01
 /** Correlations over time below this change little whatever chance says. */
 const LEAST_CORRELATION = 0.1
 
-/** How many standard errors are beyond chance in a book of so many series. */
-const limitOf = ({ held }: Evidence): number => jointLimit(held.length, CHANCE)
-
-const isBeyondChance = (evidence: Evidence, found: TimeCorrelation | null): found is TimeCorrelation =>
-  found !== null &&
-  Math.abs(found.value) > limitOf(evidence) * found.standardError &&
-  Math.abs(found.value) >= LEAST_CORRELATION
-
-const chanceText = (evidence: Evidence, { standardError }: TimeCorrelation): string =>
-  `by chance all ${evidence.held.length} series would stay within ${numberText(limitOf(evidence) * standardError)} of 0 in at least ${percentText(1 - CHANCE, 0)} of cases`
+/** What chance makes of correlations in a book of so many series. */
+function chanceIn({ held }: Evidence) {
+  const limit = jointLimit(held.length, CHANCE)
+  return {
+    isBeyond: (found: TimeCorrelation | null): found is TimeCorrelation =>
+      found !== null &&
+      Math.abs(found.value) > limit * found.standardError &&
+      Math.abs(found.value) >= LEAST_CORRELATION,
+    /** a correlation, called by its name, beside what chance alone would make of it */
+    text: (name: string, { value, standardError }: TimeCorrelation): string =>
+      `${name} ${numberText(value)}, where by chance all ${held.length} series would stay within ${numberText(limit * standardError)} of 0 in at least ${percentText(1 - CHANCE, 0)} of cases.`,
+  }
+}
 
 /** A series with its own last return: smoothed or late prices, or such as jump back and forth. */
 export function serialCorrelation(evidence: Evidence, open: readonly Held[]): Found {
+  const chance = chanceIn(evidence)
   const found = open.flatMap((held) => {
     const { serial } = held.fact
-    return isBeyondChance(evidence, serial) ? [{ held, serial }] : []
+    return chance.isBeyond(serial) ? [{ held, serial }] : []
   })
   const suspicions = (isSmooth: boolean): readonly Suspicion[] =>
     found
@@ -37,7 +41,7 @@ export function serialCorrelation(evidence: Evidence, open: readonly Held[]): Fo
         suspect(
           evidence,
           held,
-          `the returns of ${quote(held.name)} ${isSmooth ? 'go on as the last one went' : 'take back part of the last one'}: autocorrelation ${numberText(serial.value)}, where ${chanceText(evidence, serial)}.`,
+          `the returns of ${quote(held.name)} ${isSmooth ? 'go on as the last one went' : 'take back part of the last one'}: ${chance.text('autocorrelation', serial)}`,
         ),
       )
   return {
@@ -73,19 +77,19 @@ function adviceOnSmoothing(evidence: Evidence, about: Told): Advice {
 
 /** A series with the others a day before or after. One direction only: what lags behind the others, or else what runs ahead of them. */
 export function closingTimes(evidence: Evidence, open: readonly Held[]): Found {
+  const chance = chanceIn(evidence)
   const suspicions = (direction: 'follows' | 'leads'): readonly Suspicion[] =>
     open.flatMap((held) => {
       const found = held.fact[direction]
       const opposite = held.fact[direction === 'follows' ? 'leads' : 'follows']
-      if (!isBeyondChance(evidence, found) || found.value <= 0 || isBeyondChance(evidence, opposite))
-        return []
+      if (!chance.isBeyond(found) || found.value <= 0 || chance.isBeyond(opposite)) return []
       const what =
         direction === 'follows' ? 'follow the others’ of the day before' : 'run a day ahead of the others’'
       return [
         suspect(
           evidence,
           held,
-          `daily returns of ${quote(held.name)} ${what}: correlation ${numberText(found.value)}, where ${chanceText(evidence, found)}.`,
+          `daily returns of ${quote(held.name)} ${what}: ${chance.text('correlation', found)}`,
         ),
       ]
     })
