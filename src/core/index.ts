@@ -1,4 +1,5 @@
 export { activeRisk, type ActiveConvention, type ActiveRisk } from './active'
+export { RISK_BAND } from './band'
 export {
   backtest,
   backtestGiven,
@@ -47,7 +48,7 @@ export {
 export { MOST_LAGS, shareBroughtBack, usualLags } from './lagged'
 export { logReturns, simpleReturns } from './returns'
 export { longestRun, rhythm, shareInRuns, withoutRuns, type Run } from './runs'
-export { RISK_BAND, shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
+export { shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
 export {
   autocorrelation,
   carefulError,

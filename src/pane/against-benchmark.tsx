@@ -14,7 +14,7 @@ const useStyles = makeStyles({
 /** Tracking error and what each active weight has of it. */
 export default function AgainstBenchmark({
   active,
-  breakdown: { horizon, names: held },
+  breakdown: { horizon },
 }: {
   active: Active
   breakdown: Breakdown
@@ -62,8 +62,7 @@ export default function AgainstBenchmark({
         rows={[
           ...order.map((i) => ({
             key: i,
-            // a benchmark of one series stands after the holdings and may bear the name of one
-            name: i < held.length ? (names[i] ?? '') : `${names[i] ?? ''} (the benchmark)`,
+            name: names[i] ?? '',
             cells: [
               percentText(weights[i]!, digits),
               percentText(risk.contribution[i]!, digits + 1),

@@ -1,8 +1,7 @@
 import { lazy, Suspense } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import type { BacktestChoice, BacktestStudy, BooksState } from '../sheet'
+import { confidenceText, type BacktestChoice, type BacktestStudy, type BooksState } from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
-import { confidenceText } from './measure'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
 

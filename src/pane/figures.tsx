@@ -1,9 +1,16 @@
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { countOf, dateText, numberText, percentText, type BooksState, type Breakdown } from '../sheet'
+import {
+  bandText,
+  countOf,
+  dateText,
+  numberText,
+  percentText,
+  type BooksState,
+  type Breakdown,
+} from '../sheet'
 import { countsOf } from './checks'
 import { Disclosure } from './controls'
 import { Headline } from './headline'
-import { bandText } from './measure'
 import { Findings, Sentence } from './place'
 import { NONE } from './positions'
 

@@ -1,8 +1,15 @@
 import { useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
-import { numberText, percentText, type Breakdown, type TailChoice, type Tails } from '../sheet'
+import {
+  confidenceText,
+  numberText,
+  percentText,
+  type Breakdown,
+  type TailChoice,
+  type Tails,
+} from '../sheet'
 import { Choice, Entry, typedNumber } from './controls'
-import { confidenceText, digitsFor, sharesOf } from './measure'
+import { digitsFor, sharesOf } from './measure'
 import { NONE } from './positions'
 import { useBooks } from './store'
 import { Headline, Remark } from './headline'

@@ -1,4 +1,4 @@
-import { BAND, percentText, type Bands, type Breakdown } from '../sheet'
+import type { Bands, Breakdown } from '../sheet'
 
 /** The figure that positions are ranked and drawn by. */
 export interface Measure {
@@ -42,17 +42,3 @@ export const sharesOf = ({ decomposition, sharesWithheld }: Breakdown): Float64A
 
 /** The error bands, or null where there are none and the reason is told elsewhere. */
 export const bandsOf = ({ bands }: Breakdown): Bands | null => (typeof bands === 'string' ? null : bands)
-
-/** Both ends of the 95% band of a figure. */
-export const bandOf = (value: number, error: number): readonly [from: number, to: number] => [
-  value - BAND * error,
-  value + BAND * error,
-]
-
-export function bandText(value: number, error: number, digits: number): string {
-  const [from, to] = bandOf(value, error)
-  return `${percentText(from, digits)} to ${percentText(to, digits)}`
-}
-
-/** A confidence level, as typed: 99%, 97.5%. */
-export const confidenceText = (confidence: number): string => `${Number((confidence * 100).toFixed(6))}%`

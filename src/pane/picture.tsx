@@ -5,8 +5,8 @@ import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import { PatternLines } from '@visx/pattern'
 import { scaleLinear } from '@visx/scale'
 import { Bar } from '@visx/shape'
-import { percentText, type Breakdown } from '../sheet'
-import { bandOf, digitsFor, type Measure } from './measure'
+import { bandOf, percentText, type Breakdown } from '../sheet'
+import { digitsFor, type Measure } from './measure'
 import { useWidth } from './width'
 
 const useStyles = makeStyles({

@@ -1,6 +1,6 @@
 import { makeStyles, tokens } from '@fluentui/react-components'
-import { numberText, percentText, type Breakdown } from '../sheet'
-import { bandOf, bandsOf, bandText, digitsFor, sharesOf } from './measure'
+import { bandOf, bandText, numberText, percentText, type Breakdown } from '../sheet'
+import { bandsOf, digitsFor, sharesOf } from './measure'
 import { useKept } from './store'
 import { FigureTable, Pairs, TieOut, WIDTHS, type Sorting, type TableColumn } from './table'
 

@@ -1,6 +1,8 @@
 import { lazy, Suspense, useCallback, useState } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import {
+  bandText,
+  confidenceText,
   countOf,
   numberText,
   percentText,
@@ -11,7 +13,7 @@ import {
 import { Folded, Section } from './controls'
 import { Figures } from './figures'
 import { Remark } from './headline'
-import { bandText, confidenceText, digitsFor, measureOf, sharesOf } from './measure'
+import { digitsFor, measureOf, sharesOf } from './measure'
 import { Positions, sensitivity } from './positions'
 import { useBooksState, useKept } from './store'
 

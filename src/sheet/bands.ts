@@ -1,6 +1,7 @@
-import { RISK_BAND, shareDifferences, standardErrors } from '../core'
+import { shareDifferences, standardErrors } from '../core'
 import type { Decomposition } from '../core'
 import type { BookModel } from './book-model'
+import { BAND } from './wording'
 import { countOf } from './wording'
 
 /** How sure the figures are: standard errors, scaled as the figures are. A 95% band is a figure and 1.96 of its errors either way. */
@@ -16,9 +17,6 @@ export interface Bands {
   /** what has to be said beside them, or null */
   readonly note: string | null
 }
-
-/** How many standard errors a 95% band reaches to either side. */
-export const BAND = RISK_BAND
 
 /** Equally counting dates below which bands are said to run narrow. Our own convention. */
 const FEW_DATES = 60

@@ -51,7 +51,8 @@ export function activeOf(
       activeRisk(book.benchmark.model, weights, benchmark, convention),
       {
         label: `Series ${quote(book.benchmark.name)} of the returns`,
-        names: [...names, book.benchmark.name],
+        // it may be held as well
+        names: [...names, `${book.benchmark.name} (the benchmark)`],
         weights,
         benchmark,
       },

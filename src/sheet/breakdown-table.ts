@@ -1,4 +1,4 @@
-import { BAND, type Bands } from './bands'
+import type { Bands } from './bands'
 import type { Active } from './benchmark'
 import type { Breakdown, FactorSplit } from './breakdown'
 import type { CurrencyRisk } from './currency'
@@ -6,7 +6,7 @@ import { CURRENCY_READING } from './currency'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableCell } from './table'
 import type { Tails } from './tail-section'
-import { CAUTION, countOf, dateText, percentText, POSITION_HEADS } from './wording'
+import { BAND, bandText, CAUTION, countOf, dateText, percentText, POSITION_HEADS } from './wording'
 
 const PERCENT = '0.00%'
 const SHARE = '0.0%'
@@ -29,10 +29,6 @@ function dataOf({ dates }: Breakdown): string {
     dates.first === null || dates.last === null ? '' : `, ${dateText(dates.first)} to ${dateText(dates.last)}`
   return `, from ${countOf(dates.used, 'date')} of returns${span}`
 }
-
-/** A figure's 95% band, as a part of a sentence. */
-export const bandText = (value: number, error: number, digits: number): string =>
-  `${percentText(value - BAND * error, digits)} to ${percentText(value + BAND * error, digits)}`
 
 /** Columns of figures that stand behind the labels of a row; the same in every section, so that one set of widths serves them all. */
 type Column =

@@ -24,7 +24,7 @@ export function estimatorText(estimator: EstimatorChoice): string {
     case 'sample':
       return 'Sample covariance: every date counts alike, divisor T \u2212 1'
     case 'exponential':
-      return `Exponential weighting, decay factor ${estimator.decay} (half-life ${numberText(Math.log(0.5) / Math.log(estimator.decay), 1)} dates); weighted means taken off, weights sum to 1`
+      return `Exponential weighting, decay factor ${Number(estimator.decay.toFixed(6))} (half-life ${numberText(Math.log(0.5) / Math.log(estimator.decay), 1)} dates); weighted means taken off, weights sum to 1`
     case 'population':
       return 'Every date counts alike, divisor T'
     case 'shrinkage':

@@ -6,7 +6,7 @@ import type { Calculator, Work } from './calculator'
 import type { ReturnsReading } from './returns'
 import { estimatorText } from './setting-lines'
 import type { Settings } from './settings'
-import { countOf, numberText, percentText, quote } from './wording'
+import { confidenceText, countOf, numberText, percentText, quote } from './wording'
 
 /** Long computations a user asks for: they stand beside the figures they belong to and go with them. */
 export interface Studies {
@@ -223,7 +223,7 @@ const ZONES = { green: 'Green', amber: 'Amber', red: 'Red' } as const
 function backtestLines({ tests, bias, confidence, missing }: Backtest): BacktestStudy['lines'] {
   const { exceptions, expected, dates, coverage, independence, conditionalCoverage, accepted, power, zone } =
     tests
-  const sure = percentText(confidence, 1)
+  const sure = confidenceText(confidence)
   const { quietToQuiet, quietToException, exceptionToQuiet, exceptionToException } = tests.steps
   const [fromQuiet, fromException] = [
     quietToQuiet + quietToException,

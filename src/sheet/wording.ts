@@ -1,3 +1,5 @@
+import { RISK_BAND } from '../core'
+
 /** How numbers, dates, names and counts read in a sentence: en-US digits, day before month as a word, curly quotes. */
 
 const MONTHS = ['Jan', 'Feb', 'Mar', 'Apr', 'May', 'Jun', 'Jul', 'Aug', 'Sep', 'Oct', 'Nov', 'Dec']
@@ -21,6 +23,12 @@ export function percentText(fraction: number, digits = 1): string {
   const shown = (Math.abs(fraction) * 100).toFixed(digits)
   return `${fraction < 0 && Number(shown) !== 0 ? MINUS : ''}${shown}%`
 }
+
+/**
+ * A confidence level as it is typed.
+ * @example confidenceText(0.975) // '97.5%'
+ */
+export const confidenceText = (confidence: number): string => `${Number((confidence * 100).toFixed(6))}%`
 
 /**
  * A plain number, thousands parted by commas.
@@ -85,3 +93,18 @@ export const POSITION_HEADS = [
 /** What stands beside all figures, wherever they are shown. */
 export const CAUTION =
   'An estimate from past returns, not advice. Local rules and licensed practice come first.'
+
+/** How many standard errors a 95% band reaches to either side. */
+export const BAND = RISK_BAND
+
+/** Both ends of the 95% band of a figure. */
+export const bandOf = (value: number, error: number): readonly [from: number, to: number] => [
+  value - BAND * error,
+  value + BAND * error,
+]
+
+/** The same as a part of a sentence. */
+export function bandText(value: number, error: number, digits: number): string {
+  const [from, to] = bandOf(value, error)
+  return `${percentText(from, digits)} to ${percentText(to, digits)}`
+}

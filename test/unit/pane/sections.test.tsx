@@ -6,11 +6,18 @@ import { Figures } from '../../../src/pane/figures'
 import Groups from '../../../src/pane/groups'
 import HowSure from '../../../src/pane/how-sure'
 import LargeLosses from '../../../src/pane/large-losses'
-import { bandText, confidenceText } from '../../../src/pane/measure'
 import { Positions } from '../../../src/pane/positions'
 import { untold } from '../../../src/pane/returns'
 import type { Area, Breakdown, BooksState, CellValue, CheckLine, Finding, Settings } from '../../../src/sheet'
-import { breakDown, DEFAULT_SETTINGS, matchHoldings, readHoldings, readReturns } from '../../../src/sheet'
+import {
+  bandText,
+  breakDown,
+  confidenceText,
+  DEFAULT_SETTINGS,
+  matchHoldings,
+  readHoldings,
+  readReturns,
+} from '../../../src/sheet'
 import { blockOf, ENGLISH, modelFor } from '../sheet/blocks-of-cells'
 import { draw } from './drawing'
 

@@ -221,7 +221,7 @@ describe('Choices', () => {
     const { active } = books.state().breakdown!
     expect(active?.label).toBe('Column “Benchmark weight” of the holdings')
     await books.choose({ benchmark: { kind: 'series', name: 'Index' } })
-    expect(books.state().breakdown?.active?.names.at(-1)).toBe('Index')
+    expect(books.state().breakdown?.active?.names.at(-1)).toBe('Index (the benchmark)')
     await books.choose({ benchmark: { kind: 'none' } })
     expect(books.state().breakdown?.active).toBeNull()
     await books.choose({ benchmark: { kind: 'column' } })
