@@ -54,23 +54,24 @@ export function tailsOf(
       sentence: `The tail figures at ${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
       area: null,
     })
+  const partsWithheld =
+    risk.parts === null
+      ? risk.shortfall === null
+        ? 'This method gives no expected shortfall, and so no parts of it.'
+        : null
+      : risk.shares === null
+        ? 'Parts are not shown: there is no loss to share, as the expected shortfall is not above 0.'
+        : risk.tailObservations !== null && risk.tailObservations < TOO_FEW
+          ? `Parts are withheld: ${observations} dates lie in the tail, and each part would be the accident of one or two of them.`
+          : ratio > MOST_GROSS_CONTRIBUTION
+            ? `Parts are withheld: they nearly cancel (without their signs they are ${numberText(ratio, 1)} times the expected shortfall), so each says little of it.`
+            : sharesWithheld
   return {
     risk,
     label: `${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence, ${horizonOf(choice.periods, returns)}`,
     method: `${methodText(risk)}${restsOn(risk, book)}`,
-    partsWithheld:
-      risk.parts === null
-        ? risk.shortfall === null
-          ? 'This method gives no expected shortfall, and so no parts of it.'
-          : null
-        : risk.shares === null
-          ? 'Parts are not shown: there is no loss to share, as the expected shortfall is not above 0.'
-          : risk.tailObservations !== null && risk.tailObservations < TOO_FEW
-            ? `Parts are withheld: ${observations} dates lie in the tail, and each part would be the accident of one or two of them.`
-            : ratio > MOST_GROSS_CONTRIBUTION
-              ? `Parts are withheld: they nearly cancel (without their signs they are ${numberText(ratio, 1)} times the expected shortfall), so each says little of it.`
-              : sharesWithheld,
-    difference: differenceOf(risk, d, names),
+    partsWithheld,
+    difference: partsWithheld === null ? differenceOf(risk, d, names) : null,
   }
 }
 
