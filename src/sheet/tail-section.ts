@@ -6,7 +6,7 @@ import { attempt, explain } from './explain'
 import type { Finding } from './findings'
 import type { ReturnsReading } from './returns'
 import type { TailChoice } from './settings'
-import { countOf, numberText, percentText, quote } from './wording'
+import { confidenceText, countOf, numberText, percentText, quote } from './wording'
 
 /** The tail of the book's return, for the horizon and the confidence that were chosen. Losses are positive. */
 export interface Tails {
@@ -51,7 +51,7 @@ export function tailsOf(
   if (few)
     findings.push({
       weight: 'warns',
-      sentence: `The tail figures at ${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
+      sentence: `The tail figures at ${confidenceText(choice.confidence)} confidence rest on ${observations} dates beyond it: rough figures. A lower confidence or more dates make them surer.`,
       area: null,
     })
   const partsWithheld =
@@ -68,19 +68,12 @@ export function tailsOf(
             : sharesWithheld
   return {
     risk,
-    label: `${percentText(choice.confidence, confidenceDigits(choice.confidence))} confidence, ${horizonOf(choice.periods, returns)}`,
+    label: `${confidenceText(choice.confidence)} confidence, ${horizonOf(choice.periods, returns)}`,
     method: `${methodText(risk)}${restsOn(risk, book)}`,
     partsWithheld,
     difference: partsWithheld === null ? differenceOf(risk, d, names) : null,
   }
 }
-
-const confidenceDigits = (confidence: number): number =>
-  Number((confidence * 100).toFixed(6)) % 1 === 0
-    ? 0
-    : Number((confidence * 1000).toFixed(6)) % 1 === 0
-      ? 1
-      : 2
 
 const PERIODS: { readonly [frequency: string]: string } = {
   daily: 'day',
