@@ -252,11 +252,16 @@ export function estimatorOf(given: unknown): Estimator {
       return { kind: 'shrinkage', target: TARGETS[choice as keyof typeof TARGETS] }
     if (word === 'lagged') {
       const lags = decimalOf(choice)
-      if (Number.isInteger(lags) && lags >= 1 && lags <= 10) return { kind: 'lagged', lags }
+      if (Number.isInteger(lags) && lags >= 1 && lags <= MOST_LAGS) return { kind: 'lagged', lags }
       if (!Number.isNaN(lags))
-        throw new Fault('out-of-range', `found ${choice} lags`, 'a whole number from 1 to 10 is needed', {
-          argument,
-        })
+        throw new Fault(
+          'out-of-range',
+          `found ${choice} lags`,
+          `a whole number from 1 to ${MOST_LAGS} is needed`,
+          {
+            argument,
+          },
+        )
     }
   }
   throw new Fault('unknown-choice', `found ${quote(text)}`, needed, { argument })

@@ -2,6 +2,9 @@ import { Fault } from '../../../src/core'
 import { startJob, steppingCalculator } from '../../../src/sheet'
 import { idleWork } from './blocks-of-cells'
 
+// computations of some length beside other tests
+jest.setTimeout(30_000)
+
 /** Returns typed for these tests: sines of no common period. */
 const returns = (dates: number, size: number) =>
   Float64Array.from({ length: dates * size }, (_, k) => 0.01 * Math.sin(1 + k * k + (k % size)))
@@ -37,7 +40,7 @@ test('a long computation gives way between slices and tells how far it is', asyn
   const shares: (number | null)[] = []
   let turns = 0
   const timer = setInterval(() => turns++, 1)
-  await steppingCalculator.run('bootstrap', bootstrap(20_000), {
+  await steppingCalculator.run('bootstrap', bootstrap(6_000), {
     ...idleWork(),
     progress: (what, share) => {
       expect(what).toBe('Drawing dates anew')
