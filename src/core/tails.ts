@@ -38,8 +38,9 @@ export interface TailRisk extends TailChoice {
   /** "historical": T p, the number of dates the tail stands for, fractions included. Few of them make a rough figure. */
   readonly tailObservations: number | null
   /**
-   * "historical": standard error of value at risk, sqrt(p (1-p) / T) / f with f the normal density at the quantile. Fat tails, which
-   * thin the density out there, make it larger: read it as a lower bound.
+   * "historical": standard error of value at risk, sqrt(p (1-p) / T) / f with f the normal density at the quantile. From confidences of about
+   * 90% on fat tails, which thin the density out there, make it larger: read it as a lower bound. Null where T p is below 1: the value at
+   * risk is the largest loss there was, and nothing tells how far it may be off.
    */
   readonly standardError: number | null
   /** "student": degrees of freedom, given or fitted; Infinity where the fit finds no tail fatter than normal. */
@@ -244,7 +245,7 @@ function historical(choice: TailChoice, history: ReturnsModel, weights: Float64A
     parts,
     shares: shortfall > rounding ? parts.map((part) => part / shortfall) : null,
     tailObservations: observations,
-    standardError: Math.sqrt((tail * (1 - tail)) / dates) / density,
+    standardError: observations < 1 ? null : Math.sqrt((tail * (1 - tail)) / dates) / density,
   }
 }
 

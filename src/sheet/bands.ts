@@ -1,8 +1,7 @@
 import { shareDifferences, standardErrors } from '../core'
 import type { Decomposition } from '../core'
 import type { BookModel } from './book-model'
-import { BAND } from './wording'
-import { countOf } from './wording'
+import { BAND, countOf } from './wording'
 
 /** How sure the figures are: standard errors, scaled as the figures are. A 95% band is a figure and 1.96 of its errors either way. */
 export interface Bands {
@@ -20,6 +19,9 @@ export interface Bands {
 
 /** Equally counting dates below which bands are said to run narrow. Our own convention. */
 const FEW_DATES = 60
+
+/** Dates below which there are none: of 2 the closed form makes an error of 0. Our own convention. */
+const TOO_FEW_DATES = 10
 
 /**
  * That bands of few dates are too narrow. Simulated with five positions and Student returns of 5 degrees of freedom, 4,000 times each: bands of
@@ -47,6 +49,8 @@ export function bandsOf(book: BookModel, d: Decomposition): Bands | string {
   if (typeof precision === 'string') return precision
   if (d.volatility === 0) return 'There is no risk whose error could be told.'
   const { model, lags, note } = precision
+  if (model.dates < TOO_FEW_DATES)
+    return `${countOf(model.dates, 'date')} do not tell how far the figures vary: at least ${TOO_FEW_DATES} are needed for error bands.`
   const scale = Math.sqrt(d.periodsPerYear)
   const errors = standardErrors(model, d.weights, lags)
   const order = [...d.contribution.keys()].sort((a, b) => d.contribution[b]! - d.contribution[a]! || a - b)

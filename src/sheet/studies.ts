@@ -45,6 +45,9 @@ export interface BacktestStudy {
   readonly lines: readonly (readonly [label: string, figure: string, meaning: string])[]
 }
 
+/** Blocks a history must hold for drawing them anew to say much. Our own convention. */
+const FEWEST_BLOCKS = 5
+
 /**
  * Draws the history anew and compares the errors with the closed form.
  *
@@ -99,11 +102,13 @@ export async function bootstrapStudy(
     },
     method: `${countOf(choice.replicates, 'history', 'histories')} of ${countOf(data.rows.length, 'date')}, drawn ${choice.blockLength === 1 ? 'date by date' : `in circular blocks of ${countOf(choice.blockLength, 'date')}`} with replacement${plain ? '' : '; figures drawn are those without shrinkage, factors or lagged terms'}; ${BOOTSTRAP_GENERATOR}, seed ${choice.seed}`,
     agreement:
-      typeof bands === 'string'
-        ? bands
-        : bands.volatility === 0
-          ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
-          : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
+      data.rows.length < FEWEST_BLOCKS * choice.blockLength
+        ? `No errors to go by: of blocks of ${countOf(choice.blockLength, 'date')} fewer than ${FEWEST_BLOCKS} make a history of ${data.rows.length}, and all histories are much the same. Take shorter blocks.`
+        : typeof bands === 'string'
+          ? bands
+          : bands.volatility === 0
+            ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
+            : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
   }
 }
 
@@ -167,7 +172,7 @@ export async function backtestStudy(
   return {
     result,
     dates: data.serials?.slice(first) ?? null,
-    method: `Forecasts at today’s weights from the ${choice.window === null ? `dates before (first after ${first})` : `${choice.window} dates before`}; ${estimatorText(estimator)}${every > 1 ? `, estimated anew every ${every} dates` : ''}; value at risk ${choice.method === 'normal' ? 'from a normal distribution with mean zero' : `from the losses of ${choice.window === null ? 'these dates' : 'the window'}${tooFew}`}${book.rule === 'common dates' ? '' : `; run on the ${countOf(dates, 'date')} common to all holdings, whatever the rule for gaps`}`,
+    method: `Forecasts at today’s weights from the ${choice.window === null ? `dates before (first after ${first})` : `${choice.window} dates before`}; ${estimatorText(estimator)}${every > 1 ? `, estimated anew every ${every} dates` : ''}${estimator.kind === 'lagged' ? ', which makes a volatility for many dates rather than for the next' : ''}; value at risk ${choice.method === 'normal' ? 'from a normal distribution with mean zero' : `from the losses of ${choice.window === null ? 'these dates' : 'the window'}${tooFew}`}${book.rule === 'common dates' ? '' : `; run on the ${countOf(dates, 'date')} common to all holdings, whatever the rule for gaps`}`,
     lines: backtestLines(result),
   }
 }

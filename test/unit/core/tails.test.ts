@@ -336,6 +336,17 @@ describe('the domain of Cornish-Fisher', () => {
   })
 })
 
+test('the largest loss of too short a history has no standard error', () => {
+  const model = series(-0.04, -0.01, 0.02, 0.03, 0.01)
+  // T p = 5 x 0.2 = 1 and 5 x 0.1 = 0.5, by hand
+  expect(ofHistory(model, historical, { confidence: 0.8 })).toMatchObject({ valueAtRisk: 0.04 })
+  expect(ofHistory(model, historical, { confidence: 0.8 }).standardError).toBeGreaterThan(0)
+  expect(ofHistory(model, historical, { confidence: 0.9 })).toMatchObject({
+    valueAtRisk: 0.04,
+    standardError: null,
+  })
+})
+
 describe('the verdict on normality', () => {
   const verdict = (...values: number[]) => jarqueBera(Float64Array.from(values)).verdict
   const spread = Array.from({ length: 200 }, (_, k) => k - 99.5)

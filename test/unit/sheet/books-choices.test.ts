@@ -365,6 +365,8 @@ describe('Studies', () => {
     expect(note()).toMatch(/^By their weights 80 dates tell as much as 19 dates that count alike\. .*narrow/)
     await books.choose({ estimator: { kind: 'sample' }, lookBack: { kind: 'last', dates: 24 } })
     expect(note()).toMatch(/^The bands rest on 24 dates\./)
+    await books.choose({ lookBack: { kind: 'last', dates: 9 } })
+    expect(note()).toMatch(/^9 dates do not tell how far the figures vary/)
     await books.choose({ estimator: { kind: 'lagged', lags: 2 }, lookBack: { kind: 'all' } })
     await books.bootstrap(bootstrap)
     expect(books.state().studies.bootstrap?.method).toMatch(
