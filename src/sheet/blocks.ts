@@ -1,4 +1,4 @@
-import { type Estimator, Fault, type FaultCode, type TailMethod, type Where } from '../core'
+import { type Estimator, Fault, type FaultCode, MOST_LAGS, type TailMethod, type Where } from '../core'
 import { isBlank, PLAIN_CULTURE, type CellValue } from './cells'
 import { attempt } from './explain'
 import { plainName } from './names'

@@ -1,3 +1,4 @@
+import { MOST_LAGS } from '../core'
 import type { ActiveConvention, Estimator, TailMethod } from '../core'
 import type { Json } from './workbook'
 
@@ -182,7 +183,7 @@ function estimatorFrom(json: Json | undefined): EstimatorChoice | null {
     }
     case 'lagged': {
       const count = positive(lags)
-      return count !== null && Number.isInteger(count) && count <= 10 ? { kind, lags: count } : null
+      return count !== null && Number.isInteger(count) && count <= MOST_LAGS ? { kind, lags: count } : null
     }
     default:
       return null
