@@ -21,7 +21,7 @@ export interface Bands {
 const FEW_DATES = 60
 
 /** Dates below which there are none: of 2 the closed form makes an error of 0. Our own convention. */
-const TOO_FEW_DATES = 10
+const TOO_FEW_DATES = 5
 
 /**
  * That bands of few dates are too narrow. Simulated with five positions and Student returns of 5 degrees of freedom, 4,000 times each: bands of

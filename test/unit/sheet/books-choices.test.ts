@@ -365,12 +365,21 @@ describe('Studies', () => {
     expect(note()).toMatch(/^By their weights 80 dates tell as much as 19 dates that count alike\. .*narrow/)
     await books.choose({ estimator: { kind: 'sample' }, lookBack: { kind: 'last', dates: 24 } })
     expect(note()).toMatch(/^The bands rest on 24 dates\./)
-    await books.choose({ lookBack: { kind: 'last', dates: 9 } })
-    expect(note()).toMatch(/^9 dates do not tell how far the figures vary/)
+    await books.choose({ lookBack: { kind: 'last', dates: 4 } })
+    expect(note()).toMatch(/^4 dates do not tell how far the figures vary/)
     await books.choose({ estimator: { kind: 'lagged', lags: 2 }, lookBack: { kind: 'all' } })
     await books.bootstrap(bootstrap)
     expect(books.state().studies.bootstrap?.method).toMatch(
       /those without shrinkage, factors or lagged terms/,
+    )
+    // five blocks of 16 dates make 80; of one block of all of them every history is the same
+    await books.bootstrap({ ...bootstrap, blockLength: 16 })
+    expect(books.state().studies.bootstrap?.agreement).toMatch(/in closed form/)
+    await books.bootstrap({ ...bootstrap, blockLength: 80 })
+    expect(books.state().studies.bootstrap?.agreement).toMatch(/^No errors to go by/)
+    await books.backtest({ window: 40, confidence: 0.95, method: 'normal' }, 'this book')
+    expect(books.state().studies.backtest?.method).toMatch(
+      /a volatility for many dates rather than for the next/,
     )
   })
 
