@@ -63,7 +63,14 @@ export function activeOf(
   if (!column) return null
   const benchmark = Float64Array.from(held, (holding) => holding.benchmark ?? 0)
   const total = benchmark.reduce((sum, weight) => sum + weight, 0)
-  if (benchmark.every((weight) => weight === 0)) return null
+  if (benchmark.every((weight) => weight === 0)) {
+    findings.push({
+      weight: 'notes',
+      sentence: `${quote(column.header)} holds no benchmark weight: there are no figures against a benchmark.`,
+      area: null,
+    })
+    return null
+  }
   const blank = held.filter((holding) => holding.benchmark === null && holding.weight !== 0).length
   if (blank > 0)
     findings.push({

@@ -11,7 +11,7 @@ import type { Match } from './matching'
 import { plainName } from './names'
 import type { ReturnsReading } from './returns'
 import type { GapRule, Settings } from './settings'
-import { countOf, dateText, listOf, numberText, quote } from './wording'
+import { countOf, dateText, listOf, numberText, percentText, quote } from './wording'
 
 /** The dates a model rests on. */
 export interface Window {
@@ -445,11 +445,37 @@ class Estimation {
       ])
     }
     if (pairs?.repair) quality.push(['Eigenvalue check', this.#repaired(pairs.repair)])
-    for (const { columns, dates, longer } of completed?.slice(1) ?? [])
+    if (pairs?.overlap && pairs.overlap.dates < FEW_IN_COMMON) {
+      const { i, j, dates } = pairs.overlap
+      this.#findings.push({
+        weight: 'warns',
+        sentence:
+          i === j
+            ? `${this.#nameOf(i)} has ${countOf(dates, 'date')} only: its volatility is little more than an accident of them.`
+            : `${this.#nameOf(i)} and ${this.#nameOf(j)} have ${countOf(dates, 'date')} in common: their correlation is little more than an accident of them.`,
+        area: this.#cellOf(j),
+      })
+    }
+    for (const { columns, dates, longer, redundant } of completed?.slice(1) ?? []) {
+      const names = listOf(Array.from(columns, (i) => this.#nameOf(i)))
+      const used = longer - redundant.length
+      const without =
+        redundant.length === 0
+          ? ''
+          : `; left out of it, as the others give them: ${listOf(Array.from(redundant, (i) => this.#nameOf(i)))}`
       quality.push([
         'Completed',
-        `${listOf(Array.from(columns, (i) => this.#nameOf(i)))}: ${countOf(dates, 'date')}, the others by regression on ${countOf(longer, 'longer series', 'longer series')} (Stambaugh 1997)`,
+        `${names}: ${countOf(dates, 'date')}, the others by regression on ${countOf(longer, 'longer series', 'longer series')} (Stambaugh 1997)${without}`,
       ])
+      // residuals of T dates have T - k - 1 degrees of freedom, and their likeliest variance the divisor T
+      const free = (dates - used - 1) / dates
+      if (free < LEAST_FREE)
+        this.#findings.push({
+          weight: 'warns',
+          sentence: `${names}: ${countOf(dates, 'date')} for a regression on ${countOf(used, 'series', 'series')}, which fits the past too well: the risk these do not explain is understated, to some ${percentText(Math.sqrt(free), 0)} of what it is.`,
+          area: this.#cellOf(columns[0]!),
+        })
+    }
     return {
       model: matrixModel(matrix, size),
       factors: null,
@@ -626,6 +652,12 @@ export const GAP_WORDS: { readonly [R in GapRule]: string } = {
   'own overlap': 'each pair’s own overlap',
   completed: 'completed from the longer histories',
 }
+
+/** Dates in common below which a pair is warned of. Our own convention. */
+const FEW_IN_COMMON = 20
+
+/** Degrees of freedom over dates below which a completed history is warned of. Our own convention. */
+const LEAST_FREE = 0.75
 
 const nothingForeign = (base: string): string =>
   `Every holding stands in ${base}, the base currency: there is nothing to split.`

@@ -239,3 +239,26 @@ test('a benchmark series is not shrunk toward being one holding among others', a
   }
   expect(told(plain, 'warns')).toEqual([])
 })
+
+test('a pair with few dates in common, and a regression with few dates to spare, are warned of', async () => {
+  const names = ['A', 'B', 'C', 'D', 'E']
+  const late = dated(names, 60, (t, i) => i === 4 && t < 52)
+  const pairs = await bookOf(late, { gaps: 'own overlap' }, names)
+  expect(told(pairs, 'warns').at(-1)).toMatch(/^“A” and “E” have 8 dates in common/)
+  // 8 dates, 4 longer series and an intercept: 3 of 8 degrees of freedom, and sqrt(3/8) = 61%, by hand
+  const completed = await bookOf(late, { gaps: 'completed' }, names)
+  expect(told(completed, 'warns')).toEqual([
+    '“E”: 8 dates for a regression on 4 series, which fits the past too well: the risk these do not explain is understated, to some 61% of what it is.',
+  ])
+})
+
+test('longer series that say nothing of their own are named where a history is completed without them', async () => {
+  const rows = Array.from({ length: 40 }, (_, t) => [
+    DAY + 7 * t,
+    wave(t, 0),
+    2 * wave(t, 0),
+    t < 10 ? '' : wave(t, 2),
+  ])
+  const book = await bookOf(returnsOf([['Date', 'A', 'B', 'C'], ...rows]), { gaps: 'completed' })
+  expect(line(book, 'Completed')).toMatch(/; left out of it, as the others give them: “B”$/)
+})

@@ -234,6 +234,21 @@ describe('Choices', () => {
     expect(own?.sharesWithheld).toMatch(/^Shares are not defined: the book is its benchmark/)
   })
 
+  test('a column of benchmark weights without any weight is told', async () => {
+    const { books, type, quiet } = await desk()
+    type('Book!E2', 0)
+    type('Book!E3', 0)
+    const { breakdown } = await quiet()
+    expect(breakdown?.active).toBeNull()
+    expect(breakdown?.findings.map(({ sentence }) => sentence)).toContain(
+      '“Benchmark weight” holds no benchmark weight: there are no figures against a benchmark.',
+    )
+    await books.choose({ benchmark: { kind: 'none' } })
+    expect(
+      books.state().breakdown?.findings.some(({ sentence }) => /no benchmark weight/.test(sentence)),
+    ).toBe(false)
+  })
+
   test('a benchmark series that is not there says so at its own field', async () => {
     const { books } = await desk()
     await books.choose({ benchmark: { kind: 'series', name: 'Gold' } })
