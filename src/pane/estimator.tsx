@@ -23,7 +23,7 @@ const TARGETS = {
 } as const
 
 const TARGET_HINTS: { readonly [T in keyof typeof TARGETS]: string } = {
-  correlation: 'Variances stay as they are; correlations are pulled to their mean (Ledoit & Wolf 2003).',
+  correlation: 'Variances stay as they are; correlations are pulled to their mean (Ledoit & Wolf 2004).',
   identity: 'Variances are pulled to their mean, correlations to 0 (Ledoit & Wolf 2004).',
   oas: 'As identity; intensity by oracle approximation, for normal returns (Chen et al. 2010).',
 }

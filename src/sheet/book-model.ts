@@ -532,6 +532,12 @@ class Estimation {
     if (returns.dates && factors.dates) {
       const places = new Map(factors.dates.map((date, row) => [Math.floor(date), row]))
       const dates = returns.dates
+      if (factors.frequency !== returns.frequency)
+        this.#findings.push({
+          weight: 'warns',
+          sentence: `Factor returns are ${factors.frequency}, the returns of the holdings ${returns.frequency}: on one date they do not tell of the same span of time.`,
+          area: factors.area,
+        })
       rowOf = (t) => usable(places.get(Math.floor(dates[t] ?? NaN)) ?? -1)
     } else {
       if (factors.rows !== returns.rows)

@@ -44,7 +44,7 @@ import { countOf, POSITION_HEADS } from './wording'
  * back per period, or by the year where periods_per_year is given (square root of time), as fractions. Vectors come back in the
  * orientation of weights. The estimator is "sample" (divisor T-1; the default), "exponential" or "exponential 0.97" (decay factor, 0.94
  * where none is given; weighted mean taken off, weights scaled to sum 1), "shrink identity" (Ledoit & Wolf 2004), "shrink correlation" (toward
- * constant correlation, Ledoit & Wolf 2003), "shrink oas" (Chen et al. 2010) or "lagged 1" to "lagged 10" (Newey & West 1987); the latter
+ * constant correlation, Ledoit & Wolf 2004), "shrink oas" (Chen et al. 2010) or "lagged 1" to "lagged 10" (Newey & West 1987); the latter
  * four divide by T.
  *
  * All are estimates from the numbers given, no advice.

@@ -7,7 +7,7 @@ import { countOf, dateText, numberText, percentText } from './wording'
 
 const TARGETS = {
   identity: 'a multiple of the identity (Ledoit & Wolf 2004)',
-  correlation: 'constant correlation, variances kept (Ledoit & Wolf 2003)',
+  correlation: 'constant correlation, variances kept (Ledoit & Wolf 2004)',
   oas: 'a multiple of the identity (Chen, Wiesel, Eldar & Hero 2010)',
 } as const
 
@@ -79,7 +79,7 @@ export function settingLines(
     'Scaling',
     periods === null
       ? 'Per period, not scaled'
-      : `Per period times the square root of ${numberText(periods, Number.isInteger(periods) ? 0 : 2)} periods a year${settings.periodsPerYear === null ? ' (from the dates)' : ''}; holds for returns without autocorrelation`,
+      : `Per period times the square root of ${numberText(periods, Number.isInteger(periods) ? 0 : 2)} periods a year${settings.periodsPerYear === null ? ' (from the dates)' : ''}; ${window && estimator.kind === 'lagged' ? 'autocorrelation beyond the lagged terms is not allowed for' : 'holds for returns without autocorrelation'}`,
   ])
   if (settings.riskless.length > 0)
     lines.push(['Riskless', `${settings.riskless.join(', ')} (marked by the user)`])

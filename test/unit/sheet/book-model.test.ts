@@ -262,3 +262,16 @@ test('longer series that say nothing of their own are named where a history is c
   const book = await bookOf(returnsOf([['Date', 'A', 'B', 'C'], ...rows]), { gaps: 'completed' })
   expect(line(book, 'Completed')).toMatch(/; left out of it, as the others give them: “B”$/)
 })
+
+test('factor returns of another frequency are warned of', async () => {
+  const returns = dated(['A', 'B', 'C'], 60)
+  // every fourth week, on dates of the holdings
+  const rows = Array.from({ length: 15 }, (_, k) => [DAY + 28 * k, wave(4 * k, 7)])
+  const factors = returnsOf([['Date', 'Market'], ...rows])
+  const holdings = held('A', 'B', 'C')
+  const book = await modelFor(
+    { match: matchHoldings(holdings, returns, []), holdings, returns, factors },
+    { ...DEFAULT_SETTINGS, estimator: { kind: 'factors' } },
+  )
+  expect(told(book, 'warns')[0]).toMatch(/^Factor returns are monthly, the returns of the holdings weekly/)
+})

@@ -156,3 +156,12 @@ test('what is said of a normal distribution says no more than its tests can see'
     /its parts were not tested together.* as one of them follows from the others/,
   )
 })
+
+test('the square root of time is said to hold as far as the estimator lets it', async () => {
+  const scaling = async (change: Partial<Settings>) =>
+    (await printed(AMOUNTS, { periodsPerYear: 52, ...change })).find((text) => text.startsWith('Scaling'))
+  expect(await scaling({})).toMatch(/holds for returns without autocorrelation$/)
+  expect(await scaling({ estimator: { kind: 'lagged', lags: 1 } })).toMatch(
+    /autocorrelation beyond the lagged terms is not allowed for$/,
+  )
+})
