@@ -28,6 +28,7 @@ const PLAIN: Face = { bold: false, italic: false, align: 'General', wrap: false,
 
 const FACES: { readonly [mark in Mark]: Face } = {
   title: { ...PLAIN, bold: true },
+  section: { ...PLAIN, bold: true, bottom: LINE },
   head: { ...PLAIN, bold: true, wrap: true, bottom: LINE },
   total: { ...PLAIN, bold: true, top: LINE },
   note: { ...PLAIN, italic: true },

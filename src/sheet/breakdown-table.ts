@@ -6,7 +6,7 @@ import { CURRENCY_READING } from './currency'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableCell } from './table'
 import type { Tails } from './tail-section'
-import { BAND, bandText, CAUTION, countOf, dateText, percentText, POSITION_HEADS } from './wording'
+import { BAND, bandText, CAUTION, countOf, dateText, percentText, POSITION_HEADS, quote } from './wording'
 
 const PERCENT = '0.00%'
 const SHARE = '0.0%'
@@ -47,7 +47,7 @@ type Column =
 const [WEIGHT, STAND_ALONE, MARGINAL, CONTRIBUTION, SHARE_HEAD, BETA, CORRELATION] = POSITION_HEADS
 const HEADS: readonly (readonly [Column, string, number])[] = [
   ['weight', WEIGHT, 11],
-  ['stand-alone', STAND_ALONE, 14],
+  ['stand-alone', STAND_ALONE, 16],
   ['marginal', MARGINAL, 16],
   ['contribution', CONTRIBUTION, 16],
   ['contribution low', '95% band, from', 11],
@@ -79,7 +79,7 @@ class Rows {
   /** Cells from the left on; the rest of the row is blank, under the mark of a heading or a total. */
   add(cells: readonly TableCell[], level = 0): void {
     const mark = cells[0]?.mark
-    const rest = text('', mark === 'head' || mark === 'total' ? mark : undefined)
+    const rest = text('', mark === 'section' || mark === 'head' || mark === 'total' ? mark : undefined)
     this.cells.push([...cells, ...Array.from({ length: this.width - cells.length }, () => rest)])
     this.levels.push(level)
   }
@@ -160,7 +160,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   addBook(rows, breakdown, bands)
 
   rows.blank()
-  rows.add([text('Settings', 'head')])
+  rows.add([text('Settings', 'section')])
   for (const [label, value] of settings) rows.add([text(label), text(value)])
   rows.add([
     text('Reading'),
@@ -179,7 +179,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   if (typeof tails === 'string') rows.add([text('Large losses'), text(`Not shown. ${tails}`)])
   if (breakdown.normality) rows.add([text('Normality'), text(breakdown.normality.sentence)])
   rows.blank()
-  rows.add([text('Warnings', 'head')])
+  rows.add([text('Warnings', 'section')])
   for (const sentence of warnings) rows.add([text(sentence, 'alert')])
   if (warnings.length === 0) rows.add([text('None')])
 
@@ -264,7 +264,7 @@ export const reducesRisk = (contribution: number, total: number): boolean =>
   contribution < -LEAST_SHARE * total
 
 /** What is to be said of a position: that it reduces risk, and where its rank is not certain. */
-function notesOf({ decomposition: d }: Breakdown, bands: Bands | null): readonly string[] {
+function notesOf({ decomposition: d, names }: Breakdown, bands: Bands | null): readonly string[] {
   const notes = [...d.contribution].map((contribution, i) => {
     if (!reducesRisk(contribution, d.volatility)) return []
     const upper = bands ? contribution + BAND * (bands.contribution[i] ?? 0) : -1
@@ -273,7 +273,9 @@ function notesOf({ decomposition: d }: Breakdown, bands: Bands | null): readonly
     ]
   })
   bands?.order.forEach((position, k) => {
-    if (bands.tied[k]) notes[position]?.push(`Rank ${k + 1}, not told apart from rank ${k + 2}`)
+    const next = names[bands.order[k + 1] ?? -1]
+    if (bands.tied[k] && next !== undefined)
+      notes[position]?.push(`Rank ${k + 1}, not told apart from rank ${k + 2}, ${quote(next)}`)
   })
   return notes.map((list) => list.join('; '))
 }
@@ -378,7 +380,7 @@ function addTails(
 ): void {
   const { decomposition: d, names, sharesWithheld } = breakdown
   rows.blank()
-  rows.add([text(`Large losses: ${label}`, 'head')])
+  rows.add([text(`Large losses: ${label}`, 'section')])
   rows.figure('Value at risk', number(risk.valueAtRisk, PERCENT), `${method}.`)
   if (risk.standardError !== null)
     rows.figure(
@@ -432,7 +434,7 @@ function addTails(
 function addActive(rows: Rows, active: Active, horizon: string): void {
   const { risk, names, weights, benchmark, sharesWithheld } = active
   rows.blank()
-  rows.add([text(`Against the benchmark: ${active.label}`, 'head')])
+  rows.add([text(`Against the benchmark: ${active.label}`, 'section')])
   rows.figure(
     `Tracking error (ex ante) ${horizon}`,
     number(risk.trackingError, PERCENT),
@@ -496,7 +498,7 @@ function addActive(rows: Rows, active: Active, horizon: string): void {
 function addCurrency(rows: Rows, { names, decomposition: d }: Breakdown, currency: CurrencyRisk): void {
   const { base, labels, parts } = currency
   rows.blank()
-  rows.add([text(`Currency: base ${base}`, 'head')])
+  rows.add([text(`Currency: base ${base}`, 'section')])
   if (typeof parts === 'string') {
     rows.add([text(parts, 'note')])
     return
@@ -525,13 +527,18 @@ function addCurrency(rows: Rows, { names, decomposition: d }: Breakdown, currenc
     row([name, labels[i] ?? ''], [d.weights[i]!, parts.local[i]!, parts.currency[i]!, d.contribution[i]!]),
   )
   row(['Total'], sums, 'total')
+  rows.blank()
   rows.row([text('Currency', 'head')], { weight: WEIGHT, ...heads }, '', 'head')
   for (const { label, exposure, local, currency: foreign, contribution } of parts.byCurrency)
     row([label], [exposure, local, foreign, contribution])
   row(['Total'], sums, 'total')
 }
 
-function addFactors(rows: Rows, { names, decomposition: d }: Breakdown, split: FactorSplit): void {
+function addFactors(
+  rows: Rows,
+  { names, decomposition: d, sharesWithheld }: Breakdown,
+  split: FactorSplit,
+): void {
   rows.blank()
   rows.row(
     [text('Factors', 'head')],
@@ -544,7 +551,7 @@ function addFactors(rows: Rows, { names, decomposition: d }: Breakdown, split: F
       [text(label, mark)],
       {
         contribution: number(contribution, PERCENT, mark),
-        share: number(d.volatility === 0 ? null : (contribution ?? 0) / d.volatility, SHARE, mark),
+        share: shareCell((contribution ?? 0) / d.volatility, sharesWithheld, d.share !== null, mark),
         marginal: number(explained, SHARE, mark),
       },
       '',
@@ -552,14 +559,14 @@ function addFactors(rows: Rows, { names, decomposition: d }: Breakdown, split: F
     )
   split.names.forEach((name, k) => row(name, split.systematic[k]))
   row('All factors', sumOf(split.systematic), undefined, 'total')
-  names.forEach((name, i) => row(`${name}, its own`, split.specific[i], split.explained[i]))
+  names.forEach((name, i) => row(`${name}, specific`, split.specific[i], split.explained[i]))
   row('Total', sumOf(split.systematic) + sumOf(split.specific), undefined, 'total')
 }
 
 function addBook(rows: Rows, breakdown: Breakdown, bands: Bands | null): void {
   const { decomposition: d } = breakdown
   rows.blank()
-  rows.add([text('The book', 'head')])
+  rows.add([text('The book', 'section')])
   rows.figure(
     `Volatility ${breakdown.horizon}`,
     number(d.volatility, PERCENT),

@@ -6,7 +6,7 @@ import type { Mark, Table, TableCell } from './table'
 import { CAUTION, countOf, dateText } from './wording'
 
 const HEADS: readonly (readonly [head: string, width: number])[] = [
-  ['Weight', 10],
+  ['Severity', 10],
   ['What was found', 58],
   ['Cells', 24],
   ['What it does to the figures', 46],
@@ -16,7 +16,7 @@ const HEADS: readonly (readonly [head: string, width: number])[] = [
   ['Volatility corrected', 12],
 ]
 
-const WEIGHTS = { stops: 'Stops', warns: 'Warning', notes: 'Note' } as const
+const SEVERITIES = { stops: 'Stops', warns: 'Warning', notes: 'Note' } as const
 
 /** Of one fault this many cells are listed; the rest is counted. */
 const MOST_CELLS = 25
@@ -62,7 +62,7 @@ export function checksTable(
       const first = k === 0
       const corrected = correction?.volatility
       add(
-        text(first ? WEIGHTS[check.weight] : '', check.weight !== 'notes' && first ? 'alert' : undefined),
+        text(first ? SEVERITIES[check.weight] : '', check.weight !== 'notes' && first ? 'alert' : undefined),
         text(first ? check.sentence : '', 'wrapped'),
         places[k] ?? text(''),
         text(first ? check.effect : '', 'wrapped'),

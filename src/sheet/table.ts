@@ -1,7 +1,10 @@
 import type { Area, CellValue } from './cells'
 
-/** How a cell of a written table is set off ('wrapped': running text over several lines); a host maps it to fonts, fills and rules of its own. */
-export type Mark = 'title' | 'head' | 'total' | 'note' | 'alert' | 'wrapped'
+/**
+ * How a cell of a written table is set off ('section': the heading of a part, on one line; 'head': a heading of columns; 'wrapped': running
+ * text over several lines); a host maps it to fonts, fills and rules of its own.
+ */
+export type Mark = 'title' | 'section' | 'head' | 'total' | 'note' | 'alert' | 'wrapped'
 
 /** One cell to be written. Text always goes in as text, whatever it begins with. */
 export interface TableCell {

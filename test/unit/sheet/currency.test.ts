@@ -327,7 +327,7 @@ test('the written table states the base currency and both parts, which add up in
   const rows = cells.map((row) => row.map(({ value }) => value).filter((value) => value !== ''))
   expect(rows[1]?.[0]).toMatch(/^Volatility 1\.17% a year in EUR \(95% band .*\), from 10 dates/)
   const at = rows.findIndex(([first]) => first === 'Currency: base EUR')
-  const section = rows.slice(at + 3, at + 13)
+  const section = rows.slice(at + 3, at + 14)
   expect(section.map((row) => row.filter((value) => typeof value === 'string'))).toEqual([
     ['Holding', 'Currency', 'Weight', 'Local part', 'Currency part', 'Contribution to risk'],
     ['Harbour', 'EUR'],
@@ -335,6 +335,7 @@ test('the written table states the base currency and both parts, which add up in
     ['Moor', 'gbp'],
     ['Dollar deposit', 'USD'],
     ['Total'],
+    [],
     ['Currency', 'Weight', 'Local part', 'Currency part', 'Contribution to risk'],
     ['EUR'],
     ['USD'],
