@@ -1,6 +1,7 @@
 import gammainc from '@stdlib/math-base-special-gammainc'
 import binomialCdf from '@stdlib/stats-base-dists-binomial-cdf'
 import normalQuantile from '@stdlib/stats-base-dists-normal-quantile'
+import { RISK_BAND } from './band'
 import { estimateModel, type Estimator } from './estimate'
 import { checkBlock, Fault } from './fault'
 import { momentsOf } from './moments'
@@ -8,9 +9,6 @@ import { returnsModel } from './risk-model'
 import type { TestResult } from './series'
 import { shrinkageOf, shrunkModel } from './shrinkage'
 import { partOf } from './steps'
-
-/** How many standard errors a 95% band reaches to either side: 1.959964. */
-const TWO_SIDED = normalQuantile(0.975, 0, 1)
 
 /** Days on which a loss went beyond the value at risk, and what that says of the forecasts. */
 export interface ExceptionTests {
@@ -112,7 +110,7 @@ export function exceptionTests(exceptions: Uint8Array, confidence: number): Exce
       : excess(n01, n00, (n01 + n11) / (dates - 1)) + excess(n11, n10, (n01 + n11) / (dates - 1))
 
   // the 5% point of chi-square with 1 degree is the square of the normal one
-  const critical = TWO_SIDED ** 2
+  const critical = RISK_BAND ** 2
   let fewest = Math.round(dates * p)
   let most = fewest
   while (fewest > 0 && coverageStatistic(fewest - 1, dates, p) <= critical) fewest--
@@ -238,7 +236,7 @@ export function biasStatistic(standardised: Float64Array): BiasStatistic {
     kurtosis: excessKurtosis === null ? null : excessKurtosis + 3,
     band: around(Math.sqrt(2 / n)),
     robustBand:
-      excessKurtosis === null ? null : around(TWO_SIDED * Math.sqrt((excessKurtosis + 2) / (4 * n))),
+      excessKurtosis === null ? null : around(RISK_BAND * Math.sqrt((excessKurtosis + 2) / (4 * n))),
   }
 }
 
@@ -316,7 +314,8 @@ export function* backtest(
   // a decay or lags that would not do are refused by the estimator's own door
   if (estimator.kind !== 'shrinkage')
     estimateModel(returns.slice(0, window ?? first), window ?? first, 1, estimator)
-  const p = tailOf(confidence)
+  // in units of 1e-10, a whole number: products with numbers of dates are exact
+  const share = Math.round(tailOf(confidence) * 1e10)
   const z = normalQuantile(confidence, 0, 1)
 
   const book = new Float64Array(dates)
@@ -347,7 +346,7 @@ export function* backtest(
         }
         const rounding = size * Number.EPSILON * gross
         volatility[k] = variance <= rounding ** 2 ? 0 : Math.sqrt(variance)
-        valueAtRisk[k] = losses ? losses.largest(Math.ceil((t - from) * p - 1e-9)) : z * volatility[k]
+        valueAtRisk[k] = losses ? losses.largest(Math.ceil(((t - from) * share) / 1e10)) : z * volatility[k]
         work += (t - from) * (estimator.kind === 'lagged' ? 2 + estimator.lags : 2)
       } else {
         volatility[k] = volatility[k - 1]!

@@ -5,4 +5,4 @@
  * @source NIST/SEMATECH e-Handbook of Statistical Methods, section 1.3.6.7.1, table of the normal distribution (two
  *         digits; from memory); the further digits are computed
  */
-export const RISK_BAND = 1.959964
+export const RISK_BAND = 1.959963984540054

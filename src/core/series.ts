@@ -1,13 +1,11 @@
 import gammainc from '@stdlib/math-base-special-gammainc'
 import normalQuantile from '@stdlib/stats-base-dists-normal-quantile'
+import { RISK_BAND } from './band'
 import { Fault } from './fault'
 import type { Run } from './runs'
 
 // Statistics of one series at a time, for looking at data before anything is computed from them. NaN marks a gap. What a series does
 // not define (a correlation of something that never moves) is null: looking at bad data must not stop at the first bad series.
-
-/** How far a 95% band reaches, in standard errors: 1.959964. */
-const BAND = normalQuantile(0.975, 0, 1)
 
 /** A correlation over time, with what chance alone makes of one. */
 export interface SerialCorrelation {
@@ -101,8 +99,8 @@ function correlationOf(a: Deviations, b: Deviations, lag: number): SerialCorrela
   return {
     value: products / scale,
     pairs,
-    band: BAND / Math.sqrt(Math.sqrt(a.count * b.count)),
-    robustBand: (BAND * Math.sqrt(squares)) / scale,
+    band: RISK_BAND / Math.sqrt(Math.sqrt(a.count * b.count)),
+    robustBand: (RISK_BAND * Math.sqrt(squares)) / scale,
   }
 }
 
@@ -154,7 +152,7 @@ function deviations(x: Float64Array): Deviations | null {
  * @example carefulError({ value: .3, pairs: 99, band: .196, robustBand: .294 }) // 0.15
  */
 export const carefulError = ({ band, robustBand }: SerialCorrelation): number =>
-  Math.max(band, robustBand) / BAND
+  Math.max(band, robustBand) / RISK_BAND
 
 /**
  * How many standard errors from 0 so many normal estimates all stay within, with a probability of at least 1 - chance: each gets an equal part of

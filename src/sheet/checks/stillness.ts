@@ -99,7 +99,7 @@ function adviceOnRests(evidence: Evidence, about: Told): Advice {
   )
   return {
     effect:
-      'Zeros in a row are prices that were not renewed, or blanks filled with 0: volatility and correlations look smaller than they are.',
+      'Zeros in a row are prices that were not renewed, or blanks filled with 0: correlations look closer to 0 than they are, and where no later return makes up for them so does the volatility.',
     remedy: 'Renew the prices, or leave the cells blank so that they count as gaps.',
     corrections: [
       ...(longest >= LONG_STILL ? [asGaps] : []),

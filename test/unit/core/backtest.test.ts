@@ -136,6 +136,28 @@ describe('a back-test', () => {
     expect(result.bias!.omitted).toBeGreaterThanOrEqual(21)
   })
 
+  test('a historical forecast at any confidence is one of the losses of the window', () => {
+    const losses = [0.01, -0.02, 0.03, 0, 0.02, 0.01]
+    const forecast = (confidence: number) =>
+      run(
+        Float64Array.from(losses, (loss) => -loss),
+        6,
+        1,
+        Float64Array.of(1),
+        {
+          ...settings,
+          method: 'historical',
+          window: 5,
+          first: 5,
+          confidence,
+        },
+      ).valueAtRisk
+    // 5 x 0.2 = 1 and 5 x 0.4 = 2, by hand; far below one date it is the largest
+    expect([...forecast(0.8)]).toEqual([0.03])
+    expect([...forecast(0.6)]).toEqual([0.02])
+    expect([...forecast(1 - 1e-10)]).toEqual([0.03])
+  })
+
   test('reports how far it is, rising and below 1', () => {
     const long = generatedReturns(7, 40, 2000).returns
     const { progress } = run(long, 2000, 40, new Float64Array(40).fill(1 / 40), { ...settings, window: null })
