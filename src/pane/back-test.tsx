@@ -130,6 +130,9 @@ export default function BackTest({
         Forecasts made elsewhere: select dates, the portfolio’s returns, and beside them the value at risk or
         the volatility forecast for the same dates, with headings.
       </p>
+      {studies.outdated.backtest && (
+        <p className={classes.text}>The figures have changed since it was run. Run it again for these.</p>
+      )}
       {studies.backtest && <Outcome study={studies.backtest} />}
     </>
   )

@@ -149,16 +149,20 @@ const RULES: { readonly [R in GapRule]: readonly [name: string, hint: string] } 
 /** Whether a series of a holding has gaps: without any, the rules for them are all the same. */
 function useGaps({ holdings, returns, settings }: BooksState): boolean {
   const { riskless } = settings
-  return useMemo(() => {
-    if (!holdings || !returns) return false
-    const { seriesOf } = matchHoldings(holdings, returns, riskless)
-    const { values, rows, columns } = returns
-    return seriesOf.some((series) => {
-      for (let t = 0; series >= 0 && t < rows; t++)
-        if (Number.isNaN(values[t * columns + series])) return true
-      return false
-    })
-  }, [holdings, returns, riskless])
+  // a new weight reads the holdings anew but not the returns: the block, which may be large, is gone through once
+  const gappy = useMemo(() => {
+    const found = new Uint8Array(returns?.columns ?? 0)
+    if (returns) returns.values.forEach((value, k) => Number.isNaN(value) && (found[k % found.length] = 1))
+    return found
+  }, [returns])
+  return useMemo(
+    () =>
+      holdings !== null &&
+      returns !== null &&
+      gappy.includes(1) &&
+      matchHoldings(holdings, returns, riskless).seriesOf.some((series) => gappy[series] === 1),
+    [gappy, holdings, returns, riskless],
+  )
 }
 
 /** What is done about dates on which some holding has no return. */

@@ -88,6 +88,9 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
       >
         Run the bootstrap
       </Button>
+      {studies.outdated.bootstrap && (
+        <p className={classes.text}>The figures have changed since it was run. Run it again for these.</p>
+      )}
       {study && (
         <>
           <p className={classes.text}>{study.agreement}</p>

@@ -110,8 +110,9 @@ const sureHeadline = ({ bands, decomposition }: Breakdown): string =>
     ? 'No error bands'
     : `Volatility ${percentText(decomposition.volatility, 2)}, 95% band ${bandText(decomposition.volatility, bands.volatility, 2)}`
 
-function backTestHeadline({ backtest }: BooksState['studies']): string {
-  if (!backtest) return 'Forecasts against what happened: not run yet'
+function backTestHeadline({ backtest, outdated }: BooksState['studies']): string {
+  if (!backtest)
+    return `Forecasts against what happened: ${outdated.backtest ? 'the figures have changed since it was run' : 'not run yet'}`
   const { exceptions, expected, confidence } = backtest.result.tests
   return `${countOf(exceptions, 'exception')}, ${numberText(expected, 1)} expected at ${confidenceText(confidence)} confidence`
 }

@@ -24,8 +24,8 @@ import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
 import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
-import type { BacktestChoice, Studies } from './studies'
-import { backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
+import type { BacktestChoice, BacktestStudy, Studies } from './studies'
+import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
@@ -507,7 +507,8 @@ export class LinkedBook {
     const checks = await this.#inspection.checks(blocks, this.settings, this.calculator, work)
     const earlier = this.breakdown?.decomposition
     this.breakdown = breakDown(blocks, book, this.settings, checks)
-    if (known?.book !== book || !sameFigures(earlier, this.breakdown.decomposition)) this.studies = NO_STUDIES
+    if (known?.book !== book || !sameFigures(earlier, this.breakdown.decomposition))
+      this.studies = afterChange(this.studies)
     this.faults = {}
   }
 
@@ -522,7 +523,8 @@ export class LinkedBook {
       this.calculator,
       work,
     )
-    this.studies = { ...this.studies, bootstrap: study }
+    const { outdated } = this.studies
+    this.studies = { ...this.studies, bootstrap: study, outdated: { ...outdated, bootstrap: false } }
   }
 
   /** Forecasts the past at today's weights, or tests the forecasts in a block. */
@@ -532,7 +534,7 @@ export class LinkedBook {
       const reading = readReturns(block, { ...FACTOR_SETTINGS, content: 'returns' }, this.culture)
       const stop = reading.findings.find(({ weight }) => weight === 'stops')
       if (stop) throw new PlacedFault(stop, 'study')
-      this.studies = { ...this.studies, backtest: givenBacktest(reading, choice.confidence) }
+      this.#keepBacktest(givenBacktest(reading, choice.confidence))
       return
     }
     const { book, breakdown } = this.#computed()
@@ -544,7 +546,12 @@ export class LinkedBook {
       this.calculator,
       work,
     )
-    this.studies = { ...this.studies, backtest: study }
+    this.#keepBacktest(study)
+  }
+
+  #keepBacktest(backtest: BacktestStudy): void {
+    const { outdated } = this.studies
+    this.studies = { ...this.studies, backtest, outdated: { ...outdated, backtest: false } }
   }
 
   #computed(): { book: BookModel; breakdown: Breakdown } {

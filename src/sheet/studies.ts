@@ -12,9 +12,28 @@ import { confidenceText, countOf, numberText, percentText, quote } from './wordi
 export interface Studies {
   readonly bootstrap: ErrorStudy | null
   readonly backtest: BacktestStudy | null
+  /** which of them were there and went because the figures changed */
+  readonly outdated: { readonly bootstrap: boolean; readonly backtest: boolean }
 }
 
-export const NO_STUDIES: Studies = { bootstrap: null, backtest: null }
+export const NO_STUDIES: Studies = {
+  bootstrap: null,
+  backtest: null,
+  outdated: { bootstrap: false, backtest: false },
+}
+
+/** What is left once the figures have changed: forecasts made elsewhere, which do not rest on them, and the word that there was more. */
+export function afterChange({ bootstrap, backtest, outdated }: Studies): Studies {
+  const elsewhere = backtest?.of === 'selection' ? backtest : null
+  return {
+    bootstrap: null,
+    backtest: elsewhere,
+    outdated: {
+      bootstrap: outdated.bootstrap || bootstrap !== null,
+      backtest: elsewhere === null && (outdated.backtest || backtest !== null),
+    },
+  }
+}
 
 /** The errors of the figures found by drawing dates anew, beside those in closed form. */
 export interface ErrorStudy {
@@ -36,6 +55,8 @@ export interface BacktestChoice {
 
 /** Forecasts against what happened, with what the tests say in plain words. */
 export interface BacktestStudy {
+  /** whose forecasts: of this book's own past, or made elsewhere and selected */
+  readonly of: 'this book' | 'selection'
   readonly result: Backtest
   /** serial numbers of the dates forecast, one for each entry of the result; null where there are none */
   readonly dates: readonly number[] | null
@@ -170,6 +191,7 @@ export async function backtestStudy(
     work,
   )
   return {
+    of: 'this book',
     result,
     dates: data.serials?.slice(first) ?? null,
     method: `Forecasts at today’s weights from the ${choice.window === null ? `dates before (first after ${first})` : `${choice.window} dates before`}; ${estimatorText(estimator)}${every > 1 ? `, estimated anew every ${every} dates` : ''}${estimator.kind === 'lagged' ? ', which makes a volatility for many dates rather than for the next' : ''}; value at risk ${choice.method === 'normal' ? 'from a normal distribution with mean zero' : `from the losses of ${choice.window === null ? 'these dates' : 'the window'}${tooFew}`}${book.rule === 'common dates' ? '' : `; run on the ${countOf(dates, 'date')} common to all holdings, whatever the rule for gaps`}`,
@@ -211,6 +233,7 @@ export function givenBacktest(reading: ReturnsReading, confidence: number): Back
     confidence,
   )
   return {
+    of: 'selection',
     result,
     dates: reading.dates,
     method: `Returns ${quote(names[0] ?? '')} against the ${isVolatility ? 'volatility' : 'value at risk'} ${quote(names[1] ?? '')} of the same dates, as given`,

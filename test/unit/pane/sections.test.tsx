@@ -272,7 +272,7 @@ test('a confidence level reads as it was typed', () => {
 
 test('where there are no error bands the reason stands in their place, and no study is offered', async () => {
   const breakdown = { ...(await breakdownOf()), bands: 'Too few dates.' }
-  const state = { working: null, studies: { bootstrap: null, backtest: null } } as unknown as BooksState
+  const state = { working: null, studies: { bootstrap: null, backtest: null, outdated: {} } } as unknown as BooksState
   const { said } = draw(
     <HowSure breakdown={breakdown} state={state} fault={undefined} asked={() => undefined} />,
   )

@@ -124,7 +124,8 @@ describe('The look over the data', () => {
     expect(books.state().checks).toBeNull()
     workbook.select(`Returns!A1:E${WEEKS + 1}`)
     await books.takeSelection('returns')
-    await new Promise((resolve) => setTimeout(resolve, 100))
+    for (let waited = 0; !books.state().checks && waited < 5000; waited += 50)
+      await new Promise((resolve) => setTimeout(resolve, 50))
     expect(books.state().breakdown).toBeNull()
     expect(books.state().checks?.length).toBeGreaterThan(0)
   })
@@ -134,7 +135,7 @@ describe('The look over the data', () => {
     await quiet()
     await books.writeChecks()
     expect(books.state().notice).toMatch(/^Data checks written to 'Data checks'!A1:H\d+\./)
-    expect(valueAt("'Data checks'!A5")).toBe('Weight')
+    expect(valueAt("'Data checks'!A5")).toBe('Severity')
     type('Returns!B60', 0.9)
     await quiet()
     await books.writeChecks()
@@ -296,7 +297,25 @@ describe('Studies', () => {
     await books.choose({ tails: { method: { kind: 'normal' }, confidence: 0.99, periods: 1 } })
     expect(books.state().studies.bootstrap).toBe(studies.bootstrap)
     type('Book!D2', 0.7)
-    expect((await quiet()).studies.bootstrap).toBeNull()
+    const after = (await quiet()).studies
+    expect(after.bootstrap).toBeNull()
+    expect(after.outdated).toEqual({ bootstrap: true, backtest: false })
+    await books.bootstrap(bootstrap)
+    expect(books.state().studies.outdated.bootstrap).toBe(false)
+  })
+
+  test('a new weight outdates a back-test of the book, and leaves one of forecasts made elsewhere', async () => {
+    const { books, select, type, quiet } = await desk()
+    const choice = { window: null, confidence: 0.95, method: 'normal' } as const
+    await books.backtest(choice, 'this book')
+    type('Book!D2', 0.7)
+    expect((await quiet()).studies).toMatchObject({ backtest: null, outdated: { backtest: true } })
+    select('Given!A1:B5')
+    await books.backtest(choice, 'selection')
+    const given = books.state().studies.backtest
+    expect(given).not.toBeNull()
+    type('Book!D2', 0.6)
+    expect((await quiet()).studies).toMatchObject({ backtest: given, outdated: { backtest: false } })
   })
 
   test('a back-test goes through the past at today’s weights, with a sentence for each test', async () => {
