@@ -477,12 +477,13 @@ function varianceOf(y: Float64Array, estimator: Exclude<Estimator, { kind: 'shri
     remainder += omega * deviation
   }
   // what rounding of the mean left
-  let variance = squares / total - (remainder / total) ** 2
+  const rest = remainder / total
+  let variance = squares / total - rest * rest
   if (estimator.kind === 'sample') variance *= y.length / (y.length - 1)
   if (estimator.kind === 'lagged') {
     for (let lag = 1; lag <= estimator.lags; lag++) {
       let products = 0
-      for (let t = lag; t < y.length; t++) products += (y[t]! - mean) * (y[t - lag]! - mean)
+      for (let t = lag; t < y.length; t++) products += (y[t]! - mean - rest) * (y[t - lag]! - mean - rest)
       variance += (2 * (1 - lag / (estimator.lags + 1)) * products) / y.length
     }
   }

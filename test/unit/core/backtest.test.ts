@@ -136,6 +136,21 @@ describe('a back-test', () => {
     expect(result.bias!.omitted).toBeGreaterThanOrEqual(21)
   })
 
+  test('returns that never change are forecast no volatility at all, whatever rounding makes of their mean', () => {
+    for (const estimator of [
+      { kind: 'sample' },
+      { kind: 'exponential', decay: 0.94 },
+      { kind: 'lagged', lags: 2 },
+    ] as const) {
+      const { volatility, bias } = run(new Float64Array(T).fill(0.1), T, 1, Float64Array.of(1), {
+        ...settings,
+        estimator,
+      })
+      expect(new Set(volatility)).toEqual(new Set([0]))
+      expect(bias).toBeNull()
+    }
+  })
+
   test('a historical forecast at any confidence is one of the losses of the window', () => {
     const losses = [0.01, -0.02, 0.03, 0, 0.02, 0.01]
     const forecast = (confidence: number) =>

@@ -120,6 +120,28 @@ describe('a bootstrap', () => {
   })
 })
 
+test('percentiles lie between two replicates by straight line', () => {
+  // Eight dates of +1 and -1: a replicate with k times +1 has the volatility 2 sqrt(q (1-q) 8/7), q = k/8. Of 40 replicates the 2.5th
+  // percentile is at place 39 x 0.025 = 0.975 from the smallest; where that one is 0 and no other is, 0.975 times the second.
+  const coin = returnsModel(Float64Array.of(1, -1, 1, -1, 1, -1, 1, -1), 8, 1)
+  const possible = [1, 2, 3, 4].map((k) => 2 * Math.sqrt(((k / 8) * (1 - k / 8) * 8) / 7))
+  const one = Array.from({ length: 100 }, (_, seed) =>
+    run(coin, Float64Array.of(1), { replicates: 40, seed, blockLength: 1 }),
+  ).filter(({ result }) => result.withoutRisk === 1)
+  expect(one.length).toBeGreaterThan(0)
+  for (const { result } of one) {
+    const second = result.volatility.lower / 0.975
+    expect(Math.min(...possible.map((volatility) => Math.abs(volatility - second)))).toBeLessThan(1e-12)
+  }
+})
+
+test('blocks are circular: one of all dates is the history itself, wherever it starts', () => {
+  const { volatility } = run(model, weights, { ...choice, blockLength: dates }).result
+  const { volatility: whole } = decompose(model, weights)
+  for (const figure of [volatility.lower, volatility.upper])
+    expect(relativeGap(figure, whole)).toBeLessThan(1e-13)
+})
+
 describe('a bootstrap refuses', () => {
   const refused: [string, Partial<BootstrapChoice>, string][] = [
     ['too few replicates for its percentiles', { replicates: 39 }, 'replicates'],

@@ -333,6 +333,8 @@ describe('the domain of Cornish-Fisher', () => {
     for (let S = -2.6; S <= 2.6; S += 0.26)
       for (let K = -1; K <= 12; K += 0.77)
         expect([S, K, inCornishFisherDomain(S, K)]).toEqual([S, K, rises(S, K)])
+    // so skewed that the slope is negative throughout, where its discriminant alone would let it pass
+    expect([inCornishFisherDomain(20, 493), rises(20, 493)]).toEqual([false, false])
   })
 })
 
