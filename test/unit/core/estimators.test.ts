@@ -221,6 +221,16 @@ describe('lagged terms', () => {
     const model = estimated(rows, { kind: 'lagged', lags: 1 })
     expect(model.variances()[0]! / model.returns.variances()[0]!).toBeLessThan(0.01)
     expect(decompose(model, Float64Array.of(1, 1, -1)).volatility).toBe(0)
+    // proportions whose products round this way and that
+    for (let k = 1; k < 40; k++) {
+      const a = 0.0371 * k
+      const hedged = rows.map(([r]) => [r!, a * r!, (1 + a) * r!])
+      const { volatility } = decompose(
+        estimated(hedged, { kind: 'lagged', lags: 1 }),
+        Float64Array.of(1, 1, -1),
+      )
+      expect([k, volatility]).toEqual([k, 0])
+    }
   })
 })
 
