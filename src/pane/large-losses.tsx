@@ -4,6 +4,7 @@ import {
   confidenceText,
   numberText,
   percentText,
+  scalesWithTime,
   type Breakdown,
   type TailChoice,
   type Tails,
@@ -44,11 +45,22 @@ const HINTS: { readonly [K in Kind]: string } = {
 }
 
 /** What is asked of the tail: method, confidence, horizon. */
-function Fields({ choice, fault }: { choice: TailChoice; fault: string | undefined }) {
+function Fields({
+  choice,
+  fault,
+  refusal,
+}: {
+  choice: TailChoice
+  fault: string | undefined
+  /** why there are no figures; it stands at the field that can mend it */
+  refusal?: string
+}) {
   const books = useBooks()
   const classes = useStyles()
   const choose = (change: Partial<TailChoice>): void => void books.choose({ tails: { ...choice, ...change } })
   const { method } = choice
+  const scales = scalesWithTime(choice)
+  const atHorizon = !scales && choice.periods !== 1
   return (
     <div className={classes.fields}>
       <div className={classes.wide}>
@@ -57,7 +69,7 @@ function Fields({ choice, fault }: { choice: TailChoice; fault: string | undefin
           value={method.kind}
           choices={METHODS}
           hint={HINTS[method.kind]}
-          fault={fault}
+          fault={fault ?? (atHorizon ? undefined : refusal)}
           choose={(kind) => choose({ method: kind === 'student' ? { kind, degrees: null } : { kind } })}
         />
       </div>
@@ -75,11 +87,8 @@ function Fields({ choice, fault }: { choice: TailChoice; fault: string | undefin
       <Entry
         label="Horizon, periods"
         shown={String(choice.periods)}
-        hint={
-          method.kind === 'normal' || method.kind === 'student'
-            ? 'Scales with the square root of time'
-            : 'This method: 1'
-        }
+        hint={scales ? 'Scales with the square root of time' : 'This method: 1'}
+        fault={atHorizon ? refusal : undefined}
         read={(text) => {
           const value = typedNumber(text)
           return value !== null && value > 0 ? { value } : { needed: 'A number above 0 is needed.' }
@@ -184,13 +193,7 @@ export default function LargeLosses({
 }) {
   const classes = useStyles()
   const { tails } = breakdown
-  if (typeof tails === 'string')
-    return (
-      <>
-        <Fields choice={choice} fault={fault} />
-        <Remark text={tails} />
-      </>
-    )
+  if (typeof tails === 'string') return <Fields choice={choice} fault={fault} refusal={tails} />
   const { risk } = tails
   return (
     <>

@@ -43,6 +43,15 @@ export function tailsOf(
   sharesWithheld: string | null,
   findings: Finding[],
 ): Tails | string {
+  if (choice.periods !== 1 && !scalesWithTime(choice))
+    return `The horizon is ${horizonOf(choice.periods, returns)}: ${choice.method.kind === 'historical' ? 'past returns tell the losses' : 'skewness and kurtosis are those'} of one period alone. Choose a horizon of 1, or the normal or the Student distribution, which scale with the square root of time.`
+  const { method } = choice
+  if (
+    book.history === null &&
+    method.kind !== 'normal' &&
+    !(method.kind === 'student' && method.degrees !== null)
+  )
+    return 'A covariance matrix holds no past returns to find this in. Choose the normal distribution, or the Student distribution with its degrees of freedom.'
   const { value: risk, fault } = attempt(() => tailRisk(book.model, d.weights, choice, book.history))
   if (fault) return explain(fault, () => '')
   const few = risk.tailObservations !== null && risk.tailObservations < FEW
@@ -74,6 +83,10 @@ export function tailsOf(
     difference: partsWithheld === null ? differenceOf(risk, d, names) : null,
   }
 }
+
+/** Whether a method can look further ahead than one period. */
+export const scalesWithTime = ({ method: { kind } }: TailChoice): boolean =>
+  kind === 'normal' || kind === 'student'
 
 const PERIODS: { readonly [frequency: string]: string } = {
   daily: 'day',

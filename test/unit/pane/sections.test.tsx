@@ -85,15 +85,8 @@ describe('error bands', () => {
 })
 
 describe('large losses', () => {
-  const drawn = (breakdown: Breakdown, capital: number | null = null) =>
-    draw(
-      <LargeLosses
-        breakdown={breakdown}
-        choice={DEFAULT_SETTINGS.tails}
-        fault={undefined}
-        capital={capital}
-      />,
-    )
+  const drawn = (breakdown: Breakdown, capital: number | null = null, choice = DEFAULT_SETTINGS.tails) =>
+    draw(<LargeLosses breakdown={breakdown} choice={choice} fault={undefined} capital={capital} />)
   const parametric = { method: { kind: 'normal' }, confidence: 0.99, periods: 1 } as const
 
   test('show shares of the shortfall beside shares of risk; under a normal distribution they are the same', async () => {
@@ -131,13 +124,19 @@ describe('large losses', () => {
     expect(drawn(breakdown).said).not.toContain('Of the capital')
   })
 
-  test('say in place why there are none, and keep the fields that may mend it', async () => {
-    const choice = { method: { kind: 'historical' }, confidence: 0.95, periods: 5 } as const
+  test.each([
+    ['historical', 'past returns tell the losses of one period alone'],
+    ['cornish-fisher', 'skewness and kurtosis are those of one period alone'],
+  ] as const)('of %s ask for a horizon of 1 at that very field, and keep the others', async (kind, why) => {
+    const choice = { method: { kind }, confidence: 0.95, periods: 5 } as const
     const breakdown = await breakdownOf({ tails: choice })
-    const { said } = drawn(breakdown)
-    expect(typeof breakdown.tails).toBe('string')
-    expect(said).toContain(breakdown.tails)
-    expect(said).toContain('Confidence level')
+    const { said } = drawn(breakdown, null, choice)
+    expect(breakdown.tails).toMatch(/^The horizon is 5 periods: .* Choose a horizon of 1, or the normal/)
+    expect(breakdown.tails).toContain(why)
+    const fields = ['Method', 'Confidence level', 'Horizon, periods', String(breakdown.tails)]
+    const places = fields.map((field) => said.indexOf(field))
+    expect(Math.min(...places)).toBeGreaterThanOrEqual(0)
+    expect([...places].sort((a, b) => a - b)).toEqual(places)
     expect(said).not.toContain('NaN')
   })
 })
@@ -272,7 +271,10 @@ test('a confidence level reads as it was typed', () => {
 
 test('where there are no error bands the reason stands in their place, and no study is offered', async () => {
   const breakdown = { ...(await breakdownOf()), bands: 'Too few dates.' }
-  const state = { working: null, studies: { bootstrap: null, backtest: null, outdated: {} } } as unknown as BooksState
+  const state = {
+    working: null,
+    studies: { bootstrap: null, backtest: null, outdated: {} },
+  } as unknown as BooksState
   const { said } = draw(
     <HowSure breakdown={breakdown} state={state} fault={undefined} asked={() => undefined} />,
   )

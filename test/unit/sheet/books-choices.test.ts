@@ -274,7 +274,7 @@ describe('Choices', () => {
     const { books, volatility } = await desk()
     const before = volatility()
     await books.choose({ tails: { method: { kind: 'historical' }, confidence: 0.95, periods: 4 } })
-    expect(books.state().breakdown?.tails).toMatch(/needed/)
+    expect(books.state().breakdown?.tails).toMatch(/^The horizon is 4 weeks: past returns/)
     expect(volatility()).toBe(before)
     await books.choose({ tails: { method: { kind: 'normal' }, confidence: 0.95, periods: 4 } })
     expect(books.state().breakdown?.tails).toMatchObject({ label: '95% confidence, 4 weeks' })
