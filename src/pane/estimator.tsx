@@ -185,7 +185,7 @@ export function GapFields({ state }: { state: BooksState }) {
       />
       {gaps === 'own overlap' && (
         <Choice
-          label="Mending"
+          label="Repair"
           value={repair}
           choices={[
             ['nearest', 'Nearest correlations'],

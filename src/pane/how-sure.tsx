@@ -56,14 +56,14 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
   const closed = shares ? bands?.share : bands?.contribution
   const more = shares ? digits : digits + 1
   return (
-    <Section title="Drawn anew (bootstrap)" level={3}>
+    <Section title="Bootstrap" level={3}>
       <p className={classes.text}>
         The dates are drawn again with replacement, many times; how the figures vary is their error, by no
         formula.
       </p>
       <div className={classes.fields}>
         <Entry
-          label="Histories"
+          label="Replications"
           shown={String(replicates)}
           read={whole(40, 100_000)}
           commit={setReplicates}
@@ -95,7 +95,7 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
         <>
           <p className={classes.text}>{study.agreement}</p>
           <p className={classes.text}>
-            Volatility, 95% of the histories: {percentText(study.result.volatility.lower, 2)} to{' '}
+            Volatility, 95% of the replications: {percentText(study.result.volatility.lower, 2)} to{' '}
             {percentText(study.result.volatility.upper, 2)}
             {bands && `; band in closed form ${bandText(d.volatility, bands.volatility, 2)}`}.
           </p>
@@ -105,8 +105,8 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
               columns={[
                 { head: 'Position', width: null },
                 { head: shares ? 'Share of risk' : 'Contribution to risk', width: WIDTHS.share },
-                { head: 'Error in closed form', width: WIDTHS.share + 6 },
-                { head: 'Error drawn anew', width: WIDTHS.share + 6 },
+                { head: 'Standard error, closed form', width: WIDTHS.share + 6 },
+                { head: 'Standard error, bootstrap', width: WIDTHS.share + 6 },
               ]}
               rows={[...d.contribution.keys()]
                 .sort((a, b) => d.contribution[b]! - d.contribution[a]!)

@@ -31,9 +31,9 @@ const useStyles = makeStyles({
 type Kind = TailChoice['method']['kind']
 
 const METHODS: readonly (readonly [Kind, string])[] = [
-  ['historical', 'Past returns'],
+  ['historical', 'Historical (past returns)'],
   ['normal', 'Normal distribution'],
-  ['student', 'Student distribution'],
+  ['student', 'Student’s t distribution'],
   ['cornish-fisher', 'Normal, corrected for skewness and kurtosis'],
 ]
 

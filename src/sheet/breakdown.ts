@@ -282,7 +282,7 @@ function normalityOf({ history, normality }: BookModel, weights: Float64Array): 
         ? 'shows no sign against a normal distribution, nor do its parts together: as far as these dates tell, shares of volatility can be read as shares of large losses too'
         : 'shows no sign against a normal distribution; its parts were not tested together, so that shares of large losses may still be others',
     'heavy-tailed':
-      'has heavier tails than a normal distribution: large losses come oftener than its volatility suggests, and shares of volatility need not be shares of large losses',
+      'has heavier tails than a normal distribution: large losses come more often than its volatility suggests, and shares of volatility need not be shares of large losses',
     'light-tailed':
       'has lighter tails than a normal distribution: large losses come more seldom than its volatility suggests',
     'skewed-to-losses':

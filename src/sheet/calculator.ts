@@ -178,7 +178,7 @@ export type JobResult<K extends JobKind> = ReturnType<Jobs[K]> extends Generator
 const WORDS: { readonly [K in JobKind]: string } = {
   'set up': 'Setting up the risk model',
   'series facts': 'Looking over the returns',
-  bootstrap: 'Drawing dates anew',
+  bootstrap: 'Running the bootstrap',
   'back-test': 'Going through time',
 }
 

@@ -121,15 +121,15 @@ export async function bootstrapStudy(
         upper: scaled(contribution.upper),
       },
     },
-    method: `${countOf(choice.replicates, 'history', 'histories')} of ${countOf(data.rows.length, 'date')}, drawn ${choice.blockLength === 1 ? 'date by date' : `in circular blocks of ${countOf(choice.blockLength, 'date')}`} with replacement${plain ? '' : '; figures drawn are those without shrinkage, factors or lagged terms'}; ${BOOTSTRAP_GENERATOR}, seed ${choice.seed}`,
+    method: `${countOf(choice.replicates, 'replication')} of ${countOf(data.rows.length, 'date')}, drawn ${choice.blockLength === 1 ? 'date by date' : `in circular blocks of ${countOf(choice.blockLength, 'date')}`} with replacement${plain ? '' : '; figures drawn are those without shrinkage, factors or lagged terms'}; ${BOOTSTRAP_GENERATOR}, seed ${choice.seed}`,
     agreement:
       data.rows.length < FEWEST_BLOCKS * choice.blockLength
         ? `No errors to go by: of blocks of ${countOf(choice.blockLength, 'date')} fewer than ${FEWEST_BLOCKS} make a history of ${data.rows.length}, and all histories are much the same. Take shorter blocks.`
         : typeof bands === 'string'
           ? bands
           : bands.volatility === 0
-            ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
-            : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} drawn anew, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
+            ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} by the bootstrap; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
+            : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} by the bootstrap, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
   }
 }
 
@@ -266,12 +266,12 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
       `${numberText(expected, 1)} are expected at ${sure} confidence.${missing.length > 0 ? ` ${countOf(missing.length, 'date')} without a return or a forecast ${missing.length === 1 ? 'counts' : 'count'} as ${missing.length === 1 ? 'an exception' : 'exceptions'}.` : ''}`,
     ],
     [
-      'Number of exceptions (Kupiec)',
+      'Unconditional coverage (Kupiec)',
       `p ${probability(coverage.pValue)}`,
       `${
         coverage.pValue < LEVEL
           ? exceptions > expected
-            ? 'Too many: losses went beyond the forecast oftener than it says.'
+            ? 'Too many: losses went beyond the forecast more often than it says.'
             : 'Too few: the forecast was too cautious.'
           : `Agrees with ${sure} confidence: ${accepted.fewest} to ${accepted.most} would.`
       } With so many dates the test lets forecasts pass whose exceptions are twice too frequent in ${percentText(power.missed, 0)} of records.`,
@@ -288,7 +288,7 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
             : 'Exceptions follow one another more seldom than chance would have it.',
     ],
     [
-      'Both together',
+      'Conditional coverage (Christoffersen)',
       stepsFromBoth ? `p ${probability(conditionalCoverage.pValue)}` : 'not tested',
       !stepsFromBoth
         ? 'The number of exceptions alone can be tested.'

@@ -44,14 +44,14 @@ export function tailsOf(
   findings: Finding[],
 ): Tails | string {
   if (choice.periods !== 1 && !scalesWithTime(choice))
-    return `The horizon is ${horizonOf(choice.periods, returns)}: ${choice.method.kind === 'historical' ? 'past returns tell the losses' : 'skewness and kurtosis are those'} of one period alone. Choose a horizon of 1, or the normal or the Student distribution, which scale with the square root of time.`
+    return `The horizon is ${horizonOf(choice.periods, returns)}: ${choice.method.kind === 'historical' ? 'past returns tell the losses' : 'skewness and kurtosis are those'} of one period alone. Choose a horizon of 1, or the normal or Student’s t distribution, which scale with the square root of time.`
   const { method } = choice
   if (
     book.history === null &&
     method.kind !== 'normal' &&
     !(method.kind === 'student' && method.degrees !== null)
   )
-    return 'A covariance matrix holds no past returns to find this in. Choose the normal distribution, or the Student distribution with its degrees of freedom.'
+    return 'A covariance matrix holds no past returns to find this in. Choose the normal distribution, or Student’s t with its degrees of freedom.'
   const { value: risk, fault } = attempt(() => tailRisk(book.model, d.weights, choice, book.history))
   if (fault) return explain(fault, () => '')
   const few = risk.tailObservations !== null && risk.tailObservations < FEW
@@ -106,8 +106,8 @@ function methodText(risk: TailRisk): string {
       return 'Normal distribution with the volatility of the model, mean taken as zero'
     case 'student':
       return risk.degrees === Infinity
-        ? 'Student distribution fitted to the book’s returns: no tails fatter than normal were found, so it is the normal one'
-        : `Student distribution with ${numberText(risk.degrees ?? 0, 1)} degrees of freedom${risk.method.degrees === null ? ', fitted to the book’s returns,' : ''} and the volatility of the model, mean taken as zero`
+        ? 'Student’s t distribution fitted to the book’s returns: no tails fatter than normal were found, so it is the normal one'
+        : `Student’s t distribution with ${numberText(risk.degrees ?? 0, 1)} degrees of freedom${risk.method.degrees === null ? ', fitted to the book’s returns,' : ''} and the volatility of the model, mean taken as zero`
     case 'historical':
       return `Past returns at today’s weights, every date counting alike: ${numberText(risk.tailObservations ?? 0, 1)} dates in the tail`
     case 'cornish-fisher':

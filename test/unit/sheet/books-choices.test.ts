@@ -328,9 +328,9 @@ describe('Studies', () => {
     expect(study.dates?.at(-1)).toBe(FIRST + 7 * (WEEKS - 1))
     expect(study.lines.map(([label]) => label)).toEqual([
       'Exceptions',
-      'Number of exceptions (Kupiec)',
+      'Unconditional coverage (Kupiec)',
       'Independence (Christoffersen)',
-      'Both together',
+      'Conditional coverage (Christoffersen)',
       'Zone (Basel Committee, MAR32)',
       'Bias statistic',
     ])
@@ -368,7 +368,7 @@ describe('Studies', () => {
     }
     const calm = await lines('Calm!A1:B31')
     expect(calm.get('Independence (Christoffersen)')).toMatch(/^not tested: No date follows an exception/)
-    expect(calm.get('Both together')).toMatch(/^not tested/)
+    expect(calm.get('Conditional coverage (Christoffersen)')).toMatch(/^not tested/)
     expect((await lines('Regular!A1:B31')).get('Independence (Christoffersen)')).toMatch(
       /^p below 0\.001: Exceptions follow one another more seldom/,
     )

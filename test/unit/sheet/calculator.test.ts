@@ -43,7 +43,7 @@ test('a long computation gives way between slices and tells how far it is', asyn
   await steppingCalculator.run('bootstrap', bootstrap(6_000), {
     ...idleWork(),
     progress: (what, share) => {
-      expect(what).toBe('Drawing dates anew')
+      expect(what).toBe('Running the bootstrap')
       shares.push(share)
     },
   })
