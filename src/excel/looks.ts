@@ -10,6 +10,7 @@ interface Face {
   readonly bold: boolean
   readonly italic: boolean
   readonly align: string
+  readonly vertical: string
   readonly wrap: boolean
   readonly top: Rule
   readonly bottom: Rule
@@ -24,7 +25,15 @@ interface Rule {
 
 const NONE: Rule = { style: 'None' }
 const LINE: Rule = { style: 'Continuous' }
-const PLAIN: Face = { bold: false, italic: false, align: 'General', wrap: false, top: NONE, bottom: NONE }
+const PLAIN: Face = {
+  bold: false,
+  italic: false,
+  align: 'General',
+  vertical: 'Bottom',
+  wrap: false,
+  top: NONE,
+  bottom: NONE,
+}
 
 const FACES: { readonly [mark in Mark]: Face } = {
   title: { ...PLAIN, bold: true },
@@ -57,6 +66,7 @@ export function undress(context: Excel.RequestContext, area: Area): void {
   range.format.font.bold = PLAIN.bold
   range.format.font.italic = PLAIN.italic
   range.format.horizontalAlignment = PLAIN.align as Excel.HorizontalAlignment
+  range.format.verticalAlignment = PLAIN.vertical as Excel.VerticalAlignment
   range.format.wrapText = PLAIN.wrap
   if (area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
 }
@@ -69,12 +79,13 @@ export function unrule(context: Excel.RequestContext, area: Area, ours: Area): v
 /** Sets a run of cells in one row off, in a table made plain before. */
 export function dress(
   context: Excel.RequestContext,
-  { area, bold, italic, align, wrap, top, bottom }: Look,
+  { area, bold, italic, align, vertical, wrap, top, bottom }: Look,
 ): void {
   const range = rangeOf(context, area)
   if (bold) range.format.font.bold = true
   if (italic) range.format.font.italic = true
   if (align !== PLAIN.align) range.format.horizontalAlignment = align as Excel.HorizontalAlignment
+  if (vertical !== PLAIN.vertical) range.format.verticalAlignment = vertical as Excel.VerticalAlignment
   if (wrap) range.format.wrapText = true
   if (bottom !== PLAIN.bottom) rule(range, 'EdgeBottom', bottom)
   // a rule above is kept with the row above: taking away the rules inside a table finds it there on every host
@@ -87,6 +98,7 @@ export function putBack(context: Excel.RequestContext, look: Look): void {
   range.format.font.bold = look.bold
   range.format.font.italic = look.italic
   range.format.horizontalAlignment = look.align as Excel.HorizontalAlignment
+  range.format.verticalAlignment = look.vertical as Excel.VerticalAlignment
   range.format.wrapText = look.wrap
   if (look.area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
   rule(range, 'EdgeTop', look.top)
@@ -122,6 +134,11 @@ export function looksOf(table: Table, target: Area): Look[] {
 }
 
 function faceOf(table: Table, row: number, column: number): Face {
+  const face = markedFace(table, row, column)
+  return table.fromTop ? { ...face, vertical: 'Top' } : face
+}
+
+function markedFace(table: Table, row: number, column: number): Face {
   const mark = table.cells[row]?.[column]?.mark
   if (!mark) return PLAIN
   // over a first row there is nothing of ours to be parted from
@@ -133,6 +150,7 @@ const sameFace = (a: Face, b: Face): boolean =>
   a.bold === b.bold &&
   a.italic === b.italic &&
   a.align === b.align &&
+  a.vertical === b.vertical &&
   a.wrap === b.wrap &&
   a.top === b.top &&
   a.bottom === b.bottom
@@ -150,7 +168,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
   while (open.length > 0) {
     const asked = open.map((area) => {
       const { format } = rangeOf(context, area)
-      format.load('horizontalAlignment,wrapText')
+      format.load('horizontalAlignment,verticalAlignment,wrapText')
       format.font.load('bold,italic')
       const edges = (
         ['EdgeTop', 'EdgeBottom', ...(area.rows > 1 ? ['InsideHorizontal' as const] : [])] as const
@@ -166,6 +184,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
         bold: font.bold as boolean | null,
         italic: font.italic as boolean | null,
         align: format.horizontalAlignment as string | null,
+        vertical: format.verticalAlignment as string | null,
         wrap: format.wrapText as boolean | null,
         top,
         bottom,

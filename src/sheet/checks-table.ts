@@ -80,6 +80,7 @@ export function checksTable(
   return {
     cells,
     widths: HEADS.map(([, width]) => width),
+    fromTop: true,
     numeric: HEADS.map((_, k) => k >= 6),
   }
 }

@@ -24,6 +24,8 @@ export interface Table {
   readonly widths: readonly number[]
   /** columns (from 0) whose numbers line up right; headings follow them */
   readonly numeric: readonly boolean[]
+  /** whether cells are read from their top on, where rows hold running text of several lines */
+  readonly fromTop?: boolean
   /** how far each row is folded under those before it, 0 outermost; absent where nothing folds */
   readonly levels?: readonly number[]
 }

@@ -1,6 +1,6 @@
 /** A workbook without a screen, the port over it, and a portrait of all it holds. */
 import { CellValueType } from '@univerjs/core'
-import { WrapStrategy } from '@univerjs/core'
+import { VerticalAlign, WrapStrategy } from '@univerjs/core'
 import { headlessGrid } from '../../src/desk/grid'
 import { createOffice, levelOf, linkOf, userOf, type OfficeOptions } from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
@@ -34,7 +34,7 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
       const rules: Record<string, unknown> = {}
       const inner = sheet.getSheet()
       inner.getCellMatrix().forValue((row, column, cell) => {
-        const { n, bl, it, ht, tb, ul, cl, ff, fs } = inner.getComposedCellStyle(row, column)
+        const { n, bl, it, ht, vt, tb, ul, cl, ff, fs } = inner.getComposedCellStyle(row, column)
         // neighbours share a rule, whichever of them the grid keeps it with: it is told as the one under the upper row
         const { t: over, b: under } = inner.getComposedCellStyle(row, column).bd ?? {}
         if (over) rules[`R${row}C${column + 1}`] = over
@@ -47,6 +47,8 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
           bl: bl || null,
           it: it || null,
           ht: ht || null,
+          // the bottom is where cells without a word of their own stand
+          vt: vt === VerticalAlign.BOTTOM ? null : vt || null,
           wrapped: tb === WrapStrategy.WRAP || null,
           link: linkOf(cell),
           // what a cell looks like without a style of its own says nothing

@@ -255,6 +255,23 @@ describe('A first write', () => {
     ])
   })
 
+  test('reads from the top where the table says so, and a plain one later from the bottom again', async () => {
+    const { book, office } = open()
+    const at = { sheet: 'Sheet1', row: 0, column: 0 }
+    const table = { ...breakdown(), fromTop: true }
+    const [ours] = await book.write({ patches: [{ at, table, over: 'blank' }] })
+    const vertical = () =>
+      office.Excel.run(async (context) => {
+        const { format } = context.workbook.worksheets.getItem('Sheet1').getRange('A3:B4')
+        format.load('verticalAlignment')
+        await context.sync()
+        return format.verticalAlignment
+      })
+    expect(await vertical()).toBe('Top')
+    await book.write({ patches: [{ at, table: breakdown(), over: 'blank', ours: ours! }] })
+    expect(await vertical()).toBe('Bottom')
+  })
+
   test('makes the sheet it asks for, once', async () => {
     const { book } = open()
     const table = breakdown()
