@@ -206,7 +206,7 @@ export default function LargeLosses({
       <p className={classes.text}>
         Losses as positive fractions of capital, {tails.label}. {tails.method}.
         {risk.standardError !== null &&
-          ` Standard error of the value at risk ${percentText(risk.standardError, 2)} at least: fat tails make it larger.`}
+          ` Standard error of the value at risk ${percentText(risk.standardError, 2)}, ${tails.errorNote}.`}
       </p>
       {capital !== null && (
         <p className={classes.text}>

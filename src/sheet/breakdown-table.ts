@@ -376,7 +376,7 @@ const indented = (label: string, depth: number): string => `${'\u2003'.repeat(de
 function addTails(
   rows: Rows,
   breakdown: Breakdown,
-  { risk, label, method, partsWithheld, difference }: Tails,
+  { risk, label, method, errorNote, partsWithheld, difference }: Tails,
 ): void {
   const { decomposition: d, names, sharesWithheld } = breakdown
   rows.blank()
@@ -386,7 +386,7 @@ function addTails(
     rows.figure(
       'Standard error of value at risk',
       number(risk.standardError, PERCENT),
-      'At least: fat tails make it larger',
+      errorNote.charAt(0).toUpperCase() + errorNote.slice(1),
     )
   if (risk.shortfall !== null) rows.figure('Expected shortfall', number(risk.shortfall, PERCENT))
   // one row whatever it says: a new weight must not move the rows below

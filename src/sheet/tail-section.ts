@@ -15,6 +15,8 @@ export interface Tails {
   readonly label: string
   /** how they are computed, in words */
   readonly method: string
+  /** what has to be said beside the standard error of value at risk */
+  readonly errorNote: string
   /** why parts and shares are not shown, or null */
   readonly partsWithheld: string | null
   /** where shares of shortfall and of volatility part most, as a sentence; null where nothing parts them */
@@ -24,6 +26,9 @@ export interface Tails {
 /** Fewer tail observations than this are told beside the figure; fewer than the second withhold its parts. Our own convention. */
 const FEW = 10
 const TOO_FEW = 5
+
+/** From about this confidence on, fat tails thin the density at the quantile and make its error larger. */
+const FAT_FROM = 0.9
 
 /** A share of shortfall this far from the share of volatility is pointed out. Our own convention. */
 const FAR = 0.02
@@ -79,6 +84,10 @@ export function tailsOf(
     risk,
     label: `${confidenceText(choice.confidence)} confidence, ${horizonOf(choice.periods, returns)}`,
     method: `${methodText(risk)}${restsOn(risk, book)}`,
+    errorNote:
+      choice.confidence >= FAT_FROM
+        ? 'at least: fat tails make it larger'
+        : 'with the density of a normal distribution',
     partsWithheld,
     difference: partsWithheld === null ? differenceOf(risk, d, names) : null,
   }
