@@ -437,6 +437,7 @@ const SPLITS: readonly (readonly [fresh: number, old: number])[] = [
  * @example         splitRatio(-.495) // {"fresh": 2, "old": 1, "rest": 0.01}
  * @example         splitRatio(9) // {"fresh": 1, "old": 10}
  * @example         splitRatio(-.1) // null
+ * @example         splitRatio(1 / 3) // null
  */
 export function splitRatio(change: number, tolerance = 0.02): SplitRatio | null {
   if (!(change > -1 && Number.isFinite(change))) {
@@ -451,7 +452,8 @@ export function splitRatio(change: number, tolerance = 0.02): SplitRatio | null 
   }
   const candidates = SPLITS.flatMap(([fresh, old]) => [
     { fresh, old, rest: ((1 + change) * fresh) / old - 1 },
-    { fresh: old, old: fresh, rest: ((1 + change) * old) / fresh - 1 },
+    // shares are put together many for one: a jump of a third is a price, not a merger of four into three
+    ...(old === 1 ? [{ fresh: old, old: fresh, rest: ((1 + change) * old) / fresh - 1 }] : []),
   ])
   const nearest = candidates.reduce((best, candidate) =>
     Math.abs(candidate.rest) < Math.abs(best.rest) ? candidate : best,

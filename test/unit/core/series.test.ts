@@ -306,7 +306,6 @@ describe('splits', () => {
     [100, 1],
     [1, 2],
     [1, 20],
-    [2, 3],
   ])('%i new shares for %i old ones show on a day that also earned 1%', (fresh, old) => {
     expect(splitRatio((1.01 * old) / fresh - 1)).toEqual({
       fresh,
@@ -319,6 +318,9 @@ describe('splits', () => {
     for (const change of [0, 0.1, -0.1, 0.2, -0.2, -0.3, -0.42, -0.58, 0.7, 1.3])
       expect(splitRatio(change)).toBeNull()
     expect(splitRatio(-0.51, 0.001)).toBeNull()
+    // shares are put together many for one, not four into three or three into two: common practice, no source
+    for (const change of [1 / 3, 0.31, 0.5, 1.5]) expect(splitRatio(change)).toBeNull()
+    expect(splitRatio(1)).toMatchObject({ fresh: 1, old: 2 })
   })
 })
 
