@@ -5,13 +5,14 @@ import {
   decompose,
   estimateModel,
   factorModel,
-  Fault,
+  type Fault,
   matrixModel,
   returnsModel,
   shrinkageOf,
   type Estimator,
   type RiskModel,
 } from '../../../src/core'
+import { faultOf } from '../../fault-of'
 import { absoluteGap, relativeGap } from '../../closeness'
 import { textbookLagged, textbookShrinkage } from '../../textbook'
 
@@ -419,17 +420,6 @@ describe('a factor model', () => {
     expect(correlation(model)[0]).toBe(1)
   })
 })
-
-/** The fault something ends in; anything else that happens fails the test. */
-function faultOf(work: () => unknown): Fault {
-  try {
-    work()
-  } catch (error) {
-    if (error instanceof Fault) return error
-    throw error
-  }
-  throw new Error('no fault was raised')
-}
 
 describe('a fault is raised for', () => {
   const rows = blockOf(12, 3)

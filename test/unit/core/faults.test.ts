@@ -8,20 +8,10 @@ import {
   returnsModel,
   simpleReturns,
 } from '../../../src/core'
+import { faultOf } from '../../fault-of'
 
 const model = matrixModel(Float64Array.of(0.04, 0, 0, 0.01), 2)
 const split = decompose(model, Float64Array.of(0.5, 0.5))
-
-/** The fault something ends in; anything else that happens fails the test. */
-function faultOf(work: () => unknown): Fault {
-  try {
-    work()
-  } catch (error) {
-    if (error instanceof Fault) return error
-    throw error
-  }
-  throw new Error('no fault was raised')
-}
 
 const cases: [string, () => unknown, Partial<Fault>][] = [
   [

@@ -1,6 +1,5 @@
 import {
   completedMoments,
-  Fault,
   historyLengths,
   inOneGo,
   pairwiseCovariance,
@@ -9,22 +8,12 @@ import {
   shrinkToDefinite,
   smallestEigenvalue,
 } from '../../../src/core'
+import { faultOf } from '../../fault-of'
 import { absoluteGap, relativeGap } from '../../closeness'
 import { textbookMoments } from '../../unequal-histories'
 
 const _ = NaN
 const flat = (rows: readonly (readonly number[])[]) => Float64Array.from(rows.flat())
-
-/** The fault something ends in; anything else that happens fails the test. */
-function faultOf(work: () => unknown): Fault {
-  try {
-    work()
-  } catch (error) {
-    if (error instanceof Fault) return error
-    throw error
-  }
-  throw new Error('no fault was raised')
-}
 
 /** The shares a computation tells on its way. */
 function sharesOf(steps: Generator<number, unknown>): number[] {

@@ -1,12 +1,12 @@
 import {
   decompose,
-  Fault,
   returnsModel,
   RISK_BAND,
   shareDifferences,
   standardErrors,
   type Weighting,
 } from '../../../src/core'
+import { faultOf } from '../../fault-of'
 import { relativeGap } from '../../closeness'
 import { errorOf, influences, influencesByDefinition } from '../../influences'
 
@@ -160,16 +160,6 @@ describe('standard errors', () => {
 })
 
 describe('standard errors refuse', () => {
-  const faultOf = (work: () => unknown): Fault => {
-    try {
-      work()
-    } catch (error) {
-      if (error instanceof Fault) return error
-      throw error
-    }
-    throw new Error('no fault was raised')
-  }
-
   it.each([-1, 0.5, dates, NaN])('%d lags', (lags) => {
     expect(faultOf(() => standardErrors(modelOf(), weights, lags))).toMatchObject({
       code: 'out-of-range',

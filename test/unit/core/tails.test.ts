@@ -1,6 +1,6 @@
 import {
   decompose,
-  Fault,
+  type Fault,
   fitStudent,
   inCornishFisherDomain,
   jarqueBera,
@@ -13,6 +13,7 @@ import {
   type RiskModel,
   type TailMethod,
 } from '../../../src/core'
+import { faultOf } from '../../fault-of'
 import { relativeGap } from '../../closeness'
 import { generatedReturns } from '../../reference/data'
 
@@ -34,16 +35,6 @@ const at = (
 ) => tailRisk(model, Float64Array.from(weights), { method, confidence, periods }, history)
 const ofHistory = (model: ReturnsModel, method: TailMethod, more = {}) =>
   at(model, method, { history: model, ...more })
-
-function faultOf(work: () => unknown): Fault {
-  try {
-    work()
-  } catch (error) {
-    if (error instanceof Fault) return error
-    throw error
-  }
-  throw new Error('no fault was raised')
-}
 
 const unit = matrixModel(Float64Array.of(1), 1)
 const ordinary = series(-0.03, -0.02, -0.01, 0, 0.01, 0.02, 0.03, 0.06)

@@ -6,20 +6,11 @@
  */
 import { readFileSync } from 'node:fs'
 import path from 'node:path'
-import { attempt, explain } from '../../../src/sheet/explain'
-import { worksheetFunctions } from '../../../src/sheet/functions'
 import { absoluteGap } from '../../closeness'
+import { call, refusal } from './function-calls'
 
-const call = (id: string, ...args: unknown[]): unknown =>
-  (worksheetFunctions[id] as (...given: unknown[]) => unknown)(...args)
 const number = (id: string, ...args: unknown[]): number => call(id, ...args) as number
 const vector = (id: string, ...args: unknown[]): number[] => (call(id, ...args) as number[][]).flat()
-
-function refusal(id: string, ...args: unknown[]): { sentence: string; code: string } {
-  const { fault } = attempt(() => call(id, ...args))
-  if (!fault) throw new Error(`${id} found nothing wrong`)
-  return { sentence: explain(fault), code: fault.code }
-}
 
 const C = [
   [0.04, 0],
