@@ -3,16 +3,16 @@ import { checkBlock } from './fault'
 import type { RiskModel } from './risk-model'
 
 /**
- * How active risk is attributed. "total returns": each position by its own return; "benchmark-relative returns": by its return less
+ * How active risk is attributed. "own returns": each position by its own return; "benchmark-relative returns": by its return less
  * the benchmark's, with what the net active weight earns of the benchmark on a line of its own. Both add up to the tracking error and
  * tell different stories: cash in a fully invested book's place has no part under the first and all of the benchmark's under the second.
  */
-export type ActiveConvention = 'total returns' | 'benchmark-relative returns'
+export type ActiveConvention = 'own returns' | 'benchmark-relative returns'
 
 /** Risk against a benchmark, per period. Arrays have one entry for each position of the model. */
 export interface ActiveRisk {
   readonly convention: ActiveConvention
-  /** The active book: a = w - b. Its volatility is the tracking error; its contributions those under "total returns". */
+  /** The active book: a = w - b. Its volatility is the tracking error; its contributions those under "own returns". */
   readonly decomposition: Decomposition
   /** s_A = sqrt(a'C a) */
   readonly trackingError: number
@@ -20,7 +20,7 @@ export interface ActiveRisk {
   readonly contribution: Float64Array
   /** contribution / s_A; null where the tracking error is 0. */
   readonly share: Float64Array | null
-  /** The line "Net active weight": (sum of a) cov(r_B, r_A) / s_A; 0 under "total returns". */
+  /** The line "Net active weight": (sum of a) cov(r_B, r_A) / s_A; 0 under "own returns". */
   readonly netContribution: number
   readonly netShare: number | null
   /** Sum of a. */
@@ -37,7 +37,7 @@ export interface ActiveRisk {
  * benchmark weight 1 that the book does not hold.
  *
  *   a = w - b,   s_A = sqrt(a'C a)
- *   total returns:               c_i = a_i (C a)_i / s_A
+ *   own returns:               c_i = a_i (C a)_i / s_A
  *   benchmark-relative returns:  c_i = a_i ((C a)_i - b'C a) / s_A,   net line (sum of a) b'C a / s_A
  *
  * A book equal to its benchmark has tracking error 0, contributions 0, and shares null. An active weight that is no more than the last
@@ -45,7 +45,7 @@ export interface ActiveRisk {
  *
  * @param weights    n; decimals of capital, of any sign and sum
  * @param benchmark  n; likewise
- * @param convention default: total returns
+ * @param convention default: own returns
  * @returns          per period, in the unit of the returns
  * @throws Fault     "shape" | "not-a-number" | "negative-variance" | "out-of-range"
  * @source           CFA Institute, Level III, Active Equity Investing: Portfolio Construction (active risk attribution; from
@@ -57,7 +57,7 @@ export function activeRisk(
   model: RiskModel,
   weights: Float64Array,
   benchmark: Float64Array,
-  convention: ActiveConvention = 'total returns',
+  convention: ActiveConvention = 'own returns',
 ): ActiveRisk {
   checkBlock(weights, model.size, 1, 'weights')
   checkBlock(benchmark, model.size, 1, 'benchmark')
@@ -84,7 +84,7 @@ export function activeRisk(
     benchmarkVolatility: reference.volatility,
   }
   const { marginal, contribution, share } = decomposition
-  if (convention === 'total returns' || marginal === null)
+  if (convention === 'own returns' || marginal === null)
     return { ...both, contribution, share, netContribution: 0, netShare: share && 0 }
   const common = dot(benchmark, marginal)
   const relative = contribution.map((c, i) => c - active[i]! * common)

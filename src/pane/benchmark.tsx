@@ -7,7 +7,7 @@ import { useBooks } from './store'
 
 /** How each convention splits the tracking error. */
 export const CONVENTIONS = {
-  'total returns': 'Each position by its own return.',
+  'own returns': 'Each position by its own return.',
   'benchmark-relative returns':
     'Each position by its return less the benchmark’s; what the net active weight has of the benchmark is a line of its own.',
 } as const
@@ -80,7 +80,7 @@ export function Benchmark({ state }: { state: BooksState }) {
             label="Tracking error split by"
             value={convention}
             choices={[
-              ['total returns', 'Total returns'],
+              ['own returns', 'Own returns'],
               ['benchmark-relative returns', 'Benchmark-relative returns'],
             ]}
             hint={CONVENTIONS[convention]}

@@ -132,6 +132,11 @@ const VERDICTS: { readonly [V in NonNullable<Breakdown['normality']>['book']['ve
   'not-tested': 'Not tested',
 }
 
+const normalityHeadline = ({ book, partsDepart }: NonNullable<Breakdown['normality']>): string =>
+  book.verdict === 'consistent' && partsDepart
+    ? 'The book’s returns look normal, those of its parts do not'
+    : VERDICTS[book.verdict]
+
 function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksState }) {
   const classes = useStyles()
   const { active, byGroup, currency, normality, horizon } = breakdown
@@ -171,7 +176,7 @@ function Sections({ breakdown, state }: { breakdown: Breakdown; state: BooksStat
         </Folded>
       )}
       {normality && (
-        <Folded title="Normality" headline={VERDICTS[normality.book.verdict]}>
+        <Folded title="Normality" headline={normalityHeadline(normality)}>
           <p className={classes.text}>{normality.sentence}</p>
         </Folded>
       )}

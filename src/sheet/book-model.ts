@@ -199,7 +199,7 @@ class Estimation {
     )
     const estimate =
       made.matrix !== null
-        ? this.#fromPairs(made.matrix, size, rule, made)
+        ? this.#fromPairs(made.matrix, size, rule, used.rows.length, made)
         : factors !== null
           ? this.#fromFactors(used, size, factors)
           : this.#fromEstimator(used, size, estimator as Estimator, made)
@@ -434,9 +434,10 @@ class Estimation {
     matrix: Float64Array,
     size: number,
     rule: GapRule,
+    inAll: number,
     { pairs, completed, condition }: SetUp,
   ): Estimate {
-    const quality: [string, string][] = []
+    const quality: (readonly [string, string])[] = [this.#counts(this.#risky.length, inAll)]
     if (pairs?.overlap) {
       const { i, j, dates } = pairs.overlap
       quality.push([

@@ -40,6 +40,8 @@ export interface FactorSplit {
 export interface NormalityVerdict {
   readonly sentence: string
   readonly book: SeriesNormality
+  /** whether single series, or all together, do not look normal whatever the book does */
+  readonly partsDepart: boolean
 }
 
 /** Everything known about a book's risk at one moment, as the pane shows it and the table prints it. */
@@ -292,6 +294,7 @@ function normalityOf({ history, normality }: BookModel, weights: Float64Array): 
   }[book.verdict]
   return {
     book,
+    partsDepart,
     sentence: `The book’s past return at today’s weights ${meaning} (${figures}). ${others}.${few}`,
   }
 }

@@ -93,7 +93,7 @@ export const DEFAULT_SETTINGS: Settings = {
   riskless: [],
   roles: {},
   benchmark: { kind: 'column' },
-  convention: 'total returns',
+  convention: 'own returns',
   currency: null,
   tails: { method: { kind: 'historical' }, confidence: 0.95, periods: 1 },
   nesting: [],
@@ -155,7 +155,7 @@ export function settingsFromJson(json: Json | undefined): { settings: Settings; 
     roles: Object.fromEntries(roles),
     benchmark: read('benchmark', benchmarkFrom(saved.benchmark)) ?? DEFAULT_SETTINGS.benchmark,
     convention:
-      read('convention', oneOf(saved.convention, ['total returns', 'benchmark-relative returns'])) ??
+      read('convention', oneOf(saved.convention, ['own returns', 'benchmark-relative returns'])) ??
       DEFAULT_SETTINGS.convention,
     currency: read('currency', currencyFrom(saved.currency)),
     tails: read('tails', tailsFrom(saved.tails)) ?? DEFAULT_SETTINGS.tails,

@@ -129,9 +129,17 @@ export async function bootstrapStudy(
           ? bands
           : bands.volatility === 0
             ? `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} by the bootstrap; by the closed form there is none, from ${countOf(data.rows.length, 'date')}.`
-            : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} by the bootstrap, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${precision.lags > 0 && choice.blockLength === 1 ? ' Dates drawn one by one know nothing of lagged terms: take blocks.' : ''}`,
+            : `Standard error of the volatility: ${percentText(volatility.deviation * scale, 3)} by the bootstrap, ${percentText(bands.volatility, 3)} in closed form (ratio ${numberText((volatility.deviation * scale) / bands.volatility, 2)}).${blocksNote(precision.lags, choice.blockLength)}`,
   }
 }
+
+/** What parts a bootstrap from the closed form where one of them looks at neighbouring dates and the other does not. */
+const blocksNote = (lags: number, blockLength: number): string =>
+  lags > 0 && blockLength === 1
+    ? ' Dates drawn one by one know nothing of lagged terms: take blocks.'
+    : lags === 0 && blockLength > 1
+      ? ' Blocks keep what neighbouring dates have to do with each other; the closed form takes dates as independent, so the two part where they are not.'
+      : ''
 
 /**
  * Forecasts the past of the book at today's weights, each date from those before it, and tests the record.
@@ -274,7 +282,7 @@ function backtestLines({ tests, bias, confidence, missing }: Backtest): Backtest
             ? 'Too many: losses went beyond the forecast more often than it says.'
             : 'Too few: the forecast was too cautious.'
           : `Agrees with ${sure} confidence: ${accepted.fewest} to ${accepted.most} would.`
-      } With so many dates the test lets forecasts pass whose exceptions are twice too frequent in ${percentText(power.missed, 0)} of records.`,
+      } With ${countOf(dates, 'date')} the test lets forecasts pass whose exceptions are twice as frequent as stated in ${percentText(power.missed, 0)} of records.`,
     ],
     [
       'Independence (Christoffersen)',

@@ -10,7 +10,7 @@ const setting = fc
   .integer({ min: 1, max: 5 })
   .chain((n) => fc.tuple(fc.constant(n), numbers(T * n, 0.1), numbers(n, 2), numbers(n, 2)))
 const sum = (values: Float64Array) => values.reduce((a, x) => a + x, 0)
-const conventions: ActiveConvention[] = ['total returns', 'benchmark-relative returns']
+const conventions: ActiveConvention[] = ['own returns', 'benchmark-relative returns']
 
 test.each(conventions)('by %s, contributions and the net line add up to the tracking error', (convention) => {
   fc.assert(

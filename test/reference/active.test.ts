@@ -51,7 +51,7 @@ describe.each(['eu_log.json', 'lcg60.json', 'lcg120.json'])('active risk of %s',
 // CFA Institute, Level III, Active Equity Investing: Portfolio Construction, exhibit on relative risk attribution (read in a forum thread
 // that quotes it; published.json, cfa-l3-active-cash): benchmark 50/50 in A and B, portfolio 40/40/20 in A, B and cash. The variance
 // of A is not printed and is solved for.
-test('cash has all of the active risk by benchmark-relative returns, none by total returns', () => {
+test('cash has all of the active risk by benchmark-relative returns, none by own returns', () => {
   const { inputs, outputs, tolerance } = readJson<{
     readonly checks: readonly {
       readonly id: string
@@ -77,7 +77,7 @@ test('cash has all of the active risk by benchmark-relative returns, none by tot
   const relative = of(low, 'benchmark-relative returns')
   expect(absoluteGap(relative.share!, outputs.relative)).toBeLessThan(tolerance.relative)
   expect(relative.netContribution).toBeCloseTo(0, 12)
-  const total = of(low, 'total returns')
+  const total = of(low, 'own returns')
   expect(total.share![2]).toBe(outputs.total.cash)
   expect(total.share![0]! + total.share![1]!).toBeCloseTo(1, 12)
 })

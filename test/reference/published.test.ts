@@ -230,7 +230,7 @@ describe('published examples', () => {
       else high = middle
     }
     const share = relative(low)
-    // and with total returns, the other convention, riskless cash has no share
+    // and with own returns, the other convention, riskless cash has no share
     const plain = Float64Array.of(low, covAB, 0, covAB, varB, 0, 0, 0, 0)
     expect(decompose(matrixModel(plain, 3), weights).share![2]).toBe(0)
     return { relative: share }

@@ -81,7 +81,7 @@ function suspicionOf(evidence: Evidence, { held, far }: FarOne): FarSuspicion | 
   if (before && isTakenBack(before, far, fact, isLog)) return null
 
   const area = returns.cell(far.row, series)
-  const size = `${percentText(far.value)}, ${numberText(Math.abs(far.multiple), 0)} times its usual distance from the middle`
+  const size = `${percentText(far.value)}, ${numberText(Math.abs(far.multiple), 0)} robust standard deviations from its median`
   const start = `the return of ${quote(held.name)} ${whenOf(evidence, far.row)} is ${size}`
   const suspicion = { held, far, weight: 'warns', areas: [area] } as const
   if (after && isTakenBack(far, after, fact, isLog)) {
@@ -180,7 +180,7 @@ function marketMoves(
     lineOf({
       kind: 'outlier',
       weight: 'notes',
-      text: `${countOf(movers.length, 'holding')} moved more than ${NEAREST_FAR} times their usual distance from the middle ${whenOf(evidence, row)}${more}.`,
+      text: `${countOf(movers.length, 'holding')} moved more than ${NEAREST_FAR} robust standard deviations from their median ${whenOf(evidence, row)}${more}.`,
       areas: days.flatMap(([day, those]) => those.map(({ held }) => evidence.returns.cell(day, held.series))),
       effect:
         'Moves of many at once are the market’s as a rule: they make the tails of the book, which normal figures understate.',

@@ -147,7 +147,7 @@ describe('the benchmark', () => {
     return draw(<AgainstBenchmark active={breakdown.active} breakdown={breakdown} />)
   }
 
-  test.each(['total returns', 'benchmark-relative returns'] as const)(
+  test.each(['own returns', 'benchmark-relative returns'] as const)(
     'split by %s, parts of the tracking error add up to it in the table',
     async (convention) => {
       const { rows, said } = drawn(await breakdownOf({ convention }))

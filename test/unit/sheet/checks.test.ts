@@ -341,7 +341,7 @@ describe('one fault, one line', () => {
     const crash = rows.map((row, t) => (t === 77 ? row.map((value) => value - 0.3) : row))
     const { checks } = look(crash)
     expect(checks.map(({ kind, weight }) => [kind, weight])).toEqual([['outlier', 'notes']])
-    expect(checks[0]?.sentence).toMatch(/^Returns!B79: 10 holdings moved more than 6 times/)
+    expect(checks[0]?.sentence).toMatch(/^Returns!B79: 10 holdings moved more than 6 robust/)
   })
 
   test('a smoothed daily series is not told of its closing time as well', () => {
