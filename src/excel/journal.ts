@@ -278,7 +278,10 @@ function userCame(
   careful: boolean,
 ): boolean {
   const found = now?.typed[r]?.[c]
-  return careful && found !== typed[r]?.[c] && found !== (after ? after[r]?.[c] : '')
+  if (!careful || found === typed[r]?.[c] || found === (after ? after[r]?.[c] : '')) return false
+  // a link just set shows where it leads until the cell's text is written over it
+  const link = now?.links.find(({ row, column }) => row === r && column === c)?.target
+  return !link || found !== typedText(link.documentReference ?? link.address ?? '')
 }
 
 /**
