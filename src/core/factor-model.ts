@@ -64,7 +64,7 @@ export interface FactorSplit {
  * @throws Fault       "shape" | "not-a-number" | "too-few" (dates) | "collinear" (a factor that never changes, or that those
  *                     before it make up, with its column)
  * @source             least squares by Householder's decomposition: Golub & Van Loan (2013), Matrix Computations, 4th ed.,
- *                     section 5.3; risk split: Euler allocation, Tasche (2008), arXiv:0708.2542; divisors: any text on
+ *                     section 5.3; risk split: Euler allocation, Tasche (2008), arXiv:0708.2542; divisors: textbooks on
  *                     regression (from memory)
  * @cost               O(T (n k + k^2)) once, O(n k) a question
  * @example            factorModel(Float64Array.of(1, 3, 5, 8), 4, 1, Float64Array.of(0, 1, 2, 3), 1).exposures // [2.3]

@@ -1,7 +1,7 @@
 import { lazy, Suspense } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { confidenceText, type BacktestChoice, type BacktestStudy, type BooksState } from '../sheet'
-import { Choice, Entry, typedNumber } from './controls'
+import type { BacktestChoice, BacktestStudy, BooksState } from '../sheet'
+import { ConfidenceEntry, Choice, Entry, typedNumber } from './controls'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
 
@@ -94,15 +94,8 @@ export default function BackTest({
           }}
           commit={(window) => setChoice({ ...choice, window })}
         />
-        <Entry
-          label="Confidence level, %"
-          shown={confidenceText(choice.confidence).replace('%', '')}
-          read={(text) => {
-            const value = typedNumber(text.replace(/%$/, ''))
-            return value !== null && value > 50 && value < 100
-              ? { value: Number((value / 100).toFixed(8)) }
-              : { needed: 'A number between 50 and 100 is needed.' }
-          }}
+        <ConfidenceEntry
+          confidence={choice.confidence}
           commit={(confidence) => setChoice({ ...choice, confidence })}
         />
         <div className={classes.wide}>

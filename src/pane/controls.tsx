@@ -1,6 +1,7 @@
 import { Suspense, useId, useState, type ReactNode } from 'react'
 import { Button, Field, Input, makeStyles, mergeClasses, Select, tokens } from '@fluentui/react-components'
 import { ChevronDown16Regular, ChevronRight16Regular } from '@fluentui/react-icons'
+import { confidenceText } from '../sheet'
 import { Sentence } from './place'
 import { useKept } from './store'
 
@@ -271,6 +272,29 @@ export function Entry<T>({
         }}
       />
     </Field>
+  )
+}
+
+/** A confidence level as a percentage above 50 and below 100, handed over as a fraction. */
+export function ConfidenceEntry({
+  confidence,
+  commit,
+}: {
+  confidence: number
+  commit: (confidence: number) => void
+}) {
+  return (
+    <Entry
+      label="Confidence level, %"
+      shown={confidenceText(confidence).replace('%', '')}
+      read={(text) => {
+        const value = typedNumber(text.replace(/%$/, ''))
+        return value !== null && value > 50 && value < 100
+          ? { value: Number((value / 100).toFixed(8)) }
+          : { needed: 'A number between 50 and 100 is needed.' }
+      }}
+      commit={commit}
+    />
   )
 }
 

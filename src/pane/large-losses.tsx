@@ -1,7 +1,6 @@
 import { useState } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
 import {
-  confidenceText,
   numberText,
   percentText,
   scalesWithTime,
@@ -9,7 +8,7 @@ import {
   type TailChoice,
   type Tails,
 } from '../sheet'
-import { Choice, Entry, typedNumber } from './controls'
+import { ConfidenceEntry, Choice, Entry, typedNumber } from './controls'
 import { digitsFor, sharesOf } from './measure'
 import { NONE } from './positions'
 import { useBooks } from './store'
@@ -73,17 +72,7 @@ function Fields({
           choose={(kind) => choose({ method: kind === 'student' ? { kind, degrees: null } : { kind } })}
         />
       </div>
-      <Entry
-        label="Confidence level, %"
-        shown={confidenceText(choice.confidence).replace('%', '')}
-        read={(text) => {
-          const value = typedNumber(text.replace(/%$/, ''))
-          return value !== null && value > 50 && value < 100
-            ? { value: Number((value / 100).toFixed(8)) }
-            : { needed: 'A number between 50 and 100 is needed.' }
-        }}
-        commit={(confidence) => choose({ confidence })}
-      />
+      <ConfidenceEntry confidence={choice.confidence} commit={(confidence) => choose({ confidence })} />
       <Entry
         label="Horizon, periods"
         shown={String(choice.periods)}

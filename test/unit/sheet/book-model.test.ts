@@ -1,21 +1,9 @@
 import { Fault } from '../../../src/core'
-import type { CellValue, Settings } from '../../../src/sheet'
-import { DEFAULT_SETTINGS, matchHoldings, readHoldings, readReturns } from '../../../src/sheet'
-import { blockOf, ENGLISH, modelFor } from './blocks-of-cells'
+import type { Settings } from '../../../src/sheet'
+import { DEFAULT_SETTINGS, matchHoldings } from '../../../src/sheet'
+import { held, modelFor, returnsOf, series, told } from './blocks-of-cells'
 
 // Every block here is typed for its test.
-
-const found = { content: null, orientation: null, returnKind: 'simple' } as const
-const holdingsOf = (rows: CellValue[][]) => readHoldings(blockOf(rows), { roles: {}, capital: null }, ENGLISH)
-const returnsOf = (rows: CellValue[][]) => readReturns(blockOf(rows, 'Returns'), found, ENGLISH)
-const held = (...names: string[]) =>
-  holdingsOf([['Holding', 'Weight'], ...names.map((name) => [name, 1 / names.length])])
-const series = (...names: string[]) =>
-  returnsOf([names, ...[0.01, -0.02, 0.015, -0.005].map((r, t) => names.map((_, i) => r * (1 + i * t)))])
-const told = (
-  match: { findings: readonly { sentence: string; weight: string }[] },
-  weight: string,
-): string[] => match.findings.filter((finding) => finding.weight === weight).map(({ sentence }) => sentence)
 
 test('a holding marked riskless has zero variance and needs no series', async () => {
   const holdings = held('A', 'Cash')

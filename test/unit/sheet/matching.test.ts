@@ -1,21 +1,8 @@
-import type { CellValue } from '../../../src/sheet'
-import { matchHoldings, readHoldings, readReturns } from '../../../src/sheet'
+import { matchHoldings } from '../../../src/sheet'
 import { groupsOf } from '../../../src/sheet/names'
-import { blockOf, ENGLISH } from './blocks-of-cells'
+import { held, returnsOf, series, told } from './blocks-of-cells'
 
 // Every block here is typed for its test.
-
-const found = { content: null, orientation: null, returnKind: 'simple' } as const
-const holdingsOf = (rows: CellValue[][]) => readHoldings(blockOf(rows), { roles: {}, capital: null }, ENGLISH)
-const returnsOf = (rows: CellValue[][]) => readReturns(blockOf(rows, 'Returns'), found, ENGLISH)
-const held = (...names: string[]) =>
-  holdingsOf([['Holding', 'Weight'], ...names.map((name) => [name, 1 / names.length])])
-const series = (...names: string[]) =>
-  returnsOf([names, ...[0.01, -0.02, 0.015, -0.005].map((r, t) => names.map((_, i) => r * (1 + i * t)))])
-const told = (
-  match: { findings: readonly { sentence: string; weight: string }[] },
-  weight: string,
-): string[] => match.findings.filter((finding) => finding.weight === weight).map(({ sentence }) => sentence)
 
 test('holdings find their series by name, wherever it stands', () => {
   const match = matchHoldings(held('B', 'A'), series('A', 'B', 'C'), [])
