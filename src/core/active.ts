@@ -33,6 +33,18 @@ export interface ActiveRisk {
 }
 
 /**
+ * Weights less those of the benchmark. What is no more than the last digits of the two is 0: amounts over their sum and typed fractions are seldom
+ * the same double.
+ *
+ * @example activeWeights(Float64Array.of(.6, .4), Float64Array.of(.5, .5)) // [0.1, -0.1]
+ */
+export const activeWeights = (weights: Float64Array, benchmark: Float64Array): Float64Array =>
+  weights.map((weight, i) => {
+    const difference = weight - benchmark[i]!
+    return Math.abs(difference) <= 4 * Number.EPSILON * Math.abs(weight) ? 0 : difference
+  })
+
+/**
  * Splits the risk of a book against its benchmark. A benchmark that is one return series is a position of its own in the model, with
  * benchmark weight 1 that the book does not hold.
  *
@@ -40,8 +52,7 @@ export interface ActiveRisk {
  *   own returns:               c_i = a_i (C a)_i / s_A
  *   benchmark-relative returns:  c_i = a_i ((C a)_i - b'C a) / s_A,   net line (sum of a) b'C a / s_A
  *
- * A book equal to its benchmark has tracking error 0, contributions 0, and shares null. An active weight that is no more than the last
- * digits of its two weights is 0: amounts over their sum and typed fractions are seldom the same double.
+ * A book equal to its benchmark has tracking error 0, contributions 0, and shares null.
  *
  * @param weights    n; decimals of capital, of any sign and sum
  * @param benchmark  n; likewise
@@ -61,10 +72,7 @@ export function activeRisk(
 ): ActiveRisk {
   checkBlock(weights, model.size, 1, 'weights')
   checkBlock(benchmark, model.size, 1, 'benchmark')
-  const active = weights.map((weight, i) => {
-    const difference = weight - benchmark[i]!
-    return Math.abs(difference) <= 4 * Number.EPSILON * Math.abs(weight) ? 0 : difference
-  })
+  const active = activeWeights(weights, benchmark)
   const decomposition = decompose(model, active)
   const trackingError = decomposition.volatility
   const netWeight = active.reduce((sum, weight) => sum + weight, 0)

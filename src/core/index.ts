@@ -1,4 +1,4 @@
-export { activeRisk, type ActiveConvention, type ActiveRisk } from './active'
+export { activeRisk, activeWeights, type ActiveConvention, type ActiveRisk } from './active'
 export { RISK_BAND } from './band'
 export {
   backtest,
