@@ -1,6 +1,6 @@
 import { estimateModel, factorModel, Fault, matrixModel, returnsModel } from '../core'
 import type { Estimator, FactorModel, ReturnsModel, RiskModel } from '../core'
-import type { Calculator, SetUp, Work } from './calculator'
+import type { Calculator, ModelRecipe, SetUp, Work } from './calculator'
 import type { Area } from './cells'
 import { addressOf } from './cells'
 import type { CurrencyModel } from './currency'
@@ -42,6 +42,8 @@ export interface Precision {
 export interface BookModel {
   /** over the holdings, in their order; riskless ones have zero variance */
   readonly model: RiskModel
+  /** how to make it again elsewhere */
+  readonly recipe: ModelRecipe
   /** the returns of the dates all holdings share; null for a covariance matrix, or where fewer than two dates are shared */
   readonly history: ReturnsModel | null
   /** the returns behind `history`, as they were read */
@@ -101,9 +103,11 @@ export async function modelOf(
     : new Estimation(blocks, choices, calculator, work).model(extent)
 }
 
+type Matrix = ModelRecipe & { readonly kind: 'matrix' }
+
 function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelChoices): BookModel {
   inBaseCurrency(returns, match.seriesOf, match.currencies)
-  const modelOfSeries = (series: readonly number[]): RiskModel => {
+  const recipeOfSeries = (series: readonly number[]): Matrix => {
     const size = series.length
     const matrix = new Float64Array(size * size)
     series.forEach((a, i) =>
@@ -111,10 +115,15 @@ function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelC
         if (a >= 0 && b >= 0) matrix[i * size + j] = returns.values[a * returns.columns + b] ?? NaN
       }),
     )
-    return matrixModel(matrix, size)
+    return { kind: 'matrix', matrix, size }
   }
+  const own = recipeOfSeries([...match.seriesOf])
   const { currencies } = match
   const foreign = currencies && currencySeries(currencies)
+  const withCurrencies = (): RiskModel => {
+    const { matrix, size } = recipeOfSeries([...match.seriesOf, ...(foreign ?? [])])
+    return matrixModel(matrix, size)
+  }
   const findings: Finding[] = []
   if (estimator.kind !== 'sample')
     findings.push({
@@ -129,7 +138,8 @@ function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelC
       area: null,
     })
   return {
-    model: modelOfSeries([...match.seriesOf]),
+    model: matrixModel(own.matrix, own.size),
+    recipe: own,
     history: null,
     data: null,
     precision: 'A covariance matrix does not tell how many dates it rests on.',
@@ -139,7 +149,7 @@ function givenModel({ match, returns }: Blocks, { estimator, benchmark }: ModelC
       foreign &&
       (foreign.length === 0
         ? nothingForeign(currencies.base)
-        : currencyModel(modelOfSeries([...match.seriesOf, ...foreign]), currencies, foreign)),
+        : currencyModel(withCurrencies(), currencies, foreign)),
     factors: null,
     window: null,
     rule: 'common dates',
@@ -396,6 +406,7 @@ class Estimation {
     }
     return {
       model,
+      recipe: { kind: 'estimated', returns: values, dates: rows.length, size, estimator, shrinkage },
       factors: null,
       precision: {
         model: model.returns,
@@ -420,6 +431,7 @@ class Estimation {
     const model = factorModel(values, rows.length, size, block, count)
     return {
       model,
+      recipe: { kind: 'factors', returns: values, dates: rows.length, size, factors: block, count },
       factors: { model, names: factors.names },
       precision: {
         model: model.returns,
@@ -479,6 +491,7 @@ class Estimation {
     }
     return {
       model: matrixModel(matrix, size),
+      recipe: { kind: 'matrix', matrix, size },
       factors: null,
       precision: `The rule for gaps “${GAP_WORDS[rule]}” has no error bands here; choose the dates common to all holdings for them.`,
       quality: [...quality, ...conditionLine(condition)],

@@ -4,6 +4,7 @@ import {
   completedMoments,
   conditionOf,
   estimateModel,
+  factorModel,
   Fault,
   jarqueBera,
   mardia,
@@ -24,6 +25,7 @@ import type {
   CovarianceRepair,
   Estimator,
   HistoryGroup,
+  RiskModel,
   SeriesNormality,
   Shrinkage,
   Weighting,
@@ -44,6 +46,33 @@ interface Returns {
   readonly returns: Float64Array
   readonly dates: number
   readonly size: number
+}
+
+/** A risk model as plain data, so that it can be made again where a long computation runs. */
+export type ModelRecipe =
+  | (Returns & {
+      readonly kind: 'estimated'
+      readonly estimator: Estimator
+      readonly shrinkage: Shrinkage | null
+    })
+  | (Returns & { readonly kind: 'factors'; readonly factors: Float64Array; readonly count: number })
+  | { readonly kind: 'matrix'; readonly matrix: Float64Array; readonly size: number }
+
+function modelFrom(recipe: ModelRecipe): RiskModel {
+  switch (recipe.kind) {
+    case 'estimated':
+      return estimateModel(
+        recipe.returns,
+        recipe.dates,
+        recipe.size,
+        recipe.estimator,
+        recipe.shrinkage ?? undefined,
+      )
+    case 'factors':
+      return factorModel(recipe.returns, recipe.dates, recipe.size, recipe.factors, recipe.count)
+    case 'matrix':
+      return matrixModel(recipe.matrix, recipe.size)
+  }
 }
 
 /** What a book's model needs before it can be asked about weights. */
