@@ -656,7 +656,7 @@ class Estimation {
   }
 }
 
-type Estimate = Pick<BookModel, 'model' | 'factors' | 'precision' | 'quality'>
+type Estimate = Pick<BookModel, 'model' | 'recipe' | 'factors' | 'precision' | 'quality'>
 
 type PairRepair = NonNullable<NonNullable<SetUp['pairs']>['repair']>
 
