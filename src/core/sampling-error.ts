@@ -1,5 +1,5 @@
-import { Fault } from './fault'
-import { roundingOfVariance, type ReturnsModel } from './risk-model'
+import { checkBlock, Fault } from './fault'
+import { returnsModel, roundingOfVariance, type ReturnsModel } from './risk-model'
 
 /** How sure the figures of a decomposition are, in the unit of each: per period, as the figures are. */
 export interface StandardErrors {
@@ -59,6 +59,43 @@ export function standardErrors(model: ReturnsModel, weights: Float64Array, lags 
     share[i] = Math.sqrt(share[i]!)
   }
   return { volatility: (volatility / 2) * Math.sqrt(variance), contribution, share, effectiveDates }
+}
+
+/**
+ * The same for groups of positions. A group's contribution is the sum of its members' and so are its influence values, which makes the group
+ * one position whose return is what its members earn together.
+ *
+ * @param groupOf  n; the group of each position, 0 .. groups-1
+ * @returns        as `standardErrors`, with one entry for each group; a group without members has errors of 0
+ * @throws Fault   as `standardErrors` | "out-of-range" (with the row of the position)
+ * @source         as `standardErrors`
+ * @cost           one streaming pass for each group, and O(T groups), O(T groups L) with lags
+ * @example        groupErrors(returnsModel(Float64Array.of(.01, 0, -.02, .01, .01, -.01), 3, 2), Float64Array.of(.5, .5), Int32Array.of(0, 0), 1).share // [0]
+ */
+export function groupErrors(
+  model: ReturnsModel,
+  weights: Float64Array,
+  groupOf: Int32Array,
+  groups: number,
+  lags = 0,
+): StandardErrors {
+  checkBlock(Float64Array.from(groupOf), model.size, 1, 'groups')
+  const stray = groupOf.findIndex((group) => group < 0 || group >= groups)
+  if (stray >= 0) {
+    throw new Fault(
+      'out-of-range',
+      `groups: number ${groupOf[stray]}`,
+      `a number from 0 to ${groups - 1} is needed`,
+      { argument: 'groups', row: stray },
+    )
+  }
+  const earned = new Float64Array(model.dates * groups)
+  for (let group = 0; group < groups; group++) {
+    const returns = model.portfolioReturns(weights.map((weight, i) => (groupOf[i] === group ? weight : 0)))
+    for (let t = 0; t < model.dates; t++) earned[t * groups + group] = returns[t]!
+  }
+  const whole = new Float64Array(groups).fill(1)
+  return standardErrors(returnsModel(earned, model.dates, groups, model.weighting), whole, lags)
 }
 
 /**

@@ -1,5 +1,6 @@
 import {
   decompose,
+  groupErrors,
   returnsModel,
   RISK_BAND,
   shareDifferences,
@@ -140,6 +141,35 @@ describe('standard errors', () => {
     }
   })
 
+  it.each(weightings)(
+    'of groups are those of the sums of their members’ influence values, with %s',
+    (_name, weighting, lags) => {
+      const model = modelOf(weighting)
+      const correction = lags > 0 ? 1 : model.correction
+      const omega = model.rowWeights
+      const plain = influences(rows, weights, { omega, correction, lags })
+      const together = (of: number[][]) => of[0]!.map((u, t) => u + of[2]![t]!)
+      const errors = groupErrors(model, weights, Int32Array.of(1, 0, 1), 2, lags)
+      const expected = {
+        share: [plain.share[1]!, together(plain.share)],
+        contribution: [plain.contribution[1]!, together(plain.contribution)],
+      }
+      // 1e-9: two ways of adding the same doubles, which cancel more the more lags there are
+      for (const figure of ['share', 'contribution'] as const) {
+        const oracle = expected[figure].map((u) => errorOf(u, omega, lags))
+        expect(relativeGap(errors[figure]!, oracle)).toBeLessThan(1e-9)
+      }
+      expect(errors.volatility / errorOf(plain.volatility, omega, lags)).toBeCloseTo(1, 9)
+    },
+  )
+
+  it('of a group of everything are that of the volatility, and a certain share; of an empty group they are 0', () => {
+    const { contribution, share } = groupErrors(modelOf(), weights, Int32Array.of(1, 1, 1), 2)
+    expect(contribution[1]! / standardErrors(modelOf(), weights).volatility).toBeCloseTo(1, 12)
+    expect(share![1]).toBe(0)
+    expect([contribution[0], share![0]]).toEqual([0, 0])
+  })
+
   it.each([2 ** 300, 2 ** -300])('of shares hold at any size of returns, such as times %d', (factor) => {
     const { share, volatility } = standardErrors(modelOf(), weights)
     const scaled = returnsModel(
@@ -185,6 +215,15 @@ describe('standard errors refuse', () => {
       found: 'pairs: position 3',
       where: { argument: 'pairs', row: 1, column: 1 },
     })
+  })
+
+  it('a position in a group that is not there', () => {
+    expect(faultOf(() => groupErrors(modelOf(), weights, Int32Array.of(0, 2, 1), 2))).toMatchObject({
+      code: 'out-of-range',
+      found: 'groups: number 2',
+      where: { argument: 'groups', row: 1 },
+    })
+    expect(faultOf(() => groupErrors(modelOf(), weights, Int32Array.of(0, 0), 1)).code).toBe('shape')
   })
 
   it('weights that do not fit and figures too large', () => {
