@@ -25,6 +25,7 @@ export {
   type Spread,
 } from './bootstrap'
 export { Fault, type FaultCode, type Where } from './fault'
+export { impliedReturns, returnPerMarginal, type ImpliedChoice, type ImpliedReturns } from './implied'
 export { kernelForm, type KernelForm, type Sums } from './kernel/block'
 export { momentsOf, type Moments } from './moments'
 export { jarqueBera, mardia, NORMALITY_LEVEL, type BlockNormality, type SeriesNormality } from './normality'
@@ -85,6 +86,24 @@ export {
   type TailMethod,
   type TailRisk,
 } from './tails'
+export {
+  courseOf,
+  financed,
+  firstOrder,
+  LEAST_NET_SHARE,
+  loweringPairs,
+  loweringTrades,
+  removals,
+  turnover,
+  type Course,
+  type Financed,
+  type Financing,
+  type FirstOrder,
+  type LoweringTrade,
+  type Reach,
+  type Removals,
+  type Shorting,
+} from './trade'
 export {
   completedMoments,
   historyLengths,
