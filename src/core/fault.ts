@@ -22,8 +22,11 @@ export type FaultCode =
   | 'unmatched'
   | 'twice'
   | 'selection'
+  // a typed rule; the column counts characters
+  | 'expression'
   // the host
   | 'occupied'
+  | 'changed'
   | 'protected'
   | 'missing'
   | 'editing'

@@ -18,7 +18,7 @@ export function attempt<T>(
 
 /**
  * The one sentence a fault is told in: where, what was found, what is needed. A pane that knows the cells says their address; a
- * worksheet function knows only its own arguments and counts rows and columns from 1 within them.
+ * worksheet function knows only its own arguments and counts rows and columns from 1 within them, as a typed expression's characters are.
  *
  * @param addressOf the address of a place as the user knows it, or null where it is no cell of theirs
  * @example explain(new Fault('text', 'found “abc”', 'a number is needed', { argument: 'weights', row: 2, column: 0 })) // "weights, row 3, column 1: found “abc”; a number is needed."
@@ -28,12 +28,13 @@ export function explain(fault: Fault, addressOf?: (where: Where) => string | nul
   // numerical doors put the argument's name first, because there the message stands alone
   const found =
     argument && fault.found.startsWith(`${argument}: `) ? fault.found.slice(argument.length + 2) : fault.found
-  const place = addressOf?.(fault.where) ?? placeOf(fault.where)
+  const place = addressOf?.(fault.where) ?? placeOf(fault)
   const sentence = `${found}; ${fault.needed}.`
   return place === '' ? sentence.charAt(0).toUpperCase() + sentence.slice(1) : `${place}: ${sentence}`
 }
 
-function placeOf({ argument, row, column }: Where): string {
+function placeOf({ code, where: { argument, row, column } }: Fault): string {
+  if (code === 'expression' && column !== undefined) return `Character ${column + 1}`
   const parts = [
     argument,
     row === undefined ? undefined : `row ${row + 1}`,
