@@ -14,6 +14,7 @@ export {
   type GivenForecasts,
   type MissingDates,
 } from './backtest'
+export { riskBudgetWeights, type BudgetWeights } from './budget'
 export { currencySplit, type CurrencyPart, type CurrencySplit } from './currency'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
 export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
@@ -47,6 +48,8 @@ export {
   type GroupDecomposition,
 } from './decomposition'
 export { MOST_LAGS, shareBroughtBack, usualLags } from './lagged'
+export { leastRiskWeights } from './least-risk'
+export { leastVariance, type LeastVariance, type WeightBounds } from './least-variance'
 export { logReturns, simpleReturns } from './returns'
 export { longestRun, rhythm, shareInRuns, withoutRuns, type Run } from './runs'
 export { shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
