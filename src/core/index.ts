@@ -80,6 +80,15 @@ export { shrinkageOf, type Shrinkage, type ShrinkageTarget } from './shrinkage'
 export { conditionOf, type Condition } from './spectrum'
 export { inOneGo, partOf } from './steps'
 export {
+  moveCorrelations,
+  replay,
+  scaleVolatilities,
+  worstStretch,
+  type Fall,
+  type Replay,
+  type Stretch,
+} from './stress'
+export {
   cornishFisherQuantile,
   fitStudent,
   inCornishFisherDomain,
