@@ -1,5 +1,5 @@
-import { shareDifferences, standardErrors } from '../core'
-import type { Decomposition } from '../core'
+import { groupErrors, shareDifferences, standardErrors } from '../core'
+import type { Decomposition, StandardErrors } from '../core'
 import type { BookModel } from './book-model'
 import { BAND, countOf } from './wording'
 
@@ -15,6 +15,10 @@ export interface Bands {
   readonly tied: readonly boolean[]
   /** what has to be said beside them, or null */
   readonly note: string | null
+  /** of the contributions and shares of groups; a pass of the returns for each group, taken when asked for */
+  ofGroups(groupOf: Int32Array, groups: number): Pick<StandardErrors, 'contribution' | 'share'>
+  /** of the volatility of other weights, such as those of some positions alone; two passes of the returns */
+  ofVolatility(weights: Float64Array): number
 }
 
 /** Equally counting dates below which bands are said to run narrow. Our own convention. */
@@ -71,5 +75,13 @@ export function bandsOf(book: BookModel, d: Decomposition): Bands | string {
     note:
       [note, narrowness(errors.effectiveDates, model.dates)].filter((part) => part !== null).join(' ') ||
       null,
+    ofGroups: (groupOf, groups) => {
+      const { contribution, share } = groupErrors(model, d.weights, groupOf, groups, lags)
+      return {
+        contribution: contribution.map((error) => error * scale),
+        share: d.share === null ? null : share,
+      }
+    },
+    ofVolatility: (weights) => standardErrors(model, weights, lags).volatility * scale,
   }
 }

@@ -1,5 +1,5 @@
 import { activeRisk, annualise } from '../core'
-import type { ActiveRisk } from '../core'
+import type { ActiveRisk, Decomposition } from '../core'
 import type { BookModel } from './book-model'
 import type { Finding } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -25,6 +25,15 @@ export const MOST_GROSS_CONTRIBUTION = 5
 /** How many times the total its parts are without their signs. */
 export const grossRatio = (parts: Float64Array, total: number): number =>
   parts.reduce((sum, part) => sum + Math.abs(part), 0) / total
+
+/** Why shares of risk are not shown, or null. */
+export const sharesWithheldOf = ({ share, contribution, volatility }: Decomposition): string | null => {
+  if (share === null) return 'Shares of risk are not defined: the total risk is 0.'
+  const ratio = grossRatio(contribution, volatility)
+  return ratio > MOST_GROSS_CONTRIBUTION
+    ? `Shares of risk are withheld: contributions nearly cancel (without their signs they are ${numberText(ratio, 1)} times the total), so shares of the total say little. Read the contributions.`
+    : null
+}
 
 /**
  * Risk against the benchmark that was chosen: a column of benchmark weights, or one series of returns.

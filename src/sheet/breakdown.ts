@@ -3,7 +3,7 @@ import type { BlockNormality, Decomposition, GroupDecomposition, SeriesNormality
 import type { Bands } from './bands'
 import { bandsOf } from './bands'
 import type { Active } from './benchmark'
-import { activeOf, grossRatio, MOST_GROSS_CONTRIBUTION } from './benchmark'
+import { activeOf, sharesWithheldOf } from './benchmark'
 import type { Blocks, BookModel } from './book-model'
 import type { CurrencyRisk } from './currency'
 import { currencyRiskOf } from './currency'
@@ -11,10 +11,13 @@ import type { Check, CheckKind } from './checks'
 import type { Finding } from './findings'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
+import type { LimitsReading, LimitState } from './limits'
+import { judgeLimits, limitsOf } from './limits'
 import type { Match } from './matching'
 import { groupsOf, plainName, UNASSIGNED } from './names'
 import type { NestedGroup } from './nesting'
 import { nestedGroups } from './nesting'
+import { profileBasis } from './profile'
 import { settingLines } from './setting-lines'
 import type { Settings } from './settings'
 import type { Tails } from './tail-section'
@@ -65,6 +68,8 @@ export interface Breakdown {
   readonly currency: CurrencyRisk | null
   readonly factors: FactorSplit | null
   readonly normality: NormalityVerdict | null
+  /** those of the table of limits, then those of the limit column; empty while there are none */
+  readonly limits: readonly LimitState[]
   readonly net: number
   readonly gross: number
   /** by the year where it is the user's own, whatever the risk is scaled to */
@@ -106,7 +111,7 @@ const TOLD_BY_THE_MODEL: ReadonlySet<CheckKind> = new Set(['constant', 'short hi
  * @cost          one pass of the model, and one for every group
  */
 export function breakDown(
-  blocks: Blocks,
+  blocks: Blocks & { readonly limits?: LimitsReading | null },
   book: BookModel,
   settings: Settings,
   checks: readonly Check[] = [],
@@ -147,16 +152,19 @@ export function breakDown(
     return { header, labels, parts: groupDecomposition(book.model, decomposition, groupOf, labels.length) }
   })
 
-  const ratio = grossRatio(decomposition.contribution, decomposition.volatility)
-  const sharesWithheld =
-    decomposition.share === null
-      ? 'Shares of risk are not defined: the total risk is 0.'
-      : ratio > MOST_GROSS_CONTRIBUTION
-        ? `Shares of risk are withheld: contributions nearly cancel (without their signs they are ${numberText(ratio, 1)} times the total), so shares of the total say little. Read the contributions.`
-        : null
+  const sharesWithheld = sharesWithheldOf(decomposition)
   const negative = decomposition.share?.some((share) => share < 0) ?? false
   const names = holdings.holdings.map(({ name }) => name)
   const active = activeOf(holdings, book, settings, periods, findings)
+  const { limits, findings: ofLimits } = limitsOf(holdings, blocks.limits ?? null)
+  // a limit that does not read stops nothing but its own verdict
+  for (const finding of ofLimits)
+    findings.push(
+      finding.weight === 'stops'
+        ? { ...finding, weight: 'warns', sentence: `Not judged: ${finding.sentence}` }
+        : finding,
+    )
+  const bands = bandsOf(book, decomposition)
   const tails = tailsOf(book, decomposition, settings.tails, names, returns, sharesWithheld, findings)
   return {
     names,
@@ -171,12 +179,16 @@ export function breakDown(
       holdings.groupHeaders,
       settings.nesting,
     ),
-    bands: bandsOf(book, decomposition),
+    bands,
     tails,
     active,
     currency: currencyRiskOf(match.currencies, book.currency, decomposition),
     factors: factorSplit(book, decomposition),
     normality: normalityOf(book, weights),
+    limits:
+      limits.length === 0
+        ? []
+        : judgeLimits(limits, profileBasis(blocks, book, settings).profileOf(weights), bands),
     net: holdings.net,
     gross: holdings.gross,
     expectedReturn: expectedReturnOf(holdings, match, book, periods, findings),

@@ -192,10 +192,10 @@ function proposeRoles(
   })
 }
 
-/** What a numeric cell of a holding turned out to be. */
-type Read = { readonly value: number | null; readonly fault?: string; readonly fromText?: boolean }
+/** What a cell that is to hold a number turned out to hold. */
+export type Read = { readonly value: number | null; readonly fault?: string; readonly fromText?: boolean }
 
-function readNumber(value: CellValue, culture: Culture): Read {
+export function readNumber(value: CellValue, culture: Culture): Read {
   if (typeof value === 'number') return { value }
   if (isBlank(value)) return { value: null }
   if (isCellError(value)) return { value: null, fault: `found the error ${String(value)}` }

@@ -21,6 +21,18 @@ export type { Holding, HoldingsColumn, HoldingsReading } from './holdings'
 export { readReturns } from './returns'
 export type { ReturnsReading } from './returns'
 export { matchHoldings } from './matching'
+export {
+  columnLimits,
+  judgeLimits,
+  LIMIT_MEASURES,
+  LIMIT_STATUS,
+  limitOn,
+  limitsOf,
+  limitsSummary,
+  limitText,
+  readLimits,
+} from './limits'
+export type { Limit, LimitMeasure, LimitScope, LimitsReading, LimitState, LimitStatus } from './limits'
 export { modelChoices, modelOf } from './book-model'
 export type { Blocks, BookModel } from './book-model'
 export { cancelledFault, jobWords, startJob, steppingCalculator } from './calculator'
@@ -42,4 +54,17 @@ export { openBooks } from './books'
 export type { Books, BooksState, Offer, Working } from './books'
 export type { Field, Status } from './linked-book'
 export type { BacktestChoice, BacktestStudy, ErrorStudy, Studies } from './studies'
+export type { GroupProfile, Profile } from './profile'
+export type { Proposal, ShareOf, Target } from './targets'
+export type {
+  Comparison,
+  Entry,
+  Financing,
+  TextFault,
+  TradeChange,
+  TradeLine,
+  TradesState,
+  WriteLine,
+  WritePreview,
+} from './trades'
 export * from './wording'

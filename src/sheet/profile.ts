@@ -1,5 +1,5 @@
 import { activeWeights, annualise, decompose, groupDecomposition, tailRisk } from '../core'
-import type { Decomposition, RiskModel } from '../core'
+import type { Decomposition, RiskModel, TailRisk } from '../core'
 import type { Blocks, BookModel } from './book-model'
 import { attempt } from './explain'
 import { groupsOf } from './names'
@@ -32,7 +32,7 @@ export interface Profile {
   readonly net: number
   readonly gross: number
   /** for the horizon and the confidence chosen; null where the method gives none. Taken when asked for */
-  tails(): { readonly valueAtRisk: number; readonly shortfall: number | null } | null
+  tails(): Pick<TailRisk, 'valueAtRisk' | 'shortfall' | 'standardError'> | null
 }
 
 /** What profiles of one book share, whatever the weights. */
@@ -41,6 +41,8 @@ export interface ProfileBasis {
   readonly model: RiskModel
   /** periods in a year the figures are scaled to; 1: per period */
   readonly periods: number
+  /** volatility of one unit of each position, scaled */
+  readonly volatilities: Float64Array
   profileOf(weights: Float64Array): Profile
 }
 
@@ -106,5 +108,6 @@ export function profileBasis(
       },
     }
   }
-  return { names, model, periods, profileOf }
+  const volatilities = model.variances().map((variance) => Math.sqrt(variance * periods))
+  return { names, model, periods, volatilities, profileOf }
 }
