@@ -143,25 +143,46 @@ function mendSteps({ area, typed, formats }: Mending): Step[] {
   })
 }
 
-/** Reads what stands in some areas, a bounded piece a request. */
+/** Values, formulas, kinds, formats and links of a cell take about this much of an answer. */
+const SURVEY_BYTES = 100
+
+/** Reads what stands in some areas, as many of them a request as its size allows and a bounded piece of a large one. */
 export async function surveyGrounds({ context, sync }: Request, areas: readonly Area[]): Promise<Survey[]> {
-  const grounds: Survey[] = []
-  for (const area of areas) {
-    // values, formulas, kinds, formats and links: five answers a cell
-    const step = Math.max(1, Math.floor(REQUEST_BYTES / (100 * area.columns)))
-    const typed: CellValue[][] = []
-    const formats: string[][] = []
-    const values: CellValue[][] = []
-    const links: { row: number; column: number; target: Target }[] = []
-    for (let from = 0; from < area.rows; from += step) {
-      const range = rangeOf(context, rowsOf(area, from, Math.min(step, area.rows - from)))
+  const grounds = areas.map((area) => ({
+    area,
+    typed: [] as CellValue[][],
+    formats: [] as string[][],
+    values: [] as CellValue[][],
+    links: [] as { row: number; column: number; target: Target }[],
+  }))
+  const most = REQUEST_BYTES / SURVEY_BYTES
+  const pieces = grounds.flatMap((ground) => {
+    const { area } = ground
+    const rows = Math.max(1, Math.floor(most / area.columns))
+    return Array.from({ length: Math.ceil(area.rows / rows) }, (_, k) => ({
+      ground,
+      from: k * rows,
+      part: rowsOf(area, k * rows, Math.min(rows, area.rows - k * rows)),
+    }))
+  })
+  let at = 0
+  while (at < pieces.length) {
+    const asked = []
+    let cells = 0
+    for (let piece = pieces[at]; piece; piece = pieces[++at]) {
+      const more = piece.part.rows * piece.part.columns
+      if (cells > 0 && cells + more > most) break
+      cells += more
+      const range = rangeOf(context, piece.part)
       range.load('values,formulas,valueTypes,numberFormat')
-      const properties = range.getCellProperties({ hyperlink: true })
-      await sync()
+      asked.push({ ...piece, range, properties: range.getCellProperties({ hyperlink: true }) })
+    }
+    await sync()
+    for (const { ground, from, range, properties } of asked) {
       ;(range.formulas as CellValue[][]).forEach((row, r) => {
-        values.push(range.values[r] as CellValue[])
-        formats.push(range.numberFormat[r] as string[])
-        typed.push(
+        ground.values.push(range.values[r] as CellValue[])
+        ground.formats.push(range.numberFormat[r] as string[])
+        ground.typed.push(
           row.map((entry, c) =>
             // a formula that gives its own text does not exist, so an entry equal to its value was typed as it reads
             range.valueTypes[r]?.[c] === 'String' && entry === range.values[r]?.[c] ? `'${entry}` : entry,
@@ -171,12 +192,11 @@ export async function surveyGrounds({ context, sync }: Request, areas: readonly 
       properties.value.forEach((row, r) =>
         row.forEach(({ hyperlink }, column) => {
           const target = targetOf(hyperlink)
-          if (target) links.push({ row: from + r, column, target })
+          if (target) ground.links.push({ row: from + r, column, target })
         }),
       )
       range.untrack()
     }
-    grounds.push({ area, typed, formats, values, links })
   }
   return grounds
 }

@@ -6,18 +6,20 @@ export interface Request {
   sync(): Promise<void>
 }
 
+interface RunOptions {
+  /** a context to go on with: a handler can be removed only in the one that added it */
+  readonly context?: OfficeExtension.ClientRequestContext
+  /** whether one undo of the user's takes back all of it, where the host can do that */
+  readonly oneUndo?: boolean
+}
+
 /** The one road to the host. */
 export interface Requests {
   /**
    * @param place what the batch is about, as a fault should name it
-   * @param context a context to go on with: a handler can be removed only in the one that added it
    * @throws Fault and nothing else
    */
-  run<T>(
-    place: string,
-    batch: (request: Request) => Promise<T>,
-    context?: OfficeExtension.ClientRequestContext,
-  ): Promise<T>
+  run<T>(place: string, batch: (request: Request) => Promise<T>, options?: RunOptions): Promise<T>
   /** Tells when an answer keeps us waiting and when it has come. */
   onWaiting(listener: (waiting: boolean) => void): () => void
 }
@@ -52,11 +54,13 @@ export function openRequests(): Requests {
   }
 
   return {
-    async run(place, batch, known) {
+    async run(place, batch, { context: known, oneUndo = false } = {}) {
       const work = (context: Excel.RequestContext) =>
         batch({ context, sync: () => patiently(context.sync()) })
       try {
-        return await (known ? Excel.run(known, work) : Excel.run({ delayForCellEdit: true }, work))
+        if (known) return await Excel.run(known, work)
+        const merged = oneUndo && offers('1.20')
+        return await Excel.run({ delayForCellEdit: true, ...(merged && { mergeUndoGroup: true }) }, work)
       } catch (error) {
         throw faultOf(error, place)
       }
@@ -78,6 +82,10 @@ const codeOf = (error: unknown): string =>
 /** Whether a request failed for its size alone, so that a smaller one may pass. */
 export const isTooLarge = (error: unknown): boolean =>
   error instanceof Fault ? isTooLarge(error.cause) : /PayloadSizeLimitExceeded$/.test(codeOf(error))
+
+/** Whether a request failed because something in it cannot be undone together with the rest, so that it may pass by itself. */
+export const isUndoRefused = (error: unknown): boolean =>
+  error instanceof Fault ? isUndoRefused(error.cause) : codeOf(error) === 'UndoNotSupported'
 
 /** Puts an error of the host into the words of a Fault; a Fault passes through. */
 export function faultOf(error: unknown, place: string): Fault {

@@ -165,7 +165,7 @@ export async function watch(
         for (const handler of handlers) handler.remove()
         await sync()
       },
-      first.context,
+      { context: first.context },
     )
   }
 }

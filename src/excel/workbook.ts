@@ -7,8 +7,8 @@ import { openWriter } from './writing'
 /**
  * The open workbook through the Office JavaScript API. To be called once the host is ready; nothing is asked of it before the first method is.
  *
- * @throws Fault from every method, and nothing else: "host", "editing", "missing", "protected", "occupied", "selection", "cancelled";
- * "not-a-number" where a table to be written holds one that is not finite
+ * @throws Fault from every method, and nothing else: "host", "editing", "missing", "protected", "occupied", "changed", "selection", "cancelled";
+ * "not-a-number" where what is to be written holds one that is not finite, "twice" where it gives one cell two values
  */
 export function excelWorkbook(): Workbook {
   const requests = openRequests()

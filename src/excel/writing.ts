@@ -16,6 +16,7 @@ import {
   type TableCell,
   type WritePlan,
 } from '../sheet'
+import { entryStep, groundOf, runsOf, surveyRuns, type Run } from './entries'
 import { absoluteReference, areasIn, SHEET_COLUMNS, SHEET_ROWS, without } from './addresses'
 import {
   asText,
@@ -38,7 +39,15 @@ import { askLinkedCells, askPlainFont, linkSteps, linksOf } from './links'
 import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
 import { askRefolding, fold, rememberedFolds, unfold, type Folding } from './outline'
 import { NAME_PREFIX, rangeOf } from './reading'
-import { faultOf, offers, PROTECTED_NEEDS, REQUEST_BYTES, type Request, type Requests } from './requests'
+import {
+  faultOf,
+  isUndoRefused,
+  offers,
+  PROTECTED_NEEDS,
+  REQUEST_BYTES,
+  type Request,
+  type Requests,
+} from './requests'
 
 /** Writes to the workbook: every plan happens whole or not at all. */
 export interface Writer {
@@ -59,6 +68,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
   const known = new Map<string, Json>()
   /** a write could not be undone: its journal is still in the workbook and comes first */
   let unsettled = false
+  /** whether the host may be asked to make each write one step of the user's undo */
+  let oneUndo = true
   let last: Promise<unknown> = Promise.resolve()
   /** one write at a time: a second one would overwrite the first one's journal */
   const inTurn = <T>(work: () => Promise<T>): Promise<T> => {
@@ -139,13 +150,14 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         settingSteps(key, value, (known.get(key) ?? null) !== null),
       ),
     ]
-    await requests.run(place, (request) => commit(request, place, journal, steps))
+    await requests.run(place, (request) => commit(request, place, journal, steps), { oneUndo })
   }
 
   async function lay(
     request: Request,
     plan: WritePlan,
     fills: readonly Fill[],
+    runs: readonly Run[],
     place: string,
   ): Promise<void> {
     const { context, sync } = request
@@ -156,6 +168,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     const sheetNames = new Set(
       fills.flatMap(({ target, leftovers }) => [target, ...leftovers].map(({ sheet }) => sheet)),
     )
+    for (const { area } of runs) sheetNames.add(area.sheet)
     if (plan.sheet !== undefined) sheetNames.add(plan.sheet)
     const sheets = new Map(
       [...sheetNames].map((name) => {
@@ -177,16 +190,20 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     await sync()
 
     const there = (sheet: string) => sheets.get(sheet)?.isNullObject === false
-    for (const { target, leftovers } of fills) {
-      if (!there(target.sheet) && target.sheet !== plan.sheet) {
-        throw new Fault('missing', `there is no sheet "${target.sheet}"`, 'choose a sheet of this workbook')
-      }
-      for (const { sheet } of [target, ...leftovers]) {
-        if (there(sheet) && sheets.get(sheet)?.protection.protected) {
-          throw new Fault('protected', `the sheet "${sheet}" is protected`, PROTECTED_NEEDS)
-        }
+    for (const { sheet } of [
+      ...fills.map(({ target }) => target).filter((target) => target.sheet !== plan.sheet),
+      ...runs.map(({ area }) => area),
+    ]) {
+      if (!there(sheet)) {
+        throw new Fault('missing', `there is no sheet "${sheet}"`, 'choose a sheet of this workbook')
       }
     }
+    for (const name of sheetNames) {
+      if (there(name) && sheets.get(name)?.protection.protected) {
+        throw new Fault('protected', `the sheet "${name}" is protected`, PROTECTED_NEEDS)
+      }
+    }
+    const entered = await surveyRuns(request, runs, plan.entries ?? [])
 
     const onOld = fills
       .map(({ patch, target, leftovers }) => ({
@@ -238,7 +255,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
               sheet: makes,
               filled: fills.filter(({ target }) => target.sheet === makes).map(({ target }) => target),
             },
-      grounds,
+      grounds: [...entered.map(groundOf), ...grounds],
       looks,
       links,
       folding: folding && { before: folding.before, after: folding.after },
@@ -253,6 +270,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     }
 
     const steps: Step[] = [
+      ...entered.map(entryStep),
       ...(makes === null ? [] : [step(({ workbook }) => void workbook.worksheets.add(makes))]),
       ...fills.flatMap(({ patch, target, leftovers }) => [
         ...leftovers
@@ -278,6 +296,26 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     await commit(request, place, journal, steps)
   }
 
+  async function change(plan: WritePlan, fills: readonly Fill[], runs: readonly Run[]): Promise<void> {
+    const [first] = [...fills.map(({ target }) => target), ...runs.map(({ area }) => area)]
+    const place = first ? addressOf(first) : 'this workbook'
+    if (!unsettled && runs.length === 0 && isRefresh(plan, fills, known)) return refresh(plan, fills, place)
+    await requests.run(
+      place,
+      async (request) => {
+        if (unsettled && (await settle(request))?.outcome === 'failed') {
+          throw new Fault(
+            'host',
+            'an earlier write stopped half way and what stood there could not be put back yet',
+            'close and reopen this workbook, then try again',
+          )
+        }
+        await lay(request, plan, fills, runs, place)
+      },
+      { oneUndo },
+    )
+  }
+
   async function settle(request: Request): Promise<Recovery | null> {
     const item = request.context.workbook.settings.getItemOrNullObject(JOURNAL_KEY).load('value')
     await request.sync()
@@ -301,20 +339,15 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     write: (plan) =>
       inTurn(async () => {
         const fills = plan.patches.map(fillOf)
-        const place = fills[0] ? addressOf(fills[0].target) : 'this workbook'
-        if (!unsettled && isRefresh(plan, fills, known)) {
-          await refresh(plan, fills, place)
-        } else {
-          await requests.run(place, async (request) => {
-            if (unsettled && (await settle(request))?.outcome === 'failed') {
-              throw new Fault(
-                'host',
-                'an earlier write stopped half way and what stood there could not be put back yet',
-                'close and reopen this workbook, then try again',
-              )
-            }
-            await lay(request, plan, fills, place)
-          })
+        const runs = runsOf(plan.entries ?? [])
+        refuseMeeting(fills, runs)
+        try {
+          await change(plan, fills, runs)
+        } catch (fault) {
+          if (!oneUndo || !isUndoRefused(fault)) throw fault
+          // nothing was changed: the same again, in as many steps of undo as the host makes of it
+          oneUndo = false
+          await change(plan, fills, runs)
         }
         remembered(plan)
         return fills.map(({ target }) => target)
@@ -334,6 +367,21 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
 
     recover: () => inTurn(() => requests.run('this workbook', settle)),
   }
+}
+
+/** A cell in a table to be written, or in one to be cleared, has no value of its own. */
+function refuseMeeting(fills: readonly Fill[], runs: readonly Run[]): void {
+  for (const { area } of runs)
+    for (const { target, leftovers } of fills) {
+      const met = [target, ...leftovers].map((place) => overlap(place, area)).find((found) => found !== null)
+      if (met) {
+        throw new Fault(
+          'occupied',
+          `${addressOf(met)} lies where the table goes`,
+          'choose another place for the table',
+        )
+      }
+    }
 }
 
 const withCause = (fault: Fault, cause: Fault): Fault => Object.assign(fault, { cause })

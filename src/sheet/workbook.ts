@@ -55,11 +55,33 @@ export interface Patch {
   readonly seen?: readonly (readonly CellValue[])[]
 }
 
+/**
+ * A new value for one cell of the user's own. What the cell holds besides (number format, font, fill, link) stays as it is; rules of data
+ * validation are for what is typed, so none is asked here.
+ */
+export interface CellEntry {
+  /** one cell */
+  readonly at: Area
+  /**
+   * a number or truth value, a text, '' for a blank, or a formula exactly as it was typed; a text that begins with an equals sign is taken for
+   * a formula, unless an apostrophe stands before it
+   */
+  readonly value: CellValue
+  /** what was typed there when the cell was last looked at, as `Seen.formulas` has it */
+  readonly seen: CellValue
+}
+
 /** Everything one write changes: all of it happens or none. */
 export interface WritePlan {
   /** a new sheet to make first, when no sheet has that name */
   readonly sheet?: string
   readonly patches: readonly Patch[]
+  /**
+   * cells of the user's own, in any order and on any sheets. They are looked at first, and refused with the Fault "changed" when one of
+   * them no longer holds what was seen, with "occupied" where a formula fills several cells or cells are merged. Their echo is told as
+   * ours, like that of any write: whoever writes them has to have their books look again.
+   */
+  readonly entries?: readonly CellEntry[]
   /** names to lay over areas; null removes a name */
   readonly keep?: { readonly [name: string]: Area | null }
   /** settings saved with the workbook; null removes one */
@@ -85,7 +107,8 @@ export interface Recovery {
 
 /**
  * A host's cells, as the sheet folder needs them. Every method may throw a Fault of the codes "host", "editing", "missing",
- * "protected", "occupied", "selection", "cancelled" or, for a table to be written, "not-a-number", and nothing else.
+ * "protected", "occupied", "changed", "selection", "cancelled" or, for what is to be written,
+ * "not-a-number" and "twice", and nothing else.
  */
 export interface Workbook {
   culture(): Promise<Culture>

@@ -1597,6 +1597,74 @@ describe('Events', () => {
     expect([values, numberFormat]).toEqual([[['', '']], [['General', 'General']]])
   })
 
+  // learn.microsoft.com, "Undo support with the Excel JavaScript API" and the reference of Excel.RunOptions (read)
+  test('a batch whose undo is merged is undone in one step, requests, formats, widths and new sheets together', async () => {
+    const { Excel, user, read, write } = desk()
+    await write('A1', 'before')
+    const widthOf = () =>
+      Excel.run(async (context) => {
+        const { format } = context.workbook.worksheets
+          .getItem(first)
+          .getRange('A1')
+          .load('format/columnWidth')
+        await context.sync()
+        return format.columnWidth
+      })
+    const width = await widthOf()
+    await Excel.run({ mergeUndoGroup: true }, async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      sheet.getRange('A1').values = [['once']]
+      await context.sync()
+      sheet.getRange('A1').format.columnWidth = 2 * width
+      context.workbook.worksheets.add('Made').getRange('A1').values = [[1]]
+      await context.sync()
+      sheet.getRange('A1').values = [['twice']]
+      sheet.getRange('A1').format.font.bold = true
+      await context.sync()
+    })
+    expect([(await read('A1')).values, await widthOf()]).toEqual([[['twice']], 2 * width])
+    user.undo()
+    expect([(await read('A1')).values, await widthOf()]).toEqual([[['before']], width])
+    expect(await code(read('A1', 'Made'))).toBe('ItemNotFound')
+    user.undo()
+    expect((await read('A1')).values).toEqual([['']])
+  })
+
+  test('a command of the user parts such a batch, and both are undone in turn', async () => {
+    const { Excel, user, read } = desk()
+    await Excel.run({ mergeUndoGroup: true }, async (context) => {
+      const sheet = context.workbook.worksheets.getItem(first)
+      sheet.getRange('A1').values = [[1]]
+      await context.sync()
+      user.type(first, 'B1', 'mine')
+      sheet.getRange('C1').values = [[3]]
+      await context.sync()
+    })
+    const left = []
+    for (let undone = 0; undone < 3; undone++) {
+      user.undo()
+      left.push((await read('A1:C1')).values?.[0])
+    }
+    expect(left).toEqual([
+      [1, 'mine', ''],
+      [1, '', ''],
+      ['', '', ''],
+    ])
+  })
+
+  test('what cannot be undone is refused in such a batch, and nowhere else', async () => {
+    const { Excel } = desk()
+    const deleting = (mergeUndoGroup: boolean) =>
+      Excel.run({ mergeUndoGroup }, async (context) => {
+        context.workbook.worksheets.add('Made')
+        await context.sync()
+        context.workbook.worksheets.getItem('Made').delete()
+        await context.sync()
+      })
+    expect(await code(deleting(false))).toBe('fulfilled')
+    expect(await code(deleting(true))).toBe('UndoNotSupported')
+  })
+
   test('a handler is removed only through the context that added it', async () => {
     const { Excel, user, heard, handlers } = await listening()
     const handler = handlers[0]
@@ -1810,8 +1878,8 @@ describe('The application and the host', () => {
     const { isSetSupported } = desk().Office.context.requirements
     expect([
       isSetSupported('ExcelApi', '1.12'),
-      isSetSupported('ExcelApi', '1.14'),
-      isSetSupported('ExcelApi', '1.15'),
+      isSetSupported('ExcelApi', '1.20'),
+      isSetSupported('ExcelApi', '1.21'),
     ]).toEqual([true, true, false])
     expect([isSetSupported('SharedRuntime', '1.1'), isSetSupported('CustomFunctionsRuntime', '1.2')]).toEqual(
       [true, true],

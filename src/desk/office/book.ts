@@ -20,6 +20,7 @@ import {
   type Injector,
   type IRange,
   type IStyleData,
+  type IUndoRedoItem,
   type Nullable,
   type Workbook,
   type Worksheet,
@@ -155,6 +156,10 @@ export class Book {
   #calculating = false
   /** Changes of the request under way, to be one step of the user's undo; the newest is undone first. */
   #step: { readonly undo: IMutationInfo[]; readonly redo: IMutationInfo[] } = { undo: [], redo: [] }
+  /** Batches under way that are to be one step each. */
+  #groups = 0
+  /** The step that lies on top of the grid's own before a command of the group's. */
+  #topmost: Nullable<IUndoRedoItem> = null
 
   constructor(
     grid: Grid,
@@ -168,9 +173,12 @@ export class Book {
     this.#dirtying = this.injector.get(IActiveDirtyManagerService)
     this.commands.beforeCommandExecuted(({ id, type }) => {
       // the text in the formula bar is a document of the grid's own, brought along after every change
-      if (type === CommandType.COMMAND && !id.startsWith('doc.')) this.endUndoStep()
+      if (type !== CommandType.COMMAND || id.startsWith('doc.')) return
+      if (this.#isGrouping) this.#topmost = this.injector.get(IUndoRedoService).pitchTopUndoElement()
+      else this.endUndoStep()
     })
     this.commands.onCommandExecuted((command, options) => {
+      if (command.type === CommandType.COMMAND && this.#isGrouping) this.#adoptStep()
       if (this.#makesDirty(command, options)) this.#dirty = true
       else if (command.id === SetFormulaCalculationStartMutation.id) {
         this.#dirty = false
@@ -192,7 +200,7 @@ export class Book {
 
   /** Resolves when every formula has been worked out after the changes made so far, the user's included. */
   async calculated(): Promise<void> {
-    this.endUndoStep()
+    if (this.#groups === 0) this.endUndoStep()
     const session = this.injector.get(FormulaCalculationSessionService)
     // A calculation under way when a change came does not count for that change: the next one has to begin first. One that has not
     // begun after so many waits is not going to (the grid found nothing to do).
@@ -384,6 +392,37 @@ export class Book {
       cellValue[Number(row)] = old
     }
     return { ...params, cellValue }
+  }
+
+  get #isGrouping(): boolean {
+    return this.#groups > 0 && this.applying
+  }
+
+  /** Makes one step of all that the add-in changes until the function returned is called; a user's command in between parts it. */
+  groupUndo(): () => void {
+    this.endUndoStep()
+    // the grid knows steps of the workbook in focus only, and without a screen none is
+    const units = this.injector.get(IUniverInstanceService)
+    if (!units.getFocusedUnit()) units.focusUnit(this.id)
+    this.#groups++
+    return () => {
+      this.#groups--
+      this.endUndoStep()
+    }
+  }
+
+  /**
+   * Takes the step that a command of the grid's own has handed over during a group into the group's. The grid can gather steps by itself,
+   * but then undoes them in the order they were done.
+   */
+  #adoptStep(): void {
+    const steps = this.injector.get(IUndoRedoService)
+    const step = steps.pitchTopUndoElement()
+    if (!step || step === this.#topmost || step.unitID !== this.id) return
+    // to the redone ones, which the group's own step clears when it comes
+    steps.popUndoToRedo()
+    this.#step.undo.unshift(...step.undoMutations)
+    this.#step.redo.push(...step.redoMutations)
   }
 
   /** Hands the changes so far over as one step of undo; commands of the grid's own make steps of theirs, in between. */

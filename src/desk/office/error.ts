@@ -16,6 +16,7 @@ export type ErrorCode =
   | 'RangeExceedsLimit'
   | 'RequestPayloadSizeLimitExceeded'
   | 'ResponsePayloadSizeLimitExceeded'
+  | 'UndoNotSupported'
 
 const MESSAGE: Readonly<Record<ErrorCode, string>> = {
   AccessDenied: 'You cannot perform the requested operation.',
@@ -36,6 +37,7 @@ const MESSAGE: Readonly<Record<ErrorCode, string>> = {
   RangeExceedsLimit: 'The cell count in the range has exceeded the maximum supported number.',
   RequestPayloadSizeLimitExceeded: 'The request payload size has exceeded the limit.',
   ResponsePayloadSizeLimitExceeded: 'The response payload size has exceeded the limit.',
+  UndoNotSupported: 'The operation cannot be undone together with others.',
 }
 
 /** What a rejected sync carries; the host's `OfficeExtension.Error`. */

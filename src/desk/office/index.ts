@@ -72,6 +72,17 @@ export interface OfficeStandIn {
   settled(): Promise<void>
 }
 
+/** What of the members here the host cannot undo on every platform: it refuses them in a group of undo. */
+const NOT_UNDONE: ReadonlySet<string> = new Set([
+  'NamedItem.comment',
+  'Worksheet.delete',
+  'Worksheet.name',
+  'Worksheet.position',
+  'Worksheet.visibility',
+  'WorksheetProtection.protect',
+  'WorksheetProtection.unprotect',
+])
+
 const MEGABYTE = 1024 * 1024
 
 class Host implements Runtime {
@@ -128,17 +139,19 @@ class Host implements Runtime {
   listen: Runtime['listen'] = (listener) => this.events.listen(listener)
   unlisten: Runtime['unlisten'] = (listener) => this.events.unlisten(listener)
 
-  async execute(operations: readonly Operation[], delayForCellEdit: boolean): Promise<void> {
+  groupUndo = () => this.book.groupUndo()
+
+  execute: Runtime['execute'] = async (operations, { delayForCellEdit, mergeUndoGroup }) => {
     while (this.#editing) {
       if (!delayForCellEdit) throw new OfficeError('InvalidOperationInCellEditMode')
       await new Promise<void>((resolve) => this.#editingEnded.push(resolve))
     }
-    const served = this.#turn.then(() => this.#serve(operations))
+    const served = this.#turn.then(() => this.#serve(operations, mergeUndoGroup === true))
     this.#turn = served.catch(() => undefined)
     return served
   }
 
-  async #serve(operations: readonly Operation[]): Promise<void> {
+  async #serve(operations: readonly Operation[], grouped: boolean): Promise<void> {
     const { book, counts } = this
     const limit = this.options.payloadLimit ?? 5 * MEGABYTE
     counts.syncs++
@@ -156,6 +169,8 @@ class Host implements Runtime {
       for (const operation of operations) {
         counts.operations++
         this.#strike(operation)
+        if (grouped && NOT_UNDONE.has(operation.location))
+          throw new OfficeError('UndoNotSupported', operation.location, operation.location)
         if (operation.sort === 'read' && !book.calculationSuspended) await book.calculated()
         this.#carryOut(operation, answer)
       }

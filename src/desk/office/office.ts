@@ -12,7 +12,7 @@ export interface Theme {
 
 /** Requirement sets the desk claims, each with its highest version. */
 const SETS: Readonly<Record<string, string>> = {
-  ExcelApi: '1.14',
+  ExcelApi: '1.20',
   SharedRuntime: '1.2',
   CustomFunctionsRuntime: '1.2',
   AddinCommands: '1.1',

@@ -74,7 +74,12 @@ export interface Operation {
 export interface Runtime {
   readonly root: unknown
   readonly rootKind: Kind<never>
-  execute(operations: readonly Operation[], delayForCellEdit: boolean): Promise<void>
+  execute(
+    operations: readonly Operation[],
+    how: Readonly<Pick<RunOptions, 'delayForCellEdit' | 'mergeUndoGroup'>>,
+  ): Promise<void>
+  /** Gathers what requests do into one step of the user's undo. @returns what ends that */
+  groupUndo(): () => void
   listen(listener: Listener): void
   /** @returns whether there was such a listener */
   unlisten(listener: Pick<Listener, 'topic' | 'handler' | 'context'>): boolean
@@ -417,7 +422,7 @@ export class RequestContext {
   readonly debugInfo = { pendingStatements: [] as string[] }
   /** Whether objects stay usable from one sync to the next, as within a batch. */
   holds = false
-  delayForCellEdit = false
+  how: Readonly<Pick<RunOptions, 'delayForCellEdit' | 'mergeUndoGroup'>> = {}
   #operations: Operation[] = []
   readonly #root: Node
 
@@ -488,7 +493,7 @@ export class RequestContext {
     this.#operations = []
     if (operations.length) {
       try {
-        await this.host.execute(operations, this.delayForCellEdit)
+        await this.host.execute(operations, this.how)
       } finally {
         this.expire((node) => node.held === null)
       }
@@ -508,7 +513,7 @@ export class RequestContext {
   /** Ends a batch: only what was tracked can still be used. */
   close(): void {
     this.holds = false
-    this.delayForCellEdit = false
+    this.how = {}
     this.expire((node) => node.held !== 'tracked')
     if (!this.transients.size) this.host.contexts.delete(this)
   }
@@ -526,6 +531,8 @@ export class RequestContext {
 
 interface RunOptions {
   readonly delayForCellEdit?: boolean
+  /** one step of undo for all requests of the batch; what cannot be undone is then refused */
+  readonly mergeUndoGroup?: boolean
   readonly previousObjects?: unknown
 }
 
@@ -539,14 +546,15 @@ export async function run(runtime: Runtime, first: unknown, second?: unknown): P
   // Options are plain; anything else is an object or objects to go on with.
   const belongs = Array.isArray(given) || RequestContext.of(given) !== undefined
   const options: RunOptions = belongs ? { previousObjects: given } : ((given ?? {}) as RunOptions)
-  const { previousObjects: previous, delayForCellEdit = false } = options
+  const { previousObjects: previous, ...how } = options
   const contexts = (Array.isArray(previous) ? previous : [previous]).map((object) =>
     RequestContext.of(object),
   )
   if (contexts.some((one) => one !== contexts[0])) throw new OfficeError('InvalidRequestContext')
   const context = contexts[0] ?? new RequestContext(runtime)
   context.holds = true
-  context.delayForCellEdit = delayForCellEdit
+  context.how = how
+  const endGroup = how.mergeUndoGroup ? runtime.groupUndo() : null
   runtime.contexts.add(context)
   try {
     const result = batch(context) as Promise<unknown> | undefined
@@ -557,6 +565,7 @@ export async function run(runtime: Runtime, first: unknown, second?: unknown): P
     return value
   } finally {
     context.close()
+    endGroup?.()
   }
 }
 
