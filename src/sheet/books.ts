@@ -6,6 +6,7 @@ import { steppingCalculator } from './calculator'
 import type { Area, Culture } from './cells'
 import { addressOf, overlap } from './cells'
 import { explain } from './explain'
+import type { LimitsReading } from './limits'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
 import type { CheckLine } from './inspection'
@@ -14,8 +15,10 @@ import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
 import type { BacktestChoice, Studies } from './studies'
+import type { Target } from './targets'
+import type { TradeChange, TradesState } from './trades'
 import type { Json, Workbook, WorkbookEvent } from './workbook'
-import { listOf, quote } from './wording'
+import { countOf, listOf, quote } from './wording'
 
 /** A long action under way; share is 0 to 1, or null while there is nothing to measure it by. */
 export interface Working {
@@ -40,11 +43,14 @@ export interface BooksState {
   readonly holdings: HoldingsReading | null
   readonly returns: ReturnsReading | null
   readonly factors: ReturnsReading | null
+  readonly limits: LimitsReading | null
   readonly settings: Settings
   readonly breakdown: Breakdown | null
   /** what was found about the data; null while there is nothing to look over */
   readonly checks: readonly CheckLine[] | null
   readonly studies: Studies
+  /** null until there are figures */
+  readonly trades: TradesState | null
   /** whether names in the workbook hold the blocks of this book */
   readonly linked: boolean
   /** where the linked table lies */
@@ -62,14 +68,31 @@ export interface BooksState {
 export interface Books {
   state(): BooksState
   subscribe(listener: () => void): () => void
-  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'capital'): Promise<void>
+  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'limits' | 'capital'): Promise<void>
   /** Lets go of the block of factor returns. */
   dropFactors(): Promise<void>
+  /** Lets go of the table of limits. */
+  dropLimits(): Promise<void>
   assignRole(header: string, role: Role): Promise<void>
   markRiskless(name: string, riskless: boolean): Promise<void>
   choose(change: Partial<Settings>): Promise<void>
   compute(): Promise<void>
   bootstrap(choice: BootstrapChoice): Promise<void>
+  /** Changes the list of trades, at once. */
+  trade(change: TradeChange): void
+  /** Drops all trades that are not in the sheet. */
+  discardTrades(): void
+  /** Begins the comparison anew at the weights in the sheet. */
+  compareFromHere(): void
+  /** Adds a series that is not held to what can be traded, at weight 0. */
+  addCandidate(name: string): Promise<void>
+  dropCandidate(name: string): Promise<void>
+  /** Looks for weights that reach a target; they take the place of the list. */
+  propose(target: Target): Promise<void>
+  /** Writes the weights of the list to the cells of the holdings. */
+  applyTrades(choice: { readonly replaceFormulas: boolean }): Promise<void>
+  /** Puts back what stood there before the last Apply. */
+  undoTrades(): Promise<void>
   /** @param of the book's own past at today's weights, or a selected block of returns and forecasts */
   backtest(choice: BacktestChoice, of: 'this book' | 'selection'): Promise<void>
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
@@ -171,7 +194,9 @@ class OpenBooks implements Books {
   }
 
   #newBook(id: string, saved?: Json): LinkedBook {
-    return new LinkedBook(id, this.#workbook, this.#culture, this.#calculator, saved)
+    return new LinkedBook(id, this.#workbook, this.#culture, this.#calculator, saved, () => {
+      this.#publish()
+    })
   }
 
   get #book(): LinkedBook {
@@ -205,10 +230,12 @@ class OpenBooks implements Books {
       },
       returns: book.returns,
       factors: book.factors,
+      limits: book.limits,
       settings: book.settings,
       breakdown: book.breakdown,
       checks: book.checks,
       studies: book.studies,
+      trades: book.trading.state,
       linked: book.linked,
       table: book.table,
       status: book.status,
@@ -297,17 +324,18 @@ class OpenBooks implements Books {
     if (error.code === 'cancelled') {
       this.#notice = 'Cancelled; nothing was changed.'
       // figures that a cancelled study stands beside are as good as they were
-      if (field === 'study') return
+      if (field === 'study' || field === 'trades') return
       if (book.status.kind === 'up to date' || (book.linked && book.status.kind === 'nothing linked'))
         book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
       return
     }
     // what a study stumbles over says nothing about the blocks
-    const place = field === 'study' ? field : (fieldOf(error) ?? field)
+    const place = field === 'study' || field === 'trades' ? field : (fieldOf(error) ?? field)
     const sentence = sentenceOf(error)
     if (place) book.faults = { ...book.faults, [place]: sentence }
-    // a table that could not be written leaves the figures as good as they were
-    if (place === 'table' || field === 'table' || field === 'study') return
+    // a table that could not be written leaves the figures as good as they were, and so do limits and trades
+    if (place === 'table' || place === 'limits' || place === 'trades') return
+    if (field === 'table' || field === 'study' || field === 'trades') return
     if (book.breakdown || field === undefined) book.status = { kind: 'failed', sentence, area: areaOf(error) }
   }
 
@@ -321,12 +349,19 @@ class OpenBooks implements Books {
     }
     if (event.kind === 'selected' || (event.kind === 'edited' && event.ours)) return
     for (const book of this.#books) {
-      const cause = causeOf(event, book)
-      if (cause === null || !book.linked) continue
-      const due = this.#due.get(book)
-      if (due === undefined || CAUSES.indexOf(cause) < CAUSES.indexOf(due)) this.#due.set(book, cause)
+      this.#note(book, causeOf(event, book))
     }
     this.#publish()
+    this.#refreshSoon()
+  }
+
+  #note(book: LinkedBook, cause: Cause | null): void {
+    if (cause === null || !book.linked) return
+    const due = this.#due.get(book)
+    if (due === undefined || CAUSES.indexOf(cause) < CAUSES.indexOf(due)) this.#due.set(book, cause)
+  }
+
+  #refreshSoon(): void {
     if (this.#due.size === 0) return
     if (this.#timer) clearTimeout(this.#timer)
     this.#timer = setTimeout(() => {
@@ -386,7 +421,7 @@ class OpenBooks implements Books {
     return parted.join(' ')
   }
 
-  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'capital'): Promise<void> {
+  takeSelection(field: 'holdings' | 'returns' | 'factors' | 'limits' | 'capital'): Promise<void> {
     return this.#command(field, async (book, work) => {
       await book.take(field, await this.#workbook.selection(), work)
     })
@@ -394,6 +429,65 @@ class OpenBooks implements Books {
 
   dropFactors(): Promise<void> {
     return this.#command('factors', (book, work) => book.dropFactors(work))
+  }
+
+  dropLimits(): Promise<void> {
+    return this.#command('limits', (book, work) => book.dropLimits(work))
+  }
+
+  // ---- trades: the list changes at once, whatever is under way
+
+  trade(change: TradeChange): void {
+    this.#book.trading.edit(change)
+    this.#publish()
+  }
+
+  discardTrades(): void {
+    this.#book.trading.discard()
+    dropFault(this.#book, 'trades')
+    this.#publish()
+  }
+
+  compareFromHere(): void {
+    this.#book.trading.compareFromHere()
+    this.#publish()
+  }
+
+  addCandidate(name: string): Promise<void> {
+    return this.#command('trades', (book, work) => book.trading.addCandidate(name, work))
+  }
+
+  dropCandidate(name: string): Promise<void> {
+    return this.#command('trades', (book, work) => book.trading.dropCandidate(name, work))
+  }
+
+  propose(target: Target): Promise<void> {
+    return this.#command('trades', (book, work) => book.trading.propose(target, work))
+  }
+
+  applyTrades({ replaceFormulas }: { readonly replaceFormulas: boolean }): Promise<void> {
+    return this.#command('trades', async (book, work) => {
+      const areas = await book.applyTrades(replaceFormulas, work)
+      this.#tellOthers(book, areas)
+      this.#notice = `${countOf(areas.length, 'weight')} written to the sheet. Undo in the view Trades puts back what stood there.`
+    })
+  }
+
+  undoTrades(): Promise<void> {
+    return this.#command('trades', async (book, work) => {
+      const areas = await book.undoTrades(work)
+      this.#tellOthers(book, areas)
+      this.#notice = `${countOf(areas.length, 'cell')} put back as they were.`
+    })
+  }
+
+  /** Cells written for one book may belong to others too; the workbook takes them for an echo. */
+  #tellOthers(book: LinkedBook, areas: readonly Area[]): void {
+    for (const other of this.#books) {
+      if (other === book || !other.linked) continue
+      for (const area of areas) this.#note(other, other.heedEdit(area, area.sheet))
+    }
+    this.#refreshSoon()
   }
 
   assignRole(header: string, role: Role): Promise<void> {
@@ -551,6 +645,8 @@ function fieldOf(fault: Fault): Field | null {
     case 'benchmark':
     case 'currency':
     case 'study':
+    case 'limits':
+    case 'trades':
     case 'table':
       return fault.where.argument
     case 'periods_per_year':

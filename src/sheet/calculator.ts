@@ -7,13 +7,16 @@ import {
   factorModel,
   Fault,
   jarqueBera,
+  leastVariance,
   mardia,
   matrixModel,
   pairwiseCovariance,
   partOf,
   repairCovariance,
   returnsModel,
+  riskBudgetWeights,
   shrinkageOf,
+  smallestChange,
 } from '../core'
 import type {
   Backtest,
@@ -21,13 +24,18 @@ import type {
   BlockNormality,
   BootstrapChoice,
   BootstrapResult,
+  BudgetWeights,
+  ChangeProblem,
+  ChangeResult,
   Condition,
   CovarianceRepair,
   Estimator,
   HistoryGroup,
+  LeastVariance,
   RiskModel,
   SeriesNormality,
   Shrinkage,
+  WeightBounds,
   Weighting,
 } from '../core'
 import type { FactsInput, SeriesFacts } from './checks'
@@ -176,6 +184,36 @@ const JOBS = {
   }): Generator<number, Backtest> {
     return yield* backtest(returns, dates, size, weights, choice)
   },
+
+  *'risk budgets'({
+    recipe,
+    budgets,
+  }: {
+    readonly recipe: ModelRecipe
+    readonly budgets: Float64Array
+  }): Generator<number, BudgetWeights> {
+    return yield* riskBudgetWeights(modelFrom(recipe), budgets)
+  },
+
+  *'least variance'({
+    recipe,
+    bounds,
+  }: {
+    readonly recipe: ModelRecipe
+    readonly bounds: WeightBounds
+  }): Generator<number, LeastVariance> {
+    return yield* leastVariance(modelFrom(recipe), bounds)
+  },
+
+  *'smallest change'({
+    recipe,
+    problem,
+  }: {
+    readonly recipe: ModelRecipe
+    readonly problem: ChangeProblem
+  }): Generator<number, ChangeResult> {
+    return yield* smallestChange(modelFrom(recipe), problem)
+  },
 }
 
 /** Products beyond which the test of all series together is left out: seconds in which nobody sees any figure. */
@@ -209,6 +247,9 @@ const WORDS: { readonly [K in JobKind]: string } = {
   'series facts': 'Looking over the returns',
   bootstrap: 'Running the bootstrap',
   'back-test': 'Going through time',
+  'risk budgets': 'Looking for weights of these risk budgets',
+  'least variance': 'Looking for the least variance',
+  'smallest change': 'Looking for the smallest change',
 }
 
 /** Where long computations run. `entry` wires a worker; without one they run here in slices. */

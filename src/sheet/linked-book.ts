@@ -13,6 +13,8 @@ import { explain } from './explain'
 import type { Finding } from './findings'
 import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
+import type { LimitsReading } from './limits'
+import { readLimits } from './limits'
 import type { Match } from './matching'
 import { matchHoldings } from './matching'
 import { checksTable } from './checks-table'
@@ -27,6 +29,8 @@ import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
 import type { BacktestChoice, BacktestStudy, Studies } from './studies'
 import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
+import type { Standing, TypedCells } from './trading'
+import { Trading } from './trading'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
 import { areaOfTable, WrittenTable } from './written-table'
@@ -45,6 +49,8 @@ export type Field =
   | 'benchmark'
   | 'tails'
   | 'study'
+  | 'limits'
+  | 'trades'
   | 'table'
 
 export type Status =
@@ -66,7 +72,7 @@ export interface Proposal {
   readonly accept: (work: Work) => Promise<void>
 }
 
-type Part = 'holdings' | 'returns' | 'factors' | 'table' | 'capital' | 'checks'
+type Part = 'holdings' | 'returns' | 'factors' | 'limits' | 'table' | 'capital' | 'checks'
 
 /** A block whose rows are dates. */
 type SeriesPart = 'returns' | 'factors'
@@ -105,6 +111,8 @@ export class LinkedBook {
   returns: ReturnsReading | null = null
   /** the returns of factors, where the book has such a block */
   factors: ReturnsReading | null = null
+  /** the table of limits, where the book has one */
+  limits: LimitsReading | null = null
   /** which series each holding goes with, as soon as both blocks are read */
   match: Match | null = null
   breakdown: Breakdown | null = null
@@ -112,6 +120,8 @@ export class LinkedBook {
   checks: readonly CheckLine[] | null = null
   /** what was computed at length about the figures that stand now */
   studies: Studies = NO_STUDIES
+  /** trades on the figures that stand now */
+  readonly trading: Trading
   status: Status = { kind: 'nothing linked' }
   faults: { readonly [F in Field]?: string } = {}
   proposals: readonly Proposal[] = []
@@ -123,7 +133,10 @@ export class LinkedBook {
   readonly unread: string | null
 
   #holdingsBlock: Block | null = null
+  /** what was typed in the cells of the holdings, when last looked at */
+  #typed: TypedCells | null = null
   #weightsAreFormulas = false
+  #limitsBlock: Block | null = null
   readonly #seriesAreFormulas = { returns: false, factors: false }
   #capitalArea: Area | null = null
   #capitalIsFormula = false
@@ -155,7 +168,9 @@ export class LinkedBook {
     readonly culture: Culture,
     readonly calculator: Calculator,
     saved?: Json,
+    onChange: () => void = () => undefined,
   ) {
+    this.trading = new Trading(workbook, culture, calculator, onChange)
     this.#table = new WrittenTable(workbook, this.keptName('table'), 'Risk')
     this.#checksList = new WrittenTable(workbook, this.keptName('checks'), 'Data checks')
     const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
@@ -196,7 +211,8 @@ export class LinkedBook {
       part !== null && part !== undefined && (area ? overlap(area, part) !== null : part.sheet === sheet)
     // any edit may be what the next recalculation comes from
     this.#unasked = 0
-    const holdings = touches(this.holdings?.area) || touches(this.#capitalArea)
+    const holdings =
+      touches(this.holdings?.area) || touches(this.#capitalArea) || touches(this.#limitsBlock?.area)
     const touched = (part: SeriesPart): boolean =>
       touches(this[part]?.area) || (this.#reading?.part === part && touches(this.#reading.area))
     const [returns, factors] = [touched('returns'), touched('factors')]
@@ -243,7 +259,14 @@ export class LinkedBook {
         (this.#reading?.part === part && this.#reading.area.sheet === sheet)
       )
         this.#changed[part] = true
-    const parts = [this.holdings?.area, this.returns?.area, this.factors?.area, this.table, this.#capitalArea]
+    const parts = [
+      this.holdings?.area,
+      this.returns?.area,
+      this.factors?.area,
+      this.#limitsBlock?.area,
+      this.table,
+      this.#capitalArea,
+    ]
     const concerned = this.linked && parts.some((part) => part?.sheet === sheet)
     if (concerned) this.#edits++
     return concerned
@@ -252,7 +275,7 @@ export class LinkedBook {
   // ---- reading
 
   /** Takes an area the user points at as the holdings or the returns. */
-  async take(part: 'holdings' | SeriesPart | 'capital', area: Area, work: Work): Promise<void> {
+  async take(part: 'holdings' | SeriesPart | 'limits' | 'capital', area: Area, work: Work): Promise<void> {
     if (part === 'capital') return this.#takeCapital(area, work)
     if (area.rows * area.columns === 1) {
       const [seen] = await this.workbook.look([{ at: area, region: true }])
@@ -277,10 +300,12 @@ export class LinkedBook {
     if (part === 'holdings') {
       const block = await this.workbook.read(area, { shape: true, signal: work.signal })
       if (this.holdings === null && this.title === `Book ${this.id}`) this.title = area.sheet
+      if (!sameArea(this.#holdingsBlock?.area ?? null, area)) this.trading.restart()
       this.#holdingsBlock = block
       this.#changed.holdings = false
       this.#readHoldings()
-    } else await this.#readSeries(part, area, work)
+    } else if (part === 'limits') return this.#takeLimits(area, work)
+    else await this.#readSeries(part, area, work)
     if (part === 'factors' && this.linked && this.settings.estimator.kind !== 'factors') {
       // no figure rests on them: the book stays as it is, and knows where they are
       this.#heedStops(part)
@@ -297,6 +322,34 @@ export class LinkedBook {
     this.factors = null
     if (this.linked) await this.#save({ [this.keptName('factors')]: null })
     if (this.settings.estimator.kind === 'factors') await this.choose({ estimator: { kind: 'sample' } }, work)
+  }
+
+  /** Takes an area as the table of limits: figures stay, and are held against them. */
+  async #takeLimits(area: Area, work: Work): Promise<void> {
+    this.#limitsBlock = await this.workbook.read(area, { shape: true, signal: work.signal })
+    this.#readLimits()
+    const stop = this.limits?.findings.find(({ weight }) => weight === 'stops')
+    if (this.linked) {
+      await this.#save({ [this.keptName('limits')]: area })
+      await this.refresh('compute', work)
+    } else if (this.breakdown) await this.compute(work)
+    else if (stop) throw new PlacedFault(stop, 'limits')
+  }
+
+  /** Lets go of the table of limits. */
+  async dropLimits(work: Work): Promise<void> {
+    this.#limitsBlock = null
+    this.limits = null
+    if (this.linked) {
+      await this.#save({ [this.keptName('limits')]: null })
+      await this.refresh('compute', work)
+    } else if (this.breakdown) await this.compute(work)
+  }
+
+  /** Reads the limits against the holdings there are; without holdings their names say nothing yet. */
+  #readLimits(): void {
+    this.limits =
+      this.#limitsBlock && this.holdings ? readLimits(this.#limitsBlock, this.holdings, this.culture) : null
   }
 
   async #takeCapital(area: Area, work: Work): Promise<void> {
@@ -330,6 +383,7 @@ export class LinkedBook {
   #readHoldings(): void {
     if (!this.#holdingsBlock) return
     this.holdings = readHoldings(this.#holdingsBlock, this.settings, this.culture)
+    this.#readLimits()
     this.#match()
   }
 
@@ -491,8 +545,8 @@ export class LinkedBook {
       const stop = findings.find(({ weight }) => weight === 'stops')
       if (stop) throw new PlacedFault(stop, field)
     }
-    const { factors } = this
-    const blocks = { match, holdings, returns, factors }
+    const { factors, limits } = this
+    const blocks = { match, holdings, returns, factors, limits }
     const wanted = modelChoices(this.settings)
     const choices = JSON.stringify(wanted)
     const known = this.#model
@@ -509,7 +563,48 @@ export class LinkedBook {
     this.breakdown = breakDown(blocks, book, this.settings, checks)
     if (known?.book !== book || !sameFigures(earlier, this.breakdown.decomposition))
       this.studies = afterChange(this.studies)
-    this.faults = {}
+    // a limit that cannot be read leaves the figures as good as they are
+    const stop = limits?.findings.find(({ weight }) => weight === 'stops')
+    this.faults = stop ? { limits: stop.sentence } : {}
+    await this.#standForTrades({ blocks, book, settings: this.settings, breakdown: this.breakdown }, work)
+  }
+
+  /** Figures stand whether or not series that are not held can be added to them. */
+  async #standForTrades(standing: Standing, work: Work): Promise<void> {
+    try {
+      await this.trading.stand(standing, this.#typed, work)
+    } catch (fault) {
+      if (!(fault instanceof Fault) || fault.code === 'cancelled') throw fault
+      this.faults = { ...this.faults, trades: explain(fault, () => '') }
+    }
+  }
+
+  /** Writes the weights of the list of trades to the sheet, and follows them. */
+  async applyTrades(replaceFormulas: boolean, work: Work): Promise<readonly Area[]> {
+    this.#heedBehind()
+    return this.#follow(await this.trading.apply(replaceFormulas), work)
+  }
+
+  /** Puts back what stood in the cells before. */
+  async undoTrades(work: Work): Promise<readonly Area[]> {
+    return this.#follow(await this.trading.undo(), work)
+  }
+
+  async #follow(areas: readonly Area[], work: Work): Promise<readonly Area[]> {
+    this.#edits++
+    await this.refresh('compute', work)
+    return areas
+  }
+
+  /** Trades are worked out from the weights of the sheet, so they wait until these are read. */
+  #heedBehind(): void {
+    if (!this.linked || (this.status.kind !== 'up to date' && this.status !== this.#tableStatus))
+      throw new Fault(
+        'changed',
+        'the figures are behind the sheet',
+        'Compute comes first; nothing was written',
+        { argument: 'trades' },
+      )
   }
 
   /** Draws the history anew, to see how sure the figures are. */
@@ -576,6 +671,7 @@ export class LinkedBook {
       [this.keptName('holdings')]: this.holdings?.area ?? null,
       [this.keptName('returns')]: this.returns?.area ?? null,
       [this.keptName('factors')]: this.factors?.area ?? null,
+      [this.keptName('limits')]: this.#limitsBlock?.area ?? null,
       [this.keptName('capital')]: this.#capitalArea,
     })
     this.linked = true
@@ -602,12 +698,13 @@ export class LinkedBook {
     if (cause === 'compute') this.#unasked = 0
     const edits = this.#edits
     const kept = (part: Part): { at: Area | { kept: string } } => ({ at: { kept: this.keptName(part) } })
-    const [holdings, returns, table, capital, factors] = await this.workbook.look([
+    const [holdings, returns, table, capital, factors, limits] = await this.workbook.look([
       { ...kept('holdings'), values: true, shape: true, formulas: true, region: true },
       { ...kept('returns'), region: true },
       { ...kept('table'), formulas: true },
       { ...kept('capital'), values: true, formulas: true },
       kept('factors'),
+      { ...kept('limits'), values: true, shape: true },
     ])
     if (!holdings) throw goneFault('holdings')
     if (!returns) throw goneFault('returns')
@@ -621,6 +718,7 @@ export class LinkedBook {
       )
 
     const before = this.#holdingsBlock
+    this.#typed = holdings.formulas ? { area: holdings.area, formulas: holdings.formulas } : null
     this.#weightsAreFormulas = holdings.formulas?.some((cells) => cells.some(isFormula)) ?? false
     const capitalValue = capital?.values ? numberInCell(capital.values[0]?.[0] ?? '', this.culture) : null
     const capitalMoved = capital !== null && capital !== undefined && capitalValue !== this.settings.capital
@@ -658,13 +756,9 @@ export class LinkedBook {
       }
       return
     }
-    const values = holdings.values ?? []
-    this.#holdingsBlock = {
-      area: holdings.area,
-      values,
-      ...(holdings.hiddenRows ? { hiddenRows: holdings.hiddenRows } : {}),
-      ...(holdings.merged ? { merged: holdings.merged } : {}),
-    }
+    this.#holdingsBlock = blockOf(holdings)
+    const limitsGone = limits === null && this.#limitsBlock !== null
+    this.#limitsBlock = limits ? blockOf(limits) : null
     this.#changed.holdings = false
     this.#readHoldings()
     if (!sameReturns) await this.#readSeries('returns', returns.area, work)
@@ -672,6 +766,12 @@ export class LinkedBook {
     else if (!sameFactors) await this.#readSeries('factors', factors.area, work)
     this.#table.area = table?.area ?? null
     await this.#compute(work)
+    if (limitsGone)
+      this.faults = {
+        ...this.faults,
+        limits:
+          'The table of limits is gone: its cells or its sheet were deleted. Select it again and use the selection.',
+      }
     this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
     if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
@@ -771,6 +871,7 @@ export class LinkedBook {
       ['holdings', this.holdings?.area],
       ['returns', this.returns?.area],
       ['factor returns', this.factors?.area],
+      ['limits', this.#limitsBlock?.area],
       ['capital', this.#capitalArea],
     ]
   }
@@ -782,7 +883,7 @@ export class LinkedBook {
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
   forget(): WritePlan {
-    const parts: Part[] = ['holdings', 'returns', 'factors', 'table', 'capital', 'checks']
+    const parts: Part[] = ['holdings', 'returns', 'factors', 'limits', 'table', 'capital', 'checks']
     return {
       patches: [],
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
@@ -836,9 +937,21 @@ export class LinkedBook {
 const isFormula = (value: CellValue): boolean =>
   typeof value === 'string' && value.startsWith('=') && value.length > 1
 
+const blockOf = ({ area, values, hiddenRows, merged }: Seen): Block => ({
+  area,
+  values: values ?? [],
+  ...(hiddenRows ? { hiddenRows } : {}),
+  ...(merged ? { merged } : {}),
+})
+
 const SERIES: readonly SeriesPart[] = ['returns', 'factors']
 
-const PART_WORDS = { holdings: 'holdings', returns: 'returns', factors: 'factor returns' } as const
+const PART_WORDS = {
+  holdings: 'holdings',
+  returns: 'returns',
+  factors: 'factor returns',
+  limits: 'limits',
+} as const
 
 const FACTOR_SETTINGS = { content: null, orientation: null, returnKind: 'simple' } as const
 

@@ -11,6 +11,8 @@ export const areaAt = (address: string): Area => {
 /** A workbook of plain arrays whose answers can be held back. Formulas are kept as typed beside the value they show. */
 export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
   const formulas = new Map<string, string>()
+  /** what each formula shows, as it was given */
+  const values = new Map<string, CellValue>()
   const names = new Map<string, Area>()
   const settings = new Map<string, Json>()
   const listeners = new Set<(event: WorkbookEvent) => void>()
@@ -44,6 +46,17 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
     const region = { ...area, rows: Math.max(area.rows, (sheets[area.sheet]?.length ?? 0) - area.row) }
     return { area, values: cellsOf(area), formulas: typedOf(area), region, protected: false }
   }
+  const put = (address: string, value: CellValue, formula?: string): void => {
+    const { sheet, row, column } = areaAt(address)
+    const cells = sheets[sheet]?.[row]
+    if (!cells) throw new Error(`no row at ${address}`)
+    cells[column] = value
+    if (formula === undefined) formulas.delete(`${sheet}/${row}/${column}`)
+    else {
+      formulas.set(`${sheet}/${row}/${column}`, formula)
+      values.set(formula, value)
+    }
+  }
   const port: Workbook = {
     culture: () => Promise.resolve({ decimal: '.', group: ',', dateOrder: 'ymd' }),
     selection: () => Promise.resolve(selected),
@@ -57,8 +70,17 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
       await step('look')
       return found
     },
-    async write({ patches, keep = {}, remember = {} }) {
+    async write({ patches, entries = [], keep = {}, remember = {} }) {
       await step('write')
+      for (const { at, seen: expected } of entries) {
+        const typed = typedOf(at)[0]?.[0]
+        if (typed !== expected)
+          throw new Fault(
+            'changed',
+            `${addressOf(at)} holds ${String(typed)}`,
+            `${String(expected)} was expected`,
+          )
+      }
       for (const { at, table, over, ours } of patches) {
         const target = { ...at, rows: table.cells.length, columns: table.widths.length }
         const foreign = cellsOf(target).some((row, r) =>
@@ -73,6 +95,10 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
         if (over === 'blank' && foreign)
           throw new Fault('occupied', `${addressOf(target)} is in the way`, 'an empty place is needed')
       }
+      for (const { at, value } of entries)
+        if (typeof value === 'string' && value.startsWith('='))
+          put(addressOf(at), values.get(value) ?? '', value)
+        else put(addressOf(at), value)
       for (const { at, table } of patches)
         table.cells.forEach((row, r) =>
           row.forEach(({ value }, c) => {
@@ -111,14 +137,6 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
   const tell = (event: WorkbookEvent): void => {
     for (const listener of listeners) listener(event)
   }
-  const put = (address: string, value: CellValue, formula?: string): void => {
-    const { sheet, row, column } = areaAt(address)
-    const cells = sheets[sheet]?.[row]
-    if (!cells) throw new Error(`no row at ${address}`)
-    cells[column] = value
-    if (formula === undefined) formulas.delete(`${sheet}/${row}/${column}`)
-    else formulas.set(`${sheet}/${row}/${column}`, formula)
-  }
   return {
     port,
     names,
@@ -153,6 +171,10 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
         release()
       }
     },
+    /** what cells show */
+    cells: (address: string) => cellsOf(areaAt(address)),
+    /** what was typed in cells: formulas where there are some */
+    typed: (address: string) => typedOf(areaAt(address)),
     valueAt: (address: string) => cellsOf(areaAt(address))[0]?.[0],
   }
 }

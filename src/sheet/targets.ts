@@ -1,0 +1,528 @@
+import { courseOf, Fault, financed } from '../core'
+import type { ChangeLimit, Financing as CoreFinancing, RiskModel } from '../core'
+import type { Calculator, Work } from './calculator'
+import type { Limit } from './limits'
+import { judgeLimits, LIMIT_MEASURES, limitOn } from './limits'
+import type { Profile } from './profile'
+import type { Financing, TradeGround } from './trades'
+import type { Standing } from './trading'
+import { countOf, listOf, numberText, percentText, quote } from './wording'
+
+/** What weights are looked for. Figures are scaled as the book's are. */
+export type Target =
+  /** the whole book larger or smaller until its volatility is this */
+  | { readonly kind: 'volatility'; readonly volatility: number }
+  /** a holding or a group smaller until its share of risk is this */
+  | { readonly kind: 'share'; readonly of: ShareOf; readonly share: number }
+  /** shares of risk alike: of holdings, or of the groups of a column and within each of its holdings */
+  | { readonly kind: 'risk budgets'; readonly by: 'holding' | { readonly header: string } }
+  | { readonly kind: 'least variance'; readonly lower: number; readonly upper: number }
+  /** all limits met with the smallest sum of changes */
+  | {
+      readonly kind: 'smallest change'
+      /** the most turnover, one way; null: any */
+      readonly turnover: number | null
+      /** whether the sum of the weights stays, or cash takes the difference */
+      readonly net: 'kept' | 'free'
+      readonly against: 'hard' | 'soft'
+    }
+
+export type ShareOf =
+  | { readonly kind: 'holding'; readonly key: string }
+  | { readonly kind: 'group'; readonly header: string; readonly label: string }
+
+/** What a search found: weights to look at, never a thing to do. */
+export interface Proposal {
+  readonly title: string
+  /** whether the weights reach what was asked for */
+  readonly met: boolean
+  readonly sentence: string
+  /** how they were found */
+  readonly method: string
+  /** label, figure and what it means */
+  readonly lines: readonly (readonly [label: string, figure: string, meaning: string])[]
+}
+
+export interface ProposedWeights {
+  readonly proposal: Proposal
+  /** by key, where they are not those of the sheet */
+  readonly weights: ReadonlyMap<string, number>
+}
+
+/** Decimals of a percentage by which a figure can be seen to be the one asked for. */
+const SHARE_DIGITS = 4
+
+/**
+ * Looks for the weights of a target.
+ *
+ * @param financing of the list of trades: what takes the difference where a target leaves one
+ * @throws Fault "out-of-range" | "missing" for a target that makes no sense for this book; those of the solvers; "cancelled"
+ */
+export async function proposalFor(
+  target: Target,
+  ground: TradeGround,
+  standing: Standing,
+  financing: Financing,
+  calculator: Calculator,
+  work: Work,
+): Promise<ProposedWeights> {
+  const search = new Search(ground, standing, financing)
+  switch (target.kind) {
+    case 'volatility':
+      return search.volatility(target.volatility)
+    case 'share':
+      return search.share(target.of, target.share)
+    case 'risk budgets':
+      return search.riskBudgets(target.by, calculator, work)
+    case 'least variance':
+      return search.leastVariance(target, calculator, work)
+    case 'smallest change':
+      return search.smallestChange(target, calculator, work)
+  }
+}
+
+class Search {
+  readonly #ground: TradeGround
+  readonly #standing: Standing
+  readonly #financing: Financing
+  readonly #model: RiskModel
+  readonly #weights: Float64Array
+  readonly #profile: Profile
+  /** from a figure per period to the scale of the book */
+  readonly #scale: number
+
+  constructor(ground: TradeGround, standing: Standing, financing: Financing) {
+    this.#ground = ground
+    this.#standing = standing
+    this.#financing = financing
+    this.#model = ground.basis.model
+    this.#weights = Float64Array.from(ground.positions, ({ weight }) => weight)
+    this.#profile = ground.basis.profileOf(this.#weights)
+    this.#scale = Math.sqrt(ground.basis.periods)
+  }
+
+  // ---- along one line of weights, in closed form
+
+  volatility(wanted: number): ProposedWeights {
+    if (!(wanted > 0))
+      throw outOfRange(`a volatility of ${percentText(wanted, 2)}`, 'a volatility above 0% is needed')
+    const { positions } = this.#ground
+    const payer = this.#payer()
+    const direction = this.#weights.map((weight, i) => (i === payer ? 0 : weight))
+    if (payer !== null) direction[payer] = -direction.reduce((sum, weight) => sum + weight, 0)
+    const course = courseOf(this.#model, this.#weights, direction)
+    const { at } = course.volatilityReach(wanted / this.#scale)
+    const t = at.filter((root) => root > -1).sort((a, b) => Math.abs(a) - Math.abs(b))[0]
+    const paidBy =
+      payer === null
+        ? 'cash takes the difference'
+        : `${quote(positions[payer]?.name ?? '')} takes the difference`
+    const title = `Volatility of ${percentText(wanted, 2)}`
+    const method = `Every ${payer === null ? 'position' : 'other position'} larger or smaller in one proportion, in closed form; ${paidBy}.`
+    if (t === undefined)
+      return this.#none(
+        title,
+        `No size of the book has a volatility of ${percentText(wanted, 2)} while ${paidBy}.`,
+        method,
+      )
+    const weights = course.weightsAt(t)
+    return this.#found(title, `Every position times ${numberText(1 + t, 4)}; ${paidBy}.`, method, weights, [
+      [
+        'Volatility',
+        percentText(this.#ground.basis.profileOf(weights).decomposition.volatility, SHARE_DIGITS),
+        `${percentText(wanted, SHARE_DIGITS)} was asked for.`,
+      ],
+    ])
+  }
+
+  share(of: ShareOf, wanted: number): ProposedWeights {
+    const { members, name } = this.#membersOf(of)
+    const now = this.#shareOf(this.#profile, members)
+    if (now === null) throw outOfRange('a book without risk', 'a book with risk is needed for shares of it')
+    const title = `Share of risk of ${name} at ${percentText(wanted, 2)}`
+    const method =
+      'The position smaller in one proportion until its share is met: the ratio of two quadratics in the size of the trade, solved in closed form.'
+    if (now <= wanted)
+      return this.#none(
+        title,
+        `The share of risk of ${name} is ${percentText(now, 2)} already.`,
+        method,
+        true,
+      )
+    const changes = new Float64Array(this.#weights.length)
+    for (const i of members) changes[i] = -(this.#weights[i] ?? 0)
+    const { changes: direction } = financed(this.#weights, changes, this.#coreFinancing())
+    const course = courseOf(this.#model, this.#weights, direction)
+    const { at } = course.sharesReach(members, wanted)
+    const t = at.filter((root) => root > 0 && root <= 1)[0]
+    if (t === undefined)
+      return this.#none(
+        title,
+        `No smaller size of ${name} brings its share of risk to ${percentText(wanted, 2)} with this financing.`,
+        method,
+      )
+    const weights = course.weightsAt(t)
+    const after = this.#ground.basis.profileOf(weights)
+    return this.#found(
+      title,
+      `${name} smaller by ${percentText(t, 2)} of itself; ${this.#paidBy()}.`,
+      method,
+      weights,
+      [
+        [
+          'Share of risk',
+          percentText(this.#shareOf(after, members) ?? NaN, SHARE_DIGITS),
+          `${percentText(wanted, SHARE_DIGITS)} was asked for, ${percentText(now, 2)} it is now.`,
+        ],
+        [
+          'Volatility',
+          percentText(after.decomposition.volatility, 2),
+          `${percentText(this.#profile.decomposition.volatility, 2)} now.`,
+        ],
+      ],
+    )
+  }
+
+  // ---- by a solver
+
+  async riskBudgets(
+    by: 'holding' | { readonly header: string },
+    calculator: Calculator,
+    work: Work,
+  ): Promise<ProposedWeights> {
+    const moving = this.#moving()
+    const total = moving.reduce((sum, i) => sum + this.#weights[i]!, 0)
+    if (!(total > 0))
+      throw outOfRange(
+        `weights that add up to ${percentText(total, 2)}`,
+        'a sum above 0% is needed for long-only weights',
+      )
+    const group = by === 'holding' ? null : this.#profile.groups.find(({ header }) => header === by.header)
+    if (group === undefined) throw outOfRange('no such group column', 'choose another column')
+    // one part for each holding, or one for each group that is shared by its members
+    const counts = new Map<number, number>()
+    for (const i of moving) {
+      const label = group?.groupOf[i] ?? i
+      counts.set(label, (counts.get(label) ?? 0) + 1)
+    }
+    const budgets = new Float64Array(this.#weights.length)
+    for (const i of moving) budgets[i] = 1 / counts.size / (counts.get(group?.groupOf[i] ?? i) ?? 1)
+    const result = await calculator.run('risk budgets', { recipe: this.#standing.book.recipe, budgets }, work)
+    const title = group ? `Equal risk contribution by ${group.header}` : 'Equal risk contribution'
+    const method = 'The convex form of Spinu (2013), minimised by Newton’s method; long-only.'
+    const { residual, converged, stopped, iterations } = result
+    const weights = this.#weights.slice()
+    for (const i of moving) weights[i] = (result.weights[i] ?? 0) * total
+    return this.#found(
+      title,
+      `Long-only weights of the ${countOf(moving.length, 'holding')} that move whose shares of risk are ${group ? `equal for each label of ${quote(group.header)}, and within it` : 'equal'}; their sum, ${percentText(total, 2)}, stays.`,
+      method,
+      weights,
+      [
+        this.#volatilityLine(weights),
+        [
+          'Largest miss of a budget',
+          residual.toExponential(1),
+          converged
+            ? `Converged after ${countOf(iterations, 'step')}.`
+            : `Not converged: ${stopped === 'riskless-mix' ? 'a long-only mix of these holdings has no risk in these dates, and budgets have no meaning beside it' : stopped === 'rounding' ? 'rounding left nothing to gain' : 'the bound on the work was reached'}.`,
+        ],
+      ],
+      converged,
+    )
+  }
+
+  async leastVariance(
+    { lower, upper }: { readonly lower: number; readonly upper: number },
+    calculator: Calculator,
+    work: Work,
+  ): Promise<ProposedWeights> {
+    if (!(lower <= upper))
+      throw outOfRange(
+        `weights from ${percentText(lower, 1)} to ${percentText(upper, 1)}`,
+        'a lower bound that is not above the upper one is needed',
+      )
+    const moving = this.#moving()
+    const isMoving = new Set(moving)
+    const bounded = (value: number): Float64Array =>
+      this.#weights.map((weight, i) => (isMoving.has(i) ? value : weight))
+    const total = moving.reduce((sum, i) => sum + this.#weights[i]!, 0)
+    const title = 'Minimum variance'
+    const method = `Primal active-set method on the covariance of the model; each weight from ${percentText(lower, 1)} to ${percentText(upper, 1)}, those that never move as they are.`
+    const result = await calculator.run(
+      'least variance',
+      {
+        recipe: this.#standing.book.recipe,
+        bounds: {
+          lower: bounded(lower),
+          upper: bounded(upper),
+          sum: this.#weights.reduce((sum, weight) => sum + weight, 0),
+        },
+      },
+      work,
+    )
+    if (!result.feasible)
+      return this.#none(
+        title,
+        `No weights within these bounds add up to ${percentText(total, 2)}: ${countOf(moving.length, 'holding')} reach ${percentText(lower * moving.length, 1)} to ${percentText(upper * moving.length, 1)}.`,
+        method,
+      )
+    const { weights, residual, converged, iterations } = result
+    return this.#found(
+      title,
+      `Weights of the ${countOf(moving.length, 'holding')} that move with the lowest volatility there is; their sum, ${percentText(total, 2)}, stays.`,
+      method,
+      weights,
+      [
+        this.#volatilityLine(weights),
+        [
+          'Conditions of a minimum',
+          residual.toExponential(1),
+          `${converged ? 'Met' : 'Not met to the digits wanted: the search ended before'}, after ${countOf(iterations, 'step')}; the largest departure, in units of a correlation.`,
+        ],
+      ],
+      converged,
+    )
+  }
+
+  async smallestChange(
+    target: Target & { readonly kind: 'smallest change' },
+    calculator: Calculator,
+    work: Work,
+  ): Promise<ProposedWeights> {
+    const { positions, limits } = this.#ground
+    if (limits.length === 0)
+      throw new Fault(
+        'missing',
+        'found no limits',
+        'select a table of limits, or give the holdings a limit column',
+        {
+          argument: 'trades',
+        },
+      )
+    const title = 'Smallest change that meets all limits'
+    const most = (limit: Limit): number =>
+      (target.against === 'soft' ? (limit.soft ?? limit.hard) : (limit.hard ?? limit.soft)) ?? Infinity
+    const lower = this.#weights.map((weight) => (weight > 0 ? 0 : -Infinity))
+    const upper = this.#weights.map((weight) => (weight > 0 ? Infinity : 0))
+    positions.forEach(({ candidate }, i) => {
+      // a series that was added is there to be bought
+      if (candidate) upper[i] = Infinity
+    })
+    const sought: { readonly limit: Limit; readonly as: ChangeLimit }[] = []
+    const left: Limit[] = []
+    for (const limit of limits) {
+      const [member] = limit.members ?? []
+      if (limit.measure === 'weight' && limit.scope === 'holding' && member !== undefined) {
+        lower[member] = Math.max(lower[member]!, -most(limit))
+        upper[member] = Math.min(upper[member]!, most(limit))
+      } else {
+        const as = this.#asChangeLimit(limit, most(limit))
+        if (as) sought.push({ limit, as })
+        else left.push(limit)
+      }
+    }
+    const payer = this.#payer()
+    const result = await calculator.run(
+      'smallest change',
+      {
+        recipe: this.#standing.book.recipe,
+        problem: {
+          weights: this.#weights,
+          limits: sought.map(({ as }) => as),
+          financing:
+            payer !== null
+              ? { kind: 'position', position: payer }
+              : { kind: target.net === 'kept' ? 'book' : 'cash' },
+          lower,
+          upper,
+          ...(this.#ground.benchmark ? { benchmark: this.#ground.benchmark } : {}),
+          ...(target.turnover === null ? {} : { turnover: target.turnover }),
+        },
+      },
+      work,
+    )
+    const { weights } = result
+    const after = this.#ground.basis.profileOf(weights)
+    const states = judgeLimits(
+      limits.map((limit) => ({ ...limit, soft: null, hard: most(limit) })),
+      after,
+      null,
+    )
+    const over = states.filter(({ status }) => status === 'breach')
+    const moved = weights.reduce((count, weight, i) => count + (weight === this.#weights[i] ? 0 : 1), 0)
+    const met = result.status === 'met' && over.length === 0
+    const paidBy =
+      payer !== null
+        ? `${quote(positions[payer]?.name ?? '')} takes the difference`
+        : target.net === 'kept'
+          ? 'the sum of the weights stays'
+          : 'cash takes the difference'
+    const ends = {
+      met: over.length > 0 ? 'Limits that are not part of the search are still over.' : result.note,
+      'not found': `No weights that meet all limits were found${result.proven ? ', and there are none' : ''}. ${result.note}`,
+      stopped: `The search ended before it was sure. ${result.note}`,
+    } as const
+    return this.#found(
+      title,
+      met
+        ? moved === 0
+          ? 'All limits hold at the weights in the sheet.'
+          : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(result.change, 2)} in all (turnover ${percentText(result.turnover, 2)} one way); ${paidBy}.`
+        : ends[result.status],
+      `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long and short stays short; ${paidBy}.`,
+      weights,
+      [
+        this.#volatilityLine(weights),
+        [
+          'Least change there can be',
+          percentText(result.leastPossible, 2),
+          result.proven && met
+            ? 'Proven: no smaller change meets the limits.'
+            : 'A bound from below: limits on shares of risk are not convex, so that a smaller change elsewhere is not ruled out.',
+        ],
+        ...states
+          .filter(({ status, used }) => status === 'breach' || (used ?? 0) > 1 - AT_LIMIT)
+          .map(({ limit, figure, most: limitOf, status }): readonly [string, string, string] => [
+            `${limitOn(limit)}: ${LIMIT_MEASURES[limit.measure].label.toLowerCase()}`,
+            figure === null ? 'not measured' : percentText(figure, SHARE_DIGITS),
+            `${status === 'breach' ? 'Over' : 'At'} the limit of ${percentText(limitOf, 2)}.`,
+          ]),
+        ...(left.length === 0
+          ? []
+          : [
+              [
+                'Not part of the search',
+                countOf(left.length, 'limit'),
+                `${listOf(left.map((limit) => `${limitOn(limit)}: ${LIMIT_MEASURES[limit.measure].label.toLowerCase()}`))}: judged afterwards.`,
+              ] as const,
+            ]),
+      ],
+      met,
+    )
+  }
+
+  /** A limit as the search takes it, per period; null where it takes none of that kind. */
+  #asChangeLimit({ measure, members, scope }: Limit, most: number): ChangeLimit | null {
+    const perPeriod = most / this.#scale
+    switch (measure) {
+      case 'weight':
+        return scope === 'group' ? { measure: 'weight', members, most } : null
+      case 'share of risk':
+        return { measure: 'share', members, most }
+      case 'contribution to risk':
+        return { measure: 'contribution', members, most: perPeriod }
+      case 'stand-alone risk':
+        return { measure: 'stand-alone', members, most: perPeriod }
+      case 'volatility':
+        return { measure: 'volatility', members: null, most: perPeriod }
+      case 'tracking error':
+        return this.#ground.benchmark ? { measure: 'tracking error', members: null, most: perPeriod } : null
+      case 'value at risk':
+      case 'expected shortfall': {
+        // under these methods a tail is a multiple of the volatility, whatever the weights
+        const { method } = this.#standing.settings.tails
+        const tails =
+          method.kind === 'normal' || (method.kind === 'student' && method.degrees !== null)
+            ? this.#profile.tails()
+            : null
+        const figure = measure === 'value at risk' ? tails?.valueAtRisk : tails?.shortfall
+        return figure
+          ? {
+              measure: 'volatility',
+              members: null,
+              most: (most / figure) * (this.#profile.decomposition.volatility / this.#scale),
+            }
+          : null
+      }
+    }
+  }
+
+  // ---- what the searches share
+
+  /** Positions that have risk; those without are left as they are. */
+  #moving(): readonly number[] {
+    const moving = [...this.#weights.keys()].filter((i) => (this.#ground.basis.volatilities[i] ?? 0) > 0)
+    if (moving.length === 0) throw outOfRange('no holding that moves', 'at least one is needed')
+    return moving
+  }
+
+  #payer(): number | null {
+    const financing = this.#financing
+    if (financing.kind !== 'position') return null
+    const i = this.#ground.positions.findIndex(({ key }) => key === financing.key)
+    if (i < 0) throw outOfRange(`no holding ${quote(financing.key)}`, 'choose what pays for the trades')
+    return i
+  }
+
+  #coreFinancing(): CoreFinancing {
+    const payer = this.#payer()
+    return payer === null
+      ? { kind: this.#financing.kind === 'pro rata' ? 'pro rata' : 'cash' }
+      : { kind: 'position', position: payer }
+  }
+
+  #paidBy(): string {
+    const { positions } = this.#ground
+    const payer = this.#payer()
+    if (payer !== null) return `${quote(positions[payer]?.name ?? '')} takes the difference`
+    return this.#financing.kind === 'pro rata'
+      ? 'the rest of the book takes the difference in proportion to its weights'
+      : 'cash takes the difference'
+  }
+
+  #membersOf(of: ShareOf): { members: readonly number[]; name: string } {
+    const { positions } = this.#ground
+    if (of.kind === 'holding') {
+      const i = positions.findIndex(({ key }) => key === of.key)
+      if (i < 0) throw outOfRange(`no holding ${quote(of.key)}`, 'choose a holding of the book')
+      return { members: [i], name: quote(of.key) }
+    }
+    const group = this.#profile.groups.find(({ header }) => header === of.header)
+    const g = group?.labels.indexOf(of.label) ?? -1
+    if (!group || g < 0) throw outOfRange(`no group ${quote(of.label)}`, 'choose a group of the book')
+    return {
+      members: [...group.groupOf.keys()].filter((i) => group.groupOf[i] === g),
+      name: quote(of.label),
+    }
+  }
+
+  #shareOf({ decomposition: { share } }: Profile, members: readonly number[]): number | null {
+    return share && members.reduce((sum, i) => sum + (share[i] ?? 0), 0)
+  }
+
+  #volatilityLine(weights: Float64Array): readonly [string, string, string] {
+    const volatility = this.#ground.basis.profileOf(weights).decomposition.volatility
+    return [
+      'Volatility',
+      percentText(volatility, 2),
+      `${percentText(this.#profile.decomposition.volatility, 2)} at the weights in the sheet.`,
+    ]
+  }
+
+  #found(
+    title: string,
+    sentence: string,
+    method: string,
+    weights: Float64Array,
+    lines: Proposal['lines'],
+    met = true,
+  ): ProposedWeights {
+    const changed = new Map<string, number>()
+    this.#ground.positions.forEach(({ key }, i) => {
+      const weight = weights[i] ?? 0
+      if (weight !== this.#weights[i]) changed.set(key, weight)
+    })
+    return { proposal: { title, met, sentence, method, lines }, weights: changed }
+  }
+
+  #none(title: string, sentence: string, method: string, met = false): ProposedWeights {
+    return { proposal: { title, met, sentence, method, lines: [] }, weights: new Map() }
+  }
+}
+
+/** A limit used to within this part of it is told as one that binds. */
+const AT_LIMIT = 1e-6
+
+const outOfRange = (found: string, needed: string): Fault =>
+  new Fault('out-of-range', found, needed, { argument: 'trades' })

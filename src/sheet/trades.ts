@@ -1,0 +1,551 @@
+import { financed, firstOrder, turnover } from '../core'
+import type { Fault, Financing as CoreFinancing, FirstOrder } from '../core'
+import type { Area, CellValue, Culture } from './cells'
+import { addressOf } from './cells'
+import { attempt, explain } from './explain'
+import type { Expressions, Rule, RuleScope } from './expression'
+import { loadExpressions, plainNumber } from './expression'
+import type { HoldingsReading } from './holdings'
+import type { Limit, LimitState } from './limits'
+import { judgeLimits } from './limits'
+import { plainName } from './names'
+import type { Profile, ProfileBasis } from './profile'
+import type { Proposal } from './targets'
+import { countOf, listOf, percentText, quote } from './wording'
+
+/** What pays for a trade: cash (nothing else moves), the rest of the book in proportion, or one position by its key. */
+export type Financing =
+  | { readonly kind: 'cash' }
+  | { readonly kind: 'pro rata' }
+  | { readonly kind: 'position'; readonly key: string }
+
+/** What a number or an expression typed for a position means. */
+export type Entry = 'new weight' | 'change'
+
+/** A sentence about a typed text, and the place in it (from 0) where it applies. */
+export interface TextFault {
+  readonly sentence: string
+  readonly column: number | null
+}
+
+/** A holding, or a series that is not held and may be traded. */
+export interface Position {
+  /** its name; the second of the same name has a number behind it */
+  readonly key: string
+  readonly name: string
+  readonly groups: readonly string[]
+  readonly candidate: boolean
+  readonly weight: number
+  readonly amount: number | null
+  readonly limit: number | null
+  readonly benchmark: number | null
+  /** where its weight stands; null for a candidate */
+  readonly cell: Area | null
+}
+
+export interface TradeLine {
+  readonly key: string
+  readonly name: string
+  readonly groups: readonly string[]
+  readonly candidate: boolean
+  /** the weight compared from */
+  readonly before: number
+  /** the weight in the sheet */
+  readonly sheet: number
+  /** the weight with the trades; that of the sheet where they cannot be worked out */
+  readonly after: number
+  readonly typed: { readonly entry: Entry; readonly text: string } | null
+  readonly fault: TextFault | null
+  /** what moved it last */
+  readonly origin: 'none' | 'sheet' | 'typed' | 'rule' | 'proposal' | 'financing'
+}
+
+/** Two sets of weights of one book, side by side. */
+export interface Comparison {
+  readonly before: Profile
+  readonly after: Profile
+  readonly limitsBefore: readonly LimitState[]
+  readonly limitsAfter: readonly LimitState[]
+  /** what the sensitivities before the trades foretell, scaled as the profiles are; null where there was no risk before */
+  readonly firstOrder: FirstOrder | null
+  /** one way: the larger of what is bought and what is sold */
+  readonly turnover: number
+  readonly netChange: number
+}
+
+/** One cell that applying the trades would change. */
+export interface WriteLine {
+  readonly area: Area
+  readonly name: string
+  readonly from: number
+  readonly to: number
+  /** the formula that would give way to a number */
+  readonly formula: string | null
+}
+
+export interface WritePreview {
+  readonly lines: readonly WriteLine[]
+  /** why nothing can be written, each a sentence */
+  readonly refusals: readonly string[]
+  /** whether the cells hold weights, or amounts of money */
+  readonly unit: 'weight' | 'amount'
+}
+
+export interface TradesState {
+  /** holdings in their order, then candidates */
+  readonly lines: readonly TradeLine[]
+  readonly rule: { readonly text: string; readonly fault: TextFault | null }
+  readonly financing: Financing
+  readonly financingFault: string | null
+  /** or why there is nothing to compare */
+  readonly comparison: Comparison | string
+  readonly preview: WritePreview
+  readonly proposal: Proposal | null
+  /** whether anything is typed or proposed that is not in the sheet */
+  readonly pending: boolean
+  /** what Undo would take back, or null */
+  readonly applied: string | null
+  /** series of returns that could be added */
+  readonly candidates: readonly string[]
+  /** what has to be said about the comparison */
+  readonly notes: readonly string[]
+  /** whether expressions are still being loaded */
+  readonly loading: boolean
+}
+
+/** A change to the list of trades; what is absent stays. An empty text takes the line away. */
+export interface TradeChange {
+  readonly line?: { readonly key: string; readonly entry: Entry; readonly text: string }
+  readonly rule?: string
+  readonly financing?: Financing
+}
+
+/** What a list of trades stands on; a new object whenever any of it changes. */
+export interface TradeGround {
+  readonly holdings: HoldingsReading
+  /** whether amounts are divided by their own sum, so that it must not change */
+  readonly bySum: boolean
+  readonly positions: readonly Position[]
+  readonly basis: ProfileBasis
+  readonly limits: readonly Limit[]
+  /** benchmark weights of the positions, where the benchmark is a column of the holdings */
+  readonly benchmark: Float64Array | null
+  /** what is typed in the cell of a weight, where it is a formula */
+  readonly formulaOf: (cell: Area) => string | null
+  readonly candidates: readonly string[]
+}
+
+interface Typed {
+  readonly entry: Entry
+  readonly text: string
+}
+
+/** Changes of a sum of weights below this are rounding. */
+const ROUNDING = 1e-9
+
+const NOTHING_DIFFERS = 'No weight differs from those compared from.'
+
+/** Holdings, and after them the candidates, as trades know them. */
+export function positionsOf(holdings: HoldingsReading, held: number): readonly Position[] {
+  const seen = new Map<string, number>()
+  return holdings.holdings.map(({ name, groups, weight, amount, limit, benchmark, cell }, i) => {
+    const count = (seen.get(name) ?? 0) + 1
+    seen.set(name, count)
+    const candidate = i >= held
+    const key = count === 1 ? name : `${name} (${count})`
+    return { key, name, groups, candidate, weight, amount, limit, benchmark, cell: candidate ? null : cell }
+  })
+}
+
+/**
+ * The list of trades of one book, before anything is written: what is typed line by line, a rule for all holdings, what a search proposed, and
+ * what pays for them. Edits of weights in the sheet since the comparison began are in it too.
+ */
+export class Trades {
+  readonly #culture: Culture
+  readonly #onLoaded: () => void
+  readonly #typed = new Map<string, Typed>()
+  #rule = ''
+  #financing: Financing = { kind: 'cash' }
+  #proposal: { readonly what: Proposal; readonly weights: Map<string, number> } | null = null
+  /** the weights compared from, by key; null: none yet */
+  #before: ReadonlyMap<string, number> | null = null
+  #expressions: Expressions | null = null
+  #loading = false
+  #loadFault: string | null = null
+  #known: { readonly ground: TradeGround; readonly state: TradesState } | null = null
+  #profiles: { readonly ground: TradeGround; readonly sheet: Profile } | null = null
+  #beforeProfile: { readonly ground: TradeGround; readonly weights: Float64Array; profile: Profile } | null =
+    null
+  applied: string | null = null
+
+  constructor(culture: Culture, onLoaded: () => void) {
+    this.#culture = culture
+    this.#onLoaded = onLoaded
+  }
+
+  edit({ line, rule, financing }: TradeChange): void {
+    if (line) {
+      this.#proposal?.weights.delete(line.key)
+      if (line.text.trim() === '') this.#typed.delete(line.key)
+      else this.#typed.set(line.key, { entry: line.entry, text: line.text })
+    }
+    if (rule !== undefined) {
+      this.#rule = rule
+      if (rule.trim() !== '') this.#proposal = null
+    }
+    if (financing) this.#financing = financing
+    this.#known = null
+  }
+
+  /** Takes a proposal into the list in place of what is typed. */
+  take(what: Proposal, weights: ReadonlyMap<string, number>): void {
+    this.discard()
+    this.#proposal = { what, weights: new Map(weights) }
+  }
+
+  /** Drops everything that is not in the sheet. */
+  discard(): void {
+    this.#typed.clear()
+    this.#rule = ''
+    this.#proposal = null
+    this.#known = null
+  }
+
+  /** The same, and the comparison begins with the next figures. */
+  restart(): void {
+    this.discard()
+    this.#financing = { kind: 'cash' }
+    this.#before = null
+  }
+
+  /** Drops what is typed for a position that is not there any more. */
+  forget(key: string): void {
+    this.#typed.delete(key)
+    this.#proposal?.weights.delete(key)
+    if (this.#financing.kind === 'position' && this.#financing.key === key) this.#financing = { kind: 'cash' }
+    this.#known = null
+  }
+
+  /** Begins the comparison with the first figures there are. */
+  beginAt(ground: TradeGround): void {
+    if (this.#before === null) this.compareFrom(ground)
+  }
+
+  /** Begins the comparison anew at the weights in the sheet. */
+  compareFrom(ground: TradeGround): void {
+    this.#before = new Map(ground.positions.map(({ key, weight }) => [key, weight]))
+    this.#known = null
+  }
+
+  /** To be called when something outside the list, such as what can be undone, has changed. */
+  touch(): void {
+    this.#known = null
+  }
+
+  get financing(): Financing {
+    return this.#financing
+  }
+
+  /** @cost one profile for every change of the list; two where the ground has changed */
+  stateOn(ground: TradeGround): TradesState {
+    if (this.#known?.ground === ground) return this.#known.state
+    const state = this.#work(ground)
+    this.#known = { ground, state }
+    return state
+  }
+
+  #sheetProfile(ground: TradeGround): Profile {
+    if (this.#profiles?.ground !== ground)
+      this.#profiles = {
+        ground,
+        sheet: ground.basis.profileOf(Float64Array.from(ground.positions, ({ weight }) => weight)),
+      }
+    return this.#profiles.sheet
+  }
+
+  #work(ground: TradeGround): TradesState {
+    const { positions } = ground
+    const before = Float64Array.from(positions, ({ key }) => this.#before?.get(key) ?? 0)
+    const wanted = this.#wanted(ground)
+    const paid = wanted.whole ? this.#finance(ground, wanted.changes) : { fault: null, changes: null }
+    const after = Float64Array.from(positions, ({ key, weight }, i) => {
+      const proposed = this.#proposal?.weights.get(key) ?? weight
+      return paid.changes ? proposed + (paid.changes[i] ?? 0) : weight
+    })
+    const lines = positions.map((position, i): TradeLine => {
+      const { key, name, groups, candidate, weight } = position
+      const typed = this.#typed.get(key) ?? null
+      const moved = (after[i] ?? 0) !== weight
+      return {
+        key,
+        name,
+        groups,
+        candidate,
+        before: before[i] ?? 0,
+        sheet: weight,
+        after: after[i] ?? 0,
+        typed,
+        fault: wanted.faults.get(key) ?? null,
+        origin: typed
+          ? 'typed'
+          : wanted.ruled.has(key)
+            ? 'rule'
+            : this.#proposal?.weights.has(key) && moved
+              ? 'proposal'
+              : moved
+                ? 'financing'
+                : weight !== before[i]
+                  ? 'sheet'
+                  : 'none',
+      }
+    })
+    const why = wanted.whole
+      ? paid.fault
+      : (wanted.ruleFault?.sentence ?? 'A line cannot be read yet; its sentence stands with it.')
+    return {
+      lines,
+      rule: { text: this.#rule, fault: wanted.ruleFault },
+      financing: this.#financing,
+      financingFault: paid.fault,
+      comparison: why ?? this.#compare(ground, before, after),
+      preview: this.#preview(ground, after, why),
+      proposal: this.#proposal?.what ?? null,
+      pending: this.#typed.size > 0 || this.#rule.trim() !== '' || this.#proposal !== null,
+      applied: this.applied,
+      candidates: ground.candidates,
+      notes: this.#gone(ground),
+      loading: this.#loading,
+    }
+  }
+
+  /** Changes wished for by rule and by line, before anything is financed; 0 where a position is left alone. */
+  #wanted(ground: TradeGround): {
+    changes: Float64Array
+    faults: ReadonlyMap<string, TextFault>
+    ruled: ReadonlySet<string>
+    ruleFault: TextFault | null
+    whole: boolean
+  } {
+    const { positions } = ground
+    const changes = new Float64Array(positions.length)
+    const faults = new Map<string, TextFault>()
+    const ruled = new Set<string>()
+    let ruleFault: TextFault | null = null
+    let whole = true
+
+    const ruleText = this.#rule.trim() === '' ? null : this.#rule
+    const rule = ruleText === null ? null : this.#readRule(ruleText)
+    if (rule === 'loading') whole = false
+    else if (rule?.fault) {
+      ruleFault = rule.fault
+      whole = false
+    } else if (rule) {
+      positions.forEach((position, i) => {
+        if (position.candidate || this.#typed.has(position.key)) return
+        const { value, fault } = attempt(() => rule.rule.evaluate(this.#scope(ground, i)))
+        if (fault) {
+          faults.set(position.key, textFault(fault))
+          whole = false
+        } else if (value !== position.weight) {
+          changes[i] = value - position.weight
+          ruled.add(position.key)
+        }
+      })
+    }
+
+    positions.forEach((position, i) => {
+      const typed = this.#typed.get(position.key)
+      if (!typed) return
+      const value = this.#valueOf(typed, ground, i)
+      if (typeof value === 'number') changes[i] = typed.entry === 'change' ? value : value - position.weight
+      else {
+        whole = false
+        if (value !== 'loading') faults.set(position.key, value)
+      }
+    })
+    return { changes, faults, ruled, ruleFault, whole }
+  }
+
+  /** The number a line says, the fault in it, or that expressions are not there yet. */
+  #valueOf({ text }: Typed, ground: TradeGround, i: number): number | TextFault | 'loading' {
+    const plain = plainNumber(text, this.#culture)
+    if (plain) {
+      // in a cell formatted as a percentage 5 is 5%, in others it is 500%: nobody but the user knows which is meant
+      if (!plain.percent && Math.abs(plain.value) >= 1)
+        return {
+          sentence: `Found ${text.trim()}: write ${text.trim()}% for that many parts in a hundred of capital, or ${percentText(plain.value, 0)} if that is meant.`,
+          column: 0,
+        }
+      return plain.value
+    }
+    const read = this.#readRule(text)
+    if (read === 'loading') return read
+    if (read.fault) return read.fault
+    const { value, fault } = attempt(() => read.rule.evaluate(this.#scope(ground, i)))
+    return fault ? textFault(fault) : value
+  }
+
+  #readRule(text: string): { rule: Rule; fault?: undefined } | { fault: TextFault } | 'loading' {
+    if (this.#loadFault !== null) return { fault: { sentence: this.#loadFault, column: null } }
+    const expressions = this.#expressions
+    if (!expressions) {
+      this.#load()
+      return 'loading'
+    }
+    const { value, fault } = attempt(() => expressions.read(text, this.#culture))
+    return fault ? { fault: textFault(fault) } : { rule: value }
+  }
+
+  #load(): void {
+    if (this.#loading) return
+    this.#loading = true
+    const settled = (): void => {
+      this.#loading = false
+      this.#known = null
+      this.#onLoaded()
+    }
+    loadExpressions().then(
+      (expressions) => {
+        this.#expressions = expressions
+        settled()
+      },
+      () => {
+        this.#loadFault =
+          'The part that reads expressions could not be loaded; numbers and percentages can be typed.'
+        settled()
+      },
+    )
+  }
+
+  #scope(ground: TradeGround, i: number): RuleScope {
+    const { decomposition: d } = this.#sheetProfile(ground)
+    const position = ground.positions[i]
+    return {
+      weight: position?.weight ?? 0,
+      amount: position?.amount ?? null,
+      risk_share: d.share?.[i] ?? null,
+      contribution: d.contribution[i] ?? null,
+      marginal: d.marginal?.[i] ?? null,
+      volatility: ground.basis.volatilities[i] ?? 0,
+      beta: d.beta?.[i] ?? null,
+      limit: position?.limit ?? null,
+      benchmark: position?.benchmark ?? null,
+      group: position?.groups[0] ?? null,
+    }
+  }
+
+  #finance(
+    ground: TradeGround,
+    changes: Float64Array,
+  ): { changes: Float64Array; fault: null } | { changes: null; fault: string } {
+    const { positions } = ground
+    const weights = Float64Array.from(
+      positions,
+      ({ key, weight }) => this.#proposal?.weights.get(key) ?? weight,
+    )
+    const financing = this.#coreFinancing(positions)
+    if (typeof financing === 'string') return { changes: null, fault: financing }
+    const { value, fault } = attempt(() => financed(weights, changes, financing))
+    return fault
+      ? { changes: null, fault: explain(fault, () => '') }
+      : { changes: value.changes, fault: null }
+  }
+
+  #coreFinancing(positions: readonly Position[]): CoreFinancing | string {
+    const financing = this.#financing
+    if (financing.kind !== 'position') return financing
+    const position = positions.findIndex(({ key }) => key === financing.key)
+    return position < 0
+      ? `${quote(financing.key)} was to pay for the trades and is not there any more: choose what pays for them.`
+      : { kind: 'position', position }
+  }
+
+  #compare(ground: TradeGround, before: Float64Array, after: Float64Array): Comparison | string {
+    if (after.every((weight, i) => weight === before[i])) return NOTHING_DIFFERS
+    const { basis, limits } = ground
+    const known = this.#beforeProfile
+    const same = known?.ground === ground && known.weights.every((weight, i) => weight === before[i])
+    const first = same ? known.profile : basis.profileOf(before)
+    if (!same) this.#beforeProfile = { ground, weights: before, profile: first }
+    const second = basis.profileOf(after)
+    return {
+      before: first,
+      after: second,
+      limitsBefore: judgeLimits(limits, first, null),
+      limitsAfter: judgeLimits(limits, second, null),
+      firstOrder: firstOrder(first.decomposition, second.decomposition),
+      turnover: turnover(after.map((weight, i) => weight - (before[i] ?? 0))),
+      netChange: second.net - first.net,
+    }
+  }
+
+  #preview(ground: TradeGround, after: Float64Array, why: string | null): WritePreview {
+    const { positions, holdings, bySum } = ground
+    const unit = holdings.capital === null ? 'weight' : 'amount'
+    const capital = holdings.capital ?? 1
+    const refusals: string[] = why === null ? [] : [why]
+    const lines = positions.flatMap(({ name, weight, cell }, i): WriteLine[] => {
+      const to = after[i] ?? 0
+      if (to === weight) return []
+      if (cell === null) {
+        refusals.push(
+          `${quote(name)} has no row in ${addressOf(holdings.area)}: insert one with its name and a weight of 0 there first.`,
+        )
+        return []
+      }
+      return [
+        {
+          area: cell,
+          name,
+          from: weight * capital,
+          to: digitsOf(to * capital),
+          formula: ground.formulaOf(cell),
+        },
+      ]
+    })
+    const net = positions.reduce((sum, { weight }, i) => sum + (after[i] ?? 0) - weight, 0)
+    if (bySum && lines.length > 0 && Math.abs(net) > ROUNDING)
+      refusals.push(
+        `Amounts are divided by their own sum, which these trades would change by ${percentText(net, 2)}, and every weight with it: point at the cell of the capital, or let the book pay for the trades.`,
+      )
+    return { lines, refusals, unit }
+  }
+
+  /** Holdings compared from that are not in the book any more. */
+  #gone({ positions }: TradeGround): readonly string[] {
+    const here = new Set(positions.map(({ key }) => key))
+    const gone = [...(this.#before ?? [])].flatMap(([key, weight]) =>
+      here.has(key) || weight === 0 ? [] : [`${quote(key)} (${percentText(weight, 2)})`],
+    )
+    return gone.length === 0
+      ? []
+      : [
+          `${listOf(gone)} ${gone.length === 1 ? 'was' : 'were'} held when the comparison began and ${gone.length === 1 ? 'is' : 'are'} not in the holdings now: the figures before are those without.`,
+        ]
+  }
+}
+
+const textFault = (fault: Fault): TextFault => ({
+  sentence: explain(fault, () => ''),
+  column: fault.code === 'expression' ? (fault.where.column ?? null) : null,
+})
+
+/** The key of a position by the name a user knows it by. */
+export const keyOf = (positions: readonly Position[], name: string): string | null =>
+  positions.find(({ key }) => plainName(key) === plainName(name))?.key ?? null
+
+/** As many digits as a cell shows and keeps. */
+const digitsOf = (value: number): number => Number(value.toPrecision(15))
+
+/** What was written to cells, so that it can be taken back. */
+export interface Applied {
+  readonly key: string
+  /** as it was typed before: a formula where there was one */
+  readonly was: CellValue
+  readonly now: number
+}
+
+/** What Undo would do, as a sentence. */
+export const appliedText = (count: number): string =>
+  `${countOf(count, 'weight')} written to the sheet by Apply; Undo puts back what stood there.`

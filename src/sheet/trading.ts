@@ -1,0 +1,276 @@
+import { Fault } from '../core'
+import type { Blocks, BookModel } from './book-model'
+import { modelChoices, modelOf } from './book-model'
+import type { Breakdown } from './breakdown'
+import type { Calculator, Work } from './calculator'
+import { unheldSeries, withCandidates } from './candidates'
+import type { Area, CellValue, Culture } from './cells'
+import { addressOf, sameArea } from './cells'
+import { plainName } from './names'
+import { profileBasis } from './profile'
+import type { Settings } from './settings'
+import type { Target } from './targets'
+import { proposalFor } from './targets'
+import type { Applied, TradeChange, TradeGround, TradesState } from './trades'
+import { appliedText, positionsOf, Trades } from './trades'
+import type { Workbook } from './workbook'
+import { listOf, quote } from './wording'
+
+/** What stands when a list of trades is worked out: the blocks, with the series that may be traded, and the model over them. */
+export interface Standing {
+  readonly blocks: Blocks
+  readonly book: BookModel
+  readonly settings: Settings
+  readonly breakdown: Breakdown
+}
+
+/** The cells of the holdings as they were typed when last looked at. */
+export interface TypedCells {
+  readonly area: Area
+  readonly formulas: readonly (readonly CellValue[])[]
+}
+
+/**
+ * The trades of one book from the first keystroke to the cells: the list, the series added to it, what a search proposes, writing the weights,
+ * and taking that back. Nothing of it is saved with the workbook.
+ */
+export class Trading {
+  readonly #list: Trades
+  readonly #workbook: Workbook
+  readonly #calculator: Calculator
+  #candidates: readonly string[] = []
+  #wide: { readonly base: BookModel; readonly names: string; readonly book: BookModel } | null = null
+  /** the figures as the book has them */
+  #given: Standing | null = null
+  /** the same with the candidates */
+  #standing: Standing | null = null
+  #ground: TradeGround | null = null
+  #typed: TypedCells | null = null
+  #applied: readonly Applied[] = []
+
+  constructor(workbook: Workbook, culture: Culture, calculator: Calculator, onChange: () => void) {
+    this.#workbook = workbook
+    this.#calculator = calculator
+    this.#list = new Trades(culture, onChange)
+  }
+
+  /** null until there are figures */
+  get state(): TradesState | null {
+    return this.#ground && this.#list.stateOn(this.#ground)
+  }
+
+  /** What the list stands on; null until there are figures. */
+  get standing(): Standing | null {
+    return this.#standing
+  }
+
+  get ground(): TradeGround | null {
+    return this.#ground
+  }
+
+  /**
+   * Takes the figures of the book as they stand now.
+   *
+   * @param typed what is typed in the cells of the holdings; null where they were not looked at
+   * @throws Fault those of the model with the candidates; "cancelled"
+   */
+  async stand(standing: Standing, typed: TypedCells | null, work: Work): Promise<void> {
+    const { blocks, book, settings } = standing
+    this.#given = standing
+    this.#typed = typed
+    const wide = withCandidates(blocks, this.#candidates, settings)
+    const names = wide.holdings.holdings.slice(blocks.holdings.holdings.length).map(({ name }) => name)
+    this.#candidates = names
+    if (names.length === 0) return this.#standOn(blocks, book)
+    try {
+      this.#standOn(wide, await this.#wideModel(wide, book, settings, names, work))
+    } catch (fault) {
+      // the holdings are traded on without them
+      this.#candidates = []
+      this.#standOn(blocks, book)
+      throw fault
+    }
+  }
+
+  #standOn(blocks: Blocks, book: BookModel): void {
+    const { breakdown, settings, blocks: own } = this.#asked()
+    const positions = positionsOf(blocks.holdings, own.holdings.holdings.length)
+    this.#standing = { blocks, book, settings, breakdown }
+    this.#ground = {
+      holdings: own.holdings,
+      bySum: own.holdings.capital !== null && settings.capital === null,
+      positions,
+      basis: profileBasis(blocks, book, settings),
+      limits: breakdown.limits.map(({ limit }) => limit),
+      benchmark:
+        settings.benchmark.kind === 'column' && positions.some(({ benchmark }) => (benchmark ?? 0) !== 0)
+          ? Float64Array.from(positions, ({ benchmark }) => benchmark ?? 0)
+          : null,
+      formulaOf: (cell) => {
+        const text = this.#typedIn(cell)
+        return typeof text === 'string' && text.startsWith('=') && text.length > 1 ? text : null
+      },
+      candidates: unheldSeries(blocks),
+    }
+    this.#list.beginAt(this.#ground)
+  }
+
+  /** Begins anew with another block of holdings. */
+  restart(): void {
+    this.#candidates = []
+    this.#applied = []
+    this.#list.restart()
+    this.#tell()
+  }
+
+  async #wideModel(
+    wide: Blocks,
+    base: BookModel,
+    settings: Settings,
+    names: readonly string[],
+    work: Work,
+  ): Promise<BookModel> {
+    const key = names.join('\n')
+    const known = this.#wide
+    if (known?.base === base && known.names === key) return known.book
+    const stop = wide.match.findings.find(({ weight }) => weight === 'stops')
+    if (stop) throw new Fault('unmatched', stop.sentence, '', { argument: 'trades' })
+    const book = await modelOf(wide, modelChoices(settings), this.#calculator, work, 'model alone')
+    this.#wide = { base, names: key, book }
+    return book
+  }
+
+  #typedIn(cell: Area): CellValue | undefined {
+    const { area, formulas } = this.#typed ?? {}
+    return area?.sheet === cell.sheet
+      ? formulas?.[cell.row - area.row]?.[cell.column - area.column]
+      : undefined
+  }
+
+  // ---- the list
+
+  edit(change: TradeChange): void {
+    this.#list.edit(change)
+  }
+
+  discard(): void {
+    this.#list.discard()
+  }
+
+  compareFromHere(): void {
+    if (this.#ground) this.#list.compareFrom(this.#ground)
+  }
+
+  /** Adds a series that is not held; takes it off again where no model can be made with it. */
+  async addCandidate(name: string, work: Work): Promise<void> {
+    const given = this.#asked()
+    const earlier = this.#candidates
+    if (!earlier.some((other) => plainName(other) === plainName(name))) this.#candidates = [...earlier, name]
+    try {
+      await this.stand(given, this.#typed, work)
+    } catch (fault) {
+      this.#candidates = earlier
+      throw fault
+    }
+  }
+
+  async dropCandidate(name: string, work: Work): Promise<void> {
+    const given = this.#asked()
+    this.#candidates = this.#candidates.filter((other) => other !== name)
+    this.#list.forget(name)
+    await this.stand(given, this.#typed, work)
+  }
+
+  #asked(): Standing {
+    if (this.#given) return this.#given
+    throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'trades' })
+  }
+
+  /** Looks for weights that reach a target and puts them into the list in place of what is typed. */
+  async propose(target: Target, work: Work): Promise<void> {
+    this.#asked()
+    if (!this.#ground || !this.#standing) return
+    const { proposal, weights } = await proposalFor(
+      target,
+      this.#ground,
+      this.#standing,
+      this.#list.financing,
+      this.#calculator,
+      work,
+    )
+    this.#list.take(proposal, weights)
+  }
+
+  // ---- the cells
+
+  /**
+   * Writes the weights of the list into the cells of the holdings, all or none.
+   *
+   * @returns the cells written
+   * @throws Fault the first reason why they cannot be; those of the workbook
+   */
+  async apply(replaceFormulas: boolean): Promise<readonly Area[]> {
+    const state = this.state
+    const { holdings, positions } = this.#ground ?? {}
+    if (!state || !holdings || !positions) throw this.#asked()
+    const { lines, refusals } = state.preview
+    const [refusal] = refusals
+    if (refusal !== undefined)
+      throw new Fault('selection', refusal.replace(/\.$/, ''), 'nothing was written', { argument: 'trades' })
+    if (lines.length === 0)
+      throw new Fault('missing', 'no weight differs from the sheet', 'there is nothing to write', {
+        argument: 'trades',
+      })
+    const formulas = lines.filter(({ formula }) => formula !== null)
+    if (formulas.length > 0 && !replaceFormulas)
+      throw new Fault(
+        'occupied',
+        `found ${formulas.length === 1 ? 'a formula' : 'formulas'} in ${listOf(formulas.map(({ area }) => addressOf(area)))}`,
+        'say that numbers may take their place',
+        { argument: 'trades' },
+      )
+    const entries = lines.map(({ area, to }) => ({ at: area, value: to, seen: this.#typedIn(area) ?? '' }))
+    await this.#workbook.write({ patches: [], entries })
+    this.#applied = entries.map(({ at, value, seen }) => ({
+      key: positions.find(({ cell }) => sameArea(cell, at))?.key ?? '',
+      was: seen,
+      now: value,
+    }))
+    this.#list.discard()
+    this.#tell()
+    return lines.map(({ area }) => area)
+  }
+
+  /**
+   * Puts back what stood in the cells before the last Apply, formulas included; refuses where one of them was edited since.
+   *
+   * @returns the cells written
+   */
+  async undo(): Promise<readonly Area[]> {
+    const { positions } = this.#ground ?? {}
+    if (!positions || this.#applied.length === 0)
+      throw new Fault('missing', 'nothing was applied', 'there is nothing to take back', {
+        argument: 'trades',
+      })
+    const entries = this.#applied.map(({ key, was, now }) => {
+      const cell = positions.find((position) => position.key === key)?.cell
+      if (!cell)
+        throw new Fault(
+          'missing',
+          `${quote(key)} is not in the holdings any more`,
+          'its weight cannot be put back, and nothing was',
+          { argument: 'trades' },
+        )
+      return { at: cell, value: was, seen: now }
+    })
+    await this.#workbook.write({ patches: [], entries })
+    this.#applied = []
+    this.#tell()
+    return entries.map(({ at }) => at)
+  }
+
+  #tell(): void {
+    this.#list.applied = this.#applied.length === 0 ? null : appliedText(this.#applied.length)
+    this.#list.touch()
+  }
+}

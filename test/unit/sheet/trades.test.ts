@@ -1,0 +1,394 @@
+/**
+ * A list of trades from the first key to the cells, over a workbook of plain arrays. Figures are held against the definition worked out loop by
+ * loop, from numbers made here for these tests alone.
+ */
+import type { Books, CellValue, Comparison, TradesState } from '../../../src/sheet'
+import { openBooks } from '../../../src/sheet'
+import { plainWorkbook } from './plain-workbook'
+
+const NAMES = ['Meadow', 'Orchard', 'Mill', 'Quarry', 'Ferry']
+const WEEKS = 120
+const value = (t: number, i: number): number =>
+  Number((0.02 * Math.sin(1 + 1.7 * t + 2.3 * i * i + 0.1 * t * i) + 0.01 * Math.sin(t * t)).toFixed(6))
+const ROWS = Array.from({ length: WEEKS }, (_, t) => NAMES.map((_, i) => value(t, i)))
+const RETURNS: CellValue[][] = [
+  ['Week', ...NAMES],
+  ...ROWS.map((row, t): CellValue[] => [45000 + 7 * t, ...row]),
+]
+const HOLDINGS: CellValue[][] = [
+  ['Holding', 'Class', 'Weight', 'Limit on share of risk'],
+  ['Meadow', 'Land', 0.4, 0.3],
+  ['Orchard', 'Land', 0.3, 0.5],
+  ['Mill', 'Works', 0.2, 0.5],
+  ['Quarry', 'Works', 0.1, 0.5],
+]
+const LIMITS: CellValue[][] = [
+  ['Scope', 'Name', 'Measure', 'Soft', 'Hard'],
+  ['Class', 'Land', 'Weight', 0.5, 0.6],
+  ['Total', '', 'Volatility', '', 0.5],
+]
+
+/** The oracle: volatility a year and contributions by the definition, divisor T - 1. */
+function riskOf(weights: readonly number[]): { volatility: number; contributions: number[] } {
+  const means = NAMES.map((_, i) => ROWS.reduce((sum, row) => sum + (row[i] ?? 0), 0) / WEEKS)
+  const covariance = (i: number, j: number): number =>
+    ROWS.reduce((sum, row) => sum + ((row[i] ?? 0) - means[i]!) * ((row[j] ?? 0) - means[j]!), 0) /
+    (WEEKS - 1)
+  const marginals = weights.map((_, i) => weights.reduce((sum, w, j) => sum + w * covariance(i, j), 0))
+  const variance = weights.reduce((sum, w, i) => sum + w * marginals[i]!, 0) * 52
+  return {
+    volatility: Math.sqrt(variance),
+    contributions: weights.map((w, i) => (w * marginals[i]! * 52) / Math.sqrt(variance)),
+  }
+}
+
+const running: Books[] = []
+afterEach(async () => {
+  for (const books of running.splice(0)) await books.close()
+})
+
+async function desk(holdings: CellValue[][] = HOLDINGS) {
+  const workbook = plainWorkbook({
+    Book: holdings.map((row) => [...row]),
+    Returns: RETURNS.map((row) => [...row]),
+    Limits: LIMITS.map((row) => [...row]),
+  })
+  const books = await openBooks(workbook.port)
+  running.push(books)
+  const take = async (field: 'holdings' | 'returns' | 'limits', address: string): Promise<void> => {
+    workbook.select(address)
+    await books.takeSelection(field)
+  }
+  await take('holdings', `Book!A1:D${holdings.length}`)
+  await take('returns', `Returns!A1:F${WEEKS + 1}`)
+  await books.compute()
+  const quiet = async () => {
+    do await new Promise((resolve) => setTimeout(resolve, 150))
+    while (books.state().working)
+    return books.state()
+  }
+  const trades = (): TradesState => {
+    const state = books.state().trades
+    if (!state) throw new Error('no trades')
+    return state
+  }
+  const comparison = (): Comparison => {
+    const found = trades().comparison
+    if (typeof found === 'string') throw new Error(found)
+    return found
+  }
+  /** Types an expression, and waits for what reads it. */
+  const settled = async (): Promise<TradesState> => {
+    while (trades().loading) await new Promise((resolve) => setTimeout(resolve, 5))
+    return trades()
+  }
+  const line = (key: string, text: string, entry: 'new weight' | 'change' = 'new weight'): void => {
+    books.trade({ line: { key, entry, text } })
+  }
+  const after = (): number[] => trades().lines.map((each) => each.after)
+  const weights = (): CellValue[] => workbook.cells('Book!C2:C5').flat()
+  return { ...workbook, books, take, quiet, trades, comparison, settled, line, after, weights }
+}
+
+const closeTo = (actual: ArrayLike<number>, expected: readonly number[], digits = 12): void => {
+  expect(actual).toHaveLength(expected.length)
+  expected.forEach((each, i) => {
+    expect(actual[i]).toBeCloseTo(each, digits)
+  })
+}
+
+describe('A list of trades', () => {
+  test('says that nothing differs before anything is typed, and writes nothing', async () => {
+    const { trades, books } = await desk()
+    expect(trades().comparison).toMatch(/No weight differs/)
+    expect(trades().preview).toEqual({ lines: [], refusals: [], unit: 'weight' })
+    expect(trades().pending).toBe(false)
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toMatch(/no weight differs from the sheet/i)
+  })
+
+  test('compares exact figures with those of the definition, and the first-order estimate with the sensitivities', async () => {
+    const { line, comparison, after } = await desk()
+    line('Meadow', '30%')
+    expect(after()).toEqual([0.3, 0.3, 0.2, 0.1])
+    const { before, after: then, firstOrder, turnover, netChange } = comparison()
+    const [was, is] = [riskOf([0.4, 0.3, 0.2, 0.1]), riskOf([0.3, 0.3, 0.2, 0.1])]
+    expect(before.decomposition.volatility).toBeCloseTo(was.volatility, 12)
+    expect(then.decomposition.volatility).toBeCloseTo(is.volatility, 12)
+    closeTo(then.decomposition.contribution, is.contributions)
+    // s + m'δ, the marginal contribution being contribution over weight
+    expect(firstOrder?.volatility).toBeCloseTo(was.volatility - (0.1 * (was.contributions[0] ?? 0)) / 0.4, 12)
+    expect(turnover).toBeCloseTo(0.1, 12)
+    expect(netChange).toBeCloseTo(-0.1, 12)
+    const land = then.groups[0]
+    expect(land?.contribution[0]).toBeCloseTo((is.contributions[0] ?? 0) + (is.contributions[1] ?? 0), 12)
+  })
+
+  test('takes a change as well as a new weight, and percentages as parts of a hundred', async () => {
+    const { line, after } = await desk()
+    line('Orchard', '-2%', 'change')
+    closeTo(after(), [0.4, 0.28, 0.2, 0.1])
+    line('Orchard', '0.25')
+    closeTo(after(), [0.4, 0.25, 0.2, 0.1])
+    line('Orchard', '')
+    closeTo(after(), [0.4, 0.3, 0.2, 0.1])
+  })
+
+  test('asks what a bare number of 1 or more means', async () => {
+    const { line, trades } = await desk()
+    line('Mill', '5')
+    expect(trades().lines[2]?.fault?.sentence).toMatch(/write 5%.*or 500%/)
+    expect(trades().comparison).toMatch(/cannot be read yet/)
+    expect(trades().preview.refusals).toHaveLength(1)
+  })
+
+  test('is paid for by the rest in proportion, or by one holding, as the user says', async () => {
+    const { books, line, after, trades } = await desk()
+    line('Quarry', '20%')
+    books.trade({ financing: { kind: 'pro rata' } })
+    // the others give up 10 points of 90
+    closeTo(after(), [0.4 * (8 / 9), 0.3 * (8 / 9), 0.2 * (8 / 9), 0.2])
+    expect(trades().lines.map(({ origin }) => origin)).toEqual([
+      'financing',
+      'financing',
+      'financing',
+      'typed',
+    ])
+    books.trade({ financing: { kind: 'position', key: 'Meadow' } })
+    closeTo(after(), [0.3, 0.3, 0.2, 0.2])
+    line('Meadow', '1%')
+    expect(trades().financingFault).not.toBeNull()
+    expect(trades().comparison).toBe(trades().financingFault)
+  })
+
+  test('works a rule out line by line, at the figures in the sheet, before anything is written', async () => {
+    const { books, settled, after, trades, calls } = await desk()
+    const before = calls.length
+    books.trade({ rule: 'risk_share > 30% ? weight * 30% / risk_share : weight' })
+    expect(trades().loading).toBe(true)
+    const { lines } = await settled()
+    const { volatility, contributions } = riskOf([0.4, 0.3, 0.2, 0.1])
+    closeTo(
+      after(),
+      [0.4, 0.3, 0.2, 0.1].map((w, i) => {
+        const share = contributions[i]! / volatility
+        return share > 0.3 ? (w * 0.3) / share : w
+      }),
+    )
+    expect(lines.filter(({ origin }) => origin === 'rule').length).toBeGreaterThan(0)
+    expect(calls.slice(before)).toEqual([])
+  })
+
+  test('points at the place in a rule that does not read, and at a line whose names have no value', async () => {
+    const { books, settled } = await desk()
+    books.trade({ rule: 'weight * size' })
+    const { rule } = await settled()
+    expect(rule.fault?.column).toBe(9)
+    books.trade({ rule: 'benchmark + 1%' })
+    const { lines, comparison } = await settled()
+    expect(lines.every(({ fault }) => fault !== null)).toBe(true)
+    expect(comparison).toMatch(/cannot be read yet/)
+  })
+
+  test('discarded, leaves no trace', async () => {
+    const { books, line, trades, cells } = await desk()
+    const [state, sheet] = [trades(), JSON.stringify(cells('Book!A1:D5'))]
+    line('Meadow', '30%')
+    books.trade({ rule: 'weight' })
+    books.discardTrades()
+    expect(trades()).toEqual(state)
+    expect(JSON.stringify(cells('Book!A1:D5'))).toBe(sheet)
+  })
+
+  test('has the weights that were edited in the sheet in it, and begins anew where the user says', async () => {
+    const { books, type, quiet, trades, comparison } = await desk()
+    type('Book!C2', 0.35)
+    await quiet()
+    expect(trades().lines[0]).toMatchObject({ before: 0.4, sheet: 0.35, after: 0.35, origin: 'sheet' })
+    expect(comparison().after.decomposition.volatility).toBeCloseTo(
+      riskOf([0.35, 0.3, 0.2, 0.1]).volatility,
+      12,
+    )
+    expect(trades().pending).toBe(false)
+    books.compareFromHere()
+    expect(trades().comparison).toMatch(/No weight differs/)
+  })
+})
+
+describe('Applying trades', () => {
+  test('writes the weights; figures follow; Undo puts back exactly what stood there', async () => {
+    const { books, line, weights, trades, comparison } = await desk()
+    line('Meadow', '33.3%')
+    line('Mill', '26.7%')
+    expect(trades().preview.lines).toMatchObject([
+      { name: 'Meadow', from: 0.4, to: 0.333, formula: null },
+      { name: 'Mill', from: 0.2, to: 0.267, formula: null },
+    ])
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toBeUndefined()
+    expect(weights()).toEqual([0.333, 0.3, 0.267, 0.1])
+    expect(books.state().status).toEqual({ kind: 'up to date' })
+    expect(books.state().breakdown?.decomposition.volatility).toBeCloseTo(
+      riskOf([0.333, 0.3, 0.267, 0.1]).volatility,
+      12,
+    )
+    // what is in the sheet now is still compared with where the comparison began
+    expect(trades().pending).toBe(false)
+    expect(comparison().before.decomposition.volatility).toBeCloseTo(
+      riskOf([0.4, 0.3, 0.2, 0.1]).volatility,
+      12,
+    )
+    expect(trades().applied).toMatch(/2 weights/)
+    await books.undoTrades()
+    expect(weights()).toEqual([0.4, 0.3, 0.2, 0.1])
+    expect(trades().applied).toBeNull()
+    expect(trades().comparison).toMatch(/No weight differs/)
+  })
+
+  test('refuses to take back what was edited since, saying which cell, and changes nothing', async () => {
+    const { books, line, type, quiet, weights, trades } = await desk()
+    line('Meadow', '30%')
+    line('Orchard', '40%')
+    await books.applyTrades({ replaceFormulas: false })
+    type('Book!C3', 0.41)
+    await quiet()
+    await books.undoTrades()
+    expect(books.state().faults.trades).toMatch(/Book!C3/)
+    expect(weights()).toEqual([0.3, 0.41, 0.2, 0.1])
+    expect(trades().applied).not.toBeNull()
+  })
+
+  test('puts a number in the place of a formula on the user’s word alone, and Undo brings the formula back', async () => {
+    const { books, line, put, typed, quiet, tell, weights, trades } = await desk()
+    put('Book!C2', 0.4, '=1-SUM(C3:C5)')
+    tell({ kind: 'edited', sheet: 'Book', area: null, ours: false })
+    await quiet()
+    line('Meadow', '35%')
+    expect(trades().preview.lines[0]?.formula).toBe('=1-SUM(C3:C5)')
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toMatch(/Book!C2/)
+    expect(weights()[0]).toBe(0.4)
+    await books.applyTrades({ replaceFormulas: true })
+    expect(weights()[0]).toBe(0.35)
+    await books.undoTrades()
+    expect(typed('Book!C2')[0]?.[0]).toBe('=1-SUM(C3:C5)')
+  })
+
+  test('writes amounts of money where the block holds them, and not where their sum would move', async () => {
+    const { books, line, trades, cells } = await desk([
+      ['Holding', 'Class', 'Amount', 'Limit on share of risk'],
+      ['Meadow', 'Land', 4000, 0.3],
+      ['Orchard', 'Land', 3000, 0.5],
+      ['Mill', 'Works', 2000, 0.5],
+      ['Quarry', 'Works', 1000, 0.5],
+    ])
+    line('Meadow', '30%')
+    expect(trades().preview).toMatchObject({ unit: 'amount', refusals: [/own sum/] })
+    books.trade({ financing: { kind: 'position', key: 'Quarry' } })
+    expect(trades().preview.refusals).toEqual([])
+    await books.applyTrades({ replaceFormulas: false })
+    expect(cells('Book!C2:C5').flat()).toEqual([3000, 3000, 2000, 2000])
+  })
+
+  test('changes nothing where the workbook refuses', async () => {
+    const { books, line, refused, weights, trades } = await desk()
+    const { Fault } = jest.requireActual<typeof import('../../../src/core')>('../../../src/core')
+    line('Meadow', '30%')
+    refused.set('write', new Fault('protected', 'the sheet is protected', 'unprotect it'))
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toMatch(/protected/)
+    expect(weights()).toEqual([0.4, 0.3, 0.2, 0.1])
+    expect(trades().lines[0]?.typed?.text).toBe('30%')
+  })
+})
+
+describe('A series that is not held', () => {
+  test('can be traded at weight 0, is compared, and asks for a row before it is written', async () => {
+    const { books, line, trades, comparison } = await desk()
+    expect(trades().candidates).toEqual(['Ferry'])
+    await books.addCandidate('Ferry')
+    expect(trades().candidates).toEqual([])
+    line('Ferry', '10%')
+    expect(comparison().after.decomposition.volatility).toBeCloseTo(
+      riskOf([0.4, 0.3, 0.2, 0.1, 0.1]).volatility,
+      12,
+    )
+    expect(trades().preview.refusals[0]).toMatch(/“Ferry” has no row/)
+    await books.dropCandidate('Ferry')
+    expect(trades().lines).toHaveLength(4)
+    expect(trades().comparison).toMatch(/No weight differs/)
+  })
+})
+
+describe('Looking for weights', () => {
+  test('of a volatility finds the size of the book that has it', async () => {
+    const { books, after, comparison } = await desk()
+    await books.propose({ kind: 'volatility', volatility: 0.05 })
+    expect(comparison().after.decomposition.volatility).toBeCloseTo(0.05, 12)
+    const factor = 0.05 / riskOf([0.4, 0.3, 0.2, 0.1]).volatility
+    closeTo(
+      after(),
+      [0.4, 0.3, 0.2, 0.1].map((w) => w * factor),
+    )
+  })
+
+  test.each(['cash', 'pro rata'] as const)(
+    'of a share of risk trims the holding to it (%s)',
+    async (kind) => {
+      const { books, after, comparison } = await desk()
+      books.trade({ financing: { kind } })
+      await books.propose({ kind: 'share', of: { kind: 'holding', key: 'Meadow' }, share: 0.3 })
+      const { volatility, contributions } = riskOf(after())
+      expect(contributions[0]! / volatility).toBeCloseTo(0.3, 10)
+      expect(comparison().after.net).toBeCloseTo(kind === 'cash' ? 0.6 + after()[0]! : 1, 10)
+    },
+  )
+
+  test('of equal risk contributions, by holding and by group, keeps the sum', async () => {
+    const { books, after, trades } = await desk()
+    await books.propose({ kind: 'risk budgets', by: 'holding' })
+    expect(trades().proposal?.met).toBe(true)
+    const each = riskOf(after())
+    closeTo(
+      each.contributions.map((c) => c / each.volatility),
+      [0.25, 0.25, 0.25, 0.25],
+      9,
+    )
+    await books.propose({ kind: 'risk budgets', by: { header: 'Class' } })
+    const grouped = riskOf(after())
+    closeTo(
+      grouped.contributions.map((c) => c / grouped.volatility),
+      [0.25, 0.25, 0.25, 0.25],
+      9,
+    )
+    expect(after().reduce((sum, w) => sum + w, 0)).toBeCloseTo(1, 12)
+  })
+
+  test('of least variance finds none calmer by small shifts within the bounds', async () => {
+    const { books, after } = await desk()
+    await books.propose({ kind: 'least variance', lower: 0, upper: 0.45 })
+    const least = after()
+    const { volatility } = riskOf(least)
+    for (let i = 0; i < 4; i++)
+      for (let j = 0; j < 4; j++) {
+        if (i === j || least[i]! < 1e-3 || least[j]! > 0.449) continue
+        const shifted = least.map((w, k) => w + (k === j ? 1e-3 : k === i ? -1e-3 : 0))
+        expect(riskOf(shifted).volatility).toBeGreaterThan(volatility)
+      }
+  })
+
+  test('that meet all limits with the smallest change meets them, and says what it did', async () => {
+    const { books, take, after, trades, comparison } = await desk()
+    await take('limits', 'Limits!A1:E3')
+    expect(books.state().breakdown?.limits.filter(({ status }) => status === 'breach')).toHaveLength(2)
+    await books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against: 'hard' })
+    expect(trades().proposal).toMatchObject({ met: true })
+    const { volatility, contributions } = riskOf(after())
+    expect(contributions[0]! / volatility).toBeLessThanOrEqual(0.3)
+    expect(after()[0]! + after()[1]!).toBeLessThanOrEqual(0.6)
+    expect(after().reduce((sum, w) => sum + w, 0)).toBeCloseTo(1, 12)
+    expect(comparison().limitsAfter.every(({ status }) => status !== 'breach')).toBe(true)
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().breakdown?.limits.some(({ status }) => status === 'breach')).toBe(false)
+  })
+})
