@@ -9,7 +9,7 @@ import {
   type Tails,
 } from '../sheet'
 import { ConfidenceEntry, Choice, Entry, typedNumber } from './controls'
-import { digitsFor, sharesOf } from './measure'
+import { digitsFor, pointsText, sharesOf } from './measure'
 import { NONE } from './positions'
 import { useBooks } from './store'
 import { Headline, Remark } from './headline'
@@ -109,11 +109,6 @@ function Parts({ breakdown, tails }: { breakdown: Breakdown; tails: Tails }) {
   const ofRisk = sharesOf(breakdown)
   const digits = digitsFor(breakdown.names.length)
   const order = [...parts.keys()].sort((a, b) => parts[b]! - parts[a]!)
-  const points = (i: number): string => {
-    if (!ofRisk) return NONE
-    const shown = percentText(shares[i]! - ofRisk[i]!, digits).replace('%', '')
-    return /[1-9]/.test(shown) && !shown.startsWith('\u2212') ? `+${shown}` : shown
-  }
   return (
     <>
       <FigureTable
@@ -130,7 +125,7 @@ function Parts({ breakdown, tails }: { breakdown: Breakdown; tails: Tails }) {
           cells: [
             ofRisk ? percentText(ofRisk[i]!, digits) : NONE,
             percentText(shares[i]!, digits),
-            points(i),
+            ofRisk ? pointsText(shares[i]! - ofRisk[i]!, digits) : NONE,
           ],
           open: opened.has(i),
           details: () => (

@@ -1,4 +1,4 @@
-import type { Bands, Breakdown } from '../sheet'
+import { percentText, type Bands, type Breakdown } from '../sheet'
 
 /** The figure that positions are ranked and drawn by. */
 export interface Measure {
@@ -13,6 +13,12 @@ export interface Measure {
 
 /** Decimals of a percentage: small parts of a large book need one more to be told apart. */
 export const digitsFor = (positions: number): number => (positions > 60 ? 2 : 1)
+
+/** A difference of two percentages, in points of a hundred, with its sign. */
+export function pointsText(difference: number, digits: number): string {
+  const shown = percentText(difference, digits).replace('%', '')
+  return /[1-9]/.test(shown) && difference > 0 ? `+${shown}` : shown
+}
 
 /** Shares of risk; contributions where shares are withheld or there is no risk to share. */
 export function measureOf(breakdown: Breakdown): Measure {

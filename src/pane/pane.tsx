@@ -22,7 +22,8 @@ import { StatusLine } from './status'
 import { BooksProvider, useBooks, useBooksState } from './store'
 import { useLook, type HostTheme } from './theme'
 
-// It lays out the table that it would write, and nobody begins with it.
+// Nobody begins with these.
+const TradesView = lazy(() => import('./trades'))
 const ReportView = lazy(() => import('./report'))
 
 /** What the pane asks of the host it stands in. */
@@ -91,7 +92,7 @@ const useStyles = makeStyles({
   version: { flexShrink: 0 },
 })
 
-const VIEWS = { data: 'Data', risk: 'Risk', report: 'Report' } as const
+const VIEWS = { data: 'Data', risk: 'Risk', trades: 'Trades', report: 'Report' } as const
 type View = keyof typeof VIEWS
 
 function BookPicker() {
@@ -194,7 +195,7 @@ function Views({ view, show }: { view: View; show: (view: View) => void }) {
       aria-label="Views"
       selectedValue={view}
       onTabSelect={(_, { value }) => {
-        if (value === 'data' || value === 'risk' || value === 'report') show(value)
+        if (value === 'data' || value === 'risk' || value === 'trades' || value === 'report') show(value)
       }}
       onKeyDown={step}
     >
@@ -250,11 +251,10 @@ function Pane({ version }: { version: string }) {
         >
           {view === 'data' && <DataView />}
           {view === 'risk' && <RiskView />}
-          {view === 'report' && (
-            <Suspense>
-              <ReportView />
-            </Suspense>
-          )}
+          <Suspense>
+            {view === 'trades' && <TradesView />}
+            {view === 'report' && <ReportView />}
+          </Suspense>
         </div>
       </main>
       <Messages />

@@ -8,7 +8,7 @@ import {
 } from '@fluentui/react-icons'
 import { percentText } from '../sheet'
 
-const useStyles = makeStyles({
+export const useTableStyles = makeStyles({
   table: {
     width: '100%',
     tableLayout: 'fixed',
@@ -20,7 +20,8 @@ const useStyles = makeStyles({
   },
   head: {
     position: 'sticky',
-    top: `calc(-1 * ${tokens.spacingVerticalL})`,
+    // below what a view keeps in sight above it
+    top: `calc(var(--kept-in-sight, 0px) - ${tokens.spacingVerticalL})`,
     zIndex: 1,
     backgroundColor: tokens.colorNeutralBackground1,
     borderBottom: `1px solid ${tokens.colorNeutralStrokeAccessible}`,
@@ -143,7 +144,7 @@ export function FigureTable({
   sorting?: Sorting
   sortBy?: (column: number) => void
 }) {
-  const classes = useStyles()
+  const classes = useTableStyles()
   const [limit, setLimit] = useState(STEP)
   const [reached, setReached] = useState<TableRow['key'] | null>(null)
   const shown = rows.slice(0, limit)
@@ -311,7 +312,7 @@ export function FigureTable({
 
 /** Labels and values, one pair a line. */
 export function Pairs({ pairs }: { pairs: readonly (readonly [label: string, value: string])[] }) {
-  const classes = useStyles()
+  const classes = useTableStyles()
   return (
     <dl className={classes.pairs}>
       {pairs.map(([label, value], index) => (
@@ -338,7 +339,7 @@ export function TieOut({
   total: string
   whole: number
 }) {
-  const classes = useStyles()
+  const classes = useTableStyles()
   return (
     <p className={classes.tie}>
       {parts} add up to {percentText(sum, 4)}, {total} {percentText(whole, 4)}, difference{' '}
