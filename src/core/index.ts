@@ -15,6 +15,14 @@ export {
   type MissingDates,
 } from './backtest'
 export { riskBudgetWeights, type BudgetWeights } from './budget'
+export {
+  LIMIT_MARGIN,
+  type ChangeFinancing,
+  type ChangeLimit,
+  type ChangeProblem,
+  type LimitMeasure,
+  type LimitResidual,
+} from './change-limits'
 export { currencySplit, type CurrencyPart, type CurrencySplit } from './currency'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
 export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
@@ -77,6 +85,7 @@ export {
   type UnsmoothedVolatility,
 } from './series'
 export { shrinkageOf, type Shrinkage, type ShrinkageTarget } from './shrinkage'
+export { smallestChange, type ChangeResult } from './smallest-change'
 export { conditionOf, type Condition } from './spectrum'
 export { inOneGo, partOf } from './steps'
 export {
