@@ -14,6 +14,7 @@ import type { Cause, Field, Proposal, Status } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
+import type { Scenario, StressComparison } from './stress'
 import type { BacktestChoice, Studies } from './studies'
 import type { Target } from './targets'
 import type { TradeChange, TradesState } from './trades'
@@ -98,6 +99,14 @@ export interface Books {
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
   /** Writes what was found about the data, cells as links, to a sheet of its own. */
   writeChecks(): Promise<void>
+  /** Writes the comparison of the trades to a sheet of its own. */
+  writeTrades(): Promise<void>
+  /** Writes scenarios side by side to a sheet of their own. */
+  writeStress(scenarios: readonly Scenario[]): Promise<void>
+  /** The book in scenarios, before and after the trades, at once; or why not. */
+  stressOf(scenarios: readonly Scenario[]): StressComparison | string
+  /** The stretch of so many dates with the largest loss at the weights in the sheet; or why there is none. */
+  worstStretch(dates: number): { readonly scenario: Scenario; readonly sentence: string } | string
   reveal(area: Area): Promise<void>
   addBook(): Promise<void>
   switchTo(id: string): Promise<void>
@@ -558,6 +567,28 @@ class OpenBooks implements Books {
       const area = await book.writeChecks(serialToday(), work)
       this.#notice = `Data checks written to ${addressOf(area)}. The list stays as it is until it is written again.`
     })
+  }
+
+  writeTrades(): Promise<void> {
+    return this.#command('trades', async (book) => {
+      const area = await book.writeTrades()
+      this.#notice = `Trades written to ${addressOf(area)}. The table stays as it is until it is written again.`
+    })
+  }
+
+  writeStress(scenarios: readonly Scenario[]): Promise<void> {
+    return this.#command('trades', async (book) => {
+      const area = await book.writeStress(scenarios)
+      this.#notice = `Scenarios written to ${addressOf(area)}. The table stays as it is until it is written again.`
+    })
+  }
+
+  stressOf(scenarios: readonly Scenario[]): StressComparison | string {
+    return this.#book.trading.stressOf(scenarios)
+  }
+
+  worstStretch(dates: number): ReturnType<Books['worstStretch']> {
+    return this.#book.trading.worstStretch(dates)
   }
 
   reveal(area: Area): Promise<void> {

@@ -26,6 +26,7 @@ import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
 import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
+import type { Scenario } from './stress'
 import type { BacktestChoice, BacktestStudy, Studies } from './studies'
 import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
@@ -72,7 +73,10 @@ export interface Proposal {
   readonly accept: (work: Work) => Promise<void>
 }
 
-type Part = 'holdings' | 'returns' | 'factors' | 'limits' | 'table' | 'capital' | 'checks'
+/** Tables on sheets of their own that stay as they are until they are written again. */
+type Apart = 'checks' | 'trades' | 'stress'
+
+type Part = 'holdings' | 'returns' | 'factors' | 'limits' | 'table' | 'capital' | Apart
 
 /** A block whose rows are dates. */
 type SeriesPart = 'returns' | 'factors'
@@ -154,7 +158,7 @@ export class LinkedBook {
     book: BookModel
   } | null = null
   readonly #table: WrittenTable
-  readonly #checksList: WrittenTable
+  readonly #apart: { readonly [P in Apart]: WrittenTable }
   readonly #inspection = new Inspection()
   #inspected: readonly unknown[] = []
   #unasked = 0
@@ -172,7 +176,11 @@ export class LinkedBook {
   ) {
     this.trading = new Trading(workbook, culture, calculator, onChange)
     this.#table = new WrittenTable(workbook, this.keptName('table'), 'Risk')
-    this.#checksList = new WrittenTable(workbook, this.keptName('checks'), 'Data checks')
+    this.#apart = {
+      checks: new WrittenTable(workbook, this.keptName('checks'), 'Data checks'),
+      trades: new WrittenTable(workbook, this.keptName('trades'), 'Trades'),
+      stress: new WrittenTable(workbook, this.keptName('stress'), 'Stress'),
+    }
     const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
     this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
     this.linked = entry !== null
@@ -856,12 +864,26 @@ export class LinkedBook {
         'holdings and returns without faults that stop are needed',
         { argument: 'table' },
       )
-    const table = checksTable(this.title, this.checks, this.breakdown, today)
-    const [earlier] = await this.workbook.look([{ at: { kept: this.keptName('checks') } }])
-    const list = this.#checksList
-    list.area = earlier?.area ?? null
-    const place = list.area ? 'where it was' : 'new sheet'
-    const area = await list.write(place, await list.corner(place), table, 'blank', this.#sources())
+    return this.#writeApart('checks', checksTable(this.title, this.checks, this.breakdown, today))
+  }
+
+  /** Writes the comparison of the trades to a sheet of its own. */
+  writeTrades(): Promise<Area> {
+    return this.#writeApart('trades', this.trading.tradesTable(this.title))
+  }
+
+  /** Writes scenarios side by side to a sheet of their own. */
+  writeStress(scenarios: readonly Scenario[]): Promise<Area> {
+    return this.#writeApart('stress', this.trading.stressTable(this.title, scenarios))
+  }
+
+  /** Writes a table that does not follow to a sheet of its own, where an earlier one of its kind gives way to it. */
+  async #writeApart(part: Apart, table: Table): Promise<Area> {
+    const [earlier] = await this.workbook.look([{ at: { kept: this.keptName(part) } }])
+    const written = this.#apart[part]
+    written.area = earlier?.area ?? null
+    const place = written.area ? 'where it was' : 'new sheet'
+    const area = await written.write(place, await written.corner(place), table, 'blank', this.#sources())
     this.kept = true
     return area
   }
@@ -883,7 +905,17 @@ export class LinkedBook {
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
   forget(): WritePlan {
-    const parts: Part[] = ['holdings', 'returns', 'factors', 'limits', 'table', 'capital', 'checks']
+    const parts: Part[] = [
+      'holdings',
+      'returns',
+      'factors',
+      'limits',
+      'table',
+      'capital',
+      'checks',
+      'trades',
+      'stress',
+    ]
     return {
       patches: [],
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),

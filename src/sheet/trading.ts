@@ -9,8 +9,13 @@ import { addressOf, sameArea } from './cells'
 import { plainName } from './names'
 import { profileBasis } from './profile'
 import type { Settings } from './settings'
+import type { Scenario, StressComparison } from './stress'
+import { stressInputs, stressOf, worstStretch } from './stress'
+import { stressTable } from './stress-table'
+import type { Table } from './table'
 import type { Target } from './targets'
 import { proposalFor } from './targets'
+import { tradesTable } from './trades-table'
 import type { Applied, TradeChange, TradeGround, TradesState } from './trades'
 import { appliedText, positionsOf, Trades } from './trades'
 import type { Workbook } from './workbook'
@@ -29,6 +34,8 @@ export interface TypedCells {
   readonly area: Area
   readonly formulas: readonly (readonly CellValue[])[]
 }
+
+const NOTHING_COMPUTED = 'Nothing is computed yet: Compute comes first.'
 
 /**
  * The trades of one book from the first keystroke to the cells: the list, the series added to it, what a search proposes, writing the weights,
@@ -199,6 +206,54 @@ export class Trading {
       work,
     )
     this.#list.take(proposal, weights)
+  }
+
+  // ---- questions about the figures that stand
+
+  /** The weights compared, before and, where trades change any, after. */
+  #compared(ground: TradeGround): { before: Float64Array; after: Float64Array | null } {
+    const { comparison } = this.#list.stateOn(ground)
+    return typeof comparison === 'string'
+      ? { before: Float64Array.from(ground.positions, ({ weight }) => weight), after: null }
+      : {
+          before: comparison.before.decomposition.weights,
+          after: comparison.after.decomposition.weights,
+        }
+  }
+
+  /** The book in scenarios, before and after the trades; or why not. */
+  stressOf(scenarios: readonly Scenario[]): StressComparison | string {
+    if (!this.#ground || !this.#standing) return NOTHING_COMPUTED
+    const { blocks, book, settings } = this.#standing
+    const { before, after } = this.#compared(this.#ground)
+    return stressOf(stressInputs(blocks, book, settings), scenarios, before, after)
+  }
+
+  /** The stretch of so many dates with the largest loss at the weights in the sheet; or why there is none. */
+  worstStretch(dates: number): ReturnType<typeof worstStretch> {
+    if (!this.#ground || !this.#standing) return NOTHING_COMPUTED
+    const { blocks, book, settings } = this.#standing
+    const weights = Float64Array.from(this.#ground.positions, ({ weight }) => weight)
+    return worstStretch(stressInputs(blocks, book, settings), weights, dates)
+  }
+
+  /** The comparison as a table to be written. */
+  tradesTable(title: string): Table {
+    const { breakdown } = this.#asked()
+    const table = this.state && tradesTable(title, this.state, breakdown)
+    if (table) return table
+    throw new Fault('missing', 'no weight differs from those compared from', 'there is nothing to write', {
+      argument: 'trades',
+    })
+  }
+
+  /** The book in scenarios as a table to be written. */
+  stressTable(title: string, scenarios: readonly Scenario[]): Table {
+    const { breakdown } = this.#asked()
+    const comparison = this.stressOf(scenarios)
+    if (typeof comparison === 'string')
+      throw new Fault('missing', comparison.replace(/\.$/, ''), 'nothing was written', { argument: 'trades' })
+    return stressTable(title, comparison, breakdown)
   }
 
   // ---- the cells
