@@ -213,7 +213,9 @@ export function worstStretch(
     })
   }
   if (length > dates) {
-    throw new Fault('too-few', `a stretch of ${length} dates`, `there are ${dates}`, { argument: 'length' })
+    throw new Fault('too-few', `a stretch of ${length} dates`, `the returns have ${dates}`, {
+      argument: 'length',
+    })
   }
   const { portfolio } = portfolioReturns(returns, dates, size, weights)
   let running = 0
