@@ -95,7 +95,8 @@ export function plainNumber(
   const size = numberIn(match[2] ?? '', decimal)
   if (size === null) return null
   const percent = match[3] === '%'
-  return { value: (match[1] === '-' && size !== 0 ? -size : size) / (percent ? 100 : 1), percent }
+  // + 0, here as in a rule: a minus zero would be shown as one
+  return { value: (match[1] === '-' ? -size : size) / (percent ? 100 : 1) + 0, percent }
 }
 
 // ---- the text, as tokens
@@ -112,6 +113,7 @@ interface Token {
 }
 
 const NUMBER = /\d(?:\d|[.,](?=\d))*(?:e[-+]?\d+)?|\.\d+(?:[.,]\d+)*(?:e[-+]?\d+)?/iy
+const COMMA_FIRST = /,\d+(?:e[-+]?\d+)?/iy
 const PERCENT = /[\p{Zs}\t]*%/uy
 const SPACE = /[\p{Zs}\t]+/uy
 const WORD = /[\p{L}_][\p{L}\p{M}\p{N}_]*/uy
@@ -168,12 +170,14 @@ function numberToken(typed: string, percent: string, column: number, decimal: st
     if (typed.includes(decimal === ',' ? '.' : ',')) {
       throw faultAt(
         column,
-        `${quote(typed)} can be read in more than one way`,
+        `found ${quote(typed)}, which can be read in more than one way`,
         decimal === ','
           ? 'a comma is needed before decimals, and no mark between thousands'
           : 'a point is needed before decimals, no mark between thousands, and a space after a comma between arguments',
       )
     }
+    if (Number(typed.replace(decimal, '.')) === Infinity)
+      throw faultAt(column, `${quote(typed)} is too large`, 'a smaller number is needed')
     throw faultAt(column, `${quote(typed)} is no number`, 'digits with one decimal mark at most are needed')
   }
   const code = typed.replace(decimal, '.')
@@ -223,7 +227,10 @@ function tokensOf(text: string, culture: Culture): Token[] {
     const start = column
     const rest = text.slice(start)
     let typed: string
-    if ((typed = next(NUMBER))) tokens.push(numberToken(typed, next(PERCENT), start, culture.decimal))
+    // a comma between two values is a wrong separator, not the beginning of a number
+    const number =
+      culture.decimal === ',' && !endsValue(tokens.at(-1)) && text[start] === ',' ? COMMA_FIRST : NUMBER
+    if ((typed = next(number))) tokens.push(numberToken(typed, next(PERCENT), start, culture.decimal))
     else if ((typed = next(WORD)))
       tokens.push(wordToken(typed, start, /^[\p{Zs}\t]*\(/u.test(text.slice(column))))
     else if ((typed = next(TEXT))) {
@@ -239,7 +246,7 @@ function tokensOf(text: string, culture: Culture): Token[] {
         'numbers, names, text in double quotes, + - * / ( ) ? : and comparisons are what a rule is made of',
       ]
       const found = pattern?.exec(rest)?.[0] ?? String.fromCodePoint(text.codePointAt(start) ?? 0)
-      throw faultAt(start, `found ${found.length > 1 ? quote(found) : shown(found)}`, needed)
+      throw faultAt(start, `found ${/^[!-~]+$/.test(found) ? quote(found) : shown(found)}`, needed)
     }
   }
   return tokens
@@ -356,7 +363,6 @@ function readRule(text: string, culture: Culture, parse: (code: string) => Node)
   const { meaning, labels } = meaningOf(parsed(code, tokens, parse), tokens)
   const result = numberOf(meaning)
   const names = tokens.flatMap((token) => (token.kind === 'name' ? [token.code as RuleName] : []))
-  // a minus zero would be shown as one
   return { names: [...new Set(names)], labels, evaluate: (scope) => result(scope) + 0 }
 }
 
