@@ -457,8 +457,11 @@ function coursesOf(model: RiskModel, weights: Float64Array, financing: Financing
   const saleUntilShort = w.map((weight) => (weight < 0 ? Infinity : weight))
   const purchaseUntilShort = new Float64Array(size).fill(Infinity)
   const blur = size * Number.EPSILON
-  /** a square that is rounding of its two sides: risk does not change along this course */
+  /** risk of the two sides of a unit, as if nothing between them cancelled */
+  const scale = variances.map(Math.sqrt)
+  // a square that is rounding of its two sides: risk does not change along this course
   const settle = (i: number, sides: number) => {
+    scale[i] = sides
     if (square[i]! > blur * sides * sides) return
     square[i] = 0
     across[i] = 0
@@ -474,32 +477,39 @@ function coursesOf(model: RiskModel, weights: Float64Array, financing: Financing
     unit[j] = 1
     const { marginals: column } = model.apply(unit)
     for (let i = 0; i < size; i++) {
-      across[i] = i === j ? NaN : g[i]! - g[j]!
-      square[i] = i === j ? NaN : variances[i]! + variances[j]! - 2 * column[i]!
+      across[i] = g[i]! - g[j]!
+      square[i] = variances[i]! + variances[j]! - 2 * column[i]!
       purchaseUntilShort[i] = w[j]! < 0 ? Infinity : w[j]!
       settle(i, Math.sqrt(variances[i]!) + Math.sqrt(variances[j]!))
     }
+    across[j] = square[j] = NaN
   } else {
-    let [long, short] = [0, 0]
-    for (const weight of w) {
-      if (weight > 0) long += weight
-      else short -= weight
-    }
+    const longOfOthers = sumOfOthers(w.map((weight) => Math.max(weight, 0)))
+    const shortOfOthers = sumOfOthers(w.map((weight) => Math.max(-weight, 0)))
     for (let i = 0; i < size; i++) {
       const weight = w[i]!
-      const restLong = long - Math.max(weight, 0)
-      const restShort = short - Math.max(-weight, 0)
+      const restLong = longOfOthers[i]!
+      const restShort = shortOfOthers[i]!
       const net = restLong - restShort
-      // subtracting leaves rounding of the whole where nothing else is held
-      const none = restLong + restShort <= blur * (long + short)
-      if (none || !canFinance(net, restLong + restShort)) {
+      if (!canFinance(net, restLong + restShort)) {
         across[i] = square[i] = NaN
         continue
       }
-      const restVariance = Math.max(variance - 2 * weight * g[i]! + weight * weight * variances[i]!, 0)
-      across[i] = g[i]! - (variance - weight * g[i]!) / net
-      square[i] = variances[i]! - (2 * (g[i]! - weight * variances[i]!)) / net + restVariance / (net * net)
-      settle(i, Math.sqrt(variances[i]!) + Math.sqrt(restVariance) / Math.abs(net))
+      const own = Math.abs(weight) * Math.sqrt(variances[i]!)
+      const restVariance = variance - 2 * weight * g[i]! + weight * weight * variances[i]!
+      if (restVariance > CANCELLED * (volatility + own) ** 2) {
+        across[i] = g[i]! - (variance - weight * g[i]!) / net
+        square[i] = variances[i]! - (2 * (g[i]! - weight * variances[i]!)) / net + restVariance / (net * net)
+        settle(i, Math.sqrt(variances[i]!) + (volatility + own) / Math.abs(net))
+      } else {
+        // the position is nearly all of the book's risk, or hedges nearly all of the others': what it leaves has to be asked for
+        const unit = new Float64Array(size)
+        unit[i] = 1
+        const direction = sideOf(model, financed(w, unit, financing).changes)
+        across[i] = dot(direction.values, g)
+        square[i] = direction.variance
+        settle(i, 2 * Math.sqrt(variances[i]!) + Math.sqrt(direction.variance))
+      }
       // a unit bought is financed by the rest's longs and shorts, which move against each other
       const [against, along] = net > 0 ? [restLong, restShort] : [restShort, restLong]
       perUnit[i] = Math.max(1 + along / Math.abs(net), against / Math.abs(net))
@@ -516,15 +526,14 @@ function coursesOf(model: RiskModel, weights: Float64Array, financing: Financing
     saleUntilShort,
     purchaseUntilShort,
     at(position, t) {
-      const twice = 2 * t * across[position]!
-      const last = t * t * square[position]!
-      const then = variance + twice + last
-      if (then > CANCELLED * (variance + Math.abs(twice) + last)) {
+      if (variance === 0 && t === 0) return { volatility: 0, change: 0 }
+      const difference = t * (2 * across[position]! + t * square[position]!)
+      const then = variance + difference
+      if (then > CANCELLED * (volatility + Math.abs(t) * scale[position]!) ** 2) {
         const after = Math.sqrt(then)
         // not after - volatility: a small position's change would be rounding
-        return { volatility: after, change: (twice + last) / (after + volatility) }
+        return { volatility: after, change: difference / (after + volatility) }
       }
-      if (variance + Math.abs(twice) + last === 0) return { volatility: 0, change: 0 }
       const wanted = new Float64Array(size)
       wanted[position] = t
       const { changes } = financed(w, wanted, financing)
@@ -535,6 +544,14 @@ function coursesOf(model: RiskModel, weights: Float64Array, financing: Financing
       return { volatility: after, change: after - volatility }
     },
   }
+}
+
+/** For each value the sum of all others, without subtracting it from the sum of all. */
+function sumOfOthers(values: Float64Array): Float64Array {
+  const sums = new Float64Array(values.length)
+  for (let i = 1, before = 0; i < values.length; i++) sums[i] = before += values[i - 1]!
+  for (let i = values.length - 2, after = 0; i >= 0; i--) sums[i]! += after += values[i + 1]!
+  return sums
 }
 
 /** What removing each position does to risk; n each, per period. */
