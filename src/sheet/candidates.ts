@@ -31,6 +31,7 @@ export function withCandidates(blocks: Blocks, names: readonly string[], setting
         benchmark: null,
         limit: null,
         expected: null,
+        budget: null,
         cell: returns.seriesCell(returns.names?.indexOf(series) ?? 0),
       },
     ]

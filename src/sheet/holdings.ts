@@ -29,6 +29,8 @@ export interface Holding {
   readonly limit: number | null
   /** expected return a year */
   readonly expected: number | null
+  /** target share of risk; null where the cell is blank or there is no such column */
+  readonly budget: number | null
   /** the cell of the weight, where faults about this holding point */
   readonly cell: Area
 }
@@ -57,6 +59,7 @@ const HEADER_SIGNS: readonly (readonly [Role, RegExp])[] = [
   ['ignore', /\b(active|change|trade|new|proposed|target|isin|sedol|cusip|id|code|price|quantity|units|shares held|date)\b/i],
   ['benchmark weight', /\b(benchmark|reference|index weight)\b/i],
   ['expected return', /\b(expected|forecast)\b/i],
+  ['risk budget', /\bbudgets?\b/i],
   ['weight', /\b(weights?|wgt|allocation|share of (capital|assets|portfolio)|% of (capital|assets|portfolio|nav))\b|^%$/i],
   ['exposure', /\b(exposure|notional)\b/i],
   ['amount', /\b(amount|market value|value|balance|holding value|position value)\b/i],
@@ -75,6 +78,7 @@ const SINGLE: ReadonlySet<Role> = new Set([
   'benchmark weight',
   'limit',
   'expected return',
+  'risk budget',
 ])
 
 /** A currency is a label that holdings share, so its column groups them as well. */
@@ -316,6 +320,7 @@ export function readHoldings(
     readonly benchmark: number | null
     readonly limit: number | null
     readonly expected: number | null
+    readonly budget: number | null
   }
   const rows: Row[] = []
   const totals: number[] = []
@@ -399,6 +404,7 @@ export function readHoldings(
       benchmark,
       limit: number(row, columnOf('limit'), 'a limit'),
       expected: number(row, columnOf('expected return'), 'an expected return'),
+      budget: number(row, columnOf('risk budget'), 'a risk budget'),
     })
   }
   findings.push(...firstAndCount(faults, 'cells'))
@@ -435,17 +441,20 @@ export function readHoldings(
   const divisor = capital ?? 1
   const label = (row: number, column: number): string =>
     String(filledDown.get(`${row},${column}`) ?? values[row]?.[column] ?? '').trim()
-  const holdings: Holding[] = rows.map(({ row, name, measure, amount, benchmark, limit, expected }) => ({
-    name,
-    weight: measure / divisor,
-    amount,
-    groups: groupColumns.map((column) => label(row, column)),
-    currency: currencyColumn < 0 ? '' : label(row, currencyColumn),
-    benchmark,
-    limit,
-    expected,
-    cell: at(row, Math.max(measureColumn, 0)),
-  }))
+  const holdings: Holding[] = rows.map(
+    ({ row, name, measure, amount, benchmark, limit, expected, budget }) => ({
+      name,
+      weight: measure / divisor,
+      amount,
+      groups: groupColumns.map((column) => label(row, column)),
+      currency: currencyColumn < 0 ? '' : label(row, currencyColumn),
+      benchmark,
+      limit,
+      expected,
+      budget,
+      cell: at(row, Math.max(measureColumn, 0)),
+    }),
+  )
   const net = holdings.reduce((sum, { weight }) => sum + weight, 0)
   const gross = holdings.reduce((sum, { weight }) => sum + Math.abs(weight), 0)
 

@@ -13,6 +13,7 @@ export const ROLES = [
   'benchmark weight',
   'limit',
   'expected return',
+  'risk budget',
   'ignore',
 ] as const
 export type Role = (typeof ROLES)[number]

@@ -14,8 +14,8 @@ export type Target =
   | { readonly kind: 'volatility'; readonly volatility: number }
   /** a holding or a group smaller until its share of risk is this */
   | { readonly kind: 'share'; readonly of: ShareOf; readonly share: number }
-  /** shares of risk alike: of holdings, or of the groups of a column and within each of its holdings */
-  | { readonly kind: 'risk budgets'; readonly by: 'holding' | { readonly header: string } }
+  /** shares of risk as a column of the holdings has them; or alike: of holdings, or of the groups of a column and within each of its holdings */
+  | { readonly kind: 'risk budgets'; readonly by: 'column' | 'holding' | { readonly header: string } }
   | { readonly kind: 'least variance'; readonly lower: number; readonly upper: number }
   /** all limits met with the smallest sum of changes */
   | {
@@ -186,7 +186,7 @@ class Search {
   // ---- by a solver
 
   async riskBudgets(
-    by: 'holding' | { readonly header: string },
+    by: 'column' | 'holding' | { readonly header: string },
     calculator: Calculator,
     work: Work,
   ): Promise<ProposedWeights> {
@@ -197,25 +197,18 @@ class Search {
         `weights that add up to ${percentText(total, 2)}`,
         'a sum above 0% is needed for long-only weights',
       )
-    const group = by === 'holding' ? null : this.#profile.groups.find(({ header }) => header === by.header)
-    if (group === undefined) throw outOfRange('no such group column', 'choose another column')
-    // one part for each holding, or one for each group that is shared by its members
-    const counts = new Map<number, number>()
-    for (const i of moving) {
-      const label = group?.groupOf[i] ?? i
-      counts.set(label, (counts.get(label) ?? 0) + 1)
-    }
-    const budgets = new Float64Array(this.#weights.length)
-    for (const i of moving) budgets[i] = 1 / counts.size / (counts.get(group?.groupOf[i] ?? i) ?? 1)
+    const { title, meaning, budgets } =
+      by === 'column'
+        ? this.#budgetsOfColumn()
+        : this.#equalBudgets(by === 'holding' ? null : by.header, moving)
     const result = await calculator.run('risk budgets', { recipe: this.#standing.book.recipe, budgets }, work)
-    const title = group ? `Equal risk contribution by ${group.header}` : 'Equal risk contribution'
     const method = 'The convex form of Spinu (2013), minimised by Newton’s method; long-only.'
     const { residual, converged, stopped, iterations } = result
     const weights = this.#weights.slice()
     for (const i of moving) weights[i] = (result.weights[i] ?? 0) * total
     return this.#found(
       title,
-      `Long-only weights of the ${countOf(moving.length, 'holding')} that move whose shares of risk are ${group ? `equal for each label of ${quote(group.header)}, and within it` : 'equal'}; their sum, ${percentText(total, 2)}, stays.`,
+      `Long-only weights of the ${countOf(moving.length, 'holding')} that move whose shares of risk are ${meaning}; their sum, ${percentText(total, 2)}, stays.`,
       method,
       weights,
       [
@@ -230,6 +223,51 @@ class Search {
       ],
       converged,
     )
+  }
+
+  #equalBudgets(header: string | null, moving: readonly number[]) {
+    const group = header === null ? null : this.#profile.groups.find((other) => other.header === header)
+    if (group === undefined) throw outOfRange(`no group column ${quote(header)}`, 'choose another column')
+    // one part for each holding, or one for each group that is shared by its members
+    const counts = new Map<number, number>()
+    for (const i of moving) {
+      const part = group?.groupOf[i] ?? i
+      counts.set(part, (counts.get(part) ?? 0) + 1)
+    }
+    const budgets = new Float64Array(this.#weights.length)
+    for (const i of moving) budgets[i] = 1 / counts.size / (counts.get(group?.groupOf[i] ?? i) ?? 1)
+    return {
+      title: group ? `Equal risk contribution by ${group.header}` : 'Equal risk contribution',
+      meaning: group ? `equal for each label of ${quote(group.header)}, and within it` : 'equal',
+      budgets,
+    }
+  }
+
+  #budgetsOfColumn() {
+    const { positions, holdings } = this.#ground
+    const column = holdings.columns.find(({ role }) => role === 'risk budget')
+    if (!column)
+      throw new Fault(
+        'missing',
+        'found no column of risk budgets',
+        'give a column of the holdings that role',
+        {
+          argument: 'trades',
+        },
+      )
+    const blank = positions.filter(({ budget }) => budget === null).length
+    const budgets = Float64Array.from(positions, ({ budget }) => budget ?? 0)
+    const sum = budgets.reduce((all, budget) => all + budget, 0)
+    if (Math.abs(sum - 1) > BUDGET_ROUNDING)
+      throw outOfRange(
+        `risk budgets in ${quote(column.header)} that add up to ${percentText(sum, 4)}`,
+        'a sum of 100% is needed',
+      )
+    return {
+      title: `Risk budgets of ${quote(column.header)}`,
+      meaning: `those of ${quote(column.header)}${blank > 0 ? ` (${countOf(blank, 'holding')} without one ${blank === 1 ? 'counts' : 'count'} as 0)` : ''}`,
+      budgets,
+    }
   }
 
   async leastVariance(
@@ -520,6 +558,9 @@ class Search {
     return { proposal: { title, met, sentence, method, lines: [] }, weights: new Map() }
   }
 }
+
+/** A sum of typed budgets this near to 1 is 1. */
+const BUDGET_ROUNDING = 1e-9
 
 /** A limit used to within this part of it is told as one that binds. */
 const AT_LIMIT = 1e-6

@@ -39,6 +39,7 @@ export interface Position {
   readonly amount: number | null
   readonly limit: number | null
   readonly benchmark: number | null
+  readonly budget: number | null
   /** where its weight stands; null for a candidate */
   readonly cell: Area | null
 }
@@ -148,12 +149,23 @@ const NOTHING_DIFFERS = 'No weight differs from those compared from.'
 /** Holdings, and after them the candidates, as trades know them. */
 export function positionsOf(holdings: HoldingsReading, held: number): readonly Position[] {
   const seen = new Map<string, number>()
-  return holdings.holdings.map(({ name, groups, weight, amount, limit, benchmark, cell }, i) => {
+  return holdings.holdings.map(({ name, groups, weight, amount, limit, benchmark, budget, cell }, i) => {
     const count = (seen.get(name) ?? 0) + 1
     seen.set(name, count)
     const candidate = i >= held
     const key = count === 1 ? name : `${name} (${count})`
-    return { key, name, groups, candidate, weight, amount, limit, benchmark, cell: candidate ? null : cell }
+    return {
+      key,
+      name,
+      groups,
+      candidate,
+      weight,
+      amount,
+      limit,
+      benchmark,
+      budget,
+      cell: candidate ? null : cell,
+    }
   })
 }
 

@@ -364,6 +364,32 @@ describe('Looking for weights', () => {
     expect(after().reduce((sum, w) => sum + w, 0)).toBeCloseTo(1, 12)
   })
 
+  test('of the risk budgets in a column has those shares of risk, and refuses budgets that are not a whole', async () => {
+    const { books, after, trades } = await desk([
+      ['Holding', 'Class', 'Weight', 'Risk budget'],
+      ['Meadow', 'Land', 0.4, 0.1],
+      ['Orchard', 'Land', 0.3, 0.2],
+      ['Mill', 'Works', 0.2, 0.3],
+      ['Quarry', 'Works', 0.1, 0.4],
+    ])
+    await books.propose({ kind: 'risk budgets', by: 'column' })
+    const { volatility, contributions } = riskOf(after())
+    closeTo(
+      contributions.map((c) => c / volatility),
+      [0.1, 0.2, 0.3, 0.4],
+      9,
+    )
+    expect(trades().proposal?.sentence).toMatch(/“Risk budget”/)
+    const { books: other } = await desk([
+      ['Holding', 'Class', 'Weight', 'Risk budget'],
+      ['Meadow', 'Land', 0.4, 0.1],
+      ['Orchard', 'Land', 0.6, 0.2],
+    ])
+    await other.propose({ kind: 'risk budgets', by: 'column' })
+    expect(other.state().faults.trades).toMatch(/add up to 30.0000%.*100% is needed/)
+    expect(other.state().status).toEqual({ kind: 'up to date' })
+  })
+
   test('of least variance finds none calmer by small shifts within the bounds', async () => {
     const { books, after } = await desk()
     await books.propose({ kind: 'least variance', lower: 0, upper: 0.45 })
@@ -390,5 +416,50 @@ describe('Looking for weights', () => {
     expect(comparison().limitsAfter.every(({ status }) => status !== 'breach')).toBe(true)
     await books.applyTrades({ replaceFormulas: false })
     expect(books.state().breakdown?.limits.some(({ status }) => status === 'breach')).toBe(false)
+  })
+})
+
+describe('Tables of trades and scenarios', () => {
+  test('go to sheets of their own, with before, after and change, and give way to the next', async () => {
+    const { books, line, cells } = await desk()
+    await books.writeTrades()
+    expect(books.state().faults.trades).toMatch(/no weight differs/i)
+    line('Meadow', '30%')
+    await books.writeTrades()
+    expect(books.state().notice).toMatch(/Trades!A1/)
+    const rows = cells('Trades!A1:J60')
+    const row = (label: string, under = '') =>
+      rows.slice(rows.findIndex(([first]) => first === under)).find(([first]) => first === label) ?? []
+    const [was, is] = [riskOf([0.4, 0.3, 0.2, 0.1]), riskOf([0.3, 0.3, 0.2, 0.1])]
+    closeTo(row('Volatility a year', 'Totals').slice(2, 5).map(Number), [
+      was.volatility,
+      is.volatility,
+      is.volatility - was.volatility,
+    ])
+    expect(row('Meadow', 'Weights').slice(0, 6)).toEqual([
+      'Meadow',
+      'typed',
+      0.4,
+      0.4,
+      0.3,
+      expect.closeTo(-0.1, 12),
+    ])
+    line('Meadow', '20%')
+    await books.writeTrades()
+    const again = cells('Trades!A1:J60')
+    expect(again.find(([first, origin]) => first === 'Meadow' && origin === 'typed')?.[4]).toBe(0.2)
+  })
+
+  test('hold the book in scenarios at the weights before and after', async () => {
+    const { books, line, cells } = await desk()
+    line('Meadow', '30%')
+    const comparison = books.stressOf([{ kind: 'volatilities', factor: 1.5 }])
+    if (typeof comparison === 'string') throw new Error(comparison)
+    const { figures } = comparison.cases[1] ?? {}
+    if (figures === undefined || typeof figures === 'string') throw new Error(figures)
+    expect(figures.before.volatility?.total).toBeCloseTo(1.5 * riskOf([0.4, 0.3, 0.2, 0.1]).volatility, 12)
+    expect(figures.after?.volatility?.total).toBeCloseTo(1.5 * riskOf([0.3, 0.3, 0.2, 0.1]).volatility, 12)
+    await books.writeStress([{ kind: 'volatilities', factor: 1.5 }])
+    expect(cells('Stress!A1:A1')[0]?.[0]).toMatch(/^Stress/)
   })
 })
