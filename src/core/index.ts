@@ -60,7 +60,13 @@ export { leastRiskWeights } from './least-risk'
 export { leastVariance, type LeastVariance, type WeightBounds } from './least-variance'
 export { logReturns, simpleReturns } from './returns'
 export { longestRun, rhythm, shareInRuns, withoutRuns, type Run } from './runs'
-export { groupErrors, shareDifferences, standardErrors, type StandardErrors } from './sampling-error'
+export {
+  groupErrors,
+  shareDifferences,
+  standAloneErrors,
+  standardErrors,
+  type StandardErrors,
+} from './sampling-error'
 export {
   autocorrelation,
   carefulError,

@@ -99,6 +99,31 @@ export function groupErrors(
 }
 
 /**
+ * Standard errors of stand-alone risks |w_i| sigma_i: of the volatility of each position held alone, as `standardErrors` gives it.
+ *
+ * @returns        n; per period
+ * @throws Fault   as `standardErrors`
+ * @source         as `standardErrors`
+ * @cost           O(T n), O(T n L) with lags
+ * @example        standAloneErrors(returnsModel(Float64Array.of(.01, 0, -.02, .01, .01, -.01), 3, 2), Float64Array.of(.5, -.5)) // [0.00177, 0.00102]
+ */
+export function standAloneErrors(model: ReturnsModel, weights: Float64Array, lags = 0): Float64Array {
+  checkBlock(weights, model.size, 1, 'weights')
+  const { dates, size, weighting } = model
+  const columns = new Float64Array(size * dates)
+  const row = new Float64Array(size)
+  for (let t = 0; t < dates; t++) {
+    model.centredRow(t, row)
+    for (let i = 0; i < size; i++) columns[i * dates + t] = row[i]!
+  }
+  const one = Float64Array.of(1)
+  return weights.map((weight, i) => {
+    const alone = returnsModel(columns.subarray(i * dates, (i + 1) * dates), dates, 1, weighting, 'plain')
+    return Math.abs(weight) * standardErrors(alone, one, lags).volatility
+  })
+}
+
+/**
  * Standard errors of differences between two shares of risk: shares whose difference is within RISK_BAND of its own
  * error cannot be told apart. The two move together, so their own errors do not give it.
  *

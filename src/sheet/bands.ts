@@ -1,4 +1,4 @@
-import { groupErrors, shareDifferences, standardErrors } from '../core'
+import { groupErrors, shareDifferences, standAloneErrors, standardErrors } from '../core'
 import type { Decomposition, StandardErrors } from '../core'
 import type { BookModel } from './book-model'
 import { BAND, countOf } from './wording'
@@ -17,7 +17,9 @@ export interface Bands {
   readonly note: string | null
   /** of the contributions and shares of groups; a pass of the returns for each group, taken when asked for */
   ofGroups(groupOf: Int32Array, groups: number): Pick<StandardErrors, 'contribution' | 'share'>
-  /** of the volatility of other weights, such as those of some positions alone; two passes of the returns */
+  /** of the stand-alone risk of each position; about two passes of the returns, taken when asked for */
+  ofStandAlone(): Float64Array
+  /** of the volatility of other weights, such as those of one group alone; two passes of the returns */
   ofVolatility(weights: Float64Array): number
 }
 
@@ -82,6 +84,7 @@ export function bandsOf(book: BookModel, d: Decomposition): Bands | string {
         share: d.share === null ? null : share,
       }
     },
+    ofStandAlone: () => standAloneErrors(model, d.weights, lags).map((error) => error * scale),
     ofVolatility: (weights) => standardErrors(model, weights, lags).volatility * scale,
   }
 }

@@ -3,7 +3,7 @@ import { sharesWithheldOf } from '../benchmark'
 import { plainName } from '../names'
 import type { Profile } from '../profile'
 import { BAND } from '../wording'
-import type { Limit, LimitState } from './limit'
+import type { Limit, LimitMeasure, LimitState } from './limit'
 
 /** A figure over its limit by no more than this part of it is at it: solvers and sums of fractions leave so much. Our own convention. */
 const ROUNDING = 1e-9
@@ -30,19 +30,8 @@ class Gauge {
 
   /** The figure, or why there is none. */
   figure({ scope, header, name, measure, members }: Limit): Figure {
-    const { decomposition: d, trackingError } = this.#profile
-    switch (measure) {
-      case 'volatility':
-        return d.volatility
-      case 'tracking error':
-        return trackingError ?? 'There is no benchmark.'
-      case 'value at risk':
-        return this.#tails?.valueAtRisk ?? NO_TAIL
-      case 'expected shortfall':
-        return this.#tails
-          ? (this.#tails.shortfall ?? 'The method chosen for large losses gives none.')
-          : NO_TAIL
-    }
+    const { decomposition: d } = this.#profile
+    if (scope === 'total') return this.#ofTotal(measure)
     if (measure === 'share of risk' && this.#withheld !== null) return this.#withheld
     if (scope === 'holding') {
       const i = members?.[0] ?? -1
@@ -75,31 +64,43 @@ class Gauge {
     if (measure === 'weight') return 'A weight is known and has no estimation error.'
     const bands = this.#bands
     if (bands === null || typeof bands === 'string') return bands
-    const { decomposition: d } = this.#profile
-    switch (measure) {
-      case 'volatility':
-        return bands.volatility
-      case 'value at risk':
-        return this.#tails?.standardError ?? 'The method chosen for large losses has no standard error here.'
-      case 'tracking error':
-      case 'expected shortfall':
-        return 'No standard error is computed for it.'
-    }
+    if (scope === 'total') return this.#errorOfTotal(measure, bands)
     if (scope === 'holding') {
-      const i = members?.[0] ?? -1
-      if (measure === 'stand-alone risk')
-        return bands.ofVolatility(d.weights.map((weight, k) => (k === i ? weight : 0)))
-      return (measure === 'share of risk' ? bands.share : bands.contribution)?.[i] ?? NO_ERROR
+      const errors =
+        measure === 'stand-alone risk'
+          ? this.#once('alone', () => bands.ofStandAlone())
+          : measure === 'share of risk'
+            ? bands.share
+            : bands.contribution
+      return errors?.[members?.[0] ?? -1] ?? NO_ERROR
     }
     const place = this.#group(header, name)
     if (!place) return NO_ERROR
     const { group, g } = place
     if (measure === 'stand-alone risk')
-      return bands.ofVolatility(d.weights.map((weight, k) => (group.groupOf[k] === g ? weight : 0)))
+      return bands.ofVolatility(
+        this.#profile.decomposition.weights.map((weight, k) => (group.groupOf[k] === g ? weight : 0)),
+      )
     const errors = this.#once(`errors ${group.header}`, () =>
       bands.ofGroups(group.groupOf, group.labels.length),
     )
     return (measure === 'share of risk' ? errors.share : errors.contribution)?.[g] ?? NO_ERROR
+  }
+
+  #ofTotal(measure: LimitMeasure): Figure {
+    if (measure === 'volatility') return this.#profile.decomposition.volatility
+    if (measure === 'tracking error') return this.#profile.trackingError ?? 'There is no benchmark.'
+    const tails = this.#tails
+    if (!tails) return 'Large losses are not measured at the present choices; their own section says why.'
+    if (measure === 'value at risk') return tails.valueAtRisk
+    return tails.shortfall ?? 'The method chosen for large losses gives none.'
+  }
+
+  #errorOfTotal(measure: LimitMeasure, bands: Bands): Figure {
+    if (measure === 'volatility') return bands.volatility
+    if (measure === 'value at risk')
+      return this.#tails?.standardError ?? 'The method chosen for large losses has no standard error here.'
+    return 'No standard error is computed for it.'
   }
 
   get #tails(): ReturnType<Profile['tails']> {
@@ -118,7 +119,6 @@ class Gauge {
   }
 }
 
-const NO_TAIL = 'The method chosen for large losses gives no figure at this horizon.'
 const NO_ERROR = 'It has no error band.'
 
 /**
@@ -133,7 +133,7 @@ const NO_ERROR = 'It has no error band.'
  * @param bands    of the same weights; or why there are none; null where nobody asks
  * @returns        in the order of the limits
  * @cost           O(limits); a pass of the model for each group of a column whose stand-alone risk is limited, one for the tail, and with bands
- *                 as `Bands.ofGroups` and `ofVolatility` take
+ *                 what `Bands` says of errors taken when asked for
  */
 export function judgeLimits(
   limits: readonly Limit[],

@@ -4,6 +4,7 @@ import {
   returnsModel,
   RISK_BAND,
   shareDifferences,
+  standAloneErrors,
   standardErrors,
   type Weighting,
 } from '../../../src/core'
@@ -160,6 +161,21 @@ describe('standard errors', () => {
         expect(relativeGap(errors[figure]!, oracle)).toBeLessThan(1e-9)
       }
       expect(errors.volatility / errorOf(plain.volatility, omega, lags)).toBeCloseTo(1, 9)
+    },
+  )
+
+  it.each(weightings)(
+    'of stand-alone risks are those of the volatility of each position alone, with %s',
+    (_name, weighting, lags) => {
+      const model = modelOf(weighting)
+      const alone = Array.from(weights, (w, i) => {
+        const omega = model.rowWeights
+        const correction = lags > 0 ? 1 : model.correction
+        const only = weights.map((_w, k) => (k === i ? w : 0))
+        return errorOf(influences(rows, only, { omega, correction, lags }).volatility, omega, lags)
+      })
+      // 1e-9: two ways of adding the same doubles, which cancel more the more lags there are
+      expect(relativeGap(standAloneErrors(model, weights, lags), alone)).toBeLessThan(1e-9)
     },
   )
 
