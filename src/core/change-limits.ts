@@ -217,7 +217,9 @@ function checkedLimit(limit: ChangeLimit, row: number, n: number, hasBenchmark: 
     }
   }
   const convex = measure !== 'share' && measure !== 'contribution'
-  return { measure, members: whole ? null : members, most, aim: most, scale: 1, mask, convex }
+  // each member once
+  const distinct = mask && Int32Array.from(mask.keys()).filter((i) => mask[i] === 1)
+  return { measure, members: distinct, most, aim: most, scale: 1, mask, convex }
 }
 
 const MEASURES: readonly LimitMeasure[] = [
@@ -246,11 +248,9 @@ function aimedAt(book: LimitedBook): Limit[] {
       )
     const natural = measure === 'share' || measure === 'weight' ? 1 : whole
     const scale = Math.abs(most) || natural || Math.sqrt(Math.max(...model.variances())) || 1
-    // a figure that is as it must be today, and no lower for a margin: what is frozen, or a sum that is kept, could not give way
-    const room = now <= most ? Math.min(LIMIT_MARGIN * scale, most - now) : LIMIT_MARGIN * scale
-    const neverNegative = measure !== 'share' && measure !== 'contribution'
-    const margin = most === 0 && neverNegative ? 0 : room
-    return { ...limit, scale, aim: most - margin }
+    // no lower than today's figure where that holds: what is frozen, or a sum that is kept, could not give way
+    const margin = LIMIT_MARGIN * Math.abs(most)
+    return { ...limit, scale, aim: now <= most ? Math.max(now, most - margin) : most - margin }
   })
 }
 

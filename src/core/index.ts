@@ -58,6 +58,7 @@ export {
 export { MOST_LAGS, shareBroughtBack, usualLags } from './lagged'
 export { leastRiskWeights } from './least-risk'
 export { leastVariance, type LeastVariance, type WeightBounds } from './least-variance'
+export { roundToLots, type LotsResult } from './lots'
 export { logReturns, simpleReturns } from './returns'
 export { longestRun, rhythm, shareInRuns, withoutRuns, type Run } from './runs'
 export {

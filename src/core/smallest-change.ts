@@ -158,7 +158,7 @@ export function* smallestChange(model: RiskModel, problem: ChangeProblem): Gener
   const smallest = holds && (convex || point.change <= outer.bound * (1 + 1e-6) + NO_CHANGE)
   return resultOf(search, {
     status: holds
-      ? best.stationary
+      ? best.stationary || smallest
         ? 'met'
         : 'stopped'
       : best.stopped && contradiction === null
@@ -639,28 +639,47 @@ function bendsUp(curvature: Matrix, slopes: Matrix): boolean {
 
 // The end -----------------------------------------------------------------------------------------------------------------------------
 
-/** Weights within rounding of today's, or of a bound, are set to it, where limits and the sum still hold then. */
+/**
+ * Weights within rounding of today's, or of a bound, are set to it, where limits and the sum still hold then. A limit of 0 may hold at a bound or
+ * at the benchmark alone, which is a kink or the floor of a square: nearing it, figures stop to tell, and what is near is set to it from further away.
+ */
 function polished(search: Search, point: Point): Point {
-  const { origin, lower, upper, keepsSum } = search
+  const held = limitsHold(search, point)
+  if (!held && point.over > FEASIBLE) return snapped(search, point, NO_CHANGE) ?? point
+  for (const width of held ? [NO_CHANGE] : [NO_CHANGE, 1e-6, 1e-4]) {
+    const cleaned = snapped(search, point, width)
+    if (cleaned && limitsHold(search, cleaned)) return cleaned
+  }
+  return point
+}
+
+/** Null where the sum that is kept would be lost. */
+function snapped(search: Search, point: Point, width: number): Point | null {
+  const { origin, lower, upper, benchmark, keepsSum } = search
   const weights = point.weights.map((w, i) => {
-    const near = [origin[i]!, lower[i]!, upper[i]!].find((to) => Math.abs(w - to) < NO_CHANGE)
-    return near === undefined ? w : Math.min(upper[i]!, Math.max(lower[i]!, near))
+    const near = [
+      origin[i]!,
+      lower[i]!,
+      upper[i]!,
+      ...(width > NO_CHANGE && benchmark ? [benchmark[i]!] : []),
+    ]
+    const to = near.find((value) => Math.abs(w - value) < width)
+    return to === undefined ? w : Math.min(upper[i]!, Math.max(lower[i]!, to))
   })
-  if (keepsSum) {
+  if (keepsSum && Math.abs(sumOf(weights) - sumOf(origin)) > Number.EPSILON) {
     // what that took from the sum goes to the position that moves most, and can
     let widest = -1
     let most = 0
     weights.forEach((w, i) => {
       const moved = Math.abs(w - origin[i]!)
-      if (moved <= most || Math.min(w - lower[i]!, upper[i]! - w) < 1e-6) return
+      if (moved <= most || Math.min(w - lower[i]!, upper[i]! - w) < 10 * width) return
       most = moved
       widest = i
     })
     if (widest >= 0) weights[widest] = weights[widest]! - (sumOf(weights) - sumOf(origin))
-    else if (Math.abs(sumOf(weights) - sumOf(origin)) > 1e-14 * weights.length) return point
+    else if (Math.abs(sumOf(weights) - sumOf(origin)) > 1e-14 * weights.length) return null
   }
-  const cleaned = pointAt(search, weights)
-  return limitsHold(search, cleaned) || !limitsHold(search, point) ? cleaned : point
+  return pointAt(search, weights)
 }
 
 interface Ending {
