@@ -320,7 +320,7 @@ function checkNeighbours(tokens: readonly Token[], separator: string): void {
   if (tokens.length === 3 && tokens[0]?.code === '(' && tokens[1]?.kind === 'number')
     throw faultAt(
       0,
-      `found a number in parentheses, which can mean one below zero`,
+      'found a number in parentheses, which can mean one below zero',
       `${tokens[1].typed} or -${tokens[1].typed} is needed`,
     )
 }
