@@ -102,8 +102,9 @@ test('a date that takes all the book has leaves its sum but nothing to compound'
 })
 
 test('of two stretches that lose alike the earlier is found, whatever rounding says of their running sums', () => {
-  const returns = Float64Array.of(0.3, -0.1, -0.2, 0.1, 0.7, -0.2, -0.1, 0.1)
-  expect(worstStretch(returns, 8, 1, Float64Array.of(1), 2).start).toBe(1)
+  // a running sum makes -0.3000000000000003 of the later one
+  const returns = Float64Array.of(-0.1, -0.2, 0.7, 0.8, -0.1, -0.2)
+  expect(worstStretch(returns, 6, 1, Float64Array.of(1), 2).start).toBe(0)
 })
 
 test('no question about weights forms the matrix', () => {
