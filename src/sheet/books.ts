@@ -1,11 +1,12 @@
 import { Fault } from '../core'
-import type { BootstrapChoice } from '../core'
+import type { BootstrapChoice, ImpliedChoice } from '../core'
 import type { Breakdown } from './breakdown'
 import type { Calculator, Work } from './calculator'
 import { steppingCalculator } from './calculator'
 import type { Area, Culture } from './cells'
 import { addressOf, overlap } from './cells'
 import { explain } from './explain'
+import type { ImpliedReturns } from './implied'
 import type { LimitsReading } from './limits'
 import { byGravity } from './findings'
 import type { HoldingsReading } from './holdings'
@@ -14,10 +15,11 @@ import type { Cause, Field, Proposal, Status } from './linked-book'
 import { areaOf, LinkedBook, sentenceOf } from './linked-book'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
+import type { RiskLowerings, Sizing } from './sizing'
 import type { Scenario, StressComparison } from './stress'
 import type { BacktestChoice, Studies } from './studies'
 import type { Target } from './targets'
-import type { TradeChange, TradesState } from './trades'
+import type { Financing, TradeChange, TradesState } from './trades'
 import type { Json, Workbook, WorkbookEvent } from './workbook'
 import { countOf, listOf, quote } from './wording'
 
@@ -103,6 +105,12 @@ export interface Books {
   writeTrades(): Promise<void>
   /** Writes scenarios side by side to a sheet of their own. */
   writeStress(scenarios: readonly Scenario[]): Promise<void>
+  /** Risk against the weight of one position, at once; or why there is none. */
+  sizingOf(key: string, financing: Financing): Sizing | string
+  /** The trades that lower risk most for each unit of turnover, at once; or why there are none. */
+  riskLowering(financing: Financing): RiskLowerings | string
+  /** @param risklessRate what the user's expected returns include of it, a year; 0 where they are excess returns */
+  impliedReturns(choice: ImpliedChoice, risklessRate: number): ImpliedReturns | string
   /** The book in scenarios, before and after the trades, at once; or why not. */
   stressOf(scenarios: readonly Scenario[]): StressComparison | string
   /** The stretch of so many dates with the largest loss at the weights in the sheet; or why there is none. */
@@ -581,6 +589,18 @@ class OpenBooks implements Books {
       const area = await book.writeStress(scenarios)
       this.#notice = `Scenarios written to ${addressOf(area)}. The table stays as it is until it is written again.`
     })
+  }
+
+  sizingOf(key: string, financing: Financing): Sizing | string {
+    return this.#book.trading.sizingOf(key, financing)
+  }
+
+  riskLowering(financing: Financing): RiskLowerings | string {
+    return this.#book.trading.riskLowering(financing)
+  }
+
+  impliedReturns(choice: ImpliedChoice, risklessRate: number): ImpliedReturns | string {
+    return this.#book.trading.impliedReturns(choice, risklessRate)
   }
 
   stressOf(scenarios: readonly Scenario[]): StressComparison | string {

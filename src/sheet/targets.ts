@@ -5,6 +5,7 @@ import type { Limit } from './limits'
 import { judgeLimits, LIMIT_MEASURES, limitOn } from './limits'
 import type { Profile } from './profile'
 import type { Financing, TradeGround } from './trades'
+import { financingOf } from './trades'
 import type { Standing } from './trading'
 import { countOf, listOf, numberText, percentText, quote } from './wording'
 
@@ -485,19 +486,14 @@ class Search {
     return moving
   }
 
-  #payer(): number | null {
-    const financing = this.#financing
-    if (financing.kind !== 'position') return null
-    const i = this.#ground.positions.findIndex(({ key }) => key === financing.key)
-    if (i < 0) throw outOfRange(`no holding ${quote(financing.key)}`, 'choose what pays for the trades')
-    return i
+  #coreFinancing(): CoreFinancing {
+    return financingOf(this.#ground.positions, this.#financing)
   }
 
-  #coreFinancing(): CoreFinancing {
-    const payer = this.#payer()
-    return payer === null
-      ? { kind: this.#financing.kind === 'pro rata' ? 'pro rata' : 'cash' }
-      : { kind: 'position', position: payer }
+  /** The position that takes the difference, or null where cash or the rest of the book does. */
+  #payer(): number | null {
+    const financing = this.#coreFinancing()
+    return financing.kind === 'position' ? financing.position : null
   }
 
   #paidBy(): string {

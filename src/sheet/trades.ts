@@ -1,5 +1,5 @@
-import { financed, firstOrder, turnover } from '../core'
-import type { Fault, Financing as CoreFinancing, FirstOrder } from '../core'
+import { Fault, financed, firstOrder, turnover } from '../core'
+import type { Financing as CoreFinancing, FirstOrder } from '../core'
 import type { Area, CellValue, Culture } from './cells'
 import { addressOf } from './cells'
 import { attempt, explain } from './explain'
@@ -8,7 +8,6 @@ import { loadExpressions, plainNumber } from './expression'
 import type { HoldingsReading } from './holdings'
 import type { Limit, LimitState } from './limits'
 import { judgeLimits } from './limits'
-import { plainName } from './names'
 import type { Profile, ProfileBasis } from './profile'
 import type { Proposal } from './targets'
 import { countOf, listOf, percentText, quote } from './wording'
@@ -456,21 +455,12 @@ export class Trades {
       positions,
       ({ key, weight }) => this.#proposal?.weights.get(key) ?? weight,
     )
-    const financing = this.#coreFinancing(positions)
-    if (typeof financing === 'string') return { changes: null, fault: financing }
-    const { value, fault } = attempt(() => financed(weights, changes, financing))
+    const { value, fault } = attempt(() =>
+      financed(weights, changes, financingOf(positions, this.#financing)),
+    )
     return fault
       ? { changes: null, fault: explain(fault, () => '') }
       : { changes: value.changes, fault: null }
-  }
-
-  #coreFinancing(positions: readonly Position[]): CoreFinancing | string {
-    const financing = this.#financing
-    if (financing.kind !== 'position') return financing
-    const position = positions.findIndex(({ key }) => key === financing.key)
-    return position < 0
-      ? `${quote(financing.key)} was to pay for the trades and is not there any more: choose what pays for them.`
-      : { kind: 'position', position }
   }
 
   #compare(ground: TradeGround, before: Float64Array, after: Float64Array): Comparison | string {
@@ -538,14 +528,27 @@ export class Trades {
   }
 }
 
+/**
+ * The financing in terms of positions.
+ *
+ * @throws Fault "missing" where the position that was to pay is not there any more
+ */
+export function financingOf(positions: readonly Position[], financing: Financing): CoreFinancing {
+  if (financing.kind !== 'position') return financing
+  const position = positions.findIndex(({ key }) => key === financing.key)
+  if (position >= 0) return { kind: 'position', position }
+  throw new Fault(
+    'missing',
+    `${quote(financing.key)} was to pay for the trades and is not there any more`,
+    'choose what pays for them',
+    { argument: 'trades' },
+  )
+}
+
 const textFault = (fault: Fault): TextFault => ({
   sentence: explain(fault, () => ''),
   column: fault.code === 'expression' ? (fault.where.column ?? null) : null,
 })
-
-/** The key of a position by the name a user knows it by. */
-export const keyOf = (positions: readonly Position[], name: string): string | null =>
-  positions.find(({ key }) => plainName(key) === plainName(name))?.key ?? null
 
 /** As many digits as a cell shows and keeps. */
 const digitsOf = (value: number): number => Number(value.toPrecision(15))

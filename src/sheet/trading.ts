@@ -1,4 +1,5 @@
 import { Fault } from '../core'
+import type { ImpliedChoice } from '../core'
 import type { Blocks, BookModel } from './book-model'
 import { modelChoices, modelOf } from './book-model'
 import type { Breakdown } from './breakdown'
@@ -8,7 +9,12 @@ import type { Area, CellValue, Culture } from './cells'
 import { addressOf, sameArea } from './cells'
 import { plainName } from './names'
 import { profileBasis } from './profile'
+import { attempt, explain } from './explain'
+import type { ImpliedReturns } from './implied'
+import { impliedReturnsOf } from './implied'
 import type { Settings } from './settings'
+import type { RiskLowerings, Sizing, SizingInputs } from './sizing'
+import { riskLowering, sizingOf } from './sizing'
 import type { Scenario, StressComparison } from './stress'
 import { stressInputs, stressOf, worstStretch } from './stress'
 import { stressTable } from './stress-table'
@@ -16,8 +22,8 @@ import type { Table } from './table'
 import type { Target } from './targets'
 import { proposalFor } from './targets'
 import { tradesTable } from './trades-table'
-import type { Applied, TradeChange, TradeGround, TradesState } from './trades'
-import { appliedText, positionsOf, Trades } from './trades'
+import type { Applied, Financing, TradeChange, TradeGround, TradesState } from './trades'
+import { appliedText, financingOf, positionsOf, Trades } from './trades'
 import type { Workbook } from './workbook'
 import { listOf, quote } from './wording'
 
@@ -34,6 +40,13 @@ export interface TypedCells {
   readonly area: Area
   readonly formulas: readonly (readonly CellValue[])[]
 }
+
+const inputsOf = ({ basis, positions }: TradeGround): SizingInputs => ({
+  names: basis.names,
+  model: basis.model,
+  weights: Float64Array.from(positions, ({ weight }) => weight),
+  periods: basis.periods,
+})
 
 const NOTHING_COMPUTED = 'Nothing is computed yet: Compute comes first.'
 
@@ -235,6 +248,45 @@ export class Trading {
     const { blocks, book, settings } = this.#standing
     const weights = Float64Array.from(this.#ground.positions, ({ weight }) => weight)
     return worstStretch(stressInputs(blocks, book, settings), weights, dates)
+  }
+
+  /** Risk against the weight of one position, at the weights in the sheet; or why there is none. */
+  sizingOf(key: string, financing: Financing): Sizing | string {
+    return this.#answer((ground) => {
+      const position = ground.positions.findIndex((other) => other.key === key)
+      return sizingOf(inputsOf(ground), position, financingOf(ground.positions, financing), ground.limits)
+    })
+  }
+
+  /** The trades that lower risk most for each unit of turnover, at the weights in the sheet; or why there are none. */
+  riskLowering(financing: Financing): RiskLowerings | string {
+    return this.#answer((ground) => riskLowering(inputsOf(ground), financingOf(ground.positions, financing)))
+  }
+
+  /** What each holding would have to earn for the weights in the sheet to be optimal; or why that is not defined. */
+  impliedReturns(choice: ImpliedChoice, risklessRate: number): ImpliedReturns | string {
+    return this.#answer((_, { breakdown, blocks }) => {
+      const expected = blocks.holdings.columns.some(({ role }) => role === 'expected return')
+      return impliedReturnsOf(
+        {
+          names: breakdown.names,
+          decomposition: breakdown.decomposition,
+          expected: expected
+            ? blocks.holdings.holdings.slice(0, breakdown.names.length).map((holding) => holding.expected)
+            : null,
+          risklessRate,
+        },
+        choice,
+      )
+    })
+  }
+
+  /** A question answered from what stands, or the sentence why it cannot be. */
+  #answer<T>(question: (ground: TradeGround, standing: Standing) => T): T | string {
+    const [ground, standing] = [this.#ground, this.#standing]
+    if (!ground || !standing) return NOTHING_COMPUTED
+    const { value, fault } = attempt(() => question(ground, standing))
+    return fault ? explain(fault, () => '') : value
   }
 
   /** The comparison as a table to be written. */
