@@ -32,7 +32,7 @@ export const HOLDINGS = [
     'Northern coast equities',
     'Equities',
     'North',
-    [0.14, 0.12, 0.28, 0.064],
+    [0.14, 0.12, 0.3, 0.064],
     { shares: 1 },
     0.05,
     0.062,
@@ -154,6 +154,23 @@ function holding(name, assetClass, region, [weight, benchmark, limit, expected],
   return { name, assetClass, region, weight, benchmark, limit, expected, load, own, mean }
 }
 
+/**
+ * Limits beside those on each share of risk: scope, name, measure, soft, hard. Of both together two are breached (the share of risk of Delta
+ * young-market equities, of the holdings' own column, and that of the Islands) and one is over its soft limit alone; the volatility is within its
+ * limits, but not by more than it may be off.
+ */
+export const LIMITS = [
+  ['Total', null, 'Volatility', 0.09, 0.1],
+  ['Total', null, 'Tracking error', 0.01, 0.015],
+  ['Total', null, 'Value at risk', null, 0.025],
+  ['Total', null, 'Expected shortfall', null, 0.04],
+  ['Holding', 'Northern coast equities', 'Weight', 0.13, 0.15],
+  ['Holding', 'Tidal power projects', 'Stand-alone risk', null, 0.012],
+  ['Asset class', 'Equities', 'Contribution to risk', null, 0.1],
+  ['Region', 'Islands', 'Share of risk', 0.15, 0.17],
+  ['Region', 'Delta', 'Weight', null, 0.15],
+]
+
 function randomIntegers(seed) {
   let x = seed >>> 0
   return () => {
@@ -229,6 +246,7 @@ export function demoWorkbook() {
   writeBook(workbook.addWorksheet('Book'))
   writeReturns(workbook.addWorksheet('Returns'))
   writeFactors(workbook.addWorksheet('Factors'))
+  writeLimits(workbook.addWorksheet('Limits'))
   writeModel(workbook.addWorksheet('Model'))
   writeReadMe(workbook.addWorksheet('Read me'))
   return workbook
@@ -291,6 +309,21 @@ function writeFactors(sheet) {
     numbers(sheet, column, 2, WEEKS + 1, '0.00%')
   widths(sheet, [13, ...FACTOR_NAMES.map(() => 14)])
   sheet.views = [{ state: 'frozen', xSplit: 1, ySplit: 1 }]
+}
+
+function writeLimits(sheet) {
+  title(
+    sheet,
+    'Larkmoor Foundation: limits',
+    'Beside the limits on shares of risk in the sheet "Book". Invented, like everything here.',
+  )
+  header(sheet, 4, ['Scope', 'Name', 'Measure', 'Soft limit', 'Hard limit'])
+  LIMITS.forEach((limit, i) => {
+    sheet.getRow(FIRST + i).values = limit
+  })
+  for (const column of [4, 5]) numbers(sheet, column, FIRST, FIRST + LIMITS.length - 1, PERCENT)
+  widths(sheet, [16, 28, 24, 12, 12])
+  sheet.views = [{ state: 'frozen', ySplit: 4 }]
 }
 
 /** What the user had before: ordinary formulas, with the add-in's functions where the risk comes in. */
@@ -412,10 +445,11 @@ function writeReadMe(sheet) {
     'Returns: 260 weekly returns, oldest first. "Tidal power projects" starts two and a half years in; the cells before are empty.',
     '"Timber and orchard land" is valued every fourth week and stands still in between, which makes it look calmer than it is.',
     'Factors: weekly returns of the four common factors, for whoever wants a factor model (A1:E261).',
+    'Limits: a table of nine limits on the total, on holdings and on groups (A4:E13); two limits of the workbook are breached.',
     "Model: a small sheet that was there before, with the add-in's functions between ordinary formulas.",
     '',
     'To try: select the holdings with their header in Book (A4:G21) and choose "Use selection" in the pane; the same in Returns (A1:Q261);',
-    'compute; write the table; then change a weight in Book and watch pane, table and Model follow.',
+    'the limits are in Limits (A4:E13); compute; write the table; then change a weight in Book and watch pane, table and Model follow.',
     '',
     'An estimate from past returns, not advice. Local rules and licensed practice come first.',
   ]

@@ -3,6 +3,8 @@ import type { Active } from './benchmark'
 import type { Breakdown, FactorSplit } from './breakdown'
 import type { CurrencyRisk } from './currency'
 import { CURRENCY_READING } from './currency'
+import type { LimitState } from './limits'
+import { LIMIT_MEASURES, LIMIT_STATUS, limitOn, limitsSummary } from './limits'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableCell } from './table'
 import type { Tails } from './tail-section'
@@ -19,6 +21,8 @@ const number = (value: number | null | undefined, format: string, mark?: Mark): 
   value === null || value === undefined || Number.isNaN(value)
     ? { value: '', format, ...marked(mark) }
     : { value, format, ...marked(mark) }
+
+const capital = (sentence: string): string => sentence.charAt(0).toUpperCase() + sentence.slice(1)
 
 const sumOf = (values: Float64Array): number => values.reduce((sum, value) => sum + value, 0)
 
@@ -113,7 +117,7 @@ class Rows {
 
 /**
  * Lays a breakdown out as a table to be written: title and data dates, positions with a total row, the sum of parts and its
- * difference from the total, groups, large losses, the benchmark, factors, the book's figures, settings, warnings, caution. Rows that may
+ * difference from the total, groups, limits, large losses, the benchmark, factors, the book's figures, settings, warnings, caution. Rows that may
  * vary in number stand last, so that a refresh of the same holdings fills the same cells.
  *
  * @returns rows of equal length; positions in the order of the holdings
@@ -137,6 +141,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   const rows = new Rows(1 + groupHeaders.length, columns)
   const told = findings.filter(({ weight }) => weight !== 'notes').map(({ sentence }) => sentence)
   const warnings = sharesWithheld === null ? told : [sharesWithheld, ...told]
+  const exceeded = breakdown.limits.some(({ status }) => status === 'breach' || status === 'over soft')
 
   rows.add([text(`Contributions to risk: ${title}`, 'title')])
   const band = bands ? ` (95% band ${bandText(d.volatility, bands.volatility, 2)})` : ''
@@ -146,13 +151,18 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
     ),
   ])
   rows.add([text(CAUTION, 'note')])
-  if (warnings.length > 0)
-    rows.add([text(`${countOf(warnings.length, 'warning')}, at the end of this table.`, 'alert')])
+  // one row whatever it says: a new weight must not move the rows below
+  const alerts = [
+    exceeded ? `${limitsSummary(breakdown.limits)}.` : '',
+    warnings.length > 0 ? `${countOf(warnings.length, 'warning')}, at the end of this table.` : '',
+  ].filter((sentence) => sentence !== '')
+  if (alerts.length > 0) rows.add([text(alerts.join(' '), 'alert')])
   else rows.blank()
   rows.blank()
 
   addPositions(rows, breakdown, bands)
   addGroups(rows, breakdown)
+  if (breakdown.limits.length > 0) addLimits(rows, breakdown)
   if (typeof tails !== 'string') addTails(rows, breakdown, tails)
   if (active) addActive(rows, active, breakdown.horizon)
   if (currency) addCurrency(rows, breakdown, currency)
@@ -186,7 +196,12 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
   const widthOf = new Map(HEADS.map(([column, , width]) => [column, width]))
   return {
     cells: rows.cells,
-    widths: [30, ...groupHeaders.map(() => 16), ...columns.map((column) => widthOf.get(column) ?? 12), 30],
+    widths: [
+      30,
+      ...groupHeaders.map(() => (breakdown.limits.length > 0 ? 20 : 16)),
+      ...columns.map((column) => widthOf.get(column) ?? 12),
+      30,
+    ],
     numeric: [false, ...groupHeaders.map(() => false), ...columns.map(() => true), false],
     ...(rows.levels.some((level) => level > 0) ? { levels: rows.levels } : {}),
   }
@@ -373,6 +388,86 @@ function nestingOf(groups: readonly NestedGroup[]): readonly string[] {
 
 const indented = (label: string, depth: number): string => `${'\u2003'.repeat(depth)}${label}`
 
+/** What a limit's columns of figures hold, in their order: these rows have fewer than those of positions, and stand close together. */
+const LIMIT_HEADS = [
+  'Figure',
+  'Soft limit',
+  'Hard limit',
+  'Status',
+  'Headroom',
+  'Used',
+  'Within estimation error',
+] as const
+
+/** Whether the band of a figure holds one of its limits; blank where there is no band. */
+const WITHIN_ERROR = { true: 'yes', false: 'no', null: '' } as const
+
+function addLimits(rows: Rows, breakdown: Breakdown): void {
+  const { limits, bands } = breakdown
+  const add = (
+    labels: readonly TableCell[],
+    figures: readonly TableCell[],
+    note: string,
+    mark?: Mark,
+  ): void =>
+    rows.row(
+      labels,
+      Object.fromEntries(figures.map((cell, k) => [rows.columns[k]!, cell])) as { [C in Column]?: TableCell },
+      note,
+      mark,
+    )
+  // with no group column beside it the measure stands behind what it is a measure of
+  const labels = (on: string, measure: string, mark?: Mark): readonly TableCell[] =>
+    rows.labels > 1 ? [text(on, mark), text(measure, mark)] : [text(`${on}: ${measure}`, mark)]
+  rows.blank()
+  rows.add([text('Limits', 'section')])
+  rows.add([text(`${limitsSummary(limits)}.`, 'note')])
+  for (const sentence of readingOfLimits(breakdown)) rows.add([text(sentence, 'note')])
+  add(
+    labels('Limit on', 'Measure', 'head'),
+    LIMIT_HEADS.map((head) => text(head, 'head')),
+    'Note',
+    'head',
+  )
+  for (const { limit, figure, headroom, used, status, why, withinError, errorWhy } of limits) {
+    const format = limit.measure === 'share of risk' ? SHARE : PERCENT
+    const { word, mark } = LIMIT_STATUS[status]
+    const [on, ...measure] = labels(limitOn(limit), LIMIT_MEASURES[limit.measure].label)
+    add(
+      [{ ...on!, ...(limit.cell ? { link: limit.cell } : {}) }, ...measure],
+      [
+        number(figure, format),
+        number(limit.soft, format),
+        number(limit.hard, format),
+        text(`${mark} ${word}`, status === 'breach' ? 'alert' : undefined),
+        number(headroom, format),
+        number(used, '0%'),
+        text(WITHIN_ERROR[`${withinError}`]),
+      ],
+      why ?? (typeof bands === 'string' || limit.measure === 'weight' ? '' : (errorWhy ?? '')),
+    )
+  }
+}
+
+/** What has to be known to read the limits: what is counted how, and of what kind the figures are. */
+function readingOfLimits({ limits, horizon, bands, tails }: Breakdown): readonly string[] {
+  const has = (...measures: readonly LimitState['limit']['measure'][]): boolean =>
+    limits.some(({ limit }) => measures.includes(limit.measure))
+  return [
+    'The status follows the figure alone. Headroom and use are counted to the hard limit, or to the soft one where there is no other.',
+    typeof bands === 'string'
+      ? ''
+      : 'Within estimation error: the 95% band of the figure holds one of its limits, so that the status might be another.',
+    has('weight') ? 'Weights are taken without their signs; that of a group is its net weight.' : '',
+    has('volatility', 'tracking error', 'contribution to risk', 'stand-alone risk')
+      ? `Volatility, tracking error, contributions and stand-alone risk are ${horizon === 'a year' ? 'by the year' : 'per period'}.`
+      : '',
+    has('value at risk', 'expected shortfall') && typeof tails !== 'string'
+      ? `Value at risk and expected shortfall: ${tails.label}.`
+      : '',
+  ].filter((sentence) => sentence !== '')
+}
+
 function addTails(
   rows: Rows,
   breakdown: Breakdown,
@@ -383,11 +478,7 @@ function addTails(
   rows.add([text(`Large losses: ${label}`, 'section')])
   rows.figure('Value at risk', number(risk.valueAtRisk, PERCENT), `${method}.`)
   if (risk.standardError !== null)
-    rows.figure(
-      'Standard error of value at risk',
-      number(risk.standardError, PERCENT),
-      errorNote.charAt(0).toUpperCase() + errorNote.slice(1),
-    )
+    rows.figure('Standard error of value at risk', number(risk.standardError, PERCENT), capital(errorNote))
   if (risk.shortfall !== null) rows.figure('Expected shortfall', number(risk.shortfall, PERCENT))
   // one row whatever it says: a new weight must not move the rows below
   rows.add([text(partsWithheld ?? difference ?? '', 'note')])

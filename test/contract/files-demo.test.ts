@@ -64,7 +64,7 @@ it('the desk opens it whole, and the functions in its model agree with the defin
     host.register(JSON.parse(await describeFunctions('src/sheet/functions.ts')) as FunctionsMetadata, 'POISE')
     associateFunctions(worksheetFunctions)
     const report = await openWorkbook(grid, committed, new Map(), 'demo.xlsx')
-    expect(sentenceOf(report)).toBe('Opened 5 sheets.')
+    expect(sentenceOf(report)).toBe('Opened 6 sheets.')
 
     const sheet = grid.api.getActiveWorkbook()?.getSheetByName('Model')
     const spilled = grid.univer.__getInjector().get(FormulaDataModel).getArrayFormulaCellData()

@@ -7,8 +7,6 @@ const LEFT_OUT: Readonly<Record<string, string>> = {
   'enb-two-assets': 'effective numbers of uncorrelated bets, another figure than that of positions here',
   'ewma-half-life': 'a logarithm, shown by the pane and not a function of its own',
   'hull-ewma-5.2': 'updates around a mean of zero, which no estimator here does',
-  'ucits-var-limits': 'limits are not set by this program',
-  'us-derivatives-rule-limits': 'limits are not set by this program',
   'basel-1996-multipliers': 'a framework that the one of 2019 replaced',
   'srri-bands': 'a regulator’s scale that is not shown',
   'priips-mrm-classes': 'a regulator’s scale that is not shown',
