@@ -119,7 +119,7 @@ export function sizingOf(
     curve: [...places].sort((a, b) => a - b).map(at),
     marks,
     changeIfRemoved: today === 0 ? 0 : removals(model, weights, financing).change[position]! * scale,
-    notes: notesOf(name, course, marks, direction, weights, position, financing),
+    notes: notesOf(name, course, marks, [left, right], position, financing),
   }
 }
 
@@ -181,15 +181,14 @@ function stretchOf(
 
 function notesOf(
   name: string,
-  course: Course,
+  { leastAt, weights, direction }: Course,
   marks: readonly SizingMark[],
-  direction: Float64Array,
-  weights: Float64Array,
+  [left, right]: readonly [number, number],
   position: number,
   financing: Financing,
 ): string[] {
   const notes: string[] = []
-  if (course.leastAt === null)
+  if (leastAt === null)
     notes.push(
       `The weight of ${quote(name)} changes nothing about the portfolio’s risk with this financing, so that no weight has least risk.`,
     )
@@ -205,8 +204,12 @@ function notesOf(
           0,
         )} of positions for 100% of money.`,
       )
-    if (marks.some(({ weight, shown }) => shown && (weight - weights[position]!) / net > 1))
-      notes.push('To the right of where the rest of the book is used up, its longs turn into shorts.')
+    // the factor of the rest, 1 - t / net, is 0 there
+    const usedUp = weights[position]! + net
+    if (usedUp > left && usedUp < right)
+      notes.push(
+        `At ${percentText(usedUp)} the rest of the book is used up: beyond, its longs turn into shorts.`,
+      )
   }
   return notes
 }

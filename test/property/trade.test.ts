@@ -356,7 +356,7 @@ describe('trades that lower risk', () => {
           const net = sum(weights) - weights[i]!
           const spread = gross + (financing.kind === 'pro rata' ? grossOf(model, weights) / Math.abs(net) : 0)
           const roundingAt = (t: number) =>
-            1e-11 * today + 100 * Math.sqrt(model.rounding) * (grossOf(model, weights) + Math.abs(t) * spread)
+            1e-10 * today + 100 * Math.sqrt(model.rounding) * (grossOf(model, weights) + Math.abs(t) * spread)
           if (trade) {
             const course = courseOf(model, weights, direction)
             if (!mayShort) expect(opensShort(trade.change)).toBe(false)
