@@ -8,6 +8,7 @@ import { loadExpressions, plainNumber } from './expression'
 import type { HoldingsReading } from './holdings'
 import type { Limit, LimitState } from './limits'
 import { judgeLimits } from './limits'
+import { plainName, UNASSIGNED } from './names'
 import type { Profile, ProfileBasis } from './profile'
 import type { Proposal } from './targets'
 import { countOf, listOf, percentText, quote } from './wording'
@@ -94,6 +95,7 @@ export interface WritePreview {
 export interface TradesState {
   /** holdings in their order, then candidates */
   readonly lines: readonly TradeLine[]
+  /** its fault may be a remark: a label that no holding has leaves the rule in force */
   readonly rule: { readonly text: string; readonly fault: TextFault | null }
   readonly financing: Financing
   readonly financingFault: string | null
@@ -352,6 +354,7 @@ export class Trades {
       ruleFault = rule.fault
       whole = false
     } else if (rule) {
+      ruleFault = strangeLabel(rule.rule, positions)
       positions.forEach((position, i) => {
         if (position.candidate || this.#typed.has(position.key)) return
         const { value, fault } = attempt(() => rule.rule.evaluate(this.#scope(ground, i)))
@@ -443,6 +446,7 @@ export class Trades {
       limit: position?.limit ?? null,
       benchmark: position?.benchmark ?? null,
       group: position?.groups[0] ?? null,
+      holding: position?.name ?? '',
     }
   }
 
@@ -526,6 +530,15 @@ export class Trades {
           `${listOf(gone)} ${gone.length === 1 ? 'was' : 'were'} held when the comparison began and ${gone.length === 1 ? 'is' : 'are'} not in the holdings now: the figures before are those without.`,
         ]
   }
+}
+
+/** A label in a rule that no holding has: a slip of the pen would match nothing and say nothing. The rule counts all the same. */
+function strangeLabel({ labels }: Rule, positions: readonly Position[]): TextFault | null {
+  const known = new Set(positions.map(({ groups }) => plainName(groups[0] ?? '') || plainName(UNASSIGNED)))
+  const strange = labels.find(({ label }) => !known.has(plainName(label)))
+  return strange
+    ? { sentence: `No holding is in a group ${quote(strange.label)}.`, column: strange.column }
+    : null
 }
 
 /**

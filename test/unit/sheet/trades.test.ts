@@ -190,6 +190,18 @@ describe('A list of trades', () => {
     expect(comparison).toMatch(/cannot be read yet/)
   })
 
+  test('says so where no holding is in the group a rule names', async () => {
+    const { books, settled, after } = await desk()
+    books.trade({ rule: 'group == "Lnad" ? 0 : weight' })
+    expect((await settled()).rule.fault).toEqual({
+      sentence: 'No holding is in a group “Lnad”.',
+      column: 9,
+    })
+    books.trade({ rule: 'group == "land" ? 0 : weight' })
+    expect((await settled()).rule.fault).toBeNull()
+    expect(after()).toEqual([0, 0, 0.2, 0.1])
+  })
+
   test('discarded, leaves no trace', async () => {
     const { books, line, trades, cells } = await desk()
     const [state, sheet] = [trades(), JSON.stringify(cells('Book!A1:D5'))]
