@@ -6,7 +6,7 @@ import { CURRENCY_READING } from './currency'
 import type { LimitState } from './limits'
 import { LIMIT_MEASURES, LIMIT_STATUS, limitOn, limitsSummary } from './limits'
 import type { NestedGroup } from './nesting'
-import type { Mark, Table, TableCell } from './table'
+import type { Mark, Table, TableBars, TableCell } from './table'
 import type { Tails } from './tail-section'
 import { BAND, bandText, CAUTION, countOf, dateText, percentText, POSITION_HEADS, quote } from './wording'
 
@@ -68,6 +68,7 @@ class Rows {
   readonly cells: TableCell[][] = []
   /** how far each row is folded under those before it: 0 outermost */
   readonly levels: number[] = []
+  readonly bars: TableBars[] = []
   readonly columns: readonly Column[]
   readonly labels: number
 
@@ -204,6 +205,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
     ],
     numeric: [false, ...groupHeaders.map(() => false), ...columns.map(() => true), false],
     ...(rows.levels.some((level) => level > 0) ? { levels: rows.levels } : {}),
+    ...(rows.bars.length > 0 ? { bars: rows.bars } : {}),
   }
 }
 
@@ -429,6 +431,13 @@ function addLimits(rows: Rows, breakdown: Breakdown): void {
     'Note',
     'head',
   )
+  // as long as the limit is used; full from the limit on
+  rows.bars.push({
+    column: rows.labels + LIMIT_HEADS.indexOf('Used'),
+    row: rows.cells.length,
+    rows: limits.length,
+    full: 1,
+  })
   for (const { limit, figure, headroom, used, status, why, withinError, errorWhy } of limits) {
     const format = limit.measure === 'share of risk' ? SHARE : PERCENT
     const { word, mark } = LIMIT_STATUS[status]
