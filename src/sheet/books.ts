@@ -456,6 +456,7 @@ class OpenBooks implements Books {
 
   trade(change: TradeChange): void {
     this.#book.trading.edit(change)
+    dropFault(this.#book, 'trades')
     this.#publish()
   }
 

@@ -573,7 +573,12 @@ export class LinkedBook {
       this.studies = afterChange(this.studies)
     // a limit that cannot be read leaves the figures as good as they are
     const stop = limits?.findings.find(({ weight }) => weight === 'stops')
-    this.faults = stop ? { limits: stop.sentence } : {}
+    // and what was said of the trades is answered by the next word about them
+    const { trades } = this.faults
+    this.faults = {
+      ...(stop ? { limits: stop.sentence } : {}),
+      ...(trades === undefined ? {} : { trades }),
+    }
     await this.#standForTrades({ blocks, book, settings: this.settings, breakdown: this.breakdown }, work)
   }
 

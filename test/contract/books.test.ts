@@ -696,3 +696,83 @@ describe('Settings', () => {
     )
   })
 })
+
+describe('Trades', () => {
+  const wide = HOLDINGS.map((row) => [...row])
+
+  test('applied in one step are followed by figures and table, and Undo puts back weights and formulas as they were', async () => {
+    const { books, compute, writeTable, quiet, valuesAt, user, settle, cells } = await desk({
+      holdings: wide,
+    })
+    user.type('Sheet1', 'C7', [['=-C4*0.4']])
+    await settle()
+    await compute()
+    await writeTable()
+    const before = await cells('Sheet1', 'A3:C7')
+    books.trade({ line: { key: 'Northern shares', entry: 'new weight', text: '40%' } })
+    books.trade({ line: { key: 'Harbour bonds', entry: 'change', text: '-5%' } })
+    await books.applyTrades({ replaceFormulas: false })
+    const after = await quiet()
+    expect(after.status).toEqual({ kind: 'up to date' })
+    expect(await valuesAt('Sheet1', 'C4:C7')).toEqual([[0.4], [0.3], [0.35], [expect.closeTo(-0.16, 12)]])
+    // the formula follows the weight it names, and the figures follow both
+    const expected = contributionsOf(RETURNS, [0.4, 0.3, 0.35, -0.16], 52)
+    expected.forEach((contribution, i) => {
+      expect(after.breakdown?.decomposition.contribution[i]).toBeCloseTo(contribution, 12)
+    })
+    const written = (await valuesAt('Risk', 'A1:H40')).find(([name]) => name === 'Northern shares')
+    expect(written?.some((value) => Math.abs(Number(value) - (expected[0] ?? 0)) < 1e-12)).toBe(true)
+
+    await books.undoTrades()
+    await quiet()
+    expect(await cells('Sheet1', 'A3:C7')).toEqual(before)
+  })
+
+  test('are refused by a protected sheet, and nothing has moved', async () => {
+    const { books, compute, quiet, valuesAt, office } = await desk()
+    await compute()
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.getItem('Sheet1').protection.protect()
+      await context.sync()
+    })
+    books.trade({ line: { key: 'Northern shares', entry: 'new weight', text: '40%' } })
+    await books.applyTrades({ replaceFormulas: false })
+    const { faults, trades, status } = await quiet()
+    expect(faults.trades).toMatch(/protected/)
+    expect(trades?.lines[0]?.typed?.text).toBe('40%')
+    expect(status).toEqual({ kind: 'up to date' })
+    expect(await valuesAt('Sheet1', 'C4:C7')).toEqual([[0.5], [0.3], [0.4], [-0.2]])
+  })
+
+  test('are refused where a weight was edited at the same moment, and the edit stands', async () => {
+    const { books, compute, quiet, valuesAt, user } = await desk()
+    await compute()
+    books.trade({ line: { key: 'Northern shares', entry: 'new weight', text: '40%' } })
+    // the edit has not been read when Apply is pressed
+    user.type('Sheet1', 'C4', [[0.55]])
+    await books.applyTrades({ replaceFormulas: false })
+    const { faults } = await quiet()
+    expect(faults.trades).toMatch(/Sheet1!C4|behind the sheet/)
+    expect((await valuesAt('Sheet1', 'C4'))[0]).toEqual([0.55])
+  })
+
+  test('in cells of another book bring that one along too', async () => {
+    const { books, compute, quiet, select } = await desk()
+    await compute()
+    await books.addBook()
+    select('Sheet1', 'A3:C7')
+    await books.takeSelection('holdings')
+    select('Returns', `A1:E${RETURNS.length}`)
+    await books.takeSelection('returns')
+    await books.compute()
+    await quiet()
+    await books.switchTo('1')
+    books.trade({ line: { key: 'Northern shares', entry: 'new weight', text: '40%' } })
+    await books.applyTrades({ replaceFormulas: false })
+    await quiet()
+    await books.switchTo('2')
+    const { breakdown, status } = await quiet()
+    expect(status).toEqual({ kind: 'up to date' })
+    expect(breakdown?.decomposition.weights[0]).toBe(0.4)
+  })
+})
