@@ -1,4 +1,5 @@
 import { overlap, type Area, type CellValue, type Json } from '../sheet'
+import { askBars, drawBar, sameBars, type Bar } from './bars'
 import { putLinkBack, targetOf, type LinkedCell, type Target } from './links'
 import { putBack, type Look } from './looks'
 import { FOLD_PREFIX, refold, type Folding } from './outline'
@@ -35,6 +36,8 @@ export interface Journal {
   readonly grounds: readonly Ground[]
   readonly looks: readonly Look[]
   readonly links: readonly LinkedCell[]
+  /** the bars of ours in the areas a write changes */
+  readonly bars: { readonly areas: readonly Area[]; readonly before: readonly Bar[] }
   /** null where the write groups no rows and ungroups none */
   readonly folding: Folding | null
   readonly widths: readonly { readonly area: Area; readonly points: number }[]
@@ -231,10 +234,16 @@ export async function restore(
   const there = new Set(sheets.items.map(({ name }) => name))
   // a sheet that is gone took its cells along: there is nothing left to put back
   const grounds = journal.grounds.filter(({ area }) => there.has(area.sheet))
+  const askedBars = askBars(
+    context,
+    journal.bars.areas.filter(({ sheet }) => there.has(sheet)),
+  )
   const now = await surveyGrounds(
     request,
     grounds.map(({ area }) => area),
   )
+  const bars = await askedBars(sync)
+  const barsBefore = journal.bars.before.filter(({ area }) => there.has(area.sheet))
   // setting a link may change what stands in its cell
   const links = journal.links.filter(({ area }) =>
     grounds.some((ground, k) => {
@@ -269,6 +278,9 @@ export async function restore(
       run: (context: Excel.RequestContext) => putLinkBack(context, cell),
     })),
     ...changed.flatMap(mendSteps),
+    ...(sameBars(bars.found, barsBefore)
+      ? []
+      : [step(bars.remove), ...barsBefore.map((bar) => step((context) => drawBar(context, bar)))]),
     ...journal.looks
       .filter(({ area }) => there.has(area.sheet))
       .map((look) => step((context) => putBack(context, look))),

@@ -12,6 +12,7 @@ interface Face {
   readonly align: string
   readonly vertical: string
   readonly wrap: boolean
+  readonly indent: number
   readonly top: Rule
   readonly bottom: Rule
 }
@@ -31,6 +32,7 @@ const PLAIN: Face = {
   align: 'General',
   vertical: 'Bottom',
   wrap: false,
+  indent: 0,
   top: NONE,
   bottom: NONE,
 }
@@ -68,6 +70,7 @@ export function undress(context: Excel.RequestContext, area: Area): void {
   range.format.horizontalAlignment = PLAIN.align as Excel.HorizontalAlignment
   range.format.verticalAlignment = PLAIN.vertical as Excel.VerticalAlignment
   range.format.wrapText = PLAIN.wrap
+  range.format.indentLevel = PLAIN.indent
   if (area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
 }
 
@@ -79,7 +82,7 @@ export function unrule(context: Excel.RequestContext, area: Area, ours: Area): v
 /** Sets a run of cells in one row off, in a table made plain before. */
 export function dress(
   context: Excel.RequestContext,
-  { area, bold, italic, align, vertical, wrap, top, bottom }: Look,
+  { area, bold, italic, align, vertical, wrap, indent, top, bottom }: Look,
 ): void {
   const range = rangeOf(context, area)
   if (bold) range.format.font.bold = true
@@ -87,6 +90,8 @@ export function dress(
   if (align !== PLAIN.align) range.format.horizontalAlignment = align as Excel.HorizontalAlignment
   if (vertical !== PLAIN.vertical) range.format.verticalAlignment = vertical as Excel.VerticalAlignment
   if (wrap) range.format.wrapText = true
+  // after the alignment, which an indent goes by
+  if (indent > 0) range.format.indentLevel = indent
   if (bottom !== PLAIN.bottom) rule(range, 'EdgeBottom', bottom)
   // a rule above is kept with the row above: taking away the rules inside a table finds it there on every host
   if (top !== PLAIN.top) rule(rangeOf(context, { ...area, row: area.row - 1 }), 'EdgeBottom', top)
@@ -100,6 +105,7 @@ export function putBack(context: Excel.RequestContext, look: Look): void {
   range.format.horizontalAlignment = look.align as Excel.HorizontalAlignment
   range.format.verticalAlignment = look.vertical as Excel.VerticalAlignment
   range.format.wrapText = look.wrap
+  range.format.indentLevel = look.indent
   if (look.area.rows > 1) rule(range, 'InsideHorizontal', PLAIN.top)
   rule(range, 'EdgeTop', look.top)
   rule(range, 'EdgeBottom', look.bottom)
@@ -135,7 +141,13 @@ export function looksOf(table: Table, target: Area): Look[] {
 
 function faceOf(table: Table, row: number, column: number): Face {
   const face = markedFace(table, row, column)
-  return table.fromTop ? { ...face, vertical: 'Top' } : face
+  const indent = table.cells[row]?.[column]?.indent ?? 0
+  return {
+    ...face,
+    ...(table.fromTop && { vertical: 'Top' }),
+    // only what begins at an edge can keep off it
+    ...(indent > 0 && { indent, align: 'Left' }),
+  }
 }
 
 function markedFace(table: Table, row: number, column: number): Face {
@@ -152,6 +164,7 @@ const sameFace = (a: Face, b: Face): boolean =>
   a.align === b.align &&
   a.vertical === b.vertical &&
   a.wrap === b.wrap &&
+  a.indent === b.indent &&
   a.top === b.top &&
   a.bottom === b.bottom
 
@@ -168,7 +181,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
   while (open.length > 0) {
     const asked = open.map((area) => {
       const { format } = rangeOf(context, area)
-      format.load('horizontalAlignment,verticalAlignment,wrapText')
+      format.load('horizontalAlignment,verticalAlignment,wrapText,indentLevel')
       format.font.load('bold,italic')
       const edges = (
         ['EdgeTop', 'EdgeBottom', ...(area.rows > 1 ? ['InsideHorizontal' as const] : [])] as const
@@ -186,6 +199,7 @@ export async function surveyLooks({ context, sync }: Request, areas: readonly Ar
         align: format.horizontalAlignment as string | null,
         vertical: format.verticalAlignment as string | null,
         wrap: format.wrapText as boolean | null,
+        indent: format.indentLevel as number | null,
         top,
         bottom,
       }

@@ -16,6 +16,7 @@ import {
   type TableCell,
   type WritePlan,
 } from '../sheet'
+import { askBars, barsOf, drawBar, sameBars } from './bars'
 import { entryStep, groundOf, runsOf, surveyRuns, type Run } from './entries'
 import { absoluteReference, areasIn, SHEET_COLUMNS, SHEET_ROWS, without } from './addresses'
 import {
@@ -139,6 +140,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       })),
       looks: [],
       links: [],
+      bars: { areas: [], before: [] },
       folding: null,
       widths: [],
       names: {},
@@ -217,7 +219,9 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       return fill ? afterOf(fill.patch.table) : null
     }
     const areas = onOld.flatMap((fill) => fill.areas)
+    const askedBars = askBars(context, areas)
     const surveyed = await surveyGrounds(request, areas)
+    const bars = await askedBars(sync)
     const refolding = askRefolding(context, fills, there, rememberedFolds(names.items))
     const spilled = await refuseObstacles(request, onOld, surveyed)
     const grounds = surveyed.map(({ area, typed, formats }): Ground => ({
@@ -258,6 +262,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       grounds: [...entered.map(groundOf), ...grounds],
       looks,
       links,
+      bars: { areas, before: bars.found },
       folding: folding && { before: folding.before, after: folding.after },
       widths: wider.flatMap(({ area, format }) => (format ? [{ area, points: format.columnWidth }] : [])),
       names: Object.fromEntries([
@@ -269,6 +274,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       ),
     }
 
+    const wanted = fills.flatMap(({ patch, target }) => barsOf(patch.table, target))
+    const redraws = !sameBars(bars.found, wanted)
     const steps: Step[] = [
       ...entered.map(entryStep),
       ...(makes === null ? [] : [step(({ workbook }) => void workbook.worksheets.add(makes))]),
@@ -281,6 +288,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         step((queue) => undress(queue, target)),
         ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look))),
       ]),
+      ...(redraws ? [step(bars.remove), ...wanted.map((bar) => step((queue) => drawBar(queue, bar)))] : []),
       ...wider.map(({ area, points }) =>
         step((queue) => void (rangeOf(queue, area).format.columnWidth = points)),
       ),

@@ -12,8 +12,20 @@ export interface TableCell {
   /** number format in the en-US notation; text cells carry '@' */
   readonly format: string
   readonly mark?: Mark
+  /** steps the text stands in from the left edge, each about as wide as a character or two, so that it keeps off a number before it */
+  readonly indent?: number
   /** where a press on the cell leads */
   readonly link?: Area
+}
+
+/** Bars behind the numbers of a part of a column, as long as each is of a whole: nothing at 0 or less, the cell full from `full` on. */
+export interface TableBars {
+  /** all counted from 0 within the table */
+  readonly column: number
+  readonly row: number
+  readonly rows: number
+  /** above 0 */
+  readonly full: number
 }
 
 /** A rectangle of cells as plain data: what is written to a sheet, shown in the pane or copied. */
@@ -28,4 +40,5 @@ export interface Table {
   readonly fromTop?: boolean
   /** how far each row is folded under those before it, 0 outermost; absent where nothing folds */
   readonly levels?: readonly number[]
+  readonly bars?: readonly TableBars[]
 }

@@ -16,7 +16,7 @@ import { pack, textOf, unpack } from '../../src/desk/files/archive'
 import { needsArray, shownFormula, storedFormula } from '../../src/desk/files/formula-text'
 import { createCustomFunctions, type CustomFunctionsStandIn } from '../../src/desk/functions'
 import { headlessGrid, type Grid } from '../../src/desk/grid'
-import { levelOf, linkOf, withLevel, withLink } from '../../src/desk/office'
+import { barOf, levelOf, linkOf, withBar, withLevel, withLink } from '../../src/desk/office'
 
 let grid: Grid
 let functions: CustomFunctionsStandIn
@@ -321,6 +321,53 @@ describe('names and tables', () => {
       { name: 'Holdings', range: { startRow: 0, endRow: 2, startColumn: 0, endColumn: 1 } },
     ])
     expect([cell('A1').v, cell('B1').v, cell('B3').v]).toEqual(['Name', 'Weight', 0.25])
+  })
+})
+
+describe('data bars', () => {
+  const bar = (id: string, full: string) => ({
+    id,
+    lower: { type: 'Number', formula: '0' },
+    upper: { type: 'Number', formula: full },
+    fill: '#A6ACB5',
+    border: '',
+    gradient: false,
+    direction: 'Context',
+  })
+  const filled = () =>
+    show({
+      A1: { v: 0.5, ...withBar(bar('one', '1')) },
+      A2: { v: 1.2, ...withBar(bar('one', '1')) },
+      B2: { v: 'out', ...withBar(bar('two', '2.5'), withLink({ address: 'https://example.org' })) },
+      A4: { v: 0.1, ...withBar(bar('one', '1')) },
+    })
+
+  it('come back with their ends and colour, beside links', async () => {
+    await filled()
+    const { report } = await again()
+    expect(report.notKept).toEqual([])
+    const one = barOf(cell('A1'))
+    expect(one).toEqual(bar(one?.id ?? '', '1'))
+    expect(['A2', 'A4', 'B1'].map((address) => barOf(cell(address))?.id)).toEqual([
+      one?.id,
+      one?.id,
+      undefined,
+    ])
+    const two = barOf(cell('B2'))
+    expect(two).toEqual(bar(two?.id ?? '', '2.5'))
+    expect(two?.id).not.toBe(one?.id)
+    expect(linkOf(cell('B2'))).toEqual({ address: 'https://example.org' })
+  })
+
+  it('stand in the file as the format has them', async () => {
+    await filled()
+    const sheet = textOf(await unpack((await again()).bytes), 'xl/worksheets/sheet1.xml')
+    // 18.3.1.18 (conditionalFormatting), 18.3.1.28 (dataBar); solid bars are [MS-XLSX] 2.6.27
+    expect(sheet).toContain('<conditionalFormatting sqref="A1:A2 A4"><cfRule type="dataBar"')
+    expect(sheet).toContain(
+      '<dataBar><cfvo type="num" val="0"/><cfvo type="num" val="1"/><color rgb="FFA6ACB5"/></dataBar>',
+    )
+    expect(sheet).toMatch(/<x14:dataBar [^>]*gradient="0"/)
   })
 })
 

@@ -128,6 +128,25 @@ const cases: Record<string, (opened: Opened) => Promise<WritePlan> | WritePlan> 
       ],
     }
   },
+  'a write whose bars and indents are others than the earlier table’s, beside a bar of the user’s': async ({
+    book,
+    office,
+  }) => {
+    const barred = (full: number, rows: number) => {
+      const table = breakdown([0.5, 0.2, 0.3])
+      const cells = table.cells.map((row, r) =>
+        row.map((cell, c) => (c === 0 && r > 2 ? { ...cell, indent: rows } : cell)),
+      )
+      return { ...table, cells, bars: [{ column: 1, row: 2, rows, full }] }
+    }
+    await book.write({ patches: [{ at, table: barred(1, 3), over: 'blank' }] })
+    await office.Excel.run(async (context) => {
+      const { conditionalFormats } = context.workbook.worksheets.getItem('Sheet1').getRange('C7')
+      conditionalFormats.add('DataBar').dataBar.positiveFormat.fillColor = '#00FF00'
+      await context.sync()
+    })
+    return { patches: [{ at, table: barred(2, 2), over: 'blank', ours: area('B2:C7') }] }
+  },
   'a refresh of values and a setting': async ({ user, book }) => {
     user.type('Sheet1', 'B10', '=SUM(C4:C6)')
     await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }], remember: { seen: 1 } })

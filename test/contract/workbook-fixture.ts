@@ -2,7 +2,7 @@
 import { CellValueType } from '@univerjs/core'
 import { VerticalAlign, WrapStrategy } from '@univerjs/core'
 import { headlessGrid } from '../../src/desk/grid'
-import { createOffice, levelOf, linkOf, userOf, type OfficeOptions } from '../../src/desk/office'
+import { barOf, createOffice, levelOf, linkOf, userOf, type OfficeOptions } from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
 import type { Table, TableCell, Workbook } from '../../src/sheet'
 
@@ -34,7 +34,7 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
       const rules: Record<string, unknown> = {}
       const inner = sheet.getSheet()
       inner.getCellMatrix().forValue((row, column, cell) => {
-        const { n, bl, it, ht, vt, tb, ul, cl, ff, fs } = inner.getComposedCellStyle(row, column)
+        const { n, bl, it, ht, vt, tb, ul, cl, ff, fs, pd } = inner.getComposedCellStyle(row, column)
         // neighbours share a rule, whichever of them the grid keeps it with: it is told as the one under the upper row
         const { t: over, b: under } = inner.getComposedCellStyle(row, column).bd ?? {}
         if (over) rules[`R${row}C${column + 1}`] = over
@@ -51,6 +51,9 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
           vt: vt === VerticalAlign.BOTTOM ? null : vt || null,
           wrapped: tb === WrapStrategy.WRAP || null,
           link: linkOf(cell),
+          // the name the host gives a bar says nothing
+          bar: barOf(cell) && { ...barOf(cell), id: null },
+          indent: pd?.l,
           // what a cell looks like without a style of its own says nothing
           underlined: ul?.s || null,
           colour: cl?.rgb === '#000000' ? null : cl?.rgb,

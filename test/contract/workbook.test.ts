@@ -2,7 +2,7 @@
  * The Workbook port over the strict stand-in for the Office JavaScript API, promise by promise. All numbers are entered by the tests
  * themselves and handed through unchanged, so they are compared exactly.
  */
-import { addressOf, parseAddress, type Area, type WorkbookEvent } from '../../src/sheet'
+import { addressOf, parseAddress, type Area, type Table, type WorkbookEvent } from '../../src/sheet'
 import {
   blank,
   breakdown,
@@ -666,6 +666,104 @@ describe('Links and groups', () => {
     expect((await cells('Sheet1', 'B2:C4')).values).toEqual(valuesOf(fresh))
     expect(await links(opened, 'B2:B4')).toEqual([['Sheet1!H1'], ['Sheet1!H2'], ['Sheet1!H3']])
     expect(levels(opened)).toEqual([0, 0, 1, 1, 0, 0, 0, 0])
+  })
+})
+
+describe('Bars and indents', () => {
+  const barred = (more: Partial<Table> = {}): Table => ({
+    ...breakdown(),
+    bars: [{ column: 1, row: 2, rows: 3, full: 1 }],
+    ...more,
+  })
+  const barsOf = (office: ReturnType<typeof open>['office'], address: string) =>
+    office.Excel.run(async (context) => {
+      const formats = context.workbook.worksheets
+        .getItem('Sheet1')
+        .getRange(address)
+        .conditionalFormats.load('items/type')
+      await context.sync()
+      const found = formats.items.map(({ dataBar, ...format }) => {
+        void format
+        dataBar.load('lowerBoundRule,upperBoundRule')
+        dataBar.positiveFormat.load('fillColor,gradientFill')
+        return dataBar
+      })
+      const ranges = formats.items.map((format) => format.getRanges().load('address'))
+      await context.sync()
+      return found.map(({ lowerBoundRule, upperBoundRule, positiveFormat }, k) => ({
+        lies: ranges[k]?.address,
+        from: lowerBoundRule.formula,
+        to: upperBoundRule.formula,
+        colour: positiveFormat.fillColor,
+        fades: positiveFormat.gradientFill,
+      }))
+    })
+  const grey = (lies: string, to = '1') => ({ lies, from: '0', to, colour: '#A6ACB5', fades: false })
+
+  test('a bar lies behind the numbers it is for, from nothing to the whole', async () => {
+    const { book, office } = open()
+    await book.write({ patches: [{ at, table: barred(), over: 'blank' }] })
+    expect(await barsOf(office, 'A1:F20')).toEqual([grey('Sheet1!C4:C6')])
+  })
+
+  test('a later table takes its own bars along and leaves those of the user', async () => {
+    const { book, office, user } = open()
+    await book.write({ patches: [{ at, table: barred(), over: 'blank' }] })
+    await office.Excel.run(async (context) => {
+      const { conditionalFormats } = context.workbook.worksheets.getItem('Sheet1').getRange('B4:B5')
+      const { dataBar } = conditionalFormats.add('DataBar')
+      dataBar.positiveFormat.fillColor = '#00FF00'
+      await context.sync()
+    })
+    const mine = { lies: 'Sheet1!B4:B5', from: undefined, to: undefined, colour: '#00FF00', fades: true }
+    user.insertRows('Sheet1', 1, 2)
+    const ours = area('B4:C9')
+    const moved = { ...at, row: 3 }
+    const bars = [
+      { column: 1, row: 2, rows: 1, full: 0.5 },
+      { column: 1, row: 4, rows: 1, full: 1 },
+    ]
+    await book.write({ patches: [{ at: moved, table: barred({ bars }), over: 'blank', ours }] })
+    expect(await barsOf(office, 'A1:F20')).toEqual([
+      { ...mine, lies: 'Sheet1!B6:B7' },
+      grey('Sheet1!C6', '0.5'),
+      grey('Sheet1!C8'),
+    ])
+    await book.write({ patches: [{ at: moved, table: breakdown([1]), over: 'blank', ours }] })
+    expect(await barsOf(office, 'A1:F20')).toEqual([{ ...mine, lies: 'Sheet1!B6:B7' }])
+  })
+
+  test('bars that stay as they are are left alone', async () => {
+    const { book, office } = open()
+    await book.write({ patches: [{ at, table: barred(), over: 'blank' }] })
+    const idOf = () =>
+      office.Excel.run(async (context) => {
+        const { conditionalFormats } = context.workbook.worksheets.getItem('Sheet1').getRange('C4')
+        conditionalFormats.load('items/id')
+        await context.sync()
+        return conditionalFormats.items.map(({ id }) => id)
+      })
+    const before = await idOf()
+    await book.write({ patches: [{ at, table: barred(), over: 'blank', ours: area('B2:C7') }] })
+    expect(before).toHaveLength(1)
+    expect(await idOf()).toEqual(before)
+  })
+
+  test('a text stands in from the left by its indent, and a later table without one does not', async () => {
+    const { book, office } = open()
+    const indented = tableOf([[number(1), { ...text('a remark'), indent: 2 }]])
+    const looks = () =>
+      office.Excel.run(async (context) => {
+        const { format } = context.workbook.worksheets.getItem('Sheet1').getRange('C2')
+        format.load('indentLevel,horizontalAlignment')
+        await context.sync()
+        return [format.indentLevel, format.horizontalAlignment]
+      })
+    await book.write({ patches: [{ at, table: indented, over: 'blank' }] })
+    expect(await looks()).toEqual([2, 'Left'])
+    const plain = tableOf([[number(1), text('a remark')]])
+    await book.write({ patches: [{ at, table: plain, over: 'blank', ours: area('B2:C2') }] })
+    expect(await looks()).toEqual([0, 'General'])
   })
 })
 

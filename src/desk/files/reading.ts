@@ -13,9 +13,10 @@ import {
   type IWorksheetData,
 } from '@univerjs/core'
 import type { IDefinedNamesServiceParam } from '@univerjs/engine-formula'
-import { withLevel, withLink } from '../office'
+import { withBar, withLevel, withLink } from '../office'
 import { namesIn, takeLinks, textOf, unpack, type Parts, type StoredLink } from './archive'
 import { gridStyle, paletteOf, type Palette } from './cell-style'
+import { barLooksIn, gridBar, type BarLooks } from './data-bars'
 import { shownFormula } from './formula-text'
 import { DEFAULT_HEIGHT, DEFAULT_WIDTH, PIXELS, SETTINGS_SHEET, pixelsOf, type Settings } from './measures'
 
@@ -51,11 +52,12 @@ export async function readFile(
   const sheets = workbook.worksheets.filter((sheet) => sheet.name !== SETTINGS_SHEET)
   if (sheets.length === 0) throw new Error('The file holds no worksheet.')
   const losses = new Losses(parts)
+  const barLooks = barLooksIn(parts)
   const palette = paletteOf(textOf(parts, 'xl/theme/theme1.xml'))
   const ids = sheets.map((_, i) => `sheet-${i + 1}`)
   const converted = sheets.map((sheet, i): [string, Partial<IWorksheetData>] => [
     ids[i] ?? '',
-    gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, losses),
+    gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, barLooks, losses),
   ])
   const names = gridNames(
     parts,
@@ -148,6 +150,7 @@ function gridSheet(
   id: string,
   links: readonly StoredLink[],
   palette: Palette,
+  barLooks: BarLooks,
   losses: Losses,
 ): Partial<IWorksheetData> {
   const spilledInto = new Set<string>()
@@ -173,11 +176,22 @@ function gridSheet(
     for (let row = startRow; row <= Math.min(endRow, sheet.rowCount - 1); row++)
       for (let column = startColumn; column <= Math.min(endColumn, sheet.columnCount - 1); column++) {
         const line = (cellData[row] ??= {})
-        line[column] = { ...line[column], ...withLink(link) }
+        line[column] = { ...line[column], ...withLink(link, line[column]) }
       }
   }
   const { state, conditionalFormattings, autoFilter, sheetProtection } = sheet
-  losses.add('conditional format', conditionalFormattings.flatMap(({ rules }) => rules).length)
+  conditionalFormattings.forEach(({ ref, rules }, k) =>
+    rules.forEach((rule, r) => {
+      const bar = gridBar(rule, `${id}-bar-${k}-${r}`, barLooks)
+      if (!bar) return losses.add('conditional format')
+      for (const { startRow, startColumn, endRow, endColumn } of ref.split(' ').map(rangeOf))
+        for (let row = startRow; row <= Math.min(endRow, sheet.rowCount - 1); row++)
+          for (let column = startColumn; column <= Math.min(endColumn, sheet.columnCount - 1); column++) {
+            const line = (cellData[row] ??= {})
+            line[column] = { ...line[column], ...withBar(bar, line[column]) }
+          }
+    }),
+  )
   losses.add('filter', autoFilter ? 1 : 0)
   losses.add('protected sheet', sheetProtection ? 1 : 0)
   losses.add('data validation', Object.keys(sheet.model.dataValidations ?? {}).length)

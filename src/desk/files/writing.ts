@@ -22,9 +22,10 @@ import {
   IFunctionService,
 } from '@univerjs/engine-formula'
 import type { Grid } from '../grid'
-import { levelOf, linkOf, type Line } from '../office'
+import { barOf, levelOf, linkOf, type DataBar, type Line } from '../office'
 import { markSpilling, pack, putLinks, putNames, unpack, type StoredLink, type StoredName } from './archive'
 import { fileStyle } from './cell-style'
+import { fileRule } from './data-bars'
 import { needsArray, storedFormula } from './formula-text'
 import {
   CELL_LIMIT,
@@ -99,6 +100,7 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
       const link = linkOf(cell)
       if (link) linked.push({ ref: addressOf(at(row, column)), ...link })
     })
+    writeBars(target, cells)
     writeShape(target, sheet)
   }
   writeSettings(workbook, settings)
@@ -201,6 +203,27 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
       ? { ...common, state: 'frozen', xSplit, ySplit }
       : { ...common, state: 'normal' },
   ]
+}
+
+/** Writes each data bar once, over all cells that have it. */
+function writeBars(target: Worksheet, cells: Cells): void {
+  const bars = new Map<string, { readonly bar: DataBar; readonly places: IRange[] }>()
+  eachCell(cells, (cell, row, column) => {
+    const bar = barOf(cell)
+    if (!bar) return
+    const { places } = bars.get(bar.id) ?? { places: [] as IRange[] }
+    const above = places.findIndex(({ endRow, startColumn }) => endRow === row - 1 && startColumn === column)
+    const place = places[above]
+    if (place) places[above] = { ...place, endRow: row }
+    else places.push(at(row, column))
+    bars.set(bar.id, { bar, places })
+  })
+  ;[...bars.values()].forEach(({ bar, places }, k) => {
+    target.addConditionalFormatting({
+      ref: places.map(addressOf).join(' '),
+      rules: [fileRule(bar, k + 1)],
+    })
+  })
 }
 
 type Outline = NonNullable<Worksheet['properties']['outlineProperties']>

@@ -59,6 +59,7 @@ import type { Grid } from '../grid'
 import {
   COLUMNS,
   ROWS,
+  blocksOf,
   height,
   intersect,
   isEntireColumn,
@@ -67,7 +68,17 @@ import {
   width,
   type Rect,
 } from './addresses'
-import { levelOf, linkOf, withLevel, withLink, type Line, type Link } from './custom-data'
+import {
+  barOf,
+  levelOf,
+  linkOf,
+  withBar,
+  withLevel,
+  withLink,
+  type DataBar,
+  type Line,
+  type Link,
+} from './custom-data'
 import { OfficeError } from './error'
 
 export type CellValue = string | number | boolean
@@ -717,7 +728,54 @@ export class Sheet {
     this.hold(rect)
     this.#change(
       rect,
-      (row, column) => (link || this.link(rect.top + row, rect.left + column) ? withLink(link) : undefined),
+      (row, column) => {
+        const cell = this.#cell(rect.top + row, rect.left + column)
+        return link || linkOf(cell) ? withLink(link, cell) : undefined
+      },
+      false,
+    )
+  }
+
+  #cell(row: number, column: number): Nullable<ICellData> {
+    return this.#grid.getCellMatrix().getValue(row, column)
+  }
+
+  /** The data bars in a block, each once. */
+  bars(within: Rect): DataBar[] {
+    const found = new Map<string, DataBar>()
+    const { startRow, endRow, startColumn, endColumn } = this.rangeOf(within)
+    for (let row = startRow; row <= endRow; row++)
+      for (let column = startColumn; column <= endColumn; column++) {
+        const bar = barOf(this.#cell(row, column))
+        if (bar) found.set(bar.id, bar)
+      }
+    return [...found.values()]
+  }
+
+  /** The cells a data bar lies behind, and what it is; null when there is none of that id. */
+  bar(id: string): { readonly bar: DataBar; readonly rects: Rect[] } | null {
+    let bar: DataBar | null = null
+    const cells = new Map<number, number[]>()
+    this.#grid.getCellMatrix().forValue((row, column, cell) => {
+      const found = barOf(cell)
+      if (found?.id !== id) return
+      bar = found
+      cells.set(row, [...(cells.get(row) ?? []), column])
+    })
+    const rows = [...cells].sort(([a], [b]) => a - b)
+    return bar && { bar, rects: blocksOf(rows) }
+  }
+
+  /** Lays a data bar behind a block, or takes those behind it away. */
+  setBar(rect: Rect, bar: DataBar | null): void {
+    this.guard()
+    this.hold(rect)
+    this.#change(
+      rect,
+      (row, column) => {
+        const cell = this.#cell(rect.top + row, rect.left + column)
+        return bar || barOf(cell) ? withBar(bar, cell) : undefined
+      },
       false,
     )
   }

@@ -12,7 +12,17 @@ import { RequestContext, payloadSize, run, type Kind, type Operation, type Runti
 import { ROOT } from './workbook'
 
 export type { Culture, SheetExtras } from './book'
-export { levelOf, linkOf, withLevel, withLink, type Line, type Link } from './custom-data'
+export {
+  barOf,
+  levelOf,
+  linkOf,
+  withBar,
+  withLevel,
+  withLink,
+  type DataBar,
+  type Line,
+  type Link,
+} from './custom-data'
 export type { Theme } from './office'
 export { userOf, type User } from './user'
 

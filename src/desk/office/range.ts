@@ -27,6 +27,7 @@ import {
 } from './addresses'
 import { NO_CONTENT, type Sheet, type StoredCell } from './book'
 import { entered, shown } from './cells'
+import { FORMATS } from './conditional-formats'
 import { DEEPEST } from './custom-data'
 import { OfficeError } from './error'
 import type { Find, Kind, Scalar, Shift } from './request-context'
@@ -433,7 +434,7 @@ const FORMAT: Kind<Place> = {
     // The grid indents by padding; one step is about three characters, as in the host.
     indentLevel: styled(
       (style) => Math.round((style.pd?.l ?? 0) / 9),
-      (steps) => ({ pd: { l: 9 * steps } }),
+      (steps) => ({ pd: steps > 0 ? { l: 9 * steps } : null }),
     ),
     columnWidth: {
       read: (place) =>
@@ -720,6 +721,7 @@ export const RANGE: Kind<Place> = {
   parts: {
     worksheet: { kind: () => WORKSHEET, find: ({ sheet }) => sheet },
     format: { kind: () => FORMAT, find: (place) => place },
+    conditionalFormats: { kind: () => FORMATS, find: (place) => place },
   },
   finds: {
     getCell: {
