@@ -60,6 +60,7 @@ const MOST_ITERATIONS = 150
 const MOST_CUTS = 80
 /** From where else the search begins where the first end may not be the best. */
 const MOST_STARTS = 4
+const MOST_PUSHES = 8
 /** Multiplications in linear programs (some seconds) after which no other start is made, and after which all ends. */
 const ENOUGH_WORK = 2e8
 const MOST_WORK = 2e10
@@ -136,19 +137,28 @@ export function* smallestChange(model: RiskModel, problem: ChangeProblem): Gener
   const outer = yield* partOf(outerBound(search, best.point), 0.3, 0.4)
   const contradiction =
     outer.contradiction ?? ((yield* partOf(sharesContradict(search), 0.4, 0.4)) ? SHARES_CONTRADICT : null)
-  const smallestOfAll = () =>
-    best.point.over <= FEASIBLE && best.point.change <= outer.bound * (1 + 1e-7) + 1e-12
-  const others = contradiction === null && !smallestOfAll() ? MOST_STARTS : 0
-  for (let k = 0; k < others && !smallestOfAll() && search.work < ENOUGH_WORK; k++) {
-    const from = 0.4 + (0.6 * k) / others
+  const done = () =>
+    contradiction !== null ||
+    search.work > ENOUGH_WORK ||
+    (best.point.over <= FEASIBLE && best.point.change <= outer.bound * (1 + 1e-7) + 1e-12)
+  function* alsoFrom(start: Float64Array, from: number, to: number): Generator<number, void> {
+    const ended = yield* descend(search, start, from, to - from)
+    starts++
+    movedIn(search, ended).forEach((by, i) => (moved[i]! += by))
+    if (better(ended, best)) best = ended
+  }
+  for (let k = 0; k < MOST_STARTS && !done(); k++) {
+    const [from, to] = [0.4 + (0.3 * k) / MOST_STARTS, 0.4 + (0.3 * (k + 1)) / MOST_STARTS]
     const start =
       k === 0 && outer.weights
         ? outer.weights
         : yield* partOf(elsewhere(search, first.weights, moved), from, from)
-    const ended = yield* descend(search, start, from, 0.6 / others)
-    starts++
-    movedIn(search, ended).forEach((by, i) => (moved[i]! += by))
-    if (better(ended, best)) best = ended
+    yield* alsoFrom(start, from, to)
+  }
+  for (let k = 0; k < MOST_PUSHES && best.point.over > FEASIBLE && !done(); k++) {
+    const [from, to] = [0.7 + (0.3 * k) / MOST_PUSHES, 0.7 + (0.3 * (k + 1)) / MOST_PUSHES]
+    const start = yield* partOf(pushed(search, k), from, from)
+    if (start) yield* alsoFrom(start, from, to)
   }
 
   const point = polished(search, best.point)
@@ -410,6 +420,25 @@ function* elsewhere(
     if (point.excess[k]! > FEASIBLE) rows.push(rowAt(search, k, point))
   const prices = search.counts.map((count, i) => count * (1 + 4 * moved[i]!))
   return (yield* linearStep(search, rows, null, Infinity, prices)).weights
+}
+
+/** One of the riskiest positions far from today, up or down, others no more than that takes: where shares may fall only after they have risen. */
+function* pushed(search: Search, k: number): Generator<number, Float64Array | null> {
+  const { origin, deviations } = search
+  const riskiest = [...origin.keys()]
+    .filter((i) => search.lower[i]! < search.upper[i]!)
+    .sort((a, b) => deviations[b]! - deviations[a]!)
+  const i = riskiest[k >> 1]
+  if (i === undefined) return null
+  const by = 2 * origin.reduce((most, w) => Math.max(most, Math.abs(w)), 0)
+  const to = origin[i]! + (k % 2 === 0 ? by : -by)
+  const lower = search.lower.slice()
+  const upper = search.upper.slice()
+  lower[i] = upper[i] = Math.min(upper[i]!, Math.max(lower[i]!, to))
+  const pinned: Search = { ...search, lower, upper }
+  const { weights, hardExcess } = yield* linearStep(pinned, [], null, Infinity)
+  search.solved++
+  return hardExcess > NO_CHANGE ? null : weights
 }
 
 function* descend(
