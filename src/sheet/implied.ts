@@ -89,7 +89,7 @@ export function impliedReturnsOf(
         ? `Scaled so that the whole book earns the stated ${percentText(choice.value, 2)}: ${riskAversion === null ? 'no risk aversion follows' : `a risk aversion of ${numberText(riskAversion, 2)} follows`}.`
         : `At the stated risk aversion of ${numberText(choice.value, 2)}: return less half of it times variance is greatest at today’s weights.`,
       'Today’s weights are taken as the best without limits on them; where a limit binds, an implied return says less.',
-      'An implied return is what the weights ask for, not a forecast. Where the expected one is below it, the position is larger than that expectation alone would make it.',
+      'An implied return is what the weights ask for, not a forecast. Where the expected one is below it, return less half the risk aversion times variance is greater at a slightly smaller weight, other weights held.',
       'Expected return for each unit of marginal contribution to risk: alike for all positions where weights are the best for these expectations. Of a negative marginal contribution it is no measure of merit.',
       ...(blank > 0 ? ['The total of the expected returns is left out: not every holding has one.'] : []),
     ],
