@@ -12,8 +12,8 @@ export interface BudgetWeights {
   /** Whether the residual is at most 1e-10. */
   readonly converged: boolean
   /**
-   * Why it is not: a long-only mix was met whose variance rounding cannot tell from zero, or nearly so ("riskless-mix": budgets have no
-   * meaning beside it); rounding left nothing to gain ("rounding"); or the bound on the work was reached ("limit").
+   * Why it is not: a long-only mix was met with less than 1e-7 of its stand-alone risks ("riskless-mix": the search would only come
+   * closer and closer to one without any risk, where nothing is left to share); rounding left nothing to gain ("rounding"); or the bound on the work was reached ("limit").
    */
   readonly stopped: 'riskless-mix' | 'rounding' | 'limit' | null
   /** Steps of Newton's method. */
@@ -28,10 +28,14 @@ const MET = 1e-10
 /** Worth going on for: a last step takes most residuals below this, and small shares to nine digits of themselves. */
 const WANTED = 1e-12
 const WANTED_OF_EACH = 1e-9
+/** A variance this small beside the squared sum of stand-alone risks leaves no shares worth a budget. */
+const RISKLESS = 1e-14
 const MOST_STEPS = 200
 const MOST_PASSES = 10000
 /** Steps that lower neither the function nor the residual, after which rounding is taken to have the last word. */
 const PATIENCE = 4
+/** How much of itself an x may lose in one step: from far too small it comes back by doubling. */
+const SHRINK = 0.9
 
 /**
  * Long-only weights whose shares of risk equal given budgets; with equal budgets, equal risk contribution. They are x / sum x for the
@@ -162,7 +166,7 @@ interface Point {
   readonly relative: number
   /** The function to be minimised, less its constant 1/2. */
   readonly value: number
-  /** Rounding alone could have made the variance. */
+  /** Less than 1e-7 of the stand-alone risks is left, or what rounding could have made. */
   readonly riskless: boolean
 }
 
@@ -180,7 +184,7 @@ function pointAt({ model, variances, budgets }: Problem, weights: Float64Array):
   let gross = 0
   for (let i = 0; i < weights.length; i++) gross += weights[i]! * Math.sqrt(variances[i]!)
   // written so that what is not a number any more counts as riskless too
-  if (!(variance > model.rounding * gross * gross && gross < Infinity)) {
+  if (!(variance > Math.max(model.rounding, RISKLESS) * gross * gross && gross < Infinity)) {
     const undefinedGaps = { residual: Infinity, relative: Infinity, value: Infinity }
     return { x: weights, shares: marginals, ...undefinedGaps, riskless: true }
   }
@@ -274,8 +278,8 @@ function lineMinimum({ budgets }: Problem, { shares }: Point, { direction, curva
     if (s < 0) edge = Math.min(edge, -1 / s)
   }
   if (!(wanted > 0)) return 0
-  let [low, high] = [0, edge]
-  let t = Math.min(1, edge / 2)
+  let [low, high] = [0, SHRINK * edge]
+  let t = Math.min(1, high / 2)
   for (let k = 0; k < 100; k++) {
     let value = curvature
     let slope = curvature

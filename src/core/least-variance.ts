@@ -29,11 +29,11 @@ export type LeastVariance =
       readonly multiplier: number
       /**
        * How far the conditions of a minimum fail: (C w)_i = m between the bounds, no less than m at a lower and no more at an upper
-       * one. The largest amount in units of the position's correlation with the portfolio, (C w)_i / (sigma_i s); beside a millionth of the
-       * stand-alone risks where s is less than that.
+       * one. The largest amount in units of the position's correlation with the portfolio, (C w)_i / (sigma_i s); beside 1e-5 of the
+       * sum of stand-alone risks where s is less than that.
        */
       readonly residual: number
-      /** Whether the residual is at most 1e-10. */
+      /** Whether the residual is at most 1e-7. */
       readonly converged: boolean
       /** Why it is not: rounding left nothing to gain, or the bound on the steps was reached. */
       readonly stopped: 'rounding' | 'limit' | null
@@ -43,11 +43,11 @@ export type LeastVariance =
     }
 
 /** A residual that counts as none. */
-const MET = 1e-10
-/** Hedged to less than this of its stand-alone risks, a portfolio is measured by that. */
-const HEDGED = 1e-6
-/** A pivot this small beside its diagonal, for each position of the system, is rounding. */
-const SINGULAR = 8 * Number.EPSILON
+const MET = 1e-7
+/** A portfolio hedged to less than this of its stand-alone risks is measured by that: gradients are rounded beside the latter. */
+const HEDGED = 1e-5
+/** A pivot smaller than this beside its diagonal has lost half its digits, and is computed another way. */
+const NEARLY_SINGULAR = 1e-8
 const mostSteps = (size: number) => Math.min(20 * size + 100, 20000)
 
 /**
@@ -157,7 +157,7 @@ function checkBounds(size: number, { lower, upper, sum }: WeightBounds): void {
     if (lower[row]! <= upper[row]! && lower[row]! < Infinity && upper[row]! > -Infinity) continue
     throw new Fault(
       'out-of-range',
-      `lower: ${lower[row]} below an upper bound of ${upper[row]}`,
+      `lower: ${lower[row]} with an upper bound of ${upper[row]}`,
       'a lower bound that is no more than the upper one is needed',
       { argument: 'lower', row },
     )
@@ -250,11 +250,33 @@ class FreeSystem {
       row[k] = left
       pivot -= left * left
     }
-    if (!(pivot > SINGULAR * row.length * own)) return false
+    if (pivot < NEARLY_SINGULAR * own) pivot = this.#curvature(position, row.subarray(0, -1))
+    if (!(pivot > 0)) return false
     row[row.length - 1] = Math.sqrt(pivot)
     this.free.push(position)
     this.#rows.push(row)
     return true
+  }
+
+  /**
+   * A pivot by what it means: the curvature along the step that frees the position while all others stay at their minimum. A model of returns
+   * tells the variance of such a step far better than a difference of covariances would; 0 where it cannot tell it from none.
+   */
+  #curvature(position: number, row: Float64Array): number {
+    const { model, units, direction, free } = this
+    const step = new Float64Array(model.size)
+    const others = this.#backward(row.slice())
+    free.forEach((other, k) => (step[other] = -others[k]! / units[other]!))
+    step[position] = 1 / units[position]!
+    const { variance } = model.apply(step)
+    const gross = others.reduce((total, x) => total + Math.abs(x), 1)
+    const along = free.reduce(
+      (total, other, k) => total - others[k]! * direction[other]!,
+      direction[position]!,
+    )
+    const told = variance > model.rounding * gross * gross ? variance : 0
+    const ofSum = Math.abs(along) > model.size * Number.EPSILON * gross ? along * along : 0
+    return told + ofSum
   }
 
   remove(position: number): void {
@@ -280,15 +302,19 @@ class FreeSystem {
   /** A^-1 b over the free positions, b and the result one number for each of these. */
   solve(b: Float64Array): Float64Array {
     const x = b.slice()
-    const rows = this.#rows
     for (let k = 0; k < x.length; k++) {
-      const row = rows[k]!
+      const row = this.#rows[k]!
       let left = x[k]!
       for (let l = 0; l < k; l++) left -= row[l]! * x[l]!
       x[k] = left / row[k]!
     }
+    return this.#backward(x)
+  }
+
+  /** The second half of it; x is used up. */
+  #backward(x: Float64Array): Float64Array {
     for (let k = x.length - 1; k >= 0; k--) {
-      const row = rows[k]!
+      const row = this.#rows[k]!
       const value = (x[k] = x[k]! / row[k]!)
       for (let l = 0; l < k; l++) x[l] = x[l]! - row[l]! * value
     }

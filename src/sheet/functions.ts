@@ -4,6 +4,7 @@ import {
   covariance,
   Fault,
   groupDecomposition,
+  leastRiskWeights,
   logReturns,
   simpleReturns,
   standardErrors,
@@ -29,6 +30,7 @@ import {
   vectorOf,
   type Panel,
 } from './blocks'
+import { attempt } from './explain'
 import { groupsOf } from './names'
 import { blockMemo } from './memo'
 import { countOf, POSITION_HEADS } from './wording'
@@ -466,6 +468,97 @@ export function effective(weights: unknown[][], risk: unknown[][], estimator?: u
   return finite(defined(bookOf(weights, risk, null, estimator).decomposition.effectiveNumber))
 }
 
+/**
+ * Least-risk weight of each position: the weight at which its marginal contribution to risk is zero, all others held.
+ *
+ * @customfunction LEASTRISKWEIGHT
+ * @helpurl https://localhost:3000/help.html#leastriskweight
+ * @param weights Weights as fractions: one row or one column
+ * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns n weights as fractions; negative where a short position would give the least risk; blank for a position that never moves
+ * @remarks w_i - (C w)_i / C_ii, each on its own, with cash taking up the difference. An estimate from the numbers given, and no advice: moved all at
+ * once, positions end elsewhere.
+ * @throws Fault as VOLATILITY | "zero-risk" (none of the positions moves)
+ * @source Litterman (1996), Hot Spots and Hedges, JPM special issue, 52-75 (from memory)
+ * @cost as VOLATILITY
+ * @example worksheetFunctions.LEASTRISKWEIGHT([[.5], [.5]], [[.04, .01], [.01, .09]]) // [[-0.125], [-0.05556]]
+ */
+export function leastriskweight(weights: unknown[][], risk: unknown[][], estimator?: unknown): unknown[][] {
+  const { model, weights: placed, columnOf, across } = bookOf(weights, risk, null, estimator)
+  const least = leastRiskWeights(model, placed)
+  if (least.every(Number.isNaN)) {
+    throw new Fault('zero-risk', 'found no position that moves', 'a volatility above 0 is needed', {
+      argument: 'risk',
+    })
+  }
+  const picked = Array.from(columnOf, (column) => orBlank(least[column]!))
+  return across ? [picked] : picked.map((value) => [value])
+}
+
+/**
+ * Long-only weights, adding up to 1, whose shares of risk equal given budgets; equal risk contribution where none are given.
+ *
+ * @customfunction BUDGETWEIGHTS
+ * @helpurl https://localhost:3000/help.html#budgetweights
+ * @param risk Returns (one row a period, newest last, one column a position) or a covariance matrix
+ * @param budgets Shares of risk as fractions that add up to 1: one row or one column; equal ones where left out
+ * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
+ * @returns n weights as fractions, lying as budgets do, else one column
+ * @remarks w_i (C w)_i / s^2 = b_i to 1e-10; a budget of 0 gives a weight of 0. #N/A where no weights are found, as when some long-only mix has no
+ * risk at all. An estimate from the numbers given, and no advice.
+ * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "not-symmetric" | "correlation-matrix" |
+ *         "negative-variance" | "unknown-choice" | "out-of-range" (budgets) | "zero-risk" (a position that never moves; none found)
+ * @source Maillard, Roncalli & Teiletche (2010), JPM 36(4); Bruder & Roncalli (2012), Managing Risk Exposures Using the Risk Budgeting Approach;
+ *         method: Spinu (2013), SSRN 2297383 (the latter two from memory)
+ * @cost some hundred times that of VOLATILITY; on a block and budgets seen a moment ago, one comparison
+ * @example worksheetFunctions.BUDGETWEIGHTS([[.04, -.018], [-.018, .09]]) // [[0.6], [0.4]]
+ * @example worksheetFunctions.BUDGETWEIGHTS([[.04, 0], [0, .01]], [[.8, .2]]) // [[0.5, 0.5]]
+ */
+export function budgetweights(risk: unknown[][], budgets?: unknown[][], estimator?: unknown): number[][] {
+  const given = budgets === undefined || budgets === null ? null : vectorOf('budgets', budgets)
+  const { kept, how } = modelOf('risk', risk, estimator)
+  const { panel } = kept
+  const { columns } = panel
+  if (given && given.values.length !== columns) {
+    throw new Fault(
+      'shape',
+      `found ${countOf(given.values.length, 'budget')} for ${countOf(columns, 'column')} of risk`,
+      'one budget for each column is needed',
+      { argument: 'budgets' },
+    )
+  }
+  refuseHiddenBlanks('risk', panel)
+  const { value: found, fault } = attempt(() =>
+    kept.budgetWeights(how, given?.values ?? new Float64Array(columns).fill(1 / columns)),
+  )
+  if (fault) throw inCells(fault, panel, given?.across ?? false)
+  if (!found.converged) {
+    throw new Fault(
+      'zero-risk',
+      found.stopped === 'riskless-mix'
+        ? 'found a long-only mix with hardly any risk, beside which no shares of risk can be held to a budget'
+        : `found no weights that meet the budgets: the nearest miss one by ${found.residual.toPrecision(2)}`,
+      'positions that do not offset each other so closely are needed',
+      { argument: 'risk' },
+    )
+  }
+  const weights = Array.from(found.weights, finite)
+  return given?.across ? [weights] : weights.map((weight) => [weight])
+}
+
+/** The same fault with its place as the cells lie: core counts the columns of numbers, and budgets down. */
+function inCells(fault: Fault, panel: Panel, across: boolean): Fault {
+  const { argument, row, column } = fault.where
+  const place =
+    argument === 'risk' && column !== undefined
+      ? panel.placeOf(panel.kind === 'covariance' ? column : 0, column)
+      : argument === 'budgets' && row !== undefined
+        ? { row: across ? 0 : row, column: across ? row : 0 }
+        : {}
+  return new Fault(fault.code, fault.found, fault.needed, { ...fault.where, ...place })
+}
+
 /** Where the portfolio has no risk, whatever would divide by it. */
 const UNDEFINED = 'not defined'
 
@@ -711,6 +804,8 @@ export const worksheetFunctions: Readonly<Record<string, (...args: never[]) => u
   BETA: beta,
   DIVERSIFICATION: diversification,
   EFFECTIVE: effective,
+  LEASTRISKWEIGHT: leastriskweight,
+  BUDGETWEIGHTS: budgetweights,
   BREAKDOWN: breakdown,
   GROUPED: grouped,
   VALUEATRISK: valueatrisk,

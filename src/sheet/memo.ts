@@ -1,7 +1,10 @@
 import {
   decompose,
   estimateModel,
+  inOneGo,
   matrixModel,
+  riskBudgetWeights,
+  type BudgetWeights,
   type Decomposition,
   type EstimatedModel,
   type Estimator,
@@ -18,6 +21,8 @@ export interface KeptBlock {
   estimated(estimator: Estimator): EstimatedModel | null
   /** @throws Fault those of the models and of `decompose` */
   decomposition(estimator: Estimator, weights: Float64Array): Decomposition
+  /** @throws Fault those of the models and of `riskBudgetWeights` */
+  budgetWeights(estimator: Estimator, budgets: Float64Array): BudgetWeights
 }
 
 interface Entry extends KeptBlock {
@@ -53,13 +58,20 @@ function entryOf(panel: Panel, cells: CellsCopy): Entry {
     readonly model: RiskModel
     readonly estimated: EstimatedModel | null
     seen: Decomposition[]
+    budgeted: { readonly budgets: Float64Array; readonly weights: BudgetWeights }[]
   }[] = []
   const made = (estimator: Estimator) => {
     const key = JSON.stringify(estimator)
     const { kind, values, rows, columns } = panel
     const known = models.find((other) => other.key === key)
     const estimated = known || kind === 'covariance' ? null : estimateModel(values, rows, columns, estimator)
-    const one = known ?? { key, model: estimated ?? matrixModel(values, columns), estimated, seen: [] }
+    const one = known ?? {
+      key,
+      model: estimated ?? matrixModel(values, columns),
+      estimated,
+      seen: [],
+      budgeted: [],
+    }
     models = [one, ...models.filter((other) => other !== one)].slice(0, MOST_MODELS)
     return one
   }
@@ -75,6 +87,13 @@ function entryOf(panel: Panel, cells: CellsCopy): Entry {
       const d = known ?? decompose(one.model, weights)
       one.seen = [d, ...one.seen.filter((other) => other !== d)].slice(0, MOST_DECOMPOSITIONS)
       return d
+    },
+    budgetWeights(estimator, budgets) {
+      const one = made(estimator)
+      const known = one.budgeted.find((other) => other.budgets.every((budget, k) => budget === budgets[k]))
+      const found = known ?? { budgets, weights: inOneGo(riskBudgetWeights(one.model, budgets)) }
+      one.budgeted = [found, ...one.budgeted.filter((other) => other !== found)].slice(0, MOST_DECOMPOSITIONS)
+      return found.weights
     },
   }
 }

@@ -1,7 +1,10 @@
 import {
   decompose,
+  inOneGo,
+  leastVariance,
   matrixModel,
   returnsModel,
+  riskBudgetWeights,
   simpleReturns,
   type Decomposition,
   type RiskModel,
@@ -75,6 +78,16 @@ const model = ({ vol, corr }: Inputs): RiskModel => matrixModel(covarianceOf(vol
 const split = (inputs: Inputs, weights: readonly number[] = inputs.values ?? inputs.weights) =>
   decompose(model(inputs), Float64Array.from(weights))
 const times = (factor: number, values: Float64Array | null) => Float64Array.from(values!, (x) => x * factor)
+
+const equalRisk = (risk: RiskModel) =>
+  inOneGo(riskBudgetWeights(risk, new Float64Array(risk.size).fill(1 / risk.size)))
+const longOnlyLeast = (risk: RiskModel) => {
+  const { size } = risk
+  const bounds = { lower: new Float64Array(size), upper: new Float64Array(size).fill(1), sum: 1 }
+  const result = inOneGo(leastVariance(risk, bounds))
+  if (!result.feasible) throw new Error('a sum of 1 lies between 0 and 1 for each')
+  return result
+}
 
 /** Risk lost when position i is taken out and nothing else changes. */
 const lostWithout = (inputs: Inputs, i: number) => {
@@ -152,43 +165,36 @@ describe('published examples', () => {
   example('mrt-ew', (inputs) => figures(split(inputs)))
 
   example('mrt-mv', (inputs) => {
-    // Closed form on the printed support (asset 2 excluded): assets 3 and 4 first, which asset 1 does not correlate with.
-    const C = covarianceOf(inputs.vol, inputs.corr)
-    const [v1, v3, v4, c34] = [C[0]!, C[10]!, C[15]!, C[11]!]
-    const w3 = (v4 - c34) / (v3 + v4 - 2 * c34)
-    const v34 = (v3 * v4 - c34 * c34) / (v3 + v4 - 2 * c34)
-    const w1 = v34 / (v1 + v34)
-    const weights = [w1, 0, (1 - w1) * w3, (1 - w1) * (1 - w3)]
-    const { risk, percent, marginal } = figures(split(inputs, weights))
+    const { weights } = longOnlyLeast(model(inputs))
+    const { risk, percent, marginal } = figures(split(inputs, Array.from(weights)))
     return { weights, risk, percent, marginal }
   })
 
-  example('mrt-erc', (inputs, printed) => {
-    const { risk, marginal, percent } = figures(split(inputs, printed['weights']))
-    // printed to three digits, the weights give equal shares to three digits only
-    expect(absoluteGap(percent, printed['percent']!)).toBeLessThanOrEqual(0.001)
-    return { risk, marginal }
+  example('mrt-erc', (inputs) => {
+    const { weights } = equalRisk(model(inputs))
+    const { risk, marginal, percent } = figures(split(inputs, Array.from(weights)))
+    return { weights, risk, marginal, percent }
   })
 
-  example('mrt-const-corr-0.3', (inputs, printed) => {
+  example('mrt-const-corr-0.3', (inputs) => {
     const rho = inputs.constantCorr
     const corr = [0, 1, 2, 3].map((i) => [0, 1, 2, 3].map((j) => (i === j ? 1 : rho)))
-    const d = decompose(matrixModel(covarianceOf(inputs.vol, corr), 4), Float64Array.from(printed['erc']!))
-    expect(absoluteGap(d.share!, [0.25, 0.25, 0.25, 0.25])).toBeLessThanOrEqual(1e-12)
-    // equal risk contributions as weights: inverse stand-alone risk at constant correlation
-    const inverse = inputs.vol.map((v) => 1 / v)
-    return { erc: inverse.map((x) => x / inverse.reduce((a, b) => a + b, 0)) }
+    const risk = matrixModel(covarianceOf(inputs.vol, corr), 4)
+    return { erc: equalRisk(risk).weights, minVar: longOnlyLeast(risk).weights }
   })
 
   example('mrt-two-asset', (inputs, printed) => {
-    const w1 = printed['w1']![0]!
-    for (const rho of inputs.corrs) {
-      const C = covarianceOf(inputs.vol, correlated(rho))
-      const { share } = decompose(matrixModel(C, 2), Float64Array.of(w1, 1 - w1))
-      expect(absoluteGap(share!, [0.5, 0.5])).toBeLessThanOrEqual(1e-12)
-    }
-    const [a, b] = inputs.vol as [number, number]
-    return { w1: b / (a + b) }
+    const first = inputs.corrs.map(
+      (rho) => equalRisk(matrixModel(covarianceOf(inputs.vol, correlated(rho)), 2)).weights[0]!,
+    )
+    // one weight is printed for all correlations
+    expect(
+      absoluteGap(
+        first,
+        inputs.corrs.map(() => printed['w1']![0]!),
+      ),
+    ).toBeLessThanOrEqual(1e-9)
+    return { w1: first[0]! }
   })
 
   example('qian-6040', (inputs) => {

@@ -34,13 +34,15 @@ const released: Record<string, string> = {
   BETA: 'weights, risk, [estimator]',
   DIVERSIFICATION: 'weights, risk, [estimator]',
   EFFECTIVE: 'weights, risk, [estimator]',
+  LEASTRISKWEIGHT: 'weights, risk, [estimator]',
+  BUDGETWEIGHTS: 'risk, [budgets], [estimator]',
   BREAKDOWN: 'names, weights, risk, [periods_per_year], [estimator]',
   GROUPED: 'groups, weights, risk, [periods_per_year], [estimator]',
   VALUEATRISK: 'weights, risk, confidence, [periods], [method], [estimator]',
   SHORTFALL: 'weights, risk, confidence, [periods], [method], [estimator]',
   SHORTFALLPARTS: 'weights, risk, confidence, [periods], [method], [estimator]',
 }
-const blocks = ['prices', 'returns', 'weights', 'risk', 'names', 'groups']
+const blocks = ['prices', 'returns', 'weights', 'risk', 'budgets', 'names', 'groups']
 
 type Body = (...cells: unknown[]) => unknown
 
