@@ -27,6 +27,8 @@ export interface Financed {
  */
 export const LEAST_NET_SHARE = 0.1
 
+const NONE: ReadonlySet<number> = new Set()
+
 /** Changes whose sum is no more than their last digits need no financing. */
 const sumsToNothing = (sum: number, gross: number, count: number) =>
   Math.abs(sum) <= count * Number.EPSILON * gross
@@ -44,15 +46,22 @@ const sumsToNothing = (sum: number, gross: number, count: number) =>
  *
  * @param weights   n
  * @param changes   n; 0 where no change is wanted
+ * @param kept      positions whose weights are to stay, however the trades are paid for; left out: none
  * @throws Fault    "shape" | "not-a-number" | "out-of-range" (no such position; a rest that cannot finance) | "twice" (a
  *                  financing position with a change of its own)
  * @source          common practice, no source
  * @cost            O(n)
  * @example         financed(Float64Array.of(.5, .3, .2), Float64Array.of(.1, 0, 0), { kind: 'pro rata' }).changes // [0.1, -0.06, -0.04]
+ * @example         financed(Float64Array.of(.5, .3, .2), Float64Array.of(.1, 0, 0), { kind: 'pro rata' }, new Set([1])).changes // [0.1, 0, -0.1]
  * @example         financed(Float64Array.of(.5, .3, .2), Float64Array.of(.1, 0, 0), { kind: 'cash' }).cash // -0.1
  * @example         financed(Float64Array.of(.5, .3, -.3), Float64Array.of(.1, 0, 0), { kind: 'pro rata' }) // Fault "out-of-range"
  */
-export function financed(weights: Float64Array, changes: Float64Array, financing: Financing): Financed {
+export function financed(
+  weights: Float64Array,
+  changes: Float64Array,
+  financing: Financing,
+  kept: ReadonlySet<number> = NONE,
+): Financed {
   const size = weights.length
   checkBlock(weights, size, 1, 'weights')
   checkBlock(changes, size, 1, 'changes')
@@ -62,7 +71,7 @@ export function financed(weights: Float64Array, changes: Float64Array, financing
     sum += change
     gross += Math.abs(change)
   }
-  if (financing.kind === 'position') checkFinancingPosition(changes, financing.position)
+  if (financing.kind === 'position') checkFinancingPosition(changes, financing.position, kept)
   const all = changes.slice()
   if (financing.kind === 'cash') return { changes: all, cash: sum === 0 ? 0 : -sum, factor: null }
   if (sumsToNothing(sum, gross, size))
@@ -74,7 +83,7 @@ export function financed(weights: Float64Array, changes: Float64Array, financing
   let net = 0
   let restGross = 0
   for (let i = 0; i < size; i++) {
-    if (changes[i] !== 0) continue
+    if (changes[i] !== 0 || kept.has(i)) continue
     net += weights[i]!
     restGross += Math.abs(weights[i]!)
   }
@@ -88,7 +97,7 @@ export function financed(weights: Float64Array, changes: Float64Array, financing
       { argument: 'financing' },
     )
   }
-  for (let i = 0; i < size; i++) if (changes[i] === 0) all[i] = (-sum * weights[i]!) / net
+  for (let i = 0; i < size; i++) if (changes[i] === 0 && !kept.has(i)) all[i] = (-sum * weights[i]!) / net
   return { changes: all, cash: 0, factor: 1 - sum / net }
 }
 
@@ -96,12 +105,16 @@ const rounded = (value: number) => Number(value.toPrecision(4))
 
 const canFinance = (net: number, gross: number) => gross > 0 && Math.abs(net) >= LEAST_NET_SHARE * gross
 
-function checkFinancingPosition(changes: Float64Array, position: number): void {
+function checkFinancingPosition(
+  changes: Float64Array,
+  position: number,
+  kept: ReadonlySet<number> = NONE,
+): void {
   checkPosition(changes.length, position, 'financing')
-  if (changes[position] !== 0)
+  if (changes[position] !== 0 || kept.has(position))
     throw new Fault(
       'twice',
-      'financing: the position that finances has a change of its own',
+      'financing: the position that finances has a weight or a change of its own',
       'a position without one is needed',
       { argument: 'financing', row: position },
     )

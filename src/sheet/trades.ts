@@ -459,8 +459,10 @@ export class Trades {
       positions,
       ({ key, weight }) => this.#proposal?.weights.get(key) ?? weight,
     )
+    // a weight that is typed is meant, even where it is the one in the sheet
+    const kept = new Set([...positions.keys()].filter((i) => this.#typed.has(positions[i]?.key ?? '')))
     const { value, fault } = attempt(() =>
-      financed(weights, changes, financingOf(positions, this.#financing)),
+      financed(weights, changes, financingOf(positions, this.#financing), kept),
     )
     return fault
       ? { changes: null, fault: explain(fault, () => '') }

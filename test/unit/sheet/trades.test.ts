@@ -154,6 +154,10 @@ describe('A list of trades', () => {
       'financing',
       'typed',
     ])
+    // a weight that is typed stays, even where it is that of the sheet
+    line('Meadow', '40%')
+    closeTo(after(), [0.4, 0.3 * (4 / 5), 0.2 * (4 / 5), 0.2])
+    line('Meadow', '')
     books.trade({ financing: { kind: 'position', key: 'Meadow' } })
     closeTo(after(), [0.3, 0.3, 0.2, 0.2])
     line('Meadow', '1%')
