@@ -407,7 +407,8 @@ export function addCurvature(
   }
 }
 
-function columnOf({ model, columns }: LimitedBook, i: number): Float64Array {
+/** A column of C: one pass of the model, once. */
+export function columnOf({ model, columns }: LimitedBook, i: number): Float64Array {
   const known = columns.get(i)
   if (known) return known
   const unit = new Float64Array(model.size)

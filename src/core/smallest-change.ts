@@ -1,6 +1,7 @@
 import { LuDecomposition, CholeskyDecomposition, Matrix } from 'ml-matrix'
 import {
   addCurvature,
+  columnOf,
   FEASIBLE,
   gradientOf,
   limitedBook,
@@ -499,9 +500,15 @@ function* descend(
         break
       }
     } else if (!possible && brought <= NO_CHANGE * Math.min(1, radius) * Math.max(1, here.over)) {
-      // no small move lowers what is over
-      end = { ...end, stopped: false }
-      break
+      // no small move lowers what is over: back to where nothing was, if there is such a point, for shorter steps
+      if (best.over > FEASIBLE) {
+        end = { ...end, stopped: false }
+        break
+      }
+      here = best
+      rows = []
+      radius /= 16
+      continue
     }
 
     const finished =
@@ -522,10 +529,13 @@ function* descend(
       rows = []
       const progress =
         best.over > FEASIBLE ? here.over < best.over : here.over <= FEASIBLE && here.change < best.change
-      // back within limits and nothing won: the steps were too long
-      const round = !progress && here.over <= FEASIBLE
-      radius = round ? radius / 4 : Math.min(2 * largest, radius * 2)
       if (progress) best = here
+      radius = Math.min(2 * largest, radius * 2)
+      if (!progress && here.over <= FEASIBLE) {
+        // back within limits and nothing won: the steps were too long
+        here = best
+        radius /= 16
+      }
     } else if (!added) {
       radius /= 4
       if (radius < 1e-12 * largest) {
@@ -581,12 +591,19 @@ function* newton(
     const right = Matrix.zeros(size, 1)
     const curvature = Matrix.zeros(free.length, free.length)
     const slopes = Matrix.zeros(binding.length + extra, free.length)
-    binding.forEach((k, r) => {
+    // a pass of the model for each column not asked for before
+    for (let f = 0; f < free.length; f++) {
+      columnOf(search, free[f]!)
+      if (f % 16 === 15) yield 0
+    }
+    for (let r = 0; r < binding.length; r++) {
+      if (r % 8 === 7) yield 0
+      const k = binding[r]!
       const gradient = gradientOf(search, k, point)
       addCurvature(search, k, point, gradient, free, multipliers[r]!, curvature)
       free.forEach((i, at) => slopes.set(r, at, gradient[i]!))
       right.set(free.length + r, 0, -point.excess[k]!)
-    })
+    }
     if (extra) {
       free.forEach((_, at) => slopes.set(binding.length, at, 1))
       right.set(size - 1, 0, start - sumOf(weights))
