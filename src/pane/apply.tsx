@@ -1,7 +1,6 @@
 import { useState } from 'react'
 import { Button, Checkbox, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import {
-  CAUTION,
   countOf,
   numberText,
   percentText,
@@ -96,7 +95,9 @@ export function Apply({
 }) {
   const books = useBooks()
   const classes = { ...useStepStyles(), ...useStyles() }
-  const { preview, pending, applied, lines } = trades
+  const { preview, pending, applied, lines, comparison } = trades
+  // what keeps the trades from being compared is told where it stands
+  const refusals = preview.refusals.filter((refusal) => refusal !== comparison)
   const formulas = preview.lines.filter(({ formula }) => formula !== null).length
   const [replace, setReplace] = useState(false)
   const ready = preview.lines.length > 0 && preview.refusals.length === 0 && (formulas === 0 || replace)
@@ -118,7 +119,7 @@ export function Apply({
           Nothing to write: the sheet holds these weights.
         </p>
       )}
-      {preview.refusals.map((refusal) => (
+      {refusals.map((refusal) => (
         <FaultLine key={refusal} text={refusal} />
       ))}
       {formulas > 0 && (
@@ -151,7 +152,6 @@ export function Apply({
           starting point.
         </p>
       )}
-      <p className={mergeClasses(classes.small, classes.quiet)}>{CAUTION}</p>
     </Section>
   )
 }

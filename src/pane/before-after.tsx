@@ -6,6 +6,7 @@ import {
   limitsSummary,
   limitText,
   percentText,
+  quote,
   sharesWithheldOf,
   type Breakdown,
   type Comparison,
@@ -40,7 +41,7 @@ const paidBy = (financing: Financing): string =>
     ? 'cash; nothing else moves'
     : financing.kind === 'pro rata'
       ? 'the rest of the book, in proportion to its weights'
-      : financing.key
+      : `the holding ${quote(financing.key)}`
 
 // ---- the figures of the whole book
 
@@ -90,12 +91,12 @@ function totalRows(
   ]
 }
 
-/** How good the sensitivities were. */
+/** How good the sensitivities were, in as many decimals as tell the two apart. */
 function foretold({ before, after, firstOrder }: Comparison): string {
+  if (firstOrder === null) return 'Sensitivities foretell nothing here: there was no risk before.'
   const exact = after.decomposition.volatility
-  return firstOrder === null
-    ? 'Sensitivities foretell nothing here: there was no risk before.'
-    : `Sensitivities before the trades foretell a volatility of ${percentText(firstOrder.volatility, 2)}; exact ${percentText(exact, 2)}, ${percentText(before.decomposition.volatility, 2)} before.`
+  const digits = percentText(firstOrder.volatility, 2) === percentText(exact, 2) ? 4 : 2
+  return `Sensitivities foretell a volatility of ${percentText(firstOrder.volatility, digits)}, exact ${percentText(exact, digits)}; before the trades ${percentText(before.decomposition.volatility, digits)}.`
 }
 
 // ---- limits
@@ -106,6 +107,13 @@ const MOST_LIMITS = 8
 const isOver = ({ status }: LimitState): boolean => status === 'breach' || status === 'over soft'
 
 const orNone = (figure: number | null): string => (figure === null ? NONE : percentText(figure, 2))
+
+/** "soft limit 13.00%, hard limit 15.00%" */
+const edgesOf = ({ limit: { soft, hard } }: LimitState): string =>
+  [
+    ...(soft === null ? [] : [`soft limit ${percentText(soft, 2)}`]),
+    ...(hard === null ? [] : [`hard limit ${percentText(hard, 2)}`]),
+  ].join(', ')
 
 function Limits({ before, after }: { before: readonly LimitState[]; after: readonly LimitState[] }) {
   const classes = { ...useStepStyles(), ...useStyles() }
@@ -127,8 +135,7 @@ function Limits({ before, after }: { before: readonly LimitState[]; after: reado
               <span className={classes.mark}>
                 {then.status === now.status ? word(now) : `${word(then)} → ${word(now)}`}
               </span>
-              : {limitText(now.limit)}, {orNone(then.figure)} → {orNone(now.figure)}, limit{' '}
-              {percentText(now.most, 2)}
+              : {limitText(now.limit)}, {orNone(then.figure)} → {orNone(now.figure)}; {edgesOf(now)}
             </li>
           ))}
         </ul>

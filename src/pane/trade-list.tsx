@@ -23,7 +23,7 @@ const useStyles = makeStyles({
     boxSizing: 'border-box',
     width: '100%',
     minWidth: 0,
-    padding: '1px 4px',
+    padding: '1px 1px 1px 4px',
     border: 'none',
     borderBottom: `1px solid ${tokens.colorNeutralStrokeAccessible}`,
     borderRadius: `${tokens.borderRadiusSmall} ${tokens.borderRadiusSmall} 0 0`,
@@ -67,6 +67,7 @@ const useStyles = makeStyles({
     gridTemplateColumns: '96px minmax(0, 1fr)',
     columnGap: tokens.spacingHorizontalS,
   },
+  apart: { marginTop: tokens.spacingVerticalS },
   code: { fontFamily: tokens.fontFamilyMonospace },
   meaning: { margin: 0 },
   more: { justifySelf: 'start' },
@@ -104,8 +105,11 @@ const ORIGINS: { readonly [O in TradeLine['origin']]: string | null } = {
 }
 
 /** What moved a line, in the words below its name. */
-function marksOf({ before, sheet, origin, candidate }: TradeLine): readonly string[] {
-  const by = ORIGINS[origin]
+function marksOf(
+  { before, sheet, origin, candidate }: TradeLine,
+  payer: Financing['kind'],
+): readonly string[] {
+  const by = origin === 'financing' && payer === 'pro rata' ? payer : ORIGINS[origin]
   return [
     ...(candidate ? ['not held'] : []),
     ...(sheet !== before ? [`edited in the sheet: ${percentText(sheet, 2)}`] : []),
@@ -127,7 +131,7 @@ const sameLine = (a: TradeLine, b: TradeLine): boolean =>
 
 /** One position: its weight before, and the two fields that say the same thing in two ways, what it changes by and what it becomes. */
 const Line = memo(
-  function Line({ line, stop }: { line: TradeLine; stop: boolean }) {
+  function Line({ line, stop, payer }: { line: TradeLine; stop: boolean; payer: Financing['kind'] }) {
     const books = useBooks()
     const classes = { ...useTableStyles(), ...useStyles() }
     const id = useId()
@@ -154,7 +158,7 @@ const Line = memo(
         <tr data-key={key}>
           <th scope="row" className={mergeClasses(cell, classes.name)}>
             {key}
-            {marksOf(line).map((mark) => (
+            {marksOf(line, payer).map((mark) => (
               <div key={mark} className={classes.mark}>
                 {mark}
                 {candidate && mark === 'not held' && (
@@ -217,14 +221,14 @@ const Line = memo(
       </>
     )
   },
-  (a, b) => a.stop === b.stop && sameLine(a.line, b.line),
+  (a, b) => a.stop === b.stop && a.payer === b.payer && sameLine(a.line, b.line),
 )
 
 const COLUMNS = [
   ['Holding', null],
-  ['Before', 58],
-  ['Change', 66],
-  ['After', 66],
+  ['Before', 56],
+  ['Change', 62],
+  ['After', 64],
 ] as const
 
 /** Lines in an order that is kept, those that came since at the end. */
@@ -242,12 +246,12 @@ function inOrder(
 function Lines({
   lines,
   all,
-  label,
+  payer,
 }: {
   /** those to be shown */
   lines: readonly TradeLine[]
   all: readonly TradeLine[]
-  label: string
+  payer: Financing['kind']
 }) {
   const classes = { ...useTableStyles(), ...useStyles() }
   const [limit, setLimit] = useState(STEP)
@@ -279,7 +283,7 @@ function Lines({
   }
   return (
     <>
-      <table className={classes.table} aria-label={label}>
+      <table className={classes.table} aria-label="Trades">
         <colgroup>
           {COLUMNS.map(([head, width]) => (
             <col key={head} style={width === null ? undefined : { width: `${width}px` }} />
@@ -300,7 +304,7 @@ function Lines({
         </thead>
         <tbody onKeyDown={move} onFocus={enter} onBlur={leave}>
           {shown.map((line) => (
-            <Line key={line.key} line={line} stop={line.key === stop} />
+            <Line key={line.key} line={line} stop={line.key === stop} payer={payer} />
           ))}
         </tbody>
       </table>
@@ -330,7 +334,7 @@ function RuleField({ rule, loading }: { rule: TradesState['rule']; loading: bool
         hint={
           slow
             ? 'Loading what reads expressions…'
-            : 'The new weight of each, such as weight * 0.9 or min(weight, 5%). A trade typed for a holding goes before it.'
+            : 'Such as weight * 0.9 or min(weight, 5%). What is typed for one holding goes before it.'
         }
         validationMessage={fault && <TextFaultMessage text={text} fault={fault} />}
       >
@@ -361,7 +365,7 @@ function RuleField({ rule, loading }: { rule: TradesState['rule']; loading: bool
             </div>
           ))}
         </dl>
-        <p className={classes.small}>
+        <p className={mergeClasses(classes.small, classes.apart)}>
           Also numbers, + − * / and parentheses, comparisons, and, or, not, and condition ? this : that. 2% is
           2/100 wherever it stands: weight - 2% takes two points of capital away. Figures are those of the
           weights in the sheet.
@@ -489,6 +493,7 @@ export function TradeList({
   const [whole, setWhole] = useKept('trades whole', false)
   const isLong = lines.length > LONG
   const moved = movedOf(lines)
+  const changed = lines.filter(({ before, after }) => before !== after).length
   const plain = sought.trim().toLowerCase()
   const shown =
     plain !== ''
@@ -522,16 +527,22 @@ export function TradeList({
         </div>
       )}
       <p className={mergeClasses(classes.small, classes.quiet)}>
-        {moved.length === 0
-          ? 'Type a new weight under After, or what it changes by: 4%, -0.5%, weight / 2.'
-          : `${moved.length.toLocaleString('en-US')} of ${countOf(lines.length, 'holding')} changed.`}{' '}
-        {isLong && !whole && plain === '' && moved.length === 0
-          ? 'Find a holding first, or show all.'
-          : plain !== ''
-            ? `${countOf(shown.length, 'holding')} found.`
-            : 'Up and down go from one to the next.'}
+        {changed === 0
+          ? 'Type what a weight changes by, or what it becomes: -0.5%, 4%, weight / 2.'
+          : `${changed.toLocaleString('en-US')} of ${countOf(lines.length, 'weight')} changed.`}{' '}
+        {plain !== ''
+          ? `${countOf(shown.length, 'holding')} found.`
+          : shown.length === 0
+            ? 'Find a holding first, or show all.'
+            : 'The arrow keys go up and down the list.'}
       </p>
-      {shown.length > 0 && <Lines lines={shown} all={lines} label="Trades" />}
+      {shown.length > 0 && <Lines lines={shown} all={lines} payer={financing.kind} />}
+      {lines.some(({ candidate }) => candidate) && (
+        <p className={classes.small}>
+          With a series that is not held, both sides rest on the dates that it has in common with the
+          holdings: they may differ from the figures under Risk.
+        </p>
+      )}
       <AddCandidate candidates={candidates} fault={fault} asked={asked} />
     </Section>
   )

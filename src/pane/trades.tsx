@@ -24,8 +24,6 @@ const useStyles = makeStyles({
     top: `calc(-1 * ${tokens.spacingVerticalL})`,
     zIndex: 2,
     display: 'grid',
-    gridTemplateColumns: 'minmax(0, 1fr) auto',
-    columnGap: tokens.spacingHorizontalM,
     alignContent: 'center',
     boxSizing: 'border-box',
     height: '52px',
@@ -37,12 +35,18 @@ const useStyles = makeStyles({
     lineHeight: tokens.lineHeightBase300,
     fontVariantNumeric: 'tabular-nums',
   },
-  figure: { fontWeight: tokens.fontWeightSemibold, textAlign: 'right' },
-  why: { gridColumn: '1 / -1', overflow: 'hidden', textOverflow: 'ellipsis', whiteSpace: 'nowrap' },
+  row: {
+    display: 'flex',
+    justifyContent: 'space-between',
+    columnGap: tokens.spacingHorizontalM,
+    whiteSpace: 'nowrap',
+  },
+  label: { minWidth: 0, overflow: 'hidden', textOverflow: 'ellipsis' },
+  figure: { fontWeight: tokens.fontWeightSemibold },
   unseen: { position: 'absolute', width: '1px', height: '1px', overflow: 'hidden', clipPath: 'inset(50%)' },
 })
 
-/** Height of the outcome, for what sticks below it. */
+/** The height of the outcome, for what sticks below it. */
 const BELOW_OUTCOME = { '--kept-in-sight': '52px' } as CSSProperties
 
 /** How long a text that cannot be read yet is taken for one that is still being typed. */
@@ -89,36 +93,29 @@ function Outcome({ breakdown, comparison }: { breakdown: Breakdown; comparison: 
   const after = compared?.after.decomposition.volatility ?? now
   const [hardBefore, softBefore] = overOf(compared?.limitsBefore ?? breakdown.limits)
   const [hardAfter, softAfter] = overOf(compared?.limitsAfter ?? breakdown.limits)
-  const volatility = arrow(percentText(before, 2), percentText(after, 2))
-  const change = compared ? `${pointsText(after - before, 2)} points` : ''
-  const limits =
-    breakdown.limits.length === 0
-      ? null
-      : `${arrow(hardBefore, hardAfter)} breached${softBefore + softAfter > 0 ? `, ${arrow(softBefore, softAfter)} over soft` : ''}`
-  const label = `Volatility ${breakdown.horizon}`
+  const rows: (readonly [name: string, value: string])[] = [
+    [
+      `Volatility ${breakdown.horizon}`,
+      `${arrow(percentText(before, 2), percentText(after, 2))}${compared ? `\u2002${pointsText(after - before, 2)} points` : ''}`,
+    ],
+    breakdown.limits.length > 0
+      ? [
+          'Limits',
+          `${arrow(hardBefore, hardAfter)} breached${softBefore + softAfter > 0 ? `, ${arrow(softBefore, softAfter)} over soft` : ''}`,
+        ]
+      : ['Turnover, one way', percentText(compared?.turnover ?? 0, 2)],
+  ]
   const said = useSettled(
-    compared ? `${label} ${volatility}${limits === null ? '' : `; limits: ${limits}`}` : String(comparison),
+    compared ? rows.map(([name, value]) => `${name}: ${value}`).join('; ') : String(comparison),
   )
   return (
     <div className={classes.outcome}>
-      <span>{label}</span>
-      <span className={classes.figure}>
-        {volatility}
-        {change && <>&ensp;{change}</>}
-      </span>
-      {limits !== null ? (
-        <>
-          <span>Limits</span>
-          <span className={classes.figure}>{limits}</span>
-        </>
-      ) : compared ? (
-        <>
-          <span>Turnover, one way</span>
-          <span className={classes.figure}>{percentText(compared.turnover, 2)}</span>
-        </>
-      ) : (
-        <span className={classes.why}>{comparison as string}</span>
-      )}
+      {rows.map(([name, value]) => (
+        <div key={name} className={classes.row}>
+          <span className={classes.label}>{name}</span>
+          <span className={classes.figure}>{value}</span>
+        </div>
+      ))}
       <span role="status" className={classes.unseen}>
         {said}
       </span>
@@ -151,7 +148,15 @@ function View({
         <Remark text="Trades of the figures as last computed, before the failure told above." />
       )}
       <TradeList trades={later} fault={faultOf('candidate')} asked={() => setAsked('candidate')} />
-      <BeforeAfter comparison={compared} trades={later} breakdown={breakdown} />
+      <BeforeAfter
+        comparison={
+          typeof compared === 'string' && hasFault(later)
+            ? 'Nothing is compared while what is asked for above cannot be read or paid for.'
+            : compared
+        }
+        trades={later}
+        breakdown={breakdown}
+      />
       <Apply
         trades={later}
         busy={state.working !== null}
