@@ -61,7 +61,7 @@ const MOST_ITERATIONS = 150
 const MOST_CUTS = 80
 /** From where else the search begins where the first end may not be the best. */
 const MOST_STARTS = 4
-const MOST_PUSHES = 8
+const MOST_PUSHED = 6
 /** Multiplications in linear programs (some seconds) after which no other start is made, and after which all ends. */
 const ENOUGH_WORK = 2e8
 const MOST_WORK = 2e10
@@ -71,8 +71,7 @@ const MOST_FREE = 250
 /** A book with its limits, and what the search has taken so far. */
 interface Search extends LimitedBook {
   /** Linear programs, and multiplications in them. */
-  solved: number
-  work: number
+  readonly effort: { programs: number; work: number }
 }
 
 /**
@@ -100,7 +99,7 @@ interface Search extends LimitedBook {
  * @example       inOneGo(smallestChange(matrixModel(Float64Array.of(.04, 0, 0, .04), 2), { weights: Float64Array.of(.6, .4), limits: [{ measure: 'share', members: Int32Array.of(0), most: .5 }], financing: { kind: 'book' } })).weights // [0.5, 0.5]
  */
 export function* smallestChange(model: RiskModel, problem: ChangeProblem): Generator<number, ChangeResult> {
-  const search: Search = { ...limitedBook(model, problem), solved: 0, work: 0 }
+  const search: Search = { ...limitedBook(model, problem), effort: { programs: 0, work: 0 } }
   const { origin } = search
   const here = pointAt(search, origin)
   const boundsHold = origin.every((w, i) => w >= search.lower[i]! && w <= search.upper[i]!)
@@ -140,7 +139,7 @@ export function* smallestChange(model: RiskModel, problem: ChangeProblem): Gener
     outer.contradiction ?? ((yield* partOf(sharesContradict(search), 0.4, 0.4)) ? SHARES_CONTRADICT : null)
   const done = () =>
     contradiction !== null ||
-    search.work > ENOUGH_WORK ||
+    search.effort.work > ENOUGH_WORK ||
     (best.point.over <= FEASIBLE && best.point.change <= outer.bound * (1 + 1e-7) + 1e-12)
   function* alsoFrom(start: Float64Array, from: number, to: number): Generator<number, void> {
     const ended = yield* descend(search, start, from, to - from)
@@ -156,9 +155,10 @@ export function* smallestChange(model: RiskModel, problem: ChangeProblem): Gener
         : yield* partOf(elsewhere(search, first.weights, moved), from, from)
     yield* alsoFrom(start, from, to)
   }
-  for (let k = 0; k < MOST_PUSHES && best.point.over > FEASIBLE && !done(); k++) {
-    const [from, to] = [0.7 + (0.3 * k) / MOST_PUSHES, 0.7 + (0.3 * (k + 1)) / MOST_PUSHES]
-    const start = yield* partOf(pushed(search, k), from, from)
+  const order = done() ? [] : mostTelling(search, first.weights).slice(0, MOST_PUSHED)
+  for (let k = 0; k < 2 * order.length && !done(); k++) {
+    const [from, to] = [0.7 + (0.15 * k) / order.length, 0.7 + (0.15 * (k + 1)) / order.length]
+    const start = yield* partOf(pushed(search, order[k >> 1]!, k % 2 === 0), from, from)
     if (start) yield* alsoFrom(start, from, to)
   }
 
@@ -225,7 +225,7 @@ function* linearStep(
   radius: number,
   prices: Float64Array = search.counts,
 ): Generator<number, LinearStep> {
-  search.solved++
+  search.effort.programs++
   const { origin, lower, upper, cap, keepsSum } = search
   const n = origin.length
   const moving: number[] = []
@@ -290,7 +290,7 @@ function* linearStep(
     if (capRow >= 0) columns[up + capRow] = columns[down + capRow + 1] = 1
   })
   const solved = yield* leastCost({ rows: m, columns, costs, lower: low, upper: high, most, equal, first })
-  search.work += solved.pivots * m * (2 * count + 2 * m)
+  search.effort.work += solved.pivots * m * (2 * count + 2 * m)
   moving.forEach((i, at) => {
     const d = solved.x[at]! - solved.x[count + at]!
     weights[i] = Math.min(upper[i]!, Math.max(lower[i]!, origin[i]! + d))
@@ -423,22 +423,27 @@ function* elsewhere(
   return (yield* linearStep(search, rows, null, Infinity, prices)).weights
 }
 
-/** One of the riskiest positions far from today, up or down, others no more than that takes: where shares may fall only after they have risen. */
-function* pushed(search: Search, k: number): Generator<number, Float64Array | null> {
-  const { origin, deviations } = search
-  const riskiest = [...origin.keys()]
+/** Positions that may move, those first that a limit that is over today answers to most. */
+function mostTelling(search: Search, from: Float64Array): number[] {
+  const point = pointAt(search, from)
+  const telling = new Float64Array(from.length)
+  search.limits.forEach((_, k) => {
+    if (!(point.excess[k]! > FEASIBLE)) return
+    gradientOf(search, k, point).forEach((slope, i) => (telling[i] = Math.max(telling[i]!, Math.abs(slope))))
+  })
+  return [...from.keys()]
     .filter((i) => search.lower[i]! < search.upper[i]!)
-    .sort((a, b) => deviations[b]! - deviations[a]!)
-  const i = riskiest[k >> 1]
-  if (i === undefined) return null
+    .sort((a, b) => telling[b]! - telling[a]!)
+}
+
+/** One position far from today, up or down, and others no more than that takes: where shares fall only after they have risen, or fall to it alone. */
+function* pushed(search: Search, i: number, up: boolean): Generator<number, Float64Array | null> {
+  const { origin } = search
   const by = 2 * origin.reduce((most, w) => Math.max(most, Math.abs(w)), 0)
-  const to = origin[i]! + (k % 2 === 0 ? by : -by)
   const lower = search.lower.slice()
   const upper = search.upper.slice()
-  lower[i] = upper[i] = Math.min(upper[i]!, Math.max(lower[i]!, to))
-  const pinned: Search = { ...search, lower, upper }
-  const { weights, hardExcess } = yield* linearStep(pinned, [], null, Infinity)
-  search.solved++
+  lower[i] = upper[i] = Math.min(upper[i]!, Math.max(lower[i]!, origin[i]! + (up ? by : -by)))
+  const { weights, hardExcess } = yield* linearStep({ ...search, lower, upper }, [], null, Infinity)
   return hardExcess > NO_CHANGE ? null : weights
 }
 
@@ -477,7 +482,7 @@ function* descend(
   bringIn(here)
   let rows: Row[] = []
 
-  for (let iteration = 0; iteration < MOST_ITERATIONS && search.work < MOST_WORK; iteration++) {
+  for (let iteration = 0; iteration < MOST_ITERATIONS && search.effort.work < MOST_WORK; iteration++) {
     const share = from + width * (1 - 0.9 ** iteration)
     yield share
     for (const k of inPlay.slice(rows.length)) {
@@ -513,7 +518,11 @@ function* descend(
 
     const finished =
       possible && !step.capBinds ? yield* partOf(newton(search, here, step, inPlay), share, share) : null
-    const trials = finished ? [finished, pointAt(search, step.weights)] : [pointAt(search, step.weights)]
+    // steps of the linear program keep the turnover, Newton's know nothing of it
+    const trials =
+      finished && turnoverOf(origin, finished.weights) <= search.cap
+        ? [finished, pointAt(search, step.weights)]
+        : [pointAt(search, step.weights)]
     const enough = (trial: Point) => {
       const lessChange = here.change - trial.change
       if (!possible) return here.over - trial.over >= 0.1 * brought
@@ -756,7 +765,7 @@ function resultOf(search: Search, ending: Ending): ChangeResult {
     sumError: keepsSum ? Math.abs(sumOf(point.weights) - sumOf(origin)) : 0,
     stationarity: ending.stationarity,
     savings: ending.savings,
-    iterations: search.solved,
+    iterations: search.effort.programs,
     method:
       starts === 0
         ? 'No search was needed.'
