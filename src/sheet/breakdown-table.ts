@@ -7,6 +7,7 @@ import type { LimitState } from './limits'
 import { LIMIT_MEASURES, LIMIT_STATUS, limitOn, limitsSummary } from './limits'
 import type { NestedGroup } from './nesting'
 import type { Mark, Table, TableBars, TableCell } from './table'
+import { textCell as text, numberCell as number, setIn } from './table'
 import type { Tails } from './tail-section'
 import { BAND, bandText, CAUTION, countOf, dateText, percentText, POSITION_HEADS, quote } from './wording'
 
@@ -14,13 +15,6 @@ const PERCENT = '0.00%'
 const SHARE = '0.0%'
 const RATIO = '0.00'
 const ROUNDING = '0.0E+00'
-
-const marked = (mark: Mark | undefined): { mark?: Mark } => (mark ? { mark } : {})
-const text = (value: string, mark?: Mark): TableCell => ({ value, format: '@', ...marked(mark) })
-const number = (value: number | null | undefined, format: string, mark?: Mark): TableCell =>
-  value === null || value === undefined || Number.isNaN(value)
-    ? { value: '', format, ...marked(mark) }
-    : { value, format, ...marked(mark) }
 
 const capital = (sentence: string): string => sentence.charAt(0).toUpperCase() + sentence.slice(1)
 
@@ -196,7 +190,7 @@ export function breakdownTable(title: string, breakdown: Breakdown): Table {
 
   const widthOf = new Map(HEADS.map(([column, , width]) => [column, width]))
   return {
-    cells: rows.cells,
+    cells: setIn(rows.cells),
     widths: [
       30,
       ...groupHeaders.map(() => (breakdown.limits.length > 0 ? 20 : 16)),

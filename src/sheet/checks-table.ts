@@ -2,7 +2,8 @@ import type { Breakdown } from './breakdown'
 import type { Area } from './cells'
 import { addressOf } from './cells'
 import type { CheckLine } from './inspection'
-import type { Mark, Table, TableCell } from './table'
+import type { Table, TableCell } from './table'
+import { textCell as text } from './table'
 import { CAUTION, countOf, dateText } from './wording'
 
 const HEADS: readonly (readonly [head: string, width: number])[] = [
@@ -33,7 +34,6 @@ export function checksTable(
   breakdown: Breakdown | null,
   today: number,
 ): Table {
-  const text = (value: string, mark?: Mark): TableCell => ({ value, format: '@', ...(mark ? { mark } : {}) })
   const cells: TableCell[][] = []
   const add = (...row: TableCell[]): void => {
     const mark = row[0]?.mark

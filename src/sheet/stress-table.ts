@@ -1,17 +1,11 @@
 import type { Breakdown } from './breakdown'
 import type { Parts, Scenario, StressCase, StressComparison, StressFigures } from './stress'
 import type { Mark, Table, TableCell } from './table'
+import { textCell as text, numberCell as number, setIn } from './table'
 import { CAUTION, countOf, dateText, percentText } from './wording'
 
 const PERCENT = '0.00%'
 const ROUNDING = '0.0E+00'
-
-const text = (value: string, mark?: Mark): TableCell => ({ value, format: '@', ...(mark ? { mark } : {}) })
-const number = (value: number | null | undefined, format: string, mark?: Mark): TableCell => ({
-  value: value === null || value === undefined || !Number.isFinite(value) ? '' : value,
-  format,
-  ...(mark ? { mark } : {}),
-})
 
 const sumOf = (values: Float64Array): number => values.reduce((sum, value) => sum + value, 0)
 
@@ -85,7 +79,7 @@ export function stressTable(
   for (const sentence of warnings) rows.add([text(sentence, 'alert')])
   if (warnings.length === 0) rows.add([text('None')])
 
-  return { cells: rows.cells, widths: rows.widths, numeric: rows.numeric }
+  return { cells: setIn(rows.cells), widths: rows.widths, numeric: rows.numeric }
 }
 
 function headline({ cases, horizon, window }: StressComparison): string {

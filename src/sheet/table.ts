@@ -18,6 +18,30 @@ export interface TableCell {
   readonly link?: Area
 }
 
+/** A cell of text; a text that looks like a number or a formula stays one. */
+export const textCell = (value: string, mark?: Mark): TableCell => ({
+  value,
+  format: '@',
+  ...(mark ? { mark } : {}),
+})
+
+/** A cell of a number; blank where there is none. */
+export const numberCell = (value: number | null | undefined, format: string, mark?: Mark): TableCell => ({
+  value: value === null || value === undefined || !Number.isFinite(value) ? '' : value,
+  format,
+  ...(mark ? { mark } : {}),
+})
+
+/** The rows with every text that stands right of a number set in a little, so that the two do not touch. */
+export const setIn = (rows: readonly (readonly TableCell[])[]): readonly (readonly TableCell[])[] =>
+  rows.map((row) =>
+    row.map((cell, k) =>
+      typeof cell.value === 'string' && cell.value !== '' && typeof row[k - 1]?.value === 'number'
+        ? { ...cell, indent: 1 }
+        : cell,
+    ),
+  )
+
 /** Bars behind the numbers of a part of a column, as long as each is of a whole: nothing at 0 or less, the cell full from `full` on. */
 export interface TableBars {
   /** all counted from 0 within the table */

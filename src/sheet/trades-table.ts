@@ -3,6 +3,7 @@ import type { LimitState } from './limits'
 import { LIMIT_MEASURES, LIMIT_STATUS, limitOn } from './limits'
 import type { Profile } from './profile'
 import type { Mark, Table, TableCell } from './table'
+import { textCell as text, numberCell, setIn } from './table'
 import type { Comparison, TradeLine, TradesState } from './trades'
 import { CAUTION, countOf, percentText, quote } from './wording'
 
@@ -10,12 +11,7 @@ const PERCENT = '0.00%'
 const COLUMNS = 10
 const WIDTHS = [34, 22, 13, 13, 13, 13, 13, 13, 13, 13]
 
-const text = (value: string, mark?: Mark): TableCell => ({ value, format: '@', ...(mark ? { mark } : {}) })
-const number = (value: number | null | undefined, mark?: Mark): TableCell => ({
-  value: value === null || value === undefined || !Number.isFinite(value) ? '' : value,
-  format: PERCENT,
-  ...(mark ? { mark } : {}),
-})
+const number = (value: number | null | undefined, mark?: Mark): TableCell => numberCell(value, PERCENT, mark)
 
 /** What moved a weight, as the sheet says it. */
 export const ORIGIN_WORDS: { readonly [O in TradeLine['origin']]: string } = {
@@ -116,7 +112,7 @@ export function tradesTable(title: string, state: TradesState, breakdown: Breakd
 
   section('Settings')
   for (const [label, value] of breakdown.settings) add(text(label), text(value))
-  return { cells, widths: WIDTHS, numeric: WIDTHS.map((_, k) => k >= 2) }
+  return { cells: setIn(cells), widths: WIDTHS, numeric: WIDTHS.map((_, k) => k >= 2) }
 }
 
 const PART_HEADS = [
