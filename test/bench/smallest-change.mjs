@@ -62,13 +62,11 @@ for (const [n, T] of [
       ...members
         .slice(0, 4)
         .map((group, g) => ({ measure: 'share', members: group, most: 0.9 * groupShare[g] })),
-      ...members
-        .slice(4)
-        .map((group, g) => ({
-          measure: 'contribution',
-          members: group,
-          most: groupShare[g + 4] * volatility,
-        })),
+      ...members.slice(4).map((group, g) => ({
+        measure: 'contribution',
+        members: group,
+        most: groupShare[g + 4] * volatility,
+      })),
       ...members
         .slice(4, 7)
         .map((group, g) => ({ measure: 'weight', members: group, most: 1.05 * groupWeight[g + 4] })),
