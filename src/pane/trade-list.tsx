@@ -67,6 +67,7 @@ const useStyles = makeStyles({
     gridTemplateColumns: '96px minmax(0, 1fr)',
     columnGap: tokens.spacingHorizontalS,
   },
+  proposal: { fontWeight: tokens.fontWeightSemibold },
   apart: { marginTop: tokens.spacingVerticalS },
   code: { fontFamily: tokens.fontFamilyMonospace },
   meaning: { margin: 0 },
@@ -488,7 +489,7 @@ export function TradeList({
   asked: () => void
 }) {
   const classes = { ...useStepStyles(), ...useStyles() }
-  const { lines, rule, financing, financingFault, candidates, loading, notes } = trades
+  const { lines, rule, financing, financingFault, candidates, loading, notes, proposal } = trades
   const [sought, setSought] = useState('')
   const [whole, setWhole] = useKept('trades whole', false)
   const isLong = lines.length > LONG
@@ -505,6 +506,11 @@ export function TradeList({
     <Section title="Trades">
       <RuleField rule={rule} loading={loading} />
       <Payer financing={financing} fault={financingFault} keys={lines.map(({ key }) => key)} />
+      {proposal && (
+        <p className={classes.small}>
+          <span className={classes.proposal}>Proposal: {proposal.title}.</span> {proposal.sentence}
+        </p>
+      )}
       {notes.map((note) => (
         <p key={note} className={classes.small}>
           {note}

@@ -150,9 +150,11 @@ function View({
       <TradeList trades={later} fault={faultOf('candidate')} asked={() => setAsked('candidate')} />
       <BeforeAfter
         comparison={
-          typeof compared === 'string' && hasFault(later)
-            ? 'Nothing is compared while what is asked for above cannot be read or paid for.'
-            : compared
+          typeof compared !== 'string' || !hasFault(later)
+            ? compared
+            : later.loading
+              ? 'Loading what reads expressions…'
+              : 'Nothing is compared while what is asked for above cannot be read or paid for.'
         }
         trades={later}
         breakdown={breakdown}

@@ -13,14 +13,19 @@ const plain = (html: string): string =>
     .replace(/\s+/g, ' ')
     .trim()
 
-/** What a part of the pane says when it is drawn: all of it, and the rows of its tables cell by cell. */
-export function draw(part: ReactNode): { said: string; rows: readonly (readonly string[])[] } {
+/** What a part of the pane says when it is drawn: all of it, the rows of its tables cell by cell, and the markup itself. */
+export function draw(part: ReactNode): {
+  said: string
+  rows: readonly (readonly string[])[]
+  markup: string
+} {
   const markup = renderToStaticMarkup(
     <FluentProvider theme={webLightTheme}>
       <BooksProvider books={{} as Books}>{part}</BooksProvider>
     </FluentProvider>,
   )
   return {
+    markup,
     said: plain(markup),
     rows: [...markup.matchAll(/<tr\b.*?<\/tr>/gs)].map(([row]) =>
       [...row.matchAll(/<t[hd]\b.*?<\/t[hd]>/gs)].map(([cell]) => plain(cell)),
