@@ -15,6 +15,7 @@ import {
   repairCovariance,
   returnsModel,
   riskBudgetWeights,
+  roundToLots,
   shrinkageOf,
   smallestChange,
 } from '../core'
@@ -32,6 +33,7 @@ import type {
   Estimator,
   HistoryGroup,
   LeastVariance,
+  LotsResult,
   RiskModel,
   SeriesNormality,
   Shrinkage,
@@ -214,6 +216,20 @@ const JOBS = {
   }): Generator<number, ChangeResult> {
     return yield* smallestChange(modelFrom(recipe), problem)
   },
+
+  *'round to lots'({
+    recipe,
+    problem,
+    weights,
+    lots,
+  }: {
+    readonly recipe: ModelRecipe
+    readonly problem: ChangeProblem
+    readonly weights: Float64Array
+    readonly lots: Float64Array
+  }): Generator<number, LotsResult> {
+    return yield* roundToLots(modelFrom(recipe), problem, weights, lots)
+  },
 }
 
 /** Products beyond which the test of all series together is left out: seconds in which nobody sees any figure. */
@@ -250,6 +266,7 @@ const WORDS: { readonly [K in JobKind]: string } = {
   'risk budgets': 'Looking for weights of these risk budgets',
   'least variance': 'Looking for the least variance',
   'smallest change': 'Looking for the smallest change',
+  'round to lots': 'Rounding to lots',
 }
 
 /** Where long computations run. `entry` wires a worker; without one they run here in slices. */

@@ -1,5 +1,5 @@
 import { courseOf, Fault, financed } from '../core'
-import type { ChangeLimit, Financing as CoreFinancing, RiskModel } from '../core'
+import type { ChangeLimit, ChangeProblem, Financing as CoreFinancing, RiskModel } from '../core'
 import type { Calculator, Work } from './calculator'
 import type { Limit } from './limits'
 import { judgeLimits, LIMIT_MEASURES, limitOn } from './limits'
@@ -26,6 +26,8 @@ export type Target =
       /** whether the sum of the weights stays, or cash takes the difference */
       readonly net: 'kept' | 'free'
       readonly against: 'hard' | 'soft'
+      /** changes are whole multiples of this, in the unit of the cells (weight or amount); null: any size */
+      readonly lot: number | null
     }
 
 export type ShareOf =
@@ -339,6 +341,8 @@ class Search {
           argument: 'trades',
         },
       )
+    if (target.lot !== null && !(target.lot > 0))
+      throw outOfRange(`a lot of ${numberText(target.lot, 4)}`, 'a size above 0 is needed')
     const title = 'Smallest change that meets all limits'
     const most = (limit: Limit): number =>
       (target.against === 'soft' ? (limit.soft ?? limit.hard) : (limit.hard ?? limit.soft)) ?? Infinity
@@ -362,26 +366,30 @@ class Search {
       }
     }
     const payer = this.#payer()
-    const result = await calculator.run(
-      'smallest change',
-      {
-        recipe: this.#standing.book.recipe,
-        problem: {
-          weights: this.#weights,
-          limits: sought.map(({ as }) => as),
-          financing:
-            payer !== null
-              ? { kind: 'position', position: payer }
-              : { kind: target.net === 'kept' ? 'book' : 'cash' },
-          lower,
-          upper,
-          ...(this.#ground.benchmark ? { benchmark: this.#ground.benchmark } : {}),
-          ...(target.turnover === null ? {} : { turnover: target.turnover }),
-        },
-      },
-      work,
-    )
-    const { weights } = result
+    const problem: ChangeProblem = {
+      weights: this.#weights,
+      limits: sought.map(({ as }) => as),
+      financing:
+        payer !== null
+          ? { kind: 'position', position: payer }
+          : { kind: target.net === 'kept' ? 'book' : 'cash' },
+      lower,
+      upper,
+      ...(this.#ground.benchmark ? { benchmark: this.#ground.benchmark } : {}),
+      ...(target.turnover === null ? {} : { turnover: target.turnover }),
+    }
+    const { recipe } = this.#standing.book
+    const result = await calculator.run('smallest change', { recipe, problem }, work)
+    const lot = target.lot === null ? null : target.lot / (this.#ground.holdings.capital ?? 1)
+    const inLots =
+      lot === null
+        ? null
+        : await calculator.run(
+            'round to lots',
+            { recipe, problem, weights: result.weights, lots: this.#weights.map(() => lot) },
+            work,
+          )
+    const { weights, change, turnover } = inLots ?? result
     const after = this.#ground.basis.profileOf(weights)
     const states = judgeLimits(
       limits.map((limit) => ({ ...limit, soft: null, hard: most(limit) })),
@@ -390,7 +398,7 @@ class Search {
     )
     const over = states.filter(({ status }) => status === 'breach')
     const moved = weights.reduce((count, weight, i) => count + (weight === this.#weights[i] ? 0 : 1), 0)
-    const met = result.status === 'met' && over.length === 0
+    const met = result.status === 'met' && over.length === 0 && (inLots?.holds ?? true)
     const paidBy =
       payer !== null
         ? `${quote(positions[payer]?.name ?? '')} takes the difference`
@@ -398,7 +406,12 @@ class Search {
           ? 'the sum of the weights stays'
           : 'cash takes the difference'
     const ends = {
-      met: over.length > 0 ? 'Limits that are not part of the search are still over.' : result.note,
+      met:
+        inLots && !inLots.holds
+          ? 'In whole lots some limit is over: its line says by how much. Smaller lots, or any size, meet them all.'
+          : over.length > 0
+            ? 'Limits that are not part of the search are still over.'
+            : result.note,
       'not found': `No weights that meet all limits were found${result.proven ? ', and there are none' : ''}. ${result.note}`,
       stopped: `The search ended before it was sure. ${result.note}`,
     } as const
@@ -407,7 +420,7 @@ class Search {
       met
         ? moved === 0
           ? 'All limits hold at the weights in the sheet.'
-          : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(result.change, 2)} in all (turnover ${percentText(result.turnover, 2)} one way); ${paidBy}.`
+          : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(change, 2)} in all (turnover ${percentText(turnover, 2)} one way); ${paidBy}.`
         : ends[result.status],
       `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long and short stays short; ${paidBy}.`,
       weights,
@@ -415,11 +428,20 @@ class Search {
         this.#volatilityLine(weights),
         [
           'Least change there can be',
-          percentText(result.leastPossible, 2),
+          Number.isFinite(result.leastPossible) ? percentText(result.leastPossible, 2) : 'none',
           result.proven && met
             ? 'Proven: no smaller change meets the limits.'
             : 'A bound from below: limits on shares of risk are not convex, so that a smaller change elsewhere is not ruled out.',
         ],
+        ...(inLots
+          ? [
+              [
+                'Rounded to lots',
+                percentText(change - result.change, 3),
+                `What whole lots add to the sum of changes; the largest difference from the weight asked for is ${percentText(Math.abs(inLots.largest), 3)}${inLots.position >= 0 ? `, of ${quote(positions[inLots.position]?.name ?? '')}` : ''}; ${percentText(inLots.toCash, 3)} goes to cash.`,
+              ] as const,
+            ]
+          : []),
         ...states
           .filter(({ status, used }) => status === 'breach' || (used ?? 0) > 1 - AT_LIMIT)
           .map(({ limit, figure, most: limitOf, status }): readonly [string, string, string] => [

@@ -423,13 +423,26 @@ describe('Looking for weights', () => {
     const { books, take, after, trades, comparison } = await desk()
     await take('limits', 'Limits!A1:E3')
     expect(books.state().breakdown?.limits.filter(({ status }) => status === 'breach')).toHaveLength(2)
-    await books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against: 'hard' })
+    await books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against: 'hard', lot: null })
     expect(trades().proposal).toMatchObject({ met: true })
     const { volatility, contributions } = riskOf(after())
     expect(contributions[0]! / volatility).toBeLessThanOrEqual(0.3)
     expect(after()[0]! + after()[1]!).toBeLessThanOrEqual(0.6)
     expect(after().reduce((sum, w) => sum + w, 0)).toBeCloseTo(1, 12)
     expect(comparison().limitsAfter.every(({ status }) => status !== 'breach')).toBe(true)
+    await books.propose({
+      kind: 'smallest change',
+      turnover: null,
+      net: 'kept',
+      against: 'hard',
+      lot: 0.005,
+    })
+    after().forEach((w, i) => {
+      const lots = (w - [0.4, 0.3, 0.2, 0.1][i]!) / 0.005
+      expect(lots).toBeCloseTo(Math.round(lots), 9)
+    })
+    expect(trades().proposal?.lines.some(([label]) => label === 'Rounded to lots')).toBe(true)
+    expect(trades().proposal?.met).toBe(true)
     await books.applyTrades({ replaceFormulas: false })
     expect(books.state().breakdown?.limits.some(({ status }) => status === 'breach')).toBe(false)
   })
