@@ -4,31 +4,12 @@ import type { BacktestChoice, BacktestStudy, BooksState } from '../sheet'
 import { ConfidenceEntry, Choice, Entry, typedNumber } from './controls'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
+import { Facts } from './table'
 
 const Forecasts = lazy(() => import('./forecasts'))
 
 const useStyles = makeStyles({
   text: { margin: 0, fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 },
-  lines: {
-    margin: 0,
-    display: 'grid',
-    fontSize: tokens.fontSizeBase200,
-    lineHeight: tokens.lineHeightBase200,
-  },
-  line: {
-    display: 'grid',
-    gridTemplateColumns: 'minmax(0, 1fr) auto',
-    columnGap: tokens.spacingHorizontalM,
-    padding: `${tokens.spacingVerticalXS} 0`,
-    borderTop: `1px solid ${tokens.colorNeutralStroke2}`,
-  },
-  value: {
-    margin: 0,
-    textAlign: 'right',
-    fontVariantNumeric: 'tabular-nums',
-    fontWeight: tokens.fontWeightSemibold,
-  },
-  meaning: { margin: 0, gridColumn: '1 / -1', color: tokens.colorNeutralForeground2 },
 })
 
 function Outcome({ study }: { study: BacktestStudy }) {
@@ -38,15 +19,7 @@ function Outcome({ study }: { study: BacktestStudy }) {
       <Suspense fallback={<p className={classes.text}>Drawing…</p>}>
         <Forecasts study={study} />
       </Suspense>
-      <dl className={classes.lines}>
-        {study.lines.map(([label, figure, meaning]) => (
-          <div key={label} className={classes.line}>
-            <dt>{label}</dt>
-            <dd className={classes.value}>{figure}</dd>
-            <dd className={classes.meaning}>{meaning}</dd>
-          </div>
-        ))}
-      </dl>
+      <Facts lines={study.lines} />
       <p className={classes.text}>{study.method}.</p>
     </>
   )

@@ -298,6 +298,59 @@ export function ConfidenceEntry({
   )
 }
 
+/** A fraction as a percentage is typed, without its sign: at most six decimals. */
+export const typedPercentText = (fraction: number): string => String(Number((fraction * 100).toFixed(6)))
+
+/** A percentage, with its sign or without, as a fraction; null when it is none. */
+export function typedPercent(text: string): number | null {
+  const value = typedNumber(text.replaceAll('\u2212', '-').replace(/\s*%$/, ''))
+  return value === null ? null : Number((value / 100).toFixed(12))
+}
+
+/** A percentage within bounds, handed over as a fraction. */
+export function PercentEntry({
+  label,
+  value,
+  from = -Infinity,
+  to = Infinity,
+  hint,
+  fault,
+  commit,
+}: {
+  label: string
+  value: number
+  /** the least and the most it may be, fractions */
+  from?: number
+  to?: number
+  hint?: string | undefined
+  fault?: string | undefined
+  commit: (value: number) => void
+}) {
+  const bounds =
+    from > -Infinity && to < Infinity
+      ? ` from ${typedPercentText(from)}% to ${typedPercentText(to)}%`
+      : from > -Infinity
+        ? ` of ${typedPercentText(from)}% or more`
+        : to < Infinity
+          ? ` of ${typedPercentText(to)}% or less`
+          : ''
+  return (
+    <Entry
+      label={label}
+      shown={typedPercentText(value)}
+      hint={hint}
+      fault={fault}
+      read={(text) => {
+        const typed = typedPercent(text)
+        return typed !== null && typed >= from && typed <= to
+          ? { value: typed }
+          : { needed: `A percentage${bounds} is needed.` }
+      }}
+      commit={commit}
+    />
+  )
+}
+
 /** A number typed with a point or a comma before its decimals; null when it is none. */
 export function typedNumber(text: string): number | null {
   const plain = text.replace(/\s/g, '').replace(/^(-?\d*),(\d+)$/, '$1.$2')

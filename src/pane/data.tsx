@@ -6,6 +6,7 @@ import { AskedButton, Entry, Section } from './controls'
 import { Currency } from './currency'
 import { FactorReturns } from './factor-returns'
 import { Holdings } from './holdings'
+import { LimitsTable } from './limits-table'
 import { Returns } from './returns'
 import { useStepStyles } from './step'
 import { useBooks, useBooksState } from './store'
@@ -59,6 +60,7 @@ export function DataView() {
       <Holdings state={state} />
       <Returns state={state} />
       <Checks state={state} />
+      <LimitsTable state={state} />
       <FactorReturns state={state} />
       <Benchmark state={state} />
       <Currency state={state} />

@@ -3,6 +3,7 @@ import {
   bandText,
   countOf,
   dateText,
+  limitsSummary,
   numberText,
   percentText,
   type BooksState,
@@ -81,6 +82,9 @@ export function Figures({ breakdown, checks }: { breakdown: Breakdown; checks: B
     ],
     ['Net weight', percentText(breakdown.net, 1)],
     ['Gross weight', percentText(breakdown.gross, 1)],
+    ...(breakdown.limits.length > 0
+      ? [['Limits (under Trades)', limitsSummary(breakdown.limits)] as const]
+      : []),
     ...(checks
       ? [['Data checks (under Data)', checks.length > 0 ? countsOf(checks) : 'nothing found'] as const]
       : []),

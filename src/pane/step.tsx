@@ -36,7 +36,7 @@ export function TakeButton({
   field,
   next = false,
 }: {
-  field: 'holdings' | 'returns' | 'factors'
+  field: 'holdings' | 'returns' | 'factors' | 'limits'
   /** whether this is what is to be done next */
   next?: boolean
 }) {

@@ -82,6 +82,22 @@ export const useTableStyles = makeStyles({
   pairs: { margin: 0, display: 'grid', rowGap: tokens.spacingVerticalXXS },
   pair: { display: 'flex', justifyContent: 'space-between', columnGap: tokens.spacingHorizontalM },
   value: { margin: 0, textAlign: 'right' },
+  facts: {
+    margin: 0,
+    display: 'grid',
+    fontSize: tokens.fontSizeBase200,
+    lineHeight: tokens.lineHeightBase200,
+    fontVariantNumeric: 'tabular-nums',
+    overflowWrap: 'anywhere',
+  },
+  fact: {
+    display: 'grid',
+    gridTemplateColumns: 'minmax(0, 1fr) auto',
+    columnGap: tokens.spacingHorizontalM,
+    padding: `${tokens.spacingVerticalXS} 0`,
+    borderTop: `1px solid ${tokens.colorNeutralStroke2}`,
+  },
+  meaning: { margin: 0, gridColumn: '1 / -1', color: tokens.colorNeutralForeground2 },
   more: { justifySelf: 'start' },
   tie: {
     margin: 0,
@@ -319,6 +335,26 @@ export function Pairs({ pairs }: { pairs: readonly (readonly [label: string, val
         <div key={index} className={classes.pair}>
           <dt>{label}</dt>
           <dd className={classes.value}>{value}</dd>
+        </div>
+      ))}
+    </dl>
+  )
+}
+
+/** Figures with their labels, each with a sentence below on what it means. */
+export function Facts({
+  lines,
+}: {
+  lines: readonly (readonly [label: string, figure: string, meaning: string])[]
+}) {
+  const classes = useTableStyles()
+  return (
+    <dl className={classes.facts}>
+      {lines.map(([label, figure, meaning]) => (
+        <div key={label} className={classes.fact}>
+          <dt>{label}</dt>
+          <dd className={mergeClasses(classes.value, classes.strong)}>{figure}</dd>
+          {meaning !== '' && <dd className={classes.meaning}>{meaning}</dd>}
         </div>
       ))}
     </dl>

@@ -13,6 +13,7 @@ import { BeforeAfter } from './before-after'
 import { Remark } from './headline'
 import { pointsText } from './measure'
 import { useBooksState, useKept, useLasting } from './store'
+import { Aims, Questions } from './trade-sections'
 import { TradeList } from './trade-list'
 
 const useStyles = makeStyles({
@@ -134,7 +135,7 @@ function View({
 }) {
   const classes = useStyles()
   // one field of faults: the sentence stands where it was asked for
-  const [asked, setAsked] = useKept<'candidate' | 'cells'>('trades asked', 'cells')
+  const [asked, setAsked] = useKept<'candidate' | 'cells' | 'target' | 'scenarios'>('trades asked', 'cells')
   const faultOf = (which: typeof asked): string | undefined =>
     asked === which ? state.faults.trades : undefined
   const comparison = useComparison(trades)
@@ -147,6 +148,14 @@ function View({
       {state.status.kind === 'failed' && (
         <Remark text="Trades of the figures as last computed, before the failure told above." />
       )}
+      <Aims
+        breakdown={breakdown}
+        trades={later}
+        comparison={compared}
+        state={state}
+        faultOf={faultOf}
+        asked={setAsked}
+      />
       <TradeList trades={later} fault={faultOf('candidate')} asked={() => setAsked('candidate')} />
       <BeforeAfter
         comparison={
@@ -165,6 +174,7 @@ function View({
         fault={faultOf('cells')}
         asked={() => setAsked('cells')}
       />
+      <Questions breakdown={breakdown} trades={later} faultOf={faultOf} asked={setAsked} />
     </div>
   )
 }

@@ -48,6 +48,8 @@ export interface BooksState {
   readonly factors: ReturnsReading | null
   readonly limits: LimitsReading | null
   readonly settings: Settings
+  /** the mark before decimals in what is typed for this workbook */
+  readonly decimal: Culture['decimal']
   readonly breakdown: Breakdown | null
   /** what was found about the data; null while there is nothing to look over */
   readonly checks: readonly CheckLine[] | null
@@ -249,6 +251,7 @@ class OpenBooks implements Books {
       factors: book.factors,
       limits: book.limits,
       settings: book.settings,
+      decimal: this.#culture.decimal,
       breakdown: book.breakdown,
       checks: book.checks,
       studies: book.studies,

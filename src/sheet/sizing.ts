@@ -38,6 +38,8 @@ export interface Sizing {
   readonly marks: readonly SizingMark[]
   /** change of volatility if the position is removed; 0 for one that is not held */
   readonly changeIfRemoved: number
+  /** change of volatility for a unit of weight at today's, its financing included; null where the book has no risk */
+  readonly slope: number | null
   /** what has to be said beside the picture */
   readonly notes: readonly string[]
 }
@@ -119,6 +121,7 @@ export function sizingOf(
     curve: [...places].sort((a, b) => a - b).map(at),
     marks,
     changeIfRemoved: today === 0 ? 0 : removals(model, weights, financing).change[position]! * scale,
+    slope: course.slope === null ? null : course.slope * scale,
     notes: notesOf(name, course, marks, [left, right], position, financing),
   }
 }
