@@ -3,10 +3,8 @@ import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-compon
 import {
   CAUTION,
   countOf,
-  dateText,
   numberText,
   percentText,
-  scenarioName,
   type Breakdown,
   type Scenario,
   type StressCase,
