@@ -375,6 +375,8 @@ function writeModel(sheet) {
     'Limit',
     'Over the limit',
     'Standard error of share',
+    'Least-risk weight',
+    'Equal risk contribution',
   ])
   HOLDINGS.forEach((_, i) => {
     const row = sheet.getRow(top + i)
@@ -393,12 +395,14 @@ function writeModel(sheet) {
   spill('D', add('CONTRIBUTION', weights, returns, 'B5'))
   spill('E', add('RISKSHARE', weights, returns))
   spill('H', add('RISKSHAREERROR', weights, returns))
+  spill('I', add('LEASTRISKWEIGHT', weights, returns))
+  spill('J', add('BUDGETWEIGHTS', returns))
   const total = sheet.getRow(last + 1)
   total.getCell(1).value = 'Total'
-  for (const column of ['B', 'C', 'D', 'E']) {
+  for (const column of ['B', 'C', 'D', 'E', 'J']) {
     total.getCell(column).value = { formula: `SUM(${column}${top}:${column}${last})` }
   }
-  for (let column = 1; column <= 8; column++) {
+  for (let column = 1; column <= 10; column++) {
     total.getCell(column).border = { top: LINE }
     total.getCell(column).font = { bold: true, color: { argb: INK } }
   }
@@ -411,24 +415,40 @@ function writeModel(sheet) {
     [5, PERCENT],
     [6, PERCENT],
     [8, PERCENT],
+    [9, PERCENT],
+    [10, PERCENT],
   ]) {
     numbers(sheet, column, top, last + 2, format)
   }
   numbers(sheet, 7, top, last, 'General')
 
-  sheet.getCell(`J${top - 2}`).value = 'The same as one table'
-  sheet.getCell(`J${top - 2}`).font = { bold: true, color: { argb: INK } }
+  sheet.getCell(`L${top - 2}`).value = 'The same as one table'
+  sheet.getCell(`L${top - 2}`).font = { bold: true, color: { argb: INK } }
   const [rows, columns] = BREAKDOWN_SIZE
-  sheet.getCell(`J${top - 1}`).value = {
+  sheet.getCell(`L${top - 1}`).value = {
     formula: add('BREAKDOWN', `Book!A${FIRST}:A${LAST}`, weights, returns, 'B5'),
     shareType: 'array',
-    ref: `J${top - 1}:${String.fromCharCode('J'.charCodeAt(0) + columns - 1)}${top - 2 + rows}`,
+    ref: `L${top - 1}:${String.fromCharCode('L'.charCodeAt(0) + columns - 1)}${top - 2 + rows}`,
   }
-  header(sheet, top - 1, Array(columns).fill(null), 10)
+  header(sheet, top - 1, Array(columns).fill(null), 12)
   ;[PERCENT, PERCENT, '0.000', '0.00%', PERCENT, '0.00', '0.00'].forEach((format, i) => {
-    numbers(sheet, 11 + i, top, top - 2 + rows, format)
+    numbers(sheet, 13 + i, top, top - 2 + rows, format)
   })
-  widths(sheet, [40, 12, 15, 15, 12, 10, 12, 14, 3, 31, ...Array.from({ length: columns - 1 }, () => 15)])
+  widths(sheet, [
+    40,
+    12,
+    15,
+    15,
+    12,
+    10,
+    12,
+    14,
+    14,
+    14,
+    3,
+    31,
+    ...Array.from({ length: columns - 1 }, () => 15),
+  ])
 }
 
 /** Rows and columns of BREAKDOWN's table for this book: headings, the holdings and a total; name and seven figures. */

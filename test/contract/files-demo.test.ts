@@ -91,10 +91,15 @@ it('the desk opens it whole, and the functions in its model agree with the defin
     // a mean of the worst losses is no smaller than where they begin; both and the estimators stand in the model
     expect(Number(value(5, 7))).toBeGreaterThanOrEqual(Number(value(4, 7)))
     for (const row of [6, 7, 8]) expect(Math.abs(Number(value(row, 7)) / volatility - 1)).toBeLessThan(0.3)
+    // defined for every position, as each of them moves
+    expect(column(9).every(Number.isFinite)).toBe(true)
+    // long-only weights of equal risk contribution: more of the calm, less of the lively
+    expect(total(column(10))).toBeCloseTo(1, 12)
+    expect(Math.min(...column(10))).toBeGreaterThan(0)
     // The table of BREAKDOWN, in the place the file keeps free for it.
-    expect(value(13, 10)).toBe('Holding')
-    expect(value(30, 10)).toBe('Total')
-    expect(value(14, 14)).toBe(value(14, 4))
+    expect(value(13, 12)).toBe('Holding')
+    expect(value(30, 12)).toBe('Total')
+    expect(value(14, 16)).toBe(value(14, 4))
     expect(HOLDINGS.filter((_, i) => value(14 + i, 7) === 'over').map(({ name }) => name)).toEqual([
       'Delta young-market equities',
     ])
