@@ -34,7 +34,7 @@ const useStyles = makeStyles({
   },
   status: { display: 'flex', columnGap: tokens.spacingHorizontalXS, fontWeight: tokens.fontWeightSemibold },
   mark: { width: '12px', textAlign: 'center', flexShrink: 0 },
-  breach: { color: tokens.colorStatusDangerForeground1 },
+  breach: { color: tokens.colorStatusDangerForeground3 },
   figure: { textAlign: 'right', fontWeight: tokens.fontWeightSemibold },
   wide: { gridColumn: '1 / -1' },
   drawing: { gridColumn: '1 / -1', display: 'block', margin: '3px 0', overflow: 'visible' },

@@ -8,7 +8,7 @@ import {
   type Target,
   type TradesState,
 } from '../sheet'
-import { Choice, Entry, PercentEntry, typedPercent, typedPercentText } from './controls'
+import { Choice, Entry, PercentEntry, typedNumber, typedPercent, typedPercentText } from './controls'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
 import { Facts } from './table'
@@ -52,6 +52,8 @@ interface Draft {
   readonly lower: number
   readonly upper: number
   readonly turnover: number | null
+  /** in the unit of the cells; null: any size */
+  readonly lot: number | null
   readonly net: 'kept' | 'free'
   readonly against: 'hard' | 'soft'
 }
@@ -65,6 +67,7 @@ const FIRST: Draft = {
   lower: 0,
   upper: 0.25,
   turnover: null,
+  lot: null,
   net: 'kept',
   against: 'hard',
 }
@@ -93,6 +96,7 @@ function targetOf(draft: Draft, volatility: number, of: ShareOf): Target {
       return {
         kind: 'smallest change',
         turnover: draft.turnover,
+        lot: draft.lot,
         net: draft.net,
         against: draft.against,
       }
@@ -127,6 +131,34 @@ function payerHint(kind: Kind, financing: TradesState['financing']): string | nu
 
 const keyOf = (of: ShareOf): string =>
   of.kind === 'holding' ? `holding ${of.key}` : `group ${JSON.stringify([of.header, of.label])}`
+
+/** The size that every change is a whole multiple of, as the cells of the holdings count. */
+function LotEntry({
+  lot,
+  unit,
+  commit,
+}: {
+  lot: number | null
+  unit: TradesState['preview']['unit']
+  commit: (lot: number | null) => void
+}) {
+  const inWeight = unit === 'weight'
+  return (
+    <Entry<number | null>
+      label={inWeight ? 'Changes in steps of, %' : 'Changes in steps of, amount'}
+      shown={lot === null ? '' : inWeight ? typedPercentText(lot) : String(lot)}
+      hint="Empty: any size"
+      read={(text) => {
+        if (text === '') return { value: null }
+        const value = inWeight ? typedPercent(text) : typedNumber(text)
+        return value !== null && value > 0
+          ? { value }
+          : { needed: `${inWeight ? 'A percentage above 0%' : 'An amount above 0'} is needed, or nothing.` }
+      }}
+      commit={commit}
+    />
+  )
+}
 
 /** The fields of what is looked for. */
 function Fields({
@@ -257,6 +289,7 @@ function Fields({
             }}
             commit={(turnover) => change({ turnover })}
           />
+          <LotEntry lot={draft.lot} unit={trades.preview.unit} commit={(lot) => change({ lot })} />
         </div>
       )
   }
