@@ -1,4 +1,6 @@
+import { Fault } from '../core'
 import type { Area } from './cells'
+import { explain } from './explain'
 
 /**
  * Something found while reading. 'stops' has to be mended before figures can be computed, 'warns' changes what the figures mean,
@@ -25,3 +27,20 @@ export function firstAndCount(found: readonly Finding[], noun: string): readonly
   if (!first || found.length < 3) return found
   return [{ ...first, sentence: `${first.sentence} ${found.length - 1} more ${noun} like it.` }]
 }
+
+/** A Fault whose place in the sheet is known. */
+export class PlacedFault extends Fault {
+  constructor(
+    readonly finding: Finding,
+    argument: string,
+  ) {
+    super('shape', finding.sentence, '', { argument })
+  }
+}
+
+/** The sentence for a fault as the pane says it: beside the field concerned, so without the name of that field. */
+export const sentenceOf = (fault: Fault): string =>
+  fault instanceof PlacedFault ? fault.finding.sentence : explain(fault, () => '')
+
+export const areaOf = (fault: Fault): Area | null =>
+  fault instanceof PlacedFault ? fault.finding.area : null

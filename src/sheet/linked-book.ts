@@ -6,22 +6,20 @@ import type { BookModel } from './book-model'
 import { modelChoices, modelOf } from './book-model'
 import { breakdownTable } from './breakdown-table'
 import type { Calculator, Work } from './calculator'
-import type { Area, Block, CellValue, Culture } from './cells'
-import { addressOf, isBlank, overlap, sameArea } from './cells'
+import type { Area, Culture } from './cells'
+import { addressOf, overlap } from './cells'
 import { currencyKey } from './currency'
 import { explain } from './explain'
-import type { Finding } from './findings'
+import { PlacedFault } from './findings'
 import type { HoldingsReading } from './holdings'
-import { readHoldings } from './holdings'
 import type { LimitsReading } from './limits'
-import { readLimits } from './limits'
+import { FACTOR_SETTINGS, LinkedBlocks, PART_WORDS, SERIES } from './linked-blocks'
+import type { SeriesPart, SourcePart } from './linked-blocks'
 import type { Match } from './matching'
-import { matchHoldings } from './matching'
 import { checksTable } from './checks-table'
 import { growthBeside } from './growth'
 import type { CheckLine } from './inspection'
 import { Inspection } from './inspection'
-import { numberInCell } from './numbers'
 import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
@@ -30,12 +28,12 @@ import type { Scenario } from './stress'
 import type { BacktestChoice, BacktestStudy, Studies } from './studies'
 import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
 import type { Table } from './table'
-import type { Standing, TypedCells } from './trading'
+import type { Standing } from './trading'
 import { Trading } from './trading'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
 import { areaOfTable, WrittenTable } from './written-table'
-import { countOf, listOf, quote } from './wording'
+import { listOf } from './wording'
 
 /** Where in the pane a sentence belongs. */
 export type Field =
@@ -76,33 +74,16 @@ export interface Proposal {
 /** Tables on sheets of their own that stay as they are until they are written again. */
 type Apart = 'checks' | 'trades' | 'stress'
 
-type Part = 'holdings' | 'returns' | 'factors' | 'limits' | 'table' | 'capital' | Apart
+type Part = SourcePart | 'table' | Apart
 
-/** A block whose rows are dates. */
-type SeriesPart = 'returns' | 'factors'
+/** The blocks that names in the workbook hold. */
+const LINKED: readonly SourcePart[] = ['holdings', 'returns', 'factors', 'limits', 'capital']
 
 /** Why a book looks at its sheet again; 'look' writes nothing: at opening, and when the user has edited the written table. */
 export type Cause = 'edit' | 'look' | 'calculation' | 'compute'
 
 /** Refreshes that follow recalculations alone, without an edit by the user, before the book takes itself for its own cause. */
 const MOST_UNASKED_REFRESHES = 3
-
-/** A Fault whose place in the sheet is known. */
-class PlacedFault extends Fault {
-  constructor(
-    readonly finding: Finding,
-    argument: Field,
-  ) {
-    super('shape', finding.sentence, '', { argument })
-  }
-}
-
-/** The sentence for a fault as the pane says it: beside the field concerned, so without the name of that field. */
-export const sentenceOf = (fault: Fault): string =>
-  fault instanceof PlacedFault ? fault.finding.sentence : explain(fault, () => '')
-
-export const areaOf = (fault: Fault): Area | null =>
-  fault instanceof PlacedFault ? fault.finding.area : null
 
 /**
  * One book of a workbook: a holdings block, a returns block, the figures computed from them, and the table they were written to.
@@ -111,14 +92,6 @@ export const areaOf = (fault: Fault): Area | null =>
 export class LinkedBook {
   title: string
   settings: Settings
-  holdings: HoldingsReading | null = null
-  returns: ReturnsReading | null = null
-  /** the returns of factors, where the book has such a block */
-  factors: ReturnsReading | null = null
-  /** the table of limits, where the book has one */
-  limits: LimitsReading | null = null
-  /** which series each holding goes with, as soon as both blocks are read */
-  match: Match | null = null
   breakdown: Breakdown | null = null
   /** what was found about the data, as soon as both blocks are read; null until then */
   checks: readonly CheckLine[] | null = null
@@ -136,20 +109,11 @@ export class LinkedBook {
   /** what of its saved settings could not be read, as a sentence */
   readonly unread: string | null
 
-  #holdingsBlock: Block | null = null
-  /** what was typed in the cells of the holdings, when last looked at */
-  #typed: TypedCells | null = null
-  #weightsAreFormulas = false
-  #limitsBlock: Block | null = null
-  readonly #seriesAreFormulas = { returns: false, factors: false }
-  #capitalArea: Area | null = null
-  #capitalIsFormula = false
   /** the status that only a table left behind has caused: the figures are good, and writing it ends it */
   #tableStatus: Status | null = null
   /** counts the user's edits to the blocks and the moves around them, so that figures read before one are not called up to date after it */
   #edits = 0
-  /** the block being read, whose edits count although it is not known yet */
-  #reading: { part: SeriesPart; area: Area } | null = null
+  readonly #blocks: LinkedBlocks
   #model: {
     match: Match
     returns: ReturnsReading
@@ -163,9 +127,6 @@ export class LinkedBook {
   #inspected: readonly unknown[] = []
   #unasked = 0
   readonly #asked = new Set<string>()
-  /** what has changed in the sheet since it was read */
-  readonly #changed = { holdings: false, returns: false, factors: false }
-
   constructor(
     readonly id: string,
     readonly workbook: Workbook,
@@ -174,6 +135,7 @@ export class LinkedBook {
     saved?: Json,
     onChange: () => void = () => undefined,
   ) {
+    this.#blocks = new LinkedBlocks(workbook, culture)
     this.trading = new Trading(workbook, culture, calculator, onChange)
     this.#table = new WrittenTable(workbook, this.keptName('table'), 'Risk')
     this.#apart = {
@@ -197,6 +159,29 @@ export class LinkedBook {
         : null
   }
 
+  get holdings(): HoldingsReading | null {
+    return this.#blocks.holdings
+  }
+
+  get returns(): ReturnsReading | null {
+    return this.#blocks.returns
+  }
+
+  /** the returns of factors, where the book has such a block */
+  get factors(): ReturnsReading | null {
+    return this.#blocks.factors
+  }
+
+  /** the table of limits, where the book has one */
+  get limits(): LimitsReading | null {
+    return this.#blocks.limits
+  }
+
+  /** which series each holding goes with, as soon as both blocks are read */
+  get match(): Match | null {
+    return this.#blocks.match
+  }
+
   /** Where the written table lies. */
   get table(): Area | null {
     return this.#table.area
@@ -215,23 +200,14 @@ export class LinkedBook {
 
   /** Notes an edit by the user; tells how this book has to look again, if it concerns it. */
   heedEdit(area: Area | null, sheet: string): Cause | null {
-    const touches = (part: Area | null | undefined): boolean =>
-      part !== null && part !== undefined && (area ? overlap(area, part) !== null : part.sheet === sheet)
     // any edit may be what the next recalculation comes from
     this.#unasked = 0
-    const holdings =
-      touches(this.holdings?.area) || touches(this.#capitalArea) || touches(this.#limitsBlock?.area)
-    const touched = (part: SeriesPart): boolean =>
-      touches(this[part]?.area) || (this.#reading?.part === part && touches(this.#reading.area))
-    const [returns, factors] = [touched('returns'), touched('factors')]
-    const beside =
-      area !== null &&
-      this.linked &&
-      (this.#isJustBeyond(this.holdings?.area, area) || this.#isJustBeyond(this.returns?.area, area))
-    if (holdings) this.#changed.holdings = true
-    if (returns) this.#changed.returns = true
-    if (factors) this.#changed.factors = true
-    if (!holdings && !returns && !factors) return beside ? 'edit' : touches(this.table) ? 'look' : null
+    if (!this.#blocks.heedEdit(area, sheet)) {
+      if (area !== null && this.linked && this.#blocks.isBeside(area)) return 'edit'
+      const { table } = this
+      const touches = table !== null && (area ? overlap(area, table) !== null : table.sheet === sheet)
+      return touches ? 'look' : null
+    }
     this.#edits++
     if (this.breakdown) {
       const place = area ? addressOf(area) : sheet
@@ -240,42 +216,16 @@ export class LinkedBook {
     return 'edit'
   }
 
-  #isJustBeyond(part: Area | undefined, area: Area): boolean {
-    if (!part) return false
-    const wider = { ...part, rows: part.rows + 1, columns: part.columns + 1 }
-    return overlap(wider, area) !== null
-  }
-
   /** Notes a recalculation of a sheet; tells whether formulas of this book may have changed by it. */
   heedCalculation(sheet: string): boolean {
     if (!this.linked || !this.breakdown || this.#unasked > MOST_UNASKED_REFRESHES) return false
-    const weights = this.#weightsAreFormulas && this.holdings?.area.sheet === sheet
-    const capital = this.#capitalIsFormula && this.#capitalArea?.sheet === sheet
-    const recalculated = SERIES.filter(
-      (part) => this.#seriesAreFormulas[part] && this[part]?.area.sheet === sheet,
-    )
-    for (const part of recalculated) this.#changed[part] = true
-    return weights || capital || recalculated.length > 0
+    return this.#blocks.heedCalculation(sheet)
   }
 
   /** Cells, rows, columns or a sheet came, went or got another name: everything has to be looked at again. */
   heedMove(sheet: string): boolean {
-    // cells that close a gap leave the block where it was, with other numbers in it
-    for (const part of SERIES)
-      if (
-        this[part]?.area.sheet === sheet ||
-        (this.#reading?.part === part && this.#reading.area.sheet === sheet)
-      )
-        this.#changed[part] = true
-    const parts = [
-      this.holdings?.area,
-      this.returns?.area,
-      this.factors?.area,
-      this.#limitsBlock?.area,
-      this.table,
-      this.#capitalArea,
-    ]
-    const concerned = this.linked && parts.some((part) => part?.sheet === sheet)
+    const reads = this.#blocks.heedMove(sheet)
+    const concerned = this.linked && (reads || this.table?.sheet === sheet)
     if (concerned) this.#edits++
     return concerned
   }
@@ -283,8 +233,8 @@ export class LinkedBook {
   // ---- reading
 
   /** Takes an area the user points at as the holdings or the returns. */
-  async take(part: 'holdings' | SeriesPart | 'limits' | 'capital', area: Area, work: Work): Promise<void> {
-    if (part === 'capital') return this.#takeCapital(area, work)
+  async take(part: SourcePart, area: Area, work: Work): Promise<void> {
+    if (part === 'capital') return this.#chooseCapital(await this.#blocks.capitalIn(area, work), area, work)
     if (area.rows * area.columns === 1) {
       const [seen] = await this.workbook.look([{ at: area, region: true }])
       const region = seen?.region
@@ -306,14 +256,11 @@ export class LinkedBook {
       )
     }
     if (part === 'holdings') {
-      const block = await this.workbook.read(area, { shape: true, signal: work.signal })
-      if (this.holdings === null && this.title === `Book ${this.id}`) this.title = area.sheet
-      if (!sameArea(this.#holdingsBlock?.area ?? null, area)) this.trading.restart()
-      this.#holdingsBlock = block
-      this.#changed.holdings = false
-      this.#readHoldings()
+      const isFirst = this.holdings === null
+      if (await this.#blocks.readHoldings(area, this.settings, work)) this.trading.restart()
+      if (isFirst && this.title === `Book ${this.id}`) this.title = area.sheet
     } else if (part === 'limits') return this.#takeLimits(area, work)
-    else await this.#readSeries(part, area, work)
+    else await this.#blocks.readSeries(part, area, this.settings, work)
     if (part === 'factors' && this.linked && this.settings.estimator.kind !== 'factors') {
       // no figure rests on them: the book stays as it is, and knows where they are
       this.#heedStops(part)
@@ -327,15 +274,14 @@ export class LinkedBook {
 
   /** Lets go of the block of factor returns. */
   async dropFactors(work: Work): Promise<void> {
-    this.factors = null
+    this.#blocks.factors = null
     if (this.linked) await this.#save({ [this.keptName('factors')]: null })
     if (this.settings.estimator.kind === 'factors') await this.choose({ estimator: { kind: 'sample' } }, work)
   }
 
   /** Takes an area as the table of limits: figures stay, and are held against them. */
   async #takeLimits(area: Area, work: Work): Promise<void> {
-    this.#limitsBlock = await this.workbook.read(area, { shape: true, signal: work.signal })
-    this.#readLimits()
+    await this.#blocks.readLimits(area, work)
     const stop = this.limits?.findings.find(({ weight }) => weight === 'stops')
     if (this.linked) {
       await this.#save({ [this.keptName('limits')]: area })
@@ -346,92 +292,23 @@ export class LinkedBook {
 
   /** Lets go of the table of limits. */
   async dropLimits(work: Work): Promise<void> {
-    this.#limitsBlock = null
-    this.limits = null
+    this.#blocks.dropLimits()
     if (this.linked) {
       await this.#save({ [this.keptName('limits')]: null })
       await this.refresh('compute', work)
     } else if (this.breakdown) await this.compute(work)
   }
 
-  /** Reads the limits against the holdings there are; without holdings their names say nothing yet. */
-  #readLimits(): void {
-    this.limits =
-      this.#limitsBlock && this.holdings ? readLimits(this.#limitsBlock, this.holdings, this.culture) : null
-  }
-
-  async #takeCapital(area: Area, work: Work): Promise<void> {
-    const isOne = area.rows * area.columns === 1
-    const value = isOne ? (await this.workbook.read(area, { signal: work.signal })).values[0]?.[0] : ''
-    const capital = numberInCell(value ?? '', this.culture)
-    if (!isOne || capital === null || capital <= 0)
-      throw new Fault(
-        'selection',
-        isOne
-          ? `found ${isBlank(value) ? 'a blank' : quote(value)}`
-          : `found ${countOf(area.rows * area.columns, 'cell')}`,
-        'one cell with a number above 0 is needed',
-        { argument: 'capital' },
-      )
-    await this.#chooseCapital(capital, area, work)
-  }
-
   /** Takes a figure of capital and the cell it is followed in, or null where it stands by itself. */
   async #chooseCapital(capital: number | null, area: Area | null, work: Work): Promise<void> {
     this.settings = { ...this.settings, capital }
-    this.#capitalArea = area
-    this.#readHoldings()
+    this.#blocks.capital = area
+    this.#blocks.interpret(this.settings)
     if (this.holdings) this.#settle('holdings')
     if (this.linked) {
       await this.#save({ [this.keptName('capital')]: area })
       await this.refresh('compute', work)
     } else if (this.breakdown) await this.compute(work)
-  }
-
-  #readHoldings(): void {
-    if (!this.#holdingsBlock) return
-    this.holdings = readHoldings(this.#holdingsBlock, this.settings, this.culture)
-    this.#readLimits()
-    this.#match()
-  }
-
-  #match(): void {
-    const { holdings, returns } = this
-    const { riskless, currency } = this.settings
-    this.match = holdings && returns ? matchHoldings(holdings, returns, riskless, currency) : null
-  }
-
-  async #readSeries(part: SeriesPart, area: Area, work: Work): Promise<void> {
-    // what is edited from now on may miss the reading
-    this.#changed[part] = false
-    this.#reading = { part, area }
-    try {
-      const block = await this.workbook.read(area, {
-        shape: true,
-        signal: work.signal,
-        progress: (share) => {
-          work.progress(part === 'returns' ? 'Reading the returns' : 'Reading the factor returns', share)
-        },
-      })
-      // factors are returns or prices as the content says, whatever the user has said of the other block
-      const settings = part === 'returns' ? this.settings : FACTOR_SETTINGS
-      this[part] = readReturns(block, settings, this.culture)
-    } catch (fault) {
-      this.#changed[part] = true
-      throw fault
-    } finally {
-      this.#reading = null
-    }
-    if (part === 'returns') this.#match()
-    // formulas are looked for along the newest and the oldest row only: a block is filled one way
-    const row = (k: number): Area => ({ ...area, row: area.row + k, rows: 1 })
-    const edges = await this.workbook.look([
-      { at: row(area.rows - 1), formulas: true },
-      { at: row(Math.min(1, area.rows - 1)), formulas: true },
-    ])
-    this.#seriesAreFormulas[part] = edges.some((edge) =>
-      edge?.formulas?.some((cells) => cells.some(isFormula)),
-    )
   }
 
   /** After a block was read: what keeps it from being used stands at its field. */
@@ -461,16 +338,16 @@ export class LinkedBook {
   async choose(change: Partial<Settings>, work: Work): Promise<void> {
     this.settings = { ...this.settings, ...change }
     if (change.capital !== undefined) return this.#chooseCapital(change.capital, null, work)
-    if ('riskless' in change || 'currency' in change) this.#match()
+    if ('riskless' in change || 'currency' in change) this.#blocks.matchAnew(this.settings)
     const missing =
       'currency' in change && this.match?.currencies?.findings.find(({ weight }) => weight === 'stops')
     if (missing) this.faults = { ...this.faults, currency: missing.sentence }
     if ('roles' in change) {
-      this.#readHoldings()
+      this.#blocks.interpret(this.settings)
       if (this.holdings) this.#settle('holdings')
     }
     if (this.returns && ('content' in change || 'orientation' in change || 'returnKind' in change)) {
-      await this.#readSeries('returns', this.returns.area, work)
+      await this.#blocks.readSeries('returns', this.returns.area, this.settings, work)
       this.#settle('returns')
     }
     if (this.linked) {
@@ -541,8 +418,9 @@ export class LinkedBook {
         'select the returns block and use the selection',
         { argument: 'returns' },
       )
-    const { riskless, currency } = this.settings
-    const match = (this.match ??= matchHoldings(holdings, returns, riskless, currency))
+    if (!this.match) this.#blocks.matchAnew(this.settings)
+    const { match, factors, limits } = this
+    if (!match) throw new Error('holdings and returns are there, and no match of them')
     for (const [field, findings] of [
       ['holdings', holdings.findings],
       ['returns', returns.findings],
@@ -553,7 +431,6 @@ export class LinkedBook {
       const stop = findings.find(({ weight }) => weight === 'stops')
       if (stop) throw new PlacedFault(stop, field)
     }
-    const { factors, limits } = this
     const blocks = { match, holdings, returns, factors, limits }
     const wanted = modelChoices(this.settings)
     const choices = JSON.stringify(wanted)
@@ -585,7 +462,7 @@ export class LinkedBook {
   /** Figures stand whether or not series that are not held can be added to them. */
   async #standForTrades(standing: Standing, work: Work): Promise<void> {
     try {
-      await this.trading.stand(standing, this.#typed, work)
+      await this.trading.stand(standing, this.#blocks.typed, work)
     } catch (fault) {
       if (!(fault instanceof Fault) || fault.code === 'cancelled') throw fault
       this.faults = { ...this.faults, trades: explain(fault, () => '') }
@@ -674,19 +551,16 @@ export class LinkedBook {
       await this.refresh('compute', work)
       return
     }
-    if (this.#changed.holdings && this.holdings) await this.take('holdings', this.holdings.area, work)
+    if (this.#blocks.hasChanged('holdings') && this.holdings)
+      await this.take('holdings', this.holdings.area, work)
     for (const part of SERIES) {
       const block = this[part]
-      if (this.#changed[part] && block) await this.take(part, block.area, work)
+      if (this.#blocks.hasChanged(part) && block) await this.take(part, block.area, work)
     }
     await this.#compute(work)
-    await this.#save({
-      [this.keptName('holdings')]: this.holdings?.area ?? null,
-      [this.keptName('returns')]: this.returns?.area ?? null,
-      [this.keptName('factors')]: this.factors?.area ?? null,
-      [this.keptName('limits')]: this.#limitsBlock?.area ?? null,
-      [this.keptName('capital')]: this.#capitalArea,
-    })
+    await this.#save(
+      Object.fromEntries(LINKED.map((part) => [this.keptName(part), this.#blocks.areaOf(part)])),
+    )
     this.linked = true
     // a look now finds formulas among the weights, brings an earlier table along and sees what lies beyond the blocks
     await this.refresh('compute', work)
@@ -710,76 +584,28 @@ export class LinkedBook {
   async refresh(cause: Cause, work: Work): Promise<void> {
     if (cause === 'compute') this.#unasked = 0
     const edits = this.#edits
-    const kept = (part: Part): { at: Area | { kept: string } } => ({ at: { kept: this.keptName(part) } })
-    const [holdings, returns, table, capital, factors, limits] = await this.workbook.look([
-      { ...kept('holdings'), values: true, shape: true, formulas: true, region: true },
-      { ...kept('returns'), region: true },
-      { ...kept('table'), formulas: true },
-      { ...kept('capital'), values: true, formulas: true },
-      kept('factors'),
-      { ...kept('limits'), values: true, shape: true },
+    const [table = null, ...looked] = await this.workbook.look([
+      { at: { kept: this.keptName('table') }, formulas: true },
+      ...this.#blocks.wants((part) => this.keptName(part)),
     ])
-    if (!holdings) throw goneFault('holdings')
-    if (!returns) throw goneFault('returns')
-    if (!factors && this.settings.estimator.kind === 'factors') throw goneFault('factors')
-    if (!capital && this.#capitalArea)
-      throw new Fault(
-        'missing',
-        `the cell of the capital, ${addressOf(this.#capitalArea)}, is gone`,
-        'point at another cell or type the capital',
-        { argument: 'capital' },
-      )
-
-    const before = this.#holdingsBlock
-    this.#typed = holdings.formulas ? { area: holdings.area, formulas: holdings.formulas } : null
-    this.#weightsAreFormulas = holdings.formulas?.some((cells) => cells.some(isFormula)) ?? false
-    const capitalValue = capital?.values ? numberInCell(capital.values[0]?.[0] ?? '', this.culture) : null
-    const capitalMoved = capital !== null && capital !== undefined && capitalValue !== this.settings.capital
-    if (capital && capitalMoved) {
-      if (capitalValue === null || capitalValue <= 0)
-        throw new PlacedFault(
-          {
-            weight: 'stops',
-            sentence: `${addressOf(capital.area)}: found ${quote(capital.values?.[0]?.[0] ?? '')} as the capital; a number above 0 is needed.`,
-            area: capital.area,
-          },
-          'capital',
-        )
-      this.settings = { ...this.settings, capital: capitalValue }
-    }
-    this.#capitalArea = capital?.area ?? null
-    this.#capitalIsFormula = capital?.formulas?.some((cells) => cells.some(isFormula)) ?? false
-    const sameHoldings =
-      before !== null &&
-      sameArea(before.area, holdings.area) &&
-      sameValues(before.values, holdings.values ?? []) &&
-      !capitalMoved
-    const stands = (part: SeriesPart, seen: Seen | null | undefined): boolean =>
-      seen
-        ? this[part] !== null && sameArea(this[part].area, seen.area) && !this.#changed[part]
-        : this[part] === null
-    const sameReturns = stands('returns', returns)
-    const sameFactors = stands('factors', factors)
-    if (cause === 'calculation' && sameHoldings && sameReturns && sameFactors) return
+    const news = this.#blocks.compare(looked, this.settings)
+    if (news.capital !== undefined) this.settings = { ...this.settings, capital: news.capital }
+    this.#blocks.place(news)
+    const { holdings, returns } = news.seen
+    const isSame = !news.holdings && !news.returns && !news.factors && news.capital === undefined
+    if (cause === 'calculation' && isSame) return
     if (cause === 'calculation' && ++this.#unasked > MOST_UNASKED_REFRESHES) {
       this.status = {
         kind: 'failed',
         sentence: `The weights changed ${MOST_UNASKED_REFRESHES} times without an edit of yours: it seems that the written table feeds its own weights. Refreshing has stopped; Compute starts it again.`,
-        area: holdings.area,
+        area: holdings?.area ?? null,
       }
       return
     }
-    this.#holdingsBlock = blockOf(holdings)
-    const limitsGone = limits === null && this.#limitsBlock !== null
-    this.#limitsBlock = limits ? blockOf(limits) : null
-    this.#changed.holdings = false
-    this.#readHoldings()
-    if (!sameReturns) await this.#readSeries('returns', returns.area, work)
-    if (!factors) this.factors = null
-    else if (!sameFactors) await this.#readSeries('factors', factors.area, work)
+    await this.#blocks.follow(news, this.settings, work)
     this.#table.area = table?.area ?? null
     await this.#compute(work)
-    if (limitsGone)
+    if (news.limitsGone)
       this.faults = {
         ...this.faults,
         limits:
@@ -788,7 +614,7 @@ export class LinkedBook {
     this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
     if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
-    await this.#lookBeyond(holdings, returns)
+    if (holdings && returns) await this.#lookBeyond(holdings, returns)
   }
 
   /** @returns what keeps the table behind the figures, or null */
@@ -894,13 +720,8 @@ export class LinkedBook {
   }
 
   #sources(): Sources {
-    return [
-      ['holdings', this.holdings?.area],
-      ['returns', this.returns?.area],
-      ['factor returns', this.factors?.area],
-      ['limits', this.#limitsBlock?.area],
-      ['capital', this.#capitalArea],
-    ]
+    const words = (part: SourcePart): string => (part === 'capital' ? part : PART_WORDS[part])
+    return LINKED.map((part) => [words(part), this.#blocks.areaOf(part) ?? undefined])
   }
 
   /** Lets go of a table that another book was written over. */
@@ -910,17 +731,7 @@ export class LinkedBook {
 
   /** Names that this book keeps in the workbook, to be taken away with it. */
   forget(): WritePlan {
-    const parts: Part[] = [
-      'holdings',
-      'returns',
-      'factors',
-      'limits',
-      'table',
-      'capital',
-      'checks',
-      'trades',
-      'stress',
-    ]
+    const parts: readonly Part[] = [...LINKED, 'table', 'checks', 'trades', 'stress']
     return {
       patches: [],
       keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
@@ -971,35 +782,6 @@ export class LinkedBook {
   }
 }
 
-const isFormula = (value: CellValue): boolean =>
-  typeof value === 'string' && value.startsWith('=') && value.length > 1
-
-const blockOf = ({ area, values, hiddenRows, merged }: Seen): Block => ({
-  area,
-  values: values ?? [],
-  ...(hiddenRows ? { hiddenRows } : {}),
-  ...(merged ? { merged } : {}),
-})
-
-const SERIES: readonly SeriesPart[] = ['returns', 'factors']
-
-const PART_WORDS = {
-  holdings: 'holdings',
-  returns: 'returns',
-  factors: 'factor returns',
-  limits: 'limits',
-} as const
-
-const FACTOR_SETTINGS = { content: null, orientation: null, returnKind: 'simple' } as const
-
-const goneFault = (part: 'holdings' | SeriesPart): Fault =>
-  new Fault(
-    'missing',
-    `the range of the ${PART_WORDS[part]} is gone: its cells or its sheet were deleted`,
-    `select the ${PART_WORDS[part]} again and use the selection`,
-    { argument: part },
-  )
-
 const sameSeries = (a: Match, b: Match): boolean =>
   a.seriesOf.length === b.seriesOf.length &&
   a.seriesOf.every((series, i) => series === b.seriesOf[i]) &&
@@ -1011,7 +793,3 @@ const sameFigures = (a: Decomposition | undefined, b: Decomposition): boolean =>
   a.periodsPerYear === b.periodsPerYear &&
   a.weights.length === b.weights.length &&
   a.weights.every((weight, i) => weight === b.weights[i])
-
-const sameValues = (a: Block['values'], b: Block['values']): boolean =>
-  a.length === b.length &&
-  a.every((row, r) => row.length === b[r]?.length && row.every((value, c) => value === b[r]?.[c]))
