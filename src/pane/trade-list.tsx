@@ -8,6 +8,7 @@ import {
   RULE_NAMES,
   type Entry,
   type Financing,
+  type TextFault,
   type TradeLine,
   type TradesState,
 } from '../sheet'
@@ -107,14 +108,14 @@ const ORIGINS: { readonly [O in TradeLine['origin']]: string | null } = {
 
 /** What moved a line, in the words below its name. */
 function marksOf(
-  { before, sheet, origin, candidate }: TradeLine,
+  { before, sheet, origin, candidate, typed, fault }: TradeLine,
   payer: Financing['kind'],
 ): readonly string[] {
   const by = origin === 'financing' && payer === 'pro rata' ? payer : ORIGINS[origin]
   return [
     ...(candidate ? ['not held'] : []),
     ...(sheet !== before ? [`edited in the sheet: ${percentText(sheet, 2)}`] : []),
-    ...(by === null ? [] : [by]),
+    ...(fault !== null && typed === null ? ['no weight by the rule'] : by === null ? [] : [by]),
   ]
 }
 
@@ -141,8 +142,10 @@ const Line = memo(
     const [draft, setDraft] = useState<TradeLine['typed']>(null)
     const atFocus = useRef<TradeLine['typed']>(null)
     const entered = draft ?? typed
-    const lasting = useLasting(line.fault !== null, TYPING_MS)
-    const fault = lasting || draft === null ? line.fault : null
+    // where nothing is typed for the line, the fault is the rule's, and stands with it
+    const own = entered === null ? null : line.fault
+    const lasting = useLasting(own !== null, TYPING_MS)
+    const fault = lasting || draft === null ? own : null
     const moved = after !== before
     const below = fault !== null || (entered !== null && entered.text.length > SHOWN)
     const type = (entry: Entry, text: string): void => {
@@ -169,7 +172,13 @@ const Line = memo(
                     className={classes.remove}
                     icon={<Dismiss12Regular />}
                     aria-label={`Take ${key} off the list`}
-                    onClick={() => void books.dropCandidate(line.name)}
+                    onClick={({ currentTarget }) => {
+                      // the line goes, the focus stays with the list
+                      const own = currentTarget.closest('tr')
+                      const others = [...(own?.parentElement?.querySelectorAll('input') ?? [])]
+                      others.find((input) => !own?.contains(input))?.focus()
+                      void books.dropCandidate(line.name)
+                    }}
                   />
                 )}
               </div>
@@ -177,24 +186,24 @@ const Line = memo(
           </th>
           <td className={cell}>{percentText(before, 2)}</td>
           {ENTRIES.map(([entry, label]) => {
-            const own = entered?.entry === entry
+            const isOwn = entered?.entry === entry
             return (
               <td key={entry} className={mergeClasses(cell, classes.entryCell)}>
                 <input
                   data-entry={entry}
                   className={mergeClasses(
                     classes.entry,
-                    own && classes.typed,
+                    isOwn && classes.typed,
                     moved && classes.moved,
-                    own && fault !== null && classes.wrong,
+                    isOwn && fault !== null && classes.wrong,
                   )}
                   tabIndex={stop ? 0 : -1}
                   autoComplete="off"
                   spellCheck={false}
                   aria-label={`${label}: ${key}`}
-                  aria-invalid={own && fault !== null}
-                  aria-describedby={own && fault !== null ? id : undefined}
-                  value={own ? entered.text : ''}
+                  aria-invalid={isOwn && fault !== null}
+                  aria-describedby={isOwn && fault !== null ? id : undefined}
+                  value={isOwn ? entered.text : ''}
                   placeholder={figures[entry]}
                   onFocus={() => (atFocus.current = typed)}
                   onChange={(event) => type(entry, event.currentTarget.value)}
@@ -227,9 +236,9 @@ const Line = memo(
 
 const COLUMNS = [
   ['Holding', null],
-  ['Before', 56],
-  ['Change', 62],
-  ['After', 64],
+  ['Before', 58],
+  ['Change', 64],
+  ['After', 65],
 ] as const
 
 /** Lines in an order that is kept, those that came since at the end. */
@@ -318,15 +327,32 @@ function Lines({
   )
 }
 
+/** What is wrong with the rule: its text, or what it comes to for a holding; for many, the first is told and the rest counted. */
+function ruleFaultOf({ rule, lines }: TradesState): TextFault | null {
+  const [first, ...others] = lines.filter(({ fault, typed }) => fault !== null && typed === null)
+  if (!first?.fault) return rule.fault
+  const more = others.length === 0 ? '' : ` So it is for ${countOf(others.length, 'more holding')}.`
+  return { ...first.fault, sentence: `${first.fault.sentence}${more}` }
+}
+
 /** What every holding without a trade of its own becomes. */
-function RuleField({ rule, loading }: { rule: TradesState['rule']; loading: boolean }) {
+function RuleField({ trades }: { trades: TradesState }) {
   const books = useBooks()
   const classes = { ...useStepStyles(), ...useStyles() }
+  const { rule, loading, preview } = trades
   const [draft, setDraft] = useState<string | null>(null)
-  const lasting = useLasting(rule.fault !== null, TYPING_MS)
+  const atFocus = useRef('')
+  const told = ruleFaultOf(trades)
+  const lasting = useLasting(told !== null, TYPING_MS)
   const slow = useLasting(loading, TYPING_MS)
   const text = draft ?? rule.text
-  const fault = lasting || draft === null ? rule.fault : null
+  const fault = lasting || draft === null ? told : null
+  // what does not keep the rule from counting is a remark
+  const remark = rule.fault !== null && !preview.refusals.includes(rule.fault.sentence)
+  const type = (typed: string): void => {
+    setDraft(typed)
+    books.trade({ rule: asTyped(typed) })
+  }
   return (
     <div>
       <Field
@@ -337,6 +363,7 @@ function RuleField({ rule, loading }: { rule: TradesState['rule']; loading: bool
             ? 'Loading what reads expressions…'
             : 'Such as weight * 0.9 or min(weight, 5%). What is typed for one holding goes before it.'
         }
+        validationState={fault === null ? 'none' : fault === rule.fault && remark ? 'warning' : 'error'}
         validationMessage={fault && <TextFaultMessage text={text} fault={fault} />}
       >
         <Input
@@ -345,15 +372,11 @@ function RuleField({ rule, loading }: { rule: TradesState['rule']; loading: bool
           autoComplete="off"
           spellCheck={false}
           value={text}
-          onChange={(_, data) => {
-            setDraft(data.value)
-            books.trade({ rule: asTyped(data.value) })
-          }}
+          onFocus={() => (atFocus.current = rule.text)}
+          onChange={(_, data) => type(data.value)}
           onBlur={() => setDraft(null)}
           onKeyDown={(event) => {
-            if (event.key !== 'Escape' || text === '') return
-            setDraft('')
-            books.trade({ rule: '' })
+            if (event.key === 'Escape' && draft !== null) type(atFocus.current)
           }}
         />
       </Field>
@@ -419,32 +442,35 @@ const Payer = memo(
 )
 
 /** Series of the returns that no holding goes with, to be traded from a weight of 0. */
-function AddCandidate({
+function Candidates({
   candidates,
+  added,
   fault,
   asked,
 }: {
   candidates: readonly string[]
+  /** how many are on the list already */
+  added: number
   fault: string | undefined
   asked: () => void
 }) {
   const books = useBooks()
-  const classes = useStyles()
-  const [wanted, setWanted] = useState<string | null>(null)
-  const [first] = candidates
-  if (first === undefined) return <FaultLine text={fault} />
-  const chosen = wanted !== null && candidates.includes(wanted) ? wanted : first
+  const classes = { ...useStepStyles(), ...useStyles() }
+  const [wanted, setWanted] = useState('')
+  const chosen = candidates.includes(wanted) ? wanted : (candidates[0] ?? '')
+  if (candidates.length + added === 0) return <FaultLine text={fault} />
   return (
-    <Disclosure summary={`Trade a series that is not held (${candidates.length})`} open={fault !== undefined}>
+    <Disclosure summary={`Series that are not held (${candidates.length + added})`} open={added > 0}>
       <FaultLine text={fault} />
       <div className={classes.adding}>
-        <Field label="Series of the returns" size="small" className={classes.grow}>
+        <Field label="Trade a series of the returns" size="small" className={classes.grow}>
           <Select
             size="small"
             className={classes.control}
             value={chosen}
             onChange={(_, { value }) => setWanted(value)}
           >
+            {candidates.length === 0 && <option value="">All are on the list</option>}
             {candidates.map((name) => (
               <option key={name}>{name}</option>
             ))}
@@ -452,6 +478,7 @@ function AddCandidate({
         </Field>
         <Button
           size="small"
+          disabledFocusable={candidates.length === 0}
           onClick={() => {
             asked()
             void books.addCandidate(chosen)
@@ -460,6 +487,12 @@ function AddCandidate({
           Add to the list
         </Button>
       </div>
+      {added > 0 && (
+        <p className={mergeClasses(classes.small, classes.apart)}>
+          With a series that is not held, both sides rest on the dates it has in common with the holdings:
+          they may differ from the figures under Risk.
+        </p>
+      )}
     </Disclosure>
   )
 }
@@ -489,7 +522,7 @@ export function TradeList({
   asked: () => void
 }) {
   const classes = { ...useStepStyles(), ...useStyles() }
-  const { lines, rule, financing, financingFault, candidates, loading, notes, proposal } = trades
+  const { lines, financing, financingFault, candidates, notes, proposal } = trades
   const [sought, setSought] = useState('')
   const [whole, setWhole] = useKept('trades whole', false)
   const isLong = lines.length > LONG
@@ -504,7 +537,7 @@ export function TradeList({
         : lines
   return (
     <Section title="Trades">
-      <RuleField rule={rule} loading={loading} />
+      <RuleField trades={trades} />
       <Payer financing={financing} fault={financingFault} keys={lines.map(({ key }) => key)} />
       {proposal && (
         <p className={classes.small}>
@@ -543,13 +576,12 @@ export function TradeList({
             : 'The arrow keys go up and down the list.'}
       </p>
       {shown.length > 0 && <Lines lines={shown} all={lines} payer={financing.kind} />}
-      {lines.some(({ candidate }) => candidate) && (
-        <p className={classes.small}>
-          With a series that is not held, both sides rest on the dates that it has in common with the
-          holdings: they may differ from the figures under Risk.
-        </p>
-      )}
-      <AddCandidate candidates={candidates} fault={fault} asked={asked} />
+      <Candidates
+        candidates={candidates}
+        added={lines.filter(({ candidate }) => candidate).length}
+        fault={fault}
+        asked={asked}
+      />
     </Section>
   )
 }

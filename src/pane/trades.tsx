@@ -53,13 +53,14 @@ const BELOW_OUTCOME = { '--kept-in-sight': '52px' } as CSSProperties
 /** How long a text that cannot be read yet is taken for one that is still being typed. */
 const TYPING_MS = 400
 
-const hasFault = ({ rule, lines, financingFault, loading }: TradesState): boolean =>
-  loading || rule.fault !== null || financingFault !== null || lines.some(({ fault }) => fault !== null)
+/** Whether something that is asked for keeps the trades from being worked out. */
+const isHindered = ({ comparison, preview }: TradesState): boolean =>
+  typeof comparison === 'string' && preview.refusals.includes(comparison)
 
 /** The comparison; while a text is half typed, the last that there was. */
 function useComparison(trades: TradesState): Comparison | string {
   const { comparison } = trades
-  const unread = typeof comparison === 'string' && hasFault(trades)
+  const unread = isHindered(trades)
   const lasting = useLasting(unread, TYPING_MS)
   const [last, setLast] = useState<Comparison | null>(null)
   const keep = typeof comparison !== 'string' ? comparison : unread ? last : null
@@ -159,7 +160,7 @@ function View({
       <TradeList trades={later} fault={faultOf('candidate')} asked={() => setAsked('candidate')} />
       <BeforeAfter
         comparison={
-          typeof compared !== 'string' || !hasFault(later)
+          typeof compared !== 'string' || !isHindered(later)
             ? compared
             : later.loading
               ? 'Loading what reads expressions…'

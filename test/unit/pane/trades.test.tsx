@@ -148,6 +148,26 @@ describe('the list of trades', () => {
     )
   })
 
+  test('tells a rule that has no weight for some holdings once, with the rule, and marks their lines', async () => {
+    const { list, trade, trades } = await book()
+    await trade({ rule: 'weight / (weight - 20%) - benchmark' })
+    const { said, rows } = list()
+    const [first] = trades().lines.flatMap(({ fault }) => fault ?? [])
+    expect(said.split(first?.sentence ?? '?')).toHaveLength(2)
+    expect(said).toContain('So it is for 3 more holdings.')
+    expect(rows.slice(1).map(([name]) => name)).toEqual(
+      SERIES.slice(0, 4).map((name) => `${name} no weight by the rule`),
+    )
+  })
+
+  test('says of a group that no holding is in that it is none, and the rule counts all the same', async () => {
+    const { list, trade, sides } = await book()
+    await trade({ rule: 'group == "Lnad" ? 0% : weight * 0.5' })
+    expect(list().said).toContain('No holding is in a group “Lnad”.')
+    expect(fields(list().markup, 'Meadow')[1]).toBe('20.00%')
+    expect(sides().said).toContain('Net weight 100.00% 50.00%')
+  })
+
   test('marks a weight edited in the sheet since the comparison began', async () => {
     const { list, type, books, trades } = await book()
     type('Book!C2', 0.38)
@@ -178,7 +198,7 @@ describe('the list of trades', () => {
 
   test('names a series that is not held, which can be added and taken off', async () => {
     const { list, books } = await book()
-    expect(list().said).toContain('Trade a series that is not held (1)')
+    expect(list().said).toContain('Series that are not held (1)')
     await books.addCandidate('Ferry')
     const { rows, markup } = list()
     expect(rows.at(-1)?.slice(0, 2)).toEqual(['Ferry not held', '0.00%'])
