@@ -3,11 +3,11 @@ import {
   bandText,
   countOf,
   dateText,
-  limitsSummary,
   numberText,
   percentText,
   type BooksState,
   type Breakdown,
+  type LimitState,
 } from '../sheet'
 import { countsOf } from './checks'
 import { Disclosure } from './controls'
@@ -55,6 +55,19 @@ function datesLine(dates: Breakdown['dates']): string {
   return `${countOf(used, 'date')}${span}${left}`
 }
 
+/** The limits that are not kept, or that all are. */
+function limitsLine(limits: readonly LimitState[]): string {
+  const count = (status: LimitState['status']): number =>
+    limits.filter((limit) => limit.status === status).length
+  const parts = [
+    [count('breach'), 'breached'],
+    [count('over soft'), 'over soft'],
+    [count('not measured'), 'not measured'],
+  ] as const
+  const open = parts.flatMap(([many, words]) => (many > 0 ? [`${many} ${words}`] : []))
+  return open.length === 0 ? `all ${limits.length} within` : open.join(', ')
+}
+
 /** How sure the volatility is, or why that is not known. */
 function Band({ breakdown: { bands, decomposition } }: { breakdown: Breakdown }) {
   const classes = useStyles()
@@ -83,7 +96,7 @@ export function Figures({ breakdown, checks }: { breakdown: Breakdown; checks: B
     ['Net weight', percentText(breakdown.net, 1)],
     ['Gross weight', percentText(breakdown.gross, 1)],
     ...(breakdown.limits.length > 0
-      ? [['Limits (under Trades)', limitsSummary(breakdown.limits)] as const]
+      ? [['Limits (under Trades)', limitsLine(breakdown.limits)] as const]
       : []),
     ...(checks
       ? [['Data checks (under Data)', checks.length > 0 ? countsOf(checks) : 'nothing found'] as const]

@@ -36,35 +36,53 @@ interface Column extends TableColumn {
 
 const inPercent = (figure: number): string => percentText(figure, 2)
 
-const IMPLIED: Column = { head: 'Implied', width: 56, figure: ({ implied }) => implied, shown: inPercent }
+const IMPLIED: Column = {
+  head: 'Implied return',
+  width: 66,
+  figure: ({ implied }) => implied,
+  shown: inPercent,
+}
+
+const EXPECTED: Column = {
+  head: 'Expected return',
+  width: 66,
+  figure: ({ expected }) => expected,
+  shown: inPercent,
+}
 
 const WITHOUT_EXPECTED: readonly Column[] = [
   { head: 'Weight', width: 62, figure: ({ weight }) => weight, shown: inPercent },
-  { ...IMPLIED, head: 'Implied return', width: 70 },
+  IMPLIED,
 ]
 
 const WITH_EXPECTED: readonly Column[] = [
   IMPLIED,
-  { head: 'Expected', width: 58, figure: ({ expected }) => expected, shown: inPercent },
+  EXPECTED,
   {
     head: 'Difference, points',
-    width: 64,
+    width: 70,
     figure: ({ difference }) => difference,
     shown: (figure) => pointsText(figure, 2),
   },
+]
+
+const PER_UNIT: readonly Column[] = [
+  EXPECTED,
   {
-    head: 'Per unit of marginal',
-    width: 58,
+    head: 'For each unit of marginal contribution',
+    width: 96,
     figure: ({ perUnitOfMarginal }) => perUnitOfMarginal,
     shown: (figure) => numberText(figure, 2),
   },
 ]
 
 function ImpliedTable({
+  label,
   rows,
   total,
   columns,
 }: {
+  label: string
   rows: readonly ImpliedRow[]
   total: ImpliedRow
   columns: readonly Column[]
@@ -87,7 +105,7 @@ function ImpliedTable({
       : [...rows.keys()]
   return (
     <FigureTable
-      label="Implied returns"
+      label={label}
       columns={[{ head: 'Holding', width: null }, ...columns]}
       sorting={sorting}
       sortBy={(column) =>
@@ -110,10 +128,21 @@ const Answer = memo(function Answer({ chosen }: { chosen: Chosen; breakdown: Bre
   return (
     <>
       <ImpliedTable
+        label="Implied returns"
         rows={found.rows}
         total={found.total}
         columns={hasExpected ? WITH_EXPECTED : WITHOUT_EXPECTED}
       />
+      {hasExpected && (
+        <Disclosure summary="Expected return for each unit of marginal contribution to risk" open={false}>
+          <ImpliedTable
+            label="Expected return for each unit of marginal contribution to risk"
+            rows={found.rows}
+            total={found.total}
+            columns={PER_UNIT}
+          />
+        </Disclosure>
+      )}
       {!hasExpected && (
         <p className={mergeClasses(classes.small, classes.quiet)}>
           A column of the holdings headed Expected return would stand beside them.

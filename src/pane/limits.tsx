@@ -77,7 +77,10 @@ const useStyles = makeStyles({
   more: { justifySelf: 'start' },
 })
 
-const HEIGHT = 16
+const HEIGHT = 19
+/** Where the bar lies, and the band below it. */
+const MIDDLE = 7
+const BAND_AT = 17
 /** Half the height of the bar. */
 const BAR = 4
 /** Height of the caps at the ends of a band. */
@@ -105,17 +108,16 @@ function Used({ state, width, hatch }: { state: LimitState; width: number; hatch
     range: [0, width],
     clamp: true,
   })
-  const middle = HEIGHT / 2
   const bar = (from: number, to: number) => ({
     x: across(from),
-    y: middle - BAR,
+    y: MIDDLE - BAR,
     width: Math.max(0, across(to) - across(from)),
     height: 2 * BAR,
   })
-  const edge = (at: number): string => `M${across(at)} 0V${HEIGHT}`
+  const edge = (at: number): string => `M${across(at)} 0V${2 * MIDDLE}`
   return (
     <svg className={classes.drawing} width={width} height={HEIGHT} aria-hidden focusable="false">
-      <path className={classes.ground} d={`M0 ${middle + BAR}H${width}`} />
+      <path className={classes.ground} d={`M0 ${MIDDLE + BAR}H${width}`} />
       {/* what stands between 0 and the figure, up to the limit */}
       <rect className={classes.used} {...bar(Math.min(0, figure), Math.max(0, Math.min(figure, most)))} />
       {figure > most && (
@@ -128,7 +130,7 @@ function Used({ state, width, hatch }: { state: LimitState; width: number; hatch
       {reach > 0 && (
         <path
           className={classes.band}
-          d={`M${across(figure - reach)} ${HEIGHT - 1.5}H${across(figure + reach)}M${across(figure - reach)} ${HEIGHT - 1.5 - CAP}v${CAP}M${across(figure + reach)} ${HEIGHT - 1.5 - CAP}v${CAP}`}
+          d={`M${across(figure - reach)} ${BAND_AT - CAP}v${CAP}H${across(figure + reach)}v${-CAP}`}
         />
       )}
     </svg>

@@ -105,9 +105,9 @@ const useStyles = makeStyles({
   put: { marginTop: '24px' },
 })
 
-const HEIGHT = 170
+const HEIGHT = 184
 /** Room for the figures of the axes. */
-const MARGIN = { left: 40, right: 8, top: 8, bottom: 30 } as const
+const MARGIN = { left: 40, right: 8, top: 22, bottom: 30 } as const
 /** Weights the arrow keys stop at, about. */
 const STOPS = 100
 
@@ -289,8 +289,8 @@ function Curve({
             <text x={width - MARGIN.right} y={HEIGHT - 2} textAnchor="end">
               Weight
             </text>
-            <text x={0} y={HEIGHT - 2} textAnchor="start">
-              Volatility, up
+            <text x={0} y={10} textAnchor="start">
+              Volatility
             </text>
           </g>
           {marks
@@ -449,7 +449,7 @@ function One({ sizing, position }: { sizing: Sizing; position: string }) {
           Put this weight in the list
         </Button>
       </div>
-      <Points marks={sizing.marks} choose={setChosen} />
+      <Points marks={sizing.marks.filter(({ shown }) => shown)} choose={setChosen} />
       <Facts lines={factsOf(sizing)} />
       {sizing.notes.map((note) => (
         <p key={note} className={mergeClasses(classes.small, classes.quiet)}>

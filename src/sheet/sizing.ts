@@ -159,7 +159,7 @@ function changesToLimit(
 const limitLabel = (limit: Limit, kind: 'soft' | 'hard', figure: number) =>
   `${LIMIT_MEASURES[limit.measure].label}${limit.scope === 'group' ? ` of ${limitOn(limit)}` : limit.scope === 'total' ? ' of the book' : ''}, ${kind} limit ${percentText(figure)}`
 
-/** The weights a picture shows: 0, today's, twice today's, own limits in reach, and the least-risk weight unless it is far away. */
+/** The weights a picture shows: 0, today's, twice today's, and in reach the least-risk weight and limits on today's side of 0. */
 function stretchOf(
   named: readonly Omit<SizingMark, 'shown'>[],
   today: number,
@@ -173,8 +173,9 @@ function stretchOf(
   // the span as it was, so that one far mark does not bring in the next
   const span = right - left
   const [first, last] = [left - FARTHEST * span, right + FARTHEST * span]
-  for (const { weight } of named) {
-    if (weight < first || weight > last) continue
+  for (const { kind, weight } of named) {
+    const otherSide = kind.endsWith('limit') && weight * (today || 1) < 0
+    if (otherSide || weight < first || weight > last) continue
     left = Math.min(left, weight)
     right = Math.max(right, weight)
   }
