@@ -77,8 +77,8 @@ const useStyles = makeStyles({
 
 /** A list up to this long is shown whole; of a longer one, what moves and what is looked for. */
 const LONG = 40
-/** Rows drawn at first, and at each press for more. */
-const STEP = 100
+/** Rows drawn at first, and at each press for more: where the whole book pays, all of them change at every key. */
+const STEP = 50
 /** A fault that a further key takes away is not worth a sentence. */
 const TYPING_MS = 400
 /** Characters of a typed text that its cell shows. */
@@ -455,7 +455,7 @@ function Candidates({
   asked: () => void
 }) {
   const books = useBooks()
-  const classes = { ...useStepStyles(), ...useStyles() }
+  const classes = useStyles()
   const [wanted, setWanted] = useState('')
   const chosen = candidates.includes(wanted) ? wanted : (candidates[0] ?? '')
   if (candidates.length + added === 0) return <FaultLine text={fault} />
@@ -487,12 +487,6 @@ function Candidates({
           Add to the list
         </Button>
       </div>
-      {added > 0 && (
-        <p className={mergeClasses(classes.small, classes.apart)}>
-          With a series that is not held, both sides rest on the dates it has in common with the holdings:
-          they may differ from the figures under Risk.
-        </p>
-      )}
     </Disclosure>
   )
 }
