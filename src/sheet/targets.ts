@@ -258,6 +258,17 @@ class Search {
           argument: 'trades',
         },
       )
+    const unfit = positions.find(
+      ({ budget }, i) =>
+        (budget ?? 0) < 0 || ((budget ?? 0) > 0 && (this.#ground.basis.volatilities[i] ?? 0) === 0),
+    )
+    if (unfit)
+      throw outOfRange(
+        `a risk budget of ${percentText(unfit.budget ?? 0, 2)} for ${quote(unfit.name)}${(unfit.budget ?? 0) > 0 ? ', which never moves' : ''}`,
+        (unfit.budget ?? 0) > 0
+          ? 'a budget of 0% or a blank is needed for it'
+          : 'one of 0% or more is needed',
+      )
     const blank = positions.filter(({ budget }) => budget === null).length
     const budgets = Float64Array.from(positions, ({ budget }) => budget ?? 0)
     const sum = budgets.reduce((all, budget) => all + budget, 0)
@@ -346,12 +357,9 @@ class Search {
     const title = 'Smallest change that meets all limits'
     const most = (limit: Limit): number =>
       (target.against === 'soft' ? (limit.soft ?? limit.hard) : (limit.hard ?? limit.soft)) ?? Infinity
-    const lower = this.#weights.map((weight) => (weight > 0 ? 0 : -Infinity))
-    const upper = this.#weights.map((weight) => (weight > 0 ? Infinity : 0))
-    positions.forEach(({ candidate }, i) => {
-      // a series that was added is there to be bought
-      if (candidate) upper[i] = Infinity
-    })
+    // what is not held stays so, but for a series that was added: it is there to be bought
+    const lower = this.#weights.map((weight) => (weight < 0 ? -Infinity : 0))
+    const upper = this.#weights.map((weight, i) => (weight > 0 || positions[i]?.candidate ? Infinity : 0))
     const sought: { readonly limit: Limit; readonly as: ChangeLimit }[] = []
     const left: Limit[] = []
     for (const limit of limits) {
@@ -412,7 +420,9 @@ class Search {
           : over.length > 0
             ? 'Limits that are not part of the search are still over.'
             : result.note,
-      'not found': `No weights that meet all limits were found${result.proven ? ', and there are none' : ''}. ${result.note}`,
+      'not found': result.proven
+        ? `No weights that meet all limits were found, and there are none. ${result.note}`
+        : result.note,
       stopped: `The search ended before it was sure. ${result.note}`,
     } as const
     return this.#found(
@@ -422,7 +432,7 @@ class Search {
           ? 'All limits hold at the weights in the sheet.'
           : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(change, 2)} in all (turnover ${percentText(turnover, 2)} one way); ${paidBy}.`
         : ends[result.status],
-      `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long and short stays short; ${paidBy}.`,
+      `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long, short stays short, and of what is not held only added series are bought; ${paidBy}.`,
       weights,
       [
         this.#volatilityLine(weights),

@@ -50,11 +50,7 @@ export function tradesTable(title: string, state: TradesState, breakdown: Breakd
   const moved = lines.filter((line) => line.after !== line.before)
 
   add(text(`Trades: ${title}`, 'title'))
-  add(
-    text(
-      `${countOf(moved.length, 'weight')} ${moved.length === 1 ? 'differs' : 'differ'} from those compared from; turnover ${percentText(comparison.turnover, 2)} one way. ${financingText(state)}`,
-    ),
-  )
+  add(text(tradesLine(state) ?? ''))
   add(text(CAUTION, 'note'))
   for (const note of notes) add(text(note, 'alert'))
 
@@ -113,6 +109,14 @@ export function tradesTable(title: string, state: TradesState, breakdown: Breakd
   section('Settings')
   for (const [label, value] of breakdown.settings) add(text(label), text(value))
   return { cells: setIn(cells), widths: WIDTHS, numeric: WIDTHS.map((_, k) => k >= 2) }
+}
+
+/** How much trades move and what pays for them, in one line; null while nothing differs. */
+export function tradesLine(state: TradesState): string | null {
+  const { comparison, lines } = state
+  if (typeof comparison === 'string') return null
+  const moved = lines.filter((line) => line.after !== line.before).length
+  return `${countOf(moved, 'weight')} ${moved === 1 ? 'differs' : 'differ'} from those compared from; turnover ${percentText(comparison.turnover, 2)} one way. ${financingText(state)}`
 }
 
 const PART_HEADS = [

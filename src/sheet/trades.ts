@@ -30,7 +30,7 @@ export interface TextFault {
 
 /** A holding, or a series that is not held and may be traded. */
 export interface Position {
-  /** its name; the second of the same name has a number behind it */
+  /** its name; without names its place among the holdings, which stays when rows are inserted above. No two are alike */
   readonly key: string
   readonly name: string
   readonly groups: readonly string[]
@@ -135,11 +135,30 @@ export interface TradeGround {
   /** what is typed in the cell of a weight, where it is a formula */
   readonly formulaOf: (cell: Area) => string | null
   readonly candidates: readonly string[]
+  /** what has to be said about the figures themselves */
+  readonly notes: readonly string[]
+}
+
+/** Weights found for a target, and what they were found on. */
+interface Taken {
+  readonly what: Proposal
+  readonly ground: TradeGround
+  /** less those that the user has typed over */
+  readonly weights: Map<string, number>
+  /** how many there were */
+  readonly count: number
 }
 
 interface Typed {
   readonly entry: Entry
   readonly text: string
+}
+
+/** A list of trades as it stood at some moment. */
+export interface Listed {
+  readonly typed: ReadonlyMap<string, Typed>
+  readonly rule: string
+  readonly proposal: Taken | null
 }
 
 /** Changes of a sum of weights below this are rounding. */
@@ -154,7 +173,7 @@ export function positionsOf(holdings: HoldingsReading, held: number): readonly P
     const count = (seen.get(name) ?? 0) + 1
     seen.set(name, count)
     const candidate = i >= held
-    const key = count === 1 ? name : `${name} (${count})`
+    const key = !holdings.named ? `holding ${i + 1}` : count === 1 ? name : `${name} (${count})`
     return {
       key,
       name,
@@ -180,7 +199,9 @@ export class Trades {
   readonly #typed = new Map<string, Typed>()
   #rule = ''
   #financing: Financing = { kind: 'cash' }
-  #proposal: { readonly what: Proposal; readonly weights: Map<string, number> } | null = null
+  #proposal: Taken | null = null
+  /** how many holdings without names were compared from; null: they have names, or there are none yet */
+  #places: number | null = null
   /** the weights compared from, by key; null: none yet */
   #before: ReadonlyMap<string, number> | null = null
   #expressions: Expressions | null = null
@@ -212,16 +233,21 @@ export class Trades {
   }
 
   /** Takes a proposal into the list in place of what is typed. */
-  take(what: Proposal, weights: ReadonlyMap<string, number>): void {
+  take(what: Proposal, weights: ReadonlyMap<string, number>, ground: TradeGround): void {
     this.discard()
-    this.#proposal = { what, weights: new Map(weights) }
+    this.#proposal = { what, ground, weights: new Map(weights), count: weights.size }
   }
 
-  /** Drops everything that is not in the sheet. */
-  discard(): void {
-    this.#typed.clear()
-    this.#rule = ''
-    this.#proposal = null
+  /** What is in the list now, for `discard` to tell it from what is typed later. */
+  listed(): Listed {
+    return { typed: new Map(this.#typed), rule: this.#rule, proposal: this.#proposal }
+  }
+
+  /** Drops everything that is not in the sheet; of a list taken down earlier, what has not been typed over since. */
+  discard({ typed, rule, proposal }: Listed = this.listed()): void {
+    for (const [key, entry] of typed) if (this.#typed.get(key) === entry) this.#typed.delete(key)
+    if (this.#rule === rule) this.#rule = ''
+    if (this.#proposal === proposal) this.#proposal = null
     this.#known = null
   }
 
@@ -230,6 +256,12 @@ export class Trades {
     this.discard()
     this.#financing = { kind: 'cash' }
     this.#before = null
+    this.#places = null
+  }
+
+  /** Whether the list stands on places among holdings without names, and these are others now. */
+  hasLostItsPlaces({ holdings }: TradeGround): boolean {
+    return this.#places !== null && (holdings.named || holdings.holdings.length !== this.#places)
   }
 
   /** Drops what is typed for a position that is not there any more. */
@@ -248,6 +280,7 @@ export class Trades {
   /** Begins the comparison anew at the weights in the sheet. */
   compareFrom(ground: TradeGround): void {
     this.#before = new Map(ground.positions.map(({ key, weight }) => [key, weight]))
+    this.#places = ground.holdings.named ? null : ground.holdings.holdings.length
     this.#known = null
   }
 
@@ -327,7 +360,7 @@ export class Trades {
       pending: this.#typed.size > 0 || this.#rule.trim() !== '' || this.#proposal !== null,
       applied: this.applied,
       candidates: ground.candidates,
-      notes: this.#gone(ground),
+      notes: [...ground.notes, ...this.#gone(ground), ...this.#unused(ground), ...this.#outdated(ground)],
       loading: this.#loading,
     }
   }
@@ -348,15 +381,16 @@ export class Trades {
     let whole = true
 
     const ruleText = this.#rule.trim() === '' ? null : this.#rule
-    const rule = ruleText === null ? null : this.#readRule(ruleText)
+    const bare = ruleText === null ? null : this.#bareNumber(ruleText)
+    const rule = ruleText === null || bare ? null : this.#readRule(ruleText)
     if (rule === 'loading') whole = false
-    else if (rule?.fault) {
-      ruleFault = rule.fault
+    else if (bare ?? rule?.fault) {
+      ruleFault = bare ?? rule?.fault ?? null
       whole = false
     } else if (rule) {
       ruleFault = strangeLabel(rule.rule, positions)
       positions.forEach((position, i) => {
-        if (position.candidate || this.#typed.has(position.key)) return
+        if (position.candidate || position.key === this.#payer || this.#typed.has(position.key)) return
         const { value, fault } = attempt(() => rule.rule.evaluate(this.#scope(ground, i)))
         if (fault) {
           faults.set(position.key, textFault(fault))
@@ -384,20 +418,28 @@ export class Trades {
   /** The number a line says, the fault in it, or that expressions are not there yet. */
   #valueOf({ text }: Typed, ground: TradeGround, i: number): number | TextFault | 'loading' {
     const plain = plainNumber(text, this.#culture)
-    if (plain) {
-      // in a cell formatted as a percentage 5 is 5%, in others it is 500%: nobody but the user knows which is meant
-      if (!plain.percent && Math.abs(plain.value) >= 1)
-        return {
-          sentence: `Found ${text.trim()}: write ${text.trim()}% for that many parts in a hundred of capital, or ${percentText(plain.value, 0)} if that is meant.`,
-          column: 0,
-        }
-      return plain.value
-    }
+    if (plain) return this.#bareNumber(text) ?? plain.value
     const read = this.#readRule(text)
     if (read === 'loading') return read
     if (read.fault) return read.fault
     const { value, fault } = attempt(() => read.rule.evaluate(this.#scope(ground, i)))
     return fault ? textFault(fault) : value
+  }
+
+  /** In a cell formatted as a percentage 5 is 5%, in others it is 500%: nobody but the user knows which is meant. */
+  #bareNumber(text: string): TextFault | null {
+    const plain = plainNumber(text, this.#culture)
+    return plain && !plain.percent && Math.abs(plain.value) >= 1
+      ? {
+          sentence: `Found ${text.trim()}: write ${text.trim()}% for that many parts in a hundred of capital, or ${percentText(plain.value, 0)} if that is meant.`,
+          column: 0,
+        }
+      : null
+  }
+
+  /** The position that pays, which a rule for all leaves to that. */
+  get #payer(): string | null {
+    return this.#financing.kind === 'position' ? this.#financing.key : null
   }
 
   #readRule(text: string): { rule: Rule; fault?: undefined } | { fault: TextFault } | 'loading' {
@@ -461,6 +503,12 @@ export class Trades {
     )
     // a weight that is typed is meant, even where it is the one in the sheet
     const kept = new Set([...positions.keys()].filter((i) => this.#typed.has(positions[i]?.key ?? '')))
+    const payer = this.#payer
+    if (payer !== null && this.#typed.has(payer))
+      return {
+        changes: null,
+        fault: `${quote(payer)} is to pay for the trades and has a weight or a change of its own: take that away, or choose what else pays.`,
+      }
     const { value, fault } = attempt(() =>
       financed(weights, changes, financingOf(positions, this.#financing), kept),
     )
@@ -494,8 +542,8 @@ export class Trades {
     const capital = holdings.capital ?? 1
     const refusals: string[] = why === null ? [] : [why]
     const lines = positions.flatMap(({ name, weight, cell }, i): WriteLine[] => {
-      const to = after[i] ?? 0
-      if (to === weight) return []
+      const [from, to] = [digitsOf(weight * capital), digitsOf((after[i] ?? 0) * capital)]
+      if (to === from) return []
       if (cell === null) {
         refusals.push(
           `${quote(name)} has no row in ${addressOf(holdings.area)}: insert one with its name and a weight of 0 there first.`,
@@ -506,8 +554,8 @@ export class Trades {
         {
           area: cell,
           name,
-          from: weight * capital,
-          to: digitsOf(to * capital),
+          from,
+          to,
           formula: ground.formulaOf(cell),
         },
       ]
@@ -518,6 +566,46 @@ export class Trades {
         `Amounts are divided by their own sum, which these trades would change by ${percentText(net, 2)}, and every weight with it: point at the cell of the capital, or let the book pay for the trades.`,
       )
     return { lines, refusals, unit }
+  }
+
+  /** What is in the list for positions that are not there any more, and what a rule leaves alone. */
+  #unused({ positions }: TradeGround): readonly string[] {
+    const here = new Set(positions.map(({ key }) => key))
+    const lost = [...this.#typed.keys(), ...(this.#proposal?.weights.keys() ?? [])].filter(
+      (key) => !here.has(key),
+    )
+    const payer = this.#payer
+    return [
+      ...(lost.length === 0
+        ? []
+        : [
+            `${listOf(lost.map(quote))} ${lost.length === 1 ? 'is' : 'are'} not in the holdings any more: what the list has for ${lost.length === 1 ? 'it' : 'them'} does not count.`,
+          ]),
+      ...(this.#rule.trim() === '' || payer === null || !here.has(payer)
+        ? []
+        : [`The rule leaves ${quote(payer)} alone, which pays for the trades.`]),
+    ]
+  }
+
+  /** Whether what is said of a proposal still goes for what is in the list. */
+  #outdated(ground: TradeGround): readonly string[] {
+    if (!this.#proposal) return []
+    const { ground: then, weights, count } = this.#proposal
+    const changed = [
+      ...(sameList(then.positions, ground.positions, (a, b) => a.key === b.key && a.weight === b.weight)
+        ? []
+        : ['the holdings or their weights']),
+      ...(then.basis.model === ground.basis.model && then.basis.periods === ground.basis.periods
+        ? []
+        : ['the estimate of risk']),
+      ...(sameList(then.limits, ground.limits, (a, b) => limitKey(a) === limitKey(b)) ? [] : ['limits']),
+      ...(this.#typed.size === 0 && weights.size === count ? [] : ['lines of the list']),
+    ]
+    return changed.length === 0
+      ? []
+      : [
+          `The proposal was found before ${listOf(changed, changed.length)} changed: what it says of itself goes for then, the figures here for now.`,
+        ]
   }
 
   /** Holdings compared from that are not in the book any more. */
@@ -533,6 +621,12 @@ export class Trades {
         ]
   }
 }
+
+const sameList = <T>(a: readonly T[], b: readonly T[], same: (one: T, other: T) => boolean): boolean =>
+  a === b || (a.length === b.length && a.every((one, k) => same(one, b[k]!)))
+
+const limitKey = ({ scope, header, name, measure, soft, hard, members }: Limit): string =>
+  JSON.stringify([scope, header, name, measure, soft, hard, members && [...members]])
 
 /** A label in a rule that no holding has: a slip of the pen would match nothing and say nothing. The rule counts all the same. */
 function strangeLabel({ labels }: Rule, positions: readonly Position[]): TextFault | null {

@@ -8,6 +8,7 @@ import { unheldSeries, withCandidates } from './candidates'
 import type { Area, CellValue, Culture } from './cells'
 import { addressOf, sameArea } from './cells'
 import { plainName } from './names'
+import type { ProfileBasis } from './profile'
 import { profileBasis } from './profile'
 import { attempt, explain } from './explain'
 import type { ImpliedReturns } from './implied'
@@ -21,11 +22,11 @@ import { stressTable } from './stress-table'
 import type { Table } from './table'
 import type { Target } from './targets'
 import { proposalFor } from './targets'
-import { tradesTable } from './trades-table'
-import type { Applied, Financing, TradeChange, TradeGround, TradesState } from './trades'
+import { tradesLine, tradesTable } from './trades-table'
+import type { Applied, Financing, Position, TradeChange, TradeGround, TradesState } from './trades'
 import { appliedText, financingOf, positionsOf, Trades } from './trades'
 import type { Workbook } from './workbook'
-import { listOf, quote } from './wording'
+import { countOf, listOf, numberText, percentText, quote } from './wording'
 
 /** What stands when a list of trades is worked out: the blocks, with the series that may be traded, and the model over them. */
 export interface Standing {
@@ -47,6 +48,9 @@ const inputsOf = ({ basis, positions }: TradeGround): SizingInputs => ({
   weights: Float64Array.from(positions, ({ weight }) => weight),
   periods: basis.periods,
 })
+
+/** Volatilities nearer to each other than this, of themselves, differ by rounding. */
+const SAME_RISK = 1e-9
 
 const NOTHING_COMPUTED = 'Nothing is computed yet: Compute comes first.'
 
@@ -116,11 +120,16 @@ export class Trading {
     const { breakdown, settings, blocks: own } = this.#asked()
     const positions = positionsOf(blocks.holdings, own.holdings.holdings.length)
     this.#standing = { blocks, book, settings, breakdown }
-    this.#ground = {
+    const basis = profileBasis(blocks, book, settings)
+    const ground: TradeGround = {
       holdings: own.holdings,
-      bySum: own.holdings.capital !== null && settings.capital === null,
+      // exposures are divided by the sum of the amounts, which trades leave alone
+      bySum:
+        own.holdings.capital !== null &&
+        settings.capital === null &&
+        own.holdings.columns.every(({ role }) => role !== 'exposure'),
       positions,
-      basis: profileBasis(blocks, book, settings),
+      basis,
       limits: breakdown.limits.map(({ limit }) => limit),
       benchmark:
         settings.benchmark.kind === 'column' && positions.some(({ benchmark }) => (benchmark ?? 0) !== 0)
@@ -131,8 +140,33 @@ export class Trading {
         return typeof text === 'string' && text.startsWith('=') && text.length > 1 ? text : null
       },
       candidates: unheldSeries(blocks),
+      notes: blocks === own ? [] : this.#ofCandidates(basis, positions, book),
+    }
+    this.#ground = ground
+    if (this.#list.hasLostItsPlaces(ground)) {
+      this.restart()
+      this.#ground = {
+        ...ground,
+        notes: [
+          'The holdings have no names and are others in number than before: the list of trades begins anew.',
+        ],
+      }
     }
     this.#list.beginAt(this.#ground)
+  }
+
+  /** Where series that are not held change the estimate of what is held: figures here are not those of the book itself. */
+  #ofCandidates(basis: ProfileBasis, positions: readonly Position[], book: BookModel): readonly string[] {
+    const { breakdown, book: own } = this.#asked()
+    const wider = basis.profileOf(Float64Array.from(positions, ({ weight }) => weight)).decomposition
+      .volatility
+    const without = breakdown.decomposition.volatility
+    if (Math.abs(wider - without) <= SAME_RISK * without) return []
+    const added = positions.flatMap(({ candidate, name }) => (candidate ? [quote(name)] : []))
+    const dates = [book, own].map(({ window }) => window?.used ?? 0)
+    return [
+      `With ${listOf(added)} the estimate is another${dates[0] === dates[1] ? '' : `, from ${countOf(dates[0] ?? 0, 'date')} instead of ${numberText(dates[1] ?? 0, 0)}`}: the weights in the sheet have a volatility of ${percentText(wider, 2)} here and of ${percentText(without, 2)} in the view Risk.`,
+    ]
   }
 
   /** Begins anew with another block of holdings. */
@@ -189,7 +223,9 @@ export class Trading {
     try {
       await this.stand(given, this.#typed, work)
     } catch (fault) {
+      // those added before stay; their model is known
       this.#candidates = earlier
+      await this.stand(given, this.#typed, work)
       throw fault
     }
   }
@@ -209,16 +245,17 @@ export class Trading {
   /** Looks for weights that reach a target and puts them into the list in place of what is typed. */
   async propose(target: Target, work: Work): Promise<void> {
     this.#asked()
-    if (!this.#ground || !this.#standing) return
+    const ground = this.#ground
+    if (!ground || !this.#standing) return
     const { proposal, weights } = await proposalFor(
       target,
-      this.#ground,
+      ground,
       this.#standing,
       this.#list.financing,
       this.#calculator,
       work,
     )
-    this.#list.take(proposal, weights)
+    this.#list.take(proposal, weights, ground)
   }
 
   // ---- questions about the figures that stand
@@ -305,7 +342,7 @@ export class Trading {
     const comparison = this.stressOf(scenarios)
     if (typeof comparison === 'string')
       throw new Fault('missing', comparison.replace(/\.$/, ''), 'nothing was written', { argument: 'trades' })
-    return stressTable(title, comparison, breakdown)
+    return stressTable(title, comparison, breakdown, comparison.after && this.state && tradesLine(this.state))
   }
 
   // ---- the cells
@@ -336,6 +373,7 @@ export class Trading {
         'say that numbers may take their place',
         { argument: 'trades' },
       )
+    const listed = this.#list.listed()
     const entries = lines.map(({ area, to }) => ({ at: area, value: to, seen: this.#typedIn(area) ?? '' }))
     await this.#workbook.write({ patches: [], entries })
     this.#applied = entries.map(({ at, value, seen }) => ({
@@ -343,7 +381,8 @@ export class Trading {
       was: seen,
       now: value,
     }))
-    this.#list.discard()
+    // what was typed while the cells were written stays in the list
+    this.#list.discard(listed)
     this.#tell()
     return lines.map(({ area }) => area)
   }

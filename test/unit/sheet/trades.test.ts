@@ -2,7 +2,7 @@
  * A list of trades from the first key to the cells, over a workbook of plain arrays. Figures are held against the definition worked out loop by
  * loop, from numbers made here for these tests alone.
  */
-import type { Books, CellValue, Comparison, TradesState } from '../../../src/sheet'
+import type { Books, CellValue, Comparison, Settings, TradesState } from '../../../src/sheet'
 import { openBooks } from '../../../src/sheet'
 import { plainWorkbook } from './plain-workbook'
 
@@ -47,12 +47,20 @@ afterEach(async () => {
   for (const books of running.splice(0)) await books.close()
 })
 
-async function desk(holdings: CellValue[][] = HOLDINGS) {
-  const workbook = plainWorkbook({
+async function desk(
+  holdings: CellValue[][] = HOLDINGS,
+  {
+    returns = RETURNS,
+    limits = LIMITS,
+    settings = {},
+  }: { returns?: CellValue[][]; limits?: CellValue[][]; settings?: Partial<Settings> } = {},
+) {
+  const sheets = {
     Book: holdings.map((row) => [...row]),
-    Returns: RETURNS.map((row) => [...row]),
-    Limits: LIMITS.map((row) => [...row]),
-  })
+    Returns: returns.map((row) => [...row]),
+    Limits: limits.map((row) => [...row]),
+  }
+  const workbook = plainWorkbook(sheets)
   const books = await openBooks(workbook.port)
   running.push(books)
   const take = async (field: 'holdings' | 'returns' | 'limits', address: string): Promise<void> => {
@@ -60,7 +68,8 @@ async function desk(holdings: CellValue[][] = HOLDINGS) {
     await books.takeSelection(field)
   }
   await take('holdings', `Book!A1:D${holdings.length}`)
-  await take('returns', `Returns!A1:F${WEEKS + 1}`)
+  await take('returns', `Returns!A1:${'ABCDEFGH'.charAt((returns[0]?.length ?? 1) - 1)}${WEEKS + 1}`)
+  await books.choose(settings)
   await books.compute()
   const quiet = async () => {
     do await new Promise((resolve) => setTimeout(resolve, 150))
@@ -87,7 +96,26 @@ async function desk(holdings: CellValue[][] = HOLDINGS) {
   }
   const after = (): number[] => trades().lines.map((each) => each.after)
   const weights = (): CellValue[] => workbook.cells('Book!C2:C5').flat()
-  return { ...workbook, books, take, quiet, trades, comparison, settled, line, after, weights }
+  /** A user inserts a row at the top of the sheet; the names follow. */
+  const insertRowAbove = (): void => {
+    sheets.Book.unshift(['', '', '', ''])
+    for (const [name, area] of workbook.names)
+      if (area.sheet === 'Book') workbook.names.set(name, { ...area, row: area.row + 1 })
+    workbook.tell({ kind: 'moved', sheet: 'Book' })
+  }
+  return {
+    ...workbook,
+    insertRowAbove,
+    books,
+    take,
+    quiet,
+    trades,
+    comparison,
+    settled,
+    line,
+    after,
+    weights,
+  }
 }
 
 const closeTo = (actual: ArrayLike<number>, expected: readonly number[], digits = 12): void => {
@@ -231,6 +259,89 @@ describe('A list of trades', () => {
   })
 })
 
+describe('What a list of trades stands on', () => {
+  test('is a holding’s name, and where there are no names its place: a row inserted above moves no trade to another holding', async () => {
+    const { books, line, insertRowAbove, quiet, trades, after, cells } = await desk(
+      [
+        ['Class', 'Weight', '', ''],
+        ['a', 0.3, '', ''],
+        ['b', 0.3, '', ''],
+        ['c', 0.2, '', ''],
+        ['d', 0.2, '', ''],
+      ],
+      { returns: RETURNS.map((row) => row.slice(0, 5)) },
+    )
+    line(trades().lines[1]!.key, '25%')
+    insertRowAbove()
+    await quiet()
+    expect(after()).toEqual([0.3, 0.25, 0.2, 0.2])
+    expect(trades().lines.map(({ before }) => before)).toEqual([0.3, 0.3, 0.2, 0.2])
+    await books.applyTrades({ replaceFormulas: false })
+    expect(cells('Book!B3:B6').flat()).toEqual([0.3, 0.25, 0.2, 0.2])
+    insertRowAbove()
+    await quiet()
+    await books.undoTrades()
+    expect(cells('Book!B4:B7').flat()).toEqual([0.3, 0.3, 0.2, 0.2])
+  })
+
+  test('says for whom something is typed who is not there any more', async () => {
+    const { line, type, quiet, trades } = await desk()
+    line('Quarry', '5%')
+    type('Book!A5', 'Ferry')
+    await quiet()
+    expect(trades().notes.join(' ')).toMatch(
+      /“Quarry” is not in the holdings any more: what the list has for it/,
+    )
+    type('Book!A5', 'Quarry')
+    await quiet()
+    expect(trades().notes).toEqual([])
+    expect(trades().lines[3]?.after).toBe(0.05)
+  })
+
+  test('a rule that is a bare number of 1 or more is asked about, as a line is', async () => {
+    const { books, settled, trades } = await desk()
+    books.trade({ rule: '5' })
+    await settled()
+    expect(trades().rule.fault?.sentence).toMatch(/write 5%.*or 500%/)
+    expect(trades().preview.refusals).toHaveLength(1)
+  })
+
+  test('a rule for all holdings leaves the one that pays to that, and says so', async () => {
+    const { books, settled, after, trades } = await desk()
+    books.trade({ rule: 'weight * 0.9', financing: { kind: 'position', key: 'Quarry' } })
+    await settled()
+    closeTo(after(), [0.36, 0.27, 0.18, 0.19])
+    expect(trades().notes).toEqual(['The rule leaves “Quarry” alone, which pays for the trades.'])
+  })
+
+  test('a proposal whose weights, estimate, limits or lines have changed since says which of them', async () => {
+    const { books, take, line, type, quiet, trades } = await desk()
+    await take('limits', 'Limits!A1:E3')
+    const propose = (): Promise<void> =>
+      books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against: 'hard', lot: null })
+    await propose()
+    expect(trades().notes).toEqual([])
+    type('Book!C4', 0.25)
+    await quiet()
+    expect(trades().notes).toEqual([expect.stringMatching(/before the holdings or their weights changed/)])
+    await propose()
+    expect(trades().notes).toEqual([])
+    await books.choose({ lookBack: { kind: 'last', dates: 60 } })
+    expect(trades().notes).toEqual([expect.stringMatching(/before the estimate of risk changed/)])
+    await propose()
+    type('Limits!E2', 0.55)
+    await quiet()
+    expect(trades().notes).toEqual([expect.stringMatching(/before limits changed/)])
+    await propose()
+    const { key, after } = trades().lines.find(({ origin }) => origin === 'proposal')!
+    line(key, String(after / 2))
+    expect(trades().notes).toEqual([expect.stringMatching(/before lines of the list changed/)])
+    // the line that was typed over is that of the sheet again
+    line(key, '')
+    expect(trades().notes).toEqual([expect.stringMatching(/before lines of the list changed/)])
+  })
+})
+
 describe('Applying trades', () => {
   test('writes the weights; figures follow; Undo puts back exactly what stood there', async () => {
     const { books, line, weights, trades, comparison } = await desk()
@@ -306,6 +417,63 @@ describe('Applying trades', () => {
     expect(cells('Book!C2:C5').flat()).toEqual([3000, 3000, 2000, 2000])
   })
 
+  test('writes exposures where amounts give the capital: their sum stays whatever is traded', async () => {
+    const { books, line, trades, cells } = await desk([
+      ['Holding', 'Amount', 'Exposure', ''],
+      ['Meadow', 4000, 4000, ''],
+      ['Orchard', 3000, 5000, ''],
+      ['Mill', 3000, -2000, ''],
+    ])
+    line('Meadow', '30%')
+    expect(trades().preview).toMatchObject({ unit: 'amount', refusals: [] })
+    await books.applyTrades({ replaceFormulas: false })
+    expect(cells('Book!B2:C4')).toEqual([
+      [4000, 3000],
+      [3000, 5000],
+      [3000, -2000],
+    ])
+  })
+
+  test('writes nothing where the digits of a cell would stay as they are', async () => {
+    const { line, trades } = await desk([
+      ['Holding', 'Class', 'Amount', ''],
+      ['Meadow', 'Land', 4000.1, ''],
+      ['Orchard', 'Land', 3000.7, ''],
+      ['Mill', 'Works', 2999.3, ''],
+    ])
+    // 15 digits of a weight that has more
+    line('Meadow', trades().lines[0]!.sheet.toPrecision(15))
+    expect(trades().preview.lines).toEqual([])
+  })
+
+  test('keeps in the list what is typed while the cells are written', async () => {
+    const { books, line, hold, weights, trades } = await desk()
+    line('Meadow', '30%')
+    line('Mill', '25%')
+    const release = hold('write')
+    const applied = books.applyTrades({ replaceFormulas: false })
+    await new Promise((resolve) => setTimeout(resolve, 20))
+    line('Orchard', '20%')
+    line('Mill', '28%')
+    release()
+    await applied
+    expect(weights()).toEqual([0.3, 0.3, 0.25, 0.1])
+    expect(trades().lines.map(({ typed }) => typed?.text)).toEqual([undefined, '20%', '28%', undefined])
+  })
+
+  test('takes back the last Apply alone, and says so of a second Undo', async () => {
+    const { books, line, weights } = await desk()
+    line('Meadow', '30%')
+    await books.applyTrades({ replaceFormulas: false })
+    line('Orchard', '20%')
+    await books.applyTrades({ replaceFormulas: false })
+    await books.undoTrades()
+    expect(weights()).toEqual([0.3, 0.3, 0.2, 0.1])
+    await books.undoTrades()
+    expect(weights()).toEqual([0.3, 0.3, 0.2, 0.1])
+    expect(books.state().faults.trades).toMatch(/Nothing was applied/)
+  })
+
   test('changes nothing where the workbook refuses', async () => {
     const { books, line, refused, weights, trades } = await desk()
     const { Fault } = jest.requireActual<typeof import('../../../src/core')>('../../../src/core')
@@ -333,6 +501,42 @@ describe('A series that is not held', () => {
     await books.dropCandidate('Ferry')
     expect(trades().lines).toHaveLength(4)
     expect(trades().comparison).toMatch(/No weight differs/)
+  })
+})
+
+describe('Series that are not held and the estimate', () => {
+  // one begins half way, one has a single return
+  const MORE = RETURNS.map((row, t): CellValue[] => [
+    ...row,
+    t === 0 ? 'Late' : t <= 60 ? '' : value(t, 7),
+    t === 0 ? 'Lone' : t === 80 ? 0.01 : '',
+  ])
+
+  test('say so where they shorten the history, with the figure of the Risk view', async () => {
+    const { books, trades, line, comparison } = await desk(HOLDINGS, { returns: MORE })
+    await books.addCandidate('Ferry')
+    expect(trades().notes).toEqual([])
+    await books.addCandidate('Late')
+    expect(trades().notes).toEqual([
+      expect.stringMatching(
+        /With “Ferry” and “Late” the estimate is another, from 60 dates instead of 120: .* Risk\./,
+      ),
+    ])
+    line('Late', '5%')
+    const here = comparison().before.decomposition.volatility
+    const risk = books.state().breakdown!.decomposition.volatility
+    expect(Math.abs(here - risk)).toBeGreaterThan(1e-4)
+    const percent = (figure: number): string => `${(figure * 100).toFixed(2)}%`
+    expect(trades().notes[0]).toContain(`${percent(here)} here and of ${percent(risk)} in the view Risk`)
+  })
+
+  test('leave those added before them where no model can be made with one more', async () => {
+    const { books, trades } = await desk(HOLDINGS, { returns: MORE })
+    await books.addCandidate('Ferry')
+    await books.addCandidate('Lone')
+    expect(books.state().faults.trades).toBeDefined()
+    expect(trades().lines.map(({ name }) => name)).toEqual(['Meadow', 'Orchard', 'Mill', 'Quarry', 'Ferry'])
+    expect(trades().candidates).toEqual(['Late', 'Lone'])
   })
 })
 
@@ -446,6 +650,45 @@ describe('Looking for weights', () => {
     await books.applyTrades({ replaceFormulas: false })
     expect(books.state().breakdown?.limits.some(({ status }) => status === 'breach')).toBe(false)
   })
+
+  test('of the smallest change open no short: what is not held stays so', async () => {
+    // Ferry is Meadow three times over: a short of it would lower risk with the least change of all
+    const returns = RETURNS.map((row, t) => (t === 0 ? row : [...row.slice(0, 5), 3 * Number(row[1])]))
+    const held = (last: string): CellValue[][] => [
+      ['Holding', 'Class', 'Weight', ''],
+      ['Meadow', 'Land', 0.6, ''],
+      ['Orchard', 'Land', 0.2, ''],
+      [last, 'Works', 0, ''],
+    ]
+    const limits: CellValue[][] = [LIMITS[0]!, ['Total', '', 'Volatility', '', 0.06]]
+    for (const added of [false, true]) {
+      const { books, take, after, trades } = await desk(held(added ? 'Mill' : 'Ferry'), { returns, limits })
+      if (added) await books.addCandidate('Ferry')
+      await take('limits', 'Limits!A1:E2')
+      await books.propose({
+        kind: 'smallest change',
+        turnover: null,
+        net: 'free',
+        against: 'hard',
+        lot: null,
+      })
+      expect(trades().proposal?.met).toBe(true)
+      expect(after().slice(2)).toEqual(added ? [0, 0] : [0])
+    }
+  })
+
+  test('of risk budgets name the holding that can have none', async () => {
+    const { books } = await desk(
+      [
+        ['Holding', 'Class', 'Weight', 'Risk budget'],
+        ['Meadow', 'Land', 0.8, 0.75],
+        ['Cash', 'Land', 0.2, 0.25],
+      ],
+      { settings: { riskless: ['Cash'] } },
+    )
+    await books.propose({ kind: 'risk budgets', by: 'column' })
+    expect(books.state().faults.trades).toMatch(/risk budget of 25.00% for “Cash”, which never moves/)
+  })
 })
 
 describe('Tables of trades and scenarios', () => {
@@ -490,5 +733,9 @@ describe('Tables of trades and scenarios', () => {
     expect(figures.after?.volatility?.total).toBeCloseTo(1.5 * riskOf([0.3, 0.3, 0.2, 0.1]).volatility, 12)
     await books.writeStress([{ kind: 'volatilities', factor: 1.5 }])
     expect(cells('Stress!A1:A1')[0]?.[0]).toMatch(/^Stress/)
+    // what the weights after come from
+    expect(cells('Stress!A1:B60').find(([label]) => label === 'Trades')?.[1]).toBe(
+      '1 weight differs from those compared from; turnover 10.00% one way. Cash pays for the trades.',
+    )
   })
 })
