@@ -87,29 +87,28 @@ function ImpliedTable({
   total: ImpliedRow
   columns: readonly Column[]
 }) {
-  const [sorting, setSorting] = useState<Sorting>({ column: 0, descending: false })
+  const [sorting, setSorting] = useState<Sorting | null>(null)
   const cells = (row: ImpliedRow): readonly string[] =>
     columns.map(({ figure, shown }) => {
       const value = figure(row)
       return value === null ? NONE : shown(value)
     })
-  const by = columns[sorting.column - 1]
-  // the first column is the order of the holdings block
-  const order = by
-    ? [...rows.keys()].sort((a, b) => {
-        const [one, other] = [by.figure(rows[a]!) ?? -Infinity, by.figure(rows[b]!) ?? -Infinity]
-        return (one === other ? 0 : sorting.descending ? other - one : one - other) || a - b
-      })
-    : sorting.descending
-      ? [...rows.keys()].reverse()
-      : [...rows.keys()]
+  const by = sorting && columns[sorting.column - 1]
+  const compare = (a: ImpliedRow, b: ImpliedRow): number => {
+    if (!by) return sorting ? a.name.localeCompare(b.name, undefined, { numeric: true }) : 0
+    const [one, other] = [by.figure(a) ?? -Infinity, by.figure(b) ?? -Infinity]
+    return one === other ? 0 : one - other
+  }
+  const sign = sorting?.descending ? -1 : 1
+  // until a heading is pressed, as in the holdings
+  const order = [...rows.keys()].sort((a, b) => sign * compare(rows[a]!, rows[b]!) || a - b)
   return (
     <FigureTable
       label={label}
       columns={[{ head: 'Holding', width: null }, ...columns]}
-      sorting={sorting}
+      {...(sorting && { sorting })}
       sortBy={(column) =>
-        setSorting({ column, descending: sorting.column === column ? !sorting.descending : column !== 0 })
+        setSorting({ column, descending: sorting?.column === column ? !sorting.descending : column !== 0 })
       }
       rows={order.map((i) => ({ key: i, name: rows[i]!.name, cells: cells(rows[i]!) }))}
       totals={[['Total', ...cells(total)]]}

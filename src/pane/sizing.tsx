@@ -18,7 +18,7 @@ import { Remark } from './headline'
 import { pointsText } from './measure'
 import { NONE } from './positions'
 import { useStepStyles } from './step'
-import { useBooks, useBooksState, useKept } from './store'
+import { useBooks, useKept } from './store'
 import { Facts, FigureTable, useTableStyles } from './table'
 import { useWidth } from './width'
 
@@ -412,10 +412,9 @@ function factsOf({
 }
 
 /** One position: the picture of its weight, and a weight of it for the list. */
-function One({ sizing, position }: { sizing: Sizing; position: string }) {
+function One({ sizing, position, decimal }: { sizing: Sizing; position: string; decimal: string }) {
   const books = useBooks()
   const classes = { ...useStepStyles(), ...useStyles() }
-  const { decimal } = useBooksState()
   const today = sizing.marks.find(({ kind }) => kind === 'today')
   const [chosen, setChosen] = useState<number | null>(null)
   const weight = chosen ?? today?.weight ?? 0
@@ -531,14 +530,31 @@ const Lowering = memo(function Lowering({ financing }: Ground) {
   )
 })
 
-const OfPosition = memo(function OfPosition({ financing, position }: Ground & { position: string }) {
+const OfPosition = memo(function OfPosition({
+  financing,
+  position,
+  decimal,
+}: Ground & { position: string; decimal: string }) {
   const books = useBooks()
   const sizing = books.sizingOf(position, financing)
-  return typeof sizing === 'string' ? <Remark text={sizing} /> : <One sizing={sizing} position={position} />
+  return typeof sizing === 'string' ? (
+    <Remark text={sizing} />
+  ) : (
+    <One sizing={sizing} position={position} decimal={decimal} />
+  )
 })
 
 /** How much risk each size of one position comes with, and the trades that lower risk most. */
-export default function SizingSection({ trades, breakdown }: { trades: TradesState; breakdown: Breakdown }) {
+export default function SizingSection({
+  trades,
+  breakdown,
+  decimal,
+}: {
+  trades: TradesState
+  breakdown: Breakdown
+  /** the mark before decimals in what the list is given */
+  decimal: string
+}) {
   const classes = useStepStyles()
   const { lines, financing } = trades
   const [wanted, setWanted] = useKept<string | null>('sized', null)
@@ -573,7 +589,7 @@ export default function SizingSection({ trades, breakdown }: { trades: TradesSta
       <p className={mergeClasses(classes.small, classes.quiet)}>
         At the weights in the sheet; what pays for a change is chosen in the list of trades. {CAUTION}
       </p>
-      <OfPosition key={position} {...ground} position={position} />
+      <OfPosition key={position} {...ground} position={position} decimal={decimal} />
       <Lowering {...ground} />
     </>
   )

@@ -19,7 +19,7 @@ import { digitsFor, pointsText } from './measure'
 import { Sentence } from './place'
 import { NONE } from './positions'
 import { FaultLine, useStepStyles } from './step'
-import { useBooks, useBooksState, useKept } from './store'
+import { useBooks, useKept } from './store'
 import { FigureTable, Pairs, type TableColumn } from './table'
 
 const useStyles = makeStyles({
@@ -371,10 +371,10 @@ function Details({
           [`Compounded${title}`, returnOf(side)],
           ...(side.stretch.worstFall
             ? [
-                [
-                  `Largest fall${title}`,
-                  `${percentText(side.stretch.worstFall.share, 2)}${side.stretch.worstFall.between ? `, ${side.stretch.worstFall.between.join(' to ')}` : ''}`,
-                ] as const,
+                [`Largest fall${title}`, percentText(side.stretch.worstFall.share, 2)] as const,
+                ...(side.stretch.worstFall.between
+                  ? [[`From peak to trough${title}`, side.stretch.worstFall.between.join(' to ')] as const]
+                  : []),
               ]
             : []),
         ]
@@ -385,6 +385,7 @@ function Details({
   ]
   return (
     <div className={classes.details}>
+      {takeOff}
       {dates && (
         <p className={classes.small}>
           {countOf(dates.used, 'date')}, {dates.first} to {dates.last}. Weights are held at every date.
@@ -405,7 +406,6 @@ function Details({
           <Pairs pairs={pairs} />
         </div>
       ))}
-      {takeOff}
     </div>
   )
 }
@@ -523,18 +523,20 @@ const sameScenario = (a: Scenario, b: Scenario): boolean => JSON.stringify(a) ==
 export default function Stress({
   breakdown,
   trades,
+  busy,
   fault,
   asked,
 }: {
   breakdown: Breakdown
   trades: TradesState
+  /** whether another action is under way */
+  busy: boolean
   fault: string | undefined
   /** told when a table is to be written */
   asked: () => void
 }) {
   const books = useBooks()
   const classes = useStepStyles()
-  const { working } = useBooksState()
   const [scenarios, setScenarios] = useKept<readonly Scenario[]>('scenarios', FIRST)
   return (
     <>
@@ -562,7 +564,7 @@ export default function Stress({
       <div className={classes.buttons}>
         <Button
           size="small"
-          disabledFocusable={working !== null}
+          disabledFocusable={busy}
           onClick={() => {
             asked()
             void books.writeStress(scenarios)

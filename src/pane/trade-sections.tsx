@@ -75,7 +75,7 @@ export function Questions({ breakdown, trades, faultOf, asked }: Shown & SharedF
   return (
     <div className={classes.sections}>
       <Folded title="Sizing" headline="Risk against the weight of one holding, trades that lower risk most">
-        <Sizing trades={trades} breakdown={breakdown} />
+        <Sizing trades={trades} breakdown={breakdown} decimal={state.decimal} />
       </Folded>
       <Folded title="Implied returns" headline="What today’s weights ask each holding to earn">
         <Implied state={state} breakdown={breakdown} />
@@ -84,6 +84,7 @@ export function Questions({ breakdown, trades, faultOf, asked }: Shown & SharedF
         <Stress
           breakdown={breakdown}
           trades={trades}
+          busy={state.working !== null}
           fault={faultOf('scenarios')}
           asked={() => asked('scenarios')}
         />

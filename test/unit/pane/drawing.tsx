@@ -13,15 +13,18 @@ const plain = (html: string): string =>
     .replace(/\s+/g, ' ')
     .trim()
 
-/** What a part of the pane says when it is drawn: all of it, the rows of its tables cell by cell, and the markup itself. */
-export function draw(part: ReactNode): {
+/** What a part of the pane says when it is drawn over these books: all of it, the rows of its tables cell by cell, and the markup itself. */
+export function draw(
+  part: ReactNode,
+  books = {} as Books,
+): {
   said: string
   rows: readonly (readonly string[])[]
   markup: string
 } {
   const markup = renderToStaticMarkup(
     <FluentProvider theme={webLightTheme}>
-      <BooksProvider books={{} as Books}>{part}</BooksProvider>
+      <BooksProvider books={books}>{part}</BooksProvider>
     </FluentProvider>,
   )
   return {
