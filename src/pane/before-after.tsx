@@ -219,8 +219,9 @@ function orderOf(names: readonly string[], sides: Sides, { column, descending }:
 
 /** The row that moved most, in words. */
 function mostMoved(names: readonly string[], sides: Sides, digits: number): string {
-  const [most] = orderOf(names, sides, { column: CHANGE, descending: true })
-  if (most === undefined || sides.before === null || sides.after === null) return 'Shares are withheld'
+  if (sides.before === null || sides.after === null) return 'Shares are withheld'
+  const moved = (i: number): number => Math.abs(difference(sides, i))
+  const most = names.reduce((best, _, i) => (moved(i) > moved(best) ? i : best), 0)
   return `${names[most] ?? ''}: ${figureOf(sides.before, most, digits)} → ${figureOf(sides.after, most, digits)}`
 }
 
