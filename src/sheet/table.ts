@@ -32,15 +32,24 @@ export const numberCell = (value: number | null | undefined, format: string, mar
   ...(mark ? { mark } : {}),
 })
 
-/** The rows with every text that stands right of a number set in a little, so that the two do not touch. */
-export const setIn = (rows: readonly (readonly TableCell[])[]): readonly (readonly TableCell[])[] =>
-  rows.map((row) =>
-    row.map((cell, k) =>
-      typeof cell.value === 'string' && cell.value !== '' && typeof row[k - 1]?.value === 'number'
-        ? { ...cell, indent: 1 }
-        : cell,
-    ),
-  )
+/** The rows with every text that stands right of a number set in a little, so that the two do not touch, and the headings over such texts with them. */
+export function setIn(rows: readonly (readonly TableCell[])[]): readonly (readonly TableCell[])[] {
+  /** columns that hold such texts in the rows from here to the next blank one */
+  let columns = new Set<number>()
+  return [...rows]
+    .reverse()
+    .map((row) => {
+      if (row.every(({ value }) => value === '')) columns = new Set()
+      return row.map((cell, k) => {
+        const isText = typeof cell.value === 'string' && cell.value !== ''
+        if (cell.mark === 'head') return isText && columns.has(k) ? { ...cell, indent: 1 } : cell
+        if (!isText || typeof row[k - 1]?.value !== 'number') return cell
+        columns.add(k)
+        return { ...cell, indent: 1 }
+      })
+    })
+    .reverse()
+}
 
 /** Bars behind the numbers of a part of a column, as long as each is of a whole: nothing at 0 or less, the cell full from `full` on. */
 export interface TableBars {

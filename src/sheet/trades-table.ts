@@ -217,7 +217,9 @@ function addLimits(
   })
 }
 
-function financingText({ financing, lines }: TradesState): string {
+function financingText({ financing, lines, proposal }: TradesState): string {
+  // a proposal says itself what takes the difference
+  if (proposal) return proposal.sentence
   switch (financing.kind) {
     case 'cash':
       return 'Cash pays for the trades.'

@@ -165,7 +165,7 @@ export function judgeLimits(
       figure,
       most,
       headroom: most - figure,
-      used: most > 0 ? figure / most : null,
+      used: most > 0 && figure >= 0 ? figure / most : null,
       status: isOver(figure, hard) ? 'breach' : isOver(figure, soft) ? 'over soft' : 'within',
       why: null,
       error: known ? error : null,
