@@ -487,8 +487,9 @@ class OpenBooks implements Books {
   }
 
   applyTrades({ replaceFormulas }: { readonly replaceFormulas: boolean }): Promise<void> {
+    const shown = this.#book.trading.state?.preview.lines ?? []
     return this.#command('trades', async (book, work) => {
-      const areas = await book.applyTrades(replaceFormulas, work)
+      const areas = await book.applyTrades(shown, replaceFormulas, work)
       this.#tellOthers(book, areas)
       this.#notice = `${countOf(areas.length, 'weight')} written to the sheet. Undo in the view Trades puts back what stood there.`
     })

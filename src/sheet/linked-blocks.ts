@@ -42,6 +42,7 @@ export interface News {
   readonly holdings: boolean
   readonly returns: boolean
   readonly factors: boolean
+  readonly limits: boolean
   /** the figure in the cell of the capital, where it is another one; undefined where it is not */
   readonly capital: number | undefined
   /** whether there was a table of limits that is not there any more */
@@ -68,7 +69,7 @@ export class LinkedBlocks {
   readonly #culture: Culture
   #holdingsBlock: Block | null = null
   #limitsBlock: Block | null = null
-  readonly #areFormulas = { holdings: false, returns: false, factors: false, capital: false }
+  readonly #areFormulas = { holdings: false, returns: false, factors: false, limits: false, capital: false }
   /** the block being read, whose edits count although it is not known yet */
   #reading: { part: SeriesPart; area: Area } | null = null
   /** what has changed in the sheet since it was read */
@@ -90,6 +91,11 @@ export class LinkedBlocks {
     }
   }
 
+  /** The cell of the capital, where it holds a formula. */
+  get capitalFormula(): Area | null {
+    return this.#areFormulas.capital ? this.capital : null
+  }
+
   hasChanged(part: 'holdings' | SeriesPart): boolean {
     return this.#changed[part]
   }
@@ -109,9 +115,9 @@ export class LinkedBlocks {
     return holdings || series.length > 0
   }
 
-  /** Whether an edit lies just beyond the holdings or the returns, where either may have grown. */
+  /** Whether an edit lies just beyond the holdings, the returns or the limits, where they may have grown. */
   isBeside(area: Area): boolean {
-    return (['holdings', 'returns'] as const).some((part) => {
+    return (['holdings', 'returns', 'limits'] as const).some((part) => {
       const own = this.areaOf(part)
       return own !== null && overlap({ ...own, rows: own.rows + 1, columns: own.columns + 1 }, area) !== null
     })
@@ -119,11 +125,11 @@ export class LinkedBlocks {
 
   /** Notes a recalculation of a sheet; tells whether formulas among the blocks may have changed by it. */
   heedCalculation(sheet: string): boolean {
-    const isRecalculated = (part: 'holdings' | 'capital' | SeriesPart): boolean =>
-      this.#areFormulas[part] && this.areaOf(part)?.sheet === sheet
-    const series = SERIES.filter(isRecalculated)
-    for (const part of series) this.#changed[part] = true
-    return isRecalculated('holdings') || isRecalculated('capital') || series.length > 0
+    const recalculated = SOURCES.filter(
+      (part) => this.#areFormulas[part] && this.areaOf(part)?.sheet === sheet,
+    )
+    for (const part of SERIES) if (recalculated.includes(part)) this.#changed[part] = true
+    return recalculated.length > 0
   }
 
   /** Cells, rows, columns or a sheet came, went or got another name; tells whether any of the blocks lies there. */
@@ -234,7 +240,7 @@ export class LinkedBlocks {
       { ...at('holdings'), values: true, shape: true, formulas: true, region: true },
       { ...at('returns'), region: true },
       at('factors'),
-      { ...at('limits'), values: true, shape: true },
+      { ...at('limits'), values: true, shape: true, formulas: true, region: true },
       { ...at('capital'), values: true, formulas: true },
     ]
   }
@@ -259,15 +265,16 @@ export class LinkedBlocks {
     const isOther = (part: SeriesPart, seen: Seen | null): boolean =>
       seen ? !this[part] || !sameArea(this[part].area, seen.area) || this.#changed[part] : this[part] !== null
     const figure = capital && this.#figureOf(capital, settings)
-    const before = this.#holdingsBlock
+    const isOtherBlock = (before: Block | null, now: Seen | null): boolean =>
+      before === null || now === null
+        ? before !== now
+        : !sameArea(before.area, now.area) || !sameValues(before.values, now.values ?? [])
     return {
       seen: { holdings, returns, factors, limits, capital },
-      holdings:
-        before === null ||
-        !sameArea(before.area, holdings.area) ||
-        !sameValues(before.values, holdings.values ?? []),
+      holdings: isOtherBlock(this.#holdingsBlock, holdings),
       returns: isOther('returns', returns),
       factors: isOther('factors', factors),
+      limits: isOtherBlock(this.#limitsBlock, limits),
       capital: figure ?? undefined,
       limitsGone: limits === null && this.#limitsBlock !== null,
     }
@@ -291,9 +298,10 @@ export class LinkedBlocks {
   }
 
   /** Notes where things lie and which of them are formulas; nothing is read yet. */
-  place({ seen: { holdings, capital } }: News): void {
+  place({ seen: { holdings, limits, capital } }: News): void {
     this.typed = holdings?.formulas ? { area: holdings.area, formulas: holdings.formulas } : null
     this.#areFormulas.holdings = hasFormula(holdings)
+    this.#areFormulas.limits = hasFormula(limits)
     this.#areFormulas.capital = hasFormula(capital)
     this.capital = capital?.area ?? null
   }

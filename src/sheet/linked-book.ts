@@ -30,6 +30,7 @@ import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES }
 import type { Table } from './table'
 import type { Standing } from './trading'
 import { Trading } from './trading'
+import type { WriteLine } from './trades'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
 import { areaOfTable, WrittenTable } from './written-table'
@@ -113,6 +114,8 @@ export class LinkedBook {
   #tableStatus: Status | null = null
   /** counts the user's edits to the blocks and the moves around them, so that figures read before one are not called up to date after it */
   #edits = 0
+  /** how many of them the figures that stand have seen */
+  #readEdits = 0
   readonly #blocks: LinkedBlocks
   #model: {
     match: Match
@@ -456,7 +459,9 @@ export class LinkedBook {
       ...(stop ? { limits: stop.sentence } : {}),
       ...(trades === undefined ? {} : { trades }),
     }
-    await this.#standForTrades({ blocks, book, settings: this.settings, breakdown: this.breakdown }, work)
+    const { settings, breakdown } = this
+    const { capitalFormula } = this.#blocks
+    await this.#standForTrades({ blocks, book, settings, breakdown, capitalFormula }, work)
   }
 
   /** Figures stand whether or not series that are not held can be added to them. */
@@ -469,14 +474,30 @@ export class LinkedBook {
     }
   }
 
-  /** Writes the weights of the list of trades to the sheet, and follows them. */
-  async applyTrades(replaceFormulas: boolean, work: Work): Promise<readonly Area[]> {
+  /**
+   * Writes the weights of the list of trades to the sheet, and follows them.
+   *
+   * @param shown what was to be written when this was asked for; the list may have moved on while it waited its turn
+   */
+  async applyTrades(
+    shown: readonly WriteLine[],
+    replaceFormulas: boolean,
+    work: Work,
+  ): Promise<readonly Area[]> {
     this.#heedBehind()
-    return this.#follow(await this.trading.apply(replaceFormulas), work)
+    return this.#follow(await this.trading.apply(shown, replaceFormulas), work)
   }
 
   /** Puts back what stood in the cells before. */
   async undoTrades(work: Work): Promise<readonly Area[]> {
+    // rows may have come or gone: where the cells lie now is looked up first
+    if (this.#isBehind)
+      try {
+        await this.refresh('edit', work)
+      } catch (fault) {
+        // a sheet that cannot be computed from may be just what is to be taken back; the cells are looked at again in any case
+        if (!(fault instanceof Fault) || fault.code === 'cancelled') throw fault
+      }
     return this.#follow(await this.trading.undo(), work)
   }
 
@@ -486,9 +507,15 @@ export class LinkedBook {
     return areas
   }
 
+  /** Whether the sheet has changed, or moved, since it was read. */
+  get #isBehind(): boolean {
+    return this.#edits !== this.#readEdits
+  }
+
   /** Trades are worked out from the weights of the sheet, so they wait until these are read. */
   #heedBehind(): void {
-    if (!this.linked || (this.status.kind !== 'up to date' && this.status !== this.#tableStatus))
+    const isGood = this.status.kind === 'up to date' || this.status === this.#tableStatus
+    if (!this.linked || !isGood || this.#isBehind)
       throw new Fault(
         'changed',
         'the figures are behind the sheet',
@@ -592,7 +619,8 @@ export class LinkedBook {
     if (news.capital !== undefined) this.settings = { ...this.settings, capital: news.capital }
     this.#blocks.place(news)
     const { holdings, returns } = news.seen
-    const isSame = !news.holdings && !news.returns && !news.factors && news.capital === undefined
+    const isSame =
+      !news.holdings && !news.returns && !news.factors && !news.limits && news.capital === undefined
     if (cause === 'calculation' && isSame) return
     if (cause === 'calculation' && ++this.#unasked > MOST_UNASKED_REFRESHES) {
       this.status = {
@@ -614,7 +642,8 @@ export class LinkedBook {
     this.#tableStatus = table ? await this.#bringTableAlong(table, cause) : null
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
     if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
-    if (holdings && returns) await this.#lookBeyond(holdings, returns)
+    this.#readEdits = edits
+    if (holdings && returns) await this.#lookBeyond(holdings, returns, news.seen.limits)
   }
 
   /** @returns what keeps the table behind the figures, or null */
@@ -757,13 +786,19 @@ export class LinkedBook {
     this.proposals = this.proposals.filter(({ key }) => key !== proposal.key)
   }
 
-  async #lookBeyond(holdings: Seen, returns: Seen): Promise<void> {
+  async #lookBeyond(holdings: Seen, returns: Seen, limits: Seen | null): Promise<void> {
     this.proposals = this.proposals.filter(({ key }) => !key.startsWith('include '))
     const keyOf = (area: Area): string => `include ${addressOf(area)}`
     const growths = await growthBeside(
       this.workbook,
-      { holdings, returns, table: this.table },
-      { holdings: this.holdings, returns: this.returns, settings: this.settings, culture: this.culture },
+      { holdings, returns, limits, table: this.table },
+      {
+        holdings: this.holdings,
+        returns: this.returns,
+        limits: this.limits,
+        settings: this.settings,
+        culture: this.culture,
+      },
       (wider) => this.#asked.has(keyOf(wider)),
     )
     for (const { part, wider, sentence } of growths)
@@ -776,7 +811,7 @@ export class LinkedBook {
       })
   }
 
-  async #include(part: 'holdings' | 'returns', wider: Area, work: Work): Promise<void> {
+  async #include(part: 'holdings' | 'returns' | 'limits', wider: Area, work: Work): Promise<void> {
     await this.workbook.write({ patches: [], keep: { [this.keptName(part)]: wider } })
     await this.refresh('compute', work)
   }

@@ -127,6 +127,8 @@ export interface TradeGround {
   readonly holdings: HoldingsReading
   /** whether amounts are divided by their own sum, so that it must not change */
   readonly bySum: boolean
+  /** the cell of the capital, where it holds a formula, which may add up the very amounts that are traded */
+  readonly capitalFormula: Area | null
   readonly positions: readonly Position[]
   readonly basis: ProfileBasis
   readonly limits: readonly Limit[]
@@ -319,6 +321,10 @@ export class Trades {
       const proposed = this.#proposal?.weights.get(key) ?? weight
       return paid.changes ? proposed + (paid.changes[i] ?? 0) : weight
     })
+    const why = wanted.whole
+      ? paid.fault
+      : (wanted.ruleFault?.sentence ?? 'A line cannot be read yet; its sentence stands with it.')
+    const preview = this.#preview(ground, after, why)
     const lines = positions.map((position, i): TradeLine => {
       const { key, name, groups, candidate, weight } = position
       const typed = this.#typed.get(key) ?? null
@@ -346,21 +352,24 @@ export class Trades {
                   : 'none',
       }
     })
-    const why = wanted.whole
-      ? paid.fault
-      : (wanted.ruleFault?.sentence ?? 'A line cannot be read yet; its sentence stands with it.')
     return {
       lines,
       rule: { text: this.#rule, fault: wanted.ruleFault },
       financing: this.#financing,
       financingFault: paid.fault,
       comparison: why ?? this.#compare(ground, before, after),
-      preview: this.#preview(ground, after, why),
+      preview,
       proposal: this.#proposal?.what ?? null,
       pending: this.#typed.size > 0 || this.#rule.trim() !== '' || this.#proposal !== null,
       applied: this.applied,
       candidates: ground.candidates,
-      notes: [...ground.notes, ...this.#gone(ground), ...this.#unused(ground), ...this.#outdated(ground)],
+      notes: [
+        ...ground.notes,
+        ...ofCapital(ground, preview, after),
+        ...this.#gone(ground),
+        ...this.#unused(ground),
+        ...this.#outdated(ground),
+      ],
       loading: this.#loading,
     }
   }
@@ -560,7 +569,7 @@ export class Trades {
         },
       ]
     })
-    const net = positions.reduce((sum, { weight }, i) => sum + (after[i] ?? 0) - weight, 0)
+    const net = netChangeOf(positions, after)
     if (bySum && lines.length > 0 && Math.abs(net) > ROUNDING)
       refusals.push(
         `Amounts are divided by their own sum, which these trades would change by ${percentText(net, 2)}, and every weight with it: point at the cell of the capital, or let the book pay for the trades.`,
@@ -658,6 +667,23 @@ const textFault = (fault: Fault): TextFault => ({
   sentence: explain(fault, () => ''),
   column: fault.code === 'expression' ? (fault.where.column ?? null) : null,
 })
+
+const netChangeOf = (positions: readonly Position[], after: Float64Array): number =>
+  positions.reduce((sum, { weight }, i) => sum + (after[i] ?? 0) - weight, 0)
+
+/** A capital that is computed may change with the amounts it divides, and the weights would be others than those shown. */
+function ofCapital(
+  { capitalFormula, positions }: TradeGround,
+  { lines, unit }: WritePreview,
+  after: Float64Array,
+): readonly string[] {
+  const net = netChangeOf(positions, after)
+  return capitalFormula === null || unit !== 'amount' || lines.length === 0 || Math.abs(net) <= ROUNDING
+    ? []
+    : [
+        `The capital in ${addressOf(capitalFormula)} is a formula: if it adds up these amounts, writing them changes it by ${percentText(net, 2)}, and every weight is then another than shown here.`,
+      ]
+}
 
 /** As many digits as a cell shows and keeps. */
 const digitsOf = (value: number): number => Number(value.toPrecision(15))

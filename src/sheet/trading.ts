@@ -23,7 +23,7 @@ import type { Table } from './table'
 import type { Target } from './targets'
 import { proposalFor } from './targets'
 import { tradesLine, tradesTable } from './trades-table'
-import type { Applied, Financing, Position, TradeChange, TradeGround, TradesState } from './trades'
+import type { Applied, Financing, Position, TradeChange, TradeGround, TradesState, WriteLine } from './trades'
 import { appliedText, financingOf, positionsOf, Trades } from './trades'
 import type { Workbook } from './workbook'
 import { countOf, listOf, numberText, percentText, quote } from './wording'
@@ -34,6 +34,8 @@ export interface Standing {
   readonly book: BookModel
   readonly settings: Settings
   readonly breakdown: Breakdown
+  /** the cell of the capital, where it holds a formula */
+  readonly capitalFormula: Area | null
 }
 
 /** The cells of the holdings as they were typed when last looked at. */
@@ -48,6 +50,9 @@ const inputsOf = ({ basis, positions }: TradeGround): SizingInputs => ({
   weights: Float64Array.from(positions, ({ weight }) => weight),
   periods: basis.periods,
 })
+
+const sameLines = (a: readonly WriteLine[], b: readonly WriteLine[]): boolean =>
+  a.length === b.length && a.every(({ area, to }, k) => sameArea(area, b[k]?.area ?? null) && to === b[k]?.to)
 
 /** Volatilities nearer to each other than this, of themselves, differ by rounding. */
 const SAME_RISK = 1e-9
@@ -117,9 +122,9 @@ export class Trading {
   }
 
   #standOn(blocks: Blocks, book: BookModel): void {
-    const { breakdown, settings, blocks: own } = this.#asked()
+    const { breakdown, settings, blocks: own, capitalFormula } = this.#asked()
     const positions = positionsOf(blocks.holdings, own.holdings.holdings.length)
-    this.#standing = { blocks, book, settings, breakdown }
+    this.#standing = { blocks, book, settings, breakdown, capitalFormula }
     const basis = profileBasis(blocks, book, settings)
     const ground: TradeGround = {
       holdings: own.holdings,
@@ -128,6 +133,7 @@ export class Trading {
         own.holdings.capital !== null &&
         settings.capital === null &&
         own.holdings.columns.every(({ role }) => role !== 'exposure'),
+      capitalFormula,
       positions,
       basis,
       limits: breakdown.limits.map(({ limit }) => limit),
@@ -350,10 +356,11 @@ export class Trading {
   /**
    * Writes the weights of the list into the cells of the holdings, all or none.
    *
-   * @returns the cells written
-   * @throws Fault the first reason why they cannot be; those of the workbook
+   * @param shown  what was shown to be written
+   * @returns      the cells written
+   * @throws Fault "changed" where that is not what the list says now; the first reason why they cannot be written; those of the workbook
    */
-  async apply(replaceFormulas: boolean): Promise<readonly Area[]> {
+  async apply(shown: readonly WriteLine[], replaceFormulas: boolean): Promise<readonly Area[]> {
     const state = this.state
     const { holdings, positions } = this.#ground ?? {}
     if (!state || !holdings || !positions) throw this.#asked()
@@ -365,6 +372,13 @@ export class Trading {
       throw new Fault('missing', 'no weight differs from the sheet', 'there is nothing to write', {
         argument: 'trades',
       })
+    if (!sameLines(lines, shown))
+      throw new Fault(
+        'changed',
+        'what Apply would write is not what it was when it was asked for',
+        'look at it again; nothing was written',
+        { argument: 'trades' },
+      )
     const formulas = lines.filter(({ formula }) => formula !== null)
     if (formulas.length > 0 && !replaceFormulas)
       throw new Fault(

@@ -63,7 +63,10 @@ async function desk(
   const workbook = plainWorkbook(sheets)
   const books = await openBooks(workbook.port)
   running.push(books)
-  const take = async (field: 'holdings' | 'returns' | 'limits', address: string): Promise<void> => {
+  const take = async (
+    field: 'holdings' | 'returns' | 'limits' | 'capital',
+    address: string,
+  ): Promise<void> => {
     workbook.select(address)
     await books.takeSelection(field)
   }
@@ -96,6 +99,7 @@ async function desk(
   }
   const after = (): number[] => trades().lines.map((each) => each.after)
   const weights = (): CellValue[] => workbook.cells('Book!C2:C5').flat()
+  const limitRow = (row: CellValue[]): void => void limits.push(row)
   /** A user inserts a row at the top of the sheet; the names follow. */
   const insertRowAbove = (): void => {
     sheets.Book.unshift(['', '', '', ''])
@@ -340,6 +344,18 @@ describe('What a list of trades stands on', () => {
     line(key, '')
     expect(trades().notes).toEqual([expect.stringMatching(/before lines of the list changed/)])
   })
+
+  test('follows limits that are formulas when they are recalculated', async () => {
+    const { books, take, put, tell, quiet } = await desk()
+    put('Limits!E2', 0.8, '=2*0.4')
+    await take('limits', 'Limits!A1:E3')
+    const land = () => books.state().breakdown?.limits.find(({ limit }) => limit.header === 'Class')
+    expect(land()).toMatchObject({ most: 0.8, status: 'over soft' })
+    put('Limits!E2', 0.6, '=2*0.3')
+    tell({ kind: 'calculated', sheet: 'Limits' })
+    await quiet()
+    expect(land()).toMatchObject({ most: 0.6, status: 'breach' })
+  })
 })
 
 describe('Applying trades', () => {
@@ -461,6 +477,62 @@ describe('Applying trades', () => {
     expect(trades().lines.map(({ typed }) => typed?.text)).toEqual([undefined, '20%', '28%', undefined])
   })
 
+  test('writes nothing that was not shown when it was asked for: an edit read meanwhile moves what the others pay', async () => {
+    const { books, line, type, quiet, hold, weights, trades } = await desk()
+    books.trade({ financing: { kind: 'pro rata' } })
+    line('Quarry', '20%')
+    const release = hold('look')
+    type('Book!C2', 0.35)
+    await new Promise((resolve) => setTimeout(resolve, 200))
+    const applied = books.applyTrades({ replaceFormulas: false })
+    release()
+    await applied
+    await quiet()
+    expect(weights()).toEqual([0.35, 0.3, 0.2, 0.1])
+    expect(books.state().faults.trades).toMatch(/not what it was when it was asked for/)
+    expect(trades().lines[3]?.typed?.text).toBe('20%')
+    await books.applyTrades({ replaceFormulas: false })
+    expect(weights()[3]).toBe(0.2)
+  })
+
+  test('waits for rows that were inserted, and Undo finds the cells where they are now', async () => {
+    // alike weights, so that what stands in a cell does not tell whose it is
+    const { books, line, insertRowAbove, quiet, cells } = await desk([
+      HOLDINGS[0]!,
+      ...['Meadow', 'Orchard', 'Mill', 'Quarry'].map((name): CellValue[] => [name, 'Land', 0.25, 0.5]),
+    ])
+    line('Orchard', '20%')
+    insertRowAbove()
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toMatch(/behind the sheet/)
+    await quiet()
+    await books.applyTrades({ replaceFormulas: false })
+    line('Meadow', '20%')
+    await books.applyTrades({ replaceFormulas: false })
+    expect(cells('Book!C3:C6').flat()).toEqual([0.2, 0.2, 0.25, 0.25])
+    // one row above, the cell of Meadow is now the heading, and that of Orchard has the weight of Meadow
+    insertRowAbove()
+    await books.undoTrades()
+    expect(cells('Book!C4:C7').flat()).toEqual([0.25, 0.2, 0.25, 0.25])
+  })
+
+  test('says so where the capital is a formula that may add up what is traded', async () => {
+    const { books, line, take, put, trades } = await desk([
+      ['Holding', 'Class', 'Amount', ''],
+      ['Meadow', 'Land', 4000, ''],
+      ['Orchard', 'Land', 6000, ''],
+    ])
+    put('Limits!H1', 10000, '=SUM(Book!C2:C3)')
+    await take('capital', 'Limits!H1')
+    line('Meadow', '30%')
+    expect(trades().preview.refusals).toEqual([])
+    expect(trades().notes).toEqual([
+      expect.stringMatching(/capital in Limits!H1 is a formula.*changes it by −10.00%/),
+    ])
+    books.trade({ financing: { kind: 'position', key: 'Orchard' } })
+    expect(trades().notes).toEqual([])
+  })
+
   test('takes back the last Apply alone, and says so of a second Undo', async () => {
     const { books, line, weights } = await desk()
     line('Meadow', '30%')
@@ -537,6 +609,21 @@ describe('Series that are not held and the estimate', () => {
     expect(books.state().faults.trades).toBeDefined()
     expect(trades().lines.map(({ name }) => name)).toEqual(['Meadow', 'Orchard', 'Mill', 'Quarry', 'Ferry'])
     expect(trades().candidates).toEqual(['Late', 'Lone'])
+  })
+})
+
+describe('A table of limits', () => {
+  test('that has grown by a row is found, and the row included on the user’s word', async () => {
+    const { books, take, quiet, type, limitRow } = await desk()
+    await take('limits', 'Limits!A1:E3')
+    expect(books.state().limits?.limits).toHaveLength(2)
+    limitRow(['Holding', 'Mill', 'Weight', '', 0.15])
+    type('Limits!E4', 0.15)
+    await quiet()
+    const [offer] = books.state().offers
+    expect(offer?.sentence).toBe('1 further limit found below Limits!A1:E3.')
+    await offer?.accept()
+    expect(books.state().breakdown?.limits.find(({ limit }) => limit.name === 'Mill')?.status).toBe('breach')
   })
 })
 
