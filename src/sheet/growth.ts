@@ -2,6 +2,8 @@ import type { Area, CellValue, Culture } from './cells'
 import { addressOf, isBlank, overlap, sameArea } from './cells'
 import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
+import type { LimitsReading } from './limits'
+import { readLimits } from './limits'
 import { dateInCell } from './numbers'
 import type { ReturnsReading } from './returns'
 import type { Settings } from './settings'
@@ -10,7 +12,7 @@ import { countOf, dateText, listOf, quote } from './wording'
 
 /** Rows or columns that have appeared at the edge of a linked block and would belong to it. */
 export interface Growth {
-  readonly part: 'holdings' | 'returns'
+  readonly part: 'holdings' | 'returns' | 'limits'
   /** the block with them */
   readonly wider: Area
   readonly sentence: string
@@ -19,12 +21,13 @@ export interface Growth {
 interface Known {
   readonly holdings: HoldingsReading | null
   readonly returns: ReturnsReading | null
+  readonly limits: LimitsReading | null
   readonly settings: Settings
   readonly culture: Culture
 }
 
 /**
- * Finds what was appended to the linked blocks: holdings below, newer dates and further series beside the returns. A total, a note or
+ * Finds what was appended to the linked blocks: holdings below, newer dates and further series beside the returns, limits below. A total, a note or
  * one of our own tables there is none.
  *
  * @param seen  where the blocks lie, with the filled region around them
@@ -33,11 +36,18 @@ interface Known {
  */
 export async function growthBeside(
   workbook: Workbook,
-  seen: { readonly holdings: Seen; readonly returns: Seen; readonly table: Area | null },
+  seen: {
+    readonly holdings: Seen
+    readonly returns: Seen
+    readonly limits: Seen | null
+    readonly table: Area | null
+  },
   known: Known,
   isAnswered: (wider: Area) => boolean,
 ): Promise<readonly Growth[]> {
-  const own = [seen.holdings.area, seen.returns.area, seen.table].filter((area) => area !== null)
+  const own = [seen.holdings.area, seen.returns.area, seen.limits?.area ?? null, seen.table].filter(
+    (area) => area !== null,
+  )
   const reach = ({ area, region }: Seen, sideways: boolean): Area | null => {
     if (!region) return null
     const wider = {
@@ -75,6 +85,19 @@ export async function growthBeside(
       wider: moreReturns,
       sentence: `${what} found beside ${addressOf(seen.returns.area)}.`,
     })
+  const moreLimits = seen.limits && reach(seen.limits, false)
+  if (moreLimits && seen.limits && known.holdings && known.limits) {
+    const block = await workbook.read(moreLimits, { shape: true })
+    const reading = readLimits(block, known.holdings, known.culture)
+    const more = reading.limits.length - known.limits.limits.length
+    // a remark below the table is no limit, and neither is a row that does not read
+    if (more > 0 && reading.findings.length <= known.limits.findings.length)
+      found.push({
+        part: 'limits',
+        wider: moreLimits,
+        sentence: `${countOf(more, 'further limit')} found below ${addressOf(seen.limits.area)}.`,
+      })
+  }
   return found
 }
 

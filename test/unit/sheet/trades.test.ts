@@ -99,7 +99,7 @@ async function desk(
   }
   const after = (): number[] => trades().lines.map((each) => each.after)
   const weights = (): CellValue[] => workbook.cells('Book!C2:C5').flat()
-  const limitRow = (row: CellValue[]): void => void limits.push(row)
+  const limitRow = (row: CellValue[]): void => void sheets.Limits.push(row)
   /** A user inserts a row at the top of the sheet; the names follow. */
   const insertRowAbove = (): void => {
     sheets.Book.unshift(['', '', '', ''])
@@ -119,6 +119,7 @@ async function desk(
     line,
     after,
     weights,
+    limitRow,
   }
 }
 
