@@ -5,6 +5,7 @@ import { countsOf } from './checks'
 import { Section } from './controls'
 import { bandsOf } from './measure'
 import { PlaceLink, Sentence } from './place'
+import { FaultLine } from './step'
 import { useBooks, useBooksState } from './store'
 
 const useStyles = makeStyles({
@@ -25,7 +26,7 @@ type Place = 'where it was' | 'new sheet' | 'selection'
 
 /** What a table of this breakdown holds, in the order it is written. */
 function contents(breakdown: Breakdown, nesting: readonly string[]): readonly string[] {
-  const { names, byGroup, nested, sharesWithheld, tails, active, factors, currency } = breakdown
+  const { names, byGroup, nested, limits, sharesWithheld, tails, active, factors, currency } = breakdown
   const figures = [
     'weight',
     'stand-alone risk',
@@ -40,6 +41,7 @@ function contents(breakdown: Breakdown, nesting: readonly string[]): readonly st
     'Total, sum of parts and their difference',
     ...byGroup.map(({ header, labels }) => `By ${header}: ${countOf(labels.length, 'group')}`),
     ...(nested.length > 0 ? [`By ${nesting.join(', then ')}, rows that fold`] : []),
+    ...(limits.length > 0 ? [`${countOf(limits.length, 'limit')} with headroom, bars and status`] : []),
     ...(typeof tails === 'string' ? [] : [`Large losses: ${tails.label}`]),
     ...(active ? ['Against the benchmark: parts of the tracking error'] : []),
     ...(currency ? [`Local and currency parts, base currency ${currency.base}`] : []),
@@ -47,6 +49,39 @@ function contents(breakdown: Breakdown, nesting: readonly string[]): readonly st
     'The portfolio’s volatility, expected return and diversification',
     'Settings, warnings and the dates of the data',
   ]
+}
+
+/** The list of trades, before and after, on a sheet of its own. */
+function TradesTable({ state }: { state: BooksState }) {
+  const books = useBooks()
+  const classes = useStyles()
+  const { trades, faults, working } = state
+  // the sentence of a fault stands where it was asked for
+  const [asked, setAsked] = useState(false)
+  if (!trades) return null
+  const { comparison } = trades
+  const none = typeof comparison === 'string'
+  return (
+    <Section title="Trades, before and after">
+      <p className={classes.text}>
+        {none
+          ? comparison
+          : 'Weights, volatility, contributions and limits on both sides, written to a sheet of its own.'}
+      </p>
+      {asked && <FaultLine text={faults.trades} />}
+      <Button
+        size="small"
+        className={classes.action}
+        disabledFocusable={none || working !== null}
+        onClick={() => {
+          setAsked(true)
+          void books.writeTrades()
+        }}
+      >
+        Write trades
+      </Button>
+    </Section>
+  )
 }
 
 /** The list of what was found about the data, on a sheet of its own. */
@@ -134,6 +169,7 @@ export default function ReportView() {
           ))}
         </ul>
       </Section>
+      <TradesTable state={state} />
       <ChecksList state={state} />
     </div>
   )
