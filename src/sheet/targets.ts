@@ -129,13 +129,19 @@ class Search {
         method,
       )
     const weights = course.weightsAt(t)
-    return this.#found(title, `Every position times ${numberText(1 + t, 4)}; ${paidBy}.`, method, weights, [
+    return this.#found(
+      title,
+      `Every ${payer === null ? 'position' : 'other position'} times ${numberText(1 + t, 4)}; ${paidBy}.`,
+      method,
+      weights,
       [
-        'Volatility',
-        percentText(this.#ground.basis.profileOf(weights).decomposition.volatility, SHARE_DIGITS),
-        `${percentText(wanted, SHARE_DIGITS)} was asked for.`,
+        [
+          'Volatility',
+          percentText(this.#ground.basis.profileOf(weights).decomposition.volatility, SHARE_DIGITS),
+          `${percentText(wanted, SHARE_DIGITS)} was asked for.`,
+        ],
       ],
-    ])
+    )
   }
 
   share(of: ShareOf, wanted: number): ProposedWeights {
@@ -352,6 +358,8 @@ class Search {
           argument: 'trades',
         },
       )
+    if (target.turnover !== null && !(target.turnover >= 0))
+      throw outOfRange(`a turnover of ${percentText(target.turnover, 2)}`, 'one of 0% or more is needed')
     if (target.lot !== null && !(target.lot > 0))
       throw outOfRange(`a lot of ${numberText(target.lot, 4)}`, 'a size above 0 is needed')
     const title = 'Smallest change that meets all limits'
@@ -413,6 +421,11 @@ class Search {
         : target.net === 'kept'
           ? 'the sum of the weights stays'
           : 'cash takes the difference'
+    const toCash = payer === null && target.net === 'free' ? 0 : (inLots?.toCash ?? 0)
+    const inCash =
+      Math.abs(toCash) > LEAST_CASH
+        ? `, but for ${percentText(Math.abs(toCash), 2)} that whole lots ${toCash > 0 ? 'leave to' : 'take from'} cash`
+        : ''
     const ends = {
       met:
         inLots && !inLots.holds
@@ -430,9 +443,9 @@ class Search {
       met
         ? moved === 0
           ? 'All limits hold at the weights in the sheet.'
-          : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(change, 2)} in all (turnover ${percentText(turnover, 2)} one way); ${paidBy}.`
+          : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(change, 2)} in all (turnover ${percentText(turnover, 2)} one way); ${paidBy}${inCash}.`
         : ends[result.status],
-      `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long, short stays short, and of what is not held only added series are bought; ${paidBy}.`,
+      `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long, short stays short, and of what is not held only added series are bought; ${paidBy}${inCash}.`,
       weights,
       [
         this.#volatilityLine(weights),
@@ -448,7 +461,7 @@ class Search {
               [
                 'Rounded to lots',
                 percentText(change - result.change, 3),
-                `What whole lots add to the sum of changes; the largest difference from the weight asked for is ${percentText(Math.abs(inLots.largest), 3)}${inLots.position >= 0 ? `, of ${quote(positions[inLots.position]?.name ?? '')}` : ''}; ${percentText(inLots.toCash, 3)} goes to cash.`,
+                `What whole lots add to the sum of changes; the largest difference from the weight asked for is ${percentText(Math.abs(inLots.largest), 3)}${inLots.position >= 0 ? `, of ${quote(positions[inLots.position]?.name ?? '')}` : ''}.`,
               ] as const,
             ]
           : []),
@@ -586,6 +599,9 @@ class Search {
     return { proposal: { title, met, sentence, method, lines: [] }, weights: new Map() }
   }
 }
+
+/** What whole lots leave to cash is told from here on; below it is rounding. */
+const LEAST_CASH = 1e-9
 
 /** A sum of typed budgets this near to 1 is 1. */
 const BUDGET_ROUNDING = 1e-9

@@ -321,9 +321,12 @@ export class Trades {
       const proposed = this.#proposal?.weights.get(key) ?? weight
       return paid.changes ? proposed + (paid.changes[i] ?? 0) : weight
     })
-    const why = wanted.whole
+    const unread = wanted.whole
       ? paid.fault
       : (wanted.ruleFault?.sentence ?? 'A line cannot be read yet; its sentence stands with it.')
+    // weights beyond any measure have figures beyond any number
+    const compared = unread === null ? attempt(() => this.#compare(ground, before, after)) : null
+    const why = compared?.fault ? explain(compared.fault, () => '') : unread
     const preview = this.#preview(ground, after, why)
     const lines = positions.map((position, i): TradeLine => {
       const { key, name, groups, candidate, weight } = position
@@ -357,7 +360,7 @@ export class Trades {
       rule: { text: this.#rule, fault: wanted.ruleFault },
       financing: this.#financing,
       financingFault: paid.fault,
-      comparison: why ?? this.#compare(ground, before, after),
+      comparison: why ?? compared?.value ?? NOTHING_DIFFERS,
       preview,
       proposal: this.#proposal?.what ?? null,
       pending: this.#typed.size > 0 || this.#rule.trim() !== '' || this.#proposal !== null,

@@ -289,6 +289,17 @@ describe('What a list of trades stands on', () => {
     expect(cells('Book!B4:B7').flat()).toEqual([0.3, 0.3, 0.2, 0.2])
   })
 
+  test('tells of weights beyond any measure in the place of figures, and writes none of them', async () => {
+    const { books, line, trades } = await desk()
+    line('Meadow', '1e300%')
+    expect(trades().comparison).toMatch(/too large to be a number/)
+    expect(trades().preview.refusals).toEqual([trades().comparison])
+    await books.applyTrades({ replaceFormulas: false })
+    expect(books.state().faults.trades).toMatch(/too large to be a number/)
+    line('Meadow', '30%')
+    expect(trades().preview.refusals).toEqual([])
+  })
+
   test('says for whom something is typed who is not there any more', async () => {
     const { line, type, quiet, trades } = await desk()
     line('Quarry', '5%')
@@ -763,6 +774,30 @@ describe('Looking for weights', () => {
       expect(trades().proposal?.met).toBe(true)
       expect(after().slice(2)).toEqual(added ? [0, 0] : [0])
     }
+  })
+
+  test.each([0.005, 0.03])(
+    'of the smallest change in lots of %p say what the lots leave to cash',
+    async (lot) => {
+      const { books, take, after, trades } = await desk()
+      await take('limits', 'Limits!A1:E3')
+      await books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against: 'hard', lot })
+      const net = after().reduce((sum, w) => sum + w, 0) - 1
+      expect(Math.abs(net) > 1e-9).toBe(lot === 0.03)
+      const said = /but for ([\d.]+)% that whole lots (leave to|take from) cash/.exec(
+        trades().proposal!.sentence,
+      )
+      expect(said?.slice(1)).toEqual(
+        lot === 0.03 ? [(100 * Math.abs(net)).toFixed(2), net < 0 ? 'leave to' : 'take from'] : undefined,
+      )
+    },
+  )
+
+  test.each([NaN, -0.01])('of the smallest change refuse a turnover of %p by its name', async (turnover) => {
+    const { books, take } = await desk()
+    await take('limits', 'Limits!A1:E3')
+    await books.propose({ kind: 'smallest change', turnover, net: 'kept', against: 'hard', lot: null })
+    expect(books.state().faults.trades).toMatch(/^A turnover of .*; one of 0% or more is needed/)
   })
 
   test('of risk budgets name the holding that can have none', async () => {
