@@ -6,9 +6,6 @@ import type { Books, BooksState, CellValue } from '../../src/sheet'
 import { openBooks } from '../../src/sheet'
 import { closeAll, open } from './workbook-fixture'
 
-// the grid begins to calculate 100 ms after a change, and a busy machine takes its time
-jest.setTimeout(30_000)
-
 const FRIDAY = 46353
 
 /** Returns between -2% and 2% from a linear congruential generator (constants of Numerical Recipes, from memory), five digits each. */

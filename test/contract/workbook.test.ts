@@ -16,7 +16,6 @@ import {
   valuesOf,
 } from './workbook-fixture'
 
-jest.setTimeout(30_000)
 afterEach(closeAll)
 
 const area = (address: string): Area => {

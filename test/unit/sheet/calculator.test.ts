@@ -2,9 +2,6 @@ import { Fault } from '../../../src/core'
 import { startJob, steppingCalculator } from '../../../src/sheet'
 import { idleWork } from './blocks-of-cells'
 
-// computations of some length beside other tests
-jest.setTimeout(30_000)
-
 /** Returns typed for these tests: sines of no common period. */
 const returns = (dates: number, size: number) =>
   Float64Array.from({ length: dates * size }, (_, k) => 0.01 * Math.sin(1 + k * k + (k % size)))
