@@ -3,6 +3,7 @@ import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-compon
 import { scaleLinear } from '@visx/scale'
 import {
   CAUTION,
+  countOf,
   LOWERING_READING,
   percentText,
   TURNOVER_READING,
@@ -13,7 +14,7 @@ import {
   type SizingPoint,
   type TradesState,
 } from '../sheet'
-import { Choice, PercentEntry, Section, typedPercentText } from './controls'
+import { Choice, Disclosure, PercentEntry, Section, typedPercentText } from './controls'
 import { Remark } from './headline'
 import { pointsText } from './measure'
 import { NONE } from './positions'
@@ -330,11 +331,19 @@ function Curve({
 }
 
 /** The named points; pressing one chooses its weight. */
-function Points({ marks, choose }: { marks: readonly SizingMark[]; choose: (weight: number) => void }) {
+function Points({
+  label,
+  marks,
+  choose,
+}: {
+  label: string
+  marks: readonly SizingMark[]
+  choose: (weight: number) => void
+}) {
   const classes = { ...useTableStyles(), ...useStyles() }
   const heads = ['Weight', 'Volatility', 'Share of risk']
   return (
-    <table className={classes.table} aria-label="Points of the curve">
+    <table className={classes.table} aria-label={label}>
       <colgroup>
         <col />
         {heads.map((head) => (
@@ -416,6 +425,8 @@ function One({ sizing, position, decimal }: { sizing: Sizing; position: string; 
   const books = useBooks()
   const classes = { ...useStepStyles(), ...useStyles() }
   const today = sizing.marks.find(({ kind }) => kind === 'today')
+  const inside = sizing.marks.filter(({ shown }) => shown)
+  const beyond = sizing.marks.filter(({ shown }) => !shown)
   const [chosen, setChosen] = useState<number | null>(null)
   const weight = chosen ?? today?.weight ?? 0
   const volatility = volatilityAt(sizing.curve, weight)
@@ -448,7 +459,12 @@ function One({ sizing, position, decimal }: { sizing: Sizing; position: string; 
           Put this weight in the list
         </Button>
       </div>
-      <Points marks={sizing.marks.filter(({ shown }) => shown)} choose={setChosen} />
+      <Points label="Points of the curve" marks={inside} choose={setChosen} />
+      {beyond.length > 0 && (
+        <Disclosure summary={`${countOf(beyond.length, 'point')} beyond the picture`} open={false}>
+          <Points label="Points beyond the picture" marks={beyond} choose={setChosen} />
+        </Disclosure>
+      )}
       <Facts lines={factsOf(sizing)} />
       {sizing.notes.map((note) => (
         <p key={note} className={mergeClasses(classes.small, classes.quiet)}>

@@ -276,6 +276,11 @@ function Adding({ breakdown, add }: { breakdown: Breakdown; add: (scenario: Scen
         {(kind === 'stretch' || kind === 'worst') && !dates && worst === null && (
           <p className={classes.small}>A covariance matrix holds no dates to replay.</p>
         )}
+        {bends && scenario === null && (
+          <p className={mergeClasses(classes.small, classes.quiet)}>
+            With every factor at 1 nothing is another: one of them is needed.
+          </p>
+        )}
         <div>
           <Button
             size="small"
@@ -553,13 +558,6 @@ export default function Stress({
       <p className={mergeClasses(classes.small, classes.quiet)}>
         Open a scenario for its contributions, or to take it off.
       </p>
-      <Adding
-        breakdown={breakdown}
-        add={(scenario) => {
-          if (!scenarios.some((other) => sameScenario(other, scenario)))
-            setScenarios([...scenarios, scenario])
-        }}
-      />
       <FaultLine text={fault} />
       <div className={classes.buttons}>
         <Button
@@ -573,6 +571,13 @@ export default function Stress({
           Write to a sheet
         </Button>
       </div>
+      <Adding
+        breakdown={breakdown}
+        add={(scenario) => {
+          if (!scenarios.some((other) => sameScenario(other, scenario)))
+            setScenarios([...scenarios, scenario])
+        }}
+      />
     </>
   )
 }

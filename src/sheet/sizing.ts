@@ -122,7 +122,7 @@ export function sizingOf(
     marks,
     changeIfRemoved: today === 0 ? 0 : removals(model, weights, financing).change[position]! * scale,
     slope: course.slope === null ? null : course.slope * scale,
-    notes: notesOf(name, course, marks, [left, right], position, financing),
+    notes: notesOf(name, course, [left, right], position, financing),
   }
 }
 
@@ -186,7 +186,6 @@ function stretchOf(
 function notesOf(
   name: string,
   { leastAt, weights, direction }: Course,
-  marks: readonly SizingMark[],
   [left, right]: readonly [number, number],
   position: number,
   financing: Financing,
@@ -196,8 +195,6 @@ function notesOf(
     notes.push(
       `The weight of ${quote(name)} changes nothing about the portfolio’s risk with this financing, so that no weight has least risk.`,
     )
-  for (const { label, weight, shown } of marks)
-    if (!shown) notes.push(`${label}: ${percentText(weight)}, beyond the picture.`)
   if (financing.kind === 'pro rata') {
     const net = weights.reduce((sum, weight, i) => (i === position ? sum : sum + weight), 0)
     const shorts = weights.some((weight, i) => i !== position && weight < 0)

@@ -161,6 +161,14 @@ test('a weight chosen on the curve with the arrow keys goes into the list', asyn
   await pane.getByText(new RegExp(`^8\\.34% → ${volatility?.replace('.', '\\.') ?? ''}`)).waitFor()
 })
 
+test('Report writes the trades of the list to a sheet of their own', async () => {
+  const { pane } = desk
+  await pane.getByRole('tab', { name: 'Report' }).click()
+  await pane.getByRole('button', { name: 'Write trades' }).click()
+  await pane.getByText(/^Trades written to/).waitFor()
+  await show('Trades')
+})
+
 test('implied returns follow the risk aversion that is typed', async () => {
   const { pane } = desk
   await unfold('Implied returns')

@@ -106,12 +106,26 @@ describe('sizing', () => {
     expect(changeIfRemoved).toBe(0)
   })
 
-  it('tells a least-risk weight that lies beyond the picture', () => {
+  it('does not stretch the picture to a limit on the other side of 0', () => {
+    const { marks, curve } = sizingOf(inputs, 0, CASH, [
+      limitOf({ scope: 'total', measure: 'volatility', hard: 0.2, members: null, name: '' }),
+    ])
+    // by hand: .0016 x^2 + .0002 x + .0001 = .2^2 / 12
+    const limits = marks.filter(({ kind }) => kind === 'hard limit').sort((a, b) => a.weight - b.weight)
+    expect(limits[0]?.weight).toBeCloseTo(-1.4854, 4)
+    expect(limits[1]?.weight).toBeCloseTo(1.3604, 4)
+    expect(limits.map(({ shown }) => shown)).toEqual([false, true])
+    expect(curve[0]?.weight).toBeGreaterThan(-0.2)
+  })
+
+  it('marks a least-risk weight that lies beyond the picture', () => {
     const weights = Float64Array.of(0.001, 0.999, 0)
-    const { marks, notes } = sizingOf({ ...inputs, weights }, 0, CASH)
+    const { marks, curve } = sizingOf({ ...inputs, weights }, 0, CASH)
+    const least = marks.find(({ kind }) => kind === 'least risk')
     // -.0002 x .999 / .0016
-    expect(marks.find(({ kind }) => kind === 'least risk')).toMatchObject({ shown: false })
-    expect(notes).toEqual(['Least-risk weight: −12.5%, beyond the picture.'])
+    expect(least?.weight).toBeCloseTo(-0.124875, 12)
+    expect(least?.shown).toBe(false)
+    expect(curve[0]?.weight).toBeGreaterThan(least?.weight ?? 0)
   })
 
   it('tells what pro rata does in a book with shorts, and where the rest is used up', () => {
