@@ -1,6 +1,7 @@
 import { courseOf, Fault, financed } from '../core'
 import type { ChangeLimit, ChangeProblem, Financing as CoreFinancing, RiskModel } from '../core'
 import type { Calculator, Work } from './calculator'
+import { sharesWithheldOf } from './benchmark'
 import type { Limit } from './limits'
 import { judgeLimits, LIMIT_MEASURES, limitOn } from './limits'
 import type { Profile } from './profile'
@@ -147,7 +148,12 @@ class Search {
   share(of: ShareOf, wanted: number): ProposedWeights {
     const { members, name } = this.#membersOf(of)
     const now = this.#shareOf(this.#profile, members)
-    if (now === null) throw outOfRange('a book without risk', 'a book with risk is needed for shares of it')
+    const withheld = sharesWithheldOf(this.#profile.decomposition)
+    if (now === null || withheld !== null)
+      throw outOfRange(
+        now === null ? 'a book without risk' : 'contributions that nearly cancel',
+        'a book whose shares of risk say something is needed',
+      )
     const title = `Share of risk of ${name} at ${percentText(wanted, 2)}`
     const method =
       'The position smaller in one proportion until its share is met: the ratio of two quadratics in the size of the trade, solved in closed form.'
@@ -413,6 +419,7 @@ class Search {
       null,
     )
     const over = states.filter(({ status }) => status === 'breach')
+    const unmeasured = states.filter(({ status }) => status === 'not measured')
     const moved = weights.reduce((count, weight, i) => count + (weight === this.#weights[i] ? 0 : 1), 0)
     const met = result.status === 'met' && over.length === 0 && (inLots?.holds ?? true)
     const paidBy =
@@ -442,7 +449,7 @@ class Search {
       title,
       met
         ? moved === 0
-          ? 'All limits hold at the weights in the sheet.'
+          ? `All limits${unmeasured.length > 0 ? ' that are measured' : ''} hold at the weights in the sheet.`
           : `${countOf(moved, 'weight')} of ${positions.length} change, by ${percentText(change, 2)} in all (turnover ${percentText(turnover, 2)} one way); ${paidBy}${inCash}.`
         : ends[result.status],
       `${result.method} ${target.against === 'soft' ? 'Soft' : 'Hard'} limits, where there are any; long stays long, short stays short, and of what is not held only added series are bought; ${paidBy}${inCash}.`,
@@ -472,6 +479,11 @@ class Search {
             figure === null ? 'not measured' : percentText(figure, SHARE_DIGITS),
             `${status === 'breach' ? 'Over' : 'At'} the limit of ${percentText(limitOf, 2)}.`,
           ]),
+        ...unmeasured.map(({ limit, why }): readonly [string, string, string] => [
+          `${limitOn(limit)}: ${LIMIT_MEASURES[limit.measure].label.toLowerCase()}`,
+          'not measured',
+          `Whether it holds is not known. ${why ?? ''}`,
+        ]),
         ...(left.length === 0
           ? []
           : [

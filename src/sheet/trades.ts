@@ -2,6 +2,7 @@ import { Fault, financed, firstOrder, turnover } from '../core'
 import type { Financing as CoreFinancing, FirstOrder } from '../core'
 import type { Area, CellValue, Culture } from './cells'
 import { addressOf } from './cells'
+import { sharesWithheldOf } from './benchmark'
 import { attempt, explain } from './explain'
 import type { Expressions, Rule, RuleScope } from './expression'
 import { loadExpressions, plainNumber } from './expression'
@@ -210,7 +211,8 @@ export class Trades {
   #loading = false
   #loadFault: string | null = null
   #known: { readonly ground: TradeGround; readonly state: TradesState } | null = null
-  #profiles: { readonly ground: TradeGround; readonly sheet: Profile } | null = null
+  #profiles: { readonly ground: TradeGround; readonly sheet: Profile; readonly hasShares: boolean } | null =
+    null
   #beforeProfile: { readonly ground: TradeGround; readonly weights: Float64Array; profile: Profile } | null =
     null
   applied: string | null = null
@@ -303,13 +305,13 @@ export class Trades {
     return state
   }
 
-  #sheetProfile(ground: TradeGround): Profile {
-    if (this.#profiles?.ground !== ground)
-      this.#profiles = {
-        ground,
-        sheet: ground.basis.profileOf(Float64Array.from(ground.positions, ({ weight }) => weight)),
-      }
-    return this.#profiles.sheet
+  #sheetProfile(ground: TradeGround): { readonly sheet: Profile; readonly hasShares: boolean } {
+    if (this.#profiles?.ground !== ground) {
+      const sheet = ground.basis.profileOf(Float64Array.from(ground.positions, ({ weight }) => weight))
+      // where contributions nearly cancel, shares are withheld from rules as they are everywhere
+      this.#profiles = { ground, sheet, hasShares: sharesWithheldOf(sheet.decomposition) === null }
+    }
+    return this.#profiles
   }
 
   #work(ground: TradeGround): TradesState {
@@ -487,12 +489,13 @@ export class Trades {
   }
 
   #scope(ground: TradeGround, i: number): RuleScope {
-    const { decomposition: d } = this.#sheetProfile(ground)
+    const { sheet, hasShares } = this.#sheetProfile(ground)
+    const { decomposition: d } = sheet
     const position = ground.positions[i]
     return {
       weight: position?.weight ?? 0,
       amount: position?.amount ?? null,
-      risk_share: d.share?.[i] ?? null,
+      risk_share: hasShares ? (d.share?.[i] ?? null) : null,
       contribution: d.contribution[i] ?? null,
       marginal: d.marginal?.[i] ?? null,
       volatility: ground.basis.volatilities[i] ?? 0,

@@ -249,6 +249,26 @@ describe('A list of trades', () => {
     expect(JSON.stringify(cells('Book!A1:D5'))).toBe(sheet)
   })
 
+  test('counts turnover, and holds limits before, from the weights the comparison began at', async () => {
+    const { books, type, quiet, take, line, comparison } = await desk()
+    await take('limits', 'Limits!A1:E3')
+    type('Book!C2', 0.25)
+    await quiet()
+    line('Orchard', '25%')
+    const figures = (): unknown => {
+      const { turnover, limitsBefore, limitsAfter, before } = comparison()
+      const land = [limitsBefore, limitsAfter].map(
+        (states) => states.find(({ limit }) => limit.header === 'Class')?.figure,
+      )
+      return [turnover, ...land, before.decomposition.volatility].map((figure) => Number(figure?.toFixed(12)))
+    }
+    const volatilityOf = (weights: readonly number[]): number =>
+      Number(riskOf(weights).volatility.toFixed(12))
+    expect(figures()).toEqual([0.2, 0.7, 0.5, volatilityOf([0.4, 0.3, 0.2, 0.1])])
+    books.compareFromHere()
+    expect(figures()).toEqual([0.05, 0.55, 0.5, volatilityOf([0.25, 0.3, 0.2, 0.1])])
+  })
+
   test('has the weights that were edited in the sheet in it, and begins anew where the user says', async () => {
     const { books, type, quiet, trades, comparison } = await desk()
     type('Book!C2', 0.35)
@@ -320,6 +340,52 @@ describe('What a list of trades stands on', () => {
     await settled()
     expect(trades().rule.fault?.sentence).toMatch(/write 5%.*or 500%/)
     expect(trades().preview.refusals).toHaveLength(1)
+  })
+
+  test('a rule’s names are the figures of the definition, at the weights in the sheet', async () => {
+    const { books, settled, line, trades } = await desk()
+    const weights = [0.4, 0.3, 0.2, 0.1]
+    const { volatility, contributions } = riskOf(weights)
+    const alone = weights.map((_, i) => riskOf(weights.map((__, j) => (i === j ? 1 : 0))).volatility)
+    const figures: { readonly [name: string]: readonly number[] } = {
+      contribution: contributions,
+      risk_share: contributions.map((c) => c / volatility),
+      marginal: contributions.map((c, i) => c / weights[i]!),
+      beta: contributions.map((c, i) => c / weights[i]! / volatility),
+      volatility: alone,
+      limit: [0.3, 0.5, 0.5, 0.5],
+    }
+    for (const [name, expected] of Object.entries(figures)) {
+      books.trade({ rule: name })
+      closeTo(
+        (await settled()).lines.map((each) => each.after),
+        expected,
+      )
+    }
+    // a line’s expression has the same names
+    books.trade({ rule: '' })
+    line('Mill', 'beta / 10')
+    expect(trades().lines[2]?.after).toBeCloseTo(figures.beta![2]! / 10, 12)
+  })
+
+  test('a rule has no share of risk where shares are withheld, and no target is one', async () => {
+    // Ferry is nearly Meadow: a short of it leaves next to nothing of the risk
+    const returns = RETURNS.map((row, t): CellValue[] =>
+      t === 0 ? row : [...row.slice(0, 5), Number(row[1]) + 1e-2 * value(t, 2)],
+    )
+    const { books, settled } = await desk(
+      [
+        ['Holding', 'Class', 'Weight', 'Limit on share of risk'],
+        ['Meadow', 'Land', 1, 0.5],
+        ['Ferry', 'Land', -1, 0.5],
+      ],
+      { returns },
+    )
+    books.trade({ rule: 'risk_share > 50% ? 0 : weight' })
+    const { lines } = await settled()
+    expect(lines[0]?.fault?.sentence).toMatch(/risk_share of “Meadow” has no value/i)
+    await books.propose({ kind: 'share', of: { kind: 'holding', key: 'Meadow' }, share: 0.5 })
+    expect(books.state().faults.trades).toMatch(/nearly cancel/)
   })
 
   test('a rule for all holdings leaves the one that pays to that, and says so', async () => {
@@ -545,6 +611,17 @@ describe('Applying trades', () => {
     expect(trades().notes).toEqual([])
   })
 
+  test('takes nothing back once other holdings are linked', async () => {
+    const { books, line, take, weights, trades } = await desk()
+    line('Meadow', '30%')
+    await books.applyTrades({ replaceFormulas: false })
+    await take('holdings', 'Book!A1:D4')
+    expect(trades().applied).toBeNull()
+    await books.undoTrades()
+    expect(books.state().faults.trades).toMatch(/Nothing was applied/)
+    expect(weights()[0]).toBe(0.3)
+  })
+
   test('takes back the last Apply alone, and says so of a second Undo', async () => {
     const { books, line, weights } = await desk()
     line('Meadow', '30%')
@@ -585,6 +662,28 @@ describe('A series that is not held', () => {
     await books.dropCandidate('Ferry')
     expect(trades().lines).toHaveLength(4)
     expect(trades().comparison).toMatch(/No weight differs/)
+  })
+})
+
+describe('Implied returns of the book', () => {
+  test('stand beside the user’s own less the riskless rate they include', async () => {
+    const { books } = await desk([
+      ['Holding', 'Class', 'Weight', 'Expected return'],
+      ['Meadow', 'Land', 0.4, 0.07],
+      ['Orchard', 'Land', 0.6, 0.05],
+    ])
+    const found = books.impliedReturns({ kind: 'total', value: 0.04 }, 0.02)
+    if (typeof found === 'string') throw new Error(found)
+    const { volatility, contributions } = riskOf([0.4, 0.6])
+    closeTo(
+      found.rows.map(({ implied }) => implied),
+      [0.4, 0.6].map((w, i) => (0.04 * contributions[i]!) / w / volatility),
+    )
+    closeTo(
+      found.rows.map(({ expected }) => expected ?? NaN),
+      [0.05, 0.03],
+    )
+    expect(found.total.expected).toBeCloseTo(0.4 * 0.05 + 0.6 * 0.03, 12)
   })
 })
 
@@ -774,6 +873,116 @@ describe('Looking for weights', () => {
       expect(trades().proposal?.met).toBe(true)
       expect(after().slice(2)).toEqual(added ? [0, 0] : [0])
     }
+  })
+
+  test('of the smallest change hold soft limits where asked to', async () => {
+    const { books, take, comparison } = await desk(HOLDINGS.map((row) => row.slice(0, 3).concat('')))
+    await take('limits', 'Limits!A1:E3')
+    const land = async (against: 'hard' | 'soft') => {
+      await books.propose({ kind: 'smallest change', turnover: null, net: 'kept', against, lot: null })
+      const state = comparison().limitsAfter.find(({ limit }) => limit.header === 'Class')
+      return { figure: state?.figure ?? NaN, status: state?.status }
+    }
+    const [hard, soft] = [await land('hard'), await land('soft')]
+    // the search stops where the limit binds
+    expect([hard.figure, soft.figure]).toEqual([expect.closeTo(0.6, 8), expect.closeTo(0.5, 8)])
+    expect([hard.status, soft.status]).toEqual(['over soft', 'within'])
+  })
+
+  // the normal quantile at 95%, 1.6448536…: tables of the normal distribution (from memory)
+  const QUANTILE = 1.6448536269514722
+
+  test.each([
+    [
+      'Holding',
+      'Meadow',
+      'Contribution to risk',
+      (weights: readonly number[]) => riskOf(weights).contributions[0]!,
+    ],
+    ['Total', '', 'Volatility', (weights: readonly number[]) => riskOf(weights).volatility],
+    [
+      'Total',
+      '',
+      'Value at risk',
+      (weights: readonly number[]) => (QUANTILE * riskOf(weights).volatility) / Math.sqrt(52),
+    ],
+    ['Class', 'Land', 'Stand-alone risk', ([a, b]: readonly number[]) => riskOf([a!, b!, 0, 0]).volatility],
+  ] as const)(
+    'of the smallest change bring a limit on %s %s %s to it',
+    async (scope, name, measure, figureOf) => {
+      const most = 0.8 * figureOf([0.4, 0.3, 0.2, 0.1])
+      const { books, take, after, trades } = await desk(
+        HOLDINGS.map((row) => row.slice(0, 3).concat('')),
+        {
+          limits: [LIMITS[0]!, [scope, name, measure, '', most]],
+          settings: { tails: { method: { kind: 'normal' }, confidence: 0.95, periods: 1 } },
+        },
+      )
+      await take('limits', 'Limits!A1:E2')
+      await books.propose({
+        kind: 'smallest change',
+        turnover: null,
+        net: 'free',
+        against: 'hard',
+        lot: null,
+      })
+      expect(trades().proposal).toMatchObject({ met: true })
+      expect(figureOf(after()) / most).toBeCloseTo(1, 7)
+      expect(figureOf(after())).toBeLessThanOrEqual(most)
+    },
+  )
+
+  test('of the smallest change bring a short to its limit on weight, which has no sign', async () => {
+    const { books, take, after } = await desk(
+      [
+        ['Holding', 'Class', 'Weight', ''],
+        ['Meadow', 'Land', 0.8, ''],
+        ['Orchard', 'Land', 0.5, ''],
+        ['Mill', 'Works', -0.3, ''],
+      ],
+      { limits: [LIMITS[0]!, ['Holding', 'Mill', 'Weight', '', 0.2]] },
+    )
+    await take('limits', 'Limits!A1:E2')
+    await books.propose({ kind: 'smallest change', turnover: null, net: 'free', against: 'hard', lot: null })
+    closeTo(after(), [0.8, 0.5, -0.2])
+  })
+
+  test('of the smallest change in lots count them in the unit of the cells', async () => {
+    const { books, take, trades } = await desk(
+      HOLDINGS.map(([name, group, weight], k) => [
+        name!,
+        group!,
+        k === 0 ? 'Amount' : 50_000 * Number(weight),
+        '',
+      ]),
+    )
+    await take('limits', 'Limits!A1:E3')
+    await books.propose({ kind: 'smallest change', turnover: null, net: 'free', against: 'hard', lot: 100 })
+    const { lines } = trades().preview
+    expect(lines.length).toBeGreaterThan(0)
+    for (const { from, to } of lines) expect(((to - from) / 100) % 1).toBeCloseTo(0, 9)
+    // 10 points of capital are 5,000: no more than a lot beyond that
+    const sold = lines.reduce((sum, { from, to }) => sum + from - to, 0)
+    expect(sold).toBeGreaterThanOrEqual(5000 - 1e-6)
+    expect(sold).toBeLessThan(5100)
+  })
+
+  test('of equal risk contributions leave what never moves as it is', async () => {
+    const { books, after } = await desk(
+      [
+        ['Holding', 'Class', 'Weight', ''],
+        ['Meadow', 'Land', 0.5, ''],
+        ['Orchard', 'Land', 0.3, ''],
+        ['Cash', 'Cash', 0.2, ''],
+      ],
+      { settings: { riskless: ['Cash'] } },
+    )
+    await books.propose({ kind: 'risk budgets', by: 'holding' })
+    const [meadow = 0, orchard = 0, cash] = after()
+    expect(cash).toBe(0.2)
+    expect(meadow + orchard).toBeCloseTo(0.8, 12)
+    const { contributions } = riskOf([meadow, orchard])
+    expect(contributions[0]! / contributions[1]!).toBeCloseTo(1, 9)
   })
 
   test.each([0.005, 0.03])(
