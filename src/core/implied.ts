@@ -15,7 +15,7 @@ export interface ImpliedReturns {
   readonly implied: Float64Array
   /** w'implied */
   readonly total: number
-  /** units of return for each unit of variance; null where the book has no risk: any would do */
+  /** units of return for each unit of variance; null where the book has no risk, as every one would do */
   readonly riskAversion: number | null
 }
 

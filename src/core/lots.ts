@@ -50,7 +50,7 @@ const MOST_TRIALS = 8
  * @param model    n positions
  * @param problem  today's weights, limits and bounds
  * @param weights  n; a proposal for it, as of `smallestChange`
- * @param lots     n; the size of a lot in weight; 0: any size
+ * @param lots     n; the size of a lot in weight; 0: no lots
  * @returns        yields the share done; limits that lots cannot hold are in the result
  * @throws Fault   "shape" | "not-a-number" | "out-of-range" (a lot below 0) and those of `smallestChange`
  * @source         common practice, no source

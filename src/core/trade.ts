@@ -705,7 +705,7 @@ export function loweringPairs(
   const { marginal } = decompose(model, weights)
   if (marginal === null) return []
   const order = Array.from(marginal.keys()).sort((a, b) => marginal[b]! - marginal[a]!)
-  // the steepest pairs are among these: any other sale has `most` sales at least as steep before it, any other purchase likewise
+  // the steepest pairs are among these, since every other sale has `most` sales at least as steep before it, and every other purchase likewise
   const sold = order.filter((i) => shorting === 'shorting' || weights[i]! > 0).slice(0, most)
   const bought = order.slice(-most)
   const pairs = sold

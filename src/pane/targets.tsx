@@ -52,7 +52,7 @@ interface Draft {
   readonly lower: number
   readonly upper: number
   readonly turnover: number | null
-  /** in the unit of the cells; null: any size */
+  /** in the unit of the cells; null: no lots */
   readonly lot: number | null
   readonly net: 'kept' | 'free'
   readonly against: 'hard' | 'soft'
@@ -145,9 +145,9 @@ function LotEntry({
   const inWeight = unit === 'weight'
   return (
     <Entry<number | null>
-      label={inWeight ? 'Changes in steps of, %' : 'Changes in steps of, amount'}
+      label={inWeight ? 'In steps of, %' : 'In steps of, amount'}
       shown={lot === null ? '' : inWeight ? typedPercentText(lot) : String(lot)}
-      hint="Empty: any size"
+      hint="Empty: no lots"
       read={(text) => {
         if (text === '') return { value: null }
         const value = inWeight ? typedPercent(text) : typedNumber(text)
@@ -279,7 +279,7 @@ function Fields({
           <Entry<number | null>
             label="Most turnover, %"
             shown={draft.turnover === null ? '' : typedPercentText(draft.turnover)}
-            hint="One way; empty: any"
+            hint="One way; empty: no cap"
             read={(text) => {
               if (text === '') return { value: null }
               const value = typedPercent(text)
@@ -295,7 +295,7 @@ function Fields({
   }
 }
 
-function Found({ proposal, pending }: { proposal: Proposal; pending: boolean }) {
+function Found({ proposal, moves }: { proposal: Proposal; moves: boolean }) {
   const classes = { ...useStepStyles(), ...useStyles() }
   const { title, met, sentence, method, lines } = proposal
   return (
@@ -306,7 +306,7 @@ function Found({ proposal, pending }: { proposal: Proposal; pending: boolean }) 
       </p>
       {lines.length > 0 && <Facts lines={lines} />}
       <p className={mergeClasses(classes.small, classes.quiet)}>{method}</p>
-      {pending && lines.length > 0 && (
+      {moves && (
         <p className={classes.small}>
           Its weights are in the list of trades below; nothing is written before Apply, and Discard drops
           them.
@@ -397,7 +397,7 @@ export default function Targets({
           What is found takes the place of what is typed in the list.
         </p>
       )}
-      {proposal && <Found proposal={proposal} pending={pending} />}
+      {proposal && <Found proposal={proposal} moves={lines.some(({ origin }) => origin === 'proposal')} />}
     </>
   )
 }

@@ -22,12 +22,12 @@ export type Target =
   /** all limits met with the smallest sum of changes */
   | {
       readonly kind: 'smallest change'
-      /** the most turnover, one way; null: any */
+      /** the most turnover, one way; null: without a cap */
       readonly turnover: number | null
       /** whether the sum of the weights stays, or cash takes the difference */
       readonly net: 'kept' | 'free'
       readonly against: 'hard' | 'soft'
-      /** changes are whole multiples of this, in the unit of the cells (weight or amount); null: any size */
+      /** changes are whole multiples of this, in the unit of the cells (weight or amount); null: no lots */
       readonly lot: number | null
     }
 

@@ -151,7 +151,7 @@ describe('where C is singular', () => {
     expect(variance).toBeCloseTo(0.04, 16)
   })
 
-  test('nothing moves at all: any weights within the bounds serve', () => {
+  test('nothing moves at all, and all weights within the bounds serve', () => {
     const { weights, variance } = found(matrixModel(filled(9, 0), 3), 0, 0.5, 1)
     expect(variance).toBe(0)
     expect(weights.reduce((a, b) => a + b, 0)).toBe(1)
