@@ -1,4 +1,4 @@
-import { memo, useState } from 'react'
+import { memo, useRef, useState } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import {
   CAUTION,
@@ -278,7 +278,7 @@ function Adding({ breakdown, add }: { breakdown: Breakdown; add: (scenario: Scen
         )}
         {bends && scenario === null && (
           <p className={mergeClasses(classes.small, classes.quiet)}>
-            With every factor at 1 nothing is another: one of them is needed.
+            All factors are 1, as estimated: a scenario needs another one.
           </p>
         )}
         <div>
@@ -428,6 +428,12 @@ const SideBySide = memo(
     const books = useBooks()
     const classes = useStepStyles()
     const [opened, setOpened] = useState<ReadonlySet<string | number>>(new Set())
+    const within = useRef<HTMLDivElement>(null)
+    // the button goes with its scenario: the focus stays in the table
+    const takeOff = (place: number): void => {
+      remove(place)
+      requestAnimationFrame(() => within.current?.querySelector<HTMLElement>('[tabindex="0"]')?.focus())
+    }
     const found = books.stressOf(scenarios)
     if (typeof found === 'string') return <Remark text={found} />
     const { cases, after, horizon } = found
@@ -463,7 +469,7 @@ const SideBySide = memo(
     const stretches = cases.filter(({ scenario }) => scenario?.kind === 'stretch')
     const keyOf = (place: number): string => `${place} ${cases[place]?.name ?? ''}`
     return (
-      <>
+      <div className={classes.cell} ref={within}>
         <FigureTable
           label="Scenarios side by side"
           columns={columns}
@@ -479,7 +485,7 @@ const SideBySide = memo(
               <Details
                 one={one}
                 comparison={found}
-                remove={one.scenario === null ? null : () => remove(place - 1)}
+                remove={one.scenario === null ? null : () => takeOff(place - 1)}
               />
             ),
           }))}
@@ -515,7 +521,7 @@ const SideBySide = memo(
             }))}
           />
         )}
-      </>
+      </div>
     )
   },
   (a: Compared, b: Compared) =>

@@ -156,7 +156,11 @@ test('a weight chosen on the curve with the arrow keys goes into the list', asyn
   expect(parseFloat(weight ?? '')).toBeLessThan(4)
   await pane.getByRole('button', { name: 'Put this weight in the list' }).click()
   const line = pane.getByRole('textbox', { name: 'New weight: Tidal power projects' })
-  expect(parseFloat(await line.inputValue())).toBe(parseFloat(weight ?? ''))
+  await until(
+    () => line.inputValue(),
+    (text) => parseFloat(text) === parseFloat(weight ?? ''),
+    'the weight in the list',
+  )
   // what the curve says is what the list comes to
   await pane.getByText(new RegExp(`^8\\.34% → ${volatility?.replace('.', '\\.') ?? ''}`)).waitFor()
 })
@@ -199,6 +203,9 @@ test('the stretch with the largest loss is added to the scenarios, which are wri
     (count) => count === 0,
     'the scenario taken off',
   )
+  const inTable = (): Promise<boolean> =>
+    table.evaluate((element) => element.contains(element.ownerDocument.activeElement))
+  await until(inTable, (focused) => focused, 'the focus in the table, though the button is gone')
 })
 
 test.each(['Light', 'Dark', 'High contrast'])(
