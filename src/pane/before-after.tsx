@@ -16,7 +16,7 @@ import {
 } from '../sheet'
 import { Choice, Folded, Section } from './controls'
 import { Remark } from './headline'
-import { digitsFor, pointsText } from './measure'
+import { digitsApart, digitsFor, pointsText } from './measure'
 import { NONE } from './positions'
 import { useStepStyles } from './step'
 import { useKept } from './store'
@@ -34,14 +34,18 @@ const useStyles = makeStyles({
   mark: { fontWeight: tokens.fontWeightSemibold },
 })
 
-type Financing = TradesState['financing']
-
-const paidBy = (financing: Financing): string =>
-  financing.kind === 'cash'
-    ? 'cash; nothing else moves'
-    : financing.kind === 'pro rata'
-      ? 'the rest of the book, in proportion to its weights'
-      : `the holding ${quote(financing.key)}`
+/** What takes the difference that trades leave; a proposal says it of itself, and of weights in the sheet nobody knows. */
+function paidBy({ financing, proposal, pending }: TradesState): string {
+  if (proposal) return ''
+  if (!pending) return 'All changes are in the sheet already. '
+  return `Paid for by: ${
+    financing.kind === 'cash'
+      ? 'cash; nothing else moves'
+      : financing.kind === 'pro rata'
+        ? 'the rest of the book, in proportion to its weights'
+        : `the holding ${quote(financing.key)}`
+  }. `
+}
 
 // ---- the figures of the whole book
 
@@ -106,14 +110,17 @@ const MOST_LIMITS = 8
 
 const isOver = ({ status }: LimitState): boolean => status === 'breach' || status === 'over soft'
 
-const orNone = (figure: number | null): string => (figure === null ? NONE : percentText(figure, 2))
-
-/** "soft limit 13.00%, hard limit 15.00%" */
-const edgesOf = ({ limit: { soft, hard } }: LimitState): string =>
-  [
-    ...(soft === null ? [] : [`soft limit ${percentText(soft, 2)}`]),
-    ...(hard === null ? [] : [`hard limit ${percentText(hard, 2)}`]),
-  ].join(', ')
+/** "15.90% → 15.00%; soft limit 13.00%, hard limit 15.00%" */
+function limitFigures(then: LimitState, now: LimitState): string {
+  const { soft, hard } = now.limit
+  const digits = Math.max(digitsApart(then.figure, soft, hard), digitsApart(now.figure, soft, hard))
+  const orNone = (figure: number | null): string => (figure === null ? NONE : percentText(figure, digits))
+  const edges = [
+    ...(soft === null ? [] : [`soft limit ${percentText(soft, digits)}`]),
+    ...(hard === null ? [] : [`hard limit ${percentText(hard, digits)}`]),
+  ]
+  return `${orNone(then.figure)} → ${orNone(now.figure)}; ${edges.join(', ')}`
+}
 
 function Limits({ before, after }: { before: readonly LimitState[]; after: readonly LimitState[] }) {
   const classes = { ...useStepStyles(), ...useStyles() }
@@ -135,7 +142,7 @@ function Limits({ before, after }: { before: readonly LimitState[]; after: reado
               <span className={classes.mark}>
                 {then.status === now.status ? word(now) : `${word(then)} → ${word(now)}`}
               </span>
-              : {limitText(now.limit)}, {orNone(then.figure)} → {orNone(now.figure)}; {edgesOf(now)}
+              : {limitText(now.limit)}, {limitFigures(then, now)}
             </li>
           ))}
         </ul>
@@ -217,12 +224,19 @@ function orderOf(names: readonly string[], sides: Sides, { column, descending }:
   return names.map((_, i) => i).sort((a, b) => (descending ? compare(b, a) : compare(a, b)) || a - b)
 }
 
-/** The row that moved most, in words. */
-function mostMoved(names: readonly string[], sides: Sides, digits: number): string {
-  if (sides.before === null || sides.after === null) return 'Shares are withheld'
-  const moved = (i: number): number => Math.abs(difference(sides, i))
-  const most = names.reduce((best, _, i) => (moved(i) > moved(best) ? i : best), 0)
-  return `${names[most] ?? ''}: ${figureOf(sides.before, most, digits)} → ${figureOf(sides.after, most, digits)}`
+/** Names and what they are measured by, on both sides. */
+type Table = readonly [names: readonly string[], sides: Sides]
+
+/** The row of all tables that moved most, in words. */
+function mostMoved(tables: readonly Table[], digits: number): string {
+  const rows = tables.flatMap(([names, sides]) =>
+    sides.before === null || sides.after === null ? [] : names.map((name, i) => ({ name, sides, i })),
+  )
+  const [first, ...others] = rows
+  if (!first) return 'Shares are withheld'
+  const moved = ({ sides, i }: typeof first): number => Math.abs(difference(sides, i))
+  const { name, sides, i } = others.reduce((best, row) => (moved(row) > moved(best) ? row : best), first)
+  return `${name}: ${figureOf(sides.before, i, digits)} → ${figureOf(sides.after, i, digits)}`
 }
 
 type Pair = readonly [label: string, value: string]
@@ -301,8 +315,8 @@ function Parts({ comparison, keys }: { comparison: Comparison; keys: readonly st
   const many = digitsFor(keys.length)
   const digits = measured === 'share' ? many : measured === 'contribution' ? many + 1 : 2
   const label = MEASURES.find(([key]) => key === measured)?.[1] ?? ''
-  const headline = (names: readonly string[], sides: Sides): string =>
-    `${label}, largest change: ${mostMoved(names, sides, digits)}`
+  const headline = (tables: readonly Table[]): string =>
+    `${label}, largest change: ${mostMoved(tables, digits)}`
   const sortBy = (column: number): void =>
     setSorting({ column, descending: sorting.column === column ? !sorting.descending : column !== 0 })
   const toggle = (name: string): void => {
@@ -340,7 +354,9 @@ function Parts({ comparison, keys }: { comparison: Comparison; keys: readonly st
       {firstGroup && (
         <Folded
           title="Groups before and after"
-          headline={headline(firstGroup.labels, groupSides(comparison, 0, measured))}
+          headline={headline(
+            after.groups.map(({ labels }, k) => [labels, groupSides(comparison, k, measured)]),
+          )}
         >
           {figure}
           {withheld !== null && <Remark text={withheld} />}
@@ -357,7 +373,7 @@ function Parts({ comparison, keys }: { comparison: Comparison; keys: readonly st
           ))}
         </Folded>
       )}
-      <Folded title="Holdings before and after" headline={headline(keys, sides)}>
+      <Folded title="Holdings before and after" headline={headline([[keys, sides]])}>
         {figure}
         {withheld !== null && <Remark text={withheld} />}
         <SidesTable
@@ -407,7 +423,7 @@ export function BeforeAfter({
         <FigureTable label="Before and after" columns={columns('Of the book')} rows={rows} />
         <p className={classes.small}>{foretold(comparison)}</p>
         <p className={classes.small}>
-          Paid for by: {paidBy(trades.financing)}. Turnover is the larger of what is bought and what is sold.
+          {paidBy(trades)}Turnover is the larger of what is bought and what is sold.
         </p>
         <p className={mergeClasses(classes.small, classes.quiet)}>{CAUTION}</p>
       </Section>

@@ -13,7 +13,7 @@ import {
   type LimitStatus,
 } from '../sheet'
 import { HOW_LIMITS_COME } from './limits-table'
-import { pointsText } from './measure'
+import { digitsApart, pointsText } from './measure'
 import { PlaceLink, Sentence } from './place'
 import { NONE } from './positions'
 import { FaultLine, TakeButton, useStepStyles } from './step'
@@ -173,11 +173,11 @@ function Key({ hatch }: { hatch: string }) {
 const capital = (text: string): string => text.charAt(0).toUpperCase() + text.slice(1)
 
 /** "Hard limit 15.00%, soft limit 13.00%" */
-const edgesText = ({ limit: { soft, hard } }: LimitState): string =>
+const edgesText = ({ limit: { soft, hard } }: LimitState, digits: number): string =>
   capital(
     [
-      ...(hard === null ? [] : [`hard limit ${percentText(hard, 2)}`]),
-      ...(soft === null ? [] : [`soft limit ${percentText(soft, 2)}`]),
+      ...(hard === null ? [] : [`hard limit ${percentText(hard, digits)}`]),
+      ...(soft === null ? [] : [`soft limit ${percentText(soft, digits)}`]),
     ].join(', '),
   )
 
@@ -194,7 +194,8 @@ function Status({ status }: { status: LimitStatus }) {
   )
 }
 
-const shownOf = (figure: number | null): string => (figure === null ? NONE : percentText(figure, 2))
+const shownOf = (figure: number | null, digits: number): string =>
+  figure === null ? NONE : percentText(figure, digits)
 
 function Line({
   state,
@@ -210,16 +211,20 @@ function Line({
 }) {
   const classes = useStyles()
   const { limit, figure, headroom, used, status, why, error, withinError } = state
-  const moved = after && (shownOf(after.figure) !== shownOf(figure) || after.status !== status)
+  // a breach is seen in its figures, however small they are
+  const digits = digitsApart(figure, limit.soft, limit.hard)
+  const afterDigits = digitsApart(after?.figure ?? null, limit.soft, limit.hard)
+  const moved =
+    after && (shownOf(after.figure, afterDigits) !== shownOf(figure, afterDigits) || after.status !== status)
   return (
     <li className={classes.limit}>
       <Status status={status} />
-      <span className={classes.figure}>{shownOf(figure)}</span>
+      <span className={classes.figure}>{shownOf(figure, digits)}</span>
       <span className={classes.wide}>{capital(limitText(limit))}</span>
       <Used state={state} width={width} hatch={hatch} />
       <span className={mergeClasses(classes.wide, classes.quiet)}>
-        {edgesText(state)}
-        {headroom !== null && `; headroom ${pointsText(headroom, 2)} points`}
+        {edgesText(state, digits)}
+        {headroom !== null && `; headroom ${pointsText(headroom, digits)} points`}
         {used !== null && `; ${percentText(used, 0)} used`}
         {limit.cell && (
           <>
@@ -235,12 +240,12 @@ function Line({
       )}
       {withinError === true && figure !== null && error !== null && (
         <span className={classes.wide}>
-          Within estimation error: the 95% band, {bandText(figure, error, 2)}, holds a limit.
+          Within estimation error: the 95% band, {bandText(figure, error, digits)}, holds a limit.
         </span>
       )}
       {moved && (
         <span className={classes.wide}>
-          With the trades: {shownOf(after.figure)}, {LIMIT_STATUS[after.status].mark}{' '}
+          With the trades: {shownOf(after.figure, afterDigits)}, {LIMIT_STATUS[after.status].mark}{' '}
           {LIMIT_STATUS[after.status].word.toLowerCase()}.
         </span>
       )}

@@ -20,6 +20,19 @@ export function pointsText(difference: number, digits: number): string {
   return /[1-9]/.test(shown) && difference > 0 ? `+${shown}` : shown
 }
 
+const MOST_DIGITS = 4
+const apart = (digits: number, a: number, b: number): boolean =>
+  percentText(a, digits) !== percentText(b, digits)
+
+/** Decimals of percentages that stand side by side: two, or as many as tell those apart that four decimals can. */
+export function digitsApart(...figures: readonly (number | null)[]): number {
+  const shown = figures.filter((figure) => figure !== null)
+  const pairs = shown.flatMap((a, i) => shown.slice(i + 1).map((b) => [a, b] as const))
+  const unlike = pairs.filter(([a, b]) => apart(MOST_DIGITS, a, b))
+  const digits = [2, 3].find((few) => unlike.every(([a, b]) => apart(few, a, b)))
+  return digits ?? MOST_DIGITS
+}
+
 /** Shares of risk; contributions where shares are withheld or there is no risk to share. */
 export function measureOf(breakdown: Breakdown): Measure {
   const { decomposition: d } = breakdown

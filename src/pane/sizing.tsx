@@ -24,7 +24,8 @@ import { Facts, FigureTable, useTableStyles } from './table'
 import { useWidth } from './width'
 
 const useStyles = makeStyles({
-  figure: { margin: 0, minWidth: 0 },
+  // room for the outline of the focus between the key and the drawing
+  figure: { margin: 0, minWidth: 0, display: 'grid', rowGap: tokens.spacingVerticalS },
   slider: {
     touchAction: 'pan-y',
     cursor: 'crosshair',
@@ -162,6 +163,12 @@ function Key({ marks }: { marks: readonly SizingMark[] }) {
           </span>
         )
       })}
+      <span className={classes.keyed}>
+        <svg width="14" height="14">
+          <path className={classes.chosen} d="M7 0v14" />
+        </svg>
+        Chosen
+      </span>
     </div>
   )
 }

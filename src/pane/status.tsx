@@ -85,7 +85,7 @@ function StatusText({ state }: { state: BooksState }) {
       return (
         <>
           {word('Ready')}
-          {then('Both blocks are read; not computed yet.')}
+          {then('Read, and not computed yet.')}
         </>
       )
     case 'up to date':

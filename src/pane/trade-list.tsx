@@ -13,6 +13,7 @@ import {
   type TradesState,
 } from '../sheet'
 import { Choice, Disclosure, Section } from './controls'
+import { digitsFor } from './measure'
 import { NONE } from './positions'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept, useLasting } from './store'
@@ -45,7 +46,8 @@ const useStyles = makeStyles({
     '::placeholder': { color: tokens.colorNeutralForeground1, fontWeight: tokens.fontWeightSemibold },
   },
   wrong: { borderBottomColor: tokens.colorPaletteRedBorder2 },
-  entryCell: { paddingTop: '2px', paddingBottom: '1px' },
+  // the text of a field stands on the line of the figure beside it
+  entryCell: { paddingTop: '3px', paddingBottom: '1px' },
   open: { borderBottom: 'none' },
   below: { padding: `0 0 ${tokens.spacingVerticalXS}` },
   mark: {
@@ -92,8 +94,8 @@ const ENTRIES: readonly (readonly [Entry, string])[] = [
 /** A minus copied from a figure is one. */
 const asTyped = (text: string): string => text.replaceAll('\u2212', '-')
 
-const signed = (change: number): string => {
-  const text = percentText(change, 2)
+const signed = (change: number, digits: number): string => {
+  const text = percentText(change, digits)
   return change > 0 && /[1-9]/.test(text) ? `+${text}` : text
 }
 
@@ -110,11 +112,12 @@ const ORIGINS: { readonly [O in TradeLine['origin']]: string | null } = {
 function marksOf(
   { before, sheet, origin, candidate, typed, fault }: TradeLine,
   payer: Financing['kind'],
+  digits: number,
 ): readonly string[] {
   const by = origin === 'financing' && payer === 'pro rata' ? payer : ORIGINS[origin]
   return [
     ...(candidate ? ['not held'] : []),
-    ...(sheet !== before ? [`edited in the sheet: ${percentText(sheet, 2)}`] : []),
+    ...(sheet !== before ? [`edited in the sheet: ${percentText(sheet, digits)}`] : []),
     ...(fault !== null && typed === null ? ['no weight by the rule'] : by === null ? [] : [by]),
   ]
 }
@@ -133,7 +136,18 @@ const sameLine = (a: TradeLine, b: TradeLine): boolean =>
 
 /** One position: its weight before, and the two fields that say the same thing in two ways, what it changes by and what it becomes. */
 const Line = memo(
-  function Line({ line, stop, payer }: { line: TradeLine; stop: boolean; payer: Financing['kind'] }) {
+  function Line({
+    line,
+    stop,
+    payer,
+    digits,
+  }: {
+    line: TradeLine
+    stop: boolean
+    payer: Financing['kind']
+    /** decimals of a weight */
+    digits: number
+  }) {
     const books = useBooks()
     const classes = { ...useTableStyles(), ...useStyles() }
     const id = useId()
@@ -153,8 +167,8 @@ const Line = memo(
       books.trade({ line: { key, entry, text: asTyped(text) } })
     }
     const figures: { readonly [E in Entry]: string } = {
-      change: moved ? signed(after - before) : NONE,
-      'new weight': percentText(after, 2),
+      change: moved ? signed(after - before, digits) : NONE,
+      'new weight': percentText(after, digits),
     }
     const cell = mergeClasses(classes.cell, below && classes.open)
     return (
@@ -162,7 +176,7 @@ const Line = memo(
         <tr data-key={key}>
           <th scope="row" className={mergeClasses(cell, classes.name)}>
             {key}
-            {marksOf(line, payer).map((mark) => (
+            {marksOf(line, payer, digits).map((mark) => (
               <div key={mark} className={classes.mark}>
                 {mark}
                 {candidate && mark === 'not held' && (
@@ -184,7 +198,7 @@ const Line = memo(
               </div>
             ))}
           </th>
-          <td className={cell}>{percentText(before, 2)}</td>
+          <td className={cell}>{percentText(before, digits)}</td>
           {ENTRIES.map(([entry, label]) => {
             const isOwn = entered?.entry === entry
             return (
@@ -231,7 +245,7 @@ const Line = memo(
       </>
     )
   },
-  (a, b) => a.stop === b.stop && a.payer === b.payer && sameLine(a.line, b.line),
+  (a, b) => a.stop === b.stop && a.payer === b.payer && a.digits === b.digits && sameLine(a.line, b.line),
 )
 
 const COLUMNS = [
@@ -264,6 +278,8 @@ function Lines({
   payer: Financing['kind']
 }) {
   const classes = { ...useTableStyles(), ...useStyles() }
+  // weights of a large book are small, and what moves them smaller
+  const digits = digitsFor(all.length) + 1
   const [limit, setLimit] = useState(STEP)
   const [reached, setReached] = useState<string | null>(null)
   const [held, setHeld] = useState<readonly string[] | null>(null)
@@ -314,7 +330,7 @@ function Lines({
         </thead>
         <tbody onKeyDown={move} onFocus={enter} onBlur={leave}>
           {shown.map((line) => (
-            <Line key={line.key} line={line} stop={line.key === stop} payer={payer} />
+            <Line key={line.key} line={line} stop={line.key === stop} payer={payer} digits={digits} />
           ))}
         </tbody>
       </table>

@@ -11,7 +11,7 @@ import {
 import { Apply } from './apply'
 import { BeforeAfter } from './before-after'
 import { Remark } from './headline'
-import { pointsText } from './measure'
+import { digitsApart, pointsText } from './measure'
 import { useBooksState, useKept, useLasting } from './store'
 import { Aims, Questions } from './trade-sections'
 import { TradeList } from './trade-list'
@@ -93,12 +93,14 @@ function Outcome({ breakdown, comparison }: { breakdown: Breakdown; comparison: 
   const now = breakdown.decomposition.volatility
   const before = compared?.before.decomposition.volatility ?? now
   const after = compared?.after.decomposition.volatility ?? now
+  const digits = digitsApart(before, after)
+  const change = digitsApart(after - before, 0)
   const [hardBefore, softBefore] = overOf(compared?.limitsBefore ?? breakdown.limits)
   const [hardAfter, softAfter] = overOf(compared?.limitsAfter ?? breakdown.limits)
   const rows: (readonly [name: string, value: string])[] = [
     [
       `Volatility ${breakdown.horizon}`,
-      `${arrow(percentText(before, 2), percentText(after, 2))}${compared ? `\u2002${pointsText(after - before, 2)} points` : ''}`,
+      `${arrow(percentText(before, digits), percentText(after, digits))}${compared ? `\u2002${pointsText(after - before, change)} points` : ''}`,
     ],
     breakdown.limits.length > 0
       ? [

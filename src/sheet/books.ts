@@ -499,7 +499,7 @@ class OpenBooks implements Books {
     return this.#command('trades', async (book, work) => {
       const areas = await book.undoTrades(work)
       this.#tellOthers(book, areas)
-      this.#notice = `${countOf(areas.length, 'cell')} put back as they were.`
+      this.#notice = `${countOf(areas.length, 'cell')} put back as ${areas.length === 1 ? 'it was' : 'they were'}.`
     })
   }
 

@@ -134,6 +134,13 @@ describe('limits', () => {
     expect(said).not.toContain('NaN')
   })
 
+  test('show a small figure in as many decimals as show that it is over its limit', async () => {
+    const { limits } = await book({ limits: [...LIMITS, ['Holding', 'Quarry', 'Weight', '', 0.09998]] })
+    expect(limits().said).toMatch(
+      /Breach 10\.000% Weight of “Quarry” Hard limit 9\.998%; headroom \u22120\.002 points/,
+    )
+  })
+
   test('say what they come to with the trades, where that is another figure or status', async () => {
     const { books, limits } = await book()
     expect(limits().said).not.toContain('With the trades')
@@ -212,12 +219,7 @@ describe('targets', () => {
   test('ask for the smallest change first, and say what takes the difference', async () => {
     const { targets } = await book()
     const { said } = targets()
-    for (const field of [
-      'Limits to meet',
-      'Sum of the weights',
-      'Most turnover, %',
-      'Changes in steps of, %',
-    ])
+    for (const field of ['Limits to meet', 'Sum of the weights', 'Most turnover, %', 'In steps of, %'])
       expect(said).toContain(field)
     expect(said).not.toContain('Proposal')
     expect(targets('Found no limits.').said).toContain('Found no limits.')

@@ -2,7 +2,7 @@
 import fc from 'fast-check'
 import { Apply } from '../../../src/pane/apply'
 import { BeforeAfter } from '../../../src/pane/before-after'
-import { pointsText } from '../../../src/pane/measure'
+import { digitsApart, pointsText } from '../../../src/pane/measure'
 import { TradeList } from '../../../src/pane/trade-list'
 import { around, TextFaultMessage } from '../../../src/pane/typed-text'
 import type { Books, Breakdown, CellValue, Comparison, TradeChange, TradesState } from '../../../src/sheet'
@@ -196,6 +196,23 @@ describe('the list of trades', () => {
     ).toEqual(['Field 40', 'Field 3 pays for the trades'])
   })
 
+  test('of a large book shows weights in three decimals, since its changes are small', async () => {
+    const names = Array.from({ length: 61 }, (_, i) => `Field ${i + 1}`)
+    const { list, trade } = await book(
+      [
+        ['Holding', 'Class', 'Weight', 'Limit on weight'],
+        ...names.map((name, i): CellValue[] => [name, `Class ${i % 3}`, 0.016, 0.5]),
+      ],
+      [names, ...Array.from({ length: 12 }, (_, t) => names.map((_, i) => 0.01 * Math.sin(t + i * i)))],
+    )
+    await trade(becomes('Field 40', '1.24%'), { financing: { kind: 'pro rata' } })
+    const { rows, markup } = list()
+    expect(rows[1]?.[1]).toBe('1.600%')
+    // by hand: 0.36% sold, a sixtieth of it to each of the others
+    expect(fields(markup, 'Field 40')[0]).toBe('\u22120.360%')
+    expect(fields(markup, 'Field 1')).toEqual(['+0.006%', '1.606%'])
+  })
+
   test('names a series that is not held, which can be added and taken off', async () => {
     const { list, books } = await book()
     expect(list().said).toContain('Series that are not held (1)')
@@ -267,6 +284,43 @@ describe('before and after', () => {
         .map((figure) => `${figure.toFixed(1).replace('-', '\u2212')}%`)
         .join(' → ')}`,
     )
+  })
+
+  test('groups are headed by what changes most in any of their columns', async () => {
+    const { sides, trade } = await book([
+      ['Holding', 'Class', 'Weight', 'Place'],
+      ['Meadow', 'All', 0.4, 'Hill'],
+      ['Orchard', 'All', 0.3, 'Vale'],
+      ['Mill', 'All', 0.2, 'Vale'],
+      ['Quarry', 'All', 0.1, 'Vale'],
+    ])
+    await trade(becomes('Meadow', '0%'))
+    // the one class has all of the risk before and after
+    expect(sides().said).toMatch(
+      /Groups before and after Share of risk, largest change: (Hill: \S+% → 0.0%|Vale: \S+% → 100.0%)/,
+    )
+  })
+
+  test('who pays is said of what is typed, not of a proposal, which says it itself, nor of what is in the sheet already', async () => {
+    const { sides, books, trade, trades } = await book()
+    await books.propose({ kind: 'smallest change', turnover: null, lot: null, net: 'kept', against: 'hard' })
+    expect(trades().proposal?.met).toBe(true)
+    expect(sides().said).not.toContain('Paid for by')
+    books.discardTrades()
+    await trade(becomes('Meadow', '35%'))
+    expect(sides().said).toContain('Paid for by: cash')
+    await books.applyTrades({ replaceFormulas: false })
+    while (trades().lines[0]?.sheet !== 0.35) await new Promise((resolve) => setTimeout(resolve, 50))
+    expect(sides().said).toContain('All changes are in the sheet already. Turnover')
+    expect(sides().said).not.toContain('Paid for by')
+  })
+
+  test('figures and their limits are told apart however small they are, and as far as four decimals can', () => {
+    // by hand
+    expect(digitsApart(0.159, 0.15)).toBe(2)
+    expect(digitsApart(0.000523, 0.0005)).toBe(3)
+    expect(digitsApart(0.050001, null, 0.05)).toBe(4)
+    expect(digitsApart(0.05, 0.05 + 1e-9, 0.1)).toBe(2)
   })
 
   test('where nothing can be compared the reason stands alone', async () => {
