@@ -249,6 +249,16 @@ describe('A list of trades', () => {
     expect(JSON.stringify(cells('Book!A1:D5'))).toBe(sheet)
   })
 
+  test('has the tracking error against one series before and after', async () => {
+    const { line, comparison } = await desk(HOLDINGS, {
+      settings: { benchmark: { kind: 'series', name: 'Ferry' } },
+    })
+    line('Meadow', '30%')
+    const { before, after } = comparison()
+    expect(before.trackingError).toBeCloseTo(riskOf([0.4, 0.3, 0.2, 0.1, -1]).volatility, 12)
+    expect(after.trackingError).toBeCloseTo(riskOf([0.3, 0.3, 0.2, 0.1, -1]).volatility, 12)
+  })
+
   test('counts turnover, and holds limits before, from the weights the comparison began at', async () => {
     const { books, type, quiet, take, line, comparison } = await desk()
     await take('limits', 'Limits!A1:E3')
