@@ -957,6 +957,32 @@ describe('Looking for weights', () => {
     closeTo(after(), [0.8, 0.5, -0.2])
   })
 
+  test('of the size of a short mark its limits on the short side', async () => {
+    const alone = riskOf([0, 0, 1, 0]).volatility
+    const { books, take } = await desk(
+      [
+        ['Holding', 'Class', 'Weight', ''],
+        ['Meadow', 'Land', 0.8, ''],
+        ['Orchard', 'Land', 0.5, ''],
+        ['Mill', 'Works', -0.3, ''],
+      ],
+      {
+        limits: [
+          LIMITS[0]!,
+          ['Holding', 'Mill', 'Weight', '', 0.2],
+          ['Holding', 'Mill', 'Stand-alone risk', '', 0.25 * alone],
+        ],
+      },
+    )
+    await take('limits', 'Limits!A1:E3')
+    const sizing = books.sizingOf('Mill', { kind: 'cash' })
+    if (typeof sizing === 'string') throw new Error(sizing)
+    closeTo(
+      sizing.marks.filter(({ kind }) => kind === 'hard limit').map(({ weight }) => weight),
+      [-0.2, -0.25],
+    )
+  })
+
   test('of the smallest change in lots count them in the unit of the cells', async () => {
     const { books, take, trades } = await desk(
       HOLDINGS.map(([name, group, weight], k) => [
@@ -1077,7 +1103,7 @@ describe('Tables of trades and scenarios', () => {
     expect(cells('Stress!A1:A1')[0]?.[0]).toMatch(/^Stress/)
     // what the weights after come from
     expect(cells('Stress!A1:B60').find(([label]) => label === 'Trades')?.[1]).toBe(
-      '1 weight differs from those compared from; turnover 10.00% one way. Cash pays for the trades.',
+      '1 weight differs from those compared from; turnover 10.00% one way. Cash beyond the holdings pays for the trades.',
     )
   })
 })
