@@ -40,7 +40,7 @@ function paidBy({ financing, proposal, pending }: TradesState): string {
   if (!pending) return 'All changes are in the sheet already. '
   return `Paid for by: ${
     financing.kind === 'cash'
-      ? 'cash; nothing else moves'
+      ? 'cash beyond the holdings; nothing else moves'
       : financing.kind === 'pro rata'
         ? 'the rest of the book, in proportion to its weights'
         : `the holding ${quote(financing.key)}`

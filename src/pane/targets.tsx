@@ -9,6 +9,7 @@ import {
   type TradesState,
 } from '../sheet'
 import { Choice, Entry, PercentEntry, typedNumber, typedPercent, typedPercentText } from './controls'
+import { Remark } from './headline'
 import { FaultLine, useStepStyles } from './step'
 import { useBooks, useKept } from './store'
 import { Facts } from './table'
@@ -295,7 +296,16 @@ function Fields({
   }
 }
 
-function Found({ proposal, moves }: { proposal: Proposal; moves: boolean }) {
+function Found({
+  proposal,
+  moves,
+  outdated,
+}: {
+  proposal: Proposal
+  /** whether any weight of it is in the list */
+  moves: boolean
+  outdated: string | null
+}) {
   const classes = { ...useStepStyles(), ...useStyles() }
   const { title, met, sentence, method, lines } = proposal
   return (
@@ -304,6 +314,7 @@ function Found({ proposal, moves }: { proposal: Proposal; moves: boolean }) {
       <p className={classes.small} role="status">
         <span className={classes.word}>{met ? '\u2713 Met.' : '\u2717 Not met.'}</span> {sentence}
       </p>
+      {outdated !== null && <Remark text={outdated} />}
       {lines.length > 0 && <Facts lines={lines} />}
       <p className={mergeClasses(classes.small, classes.quiet)}>{method}</p>
       {moves && (
@@ -397,7 +408,13 @@ export default function Targets({
           What is found takes the place of what is typed in the list.
         </p>
       )}
-      {proposal && <Found proposal={proposal} moves={lines.some(({ origin }) => origin === 'proposal')} />}
+      {proposal && (
+        <Found
+          proposal={proposal}
+          moves={lines.some(({ origin }) => origin === 'proposal')}
+          outdated={trades.outdated}
+        />
+      )}
     </>
   )
 }

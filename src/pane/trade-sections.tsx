@@ -26,10 +26,10 @@ interface SharedFault<Asked> {
   readonly asked: (which: Asked) => void
 }
 
-const targetHeadline = ({ proposal, pending }: TradesState): string =>
+const targetHeadline = ({ proposal, pending, outdated }: TradesState): string =>
   proposal === null || !pending
     ? 'A volatility, a share of risk, risk budgets, limits'
-    : `${proposal.title}: ${proposal.met ? 'met' : 'not met'}`
+    : `${proposal.title}: ${proposal.met ? 'met' : 'not met'}${outdated === null ? '' : ', before something changed'}`
 
 /** What a list of trades is made for: the limits, and weights that are looked for. They stand before the list. */
 export function Aims({

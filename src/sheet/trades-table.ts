@@ -222,7 +222,7 @@ function financingText({ financing, lines, proposal }: TradesState): string {
   if (proposal) return proposal.sentence
   switch (financing.kind) {
     case 'cash':
-      return 'Cash pays for the trades.'
+      return 'Cash beyond the holdings pays for the trades.'
     case 'pro rata':
       return 'The rest of the book pays for the trades, in proportion to its weights.'
     case 'position':

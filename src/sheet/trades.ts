@@ -104,6 +104,8 @@ export interface TradesState {
   readonly comparison: Comparison | string
   readonly preview: WritePreview
   readonly proposal: Proposal | null
+  /** why what the proposal says of itself may be so no more, or null; it is among the notes as well */
+  readonly outdated: string | null
   /** whether anything is typed or proposed that is not in the sheet */
   readonly pending: boolean
   /** what Undo would take back, or null */
@@ -357,6 +359,7 @@ export class Trades {
                   : 'none',
       }
     })
+    const outdated = this.#outdated(ground)
     return {
       lines,
       rule: { text: this.#rule, fault: wanted.ruleFault },
@@ -365,6 +368,7 @@ export class Trades {
       comparison: why ?? compared?.value ?? NOTHING_DIFFERS,
       preview,
       proposal: this.#proposal?.what ?? null,
+      outdated: outdated[0] ?? null,
       pending: this.#typed.size > 0 || this.#rule.trim() !== '' || this.#proposal !== null,
       applied: this.applied,
       candidates: ground.candidates,
@@ -373,7 +377,7 @@ export class Trades {
         ...ofCapital(ground, preview, after),
         ...this.#gone(ground),
         ...this.#unused(ground),
-        ...this.#outdated(ground),
+        ...outdated,
       ],
       loading: this.#loading,
     }

@@ -238,6 +238,14 @@ describe('targets', () => {
     expect(said).toContain('not advice')
   })
 
+  test('say of what was found that a line was changed since', async () => {
+    const { books, targets } = await book()
+    await books.propose({ ...smallest, turnover: null })
+    expect(targets().said).not.toContain('found before')
+    books.trade({ line: { key: 'Meadow', entry: 'new weight', text: '39%' } })
+    expect(targets().said).toContain('The proposal was found before lines of the list changed')
+  })
+
   test('say clearly when nothing meets what was asked for', async () => {
     const { books, targets } = await book()
     // 5% of turnover are needed

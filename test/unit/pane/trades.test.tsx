@@ -233,7 +233,7 @@ describe('before and after', () => {
     expect(row('Net weight')).toEqual(['100.00%', '97.00%', '\u22123.00'])
     expect(row('Gross weight')).toEqual(['100.00%', '97.00%', '\u22123.00'])
     expect(row('Turnover, one way')).toEqual(['', '5.00%', ''])
-    expect(said).toContain('Paid for by: cash; nothing else moves.')
+    expect(said).toContain('Paid for by: cash beyond the holdings; nothing else moves.')
     await trade({ financing: { kind: 'position', key: 'Quarry' } })
     expect(sides().said).toContain('Paid for by: the holding “Quarry”.')
     // by hand: 5 sold, 2 bought and 3 more by Quarry
