@@ -458,10 +458,14 @@ class Search {
         this.#volatilityLine(weights),
         [
           'Least change there can be',
-          Number.isFinite(result.leastPossible) ? percentText(result.leastPossible, 2) : 'none',
+          result.leastPossible === Infinity
+            ? 'none'
+            : result.leastPossible < NO_BOUND
+              ? 'not known'
+              : percentText(result.leastPossible, 2),
           result.proven && met
             ? 'Proven: no smaller change meets the limits.'
-            : 'A bound from below: limits on shares of risk are not convex, so that a smaller change elsewhere is not ruled out.',
+            : 'Limits on shares of risk are not convex, so that a smaller change elsewhere is not ruled out.',
         ],
         ...(inLots
           ? [
@@ -617,6 +621,9 @@ const LEAST_CASH = 1e-9
 
 /** A sum of typed budgets this near to 1 is 1. */
 const BUDGET_ROUNDING = 1e-9
+
+/** A bound from below that is told as none: it would show as 0.00%. */
+const NO_BOUND = 5e-5
 
 /** A limit used to within this part of it is told as one that binds. */
 const AT_LIMIT = 1e-6

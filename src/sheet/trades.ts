@@ -238,9 +238,9 @@ export class Trades {
     this.#known = null
   }
 
-  /** Takes a proposal into the list in place of what is typed. */
-  take(what: Proposal, weights: ReadonlyMap<string, number>, ground: TradeGround): void {
-    this.discard()
+  /** Takes a proposal into the list in place of what was typed when it was asked for; one that found nothing leaves that as it is. */
+  take(what: Proposal, weights: ReadonlyMap<string, number>, ground: TradeGround, asked: Listed): void {
+    if (what.met || weights.size > 0) this.discard(asked)
     this.#proposal = { what, ground, weights: new Map(weights), count: weights.size }
   }
 

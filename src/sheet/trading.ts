@@ -253,6 +253,7 @@ export class Trading {
     this.#asked()
     const ground = this.#ground
     if (!ground || !this.#standing) return
+    const listed = this.#list.listed()
     const { proposal, weights } = await proposalFor(
       target,
       ground,
@@ -261,7 +262,7 @@ export class Trading {
       this.#calculator,
       work,
     )
-    this.#list.take(proposal, weights, ground)
+    this.#list.take(proposal, weights, ground, listed)
   }
 
   // ---- questions about the figures that stand
