@@ -433,7 +433,7 @@ const Payer = memo(
         label="What pays for the trades"
         value={financing.kind === 'position' ? ofPosition(financing.key) : financing.kind}
         choices={[
-          ['cash', 'Cash beyond the holdings: nothing else moves'],
+          ['cash', 'Cash beyond the holdings'],
           ['pro rata', 'The rest of the book, pro rata'],
         ]}
         more={[{ heading: 'One holding', choices: keys.map((key) => [ofPosition(key), key] as const) }]}
