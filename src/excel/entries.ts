@@ -162,6 +162,10 @@ const cellsOf = (area: Area): Area[] =>
 
 const isCorner = (cell: Area, block: Area): boolean => cell.row === block.row && cell.column === block.column
 
+/** Whether a cell holds what was seen; one formatted as text may hold the digits of a number that was written. */
+const isSame = (found: CellValue, seen: CellValue, format: string): boolean =>
+  found === seen || (format === '@' && typeof seen === 'number' && found === String(seen))
+
 function refuseChanged(runs: readonly SurveyedRun[], entries: readonly CellEntry[]): void {
   const changed = new Map<CellEntry, string>()
   for (const { entries: rows, survey } of runs)
@@ -169,8 +173,8 @@ function refuseChanged(runs: readonly SurveyedRun[], entries: readonly CellEntry
       row.forEach((entry, c) => {
         const typed = survey.typed[r]?.[c] ?? ''
         const found = typeof typed === 'string' && typed.startsWith("'") ? typed.slice(1) : typed
-        if (found === entry.seen) return
         const format = survey.formats[r]?.[c] ?? ''
+        if (isSame(found, entry.seen, format)) return
         changed.set(
           entry,
           `${addressOf(entry.at)} was edited meanwhile: found ${entryText(found, format)}, ${entryText(entry.seen, format)} was expected`,

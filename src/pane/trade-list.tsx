@@ -25,7 +25,7 @@ const useStyles = makeStyles({
     boxSizing: 'border-box',
     width: '100%',
     minWidth: 0,
-    padding: '1px 1px 1px 4px',
+    padding: '1px 1px 1px 2px',
     border: 'none',
     borderBottom: `1px solid ${tokens.colorNeutralStrokeAccessible}`,
     borderRadius: `${tokens.borderRadiusSmall} ${tokens.borderRadiusSmall} 0 0`,
@@ -250,9 +250,9 @@ const Line = memo(
 
 const COLUMNS = [
   ['Holding', null],
-  ['Before', 58],
-  ['Change', 64],
-  ['After', 65],
+  ['Before', 60],
+  ['Change', 73],
+  ['After', 68],
 ] as const
 
 /** Lines in an order that is kept, those that came since at the end. */

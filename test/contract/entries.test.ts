@@ -95,6 +95,24 @@ describe('An entry', () => {
     expect(numberFormat).toEqual([['General'], ['General'], ['@'], ['@']])
   })
 
+  test('of a number goes into a cell of text format and can be taken back, whether the host keeps it a number or makes digits of it', async () => {
+    const { book, user, cells, office, settle } = open()
+    await office.Excel.run(async (context) => {
+      context.workbook.worksheets.getItem('Sheet1').getRange('A1').numberFormat = [['@']]
+      await context.sync()
+    })
+    user.type('Sheet1', 'A1', [['62.5 %']])
+    await settle()
+    await book.write({ patches: [], entries: [entry('A1', '62.5 %', 0.6)] })
+    await settle()
+    expect(Number((await cells('Sheet1', 'A1')).values[0]?.[0])).toBe(0.6)
+    await book.write({ patches: [], entries: [entry('A1', 0.6, '62.5 %')] })
+    await settle()
+    const { values, numberFormat } = await cells('Sheet1', 'A1')
+    expect(values).toEqual([['62.5 %']])
+    expect(numberFormat).toEqual([['@']])
+  })
+
   test('is written in one request and one assignment with those beside it, be they 500 and scattered', async () => {
     const filled = Array.from({ length: 1000 }, (_, r) => [r, 2 * r, 3 * r])
     const { book, office, cells, settle } = open(undefined, filled)
