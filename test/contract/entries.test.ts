@@ -105,7 +105,7 @@ describe('An entry', () => {
     await settle()
     await book.write({ patches: [], entries: [entry('A1', '62.5 %', 0.6)] })
     await settle()
-    expect(Number((await cells('Sheet1', 'A1')).values[0]?.[0])).toBe(0.6)
+    expect(Number((await cells('Sheet1', 'A1')).values?.[0]?.[0])).toBe(0.6)
     await book.write({ patches: [], entries: [entry('A1', 0.6, '62.5 %')] })
     await settle()
     const { values, numberFormat } = await cells('Sheet1', 'A1')
