@@ -119,7 +119,7 @@ function payerHint(kind: Kind, financing: TradesState['financing']): string | nu
     case 'volatility':
       return financing.kind === 'position'
         ? `The difference goes to: ${financing.key}, as chosen in the list of trades.`
-        : 'The whole book grows or shrinks; cash takes the difference.'
+        : 'The whole book grows or shrinks; cash beyond the holdings takes the difference.'
     case 'smallest change':
       return financing.kind === 'position'
         ? `${financing.key} takes the difference, as chosen in the list of trades.`

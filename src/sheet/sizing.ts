@@ -56,7 +56,7 @@ const FARTHEST = 3
 export function financingText(financing: Financing, names: readonly string[]): string {
   switch (financing.kind) {
     case 'cash':
-      return 'cash (nothing else moves)'
+      return 'cash beyond the holdings (nothing else moves)'
     case 'pro rata':
       return 'the rest of the book, in proportion to its weights'
     case 'position':

@@ -119,7 +119,7 @@ class Search {
     const t = at.filter((root) => root > -1).sort((a, b) => Math.abs(a) - Math.abs(b))[0]
     const paidBy =
       payer === null
-        ? 'cash takes the difference'
+        ? 'cash beyond the holdings takes the difference'
         : `${quote(positions[payer]?.name ?? '')} takes the difference`
     const title = `Volatility of ${percentText(wanted, 2)}`
     const method = `Every ${payer === null ? 'position' : 'other position'} larger or smaller in one proportion, in closed form; ${paidBy}.`
@@ -427,7 +427,7 @@ class Search {
         ? `${quote(positions[payer]?.name ?? '')} takes the difference`
         : target.net === 'kept'
           ? 'the sum of the weights stays'
-          : 'cash takes the difference'
+          : 'cash beyond the holdings takes the difference'
     const toCash = payer === null && target.net === 'free' ? 0 : (inLots?.toCash ?? 0)
     const inCash =
       Math.abs(toCash) > LEAST_CASH
@@ -563,7 +563,7 @@ class Search {
     if (payer !== null) return `${quote(positions[payer]?.name ?? '')} takes the difference`
     return this.#financing.kind === 'pro rata'
       ? 'the rest of the book takes the difference in proportion to its weights'
-      : 'cash takes the difference'
+      : 'cash beyond the holdings takes the difference'
   }
 
   #membersOf(of: ShareOf): { members: readonly number[]; name: string } {

@@ -296,7 +296,7 @@ describe('sizing', () => {
       'Least-risk weight',
       'Trades that lower risk most',
       'not advice',
-      'paid for by cash (nothing else moves)',
+      'paid for by cash beyond the holdings (nothing else moves)',
     ])
       expect(said).toContain(fact)
     expect(markup).toMatch(/role="slider"[^>]*aria-valuetext="30\.00%, volatility \d\.\d\d%"/)

@@ -31,7 +31,7 @@ describe('sizing', () => {
     const { curve, marks, changeIfRemoved, financing, notes } = sizingOf(inputs, 0, CASH, [
       limitOf({ soft: 0.3, hard: 0.4 }),
     ])
-    expect(financing).toBe('cash (nothing else moves)')
+    expect(financing).toBe('cash beyond the holdings (nothing else moves)')
     expect(notes).toEqual([])
     expect(marks.map(({ kind, label }) => `${kind}: ${label}`)).toEqual([
       'today: Today',
