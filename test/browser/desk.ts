@@ -89,3 +89,20 @@ export async function openDeskPage(browser: Browser): Promise<DeskPage> {
     },
   }
 }
+
+/** The desk with the demo's holdings and returns taken and computed, by mouse. */
+export async function openComputedDemo(browser: Browser): Promise<DeskPage> {
+  const desk = await openDeskPage(browser)
+  const { pane } = desk
+  await desk.sheet('Book')
+  await desk.goTo('A4:G21')
+  await pane.getByRole('button', { name: 'Use selection' }).first().click()
+  await pane.getByText(/16 holdings, net/).waitFor()
+  await desk.sheet('Returns')
+  await desk.goTo('A1:Q261')
+  await pane.getByRole('button', { name: 'Use selection' }).nth(1).click()
+  await pane.getByText(/260 weekly returns/).waitFor()
+  await pane.getByRole('button', { name: 'Compute' }).click()
+  await pane.getByText('Up to date', { exact: true }).waitFor()
+  return desk
+}

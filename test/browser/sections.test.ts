@@ -1,7 +1,7 @@
 /** What stands behind the figures, in the desk, in a browser: data checks, estimators, groups, large losses, benchmark, studies. */
 import type { Browser } from 'playwright-core'
 import { launchChromium } from './chromium'
-import { openDeskPage, until, type DeskPage } from './desk'
+import { openComputedDemo, until, type DeskPage } from './desk'
 
 jest.setTimeout(240_000)
 
@@ -9,18 +9,7 @@ let browser: Browser
 let desk: DeskPage
 beforeAll(async () => {
   browser = await launchChromium()
-  desk = await openDeskPage(browser)
-  const { pane } = desk
-  await desk.sheet('Book')
-  await desk.goTo('A4:G21')
-  await pane.getByRole('button', { name: 'Use selection' }).first().click()
-  await pane.getByText(/16 holdings, net/).waitFor()
-  await desk.sheet('Returns')
-  await desk.goTo('A1:Q261')
-  await pane.getByRole('button', { name: 'Use selection' }).nth(1).click()
-  await pane.getByText(/260 weekly returns/).waitFor()
-  await pane.getByRole('button', { name: 'Compute' }).click()
-  await pane.getByText('Up to date', { exact: true }).waitFor()
+  desk = await openComputedDemo(browser)
 })
 afterAll(async () => {
   await desk.close()

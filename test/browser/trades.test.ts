@@ -3,7 +3,7 @@ import { readFileSync } from 'node:fs'
 import type { AxeResults } from 'axe-core'
 import type { Browser } from 'playwright-core'
 import { launchChromium } from './chromium'
-import { openDeskPage, until, type DeskPage } from './desk'
+import { openComputedDemo, until, type DeskPage } from './desk'
 
 jest.setTimeout(240_000)
 
@@ -13,18 +13,7 @@ let browser: Browser
 let desk: DeskPage
 beforeAll(async () => {
   browser = await launchChromium()
-  desk = await openDeskPage(browser)
-  const { pane } = desk
-  await desk.sheet('Book')
-  await desk.goTo('A4:G21')
-  await pane.getByRole('button', { name: 'Use selection' }).first().click()
-  await pane.getByText(/16 holdings, net/).waitFor()
-  await desk.sheet('Returns')
-  await desk.goTo('A1:Q261')
-  await pane.getByRole('button', { name: 'Use selection' }).nth(1).click()
-  await pane.getByText(/260 weekly returns/).waitFor()
-  await pane.getByRole('button', { name: 'Compute' }).click()
-  await pane.getByText('Up to date', { exact: true }).waitFor()
+  desk = await openComputedDemo(browser)
 })
 afterAll(async () => {
   await desk.close()
