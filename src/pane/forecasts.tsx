@@ -2,6 +2,7 @@ import { useMemo } from 'react'
 import { makeStyles, tokens } from '@fluentui/react-components'
 import { scaleLinear } from '@visx/scale'
 import { countOf, dateText, percentText, type BacktestStudy } from '../sheet'
+import { useDrawingStyles } from './drawing'
 import { useWidth } from './width'
 
 const useStyles = makeStyles({
@@ -27,22 +28,6 @@ const useStyles = makeStyles({
     stroke: tokens.colorNeutralBackground1,
     '@media (forced-colors: active)': { fill: 'CanvasText', stroke: 'Canvas' },
   },
-  axis: {
-    fill: tokens.colorNeutralForeground2,
-    fontSize: tokens.fontSizeBase100,
-    fontVariantNumeric: 'tabular-nums',
-    fontFamily: tokens.fontFamilyBase,
-    '@media (forced-colors: active)': { fill: 'CanvasText' },
-  },
-  key: {
-    display: 'flex',
-    flexWrap: 'wrap',
-    columnGap: tokens.spacingHorizontalM,
-    fontSize: tokens.fontSizeBase200,
-    lineHeight: tokens.lineHeightBase200,
-    color: tokens.colorNeutralForeground2,
-  },
-  keyed: { display: 'inline-flex', alignItems: 'center', columnGap: tokens.spacingHorizontalXS },
 })
 
 const HEIGHT = 140
@@ -56,7 +41,7 @@ const markAt = (x: number, y: number): string => `M${x} ${y}l${-MARK} ${-2 * MAR
 
 /** Returns against the band that was forecast for them, date by date; exceptions are marked with triangles. */
 export default function Forecasts({ study }: { study: BacktestStudy }) {
-  const classes = useStyles()
+  const classes = { ...useDrawingStyles(), ...useStyles() }
   const { element, width } = useWidth<HTMLDivElement>()
   const { result, dates } = study
   const { returns, valueAtRisk, exceptions } = result

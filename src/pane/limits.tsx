@@ -1,6 +1,5 @@
 import { useId, useState } from 'react'
 import { Button, makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
-import { PatternLines } from '@visx/pattern'
 import { scaleLinear } from '@visx/scale'
 import {
   BAND,
@@ -12,6 +11,7 @@ import {
   type LimitState,
   type LimitStatus,
 } from '../sheet'
+import { Hatch, useDrawingStyles } from './drawing'
 import { HOW_LIMITS_COME } from './limits-table'
 import { digitsApart, pointsText } from './measure'
 import { PlaceLink, Sentence } from './place'
@@ -39,16 +39,6 @@ const useStyles = makeStyles({
   wide: { gridColumn: '1 / -1' },
   drawing: { gridColumn: '1 / -1', display: 'block', margin: '3px 0', overflow: 'visible' },
   quiet: { color: tokens.colorNeutralForeground2 },
-  defs: { position: 'absolute', width: 0, height: 0 },
-  key: {
-    display: 'flex',
-    flexWrap: 'wrap',
-    columnGap: tokens.spacingHorizontalM,
-    fontSize: tokens.fontSizeBase200,
-    lineHeight: tokens.lineHeightBase200,
-    color: tokens.colorNeutralForeground2,
-  },
-  keyed: { display: 'inline-flex', alignItems: 'center', columnGap: tokens.spacingHorizontalXS },
   ground: {
     stroke: tokens.colorNeutralStroke1,
     '@media (forced-colors: active)': { stroke: 'GrayText' },
@@ -138,7 +128,7 @@ function Used({ state, width, hatch }: { state: LimitState; width: number; hatch
 }
 
 function Key({ hatch }: { hatch: string }) {
-  const classes = useStyles()
+  const classes = { ...useDrawingStyles(), ...useStyles() }
   return (
     <div className={classes.key} aria-hidden>
       <span className={classes.keyed}>
@@ -285,16 +275,7 @@ function List({ states, after, fault }: Asked) {
   const [count, setCount] = useState(STEP)
   return (
     <div className={classes.cell} ref={element}>
-      <svg className={classes.defs} aria-hidden focusable="false">
-        <PatternLines
-          id={hatch}
-          width={4}
-          height={4}
-          orientation={['diagonal']}
-          strokeWidth={1.5}
-          className={classes.over}
-        />
-      </svg>
+      <Hatch id={hatch} className={classes.over} />
       <p className={classes.small}>
         At the weights in the sheet. A status follows the figure alone, however sure it is.
       </p>

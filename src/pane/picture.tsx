@@ -2,10 +2,10 @@ import { memo, useId, useMemo, useState, type KeyboardEvent } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 // Fluent's own charts draw one bar a category along a horizontal axis and have no hatching; these primitives over d3's scales draw
 // the pair of signed bars and the pattern, and leave the text to the page, where it wraps and is read aloud.
-import { PatternLines } from '@visx/pattern'
 import { scaleLinear } from '@visx/scale'
 import { Bar } from '@visx/shape'
 import { bandOf, percentText, type Breakdown } from '../sheet'
+import { Hatch } from './drawing'
 import { digitsFor, type Measure } from './measure'
 import { useWidth } from './width'
 
@@ -86,7 +86,6 @@ const useStyles = makeStyles({
     borderBottom: `1px dashed ${tokens.colorNeutralStroke1}`,
   },
   more: { color: tokens.colorBrandForegroundLink, textDecorationLine: 'underline' },
-  defs: { position: 'absolute', width: 0, height: 0 },
   zero: {
     stroke: tokens.colorNeutralStrokeAccessible,
     '@media (forced-colors: active)': { stroke: 'CanvasText' },
@@ -336,16 +335,7 @@ export default function Picture({
   )
   return (
     <div className={classes.picture} ref={element}>
-      <svg className={classes.defs} aria-hidden focusable="false">
-        <PatternLines
-          id={hatch}
-          width={4}
-          height={4}
-          orientation={['diagonal']}
-          strokeWidth={1.5}
-          className={classes.reducing}
-        />
-      </svg>
+      <Hatch id={hatch} className={classes.reducing} />
       <div className={classes.head} aria-hidden>
         <span />
         <span className={classes.key}>

@@ -15,6 +15,7 @@ import {
   type TradesState,
 } from '../sheet'
 import { Choice, Disclosure, PercentEntry, Section, typedPercentText } from './controls'
+import { useDrawingStyles } from './drawing'
 import { Remark } from './headline'
 import { pointsText } from './measure'
 import { NONE } from './positions'
@@ -68,22 +69,6 @@ const useStyles = makeStyles({
     strokeWidth: '1.5px',
     '@media (forced-colors: active)': { fill: 'Canvas', stroke: 'CanvasText' },
   },
-  axis: {
-    fill: tokens.colorNeutralForeground2,
-    fontSize: tokens.fontSizeBase100,
-    fontVariantNumeric: 'tabular-nums',
-    fontFamily: tokens.fontFamilyBase,
-    '@media (forced-colors: active)': { fill: 'CanvasText' },
-  },
-  key: {
-    display: 'flex',
-    flexWrap: 'wrap',
-    columnGap: tokens.spacingHorizontalM,
-    fontSize: tokens.fontSizeBase200,
-    lineHeight: tokens.lineHeightBase200,
-    color: tokens.colorNeutralForeground2,
-  },
-  keyed: { display: 'inline-flex', alignItems: 'center', columnGap: tokens.spacingHorizontalXS },
   unseen: { position: 'absolute', width: '1px', height: '1px', overflow: 'hidden', clipPath: 'inset(50%)' },
   choose: {
     border: 'none',
@@ -145,7 +130,7 @@ const KEYS: readonly (readonly [SizingMark['kind'], string])[] = [
 
 /** What the shapes are, of those that are drawn. */
 function Key({ marks }: { marks: readonly SizingMark[] }) {
-  const classes = useStyles()
+  const classes = { ...useDrawingStyles(), ...useStyles() }
   return (
     <div className={classes.key} aria-hidden>
       {KEYS.filter(([kind]) => marks.some((mark) => mark.kind === kind && mark.shown)).map(([kind, text]) => {
@@ -199,7 +184,7 @@ function Curve({
   weight: number
   choose: (weight: number) => void
 }) {
-  const classes = useStyles()
+  const classes = { ...useDrawingStyles(), ...useStyles() }
   const id = useId()
   const { element, width } = useWidth<HTMLDivElement>()
   const { curve, marks, name } = sizing
