@@ -242,6 +242,7 @@ export class Trades {
   take(what: Proposal, weights: ReadonlyMap<string, number>, ground: TradeGround, asked: Listed): void {
     if (what.met || weights.size > 0) this.discard(asked)
     this.#proposal = { what, ground, weights: new Map(weights), count: weights.size }
+    this.#known = null
   }
 
   /** What is in the list now, for `discard` to tell it from what is typed later. */

@@ -3,7 +3,7 @@
  * loop, from numbers made here for these tests alone.
  */
 import type { Books, CellValue, Comparison, Settings, TradesState } from '../../../src/sheet'
-import { openBooks } from '../../../src/sheet'
+import { openBooks, steppingCalculator } from '../../../src/sheet'
 import { plainWorkbook } from './plain-workbook'
 
 const NAMES = ['Meadow', 'Orchard', 'Mill', 'Quarry', 'Ferry']
@@ -749,6 +749,32 @@ describe('A table of limits', () => {
 })
 
 describe('Looking for weights', () => {
+  test('that finds nothing says so and leaves what is typed', async () => {
+    const { books, line, trades, after } = await desk()
+    line('Meadow', '30%')
+    expect(trades().proposal).toBeNull()
+    await books.propose({ kind: 'least variance', lower: 0, upper: 0.1 })
+    expect(trades().proposal?.met).toBe(false)
+    expect(trades().proposal?.sentence).toMatch(/^No weights within these bounds/)
+    expect(trades().lines[0]?.typed?.text).toBe('30%')
+    expect(after()[0]).toBe(0.3)
+  })
+
+  test('keeps what is typed while the search runs', async () => {
+    const { books, line, trades } = await desk()
+    line('Mill', '15%')
+    const run = steppingCalculator.run.bind(steppingCalculator)
+    const searching = jest.spyOn(steppingCalculator, 'run').mockImplementationOnce((...job) => {
+      line('Quarry', '12%')
+      return run(...job)
+    })
+    await books.propose({ kind: 'risk budgets', by: 'holding' })
+    expect(searching).toHaveBeenCalled()
+    searching.mockRestore()
+    expect(trades().proposal?.met).toBe(true)
+    expect(trades().lines.map(({ typed }) => typed?.text ?? null)).toEqual([null, null, null, '12%'])
+  })
+
   test('of a volatility finds the size of the book that has it', async () => {
     const { books, after, comparison } = await desk()
     await books.propose({ kind: 'volatility', volatility: 0.05 })
