@@ -3,6 +3,7 @@ import {
   addressOf,
   cellOf,
   countOf,
+  isFormula,
   overlap,
   quote,
   type Area,
@@ -204,8 +205,6 @@ function typedOf(value: CellValue): CellValue {
   if (typeof value !== 'string' || isFormula(value)) return value
   return typedText(value.startsWith("'") ? value.slice(1) : value)
 }
-
-const isFormula = (text: string): boolean => text.length > 1 && text.startsWith('=')
 
 /** What a journal keeps of a run. */
 export const groundOf = ({ area, entries, survey }: SurveyedRun): Ground => ({

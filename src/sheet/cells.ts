@@ -38,6 +38,10 @@ const CELL_ERRORS = new Set([
 export const isBlank = (value: CellValue | null | undefined): boolean =>
   value === null || value === undefined || (typeof value === 'string' && value.trim() === '')
 
+/** Whether what was typed in a cell is a formula. */
+export const isFormula = (typed: CellValue | null | undefined): typed is string =>
+  typeof typed === 'string' && typed.startsWith('=') && typed.length > 1
+
 export const isCellError = (value: CellValue | null | undefined): boolean =>
   typeof value === 'string' && CELL_ERRORS.has(value)
 

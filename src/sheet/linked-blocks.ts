@@ -1,7 +1,7 @@
 import { Fault } from '../core'
 import type { Work } from './calculator'
-import type { Area, Block, CellValue, Culture } from './cells'
-import { addressOf, isBlank, overlap, sameArea } from './cells'
+import type { Area, Block, Culture } from './cells'
+import { addressOf, isBlank, isFormula, overlap, sameArea } from './cells'
 import { PlacedFault } from './findings'
 import type { HoldingsReading } from './holdings'
 import { readHoldings } from './holdings'
@@ -317,9 +317,6 @@ export class LinkedBlocks {
     else if (factors) await this.readSeries('factors', seen.factors.area, settings, work)
   }
 }
-
-const isFormula = (value: CellValue): boolean =>
-  typeof value === 'string' && value.startsWith('=') && value.length > 1
 
 const hasFormula = (seen: Seen | null): boolean =>
   seen?.formulas?.some((cells) => cells.some(isFormula)) ?? false

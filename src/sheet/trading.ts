@@ -6,7 +6,7 @@ import type { Breakdown } from './breakdown'
 import type { Calculator, Work } from './calculator'
 import { unheldSeries, withCandidates } from './candidates'
 import type { Area, CellValue, Culture } from './cells'
-import { addressOf, sameArea } from './cells'
+import { addressOf, isFormula, sameArea } from './cells'
 import { plainName } from './names'
 import type { ProfileBasis } from './profile'
 import { profileBasis } from './profile'
@@ -143,7 +143,7 @@ export class Trading {
           : null,
       formulaOf: (cell) => {
         const text = this.#typedIn(cell)
-        return typeof text === 'string' && text.startsWith('=') && text.length > 1 ? text : null
+        return isFormula(text) ? text : null
       },
       candidates: unheldSeries(blocks),
       notes: blocks === own ? [] : this.#ofCandidates(basis, positions, book),
