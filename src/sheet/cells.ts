@@ -39,7 +39,7 @@ export const isBlank = (value: CellValue | null | undefined): boolean =>
   value === null || value === undefined || (typeof value === 'string' && value.trim() === '')
 
 /** Whether what was typed in a cell is a formula. */
-export const isFormula = (typed: CellValue | null | undefined): typed is string =>
+export const isFormula = (typed: CellValue | null | undefined): boolean =>
   typeof typed === 'string' && typed.startsWith('=') && typed.length > 1
 
 export const isCellError = (value: CellValue | null | undefined): boolean =>

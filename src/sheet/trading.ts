@@ -143,7 +143,7 @@ export class Trading {
           : null,
       formulaOf: (cell) => {
         const text = this.#typedIn(cell)
-        return isFormula(text) ? text : null
+        return isFormula(text) ? String(text) : null
       },
       candidates: unheldSeries(blocks),
       notes: blocks === own ? [] : this.#ofCandidates(basis, positions, book),
