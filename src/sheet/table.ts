@@ -8,7 +8,10 @@ export type Mark = 'title' | 'section' | 'head' | 'total' | 'note' | 'alert' | '
 
 /** One cell to be written. Text always goes in as text, whatever it begins with. */
 export interface TableCell {
+  /** of a formula: the last value known, or '' */
   readonly value: CellValue
+  /** written in place of the value: en-US notation from the equals sign on, references in A1 style to where they lie for good */
+  readonly formula?: string
   /** number format in the en-US notation; text cells carry '@' */
   readonly format: string
   readonly mark?: Mark
@@ -28,6 +31,14 @@ export const textCell = (value: string, mark?: Mark): TableCell => ({
 /** A cell of a number; blank where there is none. */
 export const numberCell = (value: number | null | undefined, format: string, mark?: Mark): TableCell => ({
   value: value === null || value === undefined || !Number.isFinite(value) ? '' : value,
+  format,
+  ...(mark ? { mark } : {}),
+})
+
+/** A cell of a formula. */
+export const formulaCell = (formula: string, format: string, mark?: Mark): TableCell => ({
+  value: '',
+  formula,
   format,
   ...(mark ? { mark } : {}),
 })
@@ -61,6 +72,50 @@ export interface TableBars {
   readonly full: number
 }
 
+/** Some cells of a table, counted from 0 within it. */
+export interface Span {
+  readonly row: number
+  readonly column: number
+  readonly rows: number
+  readonly columns: number
+}
+
+/** One row of values in a chart: a part of one column or one row of the table. */
+export interface ChartSeries {
+  readonly name: string
+  readonly values: Span
+  /** what lies under the parts of a waterfall: takes up room and is not drawn */
+  readonly unseen?: boolean
+}
+
+/** A chart of the host's own that lies over cells of a table and draws figures of it. */
+export interface TableChart {
+  /** 'bars' lie across, first category on top; stacked columns stand on one another */
+  readonly kind: 'bars' | 'columns' | 'stacked columns' | 'line'
+  readonly title: string
+  /** what it shows, as a sentence, for whoever does not see it */
+  readonly alt: string
+  readonly over: Span
+  /** as many cells as each series has */
+  readonly categories: Span
+  readonly series: readonly ChartSeries[]
+  /** of the axis of values */
+  readonly format: string
+}
+
+/** How the sheet of a table is printed; the table's cells are the print area. Texts are plain: a host's codes are made from them. */
+export interface PageSetup {
+  readonly paper: 'A4' | 'Letter'
+  readonly orientation: 'portrait' | 'landscape'
+  /** all of it on one page; otherwise one page wide and as long as it gets */
+  readonly onePage: boolean
+  /** rows at the top that every page repeats */
+  readonly repeatedRows?: number
+  readonly header: { readonly left: string; readonly right: string }
+  /** stands left; the number of the page and of pages stands right */
+  readonly footer: string
+}
+
 /** A rectangle of cells as plain data: what is written to a sheet, shown in the pane or copied. */
 export interface Table {
   /** rows of equal length */
@@ -74,4 +129,7 @@ export interface Table {
   /** how far each row is folded under those before it, 0 outermost; absent where nothing folds */
   readonly levels?: readonly number[]
   readonly bars?: readonly TableBars[]
+  readonly charts?: readonly TableChart[]
+  /** for a table that has its sheet to itself */
+  readonly page?: PageSetup
 }

@@ -75,6 +75,8 @@ export interface CellEntry {
 export interface WritePlan {
   /** a new sheet to make first, when no sheet has that name */
   readonly sheet?: string
+  /** whether that new sheet is kept out of sight, also from the list of hidden sheets */
+  readonly outOfSight?: boolean
   readonly patches: readonly Patch[]
   /**
    * cells of the user's own, in any order and on any sheets. They are looked at first, and refused with the Fault "changed" when one of
