@@ -10,6 +10,8 @@ export interface Snapshot extends SnapshotHead {
   readonly groupHeaders: readonly string[]
   /** a holding's labels, one a group column */
   readonly groups: readonly (readonly string[])[]
+  /** a holding's label of its currency, '' where it has none; absent where nobody kept it */
+  readonly currencies?: readonly string[]
   readonly weights: Float64Array
   /** volatility of one unit of each holding, scaled as the result is; 0 for a riskless one */
   readonly volatilities: Float64Array
@@ -21,6 +23,8 @@ export interface Snapshot extends SnapshotHead {
   /** 1 where figures are per period */
   readonly periodsPerYear: number
   readonly dates: Breakdown['dates']
+  /** last date of the block of returns then, whether it was used or not; null where it has no dates, absent where nobody kept it */
+  readonly readTo?: number | null
   readonly settings: Settings
   /** the same as printed */
   readonly settingLines: Breakdown['settings']
@@ -28,9 +32,9 @@ export interface Snapshot extends SnapshotHead {
   readonly returnsHash: string
 }
 
-/** What a list of kept results says of one. */
+/** What a list of kept results says of each. */
 export interface SnapshotHead {
-  /** numbered as they are kept; never used twice in a workbook */
+  /** numbered as they are kept; never used twice for a book */
   readonly id: string
   /** of the book, then */
   readonly title: string
