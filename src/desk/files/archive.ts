@@ -31,8 +31,10 @@ const WORKBOOK = 'xl/workbook.xml'
 const RELATIONS = 'xl/_rels/workbook.xml.rels'
 const CONTENT_TYPES = '[Content_Types].xml'
 const METADATA = 'xl/metadata.xml'
+/** What every part begins with. */
+export const XML = '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n'
 const SPILLING =
-  '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n' +
+  XML +
   '<metadata xmlns="http://schemas.openxmlformats.org/spreadsheetml/2006/main" ' +
   'xmlns:xda="http://schemas.microsoft.com/office/spreadsheetml/2017/dynamicarray">' +
   '<metadataTypes count="1"><metadataType name="XLDAPR" minSupportedVersion="120000" copy="1" pasteAll="1" pasteValues="1" merge="1" ' +
@@ -84,7 +86,7 @@ function attributesIn(xml: string): (name: string) => string | undefined {
 }
 
 /** The part of each sheet, by its name. */
-function sheetPaths(parts: Parts): Map<string, string> {
+export function sheetPaths(parts: Parts): Map<string, string> {
   const targets = relationsIn(textOf(parts, RELATIONS))
   const sheets = textOf(parts, WORKBOOK).matchAll(/<sheet\b([^>]*)>/g)
   return new Map(
@@ -106,6 +108,14 @@ const relationsIn = (xml: string): Map<string, string> =>
       return [attribute('Id') ?? '', attribute('Target') ?? '']
     }),
   )
+
+/** The parts that a part refers to, by id. */
+export function partsBehind(parts: Parts, path: string): Map<string, string> {
+  const targets = relationsIn(textOf(parts, relationsOf(path)))
+  return new Map(
+    [...targets].map(([id, target]) => [id, new URL(target, `file:///${path}`).pathname.slice(1)]),
+  )
+}
 
 /** The id of a relationship, whatever prefix its namespace has. */
 const relationId = (attributes: string): string | undefined => /\s\w+:id="([^"]*)"/.exec(attributes)?.[1]
@@ -140,9 +150,21 @@ export function takeLinks(parts: Parts): Map<string, StoredLink[]> {
   return links
 }
 
-/** What comes after links in a sheet. */
-const BEHIND_LINKS =
-  /<(?:printOptions|pageMargins|pageSetup|headerFooter|rowBreaks|colBreaks|drawing|picture|legacyDrawing|mc:AlternateContent|tableParts|extLst)\b|<\/worksheet>/
+/** What comes after cells in a sheet, from links on; 18.3.1.99. */
+const ORDER =
+  'hyperlinks printOptions pageMargins pageSetup headerFooter rowBreaks colBreaks customProperties cellWatches ignoredErrors smartTags drawing legacyDrawing legacyDrawingHF drawingHF picture oleObjects controls webPublishItems mc:AlternateContent tableParts extLst'.split(
+    ' ',
+  )
+
+/** Puts an element into a sheet, where the format wants it. */
+export function putIntoSheet(parts: Parts, path: string, name: string, xml: string): void {
+  const sheet = textOf(parts, path)
+  const behind = ORDER.slice(ORDER.indexOf(name) + 1)
+  const end = Math.max(sheet.indexOf('</sheetData>'), sheet.indexOf('<sheetData/>'))
+  const next = new RegExp(`<(?:${behind.join('|')})\\b|</worksheet>`).exec(sheet.slice(end))
+  const before = end + (next?.index ?? 0)
+  parts[path] = new TextEncoder().encode(sheet.slice(0, before) + xml + sheet.slice(before))
+}
 
 /** Puts links behind the cells of sheets, by name. */
 export function putLinks(parts: Parts, links: ReadonlyMap<string, readonly StoredLink[]>): void {
@@ -161,26 +183,48 @@ export function putLinks(parts: Parts, links: ReadonlyMap<string, readonly Store
       ]
       return `<hyperlink ${attributes.join(' ')}/>`
     })
-    const cells = textOf(parts, path)
-    const end = Math.max(cells.indexOf('</sheetData>'), cells.indexOf('<sheetData/>'))
-    const before = end + (BEHIND_LINKS.exec(cells.slice(end))?.index ?? 0)
-    const xml = `${cells.slice(0, before)}<hyperlinks>${entries.join('')}</hyperlinks>${cells.slice(before)}`
-    parts[path] = new TextEncoder().encode(xml)
-    if (outside.length > 0) putRelations(parts, relationsOf(path), outside)
+    putIntoSheet(parts, path, 'hyperlinks', `<hyperlinks>${entries.join('')}</hyperlinks>`)
+    relate(
+      parts,
+      path,
+      outside.map((target, k) => ({ id: `rIdLink${k + 1}`, type: 'hyperlink', target, outside: true })),
+    )
   }
 }
 
-function putRelations(parts: Parts, path: string, targets: readonly string[]): void {
-  const type = 'http://schemas.openxmlformats.org/officeDocument/2006/relationships/hyperlink'
-  parts[path] ??= new TextEncoder().encode(
-    '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n' +
-      '<Relationships xmlns="http://schemas.openxmlformats.org/package/2006/relationships"></Relationships>',
+/** What a part refers to: the type by the last word of its name. */
+export interface Relation {
+  readonly id: string
+  readonly type: string
+  readonly target: string
+  /** out of the package */
+  readonly outside?: boolean
+}
+
+/** Adds what a part refers to. */
+export function relate(parts: Parts, path: string, relations: readonly Relation[]): void {
+  if (relations.length === 0) return
+  const types = 'http://schemas.openxmlformats.org/officeDocument/2006/relationships'
+  const where = relationsOf(path)
+  parts[where] ??= new TextEncoder().encode(
+    `${XML}<Relationships xmlns="http://schemas.openxmlformats.org/package/2006/relationships"></Relationships>`,
   )
-  const entries = targets.map(
-    (target, k) =>
-      `<Relationship Id="rIdLink${k + 1}" Type="${type}" Target="${marked(target)}" TargetMode="External"/>`,
+  const entries = relations.map(
+    ({ id, type, target, outside }) =>
+      `<Relationship Id="${id}" Type="${types}/${type}" Target="${marked(target)}"${outside ? ' TargetMode="External"' : ''}/>`,
   )
-  replace(parts, path, '</Relationships>', `${entries.join('')}</Relationships>`)
+  replace(parts, where, '</Relationships>', `${entries.join('')}</Relationships>`)
+}
+
+/** Adds a part of the package, with its type. */
+export function addPart(parts: Parts, path: string, xml: string, type: string): void {
+  parts[path] = new TextEncoder().encode(xml)
+  replace(
+    parts,
+    CONTENT_TYPES,
+    '</Types>',
+    `<Override PartName="/${path}" ContentType="application/vnd.openxmlformats-officedocument.${type}+xml"/></Types>`,
+  )
 }
 
 export function putNames(parts: Parts, names: readonly StoredName[]): void {
@@ -208,21 +252,8 @@ export function markSpilling(parts: Parts): void {
     parts[path] = new TextEncoder().encode(after)
   }
   if (!found) return
-  parts[METADATA] = new TextEncoder().encode(SPILLING)
-  const type = 'application/vnd.openxmlformats-officedocument.spreadsheetml.sheetMetadata+xml'
-  replace(
-    parts,
-    CONTENT_TYPES,
-    '</Types>',
-    `<Override PartName="/${METADATA}" ContentType="${type}"/></Types>`,
-  )
-  const relation = 'http://schemas.openxmlformats.org/officeDocument/2006/relationships/sheetMetadata'
-  replace(
-    parts,
-    RELATIONS,
-    '</Relationships>',
-    `<Relationship Id="rIdSpilling" Type="${relation}" Target="metadata.xml"/></Relationships>`,
-  )
+  addPart(parts, METADATA, SPILLING, 'spreadsheetml.sheetMetadata')
+  relate(parts, WORKBOOK, [{ id: 'rIdSpilling', type: 'sheetMetadata', target: 'metadata.xml' }])
 }
 
 function replace(parts: Parts, path: string, from: string, to: string): void {
@@ -240,5 +271,6 @@ const plain = (xml: string): string =>
     )
     .replace(/&(?:lt|gt|quot|apos|amp);/g, (entity) => ENTITIES[entity as keyof typeof ENTITIES])
 
-const marked = (text: string): string =>
+/** A text as it stands in XML. */
+export const marked = (text: string): string =>
   Object.entries(ENTITIES).reduceRight((xml, [entity, char]) => xml.replaceAll(char, entity), text)

@@ -1,4 +1,5 @@
 /** What reading and writing a file must agree on. */
+import { numberToABC, type IRange } from '@univerjs/core'
 
 /** Settings travel in a sheet, since the file library keeps a very hidden one and drops a web extension's own part. */
 export const SETTINGS_SHEET = 'Counterpoise settings'
@@ -17,3 +18,24 @@ export const widthOf = (pixels: number): number => (pixels - PADDING) / DIGIT
 
 /** The add-in's settings, as the stand-in for the Office JavaScript API keeps them: JSON values. */
 export type Settings = Map<string, unknown>
+
+/** An address without a sheet; signs of what is fixed are passed over. */
+export function rangeOf(address: string): IRange {
+  const [first = [0, 0], last = first] = address
+    .replaceAll('$', '')
+    .split(':')
+    .map((corner): [number, number] => {
+      const [, letters = '', digits = ''] = /^([A-Z]+)(\d+)$/.exec(corner) ?? []
+      return [
+        Number(digits) - 1,
+        [...letters].reduce((column, letter) => column * 26 + letter.charCodeAt(0) - 64, 0) - 1,
+      ]
+    })
+  return { startRow: first[0], startColumn: first[1], endRow: last[0], endColumn: last[1] }
+}
+
+export function addressOf({ startRow, endRow, startColumn, endColumn }: IRange): string {
+  const corner = (row: number, column: number): string => `${numberToABC(column)}${row + 1}`
+  const first = corner(startRow, startColumn)
+  return startRow === endRow && startColumn === endColumn ? first : `${first}:${corner(endRow, endColumn)}`
+}

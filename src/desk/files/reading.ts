@@ -18,7 +18,15 @@ import { namesIn, takeLinks, textOf, unpack, type Parts, type StoredLink } from 
 import { gridStyle, paletteOf, type Palette } from './cell-style'
 import { barLooksIn, gridBar, type BarLooks } from './data-bars'
 import { shownFormula } from './formula-text'
-import { DEFAULT_HEIGHT, DEFAULT_WIDTH, PIXELS, SETTINGS_SHEET, pixelsOf, type Settings } from './measures'
+import {
+  DEFAULT_HEIGHT,
+  DEFAULT_WIDTH,
+  PIXELS,
+  SETTINGS_SHEET,
+  pixelsOf,
+  rangeOf,
+  type Settings,
+} from './measures'
 
 export interface Opened {
   readonly data: IWorkbookData & { readonly sheetOrder: string[] }
@@ -331,18 +339,4 @@ function settingsIn(sheet: Worksheet | undefined, losses: Losses): Settings {
     }
   })
   return settings
-}
-
-function rangeOf(address: string): IRange {
-  const [first = [0, 0], last = first] = address
-    .replaceAll('$', '')
-    .split(':')
-    .map((corner): [number, number] => {
-      const [, letters = '', digits = ''] = /^([A-Z]+)(\d+)$/.exec(corner) ?? []
-      return [
-        Number(digits) - 1,
-        [...letters].reduce((column, letter) => column * 26 + letter.charCodeAt(0) - 64, 0) - 1,
-      ]
-    })
-  return { startRow: first[0], startColumn: first[1], endRow: last[0], endColumn: last[1] }
 }

@@ -9,7 +9,6 @@ import {
 import {
   BooleanNumber,
   CellValueType,
-  numberToABC,
   type ICellData,
   type IRange,
   type IWorksheetData,
@@ -33,6 +32,7 @@ import {
   DEFAULT_WIDTH,
   PIXELS,
   SETTINGS_SHEET,
+  addressOf,
   widthOf,
   type Settings,
 } from './measures'
@@ -320,9 +320,3 @@ const at = (row: number, column: number): IRange => ({
   startColumn: column,
   endColumn: column,
 })
-
-function addressOf({ startRow, endRow, startColumn, endColumn }: IRange): string {
-  const corner = (row: number, column: number): string => `${numberToABC(column)}${row + 1}`
-  const first = corner(startRow, startColumn)
-  return startRow === endRow && startColumn === endColumn ? first : `${first}:${corner(endRow, endColumn)}`
-}
