@@ -1,5 +1,7 @@
 const { generateCustomFunctionsMetadata } = require('custom-functions-metadata')
 const { Compilation, sources, WebpackError } = require('webpack')
+const { version } = require('../../package.json')
+const { helpPage } = require('./help-page.cjs')
 
 /** Names that a cell would read as a reference: A1 to XFD1048576, and the R1C1 forms. */
 const reference = /^([A-Z]{1,3}[0-9]+|R[0-9]*(C[0-9]*)?|C[0-9]*)$/
@@ -20,50 +22,6 @@ function objections({ id, name, description, helpUrl, parameters }) {
     if (!parameter.description) found.push(`@param ${parameter.name} is missing`)
   }
   return found.map((sentence) => `${id}: ${sentence}`)
-}
-
-const escape = (text) =>
-  text.replace(/[&<>"]/g, (sign) => ({ '&': '&amp;', '<': '&lt;', '>': '&gt;', '"': '&quot;' })[sign])
-
-/** The page that each function's help address points into. */
-function helpPage(functions, namespace) {
-  const entries = functions.map(({ id, description, helpUrl, parameters }) => {
-    const names = parameters.map(({ name, optional }) => (optional ? `[${name}]` : name)).join(', ')
-    const rows = parameters.map(
-      (parameter) => `<dt>${parameter.name}</dt><dd>${escape(parameter.description)}</dd>`,
-    )
-    return `<section id="${new URL(helpUrl).hash.slice(1)}">
-<h2>${namespace}.${id}(${names})</h2>
-<p>${escape(description)}</p>
-<dl>
-${rows.join('\n')}
-</dl>
-</section>`
-  })
-  return `<!doctype html>
-<html lang="en">
-<head>
-<meta charset="utf-8" />
-<meta name="viewport" content="width=device-width, initial-scale=1" />
-<meta http-equiv="Content-Security-Policy" content="default-src 'none'; style-src 'unsafe-inline'" />
-<title>Counterpoise: worksheet functions</title>
-<style>
-:root { color-scheme: light dark; font: 1rem/1.5 system-ui, sans-serif; }
-body { max-width: 46rem; margin: 2rem auto; padding: 0 1rem; }
-h2 { font: 600 1rem/1.5 ui-monospace, monospace; overflow-wrap: anywhere; margin-top: 2rem; }
-dt { font-family: ui-monospace, monospace; }
-dd { margin: 0 0 0.5rem 1.5rem; }
-</style>
-</head>
-<body>
-<h1>Worksheet functions</h1>
-<p>Every figure is an estimate from the numbers given, not advice. Local rules and licensed practice come first. Arguments in square
-brackets may be left out. Results are fractions: 0.12 is 12 %. A wrong argument gives #VALUE!, a figure that does not exist #N/A; the
-cell's error card names the argument, the row and the column.</p>
-${entries.join('\n')}
-</body>
-</html>
-`
 }
 
 /**
@@ -103,7 +61,11 @@ class FunctionsMetadata {
         try {
           const description = this.moved(await describeFunctions(this.source))
           compilation.emitAsset('functions.json', new sources.RawSource(description))
-          const page = helpPage(JSON.parse(description).functions, this.namespace)
+          const page = helpPage(JSON.parse(description).functions, {
+            file: this.source,
+            namespace: this.namespace,
+            version,
+          })
           compilation.emitAsset('help.html', new sources.RawSource(page))
         } catch (error) {
           compilation.errors.push(new WebpackError(error.message))

@@ -191,6 +191,8 @@ const rowsOf = (values: Float64Array, columns: number): number[][] =>
  * @param prices Prices above 0: one row a date, newest last, one column a position; names and dates may come along
  * @param kind "simple" (the default) or "log"
  * @returns (T-1) x n returns as fractions, oldest first, without names and dates
+ * @formula simple: r_t = P_t / P_{t-1} - 1
+ * @formula log: r_t = ln(P_t / P_{t-1})
  * @remarks A first row of names and a first column of dates are left out of the result; dated rows are put in order, oldest first.
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "out-of-range" | "twice" | "too-few" | "unknown-choice"
  * @source common practice, no source
@@ -212,6 +214,7 @@ export function returns(prices: unknown[][], kind?: unknown): number[][] {
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n x n covariances
+ * @formula C_{ij} = h sum_t z_{ti} z_{tj} / (T - 1), h the periods per year
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "unknown-choice" | "out-of-range"
  * @source sample: NIST/SEMATECH e-Handbook of Statistical Methods, section 6.5.4.1 (from memory); exponential: J.P. Morgan/Reuters,
  *         Technical Document, 4th ed. (1996), chapter 5 (from memory), here with the weighted mean taken off
@@ -241,6 +244,7 @@ export function covarianceMatrix(
  * @param returns Returns as fractions: one row a period, newest last, one column a position; names and dates may come along
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n x n correlations; blank in the row and column of a position that never moves
+ * @formula C_{ij} / sqrt(C_{ii} C_{jj})
  * @throws Fault as COVARIANCE
  * @source Pearson correlation: NIST/SEMATECH e-Handbook of Statistical Methods (from memory)
  * @cost O(T n^2)
@@ -269,7 +273,7 @@ const orBlank = (value: number): number | string => (Number.isNaN(value) ? '' : 
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns Volatility as a fraction
- * @remarks s = sqrt(w'C w)
+ * @formula s = sqrt(w' C w)
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "not-symmetric" |
  *         "correlation-matrix" | "negative-variance" | "unknown-choice" | "out-of-range"
  * @source Markowitz (1952), Portfolio Selection, Journal of Finance 7(1), 77-91 (from memory)
@@ -295,7 +299,7 @@ export function volatility(
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n volatilities as fractions
- * @remarks |w_i| sqrt(C_ii)
+ * @formula |w_i| sqrt(C_{ii})
  * @throws Fault as VOLATILITY
  * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
  * @cost as VOLATILITY
@@ -321,7 +325,7 @@ export function standalone(
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions of volatility per unit of weight
- * @remarks (C w)_i / s
+ * @formula (C w)_i / s
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
  * @cost as VOLATILITY
@@ -347,7 +351,7 @@ export function marginal(
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions; 0 throughout where the portfolio has no risk
- * @remarks w_i (C w)_i / s
+ * @formula c_i = w_i (C w)_i / s
  * @throws Fault as VOLATILITY
  * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
  * @cost as VOLATILITY
@@ -372,7 +376,7 @@ export function contribution(
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions; negative for a position that reduces risk
- * @remarks w_i (C w)_i / s^2
+ * @formula p_i = w_i (C w)_i / s^2
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Qian (2006), On the Financial Interpretation of Risk Contribution, Journal of Investment Management 4(4) (from memory)
  * @cost as VOLATILITY
@@ -392,10 +396,10 @@ export function riskshare(weights: unknown[][], risk: unknown[][], estimator?: u
  * @param returns Returns as fractions: one row a period, newest last, one column a weight; names and dates may come along
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n fractions; 0 for the share of an only position
- * @remarks From how far each date moves the share, u_t = (w_i z_ti y_t - p_i y_t^2) / v: sqrt(sum of omega_t^2 u_t^2), z and y the returns of
- * position and portfolio less their means, omega the weights of the dates, v the variance, p the share. No normal distribution is assumed. Dates
- * count as independent; "lagged" takes neighbouring dates together. With shrinkage it is the error of the shares before shrinkage. An
- * estimate that runs small where dates are few.
+ * @formula sqrt(sum_t omega_t^2 u_t^2), where u_t = (w_i z_{ti} y_t - p_i y_t^2) / v
+ * @remarks u is how far a date moves the share; y is the return of the portfolio less its mean, v the mean of its square. No normal distribution
+ * is assumed. Dates count as independent; "lagged" takes neighbouring dates together. With shrinkage it is the error of the shares before
+ * shrinkage. An estimate that runs small where dates are few.
  * @throws Fault as VOLATILITY | "zero-risk" | "shape" (a covariance matrix)
  * @source White (1980), A Heteroskedasticity-Consistent Covariance Matrix Estimator, Econometrica 48(4), 817-838; "lagged": Newey & West (1987),
  *         Econometrica 55(3), 703-708 (both from memory)
@@ -419,7 +423,7 @@ export function riskshareerror(weights: unknown[][], returns: unknown[][], estim
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n betas
- * @remarks (C w)_i / s^2
+ * @formula beta_i = (C w)_i / s^2
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Maillard, Roncalli & Teiletche (2010), The Properties of Equally Weighted Risk Contribution Portfolios, JPM 36(4)
  * @cost as VOLATILITY
@@ -439,7 +443,7 @@ export function beta(weights: unknown[][], risk: unknown[][], estimator?: unknow
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns One number, at least 1
- * @remarks sum of |w_i| sqrt(C_ii) / s
+ * @formula sum_i |w_i| sqrt(C_{ii}) / s
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Choueifaty & Coignard (2008), Toward Maximum Diversification, JPM 35(1) (from memory); here with absolute weights
  * @cost as VOLATILITY
@@ -458,7 +462,7 @@ export function diversification(weights: unknown[][], risk: unknown[][], estimat
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns One number; below 1 where large shares of risk offset each other
- * @remarks 1 / sum of squared shares of risk
+ * @formula 1 / sum_i p_i^2
  * @throws Fault as VOLATILITY | "zero-risk"
  * @source Herfindahl index of the shares, after Meucci (2009), Managing Diversification, Risk 22(5), 74-79 (from memory)
  * @cost as VOLATILITY
@@ -477,8 +481,9 @@ export function effective(weights: unknown[][], risk: unknown[][], estimator?: u
  * @param risk Returns (one row a period, newest last, one column a weight) or a covariance matrix
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n weights as fractions; negative where a short position would give the least risk; blank for a position that never moves
- * @remarks w_i - (C w)_i / C_ii, each on its own, with cash taking up the difference. An estimate from the numbers given, and no advice: moved all at
- * once, positions end elsewhere.
+ * @formula w_i - (C w)_i / C_{ii}
+ * @remarks Each on its own, with cash taking up the difference. An estimate from the numbers given, and no advice: moved all at once, positions
+ * end elsewhere.
  * @throws Fault as VOLATILITY | "zero-risk" (none of the positions moves)
  * @source Litterman (1996), Hot Spots and Hedges, JPM special issue, 52-75 (from memory)
  * @cost as VOLATILITY
@@ -505,7 +510,8 @@ export function leastriskweight(weights: unknown[][], risk: unknown[][], estimat
  * @param budgets Shares of risk as fractions that add up to 1: one row or one column; equal ones where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n weights as fractions, lying as budgets do, else one column
- * @remarks w_i (C w)_i / s^2 = b_i to 1e-10; a budget of 0 gives a weight of 0. #N/A where no weights are found, as when some long-only mix has no
+ * @formula w_i (C w)_i / s^2 = b_i, with w_i >= 0 and sum_i w_i = 1
+ * @remarks Budgets b are met to 1e-10; a budget of 0 gives a weight of 0. #N/A where no weights are found, as when some long-only mix has no
  * risk at all. An estimate from the numbers given, and no advice.
  * @throws Fault "blank" | "text" | "not-a-number" | "shape" | "twice" | "too-few" | "missing-data" | "not-symmetric" | "correlation-matrix" |
  *         "negative-variance" | "unknown-choice" | "out-of-range" (budgets) | "zero-risk" (a position that never moves; none found)
@@ -573,6 +579,12 @@ const UNDEFINED = 'not defined'
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns (n+2) x 8: headings, one row a position, total
+ * @formula stand-alone risk: |w_i| sqrt(C_{ii})
+ * @formula marginal contribution: (C w)_i / s
+ * @formula contribution: c_i = w_i (C w)_i / s
+ * @formula share of risk: p_i = c_i / s
+ * @formula beta: (C w)_i / s^2
+ * @formula correlation: (C w)_i / (s sqrt(C_{ii}))
  * @remarks Names find their columns by the first row of risk where it has one (case and spacing do not count; columns that are not held may be
  * there), else by place. The total of the stand-alone column is the sum before diversification, that of the contributions the
  * volatility of the portfolio. A correlation with a position that never moves is blank.
@@ -627,6 +639,10 @@ export function breakdown(
  * @param periods_per_year Periods in a year to scale to, such as 252 or 52; 1 where left out
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns (g+2) x 5: headings, one row a group, total
+ * @formula weight: w_g = sum_{i in g} w_i
+ * @formula stand-alone risk: sqrt(x' C x), where x_i = w_i within the group and 0 elsewhere
+ * @formula contribution: c_g = sum_{i in g} c_i
+ * @formula share of risk: c_g / s
  * @remarks Groups stand in the order of their first position; case and spacing do not tell groups apart; positions without a group stand
  * together as "Unassigned". A group's stand-alone risk is the volatility of its positions held alone; the total of that column is the
  * sum before diversification between groups, that of the contributions the volatility of the portfolio.
@@ -705,7 +721,12 @@ function ofShortfall<T>(figure: T | null): T {
  * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5", "historical" or "cornish-fisher"
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns A loss as a fraction, positive
- * @remarks "normal", "student" and "cornish-fisher" take the mean as zero and the volatility of the estimator; "historical" applies today's
+ * @formula normal: z s sqrt(h), z the normal quantile of the confidence, h the periods
+ * @formula student: t_v s sqrt(h (v - 2) / v), v the degrees of freedom
+ * @formula historical: the k-th largest loss, k = T (1 - confidence) rounded up
+ * @formula cornish-fisher: s (z - (z^2 - 1) S / 6 + (z^3 - 3 z) K / 24 - (2 z^3 - 5 z) S^2 / 36)
+ * @remarks S and K are the skewness and the excess kurtosis of the portfolio's returns. "normal", "student" and "cornish-fisher" take the mean as zero and
+ * the volatility of the estimator; "historical" applies today's
  * weights to the returns as they were and takes the loss number T (1 - confidence), rounded up, of the T dates: under ten such dates it
  * is a rough figure. "cornish-fisher" is refused where skewness and excess kurtosis lie outside its domain. An estimate from the
  * numbers given, not the largest loss there can be.
@@ -739,6 +760,9 @@ export function valueatrisk(
  * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5" or "historical"
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns A loss as a fraction, positive
+ * @formula normal: s sqrt(h) phi(z) / (1 - confidence), phi the normal density
+ * @formula student: s sqrt(h (v - 2) / v) f_v(t_v) (v + t_v^2) / ((v - 1) (1 - confidence)), f_v the density
+ * @formula historical: the mean of the T (1 - confidence) largest losses
  * @remarks Means and volatility as VALUEATRISK. "historical" is the mean of the worst T (1 - confidence) of T dates, the last of them by the
  * fraction that is left: under ten such dates it is a rough figure.
  * @throws Fault as VALUEATRISK | "unknown-choice" ("cornish-fisher", which gives value at risk alone)
@@ -769,7 +793,9 @@ export function shortfall(
  * @param method "normal" (the default), "student" (degrees of freedom fitted), "student 5" or "historical"
  * @param estimator "sample" (the default), "exponential 0.97", "shrink correlation", "shrink identity", "shrink oas" or "lagged 2"
  * @returns n losses as fractions; negative for a position that gains when the portfolio loses most
- * @remarks "normal" and "student": in proportion to CONTRIBUTION. "historical": the position's own mean loss on the dates that SHORTFALL is the
+ * @formula normal, student: SHORTFALL c_i / s
+ * @formula historical: -w_i times the mean of r_{ti} over the dates that SHORTFALL is the mean of
+ * @remarks "historical": the position's own mean loss on the dates that SHORTFALL is the
  * mean of; dates that tie for the last place share it; under ten such dates the parts are the accident of a few of them.
  * @throws Fault as SHORTFALL
  * @source Tasche (2008), Capital Allocation to Business Units and Sub-Portfolios: the Euler Principle, arXiv:0708.2542
