@@ -14,14 +14,22 @@ import { ROOT } from './workbook'
 export type { Culture, SheetExtras } from './book'
 export {
   barOf,
+  chartsOf,
   levelOf,
   linkOf,
+  pageOf,
   withBar,
+  withDrawn,
   withLevel,
   withLink,
+  type ChartSeries,
+  type Corner,
   type DataBar,
   type Line,
   type Link,
+  type SheetChart,
+  type SheetData,
+  type SheetPage,
 } from './custom-data'
 export type { Theme } from './office'
 export { userOf, type User } from './user'
