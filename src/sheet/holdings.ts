@@ -33,6 +33,19 @@ export interface Holding {
   readonly budget: number | null
   /** the cell of the weight, where faults about this holding point */
   readonly cell: Area
+  /** absent for one that stands in no row of a sheet */
+  readonly cells?: HoldingCells
+}
+
+/** The cells that hold what is known of a holding as it is used; null where that was typed as text, put together, or stands nowhere. */
+export interface HoldingCells {
+  readonly name: Area | null
+  /** the weight, or what is divided by the capital to make one */
+  readonly measure: Area | null
+  readonly amount: Area | null
+  readonly benchmark: Area | null
+  /** one a group column */
+  readonly groups: readonly (Area | null)[]
 }
 
 export interface HoldingsReading {
@@ -315,6 +328,8 @@ export function readHoldings(
     readonly row: number
     readonly name: string
     readonly measure: number
+    /** the column it stands in */
+    readonly measuredIn: number
     readonly amount: number | null
     readonly exposure: number | null
     readonly benchmark: number | null
@@ -399,6 +414,7 @@ export function readHoldings(
       row,
       name: nameColumn < 0 ? `Row ${area.row + row + 1}` : name,
       measure: measure ?? 0,
+      measuredIn: measureColumn === exposureColumn && exposure === null ? amountColumn : measureColumn,
       amount,
       exposure,
       benchmark,
@@ -441,8 +457,12 @@ export function readHoldings(
   const divisor = capital ?? 1
   const label = (row: number, column: number): string =>
     String(filledDown.get(`${row},${column}`) ?? values[row]?.[column] ?? '').trim()
+  const cellThat = (row: number, column: number, fits: (value: CellValue) => boolean): Area | null =>
+    column >= 0 && fits(values[row]?.[column] ?? '') ? at(row, column) : null
+  // a blank counts as 0 to a formula too
+  const isNumber = (value: CellValue): boolean => typeof value === 'number' || value === ''
   const holdings: Holding[] = rows.map(
-    ({ row, name, measure, amount, benchmark, limit, expected, budget }) => ({
+    ({ row, name, measure, measuredIn, amount, benchmark, limit, expected, budget }) => ({
       name,
       weight: measure / divisor,
       amount,
@@ -453,6 +473,13 @@ export function readHoldings(
       expected,
       budget,
       cell: at(row, Math.max(measureColumn, 0)),
+      cells: {
+        name: cellThat(row, nameColumn, (value) => value === name),
+        measure: cellThat(row, measuredIn, isNumber),
+        amount: cellThat(row, amountColumn, isNumber),
+        benchmark: cellThat(row, columnOf('benchmark weight'), isNumber),
+        groups: groupColumns.map((column) => cellThat(row, column, (value) => value === label(row, column))),
+      },
     }),
   )
   const net = holdings.reduce((sum, { weight }) => sum + weight, 0)

@@ -31,6 +31,10 @@ export interface ReturnsReading {
   readonly seriesCell: (series: number) => Area
   /** the cell of a return, or of the later of the two prices it comes from; series -1 is the date's */
   readonly cell: (row: number, series: number) => Area
+  /** the cell of the earlier of the two prices; null where a return stands in one cell */
+  readonly before: (row: number, series: number) => Area | null
+  /** whether formulas find the number there: no gap, and no number typed as text, in either of two prices */
+  readonly isNumber: (row: number, series: number) => boolean
 }
 
 /** Calendar spacing and how many such periods make a year: common practice, no source. */
@@ -412,6 +416,11 @@ export function readReturns(
     columns,
     seriesCell: (i) => view.cell(named ? top : firstRow, series[i] ?? 0),
     cell: (t, i) => view.cell(periods[t + rows - outRows] ?? firstRow, i < 0 ? 0 : (series[i] ?? 0)),
+    before: (t, i) => (outRows < rows ? view.cell(periods[t] ?? firstRow, series[i] ?? 0) : null),
+    isNumber: (t, i) => {
+      const stands = (row: number): boolean => typeof view.at(periods[row] ?? -1, series[i] ?? 0) === 'number'
+      return stands(t + rows - outRows) && (outRows === rows || stands(t))
+    },
   }
 }
 
