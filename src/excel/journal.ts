@@ -1,9 +1,18 @@
-import { overlap, type Area, type CellValue, type Json } from '../sheet'
+import {
+  cellOf,
+  isFormula,
+  overlap,
+  sameArea,
+  sameFormula,
+  type Area,
+  type CellValue,
+  type Json,
+} from '../sheet'
 import { askBars, drawBar, sameBars, type Bar } from './bars'
 import { putLinkBack, targetOf, type LinkedCell, type Target } from './links'
 import { putBack, type Look } from './looks'
 import { FOLD_PREFIX, refold, type Folding } from './outline'
-import { rangeOf } from './reading'
+import { askSpills, rangeOf } from './reading'
 import { REQUEST_BYTES, type Request, type Requests } from './requests'
 
 /** Settings of ours begin so; the journal of a write under way is one of them. */
@@ -83,15 +92,34 @@ export const step = (run: (context: Excel.RequestContext) => void, touches?: Are
   ...(touches && { touches }),
 })
 
-const cellBytes = (value: CellValue | null): number => (typeof value === 'string' ? 4 + 3 * value.length : 20)
+/** Bytes of a text in a request, as JSON in UTF-8. */
+export function bytesOf(text: string): number {
+  let bytes = 2
+  for (let k = 0; k < text.length; k++) {
+    const code = text.charCodeAt(k)
+    bytes += code < 32 ? 6 : code === 34 || code === 92 ? 2 : code < 128 ? 1 : code < 2048 ? 2 : 3
+  }
+  return bytes
+}
 
-/** Cuts rows of cells into slabs that fit a request: [first row, rows, bytes]. */
-export function slabs(cells: readonly (readonly (CellValue | null)[])[]): [number, number, number][] {
+const cellBytes = (value: CellValue | null): number =>
+  typeof value === 'string' ? 2 + bytesOf(value) : value === null ? 5 : 20
+
+/**
+ * Cuts rows of cells into slabs that fit a request: [first row, rows, bytes].
+ * @param formats sent with the cells, where there are some
+ */
+export function slabs(
+  cells: readonly (readonly (CellValue | null)[])[],
+  formats: readonly (readonly (string | null)[])[] = [],
+): [number, number, number][] {
   const found: [number, number, number][] = []
   let from = 0
   let bytes = 0
+  const sizeOf = (row: readonly (CellValue | null)[] = []) =>
+    row.reduce((sum: number, value) => sum + cellBytes(value), 0)
   cells.forEach((row, k) => {
-    const more = row.reduce((sum: number, value) => sum + cellBytes(value), 0)
+    const more = sizeOf(row) + sizeOf(formats[k])
     if (k > from && bytes + more > REQUEST_BYTES / 2) {
       found.push([from, k - from, bytes])
       from = k
@@ -204,6 +232,37 @@ export async function surveyGrounds({ context, sync }: Request, areas: readonly 
   return grounds
 }
 
+/** What stands in some cells with results that formulas among them fill into others as blanks: they come and go with the formula. */
+async function withoutResults(
+  { context, sync }: Request,
+  surveyed: readonly Survey[],
+): Promise<readonly Survey[]> {
+  // only formulas can fill others, and asking is as long as there are cells
+  const asked = surveyed
+    .filter(({ typed }) => typed.some((row) => row.some(isFormula)))
+    .map(({ area, typed }) => ({ area, typed, range: rangeOf(context, area).load('hasSpill') }))
+  if (asked.length === 0) return surveyed
+  await sync()
+  const spilling = asked
+    .filter(({ range }) => range.hasSpill !== false)
+    .map(({ area, typed }) => askSpills(context, area, typed))
+  if (spilling.length === 0) return surveyed
+  await sync()
+  const results = resultsOf(spilling.flatMap((answer) => answer()))
+  return surveyed.map((ground) => ({
+    ...ground,
+    typed: ground.typed.map((row, r) => row.map((entry, c) => (results(ground.area, r, c) ? '' : entry))),
+  }))
+}
+
+/** Whether a cell of an area shows a result of a formula in another cell. */
+export const resultsOf =
+  (spills: readonly { readonly from: Area; readonly over: Area }[]) =>
+  (area: Area, row: number, column: number): boolean => {
+    const cell = cellOf(area, row, column)
+    return spills.some(({ from, over }) => overlap(over, cell) !== null && !sameArea(from, cell))
+  }
+
 /**
  * Puts back what a journal holds: the cells that differ from it, links, looks, groups, widths, names and settings; a sheet the write made goes again,
  * unless something else has come to stand on it. May be done twice. The journal is saved anew at the head of the work and goes with its end,
@@ -238,9 +297,12 @@ export async function restore(
     context,
     journal.bars.areas.filter(({ sheet }) => there.has(sheet)),
   )
-  const now = await surveyGrounds(
+  const now = await withoutResults(
     request,
-    grounds.map(({ area }) => area),
+    await surveyGrounds(
+      request,
+      grounds.map(({ area }) => area),
+    ),
   )
   const bars = await askedBars(sync)
   const barsBefore = journal.bars.before.filter(({ area }) => there.has(area.sheet))
@@ -271,7 +333,7 @@ export async function restore(
   }
 
   const steps: Step[] = [
-    { bytes: JSON.stringify(journal).length, run: () => settings.add(JOURNAL_KEY, journal) },
+    { bytes: bytesOf(JSON.stringify(journal)), run: () => settings.add(JOURNAL_KEY, journal) },
     ...links.map((cell) => ({
       bytes: 600,
       touches: cell.area,
@@ -310,7 +372,9 @@ function userCame(
   careful: boolean,
 ): boolean {
   const found = now?.typed[r]?.[c]
-  if (!careful || found === typed[r]?.[c] || found === (after ? after[r]?.[c] : '')) return false
+  const written = after ? after[r]?.[c] : ''
+  if (!careful || found === typed[r]?.[c] || found === written) return false
+  if (isFormula(found) && isFormula(written) && sameFormula(String(found), String(written))) return false
   // a link just set shows where it leads until the cell's text is written over it
   const link = now?.links.find(({ row, column }) => row === r && column === c)?.target
   return !link || found !== typedText(link.documentReference ?? link.address ?? '')

@@ -1,6 +1,8 @@
 import { Fault } from '../core'
 import {
   addressOf,
+  cellOf,
+  isFormula,
   overlap,
   type Area,
   type Block,
@@ -170,7 +172,35 @@ export async function readBlock(request: Request, wanted: Area, options: ReadOpt
   return { area, values, ...shape(area) }
 }
 
-/** Looks at several ranges in one request. */
+/** A formula that fills several cells, its own among them. */
+export interface Spill {
+  readonly from: Area
+  readonly over: Area
+}
+
+/** Asks which formulas of an area fill several cells; the answer is there after the next sync. */
+export function askSpills(
+  context: Excel.RequestContext,
+  area: Area,
+  formulas: readonly (readonly CellValue[])[],
+): () => Spill[] {
+  const asked = formulas.flatMap((row, r) =>
+    row.flatMap((entry, c) => {
+      if (!isFormula(entry)) return []
+      const from = cellOf(area, r, c)
+      const found = rangeOf(context, from).getSpillingToRangeOrNullObject()
+      found.load('address')
+      return [{ from, found }]
+    }),
+  )
+  return () =>
+    asked.flatMap(({ from, found }) => {
+      const over = found.isNullObject ? null : areasIn(found.address, area.sheet)[0]
+      return over ? [{ from, over }] : []
+    })
+}
+
+/** Looks at several ranges in one request; in a second one where formulas were asked for and some fill several cells. */
 export async function look(
   { context, sync }: Request,
   wants: readonly Want[],
@@ -184,7 +214,9 @@ export async function look(
       'kept' in at
         ? names.getItemOrNullObject(NAME_PREFIX + at.kept).getRangeOrNullObject()
         : worksheets.getItemOrNullObject(at.sheet).getRangeByIndexes(at.row, at.column, at.rows, at.columns)
-    range.load([PLACE, ...(want.values ? ['values'] : []), ...(want.formulas ? ['formulas'] : [])].join())
+    range.load(
+      [PLACE, ...(want.values ? ['values'] : []), ...(want.formulas ? ['formulas', 'hasSpill'] : [])].join(),
+    )
     const sheet = range.worksheet
     sheet.load('id,name')
     sheet.protection.load('protected')
@@ -193,15 +225,28 @@ export async function look(
     return { range, sheet, region, shape: want.shape ? askShape(range) : null }
   })
   await sync()
-  return asked.map(({ range, sheet, region, shape }, k) => {
+  const found = asked.map((answer, k) => {
+    const { range, sheet } = answer
     if (range.isNullObject) return null
-    noteSheet(sheet.id, sheet.name)
     const area = areaOf(sheet.name, range)
+    // `hasSpill` is null where some cells have it
+    const spills =
+      wants[k]?.formulas && range.hasSpill !== false
+        ? askSpills(context, area, range.formulas as CellValue[][])
+        : null
+    return { ...answer, area, spills }
+  })
+  if (found.some((answer) => answer?.spills)) await sync()
+  return found.map((answer, k) => {
+    if (!answer) return null
+    const { range, sheet, region, shape, area, spills } = answer
+    noteSheet(sheet.id, sheet.name)
     return {
       area,
       protected: sheet.protection.protected,
       ...(wants[k]?.values && { values: range.values as CellValue[][] }),
       ...(wants[k]?.formulas && { formulas: range.formulas as CellValue[][] }),
+      ...(spills && { spilled: spills() }),
       ...(region && { region: areaOf(sheet.name, region) }),
       ...shape?.(area),
     }

@@ -4,9 +4,11 @@ import {
   cellOf,
   countOf,
   isBlank,
+  isFormula,
   overlap,
   quote,
   sameArea,
+  sameFormula,
   type Area,
   type CellValue,
   type Json,
@@ -21,10 +23,12 @@ import { entryStep, groundOf, runsOf, surveyRuns, type Run } from './entries'
 import { absoluteReference, areasIn, SHEET_COLUMNS, SHEET_ROWS, without } from './addresses'
 import {
   asText,
+  bytesOf,
   JOURNAL_KEY,
   nameSteps,
   perform,
   restore,
+  resultsOf,
   SETTING_PREFIX,
   settingSteps,
   slabs,
@@ -39,7 +43,7 @@ import {
 import { askLinkedCells, askPlainFont, linkSteps, linksOf } from './links'
 import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
 import { askRefolding, fold, rememberedFolds, unfold, type Folding } from './outline'
-import { NAME_PREFIX, rangeOf } from './reading'
+import { askSpills, NAME_PREFIX, rangeOf } from './reading'
 import {
   faultOf,
   isUndoRefused,
@@ -88,7 +92,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
   ): Promise<void> {
     const { folding } = journal
     const head: Step = {
-      bytes: JSON.stringify(journal).length,
+      bytes: bytesOf(JSON.stringify(journal)),
       run: ({ workbook }) => void workbook.settings.add(JOURNAL_KEY, journal),
     }
     const tail = step(({ workbook }) => workbook.settings.getItem(JOURNAL_KEY).delete())
@@ -147,7 +151,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       settings: Object.fromEntries(Object.keys(remember).map((key) => [key, known.get(key) ?? null])),
     }
     const steps = [
-      ...fills.flatMap(({ patch, target }) => valueSteps(patch.table, target, 'text only')),
+      ...fills.flatMap(({ patch, target }) => valueSteps(patch.table, target, patch.seen)),
       ...Object.entries(remember).flatMap(([key, value]) =>
         settingSteps(key, value, (known.get(key) ?? null) !== null),
       ),
@@ -284,7 +288,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
           .filter(({ sheet }) => there(sheet))
           .flatMap((area) => clearSteps(area, patch.ours ?? area)),
         ...linkSteps(links, { patch, target, leftovers }, plainFont),
-        ...valueSteps(patch.table, target, 'all'),
+        ...valueSteps(patch.table, target),
         step((queue) => undress(queue, target)),
         ...looksOf(patch.table, target).map((look) => step((queue) => dress(queue, look))),
       ]),
@@ -433,21 +437,28 @@ function isRefresh(plan: WritePlan, fills: readonly Fill[], known: ReadonlyMap<s
       seen.every((row) => row.length === target.columns),
   )
   // new values, and in the journal the old ones
-  return seen && 2 * bytesOf(fills.map(({ patch }) => patch.table)) < REQUEST_BYTES
+  return seen && 2 * sizeOf(fills.map(({ patch }) => patch.table)) < REQUEST_BYTES
 }
 
-const bytesOf = (tables: readonly Table[]): number =>
+const sizeOf = (tables: readonly Table[]): number =>
   tables.reduce(
-    (sum, table) => sum + slabs(valuesOf(table)).reduce((inner, [, , bytes]) => inner + bytes, 0),
+    (sum, table) => sum + slabs(entriesOf(table)).reduce((inner, [, , bytes]) => inner + bytes, 0),
     0,
   )
 
-const valuesOf = (table: Table): CellValue[][] => table.cells.map((row) => row.map(({ value }) => value))
+/** What is sent for a cell. */
+const entryOf = ({ value, formula }: TableCell): CellValue =>
+  formula ?? (typeof value === 'string' ? asText(value) : value)
 
-const isText = ({ value }: TableCell): boolean => typeof value === 'string' && value !== ''
+const entriesOf = (table: Table): CellValue[][] => table.cells.map((row) => row.map(entryOf))
+
+const isText = ({ value, formula }: TableCell): boolean =>
+  formula === undefined && typeof value === 'string' && value !== ''
 
 const afterOf = (table: Table): CellValue[][] =>
-  table.cells.map((row) => row.map(({ value }) => (typeof value === 'string' ? typedText(value) : value)))
+  table.cells.map((row) =>
+    row.map(({ value, formula }) => formula ?? (typeof value === 'string' ? typedText(value) : value)),
+  )
 
 /** What stood in a table of ours, as a journal keeps it: under a text of ours stands text, elsewhere a formula may. */
 const typedOf = (table: Table, seen: readonly (readonly CellValue[])[]): CellValue[][] =>
@@ -461,23 +472,32 @@ const typedOf = (table: Table, seen: readonly (readonly CellValue[])[]): CellVal
 
 /**
  * The steps that fill cells. A text goes into a cell made '@' in the same request, just before, so whatever it begins with and whatever
- * the user did to the cell's format, it stays text.
+ * the user did to the cell's format, it stays text. A blank among formulas clears its cell, so that one of them may fill it.
+ *
+ * @param seen what stands there, when only what differs from it is to be sent: then formats stay, but for texts, and so do formulas that stand
  */
-function valueSteps(table: Table, target: Area, formats: 'all' | 'text only'): Step[] {
-  return slabs(valuesOf(table)).map(([from, rows, bytes]) => {
-    const cells = table.cells.slice(from, from + rows)
+function valueSteps(table: Table, target: Area, seen?: readonly (readonly CellValue[])[]): Step[] {
+  const hasFormulas = table.cells.some((row) => row.some(({ formula }) => formula !== undefined))
+  const entries = table.cells.map((row, r) =>
+    row.map((cell, c) => {
+      const typed = seen?.[r]?.[c]
+      const stands =
+        cell.formula !== undefined && isFormula(typed) && sameFormula(cell.formula, String(typed))
+      return stands ? null : entryOf(cell)
+    }),
+  )
+  const formats = table.cells.map((row) =>
+    row.map((cell) => (isText(cell) ? '@' : seen ? null : cell.format)),
+  )
+  return slabs(entries, formats).map(([from, rows, bytes]) => {
     const place = { ...target, row: target.row + from, rows }
     return {
-      bytes: 2 * bytes,
+      bytes,
       touches: place,
       run(context) {
         const range = rangeOf(context, place)
-        range.numberFormat = cells.map((row) =>
-          row.map((cell) => (isText(cell) ? '@' : formats === 'all' ? cell.format : null)),
-        )
-        range.values = cells.map((row) =>
-          row.map(({ value }) => (typeof value === 'string' ? asText(value) : value)),
-        )
+        range.numberFormat = formats.slice(from, from + rows)
+        range[hasFormulas ? 'formulas' : 'values'] = entries.slice(from, from + rows)
       },
     }
   })
@@ -533,53 +553,38 @@ async function refuseObstacles(
   // `hasSpill` is null where some cells have it; a formula spills down and right only, so from outside through the first row or column
   const spilling = asked.flatMap(({ ground, range }) => {
     if (range.hasSpill === false) return []
-    const cells = ground.typed.flatMap((row, r) => row.map((entry, c) => ({ r, c, entry })))
-    const isFormula = (entry: CellValue) => typeof entry === 'string' && entry.startsWith('=')
-    const ask = (
-      r: number,
-      c: number,
-      kind: 'getSpillParentOrNullObject' | 'getSpillingToRangeOrNullObject',
-    ) => {
-      const found = rangeOf(context, cellOf(ground.area, r, c))[kind]()
-      found.load('address')
-      return found
-    }
+    const { area } = ground
+    const edge = ground.typed.flatMap((row, r) =>
+      row.flatMap((_, c) => (r === 0 || c === 0 ? [cellOf(area, r, c)] : [])),
+    )
     return [
       {
-        ground,
-        parents: cells
-          .filter(({ r, c }) => r === 0 || c === 0)
-          .map(({ r, c }) => ({ r, c, found: ask(r, c, 'getSpillParentOrNullObject') })),
-        spills: cells
-          .filter(({ entry }) => isFormula(entry))
-          .map(({ r, c }) => ({ r, c, found: ask(r, c, 'getSpillingToRangeOrNullObject') })),
+        area,
+        parents: edge.map((cell) => {
+          const found = rangeOf(context, cell).getSpillParentOrNullObject()
+          found.load('address')
+          return { cell, found }
+        }),
+        spills: askSpills(context, area, ground.typed),
       },
     ]
   })
   if (spilling.length === 0) return () => false
   await sync()
 
-  const results: { readonly area: Area; readonly anchor: Area }[] = []
-  for (const { ground, parents, spills } of spilling) {
-    for (const { r, c, found } of parents) {
-      const parent = found.isNullObject ? null : areasIn(found.address, ground.area.sheet)[0]
-      if (parent && !overlap(parent, ground.area)) {
+  for (const { area, parents } of spilling) {
+    for (const { cell, found } of parents) {
+      const parent = found.isNullObject ? null : areasIn(found.address, area.sheet)[0]
+      if (parent && !overlap(parent, area)) {
         throw new Fault(
           'occupied',
-          `${addressOf(cellOf(ground.area, r, c))} shows results of the formula in ${addressOf(parent)}`,
+          `${addressOf(cell)} shows results of the formula in ${addressOf(parent)}`,
           'choose another place',
         )
       }
     }
-    for (const { r, c, found } of spills) {
-      const area = found.isNullObject ? null : areasIn(found.address, ground.area.sheet)[0]
-      if (area) results.push({ area, anchor: cellOf(ground.area, r, c) })
-    }
   }
-  return (area, row, column) => {
-    const cell = cellOf(area, row, column)
-    return results.some((spill) => overlap(spill.area, cell) !== null && !sameArea(spill.anchor, cell))
-  }
+  return resultsOf(spilling.flatMap(({ spills }) => spills()))
 }
 
 function refuseForeign(ground: Survey, ours: Area | undefined): void {

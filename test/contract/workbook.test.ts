@@ -285,7 +285,7 @@ describe('A first write', () => {
   test('of more than one request can hold is written whole', async () => {
     const { book, office } = open()
     const cells = Array.from({ length: 1000 }, (_, r) => [
-      text(`Position ${r} ${'x'.repeat(800)}`),
+      text(`Position ${r} ${'x'.repeat(2600)}`),
       number(r + 1 / 8, '0.00'),
     ])
     await book.write({ patches: [{ at, table: tableOf(cells), over: 'blank' }] })

@@ -708,8 +708,9 @@ export class Sheet {
         if (!range) continue
         const { startRow, startColumn, endRow, endColumn } = range as IRange
         if (row < startRow || row > endRow || column < startColumn || column > endColumn) continue
-        // An area of one cell is an array formula that spills nowhere.
+        // An area of one cell is an array formula that spills nowhere; one that is blocked keeps its area in the grid.
         if (startRow === endRow && startColumn === endColumn) continue
+        if (this.#cell(Number(top), Number(left))?.v === '#SPILL!') continue
         return {
           anchor: rectAt(Number(top), Number(left), 1, 1),
           area: { top: startRow, left: startColumn, bottom: endRow, right: endColumn },
