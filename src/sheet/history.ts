@@ -12,8 +12,8 @@ import { countOf, dateText, listOf, quote } from './wording'
 export { growthBetween, remakeFrom } from './history-data'
 export { MOST_KEPT, snapshotOf } from './snapshot'
 
-/** What a new sheet of dated blocks is called; of further books "History 2" and so on. */
-const SHEET = 'History'
+/** What a new sheet of dated blocks is called; of further books "Kept results 2" and so on. (The host keeps the name "History" to itself.) */
+const SHEET = 'Kept results'
 
 interface Entry {
   readonly head: SnapshotHead

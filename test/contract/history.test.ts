@@ -2,6 +2,7 @@
  * Results kept in a workbook, over the stand-in for the host's API. Figures are those of made-up books; what is kept and read back is compared
  * to the last bit, so no number here has another origin.
  */
+import { openWorkbook, saveWorkbook } from '../../src/desk/files'
 import { parseAddress, type Json, type Workbook } from '../../src/sheet'
 import { History } from '../../src/sheet/history'
 import { historyBlock } from '../../src/sheet/history-block'
@@ -55,12 +56,12 @@ describe('A result that is kept', () => {
     expect(kept.names[1]).toBe('=Southern shares')
   })
 
-  test('stands on a sheet called History as a block a reader understands', async () => {
+  test('stands on a sheet called Kept results as a block a reader understands', async () => {
     const { history, valuesAt, book } = await desk()
     const kept = await result()
     const area = await history.keep(kept, null)
-    expect(area).toEqual({ sheet: 'History', row: 0, column: 0, rows: heights(kept), columns: 7 })
-    const rows = (await valuesAt('History', 'A1:G40')).map((row) => row.filter((value) => value !== ''))
+    expect(area).toEqual({ sheet: 'Kept results', row: 0, column: 0, rows: heights(kept), columns: 7 })
+    const rows = (await valuesAt('Kept results', 'A1:G40')).map((row) => row.filter((value) => value !== ''))
     expect(rows[0]).toEqual(['Kept result 1: Harbour book'])
     expect(rows[1]?.[0]).toMatch(
       /^Volatility \d+\.\d\d% a year\. 60 dates of returns, \d+ \w+ 2025 to 27 Nov 2026\. Kept on 29 Nov 2026\.$/,
@@ -69,14 +70,17 @@ describe('A result that is kept', () => {
     expect(rows).toContainEqual(['Harbour bonds', '007', -0.2, kept.volatilities[2], 0.2 * kept.volatilities[2]!, kept.contribution[2], kept.contribution[2]! / kept.volatility]) // prettier-ignore
     expect(rows).toContainEqual(['Hash of the inputs', kept.inputsHash])
     expect(rows.find(([label]) => label === 'Difference')?.[1]).toBeCloseTo(0, 15)
-    expect(await book.sheets()).toEqual(['Sheet1', 'History'])
+    expect(await book.sheets()).toEqual(['Sheet1', 'Kept results'])
   })
 
-  test('is listed and read after the workbook was saved and opened again', async () => {
-    const { history, reopened } = await desk()
+  test('lies below the one before, which stays as it is, and is listed by whoever opens the workbook', async () => {
+    const { history, reopened, valuesAt } = await desk()
     const [first, second] = [await result(), await result('2', FRIDAY + 7)]
     await history.keep(first, null)
-    await history.keep(second, null)
+    const block = `A1:G${heights(first)}`
+    const before = await valuesAt('Kept results', block)
+    expect(await history.keep(second, null)).toMatchObject({ sheet: 'Kept results', row: heights(first) })
+    expect(await valuesAt('Kept results', block)).toEqual(before)
     const again = await reopened()
     expect(again.heads.map(({ id, dataDate }) => [id, dataDate])).toEqual([
       ['1', FRIDAY],
@@ -87,25 +91,15 @@ describe('A result that is kept', () => {
     expect(again.unread).toBeNull()
   })
 
-  test('lies below the one before and leaves that as it is', async () => {
-    const { history, valuesAt } = await desk()
-    const first = await result()
-    await history.keep(first, null)
-    const before = await valuesAt('History', `A1:G${heights(first)}`)
-    const second = await history.keep(await result('2', FRIDAY + 7), null)
-    expect(second.row).toBe(heights(first))
-    expect(await valuesAt('History', `A1:G${heights(first)}`)).toEqual(before)
-  })
-
   test('is found after rows were inserted and sheets renamed', async () => {
     const { history, user, office, reopened, settle } = await desk()
     const first = await result()
     await history.keep(first, null)
     await office.Excel.run(async (context) => {
       const { worksheets } = context.workbook
-      worksheets.getItem('History').getRange('1:3').insert('Down')
+      worksheets.getItem('Kept results').getRange('1:3').insert('Down')
       worksheets.getItem(RECORDS).getRange('1:2').insert('Down')
-      worksheets.getItem('History').name = 'What we had'
+      worksheets.getItem('Kept results').name = 'What we had'
       worksheets.getItem(RECORDS).name = 'Old ones'
       await context.sync()
     })
@@ -130,7 +124,7 @@ describe('A result of the same data date', () => {
     expect(history.sameDate(null)).toBeNull()
     const third = await result('3', FRIDAY, 'Once more')
     expect(await history.keep(third, '1')).toEqual(where)
-    expect((await valuesAt('History', 'A1'))[0]).toEqual(['Kept result 3: Harbour book'])
+    expect((await valuesAt('Kept results', 'A1'))[0]).toEqual(['Kept result 3: Harbour book'])
     const again = await reopened()
     expect(again.heads.map(({ id }) => id)).toEqual(['3', '2'])
     expect(await again.read('3')).toEqual(third)
@@ -161,8 +155,8 @@ describe('A result of the same data date', () => {
     )
     const area = await history.keep(bigger, '1')
     expect(area.row).toBe(2 * height)
-    expect((await valuesAt('History', `A1:G${height}`)).flat().every((value) => value === '')).toBe(true)
-    expect((await valuesAt('History', `A${height + 1}`))[0]).toEqual(['Kept result 2: Harbour book'])
+    expect((await valuesAt('Kept results', `A1:G${height}`)).flat().every((value) => value === '')).toBe(true)
+    expect((await valuesAt('Kept results', `A${height + 1}`))[0]).toEqual(['Kept result 2: Harbour book'])
     expect(await history.read('3')).toEqual(bigger)
   })
 
@@ -170,11 +164,11 @@ describe('A result of the same data date', () => {
     const { history, typeAt, valuesAt, settle } = await desk()
     const first = await result()
     await history.keep(first, null)
-    typeAt('History!B4', [['Struck out by the chair']])
+    typeAt("'Kept results'!B4", [['Struck out by the chair']])
     await settle()
     const area = await history.keep(await result('2', FRIDAY, 'Once more'), '1')
     expect(area.row).toBe(heights(first))
-    expect((await valuesAt('History', 'B4'))[0]).toEqual(['Struck out by the chair'])
+    expect((await valuesAt('Kept results', 'B4'))[0]).toEqual(['Struck out by the chair'])
     expect(history.heads.map(({ id }) => id)).toEqual(['2'])
   })
 })
@@ -187,35 +181,30 @@ describe('Removing a result', () => {
     await history.keep(await result('2', FRIDAY + 7), null)
     const second = await history.read('2')
     expect(await history.remove('1')).toBeNull()
-    expect((await valuesAt('History', `A1:G${heights(first)}`)).flat().every((value) => value === '')).toBe(
-      true,
-    )
+    expect(
+      (await valuesAt('Kept results', `A1:G${heights(first)}`)).flat().every((value) => value === ''),
+    ).toBe(true)
     expect((await valuesAt(RECORDS, 'A1:H8')).flat().every((value) => value === '')).toBe(true)
     const again = await reopened()
     expect(again.heads.map(({ id }) => id)).toEqual(['2'])
     expect(await again.read('2')).toEqual(second)
     expect(again.nextId).toBe('3')
     expect(await again.check()).toEqual([])
-  })
-
-  test('does not use an id twice, not even that of the last one', async () => {
-    const { history, reopened } = await desk()
-    await history.keep(await result(), null)
-    await history.remove('1')
-    expect(history.nextId).toBe('2')
-    expect((await reopened()).nextId).toBe('2')
+    // an id is not used twice, not even that of the last one
+    await again.remove('2')
+    expect((await reopened()).nextId).toBe('3')
   })
 
   test('leaves what the user has typed beside it and between, and says so', async () => {
     const { history, typeAt, valuesAt, settle } = await desk()
     await history.keep(await result(), null)
-    typeAt('History!J2', [['beside']])
-    typeAt('History!A5', [['within']])
+    typeAt("'Kept results'!J2", [['beside']])
+    typeAt("'Kept results'!A5", [['within']])
     await settle()
     expect(await history.remove('1')).toMatch(
-      /^What stands in History!A1:G\d+ of the result of “Harbour book” kept on 29 Nov 2026 \(data to 27 Nov 2026\) is left there: it is not as it was written\.$/,
+      /^What stands in 'Kept results'!A1:G\d+ of the result of “Harbour book” kept on 29 Nov 2026 \(data to 27 Nov 2026\) is left there: it is not as it was written\.$/,
     )
-    expect((await valuesAt('History', 'A1:J5')).flat()).toEqual(
+    expect((await valuesAt('Kept results', 'A1:J5')).flat()).toEqual(
       expect.arrayContaining(['Kept result 1: Harbour book', 'beside', 'within']),
     )
     expect(history.heads).toEqual([])
@@ -223,12 +212,12 @@ describe('Removing a result', () => {
 })
 
 describe('What has become of the sheets', () => {
-  test('a deleted History sheet is told, the results are still there, and the next goes to a new sheet', async () => {
+  test('a deleted sheet of blocks is told, the results are still there, and the next goes to a new sheet', async () => {
     const { history, office, reopened } = await desk()
     const first = await result()
     await history.keep(first, null)
     await office.Excel.run(async (context) => {
-      context.workbook.worksheets.getItem('History').delete()
+      context.workbook.worksheets.getItem('Kept results').delete()
       await context.sync()
     })
     const again = await reopened()
@@ -236,7 +225,10 @@ describe('What has become of the sheets', () => {
       'the result of “Harbour book” kept on 29 Nov 2026 (data to 27 Nov 2026): the rows on the sheet of kept results were deleted, or the sheet with them; what is compared lies elsewhere and is still there.',
     ])
     expect(await again.read('1')).toEqual(first)
-    expect(await again.keep(await result('2', FRIDAY + 7), null)).toMatchObject({ sheet: 'History', row: 0 })
+    expect(await again.keep(await result('2', FRIDAY + 7), null)).toMatchObject({
+      sheet: 'Kept results',
+      row: 0,
+    })
     expect(await again.remove('1')).toBeNull()
   })
 
@@ -280,30 +272,25 @@ describe('What has become of the sheets', () => {
     const first = await result()
     await history.keep(first, null)
     const below = heights(first) + 3
-    typeAt(`History!C${below}`, [['My own remark']])
+    typeAt(`'Kept results'!C${below}`, [['My own remark']])
     await settle()
     const area = await history.keep(await result('2', FRIDAY + 7), null)
     expect(area.row).toBeGreaterThanOrEqual(below)
-    expect((await valuesAt('History', `C${below}`))[0]).toEqual(['My own remark'])
+    expect((await valuesAt('Kept results', `C${below}`))[0]).toEqual(['My own remark'])
   })
 
-  test('a sheet called History that is the user’s is left alone', async () => {
-    const { history, office, typeAt, settle } = await desk()
+  test('two books keep their results on sheets of their own, and not on one of the user’s', async () => {
+    const { history, book, office, typeAt, settle } = await desk()
     await office.Excel.run(async (context) => {
-      context.workbook.worksheets.add('History')
+      context.workbook.worksheets.add('Kept results')
       await context.sync()
     })
-    typeAt('History!A1', [['Of our house']])
+    typeAt("'Kept results'!A1", [['Of our house']])
     await settle()
-    expect(await history.keep(await result(), null)).toMatchObject({ sheet: 'History 2', row: 0 })
-  })
-
-  test('two books keep their results on sheets of their own', async () => {
-    const { history, book } = await desk()
     const other = new History(book, '2')
     other.open(undefined)
-    await history.keep(await result(), null)
-    expect(await other.keep(await result(), null)).toMatchObject({ sheet: 'History 2', row: 0 })
+    expect(await history.keep(await result(), null)).toMatchObject({ sheet: 'Kept results 2', row: 0 })
+    expect(await other.keep(await result(), null)).toMatchObject({ sheet: 'Kept results 3', row: 0 })
     expect(await other.read('1')).toEqual(await history.read('1'))
   })
 
@@ -311,7 +298,7 @@ describe('What has become of the sheets', () => {
     const { history, office, portrait, settle } = await desk()
     await history.keep(await result(), null)
     await office.Excel.run(async (context) => {
-      context.workbook.worksheets.getItem('History').protection.protect()
+      context.workbook.worksheets.getItem('Kept results').protection.protect()
       await context.sync()
     })
     await settle()
@@ -365,10 +352,26 @@ describe('Forgetting a book', () => {
     await book.write(await history.forget())
     await settle()
     expect((await valuesAt(RECORDS, 'A1:H8')).flat().every((value) => value === '')).toBe(true)
-    expect((await valuesAt('History', 'A1'))[0]).toEqual(['Kept result 1: Harbour book'])
+    expect((await valuesAt('Kept results', 'A1'))[0]).toEqual(['Kept result 1: Harbour book'])
     expect(portrait().names).toEqual([])
     expect(await book.recall()).toEqual({})
   })
+})
+
+test('A file of the workbook holds all that is kept, and the record stays out of sight', async () => {
+  const { history, grid, office } = await desk()
+  const kept = await result()
+  await history.keep(kept, null)
+  const bytes = await saveWorkbook(grid, office.settings)
+  const elsewhere = await desk()
+  await openWorkbook(elsewhere.grid, bytes, elsewhere.office.settings)
+  const again = await elsewhere.reopened()
+  expect(again.heads).toEqual(history.heads)
+  expect(await again.read('1')).toEqual(kept)
+  expect(await again.check()).toEqual([])
+  expect(await elsewhere.book.sheets()).toEqual(['Sheet1', 'Kept results'])
+  // and its block is known to be as it was written
+  expect(await again.remove('1')).toBeNull()
 })
 
 describe('Size', () => {
