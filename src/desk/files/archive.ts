@@ -78,7 +78,8 @@ export function namesIn(parts: Parts): StoredName[] {
   })
 }
 
-function attributesIn(xml: string): (name: string) => string | undefined {
+/** The value of an attribute by its name, among the attributes of an element. */
+export function attributesIn(xml: string): (name: string) => string | undefined {
   return (name) => {
     const found = new RegExp(`(?:^|\\s)${name}="([^"]*)"`).exec(xml)?.[1]
     return found === undefined ? undefined : plain(found)
@@ -264,7 +265,8 @@ function replace(parts: Parts, path: string, from: string, to: string): void {
 
 const ENTITIES = { '&lt;': '<', '&gt;': '>', '&quot;': '"', '&apos;': "'", '&amp;': '&' } as const
 
-const plain = (xml: string): string =>
+/** The text that stands in XML. */
+export const plain = (xml: string): string =>
   xml
     .replace(/&#x([\dA-Fa-f]+);|&#(\d+);/g, (_, hex: string | undefined, decimal: string) =>
       String.fromCodePoint(hex ? parseInt(hex, 16) : Number(decimal)),

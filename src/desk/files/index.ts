@@ -3,7 +3,7 @@
  *
  * Kept both ways: values, formulas with their results, spills, number formats, fonts' weight, slant and colour, fills, borders,
  * alignment, column widths and row heights, merged cells, frozen panes, hidden rows, columns and sheets, links, how deep rows and columns
- * are folded, defined names, tables, and the add-in's settings. Whatever else a file holds is named in the report, never dropped in silence.
+ * are folded, charts of the kinds the desk draws, how a sheet is printed, defined names, tables, and the add-in's settings. Whatever else a file holds is named in the report, never dropped in silence.
  */
 import { ObjectMatrix } from '@univerjs/core'
 import type { Grid } from '../grid'

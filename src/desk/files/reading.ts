@@ -13,11 +13,22 @@ import {
   type IWorksheetData,
 } from '@univerjs/core'
 import type { IDefinedNamesServiceParam } from '@univerjs/engine-formula'
-import { withBar, withLevel, withLink } from '../office'
-import { namesIn, takeLinks, textOf, unpack, type Parts, type StoredLink } from './archive'
+import { withBar, withDrawn, withLevel, withLink, type SheetChart, type SheetPage } from '../office'
+import {
+  namesIn,
+  sheetPaths,
+  takeLinks,
+  textOf,
+  unpack,
+  type Parts,
+  type StoredLink,
+  type StoredName,
+} from './archive'
 import { gridStyle, paletteOf, type Palette } from './cell-style'
+import { chartsIn } from './charts'
 import { barLooksIn, gridBar, type BarLooks } from './data-bars'
 import { shownFormula } from './formula-text'
+import { pageIn } from './page-setup'
 import {
   DEFAULT_HEIGHT,
   DEFAULT_WIDTH,
@@ -63,12 +74,14 @@ export async function readFile(
   const barLooks = barLooksIn(parts)
   const palette = paletteOf(textOf(parts, 'xl/theme/theme1.xml'))
   const ids = sheets.map((_, i) => `sheet-${i + 1}`)
-  const converted = sheets.map((sheet, i): [string, Partial<IWorksheetData>] => [
-    ids[i] ?? '',
-    gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, barLooks, losses),
-  ])
+  const stored = namesIn(parts)
+  const drawn = drawnIn(parts, workbook, stored, losses)
+  const converted = sheets.map((sheet, i): [string, Partial<IWorksheetData>] => {
+    const made = gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, barLooks, losses)
+    return [ids[i] ?? '', { ...made, ...withDrawn(drawn(sheet.name), made) }]
+  })
   const names = gridNames(
-    parts,
+    stored,
     workbook,
     new Map(sheets.map((sheet, i) => [sheet.name, ids[i] ?? ''])),
     losses,
@@ -126,7 +139,6 @@ class Losses {
 
   constructor(parts: Parts) {
     const count = (pattern: RegExp): number => Object.keys(parts).filter((path) => pattern.test(path)).length
-    this.add('chart', count(/^xl\/charts\/chart\d*\.xml$/))
     this.add('picture', count(/^xl\/media\//))
     this.add('pivot table', count(/^xl\/pivotTables\/[^/]+\.xml$/))
     this.add('slicer', count(/^xl\/slicers\/[^/]+\.xml$/))
@@ -295,16 +307,36 @@ function literal(value: unknown): ICellData {
   return {}
 }
 
-function gridNames(
+/** The charts and the page of a sheet, by its name. */
+function drawnIn(
   parts: Parts,
+  workbook: Workbook,
+  names: readonly StoredName[],
+  losses: Losses,
+): (sheet: string) => { readonly charts: readonly SheetChart[]; readonly page: SheetPage } {
+  const { charts, left, inPart } = chartsIn(parts)
+  losses.add('chart', left)
+  losses.add('colours, labels and lines of charts (their figures, title and place are kept)', inPart)
+  const paths = sheetPaths(parts)
+  return (sheet) => {
+    const own = names.filter(({ sheet: at }) => at !== undefined && workbook.worksheets[at]?.name === sheet)
+    const { page, left: unkept } = pageIn(textOf(parts, paths.get(sheet) ?? ''), own)
+    losses.add('print setting', unkept)
+    return { charts: charts.get(sheet) ?? [], page }
+  }
+}
+
+function gridNames(
+  stored: readonly StoredName[],
   workbook: Workbook,
   ids: ReadonlyMap<string, string>,
   losses: Losses,
 ): Record<string, IDefinedNamesServiceParam> {
   const names: Record<string, IDefinedNamesServiceParam> = {}
-  for (const [i, { name, formula, comment, hidden, sheet }] of namesIn(parts).entries()) {
+  for (const [i, { name, formula, comment, hidden, sheet }] of stored.entries()) {
     if (name.startsWith('_xlnm.')) {
-      if (name !== '_xlnm._FilterDatabase') losses.add('print setting')
+      // what is printed is read with the page, and filters are counted where they stand
+      if (!/^_xlnm\.(?:Print_|_FilterDatabase)/.test(name)) losses.add('name of an advanced filter')
       continue
     }
     const shown = shownFormula(formula)

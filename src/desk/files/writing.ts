@@ -20,11 +20,14 @@ import {
   IDefinedNamesService,
   IFunctionService,
 } from '@univerjs/engine-formula'
+import { figuresAt } from '../figures'
 import type { Grid } from '../grid'
-import { barOf, levelOf, linkOf, type DataBar, type Line } from '../office'
+import { barOf, chartsOf, levelOf, linkOf, pageOf, type DataBar, type Line, type SheetChart } from '../office'
 import { markSpilling, pack, putLinks, putNames, unpack, type StoredLink, type StoredName } from './archive'
 import { fileStyle } from './cell-style'
+import { putCharts } from './charts'
 import { fileRule } from './data-bars'
+import { filePage, pageNames } from './page-setup'
 import { needsArray, storedFormula } from './formula-text'
 import {
   CELL_LIMIT,
@@ -77,6 +80,8 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
   }
 
   const links = new Map<string, StoredLink[]>()
+  const charts = new Map<string, readonly SheetChart[]>()
+  const printed: StoredName[] = []
   for (const id of data.sheetOrder) {
     const sheet = data.sheets[id]
     if (!sheet) continue
@@ -84,6 +89,8 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
     const cells = withSpills(sheet.cellData ?? {}, formulas.getArrayFormulaCellData()?.[data.id]?.[id])
     const linked: StoredLink[] = []
     links.set(target.name, linked)
+    charts.set(target.name, chartsOf(sheet))
+    printed.push(...pageNames(pageOf(sheet), target.name, workbook.worksheets.length - 1))
     const arrays = formulas.getArrayFormulaRange()?.[data.id]?.[id]
     const content = (row: number, column: number): CellValue =>
       contentOf(cells[row]?.[column], addressOf(arrays?.[row]?.[column] ?? at(row, column)), addIn)
@@ -107,7 +114,11 @@ export async function writeFile(grid: Grid, settings: Settings): Promise<ArrayBu
 
   const parts = await unpack(new Uint8Array(await workbook.xlsx.writeBuffer()))
   putLinks(parts, links)
-  putNames(parts, namesOf(data.id, data.sheetOrder, injector.get(IDefinedNamesService), addIn))
+  putNames(parts, [
+    ...namesOf(data.id, data.sheetOrder, injector.get(IDefinedNamesService), addIn),
+    ...printed,
+  ])
+  putCharts(parts, charts, (reference) => figuresAt(grid, reference))
   markSpilling(parts)
   return pack(parts)
 }
@@ -191,6 +202,7 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
     if (!line.hasValues) line.height ??= defaultHeight / PIXELS
     return line
   })
+  Object.assign(target, filePage(pageOf(sheet)))
   if (sheet.custom?.['outline']) target.properties.outlineProperties = sheet.custom['outline'] as Outline
   for (const range of sheet.mergeData ?? []) target.mergeCellsWithoutStyle(addressOf(range))
   const { xSplit = 0, ySplit = 0 } = sheet.freeze ?? {}
