@@ -72,6 +72,9 @@ const ROUNDING = '0.0E+00'
 
 const WHERE_ALL = 'see the table of contributions to risk'
 
+/** Contributions below this have three decimals. */
+const FINE = 0.002
+
 const sumOf = (values: Iterable<number>): number => [...values].reduce((sum, value) => sum + value, 0)
 
 const signed = (value: number): string => `${value > 0 ? '+' : ''}${percentText(value, 2)}`
@@ -102,14 +105,35 @@ function brokenAt(width: number, sentence: string): readonly string[] {
   return lines
 }
 
-/** Whole words from the beginning and the last one, where a name is too wide: what tells it from its like often stands last. */
-function shortened(name: string, width: number): string {
+const wordsOf = (name: string): readonly string[] => name.split(/\s+/)
+
+/** In how many of some names each word stands. */
+function wordCounts(names: readonly string[]): ReadonlyMap<string, number> {
+  const counts = new Map<string, number>()
+  for (const name of names)
+    for (const word of new Set(wordsOf(name))) counts.set(word, (counts.get(word) ?? 0) + 1)
+  return counts
+}
+
+/**
+ * Of a name that is too wide the words that few of its like have, as these tell it from them; then as many of the others as have room, from the
+ * first on. Dots stand for what is left out.
+ */
+function shortened(name: string, width: number, counts: ReadonlyMap<string, number>): string {
   if (widthOf(name) <= width) return name
-  const words = name.split(/\s+/)
-  const last = words.pop() ?? ''
-  while (words.length > 1 && widthOf(`${words.join(' ')} … ${last}`) > width) words.pop()
-  const cut = words.length === 0 ? last : `${words.join(' ')} … ${last}`
-  return widthOf(cut) <= width ? cut : `${cut.slice(0, Math.floor(width / 1.2) - 1)}…`
+  const words = wordsOf(name)
+  const count = (k: number): number => counts.get(words[k]!) ?? 0
+  const withDots = (kept: ReadonlySet<number>): string =>
+    words
+      .map((word, k) => (kept.has(k) ? word : '…'))
+      .filter((word, k, all) => word !== '…' || all[k - 1] !== '…')
+      .join(' ')
+  let kept = new Set<number>()
+  for (const k of [...words.keys()].sort((a, b) => count(a) - count(b) || a - b)) {
+    const more = new Set([...kept, k])
+    if (widthOf(withDots(more)) <= width) kept = more
+  }
+  return kept.size > 0 ? withDots(kept) : `${name.slice(0, Math.floor(width / 1.5) - 1)}…`
 }
 
 type Cells = { readonly [column: number]: TableCell }
@@ -131,6 +155,11 @@ class Page {
   readonly cells: TableCell[][] = []
   readonly charts: TableChart[] = []
   hasCuts = false
+  readonly #names: readonly string[]
+
+  constructor(names: readonly string[]) {
+    this.#names = names
+  }
 
   add(cells: Cells): void {
     this.cells.push(WIDTHS.map((_, column) => cells[column] ?? text('')))
@@ -168,11 +197,11 @@ class Page {
     ].map((line, k) => (k === most - 1 ? `${line} …` : line))
   }
 
-  /** A name that may have to be shortened. */
-  name(name: string, width: number): string {
-    const shown = shortened(name, width)
-    if (shown !== name) this.hasCuts = true
-    return shown
+  /** A name that may have to be shortened, so that it is still told from others. */
+  name(name: string, width: number, others: readonly string[] = this.#names): string {
+    if (widthOf(name) <= width) return name
+    this.hasCuts = true
+    return shortened(name, width, wordCounts(others))
   }
 }
 
@@ -212,7 +241,7 @@ function dataDateOf({ dates }: Breakdown): string {
 function laidOut(input: CommitteeInput, room: Room): Page {
   const { breakdown } = input
   const bands = typeof breakdown.bands === 'string' ? null : breakdown.bands
-  const page = new Page()
+  const page = new Page(breakdown.names)
   addHead(page, input)
   page.blank()
   addRisk(page, breakdown, bands, room)
@@ -474,6 +503,9 @@ function addPositions(page: Page, breakdown: Breakdown, bands: Bands | null, roo
   const { decomposition: d, names, sharesWithheld } = breakdown
   const { contributors, reducing, others } = shownOf(breakdown, room)
   const shares = sharesWithheld === null ? d.share : null
+  // of many holdings each has so little that two decimals would not tell them apart
+  const isFine = contributors.every((i) => Math.abs(d.contribution[i]!) < FINE)
+  const format = isFine ? '0.000%' : PERCENT
   const figures = (
     weight: number,
     contribution: number,
@@ -482,9 +514,12 @@ function addPositions(page: Page, breakdown: Breakdown, bands: Bands | null, roo
     mark?: Mark,
   ): Cells => ({
     [WEIGHT]: number(weight, PERCENT, mark),
-    [CONTRIBUTION]: number(contribution, PERCENT, mark),
+    [CONTRIBUTION]: number(contribution, format, mark),
     [SHARE]: shares ? number(share, SHARE_FORMAT, mark) : text('', mark),
-    [ASIDE]: { ...text(error === null ? '' : bandText(contribution, error, 2), mark), indent: 1 },
+    [ASIDE]: {
+      ...text(error === null ? '' : bandText(contribution, error, isFine ? 3 : 2), mark),
+      indent: 1,
+    },
   })
   const ofOne = (i: number): Cells => ({
     [LABEL]: text(page.name(names[i] ?? '', WIDTHS[LABEL])),
@@ -641,7 +676,9 @@ function groupRows(
     }),
     ...[...own]
       .sort((a, b) => parts.contribution[b]! - parts.contribution[a]! || a - b)
-      .map((g) => line(page.name(labels[g] ?? '', at.labelWidth), parts.weight[g]!, parts.contribution[g]!)),
+      .map((g) =>
+        line(page.name(labels[g] ?? '', at.labelWidth, labels), parts.weight[g]!, parts.contribution[g]!),
+      ),
     ...(rest.length > 0
       ? [line(`Others (${rest.length})`, over(rest, parts.weight), over(rest, parts.contribution))]
       : []),
@@ -697,7 +734,11 @@ function concentrationRows(page: Page, breakdown: Breakdown): readonly Cells[] {
       ? line('Largest share of risk', number(d.share[riskiest], SHARE_FORMAT), names[riskiest])
       : line('Largest contribution to risk', number(d.contribution[riskiest], PERCENT), names[riskiest]),
     line('Net weight', number(net, PERCENT), 'of capital'),
-    line('Gross weight', number(gross, PERCENT), `${percentText((gross - net) / 2, 1)} of it short`),
+    line(
+      'Gross weight',
+      number(gross, PERCENT),
+      `long ${percentText((gross + net) / 2, 1)}, short ${percentText((gross - net) / 2, 1)}`,
+    ),
   ]
 }
 
