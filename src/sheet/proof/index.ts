@@ -1,0 +1,2 @@
+export { proofTable } from './proof-table'
+export type { ProofInput } from './proof-table'
