@@ -23,6 +23,7 @@ export {
   type LimitMeasure,
   type LimitResidual,
 } from './change-limits'
+export { joinStates, splitChange, type JoinedStates, type RiskChangeSplit, type RiskState } from './change'
 export { currencySplit, type CurrencyPart, type CurrencySplit } from './currency'
 export { estimateModel, type EstimatedModel, type Estimator } from './estimate'
 export { factorModel, type FactorModel, type FactorSplit } from './factor-model'
