@@ -91,12 +91,21 @@ export function recordTable(snapshot: Snapshot): Table {
   }
 }
 
-/** The hash of what stands in the cells of a record: row by row each cell, a text or one number. */
+/**
+ * The hash of what stands in the cells of a record: row by row each cell, a text or one number. Numbers count by their first 15 significant digits,
+ * which is what some programs save of them: a record that went through one of those is good to 5e-15 of each number, and still itself.
+ */
 export const recordHash = (values: readonly (readonly CellValue[])[]): Promise<string> =>
-  hashOf(values.flat().map((value) => (typeof value === 'number' ? Float64Array.of(value) : String(value))))
+  hashOf(
+    values
+      .flat()
+      .map((value) =>
+        typeof value === 'number' ? Float64Array.of(Number(value.toPrecision(15))) : String(value),
+      ),
+  )
 
 /**
- * The result that a record holds, to the last bit.
+ * The result that a record holds, as exact as its cells are.
  *
  * @param values of cells whose hash is the one that was kept with them
  * @returns      null where they are not laid out as a record is

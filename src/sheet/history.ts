@@ -176,7 +176,7 @@ export class History {
     return [
       ...(blocks.length > 0
         ? [
-            `${listOf(blocks)}: the rows on the sheet of kept results were deleted, or the sheet with them; what is compared lies elsewhere and is ${records.length > 0 ? 'told of apart' : 'still there'}.`,
+            `${capital(listOf(blocks))}: the rows on the sheet of kept results were deleted, or the sheet with them; what is compared lies elsewhere and is ${records.length > 0 ? 'told of apart' : 'still there'}.`,
           ]
         : []),
       ...(records.length > 0
@@ -360,6 +360,8 @@ const clearing = (area: Area): Patch => ({
 
 const titleOf = ({ keptOn, dataDate, title }: SnapshotHead): string =>
   `the result of ${quote(title)} kept on ${dateText(keptOn)}${dataDate === null ? '' : ` (data to ${dateText(dataDate)})`}`
+
+const capital = (sentence: string): string => sentence.charAt(0).toUpperCase() + sentence.slice(1)
 
 /** Whether a table stands in what a look saw; rows that are blank at the end do not count, as more may have been inserted there. */
 function standsIn({ formulas = [], area }: Seen, table: Table): boolean {

@@ -58,8 +58,8 @@ export interface SnapshotHead {
 }
 
 /**
- * Correlations are kept with a result up to this many holdings: 11,175 numbers, about 0.1 MB of a saved workbook for each result. For 500 holdings
- * they would be 125,000 numbers and more than 1 MB. Our own convention.
+ * Correlations are kept with a result up to this many holdings: 11,175 numbers, about 0.14 MB of a saved workbook for each result. For 500 holdings
+ * they would be 125,000 numbers and 1.5 MB. Our own convention.
  */
 export const MOST_KEPT = 150
 
