@@ -110,7 +110,7 @@ export function historyBlock(snapshot: Snapshot): Table {
   add(
     text('Reading'),
     text(
-      `Volatilities, stand-alone risks and contributions are ${horizon}. Contributions add up to the volatility; a share is a contribution over it. The volatility of one unit is a holding’s own at a weight of 100%, and stand-alone risk is that times the weight without its sign.`,
+      `Volatilities, stand-alone risks and contributions are ${horizon === 'a year' ? 'scaled to a year' : 'per period'}. Contributions add up to the volatility; a share is a contribution over it. The volatility of one unit is a holding’s own at a weight of 100%, and stand-alone risk is that times the weight without its sign.`,
     ),
   )
   if (reason === 'withheld')

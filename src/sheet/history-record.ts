@@ -64,7 +64,7 @@ export function recordTable(snapshot: Snapshot): Table {
       row(text(`Kept result ${id} of ${title}, kept on ${dateText(keptOn)}`)),
       row(
         text(
-          `This is what the result is read back from. A hash is kept beside it: once a cell of it is changed it is not read any more. Volatilities and contributions ${snapshot.horizon}, as fractions.`,
+          `This is what the result is read back from. A hash is kept beside it: once a cell of it is changed it is not read any more. Numbers are fractions; volatilities and contributions are ${snapshot.horizon === 'a year' ? 'scaled to a year' : 'per period'}.`,
         ),
       ),
       row(...parts.map((part) => text(part))),

@@ -60,9 +60,14 @@ export function plainWorkbook(sheets: { [name: string]: CellValue[][] }) {
   const port: Workbook = {
     culture: () => Promise.resolve({ decimal: '.', group: ',', dateOrder: 'ymd' }),
     selection: () => Promise.resolve(selected),
-    async read(area) {
+    async read(wanted) {
+      // whole columns come back cut to the rows in use
+      const isEndless = wanted.rows >= 1_048_576
+      const rows = isEndless ? (sheets[wanted.sheet]?.length ?? 0) - wanted.row : wanted.rows
+      const area = { ...wanted, rows }
       const values = cellsOf(area)
       await step('read')
+      if (rows < 1) throw new Fault('selection', 'nothing is filled', 'filled cells are needed')
       return { area, values }
     },
     async look(wants) {
