@@ -258,7 +258,9 @@ describe('What has become of the sheets', () => {
     expect(await refusal(history.read('1'))).toMatchObject({ code: 'changed' })
     await history.read('2')
     await office.Excel.run(async (context) => {
-      context.workbook.worksheets.getItem(RECORDS).delete()
+      const records = context.workbook.worksheets.getItem(RECORDS)
+      records.visibility = 'Visible'
+      records.delete()
       await context.sync()
     })
     expect(await refusal(history.read('2'))).toMatchObject({ code: 'missing' })
