@@ -78,7 +78,11 @@ export async function readFile(
   const drawn = drawnIn(parts, workbook, stored, losses)
   const converted = sheets.map((sheet, i): [string, Partial<IWorksheetData>] => {
     const made = gridSheet(sheet, ids[i] ?? '', links.get(sheet.name) ?? [], palette, barLooks, losses)
-    return [ids[i] ?? '', { ...made, ...withDrawn(drawn(sheet.name), made) }]
+    const { charts, page } = drawn(sheet.name)
+    // a chart may lie beyond the cells that are used
+    const rowCount = Math.max(made.rowCount ?? 0, ...charts.map(({ to }) => to.row + 1))
+    const columnCount = Math.max(made.columnCount ?? 0, ...charts.map(({ to }) => to.column + 1))
+    return [ids[i] ?? '', { ...made, rowCount, columnCount, ...withDrawn({ charts, page }, made) }]
   })
   const names = gridNames(
     stored,

@@ -7,6 +7,7 @@ import type { Grid } from '../grid'
 import { createOffice, type OfficeStandIn } from '../office'
 import type { PaneGlobals } from './pane-frame'
 import { openGridView } from './grid-view'
+import { drawCharts } from './sheet-charts'
 import { isDark, officeThemeOf, type ThemeName } from './theme'
 
 export interface Workspace {
@@ -35,6 +36,7 @@ export interface WorkspaceOptions {
 
 export function createWorkspace(container: HTMLElement, options: WorkspaceOptions): Workspace {
   const grid = openGridView(container, isDark(options.theme))
+  const stopDrawing = drawCharts(grid)
   const { api } = grid
   const settings = new Map<string, unknown>()
   const functions = createCustomFunctions(grid)
@@ -127,6 +129,7 @@ export function createWorkspace(container: HTMLElement, options: WorkspaceOption
       return { bytes, name: api.getActiveWorkbook()?.getName() ?? 'Workbook.xlsx' }
     },
     dispose() {
+      stopDrawing()
       functions.dispose()
       grid.dispose()
     },
