@@ -16,6 +16,7 @@ import {
 import { Dismiss16Regular } from '@fluentui/react-icons'
 import { CAUTION, type Books } from '../sheet'
 import { DataView } from './data'
+import { HelpLink } from './help-link'
 import { Sentence } from './place'
 import { RiskView } from './risk'
 import { StatusLine } from './status'
@@ -260,7 +261,9 @@ function Pane({ version }: { version: string }) {
       <Messages />
       <footer className={classes.foot}>
         <span>{CAUTION}</span>
-        <span className={classes.version}>Version {version}</span>
+        <span className={classes.version}>
+          <HelpLink>Help</HelpLink> · Version {version}
+        </span>
       </footer>
     </div>
   )
