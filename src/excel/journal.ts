@@ -9,15 +9,19 @@ import {
   type Json,
 } from '../sheet'
 import { askBars, drawBar, sameBars, type Bar } from './bars'
+import { askCharts, chartUndoing, type ChartsThere, type Redrawing } from './charts'
 import { putLinkBack, targetOf, type LinkedCell, type Target } from './links'
 import { putBack, type Look } from './looks'
 import { FOLD_PREFIX, refold, type Folding } from './outline'
+import { pageUndoing, type SheetPage } from './page'
 import { askSpills, rangeOf } from './reading'
 import { REQUEST_BYTES, type Request, type Requests } from './requests'
 
 /** Settings of ours begin so; the journal of a write under way is one of them. */
 export const SETTING_PREFIX = 'counterpoise.'
 export const JOURNAL_KEY = `${SETTING_PREFIX}journal`
+/** What charts of ours there are, by name; like the journal no setting of the books'. */
+export const DRAWN_KEY = `${SETTING_PREFIX}drawn`
 
 /** What stands in some cells, so that it can be put back to the letter. */
 export interface Ground {
@@ -41,12 +45,19 @@ export interface Survey extends Pick<Ground, 'area' | 'typed'> {
 /** All that a write is about to change, as it stands before. */
 export interface Journal {
   /** the sheet the write makes, and what it fills there */
-  readonly created: { readonly sheet: string; readonly filled: readonly Area[] } | null
+  readonly created: {
+    readonly sheet: string
+    readonly filled: readonly Area[]
+    readonly outOfSight: boolean
+  } | null
   readonly grounds: readonly Ground[]
   readonly looks: readonly Look[]
   readonly links: readonly LinkedCell[]
   /** the bars of ours in the areas a write changes */
   readonly bars: { readonly areas: readonly Area[]; readonly before: readonly Bar[] }
+  readonly charts: Redrawing
+  /** of the sheets whose page the write sets up */
+  readonly pages: readonly SheetPage[]
   /** null where the write groups no rows and ungroups none */
   readonly folding: Folding | null
   readonly widths: readonly { readonly area: Area; readonly points: number }[]
@@ -305,6 +316,8 @@ export async function restore(
     ),
   )
   const bars = await askedBars(sync)
+  const drawn = await chartsThere(request, journal.charts, there)
+  const pages = await pagesThere(request, journal.pages, there)
   const barsBefore = journal.bars.before.filter(({ area }) => there.has(area.sheet))
   // setting a link may change what stands in its cell
   const links = journal.links.filter(({ area }) =>
@@ -343,6 +356,7 @@ export async function restore(
     ...(sameBars(bars.found, barsBefore)
       ? []
       : [step(bars.remove), ...barsBefore.map((bar) => step((context) => drawBar(context, bar)))]),
+    ...pages.flatMap(({ page, named }) => pageUndoing(page, named)),
     ...journal.looks
       .filter(({ area }) => there.has(area.sheet))
       .map((look) => step((context) => putBack(context, look))),
@@ -351,17 +365,60 @@ export async function restore(
       .map(({ area, points }) =>
         step((context) => void (rangeOf(context, area).format.columnWidth = points)),
       ),
+    // over cells as wide as they were
+    ...chartUndoing(journal.charts, drawn),
     ...nameItems.flatMap(({ name, item }) =>
       nameSteps(name, journal.names[name] ?? null, !item.isNullObject),
     ),
     ...settingItems.flatMap(({ key, item }) =>
       settingSteps(key, journal.settings[key] ?? null, !item.isNullObject),
     ),
-    ...(discard ? [step((context) => context.workbook.worksheets.getItem(created.sheet).delete())] : []),
+    ...(discard ? discarding(created) : []),
     step((context) => context.workbook.settings.getItem(JOURNAL_KEY).delete()),
   ]
   await perform(request, steps, expectEcho)
 }
+
+/** The charts of the sheets that a write drew on. */
+async function chartsThere(
+  { context, sync }: Request,
+  { gone, made, renamed }: Redrawing,
+  there: ReadonlySet<string>,
+): Promise<ChartsThere> {
+  const sheets = [...gone, ...made].map(({ of }) => of.sheet).concat(renamed.map(({ sheet }) => sheet))
+  const asked = [...new Set(sheets)]
+    .filter((sheet) => there.has(sheet))
+    .map((sheet) => ({ sheet, charts: askCharts(context, sheet) }))
+  if (asked.length > 0) await sync()
+  return new Map(asked.map(({ sheet, charts }) => [sheet, charts()]))
+}
+
+/** The pages a write set up, with the names of what is printed there now. */
+async function pagesThere(
+  { context, sync }: Request,
+  pages: readonly SheetPage[],
+  there: ReadonlySet<string>,
+): Promise<{ readonly page: SheetPage; readonly named: ReadonlySet<string> }[]> {
+  const asked = pages
+    .filter(({ sheet }) => there.has(sheet))
+    .map((page) => ({
+      page,
+      names: context.workbook.worksheets.getItem(page.sheet).names.load('items/name'),
+    }))
+  if (asked.length > 0) await sync()
+  return asked.map(({ page, names }) => ({ page, named: new Set(names.items.map(({ name }) => name)) }))
+}
+
+/** The steps that take a sheet away again. */
+const discarding = ({ sheet, outOfSight }: NonNullable<Journal['created']>): Step[] => [
+  ...(outOfSight
+    ? [
+        // the host deletes none that is kept out of its lists
+        step(({ workbook }) => void (workbook.worksheets.getItem(sheet).visibility = 'Hidden')),
+      ]
+    : []),
+  step(({ workbook }) => workbook.worksheets.getItem(sheet).delete()),
+]
 
 /** Whether a cell holds neither its old entry nor the write's although time has passed: a user came in between, and it stays. */
 function userCame(

@@ -19,11 +19,13 @@ import {
   type WritePlan,
 } from '../sheet'
 import { askBars, barsOf, drawBar, sameBars } from './bars'
+import { asSetting, askCharts, chartSteps, drawnIn, NO_REDRAWING, redrawing } from './charts'
 import { entryStep, groundOf, runsOf, surveyRuns, type Run } from './entries'
 import { absoluteReference, areasIn, SHEET_COLUMNS, SHEET_ROWS, without } from './addresses'
 import {
   asText,
   bytesOf,
+  DRAWN_KEY,
   JOURNAL_KEY,
   nameSteps,
   perform,
@@ -43,6 +45,7 @@ import {
 import { askLinkedCells, askPlainFont, linkSteps, linksOf } from './links'
 import { dress, looksOf, pointsOf, surveyLooks, undress, unrule } from './looks'
 import { askRefolding, fold, rememberedFolds, unfold, type Folding } from './outline'
+import { askPage, pagesOf, pageStep } from './page'
 import { askSpills, NAME_PREFIX, rangeOf } from './reading'
 import {
   faultOf,
@@ -145,6 +148,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       looks: [],
       links: [],
       bars: { areas: [], before: [] },
+      charts: NO_REDRAWING,
+      pages: [],
       folding: null,
       widths: [],
       names: {},
@@ -191,11 +196,24 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       (key) => [key, settings.getItemOrNullObject(key).load('value')] as const,
     )
     names.load('items/name,items/formula')
+    worksheets.load('items/name')
+    const drawnItem = settings.getItemOrNullObject(DRAWN_KEY).load('value')
+    const drawnOn = [...new Set(fills.map(({ target }) => target.sheet))].map(
+      (sheet) => [sheet, askCharts(context, sheet)] as const,
+    )
     const linked = fills.flatMap(({ patch, target }) => linksOf(patch.table, target).map(({ area }) => area))
     const plainFont = linked.length > 0 ? askPlainFont(context) : null
     await sync()
 
     const there = (sheet: string) => sheets.get(sheet)?.isNullObject === false
+    const known = new Set(worksheets.items.map(({ name }) => name))
+    const drawn = drawnIn(drawnItem.isNullObject ? null : drawnItem.value)
+    const redrawn = redrawing(
+      fills,
+      drawn,
+      new Map(drawnOn.map(([sheet, charts]) => [sheet, charts()])),
+      (sheet) => known.has(sheet),
+    )
     for (const { sheet } of [
       ...fills.map(({ target }) => target).filter((target) => target.sheet !== plan.sheet),
       ...runs.map(({ area }) => area),
@@ -250,7 +268,11 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         return { area, points: pointsOf(characters), format }
       }),
     )
-    if (columns.some(({ format }) => format)) await sync()
+    const pages = pagesOf(fills)
+    const askedPages = pages
+      .filter(({ area }) => there(area.sheet))
+      .map(({ area }) => askPage(context, area.sheet))
+    if (askedPages.length > 0 || columns.some(({ format }) => format)) await sync()
     // columns are only made wider: others may have cells in them
     const wider = columns.filter(({ format, points }) => !format || format.columnWidth < points)
 
@@ -262,11 +284,14 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
           : {
               sheet: makes,
               filled: fills.filter(({ target }) => target.sheet === makes).map(({ target }) => target),
+              outOfSight: plan.outOfSight === true,
             },
       grounds: [...entered.map(groundOf), ...grounds],
       looks,
       links,
       bars: { areas, before: bars.found },
+      charts: redrawn?.work ?? NO_REDRAWING,
+      pages: askedPages.map((page) => page()),
       folding: folding && { before: folding.before, after: folding.after },
       widths: wider.flatMap(({ area, format }) => (format ? [{ area, points: format.columnWidth }] : [])),
       names: Object.fromEntries([
@@ -274,7 +299,10 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         ...(folding?.names ?? []).map(({ name, was }) => [name, was] as const),
       ]),
       settings: Object.fromEntries(
-        settingItems.map(([key, item]) => [key, item.isNullObject ? null : (item.value as Json)]),
+        [...settingItems, ...(redrawn ? [[DRAWN_KEY, drawnItem] as const] : [])].map(([key, item]) => [
+          key,
+          item.isNullObject ? null : (item.value as Json),
+        ]),
       ),
     }
 
@@ -282,7 +310,14 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
     const redraws = !sameBars(bars.found, wanted)
     const steps: Step[] = [
       ...entered.map(entryStep),
-      ...(makes === null ? [] : [step(({ workbook }) => void workbook.worksheets.add(makes))]),
+      ...(makes === null
+        ? []
+        : [
+            step(({ workbook }) => {
+              const sheet = workbook.worksheets.add(makes)
+              if (plan.outOfSight) sheet.visibility = 'VeryHidden'
+            }),
+          ]),
       ...fills.flatMap(({ patch, target, leftovers }) => [
         ...leftovers
           .filter(({ sheet }) => there(sheet))
@@ -296,6 +331,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
       ...wider.map(({ area, points }) =>
         step((queue) => void (rangeOf(queue, area).format.columnWidth = points)),
       ),
+      ...(redrawn ? chartSteps(redrawn.work) : []),
+      ...pages.map(pageStep),
       ...nameItems.flatMap(([name, item]) => {
         const area = keep[name] ?? null
         return nameSteps(name, area && absoluteReference(area), !item.isNullObject)
@@ -304,6 +341,7 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         nameSteps(name, is && absoluteReference(is), was !== null),
       ),
       ...settingItems.flatMap(([key, item]) => settingSteps(key, remember[key] ?? null, !item.isNullObject)),
+      ...(redrawn ? settingSteps(DRAWN_KEY, asSetting(redrawn.drawn), !drawnItem.isNullObject) : []),
     ]
     await commit(request, place, journal, steps)
   }
@@ -324,7 +362,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         }
         await lay(request, plan, fills, runs, place)
       },
-      { oneUndo },
+      // a host that cannot undo a change of visibility would refuse the whole
+      { oneUndo: oneUndo && !plan.outOfSight },
     )
   }
 
@@ -372,7 +411,8 @@ export function openWriter(requests: Requests, expectEcho: (area: Area) => void)
         await sync()
         known.clear()
         for (const { key, value } of settings.items) {
-          if (key.startsWith(SETTING_PREFIX) && key !== JOURNAL_KEY) known.set(key, value as Json)
+          if (key.startsWith(SETTING_PREFIX) && key !== JOURNAL_KEY && key !== DRAWN_KEY)
+            known.set(key, value as Json)
         }
         return Object.fromEntries([...known].map(([key, value]) => [key.slice(SETTING_PREFIX.length), value]))
       }),

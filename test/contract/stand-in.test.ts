@@ -6,8 +6,8 @@
  *
  * Numbers are entered by the tests themselves; nothing is rounded, so they are compared exactly.
  */
-import { createOffice, levelOf, userOf, type OfficeOptions } from '../../src/desk/office'
-import { headlessGrid } from '../../src/desk/grid'
+import { createOffice, levelOf, pageOf, userOf, type OfficeOptions } from '../../src/desk/office'
+import { headlessGrid, type Grid } from '../../src/desk/grid'
 
 const opened: { dispose(): void }[] = []
 
@@ -46,6 +46,10 @@ const code = (promise: Promise<unknown>) =>
 
 /** The sheet of a new workbook. */
 const first = 'Sheet1'
+
+/** How the page of a sheet is kept for the file. */
+const pageIn = (grid: Grid, sheet: string) =>
+  pageOf(grid.api.getActiveWorkbook()?.getSheetByName(sheet)?.getSheet().getConfig() ?? {})
 
 describe('Requests', () => {
   test('operations wait for sync and then happen in order, reads among them', async () => {
@@ -1017,23 +1021,99 @@ describe('Sheets', () => {
     expect(grid.api.getActiveWorkbook()?.getSheetByName('Front')?.getFreeze().ySplit).toBe(2)
   })
 
-  test('page setup is kept for the file', async () => {
-    const { Excel, standIn } = desk()
+  /** Excel.PageLayout, Excel.HeaderFooter */
+  test('the page is kept for the file, what is set of it and nothing else', async () => {
+    const { Excel, grid } = desk()
     await Excel.run(async (context) => {
       const sheet = context.workbook.worksheets.getItem(first)
-      sheet.pageLayout.orientation = 'Landscape'
-      sheet.pageLayout.setPrintArea('A1:D20')
-      sheet.pageLayout.headersFooters.defaultForAllPages.centerFooter = 'an estimate'
-      sheet.pageLayout.load('orientation')
+      const { pageLayout } = sheet
+      pageLayout.orientation = 'Landscape'
+      pageLayout.paperSize = 'Letter'
+      pageLayout.zoom = { horizontalFitToPages: 1 }
+      pageLayout.topMargin = 36
+      pageLayout.setPrintArea('A1:D20')
+      pageLayout.setPrintTitleRows(sheet.getRange('1:2'))
+      pageLayout.headersFooters.defaultForAllPages.centerFooter = 'an estimate'
+      pageLayout.load('orientation,zoom,bottomMargin')
+      const area = pageLayout.getPrintArea().load('address')
+      const rows = pageLayout.getPrintTitleRowsOrNullObject()
+      const columns = pageLayout.getPrintTitleColumnsOrNullObject()
+      rows.load('address')
+      columns.load('address')
       await context.sync()
-      expect(sheet.pageLayout.orientation).toBe('Landscape')
+      expect(pageLayout.orientation).toBe('Landscape')
+      expect(pageLayout.zoom).toEqual({ scale: null, horizontalFitToPages: 1, verticalFitToPages: null })
+      // from memory
+      expect(pageLayout.bottomMargin).toBe(54)
+      expect([area.address, rows.address, columns.isNullObject]).toEqual([
+        'Sheet1!A1:D20',
+        'Sheet1!1:2',
+        true,
+      ])
     })
-    const { page } = standIn.extras(first)
-    expect([...page]).toEqual([
-      ['orientation', 'Landscape'],
-      ['printArea', 'Sheet1!A1:D20'],
-      ['headersFooters.centerFooter', 'an estimate'],
-    ])
+    expect(pageIn(grid, first)).toEqual({
+      orientation: 'Landscape',
+      paper: 'Letter',
+      zoom: { scale: null, horizontalFitToPages: 1, verticalFitToPages: null },
+      margins: { top: 36 },
+      printArea: '$A$1:$D$20',
+      titleRows: '$1:$2',
+      texts: { centerFooter: 'an estimate' },
+    })
+  })
+
+  test('what is printed follows inserted rows, and is unset by deleting the name it is kept under', async () => {
+    const { Excel, user, grid } = desk()
+    await Excel.run(async (context) => {
+      const { pageLayout } = context.workbook.worksheets.getItem(first)
+      pageLayout.setPrintArea('B2:D20')
+      pageLayout.setPrintTitleRows('$2:$3')
+      await context.sync()
+    })
+    user.insertRows(first, 1, 2)
+    expect(pageIn(grid, first)).toEqual({ printArea: '$B$4:$D$22', titleRows: '$4:$5' })
+    await Excel.run(async (context) => {
+      const names = context.workbook.worksheets.getItem(first).names.load('items/name')
+      await context.sync()
+      expect(names.items.map(({ name }) => name)).toEqual(['Print_Area', 'Print_Titles'])
+      names.getItem('Print_Area').delete()
+      await context.sync()
+      const gone = names.getItemOrNullObject('Print_Area').load('name')
+      await context.sync()
+      expect(gone.isNullObject).toBe(true)
+    })
+    expect(pageIn(grid, first)).toEqual({ titleRows: '$4:$5' })
+  })
+
+  test.each([
+    ['titles that are no whole rows', (layout: Excel.PageLayout) => layout.setPrintTitleRows('A1:B2')],
+    [
+      'a scale beside a number of pages',
+      (layout: Excel.PageLayout) => void (layout.zoom = { scale: 50, verticalFitToPages: 1 }),
+    ],
+    ['a paper nobody knows', (layout: Excel.PageLayout) => void (layout.paperSize = 'A0' as 'A4')],
+    ['a negative margin', (layout: Excel.PageLayout) => void (layout.leftMargin = -1)],
+  ])('the page refuses %s', async (_, set) => {
+    const { Excel } = desk()
+    await Excel.run(async (context) => {
+      set(context.workbook.worksheets.getItem(first).pageLayout)
+      expect(await code(context.sync())).toBe('InvalidArgument')
+    })
+  })
+
+  /** Excel.Worksheet.delete: "if the worksheet's visibility is set to VeryHidden, the delete operation will fail with an InvalidOperation" */
+  test('a very hidden sheet is deleted only after it is hidden as others are', async () => {
+    const { Excel } = desk()
+    await Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.add('Kept')
+      sheet.visibility = 'VeryHidden'
+      await context.sync()
+      sheet.delete()
+      expect(await code(context.sync())).toBe('InvalidOperation')
+      sheet.visibility = 'Hidden'
+      sheet.delete()
+      await context.sync()
+    })
   })
 
   test('cells are found by place as well as by address', async () => {

@@ -4,7 +4,7 @@
  * settings. All numbers are the tests' own.
  */
 import { excelWorkbook } from '../../src/excel'
-import { parseAddress, type Area, type Table, type WritePlan } from '../../src/sheet'
+import { parseAddress, type Area, type Table, type TableChart, type WritePlan } from '../../src/sheet'
 import { formulaCell } from '../../src/sheet/table'
 import {
   breakdown,
@@ -32,6 +32,38 @@ type Opened = ReturnType<typeof open>
 
 const hasFormulas = ({ cells }: Table) =>
   cells.some((row) => row.some(({ formula }) => formula !== undefined))
+
+/** Formulas over E3:E4 with charts of them, on a page. */
+function drawnTable(...charts: Partial<TableChart>[]): Table {
+  const span = (row: number, column: number) => ({ row, column, rows: 2, columns: 1 })
+  return {
+    ...tableOf([
+      [text('Largest', 'title'), { value: '', format: 'General' }],
+      [text('Holding', 'head'), text('=Weight', 'head')],
+      [text('Alder'), formulaCell('=Sheet1!$E$3/10', '0.0%')],
+      [text('Beech'), formulaCell('=Sheet1!$E$4/10', '0.0%')],
+      [text('Total', 'total'), number(1)],
+    ]),
+    charts: charts.map((chart) => ({
+      kind: 'bars',
+      title: 'Weights',
+      alt: 'Bars.',
+      over: { row: 0, column: 0, rows: 5, columns: 2 },
+      categories: span(2, 0),
+      series: [{ name: 'Weight', values: span(2, 1) }],
+      format: '0%',
+      ...chart,
+    })),
+    page: {
+      paper: 'A4',
+      orientation: 'landscape',
+      onePage: true,
+      repeatedRows: 2,
+      header: { left: 'Alder & Beech', right: 'Data to 2024-05-31' },
+      footer: 'An estimate.',
+    },
+  }
+}
 
 /** Workbooks to write to, with the plan for each. */
 const cases: Record<string, (opened: Opened) => Promise<WritePlan> | WritePlan> = {
@@ -165,6 +197,42 @@ const cases: Record<string, (opened: Opened) => Promise<WritePlan> | WritePlan> 
     await book.write({ patches: [{ at, table: filling(1), over: 'blank' }] })
     return { patches: [{ at, table: filling(4), over: 'blank', ours: area('B2:C4') }] }
   },
+  'a first write of formulas, charts and a page, with a sheet out of sight': ({ user }) => {
+    user.type('Sheet1', 'E3', [[2], [3]])
+    return {
+      sheet: 'Records',
+      outOfSight: true,
+      patches: [
+        { at, table: drawnTable({}), over: 'blank' },
+        { at: { ...at, sheet: 'Records' }, table: tableOf([[text('kept'), number(1)]]), over: 'blank' },
+      ],
+      remember: { history: ['one'] },
+    }
+  },
+  'a write that draws otherwise than the earlier table, on a page of the user’s, beside a chart of the user’s':
+    async ({ book, office }) => {
+      await book.write({
+        patches: [{ at, table: drawnTable({}, { kind: 'columns', alt: 'Columns.' }), over: 'blank' }],
+      })
+      await office.Excel.run(async (context) => {
+        const sheet = context.workbook.worksheets.getItem('Sheet1')
+        sheet.charts.add('Line', sheet.getRange('C4:C5')).name = 'mine'
+        sheet.pageLayout.setPrintArea('A1:Z9')
+        sheet.pageLayout.setPrintTitleColumns('A:A')
+        sheet.pageLayout.zoom = { scale: 80 }
+        await context.sync()
+      })
+      return {
+        patches: [
+          {
+            at,
+            table: drawnTable({ alt: 'Bars of June.' }, { kind: 'line', alt: 'Columns.' }),
+            over: 'blank',
+            ours: area('B2:C6'),
+          },
+        ],
+      }
+    },
   'a refresh of values and a setting': async ({ user, book }) => {
     user.type('Sheet1', 'B10', '=SUM(C4:C6)')
     await book.write({ patches: [{ at, table: breakdown(), over: 'blank' }], remember: { seen: 1 } })

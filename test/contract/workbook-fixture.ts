@@ -2,7 +2,16 @@
 import { CellValueType } from '@univerjs/core'
 import { VerticalAlign, WrapStrategy } from '@univerjs/core'
 import { headlessGrid } from '../../src/desk/grid'
-import { barOf, createOffice, levelOf, linkOf, userOf, type OfficeOptions } from '../../src/desk/office'
+import {
+  barOf,
+  chartsOf,
+  createOffice,
+  levelOf,
+  linkOf,
+  pageOf,
+  userOf,
+  type OfficeOptions,
+} from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
 import type { Table, TableCell, Workbook } from '../../src/sheet'
 
@@ -65,7 +74,17 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
       const widths = Array.from({ length: 12 }, (_, column) => sheet.getColumnWidth(column))
       const { rowData } = inner.getConfig()
       const levels = Array.from({ length: 30 }, (_, row) => levelOf(rowData[row]))
-      return { name: sheet.getSheetName(), cells, rules, widths, levels }
+      const config = inner.getConfig()
+      return {
+        name: sheet.getSheetName(),
+        cells,
+        rules,
+        widths,
+        levels,
+        charts: chartsOf(config),
+        page: pageOf(config),
+        visibility: config.custom?.['visibility'] ?? config.hidden,
+      }
     })
     const names = workbook
       ?.getDefinedNames()

@@ -70,14 +70,19 @@ import {
 } from './addresses'
 import {
   barOf,
+  chartsOf,
   levelOf,
   linkOf,
+  pageOf,
   withBar,
+  withDrawn,
   withLevel,
   withLink,
   type DataBar,
   type Line,
   type Link,
+  type SheetChart,
+  type SheetPage,
 } from './custom-data'
 import { OfficeError } from './error'
 
@@ -94,7 +99,6 @@ export interface StoredCell {
 /** What a sheet carries beside its cells and the grid has no place for. */
 export interface SheetExtras {
   protected: boolean
-  readonly page: Map<string, unknown>
 }
 
 /** A table as the grid's table plug-in describes it. */
@@ -285,7 +289,7 @@ export class Book {
   extras(sheet: Worksheet): SheetExtras {
     const known = this.#extras.get(sheet)
     if (known) return known
-    const made: SheetExtras = { protected: false, page: new Map() }
+    const made: SheetExtras = { protected: false }
     this.#extras.set(sheet, made)
     return made
   }
@@ -779,6 +783,30 @@ export class Sheet {
       },
       false,
     )
+  }
+
+  get charts(): readonly SheetChart[] {
+    return chartsOf(this.#grid.getConfig())
+  }
+
+  set charts(charts: readonly SheetChart[]) {
+    this.guard()
+    this.keep({ charts })
+  }
+
+  get page(): SheetPage {
+    return pageOf(this.#grid.getConfig())
+  }
+
+  set page(page: SheetPage) {
+    this.guard()
+    this.keep({ page })
+  }
+
+  /** Keeps charts or the page with the sheet, protected or not. The grid knows neither, so its undo passes them by. */
+  keep(drawn: { readonly charts?: readonly SheetChart[]; readonly page?: SheetPage }): void {
+    const config = this.#grid.getConfig()
+    config.custom = withDrawn(drawn, config).custom
   }
 
   /** How deep a row or column is folded, 0 outermost. */

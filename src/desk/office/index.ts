@@ -2,14 +2,17 @@
  * A strict stand-in for the Office JavaScript API over a grid: the same objects, the same queue, the same refusals. Where the host's
  * documentation leaves room, the stand-in takes the side that breaks careless code; what it does not have, it says it has not.
  */
+import { SetWorksheetNameMutation } from '@univerjs/sheets'
 import type { Grid } from '../grid'
 import { Book, ENGLISH, type Culture, type SheetExtras } from './book'
+import { renameInCharts, shiftCharts } from './charts'
 import { OfficeError } from './error'
 import { Events } from './events'
 import { officeGlobal, type Theme } from './office'
 import { placeOfReference } from './range'
 import { RequestContext, payloadSize, run, type Kind, type Operation, type Runtime } from './request-context'
 import { ROOT } from './workbook'
+import { shiftPage } from './worksheet'
 
 export type { Culture, SheetExtras } from './book'
 export {
@@ -76,7 +79,7 @@ export interface OfficeStandIn {
   /** Whether the user is in the middle of editing a cell. */
   editing: boolean
   protect(sheet: string, on: boolean): void
-  /** What the grid cannot keep of a sheet, by name or id: its protection and page setup. */
+  /** What the grid cannot keep of a sheet, by name or id: its protection. */
   extras(sheet: string): SheetExtras
   /** Does what a press on a cell does: goes where its link leads in this workbook. Links out of it are not followed. */
   press(sheet: string, row: number, column: number): void
@@ -129,7 +132,18 @@ class Host implements Runtime {
     readonly options: OfficeOptions,
   ) {
     this.book = new Book(grid, options.culture ?? ENGLISH, options.settings ?? new Map<string, unknown>())
-    this.events = new Events(this.book, (change) => this.contexts.forEach((context) => context.shift(change)))
+    this.events = new Events(this.book, (change) => {
+      this.contexts.forEach((context) => context.shift(change))
+      const sheets = this.book.sheets()
+      shiftCharts(sheets, change)
+      for (const sheet of sheets) if (sheet.id === change.sheet) shiftPage(sheet, change)
+    })
+    this.book.commands.beforeCommandExecuted(({ id, params }) => {
+      if (id !== SetWorksheetNameMutation.id) return
+      const { subUnitId, name } = params as { subUnitId: string; name: string }
+      const before = this.book.sheet(subUnitId)?.name
+      if (before !== undefined) renameInCharts(this.book.sheets(), before, name)
+    })
   }
 
   get root(): Book {

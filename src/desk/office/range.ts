@@ -180,7 +180,7 @@ function worded(
   )
 }
 
-function colour(value: string): { rgb: string } {
+export function colour(value: string): { rgb: string } {
   const named = /^#[0-9a-f]{6}$/i.test(value) ? value : NAMED_COLOURS[value.toLowerCase()]
   if (!named) throw new OfficeError('InvalidArgument', `"${value}" is no colour`)
   return { rgb: named.toUpperCase() }
@@ -647,7 +647,7 @@ const other = (place: Place, given: Place | string): Place =>
   typeof given === 'string' ? placeAt(place.sheet, given) : given
 
 /** Where a block lies after lines came or went; a block that loses some of its lines shrinks, one that loses all is gone. */
-function shifted(rect: Rect, { axis, at: line, count }: Shift): Rect | null {
+export function shifted(rect: Rect, { axis, at: line, count }: Shift): Rect | null {
   const [first, last] = axis === 'row' ? [rect.top, rect.bottom] : [rect.left, rect.right]
   if ((axis === 'row' && isEntireColumn(rect)) || (axis === 'column' && isEntireRow(rect))) return rect
   const gone = (edge: number) => Math.max(0, Math.min(edge - line, -count))

@@ -1,9 +1,11 @@
 /** Worksheets and what hangs on one: protection, panes, the page. */
-import { COLUMNS, ROWS, rectAt } from './addresses'
+import { COLUMNS, ROWS, formatRect, isEntireColumn, isEntireRow, rectAt } from './addresses'
 import type { Sheet } from './book'
+import { CHARTS } from './charts'
+import type { SheetPage } from './custom-data'
 import { OfficeError } from './error'
-import { RANGE, fullAddress, placeAt, type Place } from './range'
-import type { Find, Kind, Scalar } from './request-context'
+import { RANGE, RANGE_AREAS, placeAt, shifted, type Place, type Places } from './range'
+import type { Find, Kind, Scalar, Shift } from './request-context'
 
 const range = () => RANGE
 
@@ -36,31 +38,41 @@ const FREEZE_PANES: Kind<Sheet> = {
   },
 }
 
-/** Properties the grid does not draw: kept as they are set, for the file. */
-const kept = (prefix: string, defaults: Readonly<Record<string, unknown>>): Record<string, Scalar<Sheet>> =>
-  Object.fromEntries(
-    Object.entries(defaults).map(([key, value]) => [
-      key,
-      {
-        read: (sheet: Sheet) => sheet.extras.page.get(prefix + key) ?? value,
-        write: (sheet: Sheet, given: unknown) => {
-          sheet.guard()
-          sheet.extras.page.set(prefix + key, given)
-        },
-      },
-    ]),
-  )
+/** A property of the page, kept as it is set. */
+const kept = <K extends keyof SheetPage>(
+  key: K,
+  usual: SheetPage[K],
+  accepts: (value: SheetPage[K]) => boolean,
+): Scalar<Sheet> => ({
+  read: (sheet) => sheet.page[key] ?? usual,
+  write: (sheet: Sheet, value: SheetPage[K]) => {
+    if (!accepts(value)) throw new OfficeError('InvalidArgument', `${key} of a page`)
+    sheet.page = { ...sheet.page, [key]: value }
+  },
+})
+
+const isTruth = (value: unknown): boolean => typeof value === 'boolean'
+
+const text = (key: keyof NonNullable<SheetPage['texts']>): Scalar<Sheet> => ({
+  read: (sheet) => sheet.page.texts?.[key] ?? '',
+  write: (sheet: Sheet, value: string) => {
+    // a file holds the three parts of a header in 255 characters (from memory)
+    if (typeof value !== 'string' || value.length > 255)
+      throw new OfficeError('InvalidArgument', 'a header or footer has at most 255 characters')
+    sheet.page = { ...sheet.page, texts: { ...sheet.page.texts, [key]: value } }
+  },
+})
 
 const HEADER_FOOTER: Kind<Sheet> = {
   name: 'HeaderFooter',
-  scalars: kept('headersFooters.', {
-    leftHeader: '',
-    centerHeader: '',
-    rightHeader: '',
-    leftFooter: '',
-    centerFooter: '',
-    rightFooter: '',
-  }),
+  scalars: {
+    leftHeader: text('leftHeader'),
+    centerHeader: text('centerHeader'),
+    rightHeader: text('rightHeader'),
+    leftFooter: text('leftFooter'),
+    centerFooter: text('centerFooter'),
+    rightFooter: text('rightFooter'),
+  },
 }
 
 const HEADERS_FOOTERS: Kind<Sheet> = {
@@ -68,34 +80,156 @@ const HEADERS_FOOTERS: Kind<Sheet> = {
   parts: { defaultForAllPages: { kind: () => HEADER_FOOTER, find: (sheet) => sheet } },
 }
 
-const printed = (key: string) => (sheet: Sheet, given: Place | string) => {
-  sheet.guard()
-  sheet.extras.page.set(key, fullAddress(typeof given === 'string' ? placeAt(sheet, given) : given))
+/** The host's usual margins, in points (from memory). */
+const MARGINS = { top: 54, bottom: 54, left: 50.4, right: 50.4, header: 21.6, footer: 21.6 }
+
+const margin = (side: keyof typeof MARGINS): Scalar<Sheet> => ({
+  read: (sheet) => sheet.page.margins?.[side] ?? MARGINS[side],
+  write: (sheet: Sheet, points: number) => {
+    if (!(points >= 0)) throw new OfficeError('InvalidArgument', `${points} points are no margin`)
+    sheet.page = { ...sheet.page, margins: { ...sheet.page.margins, [side]: points } }
+  },
+})
+
+/** Excel.PageLayoutZoomOptions: a scale of 10 to 400 percent, or pages; the one is null where the other is given. */
+function isZoom({
+  scale,
+  horizontalFitToPages: wide,
+  verticalFitToPages: tall,
+}: NonNullable<SheetPage['zoom']>) {
+  const fits = [wide, tall].filter((pages) => pages !== null && pages !== undefined)
+  if (scale !== null && scale !== undefined) return fits.length === 0 && scale >= 10 && scale <= 400
+  return fits.length > 0 && fits.every((pages) => Number.isInteger(pages) && pages > 0)
+}
+
+const NO_ZOOM = { scale: null, horizontalFitToPages: null, verticalFitToPages: null }
+
+type Printed = 'printArea' | 'titleRows' | 'titleColumns'
+
+const isWhole = { printArea: () => true, titleRows: isEntireRow, titleColumns: isEntireColumn }
+
+/** Excel.PageLayout: the range of titles has to span whole rows, or whole columns. */
+const setPrinted = (key: Printed) => (sheet: Sheet, given: Place | string) => {
+  const { rect, sheet: on } = typeof given === 'string' ? placeAt(sheet, given) : given
+  if (on.id !== sheet.id || !isWhole[key](rect))
+    throw new OfficeError('InvalidArgument', 'titles of a page are whole rows or columns of its sheet')
+  sheet.page = { ...sheet.page, [key]: formatRect(rect, true) }
+}
+
+const findPrinted = (sheet: Sheet, key: Printed): Place | null => {
+  const address = sheet.page[key]
+  return address === undefined ? null : placeAt(sheet, address)
+}
+
+/** The two ways to ask for a part of the page that may not be set. */
+const printed = (name: string, key: Printed): Record<string, Find<Sheet>> => {
+  const found: Pick<Find<Sheet>, 'kind' | 'find'> = key === 'printArea'
+    ? {
+        kind: () => RANGE_AREAS,
+        find: (sheet): Places | null => {
+          const place = findPrinted(sheet, key)
+          return place && { sheet, rects: [place.rect] }
+        },
+      }
+    : { kind: range, find: (sheet) => findPrinted(sheet, key) }
+  return { [`get${name}`]: found, [`get${name}OrNullObject`]: { ...found, orNull: true } }
 }
 
 const PAGE_LAYOUT: Kind<Sheet> = {
   name: 'PageLayout',
-  scalars: kept('', {
-    orientation: 'Portrait',
-    paperSize: 'A4',
-    zoom: { scale: 100 },
-    centerHorizontally: false,
-    centerVertically: false,
-    printGridlines: false,
-    printHeadings: false,
-    topMargin: 54,
-    bottomMargin: 54,
-    leftMargin: 50.4,
-    rightMargin: 50.4,
-    headerMargin: 21.6,
-    footerMargin: 21.6,
-  }),
-  parts: { headersFooters: { kind: () => HEADERS_FOOTERS, find: (sheet) => sheet } },
-  acts: {
-    setPrintArea: printed('printArea'),
-    setPrintTitleRows: printed('printTitleRows'),
-    setPrintTitleColumns: printed('printTitleColumns'),
+  scalars: {
+    orientation: kept('orientation', 'Portrait', (value) => value === 'Portrait' || value === 'Landscape'),
+    paperSize: kept('paper', 'A4', (value) =>
+      ['A3', 'A4', 'A5', 'Letter', 'Legal', 'Tabloid'].includes(value ?? ''),
+    ),
+    zoom: {
+      read: (sheet) => ({ ...NO_ZOOM, ...(sheet.page.zoom ?? { scale: 100 }) }),
+      write: (sheet: Sheet, zoom: NonNullable<SheetPage['zoom']>) => {
+        if (typeof zoom !== 'object' || !isZoom(zoom))
+          throw new OfficeError('InvalidArgument', 'zoom of a page')
+        sheet.page = { ...sheet.page, zoom: { ...NO_ZOOM, ...zoom } }
+      },
+    },
+    centerHorizontally: kept('centerHorizontally', false, isTruth),
+    centerVertically: kept('centerVertically', false, isTruth),
+    printGridlines: kept('printGridlines', false, isTruth),
+    printHeadings: kept('printHeadings', false, isTruth),
+    topMargin: margin('top'),
+    bottomMargin: margin('bottom'),
+    leftMargin: margin('left'),
+    rightMargin: margin('right'),
+    headerMargin: margin('header'),
+    footerMargin: margin('footer'),
   },
+  parts: { headersFooters: { kind: () => HEADERS_FOOTERS, find: (sheet) => sheet } },
+  finds: {
+    ...printed('PrintArea', 'printArea'),
+    ...printed('PrintTitleRows', 'titleRows'),
+    ...printed('PrintTitleColumns', 'titleColumns'),
+  },
+  acts: {
+    setPrintArea: setPrinted('printArea'),
+    setPrintTitleRows: setPrinted('titleRows'),
+    setPrintTitleColumns: setPrinted('titleColumns'),
+  },
+}
+
+const pageWithout = (page: SheetPage, keys: readonly Printed[]): SheetPage =>
+  Object.fromEntries(Object.entries(page).filter(([key]) => !keys.some((known) => known === key)))
+
+/** A name of one sheet. Of those the desk has only the host's own for what is printed (from memory: it lists them, and deleting one unsets it). */
+interface PrintName {
+  readonly sheet: Sheet
+  readonly name: string
+}
+
+const PRINT_NAMES: Readonly<Record<string, readonly Printed[]>> = {
+  Print_Area: ['printArea'],
+  Print_Titles: ['titleRows', 'titleColumns'],
+}
+
+const isSet = ({ sheet, name }: PrintName): boolean =>
+  (PRINT_NAMES[name] ?? []).some((key) => sheet.page[key] !== undefined)
+
+const PRINT_NAME: Kind<PrintName> = {
+  name: 'NamedItem',
+  check: (name) => {
+    if (!isSet(name)) throw new OfficeError('ItemNotFound', `there is no name "${name.name}"`)
+  },
+  scalars: { name: { read: ({ name }) => name }, scope: { read: () => 'Worksheet' } },
+  acts: {
+    delete: ({ sheet, name }) => {
+      sheet.page = pageWithout(sheet.page, PRINT_NAMES[name] ?? [])
+    },
+  },
+}
+
+const findPrintName = (sheet: Sheet, name: string): PrintName | null =>
+  isSet({ sheet, name }) ? { sheet, name } : null
+
+const SHEET_NAMES: Kind<Sheet> = {
+  name: 'NamedItemCollection',
+  list: {
+    kind: () => PRINT_NAME,
+    read: (sheet) => Object.keys(PRINT_NAMES).flatMap((name) => findPrintName(sheet, name) ?? []),
+  },
+  finds: {
+    getItem: { kind: () => PRINT_NAME, find: findPrintName },
+    getItemOrNullObject: { kind: () => PRINT_NAME, orNull: true, find: findPrintName },
+  },
+}
+
+/** Lets what is printed follow cells when lines of the sheet come or go. */
+export function shiftPage(sheet: Sheet, change: Shift): void {
+  const { page } = sheet
+  const followed = (['printArea', 'titleRows', 'titleColumns'] as const).flatMap((key) => {
+    const place = findPrinted(sheet, key)
+    const rect = place && shifted(place.rect, change)
+    return rect ? [[key, formatRect(rect, true)] as const] : []
+  })
+  const others = pageWithout(page, ['printArea', 'titleRows', 'titleColumns'])
+  if (Object.keys(others).length < Object.keys(page).length)
+    sheet.keep({ page: { ...others, ...Object.fromEntries(followed) } })
 }
 
 function usedRange(orNull: boolean): Find<Sheet> {
@@ -163,6 +297,8 @@ export const WORKSHEET: Kind<Sheet> = {
     protection: { kind: () => PROTECTION, find: (sheet) => sheet },
     freezePanes: { kind: () => FREEZE_PANES, find: (sheet) => sheet },
     pageLayout: { kind: () => PAGE_LAYOUT, find: (sheet) => sheet },
+    charts: { kind: () => CHARTS, find: (sheet) => sheet },
+    names: { kind: () => SHEET_NAMES, find: (sheet) => sheet },
   },
   finds: {
     getRange: {
@@ -191,6 +327,8 @@ export const WORKSHEET: Kind<Sheet> = {
     },
     delete: (sheet) => {
       mustLeaveOne(sheet)
+      // Excel.Worksheet.delete: such a sheet has to be made visible or hidden first
+      if (sheet.isVeryHidden) throw new OfficeError('InvalidOperation', 'the sheet is very hidden')
       sheet.book.workbook.deleteSheet(sheet.id)
     },
   },
