@@ -98,7 +98,6 @@ export function redrawing(
   if (idle && JSON.stringify(list) === JSON.stringify(drawn)) return null
   return { work: { gone, made, renamed }, drawn: list }
 }
-}
 
 /** Whether a name is a sentence of ours, with or without the number that tells it from another. */
 const isNamed = (name: string, alt: string): boolean =>
