@@ -132,6 +132,8 @@ function shortened(name: string, width: number, counts: ReadonlyMap<string, numb
   for (const k of [...words.keys()].sort((a, b) => count(a) - count(b) || a - b)) {
     const more = new Set([...kept, k])
     if (widthOf(withDots(more)) <= width) kept = more
+    // short words from here and there would say nothing
+    else if (kept.size > 0) break
   }
   return kept.size > 0 ? withDots(kept) : `${name.slice(0, Math.floor(width / 1.5) - 1)}…`
 }
