@@ -26,7 +26,7 @@ export function askCharts(context: Excel.RequestContext, sheet: string): () => s
 
 /** What a write does about charts. */
 export interface Redrawing {
-  /** they go; one that an undone write took away comes back drawn anew: colours, fonts and places its user gave it do not */
+  /** they go; one that an undone write took away comes back drawn anew: colours, fonts and a place that its user gave it do not, and it lies over others */
   readonly gone: readonly DrawnChart[]
   readonly made: readonly DrawnChart[]
   readonly renamed: readonly { readonly sheet: string; readonly from: string; readonly to: string }[]

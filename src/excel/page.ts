@@ -26,7 +26,6 @@ const LAYOUT = [
   'rightMargin',
   'headerMargin',
   'footerMargin',
-  'centerHorizontally',
 ] as const
 
 const TEXTS = [

@@ -11,6 +11,7 @@ import {
   pageOf,
   userOf,
   type OfficeOptions,
+  type SheetPage,
 } from '../../src/desk/office'
 import { excelWorkbook } from '../../src/excel'
 import type { Table, TableCell, Workbook } from '../../src/sheet'
@@ -81,8 +82,9 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
         rules,
         widths,
         levels,
-        charts: chartsOf(config),
-        page: pageOf(config),
+        // which of them lies over another is not put back
+        charts: [...chartsOf(config)].sort((a, b) => (a.name < b.name ? -1 : 1)),
+        page: pageSaid(pageOf(config)),
         visibility: config.custom?.['visibility'] ?? config.hidden,
       }
     })
@@ -104,6 +106,19 @@ export function open(options?: OfficeOptions, filled?: readonly (readonly (numbe
     })
 
   return { office, grid, user, book, settle, portrait, cells }
+}
+
+/** A page without what is as the host has it anyway (its usual values, from memory). */
+function pageSaid({ margins, texts, zoom, paper, orientation, ...printed }: SheetPage): unknown {
+  const usual = { top: 54, bottom: 54, left: 50.4, right: 50.4, header: 21.6, footer: 21.6 }
+  return bare({
+    ...printed,
+    margins: { ...usual, ...margins },
+    texts,
+    zoom: zoom ?? { scale: 100 },
+    paper: paper ?? 'A4',
+    orientation: orientation ?? 'Portrait',
+  })
 }
 
 /** Typing large blocks takes long; a workbook opened with them does not. */
