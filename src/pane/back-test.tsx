@@ -99,7 +99,23 @@ export default function BackTest({
       {studies.outdated.backtest && (
         <p className={classes.text}>The figures have changed since it was run. Run it again for these.</p>
       )}
-      {studies.backtest && <Outcome study={studies.backtest} />}
+      {studies.backtest && (
+        <>
+          <Outcome study={studies.backtest} />
+          <div className={classes.buttons}>
+            <Button
+              size="small"
+              disabledFocusable={working !== null}
+              onClick={() => {
+                asked()
+                void books.writeStudy('back-test')
+              }}
+            >
+              Write back-test
+            </Button>
+          </div>
+        </>
+      )}
     </>
   )
 }

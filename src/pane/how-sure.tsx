@@ -122,6 +122,17 @@ function DrawnAnew({ breakdown, state, fault, asked }: Asked) {
             />
           )}
           <p className={classes.text}>{study.method}.</p>
+          <Button
+            size="small"
+            className={classes.action}
+            disabledFocusable={working !== null}
+            onClick={() => {
+              asked()
+              void books.writeStudy('bootstrap')
+            }}
+          >
+            Write bootstrap
+          </Button>
         </>
       )}
     </Section>

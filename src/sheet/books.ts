@@ -13,6 +13,7 @@ import type { HoldingsReading } from './holdings'
 import type { CheckLine } from './inspection'
 import type { Cause, Field, Proposal, Status } from './linked-book'
 import { LinkedBook } from './linked-book'
+import type { CommitteeChoice, ReportingState } from './reporting'
 import type { ReturnsReading } from './returns'
 import type { Role, Settings } from './settings'
 import type { RiskLowerings, Sizing } from './sizing'
@@ -60,6 +61,8 @@ export interface BooksState {
   readonly linked: boolean
   /** where the linked table lies */
   readonly table: Area | null
+  /** what else of the book has left the pane, and the results that are kept */
+  readonly reporting: ReportingState
   readonly status: Status
   readonly working: Working | null
   /** the one sentence at the field concerned */
@@ -101,8 +104,23 @@ export interface Books {
   /** @param of the book's own past at today's weights, or a selected block of returns and forecasts */
   backtest(choice: BacktestChoice, of: 'this book' | 'selection'): Promise<void>
   writeTable(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
+  /** Writes a table of functions that are live in cells, beside the linked one. */
+  writeLive(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void>
+  /** Writes the formulas that recompute the figures, or brings them along where they lie. */
+  writeProof(): Promise<void>
+  /** Writes one printable page. */
+  writeCommittee(choice: CommitteeChoice): Promise<void>
+  /** Keeps the figures with their date; an offer asks where that would replace a kept result. */
+  keepResult(note: string): Promise<void>
+  removeResult(id: string): Promise<void>
+  /** Splits the change of risk between two kept results. @param to of a kept result, or 'now' */
+  compareResults(from: string, to: string): Promise<void>
+  /** Writes the comparison asked for last to a sheet of its own. */
+  writeChange(): Promise<void>
   /** Writes what was found about the data, cells as links, to a sheet of its own. */
   writeChecks(): Promise<void>
+  /** Writes the back-test or the bootstrap that was run last to a sheet of its own. */
+  writeStudy(kind: 'back-test' | 'bootstrap'): Promise<void>
   /** Writes the comparison of the trades to a sheet of its own. */
   writeTrades(): Promise<void>
   /** Writes scenarios side by side to a sheet of their own. */
@@ -126,6 +144,9 @@ export interface Books {
   /** Stops listening to the workbook. */
   close(): Promise<void>
 }
+
+/** What happens beside the figures: a fault there leaves them as good as they were. */
+const ASIDE: ReadonlySet<Field> = new Set(['study', 'trades', 'proof', 'report', 'history'])
 
 /** Edits that come in quick succession are one refresh. */
 const SETTLING_MS = 120
@@ -188,7 +209,7 @@ class OpenBooks implements Books {
     const ids = Object.keys(saved)
       .flatMap((key) => /^book\.(\d+)$/.exec(key)?.[1] ?? [])
       .sort((a, b) => Number(a) - Number(b))
-    this.#books = ids.map((id) => this.#newBook(id, saved[`book.${id}`]))
+    this.#books = ids.map((id) => this.#newBook(id, saved))
     this.#unwatch = await this.#workbook.watch((event) => {
       this.#heed(event)
     })
@@ -212,8 +233,9 @@ class OpenBooks implements Books {
     await this.#queue
   }
 
-  #newBook(id: string, saved?: Json): LinkedBook {
-    return new LinkedBook(id, this.#workbook, this.#culture, this.#calculator, saved, () => {
+  #newBook(id: string, saved: { readonly [key: string]: Json } = {}): LinkedBook {
+    const { [`book.${id}`]: book = null, [`history.${id}`]: history = null } = saved
+    return new LinkedBook(id, this.#workbook, this.#culture, this.#calculator, { book, history }, () => {
       this.#publish()
     })
   }
@@ -258,6 +280,7 @@ class OpenBooks implements Books {
       trades: book.trading.state,
       linked: book.linked,
       table: book.table,
+      reporting: book.reporting.state,
       status: book.status,
       working: this.#working,
       faults: book.faults,
@@ -344,18 +367,18 @@ class OpenBooks implements Books {
     if (error.code === 'cancelled') {
       this.#notice = 'Cancelled; nothing was changed.'
       // figures that a cancelled study stands beside are as good as they were
-      if (field === 'study' || field === 'trades') return
+      if (field && ASIDE.has(field)) return
       if (book.status.kind === 'up to date' || (book.linked && book.status.kind === 'nothing linked'))
         book.status = { kind: 'stale', since: null, sentence: 'Stale: the reading was cancelled.' }
       return
     }
     // what a study stumbles over says nothing about the blocks
-    const place = field === 'study' || field === 'trades' ? field : (fieldOf(error) ?? field)
+    const place = field && ASIDE.has(field) ? field : (fieldOf(error) ?? field)
     const sentence = sentenceOf(error)
     if (place) book.faults = { ...book.faults, [place]: sentence }
     // a table that could not be written leaves the figures as good as they were, and so do limits and trades
     if (place === 'table' || place === 'limits' || place === 'trades') return
-    if (field === 'table' || field === 'study' || field === 'trades') return
+    if (field === 'table' || (field && ASIDE.has(field))) return
     if (book.breakdown || field === undefined) book.status = { kind: 'failed', sentence, area: areaOf(error) }
   }
 
@@ -582,6 +605,52 @@ class OpenBooks implements Books {
     })
   }
 
+  writeLive(where: { readonly kind: 'new sheet' | 'selection' | 'where it was' }): Promise<void> {
+    return this.#command('table', async (book, work) => {
+      const area = await book.writeLive(where.kind, work)
+      this.#notice = `Functions written to ${addressOf(area)}. The workbook keeps them up to date.`
+    })
+  }
+
+  writeProof(): Promise<void> {
+    return this.#command('proof', async (book, work) => {
+      const area = await book.writeProof(work)
+      this.#notice = `Proof written to ${addressOf(area)}. Its formulas follow your cells; our figures in it stay until it is written again.`
+    })
+  }
+
+  writeCommittee(choice: CommitteeChoice): Promise<void> {
+    return this.#command('report', async (book, work) => {
+      const area = await book.writeCommittee(choice, serialToday(), work)
+      this.#notice = `Committee page written to ${addressOf(area)}. It stays as it is until it is written again.`
+    })
+  }
+
+  keepResult(note: string): Promise<void> {
+    return this.#command('history', async (book, work) => {
+      const area = await book.keepResult(note, serialToday(), work)
+      if (area) this.#notice = `Result kept in ${addressOf(area)}. ${book.reporting.left ?? ''}`.trim()
+    })
+  }
+
+  removeResult(id: string): Promise<void> {
+    return this.#command('history', async (book) => {
+      await book.reporting.remove(id)
+      this.#notice = `Result removed. ${book.reporting.left ?? ''}`.trim()
+    })
+  }
+
+  compareResults(from: string, to: string): Promise<void> {
+    return this.#command('history', (book, work) => book.compareResults(from, to, serialToday(), work))
+  }
+
+  writeChange(): Promise<void> {
+    return this.#command('history', async (book) => {
+      const area = await book.writeChange()
+      this.#notice = `Comparison written to ${addressOf(area)}. It stays as it is until it is written again.`
+    })
+  }
+
   writeTrades(): Promise<void> {
     return this.#command('trades', async (book) => {
       const area = await book.writeTrades()
@@ -593,6 +662,14 @@ class OpenBooks implements Books {
     return this.#command('trades', async (book) => {
       const area = await book.writeStress(scenarios)
       this.#notice = `Scenarios written to ${addressOf(area)}. The table stays as it is until it is written again.`
+    })
+  }
+
+  writeStudy(kind: 'back-test' | 'bootstrap'): Promise<void> {
+    return this.#command('study', async (book) => {
+      const area = await book.writeStudy(kind, serialToday())
+      const what = kind === 'back-test' ? 'Back-test' : 'Bootstrap'
+      this.#notice = `${what} written to ${addressOf(area)}. The table stays as it is until it is written again.`
     })
   }
 
@@ -647,7 +724,7 @@ class OpenBooks implements Books {
 
   removeBook(): Promise<void> {
     return this.#command(undefined, async (book) => {
-      if (book.kept) await this.#workbook.write(book.forget())
+      if (book.kept) await this.#workbook.write(await book.forget())
       this.#books = this.#books.filter((other) => other !== book)
       this.#current = this.#book.id
       this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.`
@@ -704,6 +781,9 @@ function fieldOf(fault: Fault): Field | null {
     case 'limits':
     case 'trades':
     case 'table':
+    case 'proof':
+    case 'report':
+    case 'history':
       return fault.where.argument
     case 'periods_per_year':
       return 'periods per year'

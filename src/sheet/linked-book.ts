@@ -20,6 +20,8 @@ import { checksTable } from './checks-table'
 import { growthBeside } from './growth'
 import type { CheckLine } from './inspection'
 import { Inspection } from './inspection'
+import type { CommitteeChoice, ReportPart } from './reporting'
+import { NOW, Reporting } from './reporting'
 import type { ReturnsReading } from './returns'
 import { readReturns } from './returns'
 import type { Settings } from './settings'
@@ -27,6 +29,7 @@ import { DEFAULT_SETTINGS, settingsFromJson, settingsToJson } from './settings'
 import type { Scenario } from './stress'
 import type { BacktestChoice, BacktestStudy, Studies } from './studies'
 import { afterChange, backtestStudy, bootstrapStudy, givenBacktest, NO_STUDIES } from './studies'
+import { backtestTable, bootstrapTable } from './studies-table'
 import type { Table } from './table'
 import type { Standing } from './trading'
 import { Trading } from './trading'
@@ -34,7 +37,7 @@ import type { WriteLine } from './trades'
 import type { Json, Seen, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
 import { areaOfTable, WrittenTable } from './written-table'
-import { listOf } from './wording'
+import { dateText, listOf } from './wording'
 
 /** Where in the pane a sentence belongs. */
 export type Field =
@@ -52,6 +55,9 @@ export type Field =
   | 'limits'
   | 'trades'
   | 'table'
+  | 'proof'
+  | 'report'
+  | 'history'
 
 export type Status =
   | { readonly kind: 'nothing linked' }
@@ -72,10 +78,7 @@ export interface Proposal {
   readonly accept: (work: Work) => Promise<void>
 }
 
-/** Tables on sheets of their own that stay as they are until they are written again. */
-type Apart = 'checks' | 'trades' | 'stress'
-
-type Part = SourcePart | 'table' | Apart
+type Part = SourcePart | 'table' | ReportPart
 
 /** The blocks that names in the workbook hold. */
 const LINKED: readonly SourcePart[] = ['holdings', 'returns', 'factors', 'limits', 'capital']
@@ -100,6 +103,8 @@ export class LinkedBook {
   studies: Studies = NO_STUDIES
   /** trades on the figures that stand now */
   readonly trading: Trading
+  /** what of it leaves the pane besides the linked table */
+  readonly reporting: Reporting
   status: Status = { kind: 'nothing linked' }
   faults: { readonly [F in Field]?: string } = {}
   proposals: readonly Proposal[] = []
@@ -125,7 +130,6 @@ export class LinkedBook {
     book: BookModel
   } | null = null
   readonly #table: WrittenTable
-  readonly #apart: { readonly [P in Apart]: WrittenTable }
   readonly #inspection = new Inspection()
   #inspected: readonly unknown[] = []
   #unasked = 0
@@ -135,18 +139,19 @@ export class LinkedBook {
     readonly workbook: Workbook,
     readonly culture: Culture,
     readonly calculator: Calculator,
-    saved?: Json,
+    saved: { readonly book?: Json; readonly history?: Json } = {},
     onChange: () => void = () => undefined,
   ) {
     this.#blocks = new LinkedBlocks(workbook, culture)
     this.trading = new Trading(workbook, culture, calculator, onChange)
     this.#table = new WrittenTable(workbook, this.keptName('table'), 'Risk')
-    this.#apart = {
-      checks: new WrittenTable(workbook, this.keptName('checks'), 'Data checks'),
-      trades: new WrittenTable(workbook, this.keptName('trades'), 'Trades'),
-      stress: new WrittenTable(workbook, this.keptName('stress'), 'Stress'),
-    }
-    const entry = typeof saved === 'object' && saved !== null && 'settings' in saved ? saved : null
+    this.reporting = new Reporting(workbook, calculator, {
+      id,
+      nameOf: (part) => this.keptName(part),
+      ...(saved.history === undefined ? {} : { history: saved.history }),
+    })
+    const { book = null } = saved
+    const entry = typeof book === 'object' && book !== null && 'settings' in book ? book : null
     this.title = entry && typeof entry.title === 'string' ? entry.title : `Book ${id}`
     this.linked = entry !== null
     this.kept = this.linked
@@ -460,6 +465,7 @@ export class LinkedBook {
       ...(trades === undefined ? {} : { trades }),
     }
     const { settings, breakdown } = this
+    this.reporting.stand({ title: this.title, blocks, book, settings, breakdown })
     const { capitalFormula } = this.#blocks
     await this.#standForTrades({ blocks, book, settings, breakdown, capitalFormula }, work)
   }
@@ -611,10 +617,14 @@ export class LinkedBook {
   async refresh(cause: Cause, work: Work): Promise<void> {
     if (cause === 'compute') this.#unasked = 0
     const edits = this.#edits
-    const [table = null, ...looked] = await this.workbook.look([
+    const { wants } = this.reporting
+    const [table = null, ...others] = await this.workbook.look([
       { at: { kept: this.keptName('table') }, formulas: true },
+      ...wants,
       ...this.#blocks.wants((part) => this.keptName(part)),
     ])
+    this.reporting.place(others.slice(0, wants.length))
+    const looked = others.slice(wants.length)
     const news = this.#blocks.compare(looked, this.settings)
     if (news.capital !== undefined) this.settings = { ...this.settings, capital: news.capital }
     this.#blocks.place(news)
@@ -643,6 +653,7 @@ export class LinkedBook {
     // after an edit that came meanwhile the status stays stale: a refresh of its own is on the way
     if (edits === this.#edits) this.status = this.#tableStatus ?? { kind: 'up to date' }
     this.#readEdits = edits
+    if (cause === 'look') await this.reporting.checkKept()
     if (holdings && returns) await this.#lookBeyond(holdings, returns, news.seen.limits)
   }
 
@@ -666,7 +677,9 @@ export class LinkedBook {
       if (!(fault instanceof Fault)) throw fault
       this.faults = { ...this.faults, table: explain(fault) }
       if (fault.code !== 'occupied') return { kind: 'failed', sentence: explain(fault), area: seen.area }
-      this.#proposeOver('grow', 'where it was', seen.area, table)
+      this.#proposeOver('grow', seen.area, table, async (later) => {
+        await this.writeTable('where it was', later, 'replace', seen.area)
+      })
       return {
         kind: 'stale',
         since: seen.area,
@@ -679,17 +692,17 @@ export class LinkedBook {
 
   /** Writes the table to a new sheet, at the selection, or where it was; figures that are behind the sheet are computed first. */
   async writeTable(where: Place, work: Work, over: 'blank' | 'replace' = 'blank', at?: Area): Promise<Area> {
-    if (!this.breakdown)
-      throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument: 'table' })
-    if (this.status.kind !== 'up to date' && this.status !== this.#tableStatus) await this.compute(work)
-    const table = breakdownTable(this.title, this.breakdown)
+    const table = breakdownTable(this.title, await this.#current('table', work))
     const target = at ?? (await this.#table.corner(where))
     try {
       const area = await this.#table.write(where, target, table, over, this.#sources())
       this.#tableFollows()
       return area
     } catch (fault) {
-      if (fault instanceof Fault && fault.code === 'occupied') this.#proposeOver('over', where, target, table)
+      if (fault instanceof Fault && fault.code === 'occupied')
+        this.#proposeOver('over', target, table, async (later) => {
+          await this.writeTable(where, later, 'replace', target)
+        })
       throw fault
     }
   }
@@ -702,15 +715,13 @@ export class LinkedBook {
   }
 
   /** @param kind 'over' for a write the user asked for, 'grow' for a refresh that needs more room */
-  #proposeOver(kind: 'over' | 'grow', where: Place, target: Area, table: Table): void {
+  #proposeOver(kind: 'over' | 'grow', target: Area, table: Table, accept: Proposal['accept']): void {
     this.#propose({
       key: `${kind} ${addressOf(areaOfTable(target, table))}`,
       field: 'table',
       sentence: `Write over what stands in ${addressOf(areaOfTable(target, table))}?`,
       button: 'Write over it',
-      accept: async (work) => {
-        await this.writeTable(where, work, 'replace', target)
-      },
+      accept,
     })
   }
 
@@ -724,28 +735,100 @@ export class LinkedBook {
         'holdings and returns without faults that stop are needed',
         { argument: 'table' },
       )
-    return this.#writeApart('checks', checksTable(this.title, this.checks, this.breakdown, today))
+    return this.reporting.write(
+      'checks',
+      checksTable(this.title, this.checks, this.breakdown, today),
+      this.#sources(),
+    )
   }
 
   /** Writes the comparison of the trades to a sheet of its own. */
   writeTrades(): Promise<Area> {
-    return this.#writeApart('trades', this.trading.tradesTable(this.title))
+    return this.reporting.write('trades', this.trading.tradesTable(this.title), this.#sources())
   }
 
   /** Writes scenarios side by side to a sheet of their own. */
   writeStress(scenarios: readonly Scenario[]): Promise<Area> {
-    return this.#writeApart('stress', this.trading.stressTable(this.title, scenarios))
+    return this.reporting.write('stress', this.trading.stressTable(this.title, scenarios), this.#sources())
   }
 
-  /** Writes a table that does not follow to a sheet of its own, where an earlier one of its kind gives way to it. */
-  async #writeApart(part: Apart, table: Table): Promise<Area> {
-    const [earlier] = await this.workbook.look([{ at: { kept: this.keptName(part) } }])
-    const written = this.#apart[part]
-    written.area = earlier?.area ?? null
-    const place = written.area ? 'where it was' : 'new sheet'
-    const area = await written.write(place, await written.corner(place), table, 'blank', this.#sources())
-    this.kept = true
-    return area
+  /** Writes the back-test or the bootstrap that was run last to a sheet of its own. */
+  writeStudy(kind: 'back-test' | 'bootstrap', today: number): Promise<Area> {
+    const { title, breakdown, studies } = this
+    const { backtest, bootstrap } = studies
+    const table =
+      kind === 'back-test'
+        ? backtest && backtestTable(title, backtest, breakdown, today)
+        : bootstrap && breakdown && bootstrapTable(title, bootstrap, breakdown, today)
+    if (table) return this.reporting.write(kind, table, this.#sources())
+    throw new Fault('missing', `no ${kind} stands beside these figures`, 'run it first', {
+      argument: 'study',
+    })
+  }
+
+  /** The figures, computed first where they are behind the sheet: what is written is never known to be old. */
+  async #current(argument: Field, work: Work): Promise<Breakdown> {
+    const isGood = this.status.kind === 'up to date' || this.status === this.#tableStatus
+    if (this.breakdown && !isGood) await this.compute(work)
+    if (this.breakdown) return this.breakdown
+    throw new Fault('missing', 'nothing is computed yet', 'Compute comes first', { argument })
+  }
+
+  /** Writes the table of functions that are live in cells. */
+  async writeLive(where: Place, work: Work, over: 'blank' | 'replace' = 'blank', at?: Area): Promise<Area> {
+    await this.#current('table', work)
+    const target = at ?? (await this.reporting.cornerOfLive(where))
+    try {
+      return await this.reporting.writeLive(where, over, target, this.#sources())
+    } catch (fault) {
+      if (fault instanceof Fault && fault.code === 'occupied')
+        this.#proposeOver('over', target, this.reporting.liveTable(target), async (later) => {
+          await this.writeLive(where, later, 'replace', target)
+        })
+      throw fault
+    }
+  }
+
+  /** Writes the formulas that recompute the figures, or brings them along. */
+  async writeProof(work: Work): Promise<Area> {
+    await this.#current('proof', work)
+    return this.reporting.writeProof(this.#sources())
+  }
+
+  /** Writes one printable page. */
+  async writeCommittee(choice: CommitteeChoice, today: number, work: Work): Promise<Area> {
+    await this.#current('report', work)
+    if (this.checks === null || this.inspectionDue) await this.inspect(work)
+    return this.reporting.writeCommittee(choice, this.checks, today, this.#sources(), work)
+  }
+
+  /** Keeps the figures with their date; asks first where that would replace a kept result. */
+  async keepResult(note: string, today: number, work: Work): Promise<Area | null> {
+    await this.#current('history', work)
+    const earlier = this.reporting.replacedNow()
+    if (earlier === null) return this.reporting.keep(note, today, null)
+    const date = earlier.dataDate === null ? 'without a date' : `of ${dateText(earlier.dataDate)}`
+    this.#propose({
+      key: `keep ${earlier.id}`,
+      field: 'history',
+      sentence: `A result ${date} is kept already (on ${dateText(earlier.keptOn)}). Replace it?`,
+      button: 'Replace it',
+      accept: async () => {
+        await this.reporting.keep(note, today, earlier.id)
+      },
+    })
+    return null
+  }
+
+  /** Splits the change of risk between two kept results, or a kept one and now. */
+  async compareResults(from: string, to: string, today: number, work: Work): Promise<void> {
+    if (from === NOW || to === NOW) await this.#current('history', work)
+    await this.reporting.compare(from, to, today, work)
+  }
+
+  /** Writes the comparison asked for last to a sheet of its own. */
+  writeChange(): Promise<Area> {
+    return this.reporting.writeChange(this.title, this.#sources())
   }
 
   #sources(): Sources {
@@ -758,13 +841,14 @@ export class LinkedBook {
     return this.#table.release()
   }
 
-  /** Names that this book keeps in the workbook, to be taken away with it. */
-  forget(): WritePlan {
-    const parts: readonly Part[] = [...LINKED, 'table', 'checks', 'trades', 'stress']
+  /** What this book keeps in the workbook, to be taken away with it. */
+  async forget(): Promise<WritePlan> {
+    const parts: readonly Part[] = [...LINKED, 'table']
+    const { patches, keep, remember } = await this.reporting.forget()
     return {
-      patches: [],
-      keep: Object.fromEntries(parts.map((part) => [this.keptName(part), null])),
-      remember: { [`book.${this.id}`]: null },
+      patches,
+      keep: { ...keep, ...Object.fromEntries(parts.map((part) => [this.keptName(part), null])) },
+      remember: { ...remember, [`book.${this.id}`]: null },
     }
   }
 

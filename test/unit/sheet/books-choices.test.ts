@@ -2,7 +2,7 @@
  * What a user can ask of a book beyond its figures: estimators, the look over the data, studies, the benchmark. Over a workbook of
  * plain arrays; figures are compared with each other.
  */
-import type { Books, BooksState, CellValue } from '../../../src/sheet'
+import type { Books, BooksState, CellValue, Workbook } from '../../../src/sheet'
 import { openBooks } from '../../../src/sheet'
 import { plainWorkbook } from './plain-workbook'
 
@@ -34,6 +34,10 @@ const running: Books[] = []
 afterEach(async () => {
   for (const books of running.splice(0)) await books.close()
 })
+
+/** Everything on a sheet. */
+const sheetOf = async (port: Workbook, sheet: string): Promise<readonly (readonly CellValue[])[]> =>
+  (await port.read({ sheet, row: 0, column: 0, rows: 150, columns: 8 })).values
 
 async function desk() {
   const workbook = plainWorkbook({
@@ -334,6 +338,46 @@ describe('Studies', () => {
       'Zone (Basel Committee, MAR32)',
       'Bias statistic',
     ])
+  })
+
+  test('a back-test is written with every date, so that its exceptions can be counted again', async () => {
+    const { books, port } = await desk()
+    await books.writeStudy('back-test')
+    expect(books.state().faults.study).toMatch(/^No back-test stands beside these figures; run it first\.$/)
+    await books.backtest({ window: 40, confidence: 0.95, method: 'normal' }, 'this book')
+    await books.writeStudy('back-test')
+    expect(books.state().faults.study).toBeUndefined()
+    const { result } = books.state().studies.backtest!
+    const sheet = await sheetOf(port, 'Back-test')
+    const head = sheet.findIndex(([label]) => label === 'Date')
+    const lines = sheet.slice(head + 1, head + 41)
+    expect(lines.map((row) => row[1])).toEqual([...result.returns])
+    const below = lines.filter((row) => Number(row[1]) < Number(row[3]))
+    expect(below).toHaveLength(result.tests.exceptions)
+    expect(lines.filter((row) => row[4] === 'exception')).toEqual(below)
+    expect(sheet.flat()).toContain(
+      result.tests.exceptions === 1 ? '1 of 40 dates' : `${result.tests.exceptions} of 40 dates`,
+    )
+  })
+
+  test('a bootstrap is written beside the errors in closed form, and their ratio can be taken again', async () => {
+    const { books, port } = await desk()
+    await books.bootstrap(bootstrap)
+    await books.writeStudy('bootstrap')
+    const { breakdown, studies } = books.state()
+    const bands = breakdown!.bands
+    if (typeof bands === 'string') throw new Error(bands)
+    const sheet = await sheetOf(port, 'Bootstrap')
+    const head = sheet.findIndex(([label]) => label === 'Holding')
+    const lines = sheet.slice(head + 1, head + 4)
+    expect(lines.map((row) => row[0])).toEqual(['Meadow', 'Orchard', 'Mill'])
+    expect(lines.map((row) => row[2])).toEqual([...bands.contribution])
+    expect(lines.map((row) => row[3])).toEqual([...studies.bootstrap!.result.contribution.deviation])
+    const total = sheet[head + 4]!
+    expect(total.slice(0, 2)).toEqual(['Volatility', breakdown!.decomposition.volatility])
+    const ratio = sheet.find((row) => row[0] === 'Volatility' && row !== total)?.[1]
+    expect(ratio).toBe(Number(total[3]) / Number(total[2]))
+    expect(sheet.flat()).toContain(`${studies.bootstrap!.method}.`)
   })
 
   test('forecasts made elsewhere are tested from a selection; a date without a return counts as an exception', async () => {
