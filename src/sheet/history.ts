@@ -31,6 +31,8 @@ interface Entry {
 export class History {
   /** what of the saved list could not be read, as a sentence */
   unread: string | null = null
+  /** what the last `keep` or `remove` left standing of an earlier block, as a sentence */
+  left: string | null = null
   readonly #workbook: Workbook
   readonly #book: string
   #kept: readonly Entry[] = []
@@ -87,6 +89,8 @@ export class History {
    */
   async keep(snapshot: Snapshot, replaces: string | null): Promise<Area> {
     const old = replaces === null ? null : this.#entry(replaces)
+    if (this.#kept.some(({ head }) => head.id === snapshot.id))
+      throw new Error(`there is a kept result ${snapshot.id} already`)
     const [block, record] = [historyBlock(snapshot), recordTable(snapshot)]
     const entry = { head: headOf(snapshot), hash: await recordHash(valuesOf(record)) }
     const place = await this.#place(old)
@@ -131,6 +135,7 @@ export class History {
     this.#kept = kept
     this.#next = next
     this.#sheet = place.sheet
+    this.left = place.left
     return areas[0]!
   }
 
@@ -161,9 +166,8 @@ export class History {
       remember: { [this.#key]: listToJson(this.#next, this.#sheet, kept) },
     })
     this.#kept = kept
-    return block && !own
-      ? `What stands in ${addressOf(block.area)} of ${titleOf(entry.head)} is left there: it is not as it was written.`
-      : null
+    this.left = leftOf(entry, block, own)
+    return this.left
   }
 
   /** What of the kept results is not in the workbook any more, as sentences. */
@@ -269,6 +273,7 @@ export class History {
     readonly recordEnd: Area
     readonly oldBlock: Area | null
     readonly oldRecord: Area | null
+    readonly left: string | null
   }> {
     const records = `Counterpoise results ${this.#book}`
     const [recordsSheet = null, lastSheet = null, ...seen] = await this.#workbook.look([
@@ -291,14 +296,16 @@ export class History {
       await this.#workbook.write({ sheet: records, outOfSight: true, patches: [] })
     const at = old ? 2 * this.#kept.indexOf(old) : -2
     const [oldBlock, oldRecord] = [seen[at] ?? null, seen[at + 1] ?? null]
+    const own = old && (await this.#untouched(old, oldBlock, oldRecord))
     return {
       sheet,
       isNew: known === null,
       // a block ends in two blank rows, which nothing fills
       blockEnd: await this.#endOf(sheet, known === null ? null : 2),
       recordEnd: await this.#endOf(ofRecords, recordsSheet || ofRecords !== records ? 1 : null),
-      oldBlock: old && (await this.#untouched(old, oldBlock, oldRecord)),
+      oldBlock: own,
       oldRecord: oldRecord?.area ?? null,
+      left: old && leftOf(old, oldBlock, own),
     }
   }
 
@@ -360,6 +367,12 @@ const clearing = (area: Area): Patch => ({
 
 const titleOf = ({ keptOn, dataDate, title }: SnapshotHead): string =>
   `the result of ${quote(title)} kept on ${dateText(keptOn)}${dataDate === null ? '' : ` (data to ${dateText(dataDate)})`}`
+
+/** @param own where its block may be written over */
+const leftOf = ({ head }: Entry, block: Seen | null, own: Area | null): string | null =>
+  block && !own
+    ? `What stands in ${addressOf(block.area)} of ${titleOf(head)} is left there: it is not as it was written.`
+    : null
 
 const capital = (sentence: string): string => sentence.charAt(0).toUpperCase() + sentence.slice(1)
 
