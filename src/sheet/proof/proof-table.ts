@@ -37,8 +37,8 @@ const DIFFERS = '≠ differs'
 /** How far a figure may lie from ours before it counts as another one, as a part of the sum of stand-alone risks. */
 const TOLERANCE = 1e-10
 
-/** A quantile is held against its probability, which engines find to fewer digits. */
-const QUANTILE_TOLERANCE = 1e-9
+/** A quantile is held against its probability: some engines have the beta function behind it to eight digits only. */
+const QUANTILE_TOLERANCE = 1e-8
 
 /** Cells that returns per date of groups may take; of the benchmark, and rows of holdings with it. */
 const MOST_GROUP_CELLS = 3000
@@ -87,32 +87,34 @@ type DateKey =
 const [WEIGHT, STAND_ALONE, MARGINAL, CONTRIBUTION, SHARE_HEAD, BETA, CORRELATION] = POSITION_HEADS
 
 const HEADS: { readonly [K in Key]: readonly [head: string, width: number] } = {
-  measure: ['Amount', 14],
-  base: ['Amount', 14],
-  weight: [WEIGHT, 12],
-  mean: ['Mean return, per period', 12],
-  variance: ['Variance, per period', 12],
-  covariance: ['Covariance with the portfolio, per period', 14],
-  'shrunk variance': ['Variance after shrinkage', 12],
+  measure: ['Amount', 15],
+  base: ['Amount', 15],
+  weight: [WEIGHT, 15],
+  mean: ['Mean return', 14],
+  variance: ['Variance', 14],
+  covariance: ['Covariance with portfolio', 14],
+  'shrunk variance': ['Variance after shrinkage', 14],
   'shrunk covariance': ['Covariance after shrinkage', 14],
-  'stand-alone': [STAND_ALONE, 12],
-  marginal: [MARGINAL, 13],
-  contribution: [CONTRIBUTION, 13],
-  share: [SHARE_HEAD, 12],
-  beta: [BETA, 11],
-  correlation: [CORRELATION, 12],
-  'our weight': [`${WEIGHT}, Counterpoise`, 13],
-  'our stand-alone': [`${STAND_ALONE}, Counterpoise`, 13],
-  'our marginal': [`${MARGINAL}, Counterpoise`, 13],
-  'our contribution': [`${CONTRIBUTION}, Counterpoise`, 13],
-  'our share': [`${SHARE_HEAD}, Counterpoise`, 13],
-  'our beta': [`${BETA}, Counterpoise`, 13],
-  'our correlation': [`${CORRELATION}, Counterpoise`, 13],
-  'risk gap': ['Largest difference, risks', 12],
-  'ratio gap': ['Largest difference, weight and ratios', 12],
-  mark: ['Result', 11],
-  note: ['Note', 34],
+  'stand-alone': [STAND_ALONE, 14],
+  marginal: [MARGINAL, 17],
+  contribution: [CONTRIBUTION, 14],
+  share: [SHARE_HEAD, 14],
+  beta: [BETA, 14],
+  correlation: [CORRELATION, 16],
+  'our weight': [WEIGHT, 14],
+  'our stand-alone': [STAND_ALONE, 14],
+  'our marginal': [MARGINAL, 17],
+  'our contribution': [CONTRIBUTION, 14],
+  'our share': [SHARE_HEAD, 14],
+  'our beta': [BETA, 14],
+  'our correlation': [CORRELATION, 16],
+  'risk gap': ['Difference, risks', 13],
+  'ratio gap': ['Difference, ratios', 13],
+  mark: ['Result', 12],
+  note: ['Note', 36],
 }
+
+type Groups = ReturnType<typeof groupsOf>
 
 /** A number as a formula has it. */
 const literal = (value: number): string => String(value).replace('e', 'E')
@@ -329,9 +331,12 @@ class Proof {
     )
   }
 
-  #groupsOf(header: number) {
-    return groupsOf(this.#input.blocks.holdings.holdings.map(({ groups }) => groups[header]))
+  #groupsOf(header: number): Groups {
+    return (this.#grouped[header] ??= groupsOf(
+      this.#input.blocks.holdings.holdings.map(({ groups }) => groups[header]),
+    ))
   }
+  readonly #grouped: Groups[] = []
 
   #moves(i: number): boolean {
     return (this.#input.blocks.match.seriesOf[i] ?? -1) >= 0 && this.#variances[i] !== 0
@@ -451,7 +456,7 @@ class Proof {
     this.#draft.add({
       0: text(label),
       [c]: typeof value === 'number' ? number(value, format) : () => formulaCell(`=${value()}`, format),
-      [c + 1]: text(how),
+      [c + 1]: { ...text(how), indent: 1 },
     })
   }
 
@@ -504,6 +509,11 @@ class Proof {
     }
   }
 
+  /** A line above the heads of a table that says whose figures stand where. */
+  #bands(recomputed: number, ours: number): void {
+    this.#draft.add({ [recomputed]: text('Recomputed', 'note'), [ours]: text('Counterpoise', 'note') })
+  }
+
   #note(sentence: string, mark: Mark = 'note'): void {
     this.#draft.add({ 0: text(sentence, mark) })
   }
@@ -536,9 +546,9 @@ class Proof {
             'total',
           ),
         [c]: () => formulaCell(`=COUNTIF(${range()},"${AGREES}")`, COUNT, 'total'),
-        [c + 1]: text('lines agree', 'total'),
+        [c + 1]: { ...text('lines agree', 'total'), indent: 1 },
         [c + 2]: () => formulaCell(`=COUNTIF(${range()},"${DIFFERS}")`, COUNT, 'total'),
-        [c + 3]: text('lines differ', 'total'),
+        [c + 3]: { ...text('lines differ', 'total'), indent: 1 },
       },
       'total',
     )
@@ -840,10 +850,17 @@ class Proof {
     const { breakdown } = this.#input
     const { decomposition: d, groupHeaders, sharesWithheld } = breakdown
     this.#section('Holdings', false)
+    this.#note(
+      'Means, variances and covariances are per period. Differences are the largest in a row: of stand-alone risk, marginal contribution and contribution; of weight, share, beta and correlation.',
+    )
     if (sharesWithheld !== null) this.#note(sharesWithheld)
+    this.#bands(this.#column('weight'), this.#column('our weight'))
     const heads: { [column: number]: Late } = {}
     ;['Holding', ...groupHeaders].forEach((head, c) => (heads[c] = text(head, 'head')))
-    this.#keys.forEach((key, k) => (heads[this.#labels + k] = text(this.#headOf(key), 'head')))
+    this.#keys.forEach((key, k) => {
+      const head = text(this.#headOf(key), 'head')
+      heads[this.#labels + k] = key === 'mark' ? { ...head, indent: 1 } : head
+    })
     this.#draft.add(heads, 'head')
     this.#first = this.#draft.next
     for (let i = 0; i < this.#size; i++) this.#draft.add()
@@ -1123,7 +1140,6 @@ class Proof {
     breakdown.byGroup.forEach(({ header, labels, parts }, h) => {
       const { groupOf } = this.#groupsOf(h)
       const labelled = this.#draft.range({ column: 1 + h, row: this.#first, rows: this.#size })
-      this.#draft.add()
       const c = this.#labels
       const splits = this.#groupReturns.length > 0
       const shares = sharesWithheld === null && d.share !== null
@@ -1134,13 +1150,15 @@ class Proof {
         ...(splits ? [{ head: STAND_ALONE, format: PERCENT, scale: 'risk' } as const] : []),
       ] as const
       const k = figures.length
+      this.#draft.add()
+      this.#bands(c, c + k)
       const heads: { [column: number]: Late } = { 0: text(header, 'head') }
       figures.forEach(({ head }, f) => {
         heads[c + f] = text(head, 'head')
-        heads[c + k + f] = text(`${head}, Counterpoise`, 'head')
+        heads[c + k + f] = text(head, 'head')
       })
-      heads[c + 2 * k] = text('Largest difference, risks', 'head')
-      heads[c + 2 * k + 1] = text('Largest difference, weight and ratios', 'head')
+      heads[c + 2 * k] = text('Difference, risks', 'head')
+      heads[c + 2 * k + 1] = text('Difference, ratios', 'head')
       heads[c + 2 * k + 2] = { ...text('Result', 'head'), indent: 1 }
       this.#draft.add(heads, 'head')
       const first = this.#draft.next
@@ -1348,7 +1366,7 @@ class Proof {
         () => `BETA.DIST(${v()}/(${v()}+${this.#at('student quantile')}^2),${v()}/2,0.5,TRUE)/2`,
         1 - risk.confidence,
         PLAIN,
-        `Half the incomplete beta function at v/(v + q²); agrees within ${literal(QUANTILE_TOLERANCE)}`,
+        `Half the incomplete beta function at v/(v + q²); agrees within ${literal(QUANTILE_TOLERANCE).toUpperCase()}, as workbooks have that function to fewer digits`,
         'quantile',
       )
     this.#step('unit', 'Scale for a variance of 1', () => `SQRT((${v()}-2)/${v()})`, PLAIN)
@@ -1481,7 +1499,7 @@ class Proof {
     this.#draft.add(
       {
         0: text('Holding', 'head'),
-        [c]: text('Contribution to expected shortfall', 'head'),
+        [c]: text('Part of expected shortfall', 'head'),
         [c + 1]: text('Counterpoise', 'head'),
         [c + 2]: text('Difference', 'head'),
         [c + 3]: { ...text('Result', 'head'), indent: 1 },
@@ -1651,15 +1669,16 @@ class Proof {
     const heads = [
       'Active weight',
       'Benchmark weight',
-      'Covariance with the active return, per period',
+      'Covariance with active return',
       'Contribution to tracking error',
       'Share of tracking error',
-      'Contribution to tracking error, Counterpoise',
-      'Share of tracking error, Counterpoise',
-      'Difference of contributions',
-      'Difference of shares',
+      'Contribution to tracking error',
+      'Share of tracking error',
+      'Difference, contribution',
+      'Difference, share',
     ]
     if (active.sharesWithheld !== null) this.#note(active.sharesWithheld)
+    this.#bands(c, c + 5)
     this.#draft.add(
       {
         0: text('Holding', 'head'),
@@ -1908,6 +1927,12 @@ class Proof {
     const decay = estimation.kind === 'dates' ? estimation.decay : null
     this.#draft.add()
     this.#draft.add({ 0: text('Dates', 'section') }, 'section')
+    if (this.#dateKeys.includes('multiplier'))
+      this.#note(
+        this.#lags > 0
+          ? 'Multiplier: the return less its mean, and weights of the lags times those of the dates beside it, over the divisor. Its products with a holding’s returns, less the mean times the sum of multipliers, add up to the covariance.'
+          : 'Multiplier: weight of the date times the return less its mean, over the divisor. Its products with a holding’s returns add up to the covariance.',
+      )
     this.#note(
       'In the order of the sheet, one row for each of its rows (or columns) from the first date used to the last; a date that is not used has a weight of 0.',
     )
@@ -1915,12 +1940,12 @@ class Proof {
       weight: 'Weight of the date',
       return: 'Return of the portfolio',
       centred: 'Less its mean',
-      multiplier: 'Multiplier for covariances',
+      multiplier: 'Multiplier',
       tail: 'Weight in the tail',
-      standardised: 'Sum of returns over their volatilities',
+      standardised: 'Sum of standard scores',
       active: 'Active return',
       'active centred': 'Less its mean',
-      'active multiplier': 'Multiplier for active covariances',
+      'active multiplier': 'Multiplier, active',
     }
     const row: { [column: number]: Late } = { 0: text('Date', 'head') }
     this.#dateKeys.forEach((key, k) => (row[c + k] = text(heads[key], 'head')))

@@ -31,7 +31,8 @@ export class ReturnCells {
   readonly #returns: ReturnsReading
   readonly #firstDate: number
   readonly #firstSeries: number
-  readonly #stretches = new Map<number, readonly Stretch[]>()
+  readonly #byDate = new Map<number, readonly Stretch[]>()
+  readonly #bySeries = new Map<number, readonly Stretch[]>()
 
   /**
    * @param rows   that are used, at least one
@@ -96,20 +97,24 @@ export class ReturnCells {
 
   /** The cells of one series that hold its returns, each stretch without a gap. */
   stretchesOf(series: number): readonly Stretch[] {
-    const known = this.#stretches.get(series)
+    const known = this.#bySeries.get(series)
     if (known) return known
     const found = stretches(this.dates, (row) =>
       this.#returns.isNumber(row, series) ? this.#shift(row, series) : null,
     )
-    this.#stretches.set(series, found)
+    this.#bySeries.set(series, found)
     return found
   }
 
   /** The cells of one date. */
   stretchesAt(row: number): readonly Stretch[] {
-    return stretches(this.series, (series) =>
+    const known = this.#byDate.get(row)
+    if (known) return known
+    const found = stretches(this.series, (series) =>
       this.#returns.isNumber(row, series) ? this.#shift(row, series) : null,
     )
+    this.#byDate.set(row, found)
+    return found
   }
 
   /** Whether a range of one series can be taken as it lies, blanks and all: next to an upright vector, where blanks count as nothing. */
