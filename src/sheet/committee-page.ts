@@ -31,7 +31,7 @@ export interface CommitteeInput {
  * The columns: a label and figures at the left with a text beside them, a label over two columns and figures at the right. All parts of the
  * page use them alike, so that figures line up from its head to its foot.
  */
-const WIDTHS = [24, 8.5, 12.8, 9, 16, 1.5, 9.5, 9.5, 11.3, 12.2, 9] as const
+const WIDTHS = [24.7, 8.5, 12.8, 9, 16, 1.5, 9.5, 9.5, 11.3, 12.2, 9] as const
 const [LABEL, WEIGHT, CONTRIBUTION, SHARE, ASIDE, GAP, RIGHT, RIGHT_2, RIGHT_3, RIGHT_4, LAST] = [
   0, 1, 2, 3, 4, 5, 6, 7, 8, 9, 10,
 ] as const
@@ -58,6 +58,7 @@ const ROOMS: readonly Room[] = [
   { positions: 9, reducing: 3, limits: 5, groups: 6, kept: 6, warnings: 3, settings: 6 },
   { positions: 8, reducing: 3, limits: 4, groups: 5, kept: 6, warnings: 2, settings: 5 },
   { positions: 7, reducing: 2, limits: 3, groups: 4, kept: 5, warnings: 2, settings: 5 },
+  { positions: 7, reducing: 2, limits: 3, groups: 4, kept: 5, warnings: 1, settings: 4 },
   { positions: 6, reducing: 2, limits: 2, groups: 4, kept: 4, warnings: 1, settings: 4 },
 ]
 
@@ -266,7 +267,7 @@ function laidOut(input: CommitteeInput, room: Room): Page {
 }
 
 function addHead(page: Page, { title, preparedBy, today, breakdown }: CommitteeInput): void {
-  const { dates, horizon, currency } = breakdown
+  const { dates, currency } = breakdown
   page.say(`Risk report: ${title}`, 'title')
   const span =
     dates === null
@@ -277,7 +278,7 @@ function addHead(page: Page, { title, preparedBy, today, breakdown }: CommitteeI
   page.say(
     [
       span,
-      `Volatility, tracking error and contributions ${horizon === 'a year' ? 'are by the year' : 'are per period of the data'}${currency ? ` in ${currency.base}` : ''}.`,
+      ...(currency ? [`Figures in ${currency.base}.`] : []),
       preparedBy === '' ? 'Prepared by: not named.' : `Prepared by: ${preparedBy}.`,
       `Printed on ${dateText(today)}.`,
     ].join(' '),
@@ -816,14 +817,21 @@ function addHistory(page: Page, { history, breakdown }: CommitteeInput, room: Ro
       [SHARE]: aside(page.name(note, widthFrom(SHARE, GAP) - 1)),
     })),
   ]
-  const first = page.beside(rows)
+  const left = points.length - shown.length
+  const notes = page.lines(
+    `Kept results, each under the settings of its day.${left > 0 ? ` ${countOf(left, 'earlier one')}: see the sheet of kept results.` : ''}`,
+    widthFrom(LABEL, ASIDE),
+    2,
+  )
+  const part = [...rows, ...notes.map((line) => ({ [LABEL]: text(line, 'note') }))]
+  const first = page.beside(part)
   const down = (column: number) => ({ row: first + 1, column, rows: shown.length, columns: 1 })
   const [from, to] = [shown[0], shown.at(-1)]
   page.charts.push({
     kind: 'line',
     title: `Risk ${horizon} through time`,
     alt: `A line of the volatility at ${countOf(shown.length, 'date')}: from ${percentText(from?.volatility ?? 0, 2)} (${from?.day ?? ''}) to ${percentText(to?.volatility ?? 0, 2)} (${to?.day ?? ''})${isActive ? ', and one of the tracking error' : ''}.`,
-    over: { row: first, column: RIGHT, rows: rows.length, columns: LAST - RIGHT + 1 },
+    over: { row: first, column: RIGHT, rows: part.length, columns: LAST - RIGHT + 1 },
     categories: down(LABEL),
     series: [
       { name: 'Volatility', values: down(WEIGHT) },
@@ -831,11 +839,6 @@ function addHistory(page: Page, { history, breakdown }: CommitteeInput, room: Ro
     ],
     format: SHARE_FORMAT,
   })
-  const left = points.length - shown.length
-  page.say(
-    `Kept results, each under the settings of its day.${left > 0 ? ` ${countOf(left, 'earlier one')} ${left === 1 ? 'is' : 'are'} not on this page: see the sheet of kept results.` : ''}`,
-    'note',
-  )
 }
 
 // ---- warnings, small print

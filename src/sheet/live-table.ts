@@ -576,12 +576,10 @@ function laidOut(
       ...Array.from({ length: CONTRIBUTION - 1 }, () => text('')),
       formula(formulaText(), format),
     ])
-  underContribution('Sum of parts', () => `=SUM(${sheet.own(top + 1, CONTRIBUTION, n)})`, PERCENT)
-  underContribution(
-    'Difference',
-    () => `=${sheet.own(top + n + 2, CONTRIBUTION)}-${sheet.own(top + n + 1, CONTRIBUTION)}`,
-    ROUNDING,
-  )
+  const sumOfParts = (): string => `SUM(${sheet.own(top + 1, CONTRIBUTION, n)})`
+  underContribution('Sum of parts', () => `=${sumOfParts()}`, PERCENT)
+  // from what is spilled itself: a formula of a formula of spilled cells is worked out too soon by some engines
+  underContribution('Difference', () => `=${sumOfParts()}-${sheet.own(top + n + 1, CONTRIBUTION)}`, ROUNDING)
 
   breakdown.byGroup.forEach(({ header, labels }, k) => {
     section(`By ${header}`)

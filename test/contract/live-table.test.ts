@@ -140,4 +140,159 @@ describe('a table of worksheet functions gives the figures of the pane', () => {
       `=POISE.VOLATILITY('Plain book'!$C$5:$C$8,'Plain data'!$D$3:$G$42,$C$18,$C$19)`,
     )
   })
+
+  const book = (
+    name: string,
+    settings: Partial<Settings>,
+    { holdings = HOLDINGS, returns = block() }: { holdings?: CellValue[][]; returns?: CellValue[][] } = {},
+  ): BookCells => ({ name, holdings, returns, settings: { ...SETTINGS, ...settings } })
+
+  test('under every estimator and method that has a word in cells', async () => {
+    const tails = (method: Settings['tails']['method'], periods = 1): Partial<Settings> => ({
+      tails: { method, confidence: 0.9, periods },
+    })
+    const choices: readonly Partial<Settings>[] = [
+      { estimator: { kind: 'exponential', decay: 0.97 }, ...tails({ kind: 'normal' }, 4) },
+      {
+        estimator: { kind: 'shrinkage', target: 'correlation' },
+        ...tails({ kind: 'student', degrees: 4.5 }),
+      },
+      { estimator: { kind: 'shrinkage', target: 'identity' }, ...tails({ kind: 'student', degrees: null }) },
+      { estimator: { kind: 'shrinkage', target: 'oas' } },
+      { estimator: { kind: 'lagged', lags: 3 }, ...tails({ kind: 'cornish-fisher' }), periodsPerYear: null },
+    ]
+    for (const [k, choice] of choices.entries()) await agrees(book(`Choice ${k}`, choice))
+  }, 60_000)
+
+  test('from part of the dates, newest first, with series in another order and one that is not held between', async () => {
+    const names = ['Cedar', 'Elm', 'Alder', 'Dogwood', 'Birch']
+    const returns = [
+      ['Date', ...names],
+      ...RETURNS.map((row, t): CellValue[] => [
+        MONDAY + 7 * t,
+        row[2]!,
+        row[0]! / 2,
+        row[0]!,
+        row[3]!,
+        row[1]!,
+      ]).reverse(),
+    ]
+    const table = await agrees(
+      book(
+        'Turned',
+        { lookBack: { kind: 'last', dates: 25 }, estimator: { kind: 'exponential', decay: 0.9 } },
+        { returns },
+      ),
+    )
+    const [volatility] = formulasOf(table)
+    expect(volatility).toMatch(/^=POISE\.VOLATILITY\(\$C\$\d+:\$C\$\d+,'Turned data'!\$C\$2:\$H\$27,/)
+    expect(table.cells.flat().some(({ value }) => value === '“Elm” is not held and stands with a weight of 0, as the functions take a block without gaps.')).toBe(true) // prettier-ignore
+  }, 60_000)
+
+  test('from amounts with totals in between, divided by their sum, and a riskless holding without returns', async () => {
+    const holdings = [
+      ['Holding', 'Amount', 'Region'],
+      ['Alder', 400, 'North'],
+      ['Birch', 300, 'South'],
+      ['Subtotal', 700, ''],
+      ['Cash', 200, 'Home'],
+      ['Cedar', 150, 'North'],
+      ['Dogwood', 250, 'South'],
+      ['Total', 1300, ''],
+    ]
+    const input = await computed(book('Amounts', { riskless: ['Cash'] }, { holdings }))
+    expect(input.breakdown.net).toBeCloseTo(1, 14)
+    const table = liveTable(input, at)
+    if (typeof table === 'string') throw new Error(table)
+    const values = await shown(book('Amounts', {}, { holdings }), table)
+    // the riskless holding's own group is in the pane's table alone, and its weight in net and gross
+    const risky = { ...input.breakdown, byGroup: input.breakdown.byGroup.map((section) => ({ ...section, labels: section.labels.filter((label) => label !== 'Home') })) } // prettier-ignore
+    expect(risky.byGroup[0]?.labels).toEqual(['North', 'South'])
+    near(rowOf(values, 'Volatility')[1], input.breakdown.decomposition.volatility)
+    near(rowOf(values, 'Net weight')[1], 1)
+    near(rowOf(values, 'Capital')[1], 1300)
+    near(rowOf(values, 'Dogwood', 40)[1], 250 / 1300)
+    expect(formulasOf(table)).toContain(`=SUM('Amounts book'!$C$5,'Amounts book'!$C$6,'Amounts book'!$C$8,'Amounts book'!$C$9,'Amounts book'!$C$10)`) // prettier-ignore
+    expect(rowOf(values, 'Cash')[1]).toBeCloseTo(200 / 1300, 14)
+  }, 60_000)
+
+  test('from prices, from dates across and from a covariance matrix', async () => {
+    const prices: number[][] = [[100, 50, 20, 80]]
+    for (const row of RETURNS) prices.push(prices.at(-1)!.map((price, i) => price * (1 + row[i]!)))
+    const priced = [['Date', ...NAMES], ...prices.map((row, t): CellValue[] => [MONDAY + 7 * t, ...row])]
+    const inPrices = await agrees(book('Prices', { content: 'prices' }, { returns: priced }))
+    expect(formulasOf(inPrices)[0]).toContain("POISE.RETURNS('Prices data'!$D$3:$G$43)")
+    const logs = await agrees(book('Logs', { content: 'prices', returnKind: 'log' }, { returns: priced }))
+    expect(formulasOf(logs)[0]).toContain(`POISE.RETURNS('Logs data'!$D$3:$G$43,"log")`)
+
+    const dated = block()
+    const across = dated[0]!.map((_, c) => dated.map((row) => row[c]!))
+    const turned = await agrees(book('Across', {}, { returns: across }))
+    expect(formulasOf(turned)[0]).toContain("TRANSPOSE('Across data'!$D$3:$AQ$6)")
+
+    const covariance = [0, 1, 2, 3].map((i) => [0, 1, 2, 3].map((j) => (i === j ? 0.04 + 0.01 * i : 0.012)))
+    const matrix = [['', ...NAMES], ...covariance.map((row, i): CellValue[] => [NAMES[i]!, ...row])]
+    await agrees(
+      book(
+        'Matrix',
+        { periodsPerYear: null, tails: { method: { kind: 'normal' }, confidence: 0.99, periods: 10 } },
+        { returns: matrix },
+      ),
+    )
+  }, 60_000)
+})
+
+describe('a table of worksheet functions is refused', () => {
+  const reason = async (settings: Partial<Settings>, cells: Partial<BookCells> = {}): Promise<string> => {
+    const table = liveTable(
+      await computed({ name: 'Not', holdings: HOLDINGS, returns: block(), ...cells, settings: { ...SETTINGS, ...settings } }),
+      at,
+    )
+    return typeof table === 'string' ? table : 'laid out'
+  } // prettier-ignore
+
+  const changed = (row: number, column: number, value: CellValue): CellValue[][] =>
+    block().map((line, r) => (r === row ? line.map((cell, c) => (c === column ? value : cell)) : line))
+
+  test('where a date in between is left out for a gap, naming the cell', async () => {
+    expect(await reason({}, { returns: changed(20, 2, '') })).toBe(
+      "'Not data'!D23: dates before it are left out or lie elsewhere, and worksheet functions take rows without gaps.",
+    )
+  })
+
+  test('for rules for gaps that keep such dates, and where a number is typed as text', async () => {
+    expect(await reason({ gaps: 'own overlap' }, { returns: changed(20, 2, '') })).toBe(
+      'Worksheet functions take dates that all holdings share: the rule chosen for gaps has no part in them.',
+    )
+    expect(await reason({}, { returns: changed(20, 2, '0.5%') })).toBe(
+      "'Not data'!E22: worksheet functions read no number typed as text.",
+    )
+  })
+
+  test('where zeros at the start of a series would pass for blanks', async () => {
+    const still = block().map((line, r) =>
+      r > 0 && r < 13 ? line.map((cell, c) => (c === 3 ? 0 : cell)) : line,
+    )
+    expect(await reason({}, { returns: still })).toMatch(
+      /^Worksheet functions do not take these cells\. 'Not data'!F3: found 12 zeros in a row at the start, which is how blanks arrive here; /,
+    )
+  })
+
+  test('where a series that is not held lies between and has a gap, or would be shrunk with the others', async () => {
+    const more = block(['Alder', 'Elm', 'Birch', 'Cedar']).map((line, r) => [...line, r === 0 ? 'Dogwood' : (RETURNS[r - 1]![3]! * 0.9)]) // prettier-ignore
+    const gap = more.map((line, r) => (r === 20 ? line.map((cell, c) => (c === 2 ? '' : cell)) : line))
+    expect(await reason({}, { returns: gap })).toBe(
+      "'Not data'!E22: a series that is not held lies between the others and has a gap, which worksheet functions do not pass over.",
+    )
+    expect(await reason({ estimator: { kind: 'shrinkage', target: 'correlation' } }, { returns: more })).toBe(
+      '“Elm” lies between the series that are held, and would have a part in the shrinkage.',
+    )
+  })
+
+  test('where a weight is typed as text', async () => {
+    const holdings = HOLDINGS.map((row, r) => (r === 2 ? ['Birch', '35%', 'South', 'Soft'] : row))
+    expect(await reason({}, { holdings })).toBe(
+      'The weight of “Birch” is typed as text or stands in no cell, so that no formula can read it.',
+    )
+  })
 })
