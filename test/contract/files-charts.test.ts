@@ -82,7 +82,7 @@ const page: SheetPage = {
   orientation: 'Landscape',
   zoom: { horizontalFitToPages: 1, verticalFitToPages: null },
   margins: { left: 36, top: 40.5 },
-  texts: { leftHeader: 'Board & co. 5%', rightHeader: '2026-11-30', rightFooter: 'Page &P of &N' },
+  texts: { leftHeader: 'Board && co. 5%', rightHeader: '2026-11-30', rightFooter: 'Page &P of &N' },
   printArea: '$A$1:$H$24',
   titleRows: '$1:$2',
   titleColumns: '$A:$A',

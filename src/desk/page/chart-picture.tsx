@@ -274,8 +274,8 @@ function valueAxis(chart: DrawnChart, range: [number, number], apart: number) {
       : barsOf(chart).flatMap(({ from, to }) => [from, to])
   const [low, high] = [Math.min(...found), Math.max(...found)]
   // Bars begin at zero. So do lines, unless they are about one level far from it.
-  const isFar =
-    chart.kind === 'line' && low * high > 0 && high - low < Math.max(Math.abs(low), Math.abs(high)) / 6
+  const span = high - low
+  const isFar = chart.kind === 'line' && low * high > 0 && span > 0 && span < Math.max(-low, high) / 6
   const ends = found.length === 0 ? [0, 1] : isFar ? [low, high] : [Math.min(0, low), Math.max(0, high)]
   const wanted = Math.max(2, Math.floor(Math.abs(range[1] - range[0]) / apart))
   const scale = scaleLinear<number>({
