@@ -87,29 +87,29 @@ type DateKey =
 const [WEIGHT, STAND_ALONE, MARGINAL, CONTRIBUTION, SHARE_HEAD, BETA, CORRELATION] = POSITION_HEADS
 
 const HEADS: { readonly [K in Key]: readonly [head: string, width: number] } = {
-  measure: ['Amount', 15],
-  base: ['Amount', 15],
-  weight: [WEIGHT, 15],
-  mean: ['Mean return', 14],
-  variance: ['Variance', 14],
-  covariance: ['Covariance with portfolio', 14],
-  'shrunk variance': ['Variance after shrinkage', 14],
-  'shrunk covariance': ['Covariance after shrinkage', 14],
-  'stand-alone': [STAND_ALONE, 14],
-  marginal: [MARGINAL, 17],
-  contribution: [CONTRIBUTION, 14],
-  share: [SHARE_HEAD, 14],
-  beta: [BETA, 14],
+  measure: ['Amount', 16],
+  base: ['Amount', 16],
+  weight: [WEIGHT, 16],
+  mean: ['Mean return', 16],
+  variance: ['Variance', 16],
+  covariance: ['Covariance with portfolio', 16],
+  'shrunk variance': ['Variance after shrinkage', 16],
+  'shrunk covariance': ['Covariance after shrinkage', 16],
+  'stand-alone': [STAND_ALONE, 16],
+  marginal: [MARGINAL, 20],
+  contribution: [CONTRIBUTION, 16],
+  share: [SHARE_HEAD, 16],
+  beta: [BETA, 16],
   correlation: [CORRELATION, 16],
-  'our weight': [WEIGHT, 14],
-  'our stand-alone': [STAND_ALONE, 14],
-  'our marginal': [MARGINAL, 17],
-  'our contribution': [CONTRIBUTION, 14],
-  'our share': [SHARE_HEAD, 14],
-  'our beta': [BETA, 14],
-  'our correlation': [CORRELATION, 16],
-  'risk gap': ['Difference, risks', 13],
-  'ratio gap': ['Difference, ratios', 13],
+  'our weight': [`${WEIGHT}, Counterpoise`, 16],
+  'our stand-alone': [`${STAND_ALONE}, Counterpoise`, 20],
+  'our marginal': [`${MARGINAL}, Counterpoise`, 24],
+  'our contribution': [`${CONTRIBUTION}, Counterpoise`, 20],
+  'our share': [`${SHARE_HEAD}, Counterpoise`, 16],
+  'our beta': [`${BETA}, Counterpoise`, 18],
+  'our correlation': [`${CORRELATION}, Counterpoise`, 22],
+  'risk gap': ['Difference, risks', 16],
+  'ratio gap': ['Difference, ratios', 16],
   mark: ['Result', 12],
   note: ['Note', 36],
 }
@@ -509,11 +509,6 @@ class Proof {
     }
   }
 
-  /** A line above the heads of a table that says whose figures stand where. */
-  #bands(recomputed: number, ours: number): void {
-    this.#draft.add({ [recomputed]: text('Recomputed', 'note'), [ours]: text('Counterpoise', 'note') })
-  }
-
   #note(sentence: string, mark: Mark = 'note'): void {
     this.#draft.add({ 0: text(sentence, mark) })
   }
@@ -854,7 +849,6 @@ class Proof {
       'Means, variances and covariances are per period. Differences are the largest in a row: of stand-alone risk, marginal contribution and contribution; of weight, share, beta and correlation.',
     )
     if (sharesWithheld !== null) this.#note(sharesWithheld)
-    this.#bands(this.#column('weight'), this.#column('our weight'))
     const heads: { [column: number]: Late } = {}
     ;['Holding', ...groupHeaders].forEach((head, c) => (heads[c] = text(head, 'head')))
     this.#keys.forEach((key, k) => {
@@ -1151,11 +1145,10 @@ class Proof {
       ] as const
       const k = figures.length
       this.#draft.add()
-      this.#bands(c, c + k)
       const heads: { [column: number]: Late } = { 0: text(header, 'head') }
       figures.forEach(({ head }, f) => {
         heads[c + f] = text(head, 'head')
-        heads[c + k + f] = text(head, 'head')
+        heads[c + k + f] = text(`${head}, Counterpoise`, 'head')
       })
       heads[c + 2 * k] = text('Difference, risks', 'head')
       heads[c + 2 * k + 1] = text('Difference, ratios', 'head')
@@ -1499,7 +1492,7 @@ class Proof {
     this.#draft.add(
       {
         0: text('Holding', 'head'),
-        [c]: text('Part of expected shortfall', 'head'),
+        [c]: text('Part of shortfall', 'head'),
         [c + 1]: text('Counterpoise', 'head'),
         [c + 2]: text('Difference', 'head'),
         [c + 3]: { ...text('Result', 'head'), indent: 1 },
@@ -1669,16 +1662,15 @@ class Proof {
     const heads = [
       'Active weight',
       'Benchmark weight',
-      'Covariance with active return',
+      'Covariance, active',
       'Contribution to tracking error',
       'Share of tracking error',
-      'Contribution to tracking error',
-      'Share of tracking error',
+      'Contribution to tracking error, Counterpoise',
+      'Share of tracking error, Counterpoise',
       'Difference, contribution',
       'Difference, share',
     ]
     if (active.sharesWithheld !== null) this.#note(active.sharesWithheld)
-    this.#bands(c, c + 5)
     this.#draft.add(
       {
         0: text('Holding', 'head'),
