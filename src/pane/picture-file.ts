@@ -1,6 +1,15 @@
-import { bandOf, CAUTION, countOf, dateText, percentText, type Breakdown, type RiskChange } from '../sheet'
+import {
+  bandOf,
+  CAUTION,
+  changeSteps,
+  countOf,
+  dateText,
+  percentText,
+  type Breakdown,
+  type RiskChange,
+} from '../sheet'
 import { digitsFor, measureOf, pointsText } from './measure'
-import { changeSentence, sideText, stepsOf } from './change-words'
+import { changeSentence, digitsOf, sideText } from './change-words'
 
 /** A picture that stands on its own: a document of SVG with its size, and what it shows in words. */
 export interface PictureFile {
@@ -285,8 +294,9 @@ export function riskPicture(title: string, breakdown: Breakdown): PictureFile {
 
 /** What changed between two results, cause by cause, as a picture of its own. */
 export function changePicture(title: string, change: RiskChange): PictureFile {
-  const steps = stepsOf(change)
-  const across = acrossOf(steps.flatMap(({ from, to }) => [from, to]))
+  const digits = digitsOf(change)
+  const steps = changeSteps(change)
+  const across = acrossOf(steps.flatMap(({ start, end }) => [start, end]))
   const sheet = new Sheet(`What changed: ${title}`, [
     `Volatility ${change.horizon}: ${changeSentence(change)}`,
     `From: ${sideText(change.from)}. To: ${sideText(change.to)}.`,
@@ -297,15 +307,19 @@ export function changePicture(title: string, change: RiskChange): PictureFile {
     ['hatched', 'Fall'],
   ])
   sheet.y += 6
-  steps.forEach(({ label, from, to, isLevel }, k) => {
+  steps.forEach(({ label, start, end, isLevel }, k) => {
     const next = steps[k + 1]
-    sheet.row(label, ['', isLevel ? percentText(to, 2) : `${pointsText(to - from, 2)} points`], 30, (y) =>
-      [
-        isLevel
-          ? `<line x1="${px(across(to))}" y1="${y + 3}" x2="${px(across(to))}" y2="${y + 25}" stroke="${INK.text}" stroke-width="3"/>`
-          : barred(across(from), across(to), y + 6, 16, to < from ? 'hatched' : 'full'),
-        next ? ruled(across(to), y + 22, across(to), y + 36, INK.rule, '2 2') : '',
-      ].join(''),
+    sheet.row(
+      label,
+      ['', isLevel ? percentText(end, digits) : `${pointsText(end - start, digits)} points`],
+      30,
+      (y) =>
+        [
+          isLevel
+            ? `<line x1="${px(across(end))}" y1="${y + 3}" x2="${px(across(end))}" y2="${y + 25}" stroke="${INK.text}" stroke-width="3"/>`
+            : barred(across(start), across(end), y + 6, 16, end < start ? 'hatched' : 'full'),
+          next ? ruled(across(end), y + 22, across(end), y + 36, INK.rule, '2 2') : '',
+        ].join(''),
     )
   })
   return sheet.done(

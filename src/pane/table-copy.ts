@@ -1,4 +1,4 @@
-import type { Mark, Table, TableCell } from '../sheet'
+import { dateText, type Mark, type Table, type TableCell } from '../sheet'
 
 /**
  * A written table as other programs take it from the clipboard: as text with every digit, for cells, and as HTML that looks like the
@@ -31,22 +31,31 @@ const FORMAT = /^(#,##)?0(?:\.(0+))?(%|E\+00)?$/
 /**
  * A number as a sheet shows it in one of the formats that tables are written with; other formats show all digits.
  * @example shownNumber(-0.08341, '0.00%') // '-8.34%'
+ * @example shownNumber(0.0027, '+0.00%;-0.00%;0.00%') // '+0.27%'
  */
 export function shownNumber(value: number, format: string): string {
-  const [matched, thousands, decimals = '', kind] = FORMAT.exec(format) ?? []
+  if (format === 'd mmm yyyy') return dateText(value)
+  const [above = '', below, none] = format.split(';')
+  // a format of several parts says the sign itself
+  const part = value < 0 ? (below ?? `-${above}`) : value === 0 ? (none ?? above) : above
+  const [, sign = '', plain = ''] = /^([+-]?)(.*)$/.exec(part) ?? []
+  const [matched, thousands, decimals = '', kind] = FORMAT.exec(plain) ?? []
   if (matched === undefined) return String(value)
-  const digits = decimals.length
+  const size = Math.abs(value)
   if (kind === 'E+00')
-    return value
-      .toExponential(digits)
-      .toUpperCase()
-      .replace(/E([+-])(\d)$/, 'E$10$2')
-  const shown = (Math.abs(value) * (kind === '%' ? 100 : 1)).toLocaleString('en-US', {
-    minimumFractionDigits: digits,
-    maximumFractionDigits: digits,
+    return (
+      sign +
+      size
+        .toExponential(decimals.length)
+        .toUpperCase()
+        .replace(/E([+-])(\d)$/, 'E$10$2')
+    )
+  const shown = (size * (kind === '%' ? 100 : 1)).toLocaleString('en-US', {
+    minimumFractionDigits: decimals.length,
+    maximumFractionDigits: decimals.length,
     useGrouping: thousands !== undefined,
   })
-  return `${value < 0 && /[1-9]/.test(shown) ? '-' : ''}${shown}${kind ?? ''}`
+  return `${/[1-9]/.test(shown) ? sign : ''}${shown}${kind ?? ''}`
 }
 
 const escaped = (text: string): string =>

@@ -2,8 +2,8 @@ import { useId, useMemo } from 'react'
 import { makeStyles, mergeClasses, tokens } from '@fluentui/react-components'
 import { scaleLinear } from '@visx/scale'
 import { Bar } from '@visx/shape'
-import { percentText, type RiskChange } from '../sheet'
-import { changeSentence, digitsOf, stepsOf } from './change-words'
+import { changeSteps, percentText, type RiskChange } from '../sheet'
+import { changeSentence, digitsOf } from './change-words'
 import { Hatch, useDrawingStyles } from './drawing'
 import { pointsText } from './measure'
 import { useWidth } from './width'
@@ -54,9 +54,9 @@ export default function Waterfall({ change }: { change: RiskChange }) {
   const classes = { ...useDrawingStyles(), ...useStyles() }
   const hatch = useId()
   const { element, width } = useWidth<HTMLDivElement>()
-  const steps = useMemo(() => stepsOf(change), [change])
+  const steps = useMemo(() => changeSteps(change), [change])
   const digits = digitsOf(change)
-  const places = steps.flatMap(({ from, to }) => [from, to])
+  const places = steps.flatMap(({ start, end }) => [start, end])
   const low = Math.min(...places)
   const high = Math.max(...places)
   const across = scaleLinear<number>({
@@ -88,28 +88,28 @@ export default function Waterfall({ change }: { change: RiskChange }) {
       </div>
       <div ref={element}>
         <ol className={classes.steps}>
-          {steps.map(({ label, from, to, isLevel }, k) => (
+          {steps.map(({ label, start, end, isLevel }, k) => (
             <li key={label} className={mergeClasses(classes.step, isLevel && classes.strong)}>
               <span>{label}</span>
-              <span>{isLevel ? percentText(to, digits) : `${pointsText(to - from, digits)} points`}</span>
+              <span>{isLevel ? percentText(end, digits) : `${pointsText(end - start, digits)} points`}</span>
               <svg className={classes.drawing} width="100%" height={HEIGHT + 4} aria-hidden focusable="false">
                 {k < steps.length - 1 && (
                   <line
                     className={classes.guide}
-                    x1={across(to)}
-                    x2={across(to)}
+                    x1={across(end)}
+                    x2={across(end)}
                     y1={HEIGHT}
                     y2={HEIGHT + REACH}
                   />
                 )}
                 {isLevel ? (
-                  <line className={classes.level} x1={across(to)} x2={across(to)} y1={0} y2={HEIGHT} />
+                  <line className={classes.level} x1={across(end)} x2={across(end)} y1={0} y2={HEIGHT} />
                 ) : (
                   <Bar
-                    className={to < from ? classes.fall : classes.rise}
-                    {...(to < from ? { fill: `url(#${hatch})` } : {})}
-                    x={Math.min(across(from), across(to))}
-                    width={Math.abs(across(to) - across(from))}
+                    className={end < start ? classes.fall : classes.rise}
+                    {...(end < start ? { fill: `url(#${hatch})` } : {})}
+                    x={Math.min(across(start), across(end))}
+                    width={Math.abs(across(end) - across(start))}
                     y={2}
                     height={HEIGHT - 4}
                   />

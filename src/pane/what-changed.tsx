@@ -59,7 +59,7 @@ const PRESENCE: { readonly [P in ChangeLine['presence']]: string } = {
   gone: ', gone',
 }
 
-function Details({ line, digits }: { line: ChangeLine; digits: number }) {
+function Details({ line, digits, isSplit }: { line: ChangeLine; digits: number; isSplit: boolean }) {
   const both = (from: number | null, to: number | null): string =>
     from === null || to === null ? NONE : `${percentText(from, 2)} → ${percentText(to, 2)}`
   const { drift, trades } = line
@@ -74,7 +74,7 @@ function Details({ line, digits }: { line: ChangeLine; digits: number }) {
           'Contribution to risk',
           `${percentText(line.contributionFrom, digits)} → ${percentText(line.contributionTo, digits)}`,
         ],
-        ...(drift === null || trades === null
+        ...(!isSplit || drift === null || trades === null
           ? []
           : [
               ['Positions: drift of weights, points', pointsText(drift, digits)] as const,
@@ -92,12 +92,11 @@ function Lines({ change, digits }: { change: RiskChange; digits: number }) {
   const [opened, setOpened] = useKept<ReadonlySet<string>>('change open', new Set())
   const group = change.groups.find(({ header }) => header === by)
   const lines = group?.lines ?? change.holdings
+  const isSplit = typeof change.total !== 'string'
   const keys: readonly Key[] = [
     'change',
-    ...(typeof change.settings?.effect === 'number' ? (['settings'] as const) : []),
-    'positions',
-    'volatilities',
-    'correlations',
+    ...(isSplit && change.settings ? (['settings'] as const) : []),
+    ...(isSplit ? (['positions', 'volatilities', 'correlations'] as const) : []),
   ]
   const columns: readonly TableColumn[] = [
     { head: group?.header ?? 'Holding', width: null },
@@ -110,7 +109,7 @@ function Lines({ change, digits }: { change: RiskChange; digits: number }) {
       : Math.abs(valueOf(a, key)) - Math.abs(valueOf(b, key))
   const sorted = [...lines].sort((a, b) => (sorting.descending ? compare(b, a) : compare(a, b)))
   return (
-    <Section title="Where the change comes from" level={3}>
+    <Section title={isSplit ? 'Where the change comes from' : 'Change of contributions'} level={3}>
       {change.groups.length > 0 && (
         <Choice
           label="By"
@@ -143,7 +142,7 @@ function Lines({ change, digits }: { change: RiskChange; digits: number }) {
           mark: PRESENCE[line.presence],
           cells: keys.map((part) => pointsText(valueOf(line, part), digits)),
           open: opened.has(line.label),
-          details: () => <Details line={line} digits={digits} />,
+          details: () => <Details line={line} digits={digits} isSplit={isSplit} />,
         }))}
         totals={[
           [
@@ -183,12 +182,11 @@ function Outcome({ state, change, asked }: { state: BooksState; change: RiskChan
       <Waterfall change={change} />
       {isSplit && (
         <p className={classes.tie}>
-          {typeof change.settings?.effect === 'number' ? 'Settings and parts' : 'Parts'} add up to{' '}
-          {pointsText(change.sum, 4)}, the change is {pointsText(change.change, 4)}, difference{' '}
-          {pointsText(change.difference, 4)} points.
+          {change.settings ? 'Settings and parts' : 'Parts'} add up to {pointsText(change.sum, 4)}, the change
+          is {pointsText(change.change, 4)}, difference {pointsText(change.difference, 4)} points.
         </p>
       )}
-      {isSplit && change.holdings.length > 0 && <Lines change={change} digits={digits} />}
+      {change.holdings.length > 0 && <Lines change={change} digits={digits} />}
       {change.settings && (
         <Section title="Settings that changed" level={3}>
           <p className={classes.small}>{change.settings.sentence}</p>
