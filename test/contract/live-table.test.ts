@@ -45,29 +45,30 @@ const plain = (cells: readonly (readonly CellValue[])[]): Table => ({
   numeric: cells[0]!.map(() => false),
 })
 
-/** What the cells of a live table show once the workbook has worked them out. */
-async function shown(book: BookCells, laid: Table) {
+/** What the cells of live tables show once the workbook has worked them out; all of them in one workbook, which is slow to begin. */
+async function shown(laid: readonly (readonly [BookCells, Table])[]): Promise<readonly CellValue[][][]> {
   const { grid, book: port, cells, settle } = open()
   const host = createCustomFunctions(grid)
   Object.assign(globalThis, { CustomFunctions: host })
   host.register(JSON.parse(await describeFunctions('src/sheet/functions.ts')) as FunctionsMetadata, 'POISE')
   associateFunctions(worksheetFunctions)
   try {
-    const places = [
-      [{ sheet: `${book.name} book`, row: 3, column: 1 }, book.holdings],
-      [{ sheet: `${book.name} data`, row: 1, column: 2 }, book.returns],
-    ] as const
-    for (const [place, block] of places)
-      await port.write({
-        sheet: place.sheet,
-        patches: [{ at: place, table: plain(block), over: 'blank' }],
-      })
+    const write = (sheet: string, row: number, column: number, table: Table) =>
+      port.write({ sheet, patches: [{ at: { sheet, row, column }, table, over: 'blank' }] })
+    for (const [book] of laid) {
+      await write(`${book.name} book`, 3, 1, plain(book.holdings))
+      await write(`${book.name} data`, 1, 2, plain(book.returns))
+    }
     const calculated = grid.api.getFormula().onCalculationResultApplied()
-    await port.write({ sheet: at.sheet, patches: [{ at, table: laid, over: 'blank' }] })
+    for (const [book, table] of laid) await write(`${book.name} live`, at.row, at.column, table)
     await calculated
     await settle()
-    const { values } = await cells(at.sheet, `B3:N${laid.cells.length + 3}`)
-    return values as CellValue[][]
+    const all: CellValue[][][] = []
+    for (const [book, table] of laid) {
+      const { values } = await cells(`${book.name} live`, `B3:N${table.cells.length + 3}`)
+      all.push(values as CellValue[][])
+    }
+    return all
   } finally {
     host.dispose()
   }
@@ -115,59 +116,54 @@ function holdsAgainst({ breakdown }: ProofInput, values: CellValue[][], names: r
   }
 } // prettier-ignore
 
-async function live(book: BookCells): Promise<readonly [ProofInput, Table]> {
-  const input = await computed(book)
-  const table = liveTable(input, at)
-  if (typeof table === 'string') throw new Error(table)
-  return [input, table]
-}
-
-async function agrees(book: BookCells, names?: readonly string[]): Promise<Table> {
-  const [input, table] = await live(book)
-  holdsAgainst(input, await shown(book, table), names)
-  return table
-}
-
 const formulasOf = (table: Table): string[] =>
   table.cells.flatMap((row) => row.flatMap(({ formula }) => (formula === undefined ? [] : [formula])))
 
 const SETTINGS: Partial<Settings> = { periodsPerYear: 52 }
 
-describe('a table of worksheet functions gives the figures of the pane', () => {
-  test('from weights and returns as they lie, which it calls directly', async () => {
-    const table = await agrees({ name: 'Plain', holdings: HOLDINGS, returns: block(), settings: SETTINGS })
-    expect(formulasOf(table)[0]).toBe(
-      `=POISE.VOLATILITY('Plain book'!$C$5:$C$8,'Plain data'!$D$3:$G$42,$C$18,$C$19)`,
-    )
-  })
+const tails = (method: Settings['tails']['method'], periods = 1): Pick<Settings, 'tails'> => ({
+  tails: { method, confidence: 0.9, periods },
+})
 
-  const book = (
-    name: string,
-    settings: Partial<Settings>,
-    { holdings = HOLDINGS, returns = block() }: { holdings?: CellValue[][]; returns?: CellValue[][] } = {},
-  ): BookCells => ({ name, holdings, returns, settings: { ...SETTINGS, ...settings } })
+const prices: number[][] = [[100, 50, 20, 80]]
+for (const row of RETURNS) prices.push(prices.at(-1)!.map((price, i) => price * (1 + row[i]!)))
+const PRICED = [['Date', ...NAMES], ...prices.map((row, t): CellValue[] => [MONDAY + 7 * t, ...row])]
+const DATED = block()
+const COVARIANCE = [0, 1, 2, 3].map((i) => [0, 1, 2, 3].map((j) => (i === j ? 0.04 + 0.01 * i : 0.012)))
 
-  test('under every estimator and method that has a word in cells', async () => {
-    const tails = (method: Settings['tails']['method'], periods = 1): Partial<Settings> => ({
-      tails: { method, confidence: 0.9, periods },
-    })
-    const choices: readonly Partial<Settings>[] = [
-      { estimator: { kind: 'exponential', decay: 0.97 }, ...tails({ kind: 'normal' }, 4) },
-      {
-        estimator: { kind: 'shrinkage', target: 'correlation' },
-        ...tails({ kind: 'student', degrees: 4.5 }),
-      },
-      { estimator: { kind: 'shrinkage', target: 'identity' }, ...tails({ kind: 'student', degrees: null }) },
-      { estimator: { kind: 'shrinkage', target: 'oas' } },
-      { estimator: { kind: 'lagged', lags: 3 }, ...tails({ kind: 'cornish-fisher' }), periodsPerYear: null },
-    ]
-    for (const [k, choice] of choices.entries()) await agrees(book(`Choice ${k}`, choice))
-  }, 60_000)
-
-  test('from part of the dates, newest first, with series in another order and one that is not held between', async () => {
-    const names = ['Cedar', 'Elm', 'Alder', 'Dogwood', 'Birch']
-    const returns = [
-      ['Date', ...names],
+/** By name: what is typed in the cells of each book, and what is chosen for it. */
+const BOOKS: { readonly [name: string]: Omit<BookCells, 'name' | 'holdings'> & Partial<BookCells> } = {
+  Plain: { returns: block() },
+  Exponential: {
+    returns: block(),
+    settings: { estimator: { kind: 'exponential', decay: 0.97 }, ...tails({ kind: 'normal' }, 4) },
+  },
+  Correlation: {
+    returns: block(),
+    settings: {
+      estimator: { kind: 'shrinkage', target: 'correlation' },
+      ...tails({ kind: 'student', degrees: 4.5 }),
+    },
+  },
+  Identity: {
+    returns: block(),
+    settings: {
+      estimator: { kind: 'shrinkage', target: 'identity' },
+      ...tails({ kind: 'student', degrees: null }),
+    },
+  },
+  Oas: { returns: block(), settings: { estimator: { kind: 'shrinkage', target: 'oas' } } },
+  Lagged: {
+    returns: block(NAMES, false),
+    settings: {
+      estimator: { kind: 'lagged', lags: 3 },
+      ...tails({ kind: 'cornish-fisher' }),
+      periodsPerYear: null,
+    },
+  },
+  Turned: {
+    returns: [
+      ['Date', 'Cedar', 'Elm', 'Alder', 'Dogwood', 'Birch'],
       ...RETURNS.map((row, t): CellValue[] => [
         MONDAY + 7 * t,
         row[2]!,
@@ -176,70 +172,109 @@ describe('a table of worksheet functions gives the figures of the pane', () => {
         row[3]!,
         row[1]!,
       ]).reverse(),
-    ]
-    const table = await agrees(
-      book(
-        'Turned',
-        { lookBack: { kind: 'last', dates: 25 }, estimator: { kind: 'exponential', decay: 0.9 } },
-        { returns },
-      ),
-    )
-    const [volatility] = formulasOf(table)
-    expect(volatility).toMatch(/^=POISE\.VOLATILITY\(\$C\$\d+:\$C\$\d+,'Turned data'!\$C\$2:\$H\$27,/)
-    expect(table.cells.flat().some(({ value }) => value === '“Elm” is not held and stands with a weight of 0, as the functions take a block without gaps.')).toBe(true) // prettier-ignore
-  }, 60_000)
-
-  test('from amounts with totals in between, divided by their sum, and a riskless holding without returns', async () => {
-    const holdings = [
+    ],
+    settings: { lookBack: { kind: 'last', dates: 25 }, estimator: { kind: 'exponential', decay: 0.9 } },
+  },
+  Amounts: {
+    holdings: [
       ['Holding', 'Amount', 'Region'],
       ['Alder', 400, 'North'],
       ['Birch', 300, 'South'],
       ['Subtotal', 700, ''],
-      ['Cash', 200, 'Home'],
+      ['Cash', 200, ''],
       ['Cedar', 150, 'North'],
       ['Dogwood', 250, 'South'],
       ['Total', 1300, ''],
-    ]
-    const input = await computed(book('Amounts', { riskless: ['Cash'] }, { holdings }))
-    expect(input.breakdown.net).toBeCloseTo(1, 14)
-    const table = liveTable(input, at)
-    if (typeof table === 'string') throw new Error(table)
-    const values = await shown(book('Amounts', {}, { holdings }), table)
-    // the riskless holding's own group is in the pane's table alone, and its weight in net and gross
-    const risky = { ...input.breakdown, byGroup: input.breakdown.byGroup.map((section) => ({ ...section, labels: section.labels.filter((label) => label !== 'Home') })) } // prettier-ignore
-    expect(risky.byGroup[0]?.labels).toEqual(['North', 'South'])
-    near(rowOf(values, 'Volatility')[1], input.breakdown.decomposition.volatility)
-    near(rowOf(values, 'Net weight')[1], 1)
-    near(rowOf(values, 'Capital')[1], 1300)
-    near(rowOf(values, 'Dogwood', 40)[1], 250 / 1300)
-    expect(formulasOf(table)).toContain(`=SUM('Amounts book'!$C$5,'Amounts book'!$C$6,'Amounts book'!$C$8,'Amounts book'!$C$9,'Amounts book'!$C$10)`) // prettier-ignore
-    expect(rowOf(values, 'Cash')[1]).toBeCloseTo(200 / 1300, 14)
-  }, 60_000)
+    ],
+    returns: block(),
+    settings: { riskless: ['Cash'] },
+  },
+  Prices: { returns: PRICED, settings: { content: 'prices' } },
+  Logs: { returns: PRICED, settings: { content: 'prices', returnKind: 'log' } },
+  Across: { returns: DATED[0]!.map((_, c) => DATED.map((row) => row[c]!)) },
+  Matrix: {
+    returns: [['', ...NAMES], ...COVARIANCE.map((row, i): CellValue[] => [NAMES[i]!, ...row])],
+    settings: { periodsPerYear: null, ...tails({ kind: 'normal' }, 10) },
+  },
+}
 
-  test('from prices, from dates across and from a covariance matrix', async () => {
-    const prices: number[][] = [[100, 50, 20, 80]]
-    for (const row of RETURNS) prices.push(prices.at(-1)!.map((price, i) => price * (1 + row[i]!)))
-    const priced = [['Date', ...NAMES], ...prices.map((row, t): CellValue[] => [MONDAY + 7 * t, ...row])]
-    const inPrices = await agrees(book('Prices', { content: 'prices' }, { returns: priced }))
-    expect(formulasOf(inPrices)[0]).toContain("POISE.RETURNS('Prices data'!$D$3:$G$43)")
-    const logs = await agrees(book('Logs', { content: 'prices', returnKind: 'log' }, { returns: priced }))
-    expect(formulasOf(logs)[0]).toContain(`POISE.RETURNS('Logs data'!$D$3:$G$43,"log")`)
+describe('a table of worksheet functions gives the figures of the pane', () => {
+  const seen = new Map<string, { input: ProofInput; table: Table; values: CellValue[][] }>()
+  beforeAll(async () => {
+    const laid: (readonly [BookCells, Table])[] = []
+    const inputs: ProofInput[] = []
+    for (const [name, cells] of Object.entries(BOOKS)) {
+      const book = { holdings: HOLDINGS, ...cells, name, settings: { ...SETTINGS, ...cells.settings } }
+      const input = await computed(book)
+      const table = liveTable(input, at)
+      if (typeof table === 'string') throw new Error(`${name}: ${table}`)
+      inputs.push(input)
+      laid.push([book, table])
+    }
+    const values = await shown(laid)
+    laid.forEach(([{ name }, table], k) => seen.set(name, { input: inputs[k]!, table, values: values[k]! }))
+  }, 120_000)
 
-    const dated = block()
-    const across = dated[0]!.map((_, c) => dated.map((row) => row[c]!))
-    const turned = await agrees(book('Across', {}, { returns: across }))
-    expect(formulasOf(turned)[0]).toContain("TRANSPOSE('Across data'!$D$3:$AQ$6)")
+  const agrees = (name: string): { formulas: string[]; table: Table; values: CellValue[][] } => {
+    const { input, table, values } = seen.get(name)!
+    holdsAgainst(input, values)
+    return { formulas: formulasOf(table), table, values }
+  }
 
-    const covariance = [0, 1, 2, 3].map((i) => [0, 1, 2, 3].map((j) => (i === j ? 0.04 + 0.01 * i : 0.012)))
-    const matrix = [['', ...NAMES], ...covariance.map((row, i): CellValue[] => [NAMES[i]!, ...row])]
-    await agrees(
-      book(
-        'Matrix',
-        { periodsPerYear: null, tails: { method: { kind: 'normal' }, confidence: 0.99, periods: 10 } },
-        { returns: matrix },
-      ),
+  test('from weights and returns as they lie, which it calls directly', () => {
+    const { formulas, table } = agrees('Plain')
+    expect(formulas[0]).toBe(`=POISE.VOLATILITY('Plain book'!$C$5:$C$8,'Plain data'!$D$3:$G$42,$C$18,$C$19)`)
+    // what a formula will fill is left blank, with the format of its figures
+    const top = table.cells.findIndex(([first]) => first?.formula?.startsWith('=POISE.BREAKDOWN('))
+    expect(table.cells[top + 1]!.map(({ value, format }) => [value, format]).slice(0, 6)).toEqual([
+      ['', 'General'],
+      ['', '0.00%'],
+      ['', '0.00%'],
+      ['', '0.00%'],
+      ['', '0.00%'],
+      ['', '0.0%'],
+    ])
+  })
+
+  test.each(['Exponential', 'Correlation', 'Identity', 'Oas', 'Lagged'])(
+    'under an estimator and a method that have a word in cells: %s',
+    (name) => {
+      agrees(name)
+    },
+  )
+
+  test('from part of the dates, newest first, with series in another order and one that is not held between', () => {
+    const { formulas, table } = agrees('Turned')
+    expect(formulas[0]).toMatch(/^=POISE\.VOLATILITY\(\$C\$\d+:\$C\$\d+,'Turned data'!\$C\$2:\$H\$27,/)
+    expect(table.cells.flat().map(({ value }) => value)).toContain(
+      '“Elm” is not held and stands with a weight of 0, as the functions take a block without gaps.',
     )
-  }, 60_000)
+  })
+
+  test('from amounts with totals in between, divided by their sum, and a riskless holding without returns', () => {
+    const { input, table, values } = seen.get('Amounts')!
+    const { decomposition: d, byGroup } = input.breakdown
+    near(rowOf(values, 'Volatility')[1], d.volatility)
+    near(rowOf(values, 'Diversification ratio')[1], d.diversificationRatio)
+    near(rowOf(values, 'Value at risk')[1], (input.breakdown.tails as { risk: { valueAtRisk: number } }).risk.valueAtRisk) // prettier-ignore
+    near(rowOf(values, 'Net weight')[1], 1)
+    near(rowOf(values, 'Gross weight')[1], 1)
+    near(rowOf(values, 'Capital')[1], 1300)
+    near(rowOf(values, 'South')[3], byGroup[0]!.parts.contribution[byGroup[0]!.labels.indexOf('South')])
+    const ordered = values.findIndex(([first]) => String(first).startsWith('Names, weights and groups'))
+    near(rowOf(values, 'Dogwood', ordered)[1], 250 / 1300)
+    near(rowOf(values, 'Cash', ordered)[1], 200 / 1300)
+    expect(formulasOf(table)).toContain(
+      `=SUM('Amounts book'!$C$5,'Amounts book'!$C$6,'Amounts book'!$C$8,'Amounts book'!$C$9,'Amounts book'!$C$10)`,
+    )
+  })
+
+  test('from prices, from dates across and from a covariance matrix', () => {
+    expect(agrees('Prices').formulas[0]).toContain("POISE.RETURNS('Prices data'!$D$3:$G$43)")
+    expect(agrees('Logs').formulas[0]).toContain(`POISE.RETURNS('Logs data'!$D$3:$G$43,"log")`)
+    expect(agrees('Across').formulas[0]).toContain("TRANSPOSE('Across data'!$D$3:$AQ$6)")
+    expect(agrees('Matrix').formulas[0]).toContain("'Matrix data'!$D$3:$G$6")
+  })
 })
 
 describe('a table of worksheet functions is refused', () => {
