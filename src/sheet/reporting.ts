@@ -311,5 +311,8 @@ export class Reporting {
 function liveTableAt(figures: ProofInput, at: Area): Table {
   const table = liveTable(figures, at)
   if (typeof table !== 'string') return table
-  throw new Fault('unknown-choice', table, 'values, or the proof, can be written', { argument: 'table' })
+  // one sentence: what is needed follows
+  throw new Fault('unknown-choice', table.replace(/\.$/, ''), 'values, or the proof, can be written', {
+    argument: 'table',
+  })
 }
