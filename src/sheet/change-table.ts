@@ -55,6 +55,7 @@ const partsOf = ({ drift, trades }: Pick<ChangeParts, 'drift' | 'trades'>) =>
 
 const WEIGHT = '0.00%'
 const ROUNDING = '0.0E+00'
+const DATE = 'd mmm yyyy'
 
 /** Decimals that show parts of a volatility by the year as well as those of a volatility per day. */
 const digitsOf = ({ from, to }: RiskChange): number => {
@@ -166,9 +167,10 @@ export function changeTable(title: string, change: RiskChange, paper: PageSetup[
 
   section('Results compared')
   add(
-    ...['', 'Volatility', 'Holdings', 'Kept on', 'Data to', 'Title', 'Note'].map((label) =>
-      text(label, 'head'),
-    ),
+    ...['', 'Volatility', 'Holdings', 'Kept on', 'Data to'].map((label) => text(label, 'head')),
+    // over texts, which begin at the left
+    ...['Note', '', '', 'Title'].map((label) => text(label, 'section')),
+    ...Array.from({ length: width - 9 }, () => text('', 'head')),
   )
   for (const [label, side] of [
     ['From', from],
@@ -179,10 +181,11 @@ export function changeTable(title: string, change: RiskChange, paper: PageSetup[
       text(label),
       number(side.volatility, formats.level),
       number(side.positions, '0'),
-      text('isNow' in side && side.isNow ? 'not kept: now' : dateText(side.keptOn)),
-      text(side.dataDate === null ? 'no dates' : dateText(side.dataDate)),
-      text(side.title),
+      'isNow' in side && side.isNow ? text('not kept') : number(side.keptOn, DATE),
+      side.dataDate === null ? text('no dates') : number(side.dataDate, DATE),
       text(side.note === '' ? 'None' : side.note),
+      ...['', ''].map((gap) => text(gap)),
+      text(side.title),
     )
 
   const charts = [addSteps(change, formats, horizon, cells, { add, section, number })]
@@ -322,7 +325,8 @@ function addSteps(
       number(isLevel ? null : end - start, signed),
       number(end, level),
       text(''),
-      ...series.map(([key]) => number(drawn[k]![key], level)),
+      // what is not there is a number all the same, but shows nothing
+      ...series.map(([key]) => number(drawn[k]![key], `${level};-${level};`)),
     )
   })
   const isSplit = typeof change.total !== 'string'
@@ -339,7 +343,7 @@ function addSteps(
   const span = (column: number): Span => ({ row: first, column, rows: steps.length, columns: 1 })
   return {
     kind: 'stacked columns',
-    title: `Volatility ${horizon}, ${datesText(change).toLowerCase()}`,
+    title: `Volatility ${horizon}. ${datesText(change)}`,
     alt: altOf(change, steps),
     over: { row: top, column: 0, rows: PICTURE.rows, columns: PICTURE.columns },
     categories: span(0),

@@ -343,7 +343,7 @@ function takenNotes(before: Snapshot, after: Snapshot, places: Places): readonly
     which.length === 0
       ? []
       : [
-          `${head}: ${names(which)}. ${which.length === 1 ? 'Its' : 'Their'} volatilities and correlations on the side compared ${side} are taken from the side compared ${otherSide}.`,
+          `${head}: ${names(which)}. ${which.length === 1 ? 'Its volatility' : 'Their volatilities'} and correlations on the side compared ${side} are taken from the side compared ${otherSide}.`,
         ]
   const risklessFrom = still(before, places.from, after, places.to)
   const risklessTo = still(after, places.to, before, places.from)

@@ -220,8 +220,8 @@ describe('What changed', () => {
     expect(change.holdings[0]).toMatchObject({ volatilityFrom: null, volatilityTo: 0.3, contributionFrom: 0 })
     expect(change.holdings[2]).toMatchObject({ volatilityFrom: 0.1, volatilityTo: null, weightTo: 0 })
     expect(change.notes.slice(0, 2)).toEqual([
-      'New: “Ash”. Its volatilities and correlations on the side compared from are taken from the side compared to.',
-      'Gone: “Elm”. Its volatilities and correlations on the side compared to are taken from the side compared from.',
+      'New: “Ash”. Its volatility and correlations on the side compared from are taken from the side compared to.',
+      'Gone: “Elm”. Its volatility and correlations on the side compared to are taken from the side compared from.',
     ])
   })
 
@@ -494,8 +494,8 @@ describe('The table of a comparison', () => {
     expect(first[2]).toBe(
       'An estimate from past returns, not advice. Local rules and licensed practice come first.',
     )
-    expect(rowOf(table, 'From').slice(1, 7)).toEqual([change.from.volatility, 2, '29 Nov 2026', '27 Nov 2026', 'Orchard', 'Before the committee']) // prettier-ignore
-    expect(rowOf(table, 'To').slice(1, 7)).toEqual([change.to.volatility, 2, 'not kept: now', '4 Dec 2026', 'Orchard', 'None']) // prettier-ignore
+    expect(rowOf(table, 'From').slice(1, 9)).toEqual([change.from.volatility, 2, FRIDAY + 2, FRIDAY, 'Before the committee', '', '', 'Orchard']) // prettier-ignore
+    expect(rowOf(table, 'To').slice(1, 9)).toEqual([change.to.volatility, 2, 'not kept', FRIDAY + 7, 'None', '', '', 'Orchard']) // prettier-ignore
     expect(rowOf(table, 'Sum of parts')[1]).toBe(change.sum)
     expect(rowOf(table, 'Change of volatility')[1]).toBe(change.change)
     expect(rowOf(table, 'Difference')[1]).toBe(change.difference)
