@@ -30,9 +30,11 @@ export interface Redrawing {
   readonly gone: readonly DrawnChart[]
   readonly made: readonly DrawnChart[]
   readonly renamed: readonly { readonly sheet: string; readonly from: string; readonly to: string }[]
+  /** all charts of the sheets concerned, as they were named before */
+  readonly before: readonly { readonly sheet: string; readonly names: readonly string[] }[]
 }
 
-export const NO_REDRAWING: Redrawing = { gone: [], made: [], renamed: [] }
+export const NO_REDRAWING: Redrawing = { gone: [], made: [], renamed: [], before: [] }
 
 /** What a setting says of our charts: anyone may have edited it, and what cannot be read is no chart of ours. */
 export const drawnIn = (setting: unknown): DrawnChart[] =>
@@ -96,7 +98,8 @@ export function redrawing(
   }
   const idle = gone.length + made.length + renamed.length === 0
   if (idle && JSON.stringify(list) === JSON.stringify(drawn)) return null
-  return { work: { gone, made, renamed }, drawn: list }
+  const before = [...there].map(([sheet, names]) => ({ sheet, names }))
+  return { work: { gone, made, renamed, before }, drawn: list }
 }
 
 /** Whether a name is a sentence of ours, with or without the number that tells it from another. */
@@ -131,12 +134,26 @@ export const chartSteps = ({ gone, made, renamed }: Redrawing): Step[] => [
 
 /**
  * The steps that undo it, wherever it stopped.
- * @param there the charts of the sheets that are there now
+ *
+ * @param there   the charts of the sheets that are there now
+ * @param careful when time has passed: then a chart of another name is its user's. It may be one of ours that the write had no time to name,
+ *   and stays as well
  */
-export function chartUndoing({ gone, made, renamed }: Redrawing, there: ChartsThere): Step[] {
+export function chartUndoing(
+  { gone, made, renamed, before }: Redrawing,
+  there: ChartsThere,
+  careful: boolean,
+): Step[] {
   const stands = (sheet: string, name: string) => there.get(sheet)?.includes(name) === true
+  const others = before.flatMap(({ sheet, names }) => {
+    const known = new Set([...names, ...renamed.flatMap((one) => (one.sheet === sheet ? [one.to] : []))])
+    const ours = new Set(made.flatMap(({ name, of }) => (of.sheet === sheet ? [name] : [])))
+    return (there.get(sheet) ?? [])
+      .filter((name) => !known.has(name) && (ours.has(name) || !careful))
+      .map((name) => removal(sheet, name))
+  })
   return [
-    ...made.filter(({ of, name }) => stands(of.sheet, name)).map(({ of, name }) => removal(of.sheet, name)),
+    ...others,
     ...renamed
       .filter(({ sheet, to }) => stands(sheet, to))
       .map(({ sheet, from, to }) => renaming(sheet, to, from)),

@@ -366,7 +366,7 @@ export async function restore(
         step((context) => void (rangeOf(context, area).format.columnWidth = points)),
       ),
     // over cells as wide as they were
-    ...chartUndoing(journal.charts, drawn),
+    ...chartUndoing(journal.charts, drawn, careful),
     ...nameItems.flatMap(({ name, item }) =>
       nameSteps(name, journal.names[name] ?? null, !item.isNullObject),
     ),
@@ -382,13 +382,12 @@ export async function restore(
 /** The charts of the sheets that a write drew on. */
 async function chartsThere(
   { context, sync }: Request,
-  { gone, made, renamed }: Redrawing,
+  { before }: Redrawing,
   there: ReadonlySet<string>,
 ): Promise<ChartsThere> {
-  const sheets = [...gone, ...made].map(({ of }) => of.sheet).concat(renamed.map(({ sheet }) => sheet))
-  const asked = [...new Set(sheets)]
-    .filter((sheet) => there.has(sheet))
-    .map((sheet) => ({ sheet, charts: askCharts(context, sheet) }))
+  const asked = before
+    .filter(({ sheet }) => there.has(sheet))
+    .map(({ sheet }) => ({ sheet, charts: askCharts(context, sheet) }))
   if (asked.length > 0) await sync()
   return new Map(asked.map(({ sheet, charts }) => [sheet, charts()]))
 }

@@ -1,5 +1,6 @@
 /** What a report needs of the workbook besides cells: charts, the page, a sheet out of sight. All numbers are the tests' own. */
 import { chartsOf, pageOf } from '../../src/desk/office'
+import type { Fault } from '../../src/core'
 import { excelWorkbook } from '../../src/excel'
 import type { Area, PageSetup, Span, Table, TableChart, WritePlan } from '../../src/sheet'
 import { blank, closeAll, number, open, refusal, tableOf, text } from './workbook-fixture'
@@ -205,6 +206,32 @@ describe('Charts of a table', () => {
     await book.write(plan(report()))
     expect(charts()).toHaveLength(1)
     expect(office.settings.get('counterpoise.drawn')).toHaveLength(1)
+  })
+
+  test('that the host made and had no time to name are taken away again', async () => {
+    const bare: WritePlan = {
+      patches: [{ at: { ...at, sheet: 'Sheet1' }, table: report([shares()], null), over: 'blank' }],
+    }
+    const probe = opened()
+    await probe.book.write(bare)
+    const { operations } = probe.office.counts
+    const { book, office, portrait, settle } = opened()
+    const before = portrait()
+    const locations: unknown[] = []
+    // the naming of a chart is the first of what makes it up: looked for from about there
+    for (
+      let operation = operations - 41;
+      !locations.includes('Chart.name') && operation < operations;
+      operation++
+    ) {
+      office.faults.beforeOperation(operation)
+      const fault = await book.write(bare).catch((error: unknown) => error as Fault)
+      await settle()
+      const { debugInfo } = ((fault as Fault).cause as Fault).cause as OfficeExtension.Error
+      locations.push(debugInfo.errorLocation)
+      expect(portrait()).toEqual(before)
+    }
+    expect(locations).toContain('Chart.name')
   })
 
   test('a list of charts that somebody has spoilt is none of ours', async () => {
