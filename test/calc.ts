@@ -15,8 +15,8 @@ import { pack, textOf, unpack, type Parts } from '../src/desk/files/archive'
 const office = ['soffice', 'libreoffice'].find((name) => spawnSync('which', [name]).status === 0)
 const isLooking = Boolean(office ?? process.env['CI'])
 
-/** `it` for a test that needs LibreOffice; two minutes long unless told otherwise. */
-export function itInCalc(name: string, test: () => Promise<void>, milliseconds = 120_000): void {
+/** `it` for a test that needs LibreOffice; four minutes at most unless told otherwise. */
+export function itInCalc(name: string, test: () => Promise<void>, milliseconds = 240_000): void {
   if (isLooking) it(name, test, milliseconds)
   else it.skip(`${name} (skipped: LibreOffice is not installed)`, test)
 }

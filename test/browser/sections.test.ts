@@ -1,5 +1,6 @@
 /** What stands behind the figures, in the desk, in a browser: data checks, estimators, groups, large losses, benchmark, studies. */
 import type { Browser } from 'playwright-core'
+import type { Workspace } from '../../src/desk/page/workspace'
 import { launchChromium } from './chromium'
 import { openComputedDemo, until, type DeskPage } from './desk'
 
@@ -156,6 +157,42 @@ test('the back-test draws its forecasts and says what each test means', async ()
   await window.press('Enter')
   await pane.getByRole('button', { name: 'Run the back-test' }).click()
   await pane.getByText(/found 130 dates for a window of 500/i).waitFor()
+})
+
+test('a chart is drawn over the cells of its sheet, and follows them', async () => {
+  const { page } = desk
+  await page.evaluate(() => {
+    const { workspace } = globalThis as unknown as { workspace: Workspace }
+    return workspace.office.Excel.run(async (context) => {
+      const sheet = context.workbook.worksheets.add('Drawn')
+      sheet.getRange('A1:A3').values = [['North'], ['South'], ['East']]
+      sheet.getRange('B1:B3').values = [[0.4], [0.1], [-0.2]]
+      const chart = sheet.charts.add('BarClustered', sheet.getRange('B1:B3'), 'Columns')
+      chart.series.getItemAt(0).setXAxisValues(sheet.getRange('A1:A3'))
+      chart.name = 'Weights of three holdings'
+      chart.legend.visible = false
+      chart.setPosition('D2', 'J14')
+      sheet.activate()
+      await context.sync()
+    })
+  })
+  const picture = page.getByRole('img', { name: 'Weights of three holdings' })
+  const bars = picture.locator('rect.desk-chart-solid')
+  const widths = () => bars.evaluateAll((all) => all.map((bar) => Number(bar.getAttribute('width'))))
+  await until(widths, ({ length }) => length === 3, 'three bars')
+  const [north = 0, south = 0, east = 0] = await widths()
+  // bars are as long as their figures: 0.4, 0.1 and 0.2 without its sign
+  expect([north / south, east / south].map((ratio) => ratio.toFixed(6))).toEqual(['4.000000', '2.000000'])
+  await page.evaluate(() => {
+    const { workspace } = globalThis as unknown as { workspace: Workspace }
+    return workspace.office.Excel.run(async (context) => {
+      context.workbook.worksheets.getItem('Drawn').getRange('B2').values = [[0.4]]
+      await context.sync()
+    })
+  })
+  await until(widths, ([first, second]) => first === second, 'a bar that follows its cell')
+  await desk.sheet('Book')
+  await picture.waitFor({ state: 'detached' })
 })
 
 test('no script failed, and the content security policy had nothing to refuse', () => {
