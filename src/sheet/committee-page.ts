@@ -16,7 +16,7 @@ export interface CommitteeInput {
   /** '' where nobody is named */
   readonly preparedBy: string
   readonly paper: PageSetup['paper']
-  /** the day it is printed, as a workbook counts days */
+  /** the day it is made, as a workbook counts days */
   readonly today: number
   readonly breakdown: Breakdown
   /** null while the data have not been looked over */
@@ -267,7 +267,7 @@ function laidOut(input: CommitteeInput, room: Room): Page {
 }
 
 function addHead(page: Page, { title, preparedBy, today, breakdown }: CommitteeInput): void {
-  const { dates, currency } = breakdown
+  const { dates, horizon, currency } = breakdown
   page.say(`Risk report: ${title}`, 'title')
   const span =
     dates === null
@@ -278,9 +278,9 @@ function addHead(page: Page, { title, preparedBy, today, breakdown }: CommitteeI
   page.say(
     [
       span,
-      ...(currency ? [`Figures in ${currency.base}.`] : []),
+      `Risk ${horizon}${currency ? `, in ${currency.base}` : ''}.`,
       preparedBy === '' ? 'Prepared by: not named.' : `Prepared by: ${preparedBy}.`,
-      `Printed on ${dateText(today)}.`,
+      `Page made on ${dateText(today)}.`,
     ].join(' '),
   )
 }

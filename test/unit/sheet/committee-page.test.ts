@@ -34,7 +34,7 @@ describe('the page', () => {
     const lines = linesOf(page)
     const order = [
       'Risk report: Larkmoor Foundation',
-      'Data to 27 Nov 2026, 130 dates of returns from 7 Jun 2024. Prepared by: R. Hollis. Printed on 1 Dec 2026.',
+      'Data to 27 Nov 2026, 130 dates of returns from 7 Jun 2024. Risk a year. Prepared by: R. Hollis. Page made on 1 Dec 2026.',
       'Risk and limits | ',
       'Volatility a year | ',
       'Tracking error (ex ante) a year | ',
