@@ -90,13 +90,13 @@ export interface Workout {
   readonly grid: Grid
   /** What the table of a book shows now. */
   shown(book: BookCells): Shown
-  /** Types a number into a cell, by its place within one of the book's blocks, and waits for the engine. */
+  /** Types a number into a cell, or empties it, by its place within one of the book's blocks, and waits for the engine. */
   change(
     book: BookCells,
     block: 'holdings' | 'returns',
     row: number,
     column: number,
-    value: number,
+    value: number | '',
   ): Promise<void>
   /** The workbook as a file. */
   saved(): Promise<Uint8Array>
@@ -179,9 +179,9 @@ export async function workedOut(laid: readonly Laid[]): Promise<Workout> {
     },
     async change(book, block, row, column, value) {
       const place = placesOf(book)[block]
-      sheetNamed(place.sheet)
-        .getRange(place.row + row, place.column + column)
-        .setValue(value)
+      const cell = sheetNamed(place.sheet).getRange(place.row + row, place.column + column)
+      if (value === '') cell.clearContent()
+      else cell.setValue(value)
       await calculated()
     },
     saved: async () => new Uint8Array(await saveWorkbook(grid, new Map())),
