@@ -20,6 +20,8 @@ export interface ProofInput {
   readonly book: BookModel
   readonly settings: Settings
   readonly breakdown: Breakdown
+  /** the cell that the capital is followed in; absent or null where it was typed, or is the sum of the amounts */
+  readonly capital?: Area | null
 }
 
 const PERCENT = '0.0000%'
@@ -43,6 +45,9 @@ const QUANTILE_TOLERANCE = 1e-8
 /** Cells that returns per date of groups may take; of the benchmark, and rows of holdings with it. */
 const MOST_GROUP_CELLS = 3000
 const MOST_BENCHMARK_CELLS = 5000
+
+/** Up to so many holdings the intensity of a shrinkage is derived: its formula runs over all their pairs. */
+const MOST_IN_PAIRS = 12
 
 /** The columns of the table of holdings, behind its labels. */
 type Key =
@@ -80,6 +85,7 @@ type DateKey =
   | 'multiplier'
   | 'tail'
   | 'standardised'
+  | 'length'
   | 'active'
   | 'active centred'
   | 'active multiplier'
@@ -272,6 +278,17 @@ class Proof {
         of: (i) => (this.#moves(i) ? `1/SQRT(${this.#cell('variance', i)})` : ''),
       })
     }
+    if (this.#derivesIntensity && this.#shrinkage?.target === 'identity') {
+      this.#dateKeys.push('length')
+      this.#seriesColumns.push(
+        { name: 'count', head: 'Holdings that move', of: (i) => (this.#moves(i) ? '1' : '') },
+        {
+          name: 'mean',
+          head: 'Mean return',
+          of: (i) => (this.#moves(i) ? `AVERAGE(${this.#returnsOf(i)})` : ''),
+        },
+      )
+    }
     if (active && this.#provesActive) {
       this.#seriesColumns.push({ name: 'active', head: 'Active weight', of: (i) => this.#activeWeight(i) })
       if (estimated) {
@@ -306,6 +323,30 @@ class Proof {
     // the weights themselves, unless the holdings stand in the order of the sheet already
     if (this.#seriesColumns.length > 0 || !this.#isInOrder)
       this.#seriesColumns.unshift({ name: 'weight', head: WEIGHT, of: (i) => this.#cell('weight', i) })
+  }
+
+  /** Whether the intensity of the shrinkage is short enough to be derived. */
+  get #derivesIntensity(): boolean {
+    const shrinkage = this.#shrinkage
+    return (
+      shrinkage !== null &&
+      shrinkage.target !== 'correlation' &&
+      shrinkage.moving > 1 &&
+      shrinkage.moving <= MOST_IN_PAIRS &&
+      this.#isPlain &&
+      this.#areApart
+    )
+  }
+
+  /** Whether no two holdings share a series, as those that are riskless in one foreign currency do. */
+  get #areApart(): boolean {
+    const held = [...this.#input.blocks.match.seriesOf].filter((series) => series >= 0)
+    return new Set(held).size === held.length
+  }
+
+  /** All returns of one holding. */
+  #returnsOf(i: number): string {
+    return this.#reach.cells!.over(this.#input.blocks.match.seriesOf[i] ?? 0)
   }
 
   /** Whether holdings stand next to each other in the order of their series. */
@@ -391,6 +432,7 @@ class Proof {
     const from = this.#draft.next
     this.#book()
     this.#holdings()
+    if (this.#derivesIntensity) this.#intensity()
     this.#groups()
     this.#tails()
     this.#active()
@@ -565,7 +607,7 @@ class Proof {
   // ---- settings
 
   #settings(): void {
-    const { blocks, settings, breakdown, book } = this.#input
+    const { blocks, settings, breakdown, book, capital: cell } = this.#input
     const { holdings, returns } = blocks
     const { decomposition: d } = breakdown
     const { estimation } = this.#reach
@@ -598,9 +640,13 @@ class Proof {
       this.#step(
         'capital',
         'Capital',
-        settings.capital ?? (() => `SUM(${this.#all(sum)})`),
+        settings.capital === null
+          ? () => `SUM(${this.#all(sum)})`
+          : cell
+            ? () => referenceOf(cell)
+            : settings.capital,
         '#,##0.00',
-        settings.capital === null ? 'The sum of the amounts' : 'As it was given',
+        settings.capital === null ? 'The sum of the amounts' : cell ? 'From its own cell' : 'As it was given',
       )
     }
     if (this.#isDated) {
@@ -665,7 +711,7 @@ class Proof {
           'Shrinkage intensity',
           shrinkage.intensity,
           PLAIN,
-          'Taken over from Counterpoise: its formula runs over all pairs of holdings.',
+          `Taken over from Counterpoise${this.#derivesIntensity ? ' and derived further down' : ': its formula runs over all pairs of holdings'}`,
         )
         if (shrinkage.target === 'correlation') {
           this.#step('moving', 'Holdings that move', shrinkage.moving, COUNT)
@@ -1125,6 +1171,60 @@ class Proof {
     return this.#applied
   }
   #applied: Float64Array | null = null
+
+  // ---- the intensity of a shrinkage toward one variance for all
+
+  #intensity(): void {
+    const { target, intensity } = this.#shrinkage!
+    this.#section('Shrinkage intensity')
+    const c = this.#labels
+    const moving = this.#input.breakdown.names.flatMap((name, i) => (this.#moves(i) ? [{ name, i }] : []))
+    const rows: Column = { column: c, row: this.#draft.next, rows: moving.length }
+    for (const { name, i } of moving)
+      this.#step(
+        `squares ${i}`,
+        name,
+        () =>
+          moving
+            .map((other) => `COVARIANCE.P(${this.#returnsOf(i)},${this.#returnsOf(other.i)})^2`)
+            .join('+'),
+        SMALL,
+        i === moving[0]?.i ? 'Sum of its squared covariances with all holdings, divisor T' : '',
+      )
+    const n = (): string => this.#at('moving')
+    const T = (): string => this.#at('dates')
+    const trace = (): string => `SUM(${this.#all('variance')})`
+    this.#step('squares', 'Sum of squared covariances', () => `SUM(${this.#draft.range(rows)})`, SMALL)
+    this.#step(
+      'distance',
+      'Squared distance from the target',
+      () => `${this.#at('squares')}-${trace()}^2/${n()}`,
+      SMALL,
+      'The sum of squares less the squared sum of variances over their number',
+    )
+    if (target === 'identity')
+      this.#step(
+        'noise',
+        'Squared error of the covariances',
+        () => `(SUMSQ(${this.#allDates('length')})/${T()}-${this.#at('squares')})/${T()}`,
+        SMALL,
+        'Mean of the squared products of the dates less the sum of squares, over the number of dates',
+      )
+    this.#line(
+      'derived intensity',
+      'Shrinkage intensity',
+      () =>
+        target === 'identity'
+          ? `MIN(1,MAX(0,${this.#at('noise')})/${this.#at('distance')})`
+          : `MIN(1,((1-2/${n()})*${this.#at('squares')}+${trace()}^2)/((${T()}+1-2/${n()})*${this.#at('distance')}))`,
+      intensity,
+      '0.000000',
+      target === 'identity'
+        ? 'Error over distance, 1 at most'
+        : 'Chen et al. (2010), equation 23 (from memory); 1 at most',
+      'ratio',
+    )
+  }
 
   // ---- groups
 
@@ -1796,7 +1896,8 @@ class Proof {
     const { breakdown, book } = this.#input
     const { estimation } = this.#reach
     if (estimation.kind === 'taken over') this.#notProven.unshift(`Covariances: ${estimation.why}.`)
-    if (this.#shrinkage) this.#notProven.push('The shrinkage intensity: a constant here.')
+    if (this.#shrinkage && !this.#derivesIntensity)
+      this.#notProven.push('The shrinkage intensity: a constant here.')
     if (breakdown.nested.length > 0)
       this.#notProven.push('Groups within groups: they are sums of the contributions above.')
     if (breakdown.limits.length > 0)
@@ -1894,7 +1995,7 @@ class Proof {
       this.#seriesColumns.forEach(({ name, of }, k) => {
         row[c + k] = () => {
           const parts = held.map(of).filter((part) => part !== '')
-          const format = name === 'standardised' ? PLAIN : PERCENT
+          const format = name === 'standardised' || name === 'count' ? PLAIN : PERCENT
           return parts.length === 0 ? number(0, format) : formulaCell(`=${parts.join('+')}`, format)
         }
       })
@@ -1935,6 +2036,7 @@ class Proof {
       multiplier: 'Multiplier',
       tail: 'Weight in the tail',
       standardised: 'Sum of standard scores',
+      length: 'Sum of squared deviations',
       active: 'Active return',
       'active centred': 'Less its mean',
       'active multiplier': 'Multiplier, active',
@@ -2007,6 +2109,20 @@ class Proof {
             `=${this.#returnOf(t, key === 'return' ? 'weight' : key)}`,
             key === 'standardised' ? RATIO : '0.0000%',
           )
+      case 'length':
+        if (order === undefined) return number(0, SMALL)
+        return () => {
+          const [count, mean] = [this.#seriesColumn('count'), this.#seriesColumn('mean')]
+          const squares = this.#reach.cells!.alongSeries(
+            t,
+            (from, some) => this.#draft.range(count, from, some),
+            (returns) => `${returns}^2`,
+          )
+          return formulaCell(
+            `=${squares ?? ''}-2*(${this.#returnOf(t, 'mean')})+SUMSQ(${this.#draft.range(mean)})`,
+            SMALL,
+          )
+        }
       case 'centred':
       case 'active centred':
         if (order === undefined) return number(0, '0.0000%')

@@ -146,16 +146,17 @@ export class ReturnCells {
     })
   }
 
-  /** The sum over series of a vector times the returns of one date; null where it would take too many ranges. */
-  alongSeries(row: number, vector: Vector): string | null {
+  /** The sum over series of a vector times the returns of one date, or times what `shape` makes of them; null where it would take too many ranges. */
+  alongSeries(row: number, vector: Vector, shape?: (returns: string) => string): string | null {
     const date = this.#dateOf(this.#returns.cell(row, this.series[0] ?? 0))
     const found =
-      this.isAcross && this.#returns.content !== 'prices'
+      !shape && this.isAcross && this.#returns.content !== 'prices'
         ? [{ from: 0, count: this.series.length, shift: 0 }]
         : this.stretchesAt(row)
-    return this.#sum(!this.isAcross, found, vector, ({ from, count, shift }) =>
-      this.#returnsIn(this.#area(date, 1, this.#firstSeries + from, count), shift),
-    )
+    return this.#sum(!this.isAcross, found, vector, ({ from, count, shift }) => {
+      const returns = this.#returnsIn(this.#area(date, 1, this.#firstSeries + from, count), shift)
+      return shape ? shape(returns) : returns
+    })
   }
 
   /** @param crosswise whether the cells lie across while vectors stand upright */
