@@ -1,6 +1,6 @@
 /**
- * Committee pages of many books, written over the port, saved by the desk and printed by LibreOffice: each is one page, and not a small one. The
- * books are made up.
+ * Committee pages of many books: none is printed small, and those written over the port, saved by the desk and printed by LibreOffice are one page
+ * each. The books are made up.
  */
 import { saveWorkbook } from '../../src/desk/files'
 import type { Breakdown, Table } from '../../src/sheet'
@@ -23,6 +23,9 @@ const KINDS: readonly Kind[] = [
   { name: 'covariance matrix', paper: 'A4', book: () => madeBook({ positions: 12, weight: () => 1 / 12, groups: 2, isMatrix: true }) },
   { name: 'long names', paper: 'Letter', kept: 12, book: () => madeBook({ positions: 30, weight: (k) => (k % 9 === 2 ? -0.05 : 0.05), groups: 6, areNamesLong: true }) },
 ] // prettier-ignore
+
+/** those that fill their page most, and the one with least of a book: printing takes seconds for each */
+const FULLEST = KINDS.filter(({ kept, name }) => kept !== undefined || name === 'covariance matrix')
 
 const pages = new Map<Kind, Promise<Table>>()
 function pageOf(kind: Kind): Promise<Table> {
@@ -68,16 +71,16 @@ test('a page is written in one request that changes the workbook', async () => {
 })
 
 itInCalc(
-  'every one of them is one page, with its charts',
+  'the fullest of them are one page each, with their charts',
   async () => {
     const { grid, book } = open()
-    for (const kind of KINDS)
+    for (const kind of FULLEST)
       await book.write({
         sheet: kind.name,
         patches: [{ at: { sheet: kind.name, row: 0, column: 0 }, table: await pageOf(kind), over: 'blank' }],
       })
     const { count } = await pagesOf(new Uint8Array(await saveWorkbook(grid, new Map())))
-    expect(count).toBe(KINDS.length)
+    expect(count).toBe(FULLEST.length)
   },
   180_000,
 )
