@@ -7,6 +7,7 @@ import { useBooksState } from './store'
 import { htmlOf, textOf } from './table-copy'
 
 const useStyles = makeStyles({
+  block: { display: 'grid', rowGap: tokens.spacingVerticalXS, minWidth: 0 },
   picture: { maxWidth: '100%', height: 'auto', border: `1px solid ${tokens.colorNeutralStroke2}` },
   text: {
     boxSizing: 'border-box',
@@ -61,7 +62,7 @@ export function CopyTable({ what, table }: { what: string; table: () => Table })
     )
   }
   return (
-    <>
+    <div className={classes.block}>
       <div className={classes.buttons}>
         <Button size="small" onClick={() => void copy()}>
           {`Copy ${what}`}
@@ -87,7 +88,7 @@ export function CopyTable({ what, table }: { what: string; table: () => Table })
           }}
         />
       )}
-    </>
+    </div>
   )
 }
 
@@ -159,7 +160,7 @@ export function SavePicture({ what, picture }: { what: string; picture: () => Pi
     )
   }
   return (
-    <>
+    <div className={classes.block}>
       <div className={classes.buttons} role="group" aria-label={what}>
         <Button size="small" onClick={() => void saveAs('svg')}>
           Save as SVG
@@ -181,6 +182,6 @@ export function SavePicture({ what, picture }: { what: string; picture: () => Pi
           src={`data:image/svg+xml;charset=utf-8,${encodeURIComponent(shown.svg)}`}
         />
       )}
-    </>
+    </div>
   )
 }

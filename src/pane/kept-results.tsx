@@ -50,7 +50,7 @@ function Result({ head, busy, remove }: { head: SnapshotHead; busy: boolean; rem
       <span className={classes.strong}>
         {dataDate === null ? 'Data without dates' : `Data to ${dateText(dataDate)}`}
       </span>
-      <span className={classes.strong}>{percentText(volatility, 2)}</span>
+      <span className={mergeClasses(classes.strong, classes.action)}>{percentText(volatility, 2)}</span>
       <span className={classes.quiet}>
         {note !== '' && (
           <>

@@ -25,8 +25,8 @@ const WIDTH = 760
 const MARGIN = 24
 /** Where the names, the two columns of figures and the bars stand. */
 const NAME = { x: MARGIN, width: 200 } as const
-const FIGURES = [290, 360] as const
-const BARS = { from: 380, to: WIDTH - MARGIN } as const
+const FIGURES = [280, 364] as const
+const BARS = { from: 384, to: WIDTH - MARGIN } as const
 const LINE = 16
 const FONT = 'Segoe UI, Arial, Helvetica, sans-serif'
 
@@ -256,7 +256,7 @@ export function riskPicture(title: string, breakdown: Breakdown): PictureFile {
       (y) =>
         (measure.comparable ? barred(across(0), across(weights[i]!), y + 4, 6, 'hollow') : '') +
         barred(across(0), across(value), y + thick, 10, reduces ? 'hatched' : 'full') +
-        (measure.errors ? whisker(across(band(i)[0]), across(band(i)[1]), y + thick + 5) : ''),
+        (band(i)[1] > band(i)[0] ? whisker(across(band(i)[0]), across(band(i)[1]), y + thick + 5) : ''),
     )
   }
   first.forEach(drawRow)
@@ -272,7 +272,7 @@ export function riskPicture(title: string, breakdown: Breakdown): PictureFile {
   if (last.length > 0) {
     sheet.y += LINE + 4
     sheet.add(lettered(MARGIN, sheet.y, 'Risk-reducing positions', { bold: true }))
-    sheet.y += 6
+    sheet.y += 10
     last.forEach(drawRow)
   }
   sheet.add(ruled(across(0), top, across(0), sheet.y))
@@ -315,10 +315,10 @@ export function changePicture(title: string, change: RiskChange): PictureFile {
       30,
       (y) =>
         [
+          next ? ruled(across(end), y + 14, across(end), y + 44, INK.rule, '2 2') : '',
           isLevel
             ? `<line x1="${px(across(end))}" y1="${y + 3}" x2="${px(across(end))}" y2="${y + 25}" stroke="${INK.text}" stroke-width="3"/>`
             : barred(across(start), across(end), y + 6, 16, end < start ? 'hatched' : 'full'),
-          next ? ruled(across(end), y + 22, across(end), y + 36, INK.rule, '2 2') : '',
         ].join(''),
     )
   })

@@ -36,7 +36,7 @@ const useStyles = makeStyles({
   },
   choices: { '& label': { fontSize: tokens.fontSizeBase200, lineHeight: tokens.lineHeightBase200 } },
   // beneath the words of its choice, clear of the circle before them
-  meaning: { padding: `0 0 ${tokens.spacingVerticalXS} 32px` },
+  meaning: { padding: `0 0 ${tokens.spacingVerticalXS} 36px` },
 })
 
 type Place = 'where it was' | 'new sheet' | 'selection'

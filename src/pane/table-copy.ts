@@ -8,7 +8,6 @@ import { dateText, type Mark, type Table, type TableCell } from '../sheet'
 /** What a program for sheets would take for the beginning of a formula. */
 const LIKE_A_FORMULA = /^[=+\-@]/
 
-const isNumber = (cell: TableCell | undefined): boolean => typeof cell?.value === 'number'
 const isBlank = (cell: TableCell | undefined): boolean => !cell || cell.value === ''
 
 /**
@@ -108,12 +107,12 @@ function tableOf(rows: readonly (readonly TableCell[])[], numeric: readonly bool
   )
   const cell = (of: TableCell, k: number): string => {
     const { value, format, mark } = of
-    const right = isNumber(of) || (mark === 'head' && numeric[k])
-    const look = `padding:1pt 6pt;white-space:nowrap;text-align:${right ? 'right' : 'left'}`
-    return typeof value === 'number'
-      ? `<td${styled(mark, `${look};mso-number-format:"${format}"`)} x:num="${value}" sdval="${value}" sdnum="1033;0;${format}">${shownNumber(value, format)}</td>`
-      : `<td${styled(mark, `${look};mso-number-format:"\\@"`)}>${escaped(String(value))}</td>`
+    const aligned = typeof value === 'number' || (mark === 'head' && numeric[k]) ? ' align="right"' : ''
+    if (typeof value === 'number')
+      return `<td nowrap${aligned}${styled(mark, `mso-number-format:"${format}"`)} x:num="${value}" sdval="${value}" sdnum="1033;0;${format}">${shownNumber(value, format)}</td>`
+    // said to be text, whatever it looks like
+    return `<td nowrap${aligned}${styled(mark, isBlank(of) ? '' : 'mso-number-format:"\\@"')}>${escaped(String(value))}</td>`
   }
   const lines = rows.map((row) => `<tr>${row.slice(0, columns).map(cell).join('')}</tr>`)
-  return `<table style="border-collapse:collapse">${lines.join('')}</table>`
+  return `<table cellpadding="3" style="border-collapse:collapse">${lines.join('')}</table>`
 }

@@ -13,14 +13,16 @@ const useStyles = makeStyles({
   steps: { listStyleType: 'none', margin: 0, padding: 0 },
   step: {
     display: 'grid',
-    gridTemplateColumns: 'minmax(0, 1fr) auto',
+    gridTemplateColumns: '100px minmax(0, 1fr) 74px',
     columnGap: tokens.spacingHorizontalS,
+    alignItems: 'center',
     fontSize: tokens.fontSizeBase200,
     lineHeight: tokens.lineHeightBase200,
     fontVariantNumeric: 'tabular-nums',
   },
   strong: { fontWeight: tokens.fontWeightSemibold },
-  drawing: { gridColumn: '1 / -1', display: 'block', overflow: 'visible' },
+  number: { textAlign: 'right' },
+  drawing: { display: 'block', overflow: 'visible' },
   rise: {
     fill: tokens.colorBrandForeground1,
     stroke: tokens.colorBrandForeground1,
@@ -42,9 +44,9 @@ const useStyles = makeStyles({
   },
 })
 
-const HEIGHT = 16
-/** From the middle of one drawing to the next, over the line of text between: guides reach that far. */
-const REACH = 26
+/** Of a row, and of the bar in it. */
+const HEIGHT = 26
+const BAR = 14
 
 /**
  * From the volatility before to the volatility after, cause by cause. Levels are places and not lengths, so that the picture need not begin
@@ -86,39 +88,41 @@ export default function Waterfall({ change }: { change: RiskChange }) {
           Fall
         </span>
       </div>
-      <div ref={element}>
-        <ol className={classes.steps}>
-          {steps.map(({ label, start, end, isLevel }, k) => (
-            <li key={label} className={mergeClasses(classes.step, isLevel && classes.strong)}>
-              <span>{label}</span>
-              <span>{isLevel ? percentText(end, digits) : `${pointsText(end - start, digits)} points`}</span>
-              <svg className={classes.drawing} width="100%" height={HEIGHT + 4} aria-hidden focusable="false">
+      <ol className={classes.steps}>
+        {steps.map(({ label, start, end, isLevel }, k) => (
+          <li key={label} className={mergeClasses(classes.step, isLevel && classes.strong)}>
+            <span>{label}</span>
+            <div ref={k === 0 ? element : null}>
+              <svg className={classes.drawing} width="100%" height={HEIGHT} aria-hidden focusable="false">
                 {k < steps.length - 1 && (
                   <line
                     className={classes.guide}
                     x1={across(end)}
                     x2={across(end)}
-                    y1={HEIGHT}
-                    y2={HEIGHT + REACH}
+                    y1={HEIGHT / 2}
+                    y2={1.5 * HEIGHT}
                   />
                 )}
                 {isLevel ? (
-                  <line className={classes.level} x1={across(end)} x2={across(end)} y1={0} y2={HEIGHT} />
+                  <line className={classes.level} x1={across(end)} x2={across(end)} y1={3} y2={HEIGHT - 3} />
                 ) : (
                   <Bar
                     className={end < start ? classes.fall : classes.rise}
                     {...(end < start ? { fill: `url(#${hatch})` } : {})}
                     x={Math.min(across(start), across(end))}
                     width={Math.abs(across(end) - across(start))}
-                    y={2}
-                    height={HEIGHT - 4}
+                    y={(HEIGHT - BAR) / 2}
+                    height={BAR}
                   />
                 )}
               </svg>
-            </li>
-          ))}
-        </ol>
-      </div>
+            </div>
+            <span className={classes.number}>
+              {isLevel ? percentText(end, digits) : `${pointsText(end - start, digits)} points`}
+            </span>
+          </li>
+        ))}
+      </ol>
     </figure>
   )
 }

@@ -42,9 +42,9 @@ const useStyles = makeStyles({
 
 /** Soft hyphens: the two long words stand over narrow figures. */
 const COLUMNS = {
-  change: { head: 'Change, points', width: 48 },
+  change: { head: 'Change, points', width: 50 },
   settings: { head: 'Settings', width: 50 },
-  positions: { head: 'Positions', width: 54 },
+  positions: { head: 'Positions', width: 60 },
   volatilities: { head: 'Volatil\u00adities', width: 50 },
   correlations: { head: 'Correl\u00adations', width: 50 },
 } as const
