@@ -155,7 +155,11 @@ function styled<R>(read: (style: IStyleData) => R, write: (value: R) => IStyleDa
     read: (place) => common(mapped(styles(place), read)),
     write: (place: Place, value: never) => {
       const style = write(value)
-      place.sheet.restyle(place.rect, () => style)
+      const { sheet, rect } = place
+      // cells that have it already are left alone: to change one takes the grid far longer than to look
+      sheet.restyle(rect, (row, column) =>
+        read(sheet.style(rect.top + row, rect.left + column)) === value ? undefined : style,
+      )
     },
   }
 }
@@ -324,7 +328,8 @@ function draw({ place, edge }: Border, of: (line: Line) => Line): void {
     const { line, rgb } = of(
       along(whole, (known) => known) ?? { line: BorderStyleTypes.NONE, rgb: '#000000' },
     )
-    return { bd: { [side]: line === BorderStyleTypes.NONE ? null : { s: line, cl: { rgb } } } }
+    if (line !== BorderStyleTypes.NONE) return { bd: { [side]: { s: line, cl: { rgb } } } }
+    return sheet.border(one.top, one.left)[side] ? { bd: { [side]: null } } : undefined
   })
   if (beyond.top > beyond.bottom || beyond.left > beyond.right) return
   sheet.restyle(beyond, (row, column) =>
