@@ -769,8 +769,7 @@ class Proof {
     this.#step(
       'volatility per period',
       'Volatility of the portfolio, per period',
-      () =>
-        `IF(${this.#at('variance')}<=${this.#at('rounding')}*${this.#at('gross per period')}^2,0,SQRT(${this.#at('variance')}))`,
+      () => this.#rootOf('variance'),
       PERCENT,
     )
     this.#line(
@@ -868,6 +867,12 @@ class Proof {
         'Cells that hold a number, against those that held one when they were read',
         'count',
       )
+  }
+
+  /** The root of a variance, or 0 where it is no more than rounding. Without IF, whose condition LibreOffice takes for circular where it leads far. */
+  #rootOf(name: string): string {
+    const variance = this.#at(name)
+    return `SQRT(${variance}*(ABS(${variance})>${this.#at('rounding')}*${this.#at('gross per period')}^2))`
   }
 
   /** The volatility straight from the portfolio's returns; null where the estimator makes another one of them. */
@@ -1354,10 +1359,14 @@ class Proof {
     const { tails } = breakdown
     if (typeof tails === 'string') return
     const { method } = tails.risk
-    if (method.kind === 'historical' && !this.#isDated) {
+    if ((method.kind === 'historical' || method.kind === 'cornish-fisher') && !this.#isDated) {
       this.#notProven.push(
         `Value at risk and expected shortfall: ${this.#reach.why ?? 'there are no returns'}.`,
       )
+      return
+    }
+    if (method.kind === 'cornish-fisher' && tails.risk.skewness === null) {
+      this.#notProven.push('Value at risk: the book has no risk.')
       return
     }
     this.#section(`Large losses: ${tails.label}`)
@@ -1701,8 +1710,7 @@ class Proof {
     this.#step(
       'active volatility',
       'Tracking error, per period',
-      () =>
-        `IF(${this.#at('active variance')}<=${this.#at('rounding')}*${this.#at('gross per period')}^2,0,SQRT(${this.#at('active variance')}))`,
+      () => this.#rootOf('active variance'),
       PERCENT,
     )
     this.#line(
@@ -1754,7 +1762,9 @@ class Proof {
         'common',
         'Marginal contribution of the benchmark itself',
         () =>
-          `IF(${this.#at('active volatility')}=0,0,SUMPRODUCT(${column(1)()},${covariances()})/${this.#at('active volatility')}*${scaled()})`,
+          risk.share === null
+            ? '0'
+            : `SUMPRODUCT(${column(1)()},${covariances()})/${this.#at('active volatility')}*${scaled()}`,
         PERCENT,
         'Taken off every holding, and put on the line of the net active weight',
       )
@@ -1829,6 +1839,8 @@ class Proof {
         : `(1-${d})*(${plain})+${d}*${this.#at('mean variance')}*${near(0)}`
     }
     const s = (): string => this.#at('active volatility')
+    const product = (): string =>
+      `${near(0)}*(${near(2)}/${s()}*SQRT(${this.#at('periods')})${relative ? `-${this.#at('common')}` : ''})`
     this.#draft.add({
       0: text(names[i] ?? ''),
       [c]: formulaCell(`=${this.#cell('weight', i)}-${near(1)}`, PERCENT),
@@ -1837,10 +1849,7 @@ class Proof {
         : number(holding?.benchmark ?? 0, PERCENT),
       [c + 2]: this.#moves(i) ? () => formulaCell(`=${covariance()}`, SMALL) : number(0, SMALL),
       [c + 3]: () =>
-        formulaCell(
-          `=IF(${s()}=0,0,${near(0)}*(${near(2)}/${s()}*SQRT(${this.#at('periods')})${relative ? `-${this.#at('common')}` : ''}))`,
-          PERCENT,
-        ),
+        formulaCell(risk.share === null ? `=IF(${s()}=0,0,${product()})` : `=${product()}`, PERCENT),
       [c + 4]: shares
         ? () => formulaCell(`=${near(3)}/${this.#at('tracking error')}`, SHARE)
         : text('withheld'),
