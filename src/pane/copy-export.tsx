@@ -1,4 +1,4 @@
-import { breakdownTable, type Breakdown } from '../sheet'
+import { breakdownTable, type BooksState, type Breakdown } from '../sheet'
 import { Section } from './controls'
 import { CopyTable, SavePicture } from './handing-over'
 import { measureOf } from './measure'
@@ -6,13 +6,19 @@ import { riskPicture } from './picture-file'
 import { useStepStyles } from './step'
 
 /** The breakdown for other programs: its table on the clipboard, its picture as a file. */
-export default function CopyAndExport({ title, breakdown }: { title: string; breakdown: Breakdown }) {
+export default function CopyAndExport({
+  state: { title, decimal },
+  breakdown,
+}: {
+  state: BooksState
+  breakdown: Breakdown
+}) {
   const classes = useStepStyles()
   const picture = `Weight and ${measureOf(breakdown).label.toLowerCase()}`
   return (
     <>
       <Section title="Breakdown table" level={3}>
-        <CopyTable what="table" table={() => breakdownTable(title, breakdown)} />
+        <CopyTable what="table" decimal={decimal} table={() => breakdownTable(title, breakdown)} />
       </Section>
       <Section title={`Picture: ${picture.toLowerCase()}`} level={3}>
         <p className={classes.small}>

@@ -3,7 +3,6 @@ import { Button, makeStyles, tokens } from '@fluentui/react-components'
 import { quote, type Table } from '../sheet'
 import type { PictureFile } from './picture-file'
 import { useStepStyles } from './step'
-import { useBooksState } from './store'
 import { htmlOf, textOf } from './table-copy'
 
 const useStyles = makeStyles({
@@ -37,9 +36,17 @@ async function toClipboard(parts: { readonly [type: string]: Blob | Promise<Blob
 }
 
 /** Copies a table as text and HTML; where the host does not let it, shows the text to be copied by hand, which hands over both as well. */
-export function CopyTable({ what, table }: { what: string; table: () => Table }) {
+export function CopyTable({
+  what,
+  table,
+  decimal,
+}: {
+  what: string
+  table: () => Table
+  /** the mark before decimals in what is typed for this workbook */
+  decimal: string
+}) {
   const classes = { ...useStepStyles(), ...useStyles() }
-  const { decimal } = useBooksState()
   const [outcome, setOutcome] = useState('')
   const [shown, setShown] = useState<{ readonly text: string; readonly html: string } | null>(null)
   const area = useRef<HTMLTextAreaElement>(null)

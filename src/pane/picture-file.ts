@@ -166,7 +166,7 @@ class Sheet {
 ${this.#parts.join('\n')}
 </svg>
 `
-    return { svg, width: WIDTH, height, name: name.replace(/[\\/:*?"<>|]+/g, ' ').trim(), alt }
+    return { svg, width: WIDTH, height, name: name.replace(/[\\/:*?"<>|\s]+/g, ' ').trim(), alt }
   }
 }
 

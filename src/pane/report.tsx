@@ -282,7 +282,7 @@ function ChecksList({ state }: { state: BooksState }) {
 export default function ReportView() {
   const classes = { ...useStepStyles(), ...useStyles() }
   const state = useBooksState()
-  const { breakdown, reporting, faults, title } = state
+  const { breakdown, reporting, faults } = state
   // two sections share one field of faults: the sentence stands where it was asked for
   const [asked, setAsked] = useKept<'kept' | 'change' | null>('history asked', null)
   const faultOf = (section: 'kept' | 'change') => (asked === section ? faults.history : undefined)
@@ -321,7 +321,7 @@ export default function ReportView() {
         )}
         {breakdown && (
           <Folded title="Copy and export" headline="The table to the clipboard, pictures as files">
-            <CopyAndExport title={title} breakdown={breakdown} />
+            <CopyAndExport state={state} breakdown={breakdown} />
           </Folded>
         )}
         <TradesTable state={state} />
