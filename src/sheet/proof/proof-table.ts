@@ -756,8 +756,12 @@ class Proof {
     this.#step(
       'gross per period',
       'Sum of stand-alone risks, per period',
-      () => `${this.#at('gross risk')}/${scaled}`,
+      // from weights and variances, not from the column of stand-alone risks: LibreOffice Calc, which works out long columns in several
+      // threads, takes that for a circle when the volatility hangs on one of them and the next column on the volatility
+      () =>
+        `SUMPRODUCT(ABS(${this.#all('weight')}),SQRT(${this.#all(this.#shrinkage ? 'shrunk variance' : 'variance')}))`,
       PERCENT,
+      'Sum of absolute weights times volatilities',
     )
     this.#step(
       'variance',
