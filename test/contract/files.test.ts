@@ -219,18 +219,21 @@ describe('look', () => {
       { A1: { v: 'title' }, D9: { v: 1 } },
       {
         columnData: { 0: { w: 180 }, 2: { hd: BooleanNumber.TRUE } },
-        rowData: { 0: { h: 40 }, 4: { hd: BooleanNumber.TRUE } },
+        rowData: { 0: { h: 40 }, 4: { hd: BooleanNumber.TRUE }, 8: { ah: 36 } },
         mergeData: [{ startRow: 0, endRow: 0, startColumn: 0, endColumn: 3 }],
         freeze: { xSplit: 1, ySplit: 3, startRow: 3, startColumn: 1 },
         showGridlines: BooleanNumber.FALSE,
         tabColor: '#00AA55',
       },
     )
-    await again()
+    const { bytes } = await again()
     const sheet = book().getActiveSheet().getSheet().getConfig()
     expect(sheet.columnData[0]?.w).toBe(180)
     expect(sheet.columnData[2]?.hd).toBe(BooleanNumber.TRUE)
-    expect(sheet.rowData[0]?.h).toBe(40)
+    expect(sheet.rowData[0]).toMatchObject({ h: 40, ia: BooleanNumber.FALSE })
+    // the height that a row's texts ask for, which follows them: 18.3.1.73, ht without customHeight
+    expect(sheet.rowData[8]).toEqual({ ah: 36 })
+    expect((await parsed(bytes)).worksheets[0]?.getRow(9)).toMatchObject({ height: 27 })
     expect(sheet.rowData[4]?.hd).toBe(BooleanNumber.TRUE)
     expect(sheet.mergeData).toMatchObject([{ startRow: 0, endRow: 0, startColumn: 0, endColumn: 3 }])
     expect(sheet.freeze).toMatchObject({ xSplit: 1, ySplit: 3 })

@@ -182,7 +182,7 @@ function gridSheet(
   const rowData: IObjectArrayPrimitiveType<Partial<IRowData>> = {}
   sheet.eachRow({ includeEmpty: true }, (row, number) => {
     const look = {
-      ...(row.height ? { h: Math.round(row.height * PIXELS), ia: BooleanNumber.FALSE } : {}),
+      ...(row.height ? heightOf(row.height, row.customHeight === true) : {}),
       ...(row.hidden ? { hd: BooleanNumber.TRUE } : {}),
       ...(row.outlineLevel ? withLevel(row.outlineLevel) : {}),
     }
@@ -254,6 +254,12 @@ function gridSheet(
       ...(sheet.properties.outlineProperties ? { outline: sheet.properties.outlineProperties } : {}),
     },
   }
+}
+
+/** A height that a user chose stays; one that texts asked for goes on following them. */
+const heightOf = (points: number, isChosen: boolean): Partial<IRowData> => {
+  const pixels = Math.round(points * PIXELS)
+  return isChosen ? { h: pixels, ia: BooleanNumber.FALSE } : { ah: pixels }
 }
 
 function gridColumns(sheet: Worksheet): IObjectArrayPrimitiveType<Partial<IColumnData>> {

@@ -190,10 +190,13 @@ function writeShape(target: Worksheet, sheet: Partial<IWorksheetData>): void {
   }
   target.properties.outlineLevelCol = writeLevels(sheet.columnData, (column) => target.getColumn(column + 1))
   const defaultHeight = sheet.defaultRowHeight ?? DEFAULT_HEIGHT
-  for (const [row, { h, hd }] of entries(sheet.rowData)) {
+  for (const [row, { h, hd, ah, ia }] of entries(sheet.rowData)) {
     // The library forgets a hidden row without cells unless it has a height.
     if (hd === BooleanNumber.TRUE)
       Object.assign(target.getRow(row + 1), { hidden: true, height: (h ?? defaultHeight) / PIXELS })
+    else if (ah !== undefined && ia !== BooleanNumber.FALSE)
+      // as its texts ask for; not every program finds that out by itself, and lines would lie over those of the row above
+      Object.assign(target.getRow(row + 1), { height: ah / PIXELS, customHeight: false })
     else if (h !== undefined && h !== defaultHeight) target.getRow(row + 1).height = h / PIXELS
   }
   target.properties.outlineLevelRow = writeLevels(sheet.rowData, (row) => {
