@@ -71,48 +71,35 @@ const LOOK: { readonly [M in Mark]: string } = {
 }
 
 /**
- * The table as HTML: sentences as paragraphs, figures as tables in the format they are shown in. Programs for sheets find each number with
- * all its digits, and its format, in attributes of its cell.
+ * The table as HTML, its figures in the format they are shown in; a sentence takes the whole width. Programs for sheets find each number with
+ * all its digits, and its format, in attributes of its cell. One table, so that its columns stay columns where it is pasted into cells.
  */
 export function htmlOf({ cells, numeric }: Table): string {
-  const parts: string[] = []
-  for (let at = 0; at < cells.length;) {
-    const row = cells[at] ?? []
-    const isTable = row.some((cell, k) => k > 0 && !isBlank(cell))
-    if (!isTable) {
-      const [first] = row
-      if (!isBlank(first)) parts.push(paragraph(first!))
-      at++
-      continue
-    }
-    let end = at
-    while (end < cells.length && cells[end]!.some((cell) => !isBlank(cell))) end++
-    parts.push(tableOf(cells.slice(at, end), numeric))
-    at = end
-  }
-  return `<html xmlns:x="urn:schemas-microsoft-com:office:excel"><head><meta charset="utf-8"></head><body style="font-family:Arial,sans-serif;font-size:10pt">${parts.join('')}</body></html>`
+  const used = (row: readonly TableCell[]): number =>
+    row.reduce((last, cell, k) => (isBlank(cell) ? last : k + 1), 0)
+  const width = Math.max(1, ...cells.map(used))
+  const lines = cells.map((row) => {
+    const filled = row.slice(0, used(row))
+    const [first] = filled
+    return filled.length === 1 && typeof first?.value === 'string'
+      ? `<td colspan="${width}"${styled(first.mark, AS_TEXT)}>${escaped(first.value)}</td>`
+      : filled.map((cell, k) => cellOf(cell, numeric[k] ?? false)).join('')
+  })
+  const body = lines.map((line) => `<tr>${line === '' ? '<td>&nbsp;</td>' : line}</tr>`).join('')
+  return `<html xmlns:x="urn:schemas-microsoft-com:office:excel"><head><meta charset="utf-8"></head><body><table cellpadding="3" style="border-collapse:collapse;font-family:Arial,sans-serif;font-size:10pt">${body}</table></body></html>`
 }
+
+/** Said of every text: whatever it looks like, it is no number and no formula. */
+const AS_TEXT = 'mso-number-format:"\\@"'
 
 const styled = (mark: Mark | undefined, more: string): string => {
   const style = [mark ? LOOK[mark] : '', more].filter((part) => part !== '').join(';')
   return style === '' ? '' : ` style="${escaped(style)}"`
 }
 
-const paragraph = ({ value, mark }: TableCell): string =>
-  `<p${styled(mark, '')}>${escaped(String(value))}</p>`
-
-function tableOf(rows: readonly (readonly TableCell[])[], numeric: readonly boolean[]): string {
-  const columns = Math.max(
-    ...rows.map((row) => row.reduce((last, cell, k) => (isBlank(cell) ? last : k + 1), 0)),
-  )
-  const cell = (of: TableCell, k: number): string => {
-    const { value, format, mark } = of
-    const aligned = typeof value === 'number' || (mark === 'head' && numeric[k]) ? ' align="right"' : ''
-    if (typeof value === 'number')
-      return `<td nowrap${aligned}${styled(mark, `mso-number-format:"${format}"`)} x:num="${value}" sdval="${value}" sdnum="1033;0;${format}">${shownNumber(value, format)}</td>`
-    // said to be text, whatever it looks like
-    return `<td nowrap${aligned}${styled(mark, isBlank(of) ? '' : 'mso-number-format:"\\@"')}>${escaped(String(value))}</td>`
-  }
-  const lines = rows.map((row) => `<tr>${row.slice(0, columns).map(cell).join('')}</tr>`)
-  return `<table cellpadding="3" style="border-collapse:collapse">${lines.join('')}</table>`
+function cellOf({ value, format, mark }: TableCell, isNumeric: boolean): string {
+  if (typeof value === 'number')
+    return `<td nowrap align="right"${styled(mark, `mso-number-format:"${format}"`)} x:num="${value}" sdval="${value}" sdnum="1033;0;${format}">${shownNumber(value, format)}</td>`
+  const aligned = mark === 'head' && isNumeric ? ' align="right"' : ''
+  return `<td nowrap${aligned}${styled(mark, value === '' ? '' : AS_TEXT)}>${escaped(String(value))}</td>`
 }

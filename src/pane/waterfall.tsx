@@ -13,7 +13,7 @@ const useStyles = makeStyles({
   steps: { listStyleType: 'none', margin: 0, padding: 0 },
   step: {
     display: 'grid',
-    gridTemplateColumns: '100px minmax(0, 1fr) 74px',
+    gridTemplateColumns: '96px minmax(0, 1fr) 88px',
     columnGap: tokens.spacingHorizontalS,
     alignItems: 'center',
     fontSize: tokens.fontSizeBase200,
@@ -21,7 +21,7 @@ const useStyles = makeStyles({
     fontVariantNumeric: 'tabular-nums',
   },
   strong: { fontWeight: tokens.fontWeightSemibold },
-  number: { textAlign: 'right' },
+  number: { textAlign: 'right', whiteSpace: 'nowrap' },
   drawing: { display: 'block', overflow: 'visible' },
   rise: {
     fill: tokens.colorBrandForeground1,

@@ -157,6 +157,7 @@ test('a weight chosen on the curve with the arrow keys goes into the list', asyn
 test('Report writes the trades of the list to a sheet of their own', async () => {
   const { pane } = desk
   await pane.getByRole('tab', { name: 'Report' }).click()
+  await pane.getByRole('button', { name: /^Trades, before and after/ }).click()
   await pane.getByRole('button', { name: 'Write trades' }).click()
   await pane.getByText(/^Trades written to/).waitFor()
   await show('Trades')
