@@ -39,7 +39,7 @@ function Book({ state }: { state: BooksState }) {
             Add another book
           </Button>
           <AskedButton
-            question="Forget the link to these cells? The cells themselves stay as they are."
+            question={`Forget the link to these cells? The cells themselves stay as they are.${state.reporting.kept.length > 0 ? ' Results kept of this book can be compared no more.' : ''}`}
             yes="Forget the link"
             act={() => void books.removeBook()}
           >

@@ -445,7 +445,7 @@ class OpenBooks implements Books {
       book,
       async (work) => {
         dropFault(book, proposal.field)
-        await proposal.accept(work)
+        await proposal.accept(work, (sentence) => (this.#notice = sentence))
         const parted = await this.#partTables(book)
         if (parted !== '') this.#notice = parted
       },
@@ -645,8 +645,8 @@ class OpenBooks implements Books {
   }
 
   writeChange(): Promise<void> {
-    return this.#command('history', async (book) => {
-      const area = await book.writeChange()
+    return this.#command('history', async (book, work) => {
+      const area = await book.writeChange(serialToday(), work)
       this.#notice = `Comparison written to ${addressOf(area)}. It stays as it is until it is written again.`
     })
   }
@@ -724,10 +724,11 @@ class OpenBooks implements Books {
 
   removeBook(): Promise<void> {
     return this.#command(undefined, async (book) => {
+      const { length } = book.reporting.state.kept
       if (book.kept) await this.#workbook.write(await book.forget())
       this.#books = this.#books.filter((other) => other !== book)
       this.#current = this.#book.id
-      this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.`
+      this.#notice = `${book.title} is no longer linked; its table and your cells stay as they are.${length > 0 ? ` Its ${countOf(length, 'kept result')} ${length === 1 ? 'is' : 'are'} taken away with it; what is written of ${length === 1 ? 'it' : 'them'} to be read stays.` : ''}`
     })
   }
 }

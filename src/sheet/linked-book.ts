@@ -75,7 +75,8 @@ export interface Proposal {
   readonly field: Field
   readonly sentence: string
   readonly button: string
-  readonly accept: (work: Work) => Promise<void>
+  /** @param say takes what has to be said of it */
+  readonly accept: (work: Work, say: (sentence: string) => void) => Promise<void>
 }
 
 type Part = SourcePart | 'table' | ReportPart
@@ -233,7 +234,9 @@ export class LinkedBook {
   /** Cells, rows, columns or a sheet came, went or got another name: everything has to be looked at again. */
   heedMove(sheet: string): boolean {
     const reads = this.#blocks.heedMove(sheet)
-    const concerned = this.linked && (reads || this.table?.sheet === sheet)
+    const { proof, live } = this.reporting.state
+    const written = [this.table, proof?.area, live].some((area) => area?.sheet === sheet)
+    const concerned = this.linked && (reads || written)
     if (concerned) this.#edits++
     return concerned
   }
@@ -465,8 +468,8 @@ export class LinkedBook {
       ...(trades === undefined ? {} : { trades }),
     }
     const { settings, breakdown } = this
-    this.reporting.stand({ title: this.title, blocks, book, settings, breakdown })
-    const { capitalFormula } = this.#blocks
+    const { capital, capitalFormula } = this.#blocks
+    this.reporting.stand({ title: this.title, blocks, book, settings, breakdown, capital })
     await this.#standForTrades({ blocks, book, settings, breakdown, capitalFormula }, work)
   }
 
@@ -760,7 +763,7 @@ export class LinkedBook {
       kind === 'back-test'
         ? backtest && backtestTable(title, backtest, breakdown, today)
         : bootstrap && breakdown && bootstrapTable(title, bootstrap, breakdown, today)
-    if (table) return this.reporting.write(kind, table, this.#sources())
+    if (table) return this.reporting.write(kind === 'back-test' ? 'backtest' : kind, table, this.#sources())
     throw new Fault('missing', `no ${kind} stands beside these figures`, 'run it first', {
       argument: 'study',
     })
@@ -813,8 +816,18 @@ export class LinkedBook {
       field: 'history',
       sentence: `A result ${date} is kept already (on ${dateText(earlier.keptOn)}). Replace it?`,
       button: 'Replace it',
-      accept: async () => {
-        await this.reporting.keep(note, today, earlier.id)
+      accept: async (later, say) => {
+        // the sheet may have moved on since it was asked
+        await this.#current('history', later)
+        if (this.reporting.replacedNow()?.id !== earlier.id)
+          throw new Fault(
+            'changed',
+            `the data of this book are of another date than when it was asked whether to replace the result ${date}`,
+            'keep the result again',
+            { argument: 'history' },
+          )
+        const area = await this.reporting.keep(note, today, earlier.id)
+        say(`Result kept in ${addressOf(area)}. ${this.reporting.left ?? ''}`.trim())
       },
     })
     return null
@@ -822,13 +835,14 @@ export class LinkedBook {
 
   /** Splits the change of risk between two kept results, or a kept one and now. */
   async compareResults(from: string, to: string, today: number, work: Work): Promise<void> {
-    if (from === NOW || to === NOW) await this.#current('history', work)
+    if (to === NOW) await this.#current('history', work)
     await this.reporting.compare(from, to, today, work)
   }
 
   /** Writes the comparison asked for last to a sheet of its own. */
-  writeChange(): Promise<Area> {
-    return this.reporting.writeChange(this.title, this.#sources())
+  async writeChange(today: number, work: Work): Promise<Area> {
+    if (this.reporting.state.change?.to.isNow) await this.#current('history', work)
+    return this.reporting.writeChange(this.title, today, this.#sources(), work)
   }
 
   #sources(): Sources {

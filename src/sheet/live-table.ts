@@ -442,7 +442,7 @@ class Sheet {
 type SettingKey = 'periods' | 'estimator' | 'confidence' | 'ahead' | 'method' | 'capital'
 
 function laidOut(
-  { title, blocks, breakdown, settings: chosen }: ProofInput,
+  { title, blocks, breakdown, settings: chosen, capital: followed }: ProofInput,
   at: Area,
   risk: RiskCells,
   { list, riskless, direct }: Positions,
@@ -533,7 +533,13 @@ function laidOut(
     setting('method', 'Method for large losses', { value: method, format: PLAIN })
   }
   if (capital !== null)
-    setting('capital', 'Capital', ...capitalCell(blocks.holdings.holdings, capital, chosen.capital !== null))
+    setting(
+      'capital',
+      'Capital',
+      ...(followed
+        ? ([formula(`=${referenceOf(followed)}`, '#,##0.00'), 'from its own cell'] as const)
+        : capitalCell(blocks.holdings.holdings, capital, chosen.capital !== null)),
+    )
 
   section('Data')
   sheet.say(
@@ -603,6 +609,13 @@ function laidOut(
     cells: sheet.cells(),
     widths: Array.from({ length: sheet.width }, (_, k) => WIDTHS[k] ?? 14),
     numeric: Array.from({ length: sheet.width }, (_, k) => k > 0),
+    page: {
+      paper: 'A4',
+      orientation: 'landscape',
+      onePage: false,
+      header: { left: `Contributions to risk, live: ${title}`, right: '' },
+      footer: CAUTION,
+    },
   }
 }
 

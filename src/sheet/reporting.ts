@@ -17,12 +17,12 @@ import type { Json, Seen, Want, Workbook, WritePlan } from './workbook'
 import type { Place, Sources } from './written-table'
 import { WrittenTable } from './written-table'
 
-/** Tables on sheets of their own that stay as they are until they are written again, and what a new sheet for each is called. */
+/** Tables on sheets of their own that stay as they are until they are written again, and what a new sheet for each is called. The keys go into names of the workbook. */
 const SHEETS = {
   checks: 'Data checks',
   trades: 'Trades',
   stress: 'Stress',
-  'back-test': 'Back-test',
+  backtest: 'Back-test',
   bootstrap: 'Bootstrap',
   live: 'Risk, live',
   proof: 'Proof',
@@ -68,18 +68,16 @@ export const NOW = 'now'
 
 const NOTHING_COMPUTED = 'nothing is computed yet'
 
-/** Whether two sets of figures are the same to whoever reads a proof of them. */
-const sameFigures = (a: ProofInput, b: ProofInput): boolean =>
-  a.title === b.title &&
-  JSON.stringify(a.settings) === JSON.stringify(b.settings) &&
-  a.breakdown.decomposition.volatility === b.breakdown.decomposition.volatility &&
-  a.breakdown.names.length === b.breakdown.names.length &&
-  a.breakdown.names.every((name, i) => name === b.breakdown.names[i]) &&
-  a.breakdown.decomposition.contribution.every(
-    (part, i) =>
-      part === b.breakdown.decomposition.contribution[i] &&
-      a.breakdown.decomposition.weights[i] === b.breakdown.decomposition.weights[i],
-  )
+/** All that a proof holds as constants of ours: equal texts, equal proofs. */
+function provenOf({ title, settings, breakdown }: ProofInput): string {
+  const { names, groups, decomposition: d, active, tails } = breakdown
+  return JSON.stringify([
+    [title, settings, names, groups, d.volatility],
+    [d.weights, d.standAlone, d.contribution].map((values) => Array.from(values)),
+    active && [active.risk.trackingError, Array.from(active.benchmark), Array.from(active.risk.contribution)],
+    typeof tails === 'string' ? tails : [tails.risk.valueAtRisk, tails.risk.shortfall],
+  ])
+}
 
 /**
  * What of one book leaves the pane and has to stand without it: the tables on sheets of their own, the proof, the committee page, the
@@ -93,9 +91,12 @@ export class Reporting {
   readonly #nameOf: (part: ReportPart) => string
   readonly #history: History
   #figures: ProofInput | null = null
-  /** the figures the proof was written from; null where nobody knows */
-  #proven: ProofInput | null = null
+  /** what of the figures a proof would hold, and what of them it was written with; null where nobody knows */
+  #provable: string | null = null
+  #proven: string | null = null
   #change: RiskChange | null = null
+  /** the figures that were "now" in it */
+  #compared: ProofInput | null = null
   #lost: readonly string[] = []
 
   /**
@@ -122,7 +123,7 @@ export class Reporting {
     return {
       proof: area && {
         area,
-        isCurrent: this.#proven && this.#figures && sameFigures(this.#proven, this.#figures),
+        isCurrent: this.#proven === null ? null : this.#proven === this.#provable,
       },
       live: this.#tables.live.area,
       kept: this.#history.heads,
@@ -134,6 +135,7 @@ export class Reporting {
   /** Takes the figures of the book as they stand now. */
   stand(figures: ProofInput): void {
     this.#figures = figures
+    this.#provable = provenOf(figures)
   }
 
   /** What to look at to know where the tables lie whose place is shown. */
@@ -160,7 +162,7 @@ export class Reporting {
   async writeProof(sources: Sources): Promise<Area> {
     const figures = this.#standing('proof')
     const area = await this.write('proof', (at) => proofTable(figures, at), sources)
-    this.#proven = figures
+    this.#proven = this.#provable
     return area
   }
 
@@ -172,7 +174,10 @@ export class Reporting {
   writeLive(place: Place, over: 'blank' | 'replace', at: Area, sources: Sources): Promise<Area> {
     const figures = this.#standing('table')
     const written = this.#tables.live
-    return written.write(place, at, liveTableAt(figures, at), over, sources)
+    const { page, ...table } = liveTableAt(figures, at)
+    // among a user's own cells the page is the user's
+    const own = place === 'new sheet' && page ? { ...table, page } : table
+    return written.write(place, at, own, over, sources)
   }
 
   /** What `writeLive` would fill from a corner on. */
@@ -216,7 +221,9 @@ export class Reporting {
   /** @param replaces id of a kept result whose place it takes */
   async keep(note: string, today: number, replaces: string | null): Promise<Area> {
     const snapshot = await this.#snapshot(note, today, 'kept')
-    return this.#history.keep(snapshot, replaces)
+    const area = await this.#history.keep(snapshot, replaces)
+    this.#dropChangeOf(replaces)
+    return area
   }
 
   /** What the last `keep` or `remove` left standing of an earlier block, as a sentence. */
@@ -226,8 +233,14 @@ export class Reporting {
 
   async remove(id: string): Promise<void> {
     await this.#history.remove(id)
-    if (this.#change && [this.#change.from.id, this.#change.to.id].includes(id)) this.#change = null
+    this.#dropChangeOf(id)
     await this.checkKept()
+  }
+
+  /** A comparison with a result that is kept no more goes with it. */
+  #dropChangeOf(id: string | null): void {
+    const { from, to } = this.#change ?? {}
+    if (from?.id === id || (to?.id === id && !to?.isNow)) this.#change = null
   }
 
   /** Looks whether what is kept is still in the workbook. */
@@ -250,6 +263,11 @@ export class Reporting {
       throw new Fault('unknown-choice', 'both sides are the same result', 'choose two results', {
         argument: 'history',
       })
+    if (from === NOW)
+      throw new Fault('unknown-choice', 'it is compared from what stands now', 'choose a kept result', {
+        argument: 'history',
+      })
+    this.#compared = this.#figures
     this.#change = await this.#changeBetween(
       await this.#result(from, today),
       await this.#result(to, today),
@@ -257,7 +275,11 @@ export class Reporting {
     )
   }
 
-  async writeChange(title: string, sources: Sources): Promise<Area> {
+  /** Writes the comparison asked for last; one with figures that stood and do so no more is made again first. */
+  async writeChange(title: string, today: number, sources: Sources, work: Work): Promise<Area> {
+    const asked = this.#change
+    if (asked?.to.isNow && this.#compared !== this.#figures)
+      await this.compare(asked.from.id, NOW, today, work)
     if (!this.#change)
       throw new Fault('missing', 'nothing is compared yet', 'Compare comes first', { argument: 'history' })
     return this.write('change', changeTable(title, this.#change), sources)
