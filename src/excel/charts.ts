@@ -228,6 +228,7 @@ function draw(context: Excel.RequestContext, { name, chart, of }: DrawnChart): v
   // names of categories keep to the edge, off bars that lie on the other side of zero
   categoryAxis.tickLabelPosition = 'Low'
   valueAxis.numberFormat = chart.format
+  if (chart.begins !== undefined) valueAxis.minimum = chart.begins
   if (kind === 'bars') {
     // the first category on top, and the axis of values at the bottom all the same
     categoryAxis.reversePlotOrder = true

@@ -341,9 +341,10 @@ function addSteps(
   const top = cells.length
   for (let k = 0; k < PICTURE.rows; k++) add()
   const span = (column: number): Span => ({ row: first, column, rows: steps.length, columns: 1 })
+  const begins = series === DRAWN ? beginningOf(steps) : null
   return {
     kind: 'stacked columns',
-    title: `Volatility ${horizon}. ${datesText(change)}`,
+    title: `Volatility ${horizon}. ${datesText(change)}${begins === null ? '' : `. The axis begins at ${percentText(begins, digitsOf(change))}`}`,
     alt: altOf(change, steps),
     over: { row: top, column: 0, rows: PICTURE.rows, columns: PICTURE.columns },
     categories: span(0),
@@ -353,7 +354,20 @@ function addSteps(
       ...(key === 'under' ? { unseen: true } : {}),
     })),
     format: level,
+    ...(begins === null ? {} : { begins }),
   }
+}
+
+/** Where the axis begins so that steps that are small beside the levels can be seen; null where 0 does as well. */
+function beginningOf(steps: readonly ChangeStep[]): number | null {
+  const places = steps.flatMap(({ start, end, isLevel }) => (isLevel ? [end] : [start, end]))
+  const [low, high] = [Math.min(...places), Math.max(...places)]
+  const span = high - low
+  if (!(span > 0)) return null
+  // a round number, about half of what is drawn below the lowest place
+  const unit = 10 ** Math.floor(Math.log10(span))
+  const begins = Number((Math.floor((low - span / 2) / unit) * unit).toPrecision(12))
+  return begins > high / 4 ? begins : null
 }
 
 function altOf(change: RiskChange, steps: readonly ChangeStep[]): string {

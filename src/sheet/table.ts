@@ -101,6 +101,8 @@ export interface TableChart {
   readonly series: readonly ChartSeries[]
   /** of the axis of values */
   readonly format: string
+  /** where the axis of values begins, for changes that are small beside the levels they lead between; absent: at 0, or as the host sees fit */
+  readonly begins?: number
 }
 
 /** How the sheet of a table is printed; the table's cells are the print area. Texts are plain: a host's codes are made from them. */

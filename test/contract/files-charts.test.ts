@@ -64,6 +64,7 @@ const waterfall: SheetChart = {
     { name: 'Down', values: on('$C$2:$C$5'), look: 'solid' },
   ],
   legend: true,
+  minimum: 0.05,
 }
 const line: SheetChart = {
   ...columns,

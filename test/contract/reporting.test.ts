@@ -161,6 +161,27 @@ test('the committee page is written from figures that stand, with what changed s
   expect(texts).toMatch(/not advice/)
 }, 120_000)
 
+test('a back-test and a bootstrap are written to sheets of their own, the first with a chart', async () => {
+  const host = await desk()
+  const { books, compute, office } = host
+  await compute()
+  await books.backtest({ window: 30, confidence: 0.95, method: 'normal' }, 'this book')
+  await books.writeStudy('back-test')
+  const tests = (await shown(host, 'Back-test', 70)).flat()
+  expect(tests).toContain('Unconditional coverage (Kupiec)')
+  await books.bootstrap({ replicates: 50, seed: 1, blockLength: 1 })
+  await books.writeStudy('bootstrap')
+  expect((await shown(host, 'Bootstrap', 40)).flat()).toContain('Harbour bonds')
+  const charts = await office.Excel.run(async (context) => {
+    const { charts: found } = context.workbook.worksheets.getItem('Back-test')
+    found.load('items/name')
+    await context.sync()
+    return found.items.map(({ name }) => name)
+  })
+  expect(charts).toHaveLength(1)
+  expect(charts[0]).toMatch(/^Line chart of the returns of 30 dates/)
+}, 60_000)
+
 test('without figures nothing is kept, compared or proven, and it is said where', async () => {
   const { books } = await desk()
   await books.writeProof()

@@ -56,6 +56,7 @@ function bars(sheet: Excel.Worksheet): Excel.Chart {
   second.setXAxisValues(sheet.getRange('A1:A3'))
   chart.axes.categoryAxis.reversePlotOrder = true
   chart.axes.valueAxis.numberFormat = '0%'
+  chart.axes.valueAxis.minimum = -0.25
   return chart
 }
 
@@ -73,6 +74,7 @@ const drawnBars = {
   format: '0%',
   reversed: true,
   legend: true,
+  minimum: -0.25,
 }
 
 test('a chart is kept with its sheet as it was described', async () => {

@@ -187,7 +187,7 @@ const areNumbers = (cells: readonly Figure[]): boolean =>
 
 /** The two axes. Names of categories keep to the edge, off bars that lie on the other side of zero. */
 function axesXml(
-  { kind, categories, format, reversed }: SheetChart,
+  { kind, categories, format, reversed, minimum }: SheetChart,
   figures: (reference: string) => readonly Figure[],
 ): string {
   const across = kind === 'bars'
@@ -200,7 +200,7 @@ function axesXml(
     `<c:axPos val="${across ? 'l' : 'b'}"/>${names}` +
     `<c:majorTickMark val="none"/><c:minorTickMark val="none"/><c:tickLblPos val="low"/><c:spPr>${line(0.75, solid(INK))}</c:spPr>${LETTERS}` +
     `<c:crossAx val="${AXES.value}"/><c:crosses val="autoZero"/><c:auto val="0"/><c:lblAlgn val="ctr"/><c:lblOffset val="100"/><c:noMultiLvlLbl val="1"/></c:catAx>` +
-    `<c:valAx><c:axId val="${AXES.value}"/><c:scaling><c:orientation val="minMax"/></c:scaling><c:delete val="0"/>` +
+    `<c:valAx><c:axId val="${AXES.value}"/><c:scaling><c:orientation val="minMax"/>${minimum === undefined ? '' : `<c:min val="${minimum}"/>`}</c:scaling><c:delete val="0"/>` +
     `<c:axPos val="${across ? 'b' : 'l'}"/><c:majorGridlines><c:spPr>${line(0.5, solid(QUIET))}</c:spPr></c:majorGridlines>` +
     `<c:numFmt formatCode="${marked(format)}" sourceLinked="0"/><c:majorTickMark val="none"/><c:minorTickMark val="none"/><c:tickLblPos val="nextTo"/>` +
     `<c:spPr>${NO_LINE}</c:spPr>${LETTERS}<c:crossAx val="${AXES.category}"/>` +
@@ -287,6 +287,11 @@ function chartOf(anchor: Element, chart: Document | null): SheetChart | null {
     return null
   const [category] = [...all(chart, 'catAx'), ...all(chart, 'dateAx')]
   const [title] = all(chart, 'title')
+  const [begins] = all(chart, 'valAx').flatMap((axis) => {
+    const scaling = inside(axis, 'scaling')
+    const least = Number(val(scaling && inside(scaling, 'min')) || NaN)
+    return Number.isFinite(least) ? [least] : []
+  })
   return {
     name: attributesOf(all(anchor, 'cNvPr')[0]).name ?? '',
     kind,
@@ -303,6 +308,7 @@ function chartOf(anchor: Element, chart: Document | null): SheetChart | null {
       'General',
     reversed: category !== undefined && all(category, 'orientation').some((one) => val(one) === 'maxMin'),
     legend: all(chart, 'legend').length > 0,
+    ...(begins === undefined ? {} : { minimum: begins }),
   }
 }
 

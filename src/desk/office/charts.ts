@@ -153,7 +153,18 @@ const CATEGORY_AXIS: Kind<Chart> = {
 
 const VALUE_AXIS: Kind<Chart> = {
   name: 'ChartAxis',
-  scalars: { numberFormat: kept('format', isText) },
+  scalars: {
+    numberFormat: kept('format', isText),
+    // a host that was not told where it begins says where it put it, which the desk leaves to whoever draws
+    minimum: {
+      read: (chart) => found(chart).minimum ?? 0,
+      write: (chart: Chart, minimum: unknown) => {
+        if (typeof minimum !== 'number')
+          throw new OfficeError('InvalidArgument', 'an axis begins at a number')
+        change(chart, { minimum })
+      },
+    },
+  },
 }
 
 const AXES: Kind<Chart> = {

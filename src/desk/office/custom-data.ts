@@ -87,6 +87,8 @@ export interface SheetChart {
   /** whether categories run from the far end of their axis: for bars, the first one on top */
   readonly reversed: boolean
   readonly legend: boolean
+  /** where the axis of values begins; absent: where whoever draws sees fit */
+  readonly minimum?: number
 }
 
 export interface ChartSeries {

@@ -7,7 +7,7 @@ import type { SheetChart } from '../office'
 /** A chart with what stands in its cells. */
 export interface DrawnChart extends Pick<
   SheetChart,
-  'name' | 'kind' | 'title' | 'format' | 'reversed' | 'legend'
+  'name' | 'kind' | 'title' | 'format' | 'reversed' | 'legend' | 'minimum'
 > {
   readonly categories: readonly string[]
   readonly series: readonly Series[]
@@ -248,7 +248,7 @@ function lookOf(series: readonly Series[], s: number): string {
 }
 
 /** Every bar or column, those that stand on one another included: what is below zero hangs down from it. */
-function barsOf({ kind, series, categories }: DrawnChart): Bar[] {
+function barsOf({ kind, series, categories, minimum = -Infinity }: DrawnChart): Bar[] {
   const stacked = kind === 'stacked columns'
   return categories.flatMap((_, category) => {
     const ends = { up: 0, down: 0 }
@@ -259,9 +259,10 @@ function barsOf({ kind, series, categories }: DrawnChart): Bar[] {
       const from = stacked ? ends[side] : 0
       ends[side] = from + value
       const place = stacked ? { place: 0, places: 1 } : { place: s, places: series.length }
-      return [
-        { key: `${category}-${s}`, category, from, to: from + value, look: lookOf(series, s), ...place },
-      ]
+      // what lies before the beginning of the axis is cut off
+      const [begin, end] = [Math.max(from, minimum), Math.max(from + value, minimum)]
+      if (begin === end && value !== 0) return []
+      return [{ key: `${category}-${s}`, category, from: begin, to: end, look: lookOf(series, s), ...place }]
     })
   })
 }
@@ -276,7 +277,8 @@ function valueAxis(chart: DrawnChart, range: [number, number], apart: number) {
   // Bars begin at zero. So do lines, unless they are about one level far from it.
   const span = high - low
   const isFar = chart.kind === 'line' && low * high > 0 && span > 0 && span < Math.max(-low, high) / 6
-  const ends = found.length === 0 ? [0, 1] : isFar ? [low, high] : [Math.min(0, low), Math.max(0, high)]
+  const bottom = chart.minimum ?? (isFar ? low : Math.min(0, low))
+  const ends = found.length === 0 ? [0, 1] : [bottom, isFar ? high : Math.max(0, high)]
   const wanted = Math.max(2, Math.floor(Math.abs(range[1] - range[0]) / apart))
   const scale = scaleLinear<number>({
     domain: ends[0] === ends[1] ? [ends[0]!, ends[0]! + 1] : ends,

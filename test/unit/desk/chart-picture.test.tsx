@@ -54,6 +54,29 @@ it('draws bars as long as their figures from one line of zero, the first categor
   expect(upward!.y).toBeGreaterThan(lower!.y)
 })
 
+it('cuts off what lies before the beginning of an axis, so that small steps between high levels can be seen', () => {
+  const steps: Partial<DrawnChart> = {
+    kind: 'stacked columns',
+    reversed: false,
+    series: [
+      { name: 'Under', look: 'unseen', values: [0, 0.08, 0] },
+      { name: 'Level', look: 'solid', values: [0.08, 0, 0.09] },
+      { name: 'Rise', look: 'outline', values: [0, 0.01, 0] },
+    ],
+  }
+  const [rise] = drawn({ ...steps, minimum: 0.07 })
+    .bars('outline')
+    .filter(({ high }) => high > 1)
+  const [first, , last] = drawn({ ...steps, minimum: 0.07 }).bars('solid')
+  // from 0.07: a level of 0.08 is as high as the rise of 0.01, one of 0.09 twice as high
+  expect(first!.high / rise!.high).toBeCloseTo(1, 9)
+  expect(last!.high / rise!.high).toBeCloseTo(2, 9)
+  const [small] = drawn(steps)
+    .bars('outline')
+    .filter(({ high }) => high > 1)
+  expect(small!.high).toBeLessThan(rise!.high / 4)
+})
+
 it('leaves the place of a figure that is not there free', () => {
   expect(drawn({}).bars('solid')).toHaveLength(2)
 })

@@ -5,6 +5,7 @@
 import type { CellValue, Settings, Table } from '../../../src/sheet'
 import { DEFAULT_SETTINGS, steppingCalculator } from '../../../src/sheet'
 import { changeSteps, changeTable } from '../../../src/sheet/change-table'
+import { percentText } from '../../../src/sheet/wording'
 import { growthBetween, remakeFrom } from '../../../src/sheet/history'
 import type { ChangeSources, RiskChange } from '../../../src/sheet/risk-change'
 import { riskChangeOf } from '../../../src/sheet/risk-change'
@@ -558,6 +559,10 @@ describe('The table of a comparison', () => {
     for (const cells of table.cells.slice(row, row + rows))
       expect(cells.slice(0, columns).every(({ value }) => value === '')).toBe(true)
     expect(chart!.alt).toContain('Of that drift of weights ')
+    // the axis begins below all that is drawn and near it, and the title says where
+    const places = [...under!.filter((value) => value > 0), ...level!.filter((value) => value > 0)]
+    expect(chart!.begins).toBeLessThan(Math.min(...places))
+    expect(chart!.title).toContain(`The axis begins at ${percentText(chart!.begins!, 2)}`)
   })
 
   test('draws on both sides of 0 where a step goes below it', async () => {
