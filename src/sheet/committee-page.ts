@@ -69,7 +69,6 @@ const PERCENT = '0.00%'
 const SHARE_FORMAT = '0.0%'
 const CHANGE = '+0.00%;-0.00%;0.00%'
 const RATIO = '0.00'
-const ROUNDING = '0.0E+00'
 
 const WHERE_ALL = 'see the table of contributions to risk'
 
@@ -401,6 +400,10 @@ function activeError({ active, names }: Breakdown, bands: Bands | null): number 
   return bands.ofVolatility(active.weights.map((weight, i) => weight - (active.benchmark[i] ?? 0)))
 }
 
+/** What sums leave by rounding. */
+const roundingText = (difference: number): string =>
+  difference === 0 ? '0' : difference.toExponential(1).replaceAll('-', '−')
+
 // ---- what changed
 
 const CAUSES = {
@@ -447,11 +450,10 @@ function addChange(page: Page, { change }: CommitteeInput): void {
       [CONTRIBUTION]: head('Settings'),
       [SHARE]: head('Positions'),
       [ASIDE]: head('of which drift'),
-      [RIGHT]: head('and trades'),
-      [RIGHT_2]: head('Volatilities'),
-      [RIGHT_3]: head('Correlations'),
-      [RIGHT_4]: head(to.isNow ? 'Now' : dayOf(to)),
-      [LAST]: head('Difference'),
+      [RIGHT_2]: head('trades'),
+      [RIGHT_3]: head('Volatilities'),
+      [RIGHT_4]: head('Correlations'),
+      [LAST]: head(to.isNow ? 'Now' : 'After'),
     }),
   )
   page.add({
@@ -460,11 +462,10 @@ function addChange(page: Page, { change }: CommitteeInput): void {
     [CONTRIBUTION]: number(settings?.effect ?? 0, CHANGE),
     [SHARE]: number(total.positions, CHANGE),
     [ASIDE]: number(total.drift, CHANGE),
-    [RIGHT]: number(total.trades, CHANGE),
-    [RIGHT_2]: number(total.volatilities, CHANGE),
-    [RIGHT_3]: number(total.correlations, CHANGE),
-    [RIGHT_4]: number(to.volatility, PERCENT),
-    [LAST]: number(change.difference, ROUNDING),
+    [RIGHT_2]: number(total.trades, CHANGE),
+    [RIGHT_3]: number(total.volatilities, CHANGE),
+    [RIGHT_4]: number(total.correlations, CHANGE),
+    [LAST]: number(to.volatility, PERCENT),
   })
   const moved = [...change.holdings]
     .sort(
@@ -474,7 +475,7 @@ function addChange(page: Page, { change }: CommitteeInput): void {
     .filter((line) => Math.abs(line.contributionTo - line.contributionFrom) >= 0.00005)
     .slice(0, 3)
   const notes = [
-    `The change of ${signed(change.change)} is the sum of settings, positions, volatilities and correlations (${signed(change.sum)}), in points of volatility.`,
+    `The change of ${signed(change.change)} is the sum of settings, positions, volatilities and correlations (${signed(change.sum)}, difference ${roundingText(change.difference)}), in points of volatility${to.isNow ? '' : `; after: ${dayOf(to)}`}.`,
     ...(moved.length > 0 ? [`Contributions that moved most: ${listOf(moved.map(moveText))}.`] : []),
     ...(settings ? [settings.sentence] : []),
     ...change.notes,
@@ -573,7 +574,7 @@ function addPositions(page: Page, breakdown: Breakdown, bands: Bands | null, roo
       ...reducing,
     ]),
   )
-  const difference = d.difference === 0 ? '0' : d.difference.toExponential(1).replaceAll('-', '−')
+  const difference = roundingText(d.difference)
   page.say(
     `Contributions ${breakdown.horizon} add up to the volatility: sum ${percentText(d.sumOfContributions, 2)}, total ${percentText(d.volatility, 2)}, difference ${difference}.${bands ? ' Bands are those of the contributions.' : ''}${sharesWithheld === null ? '' : ` ${sharesWithheld}`}`,
     'note',
