@@ -17,7 +17,7 @@ export default function CopyAndExport({
   const picture = `Weight and ${measureOf(breakdown).label.toLowerCase()}`
   return (
     <>
-      <Section title="Breakdown table" level={3}>
+      <Section title="Table to the clipboard" level={3}>
         <CopyTable what="table" decimal={decimal} table={() => breakdownTable(title, breakdown)} />
       </Section>
       <Section title={`Picture: ${picture.toLowerCase()}`} level={3}>
