@@ -4,7 +4,7 @@
  */
 import type { Breakdown } from '../../src/sheet/breakdown'
 import { proofTable, type ProofInput } from '../../src/sheet/proof'
-import type { Settings } from '../../src/sheet/settings'
+import type { EstimatorChoice, Settings } from '../../src/sheet/settings'
 import type { Table } from '../../src/sheet/table'
 import { itInCalc } from '../calc'
 import { DIFFERS, expectAgreement, readProof, type ProofReading } from '../proof-reading'
@@ -263,6 +263,48 @@ describe('A cell of the returns that changes', () => {
   it('that becomes blank is seen, whatever it does to the figures', async () => {
     await desk.change(book, 'returns', row, column, '')
     expect(differing(readProof(table, desk.shown(book)))).toContain('Numbers in the cells of the returns')
+  })
+})
+
+// from some hundred rows on LibreOffice Calc works out columns as a whole and in several threads, which is another engine again
+describe('Books of 150 holdings', () => {
+  const estimators: readonly (readonly [string, EstimatorChoice])[] = [
+    ['decay', { kind: 'exponential', decay: 0.97 }],
+    ['identity', { kind: 'shrinkage', target: 'identity' }],
+    ['correlation', { kind: 'shrinkage', target: 'correlation' }],
+    ['oas', { kind: 'shrinkage', target: 'oas' }],
+    ['lagged', { kind: 'lagged', lags: 2 }],
+  ]
+  const books = estimators.map(([name, estimator]): BookCells => {
+    const book = largeBook(150, 160)
+    // what groups and benchmarks need is tried elsewhere
+    const holdings = book.holdings.map((row) => [row[0] ?? '', row[2] ?? ''])
+    return { ...book, holdings, name: `150 ${name}`, data: '150', settings: { estimator } }
+  })
+  const tables = new Map<string, Table>()
+  let desk: Workout
+  let inCalc: Promise<(book: BookCells) => Shown> | null = null
+  beforeAll(async () => {
+    for (const book of books) tables.set(book.name, proofTable(await computed(book), cornerOf(book)))
+    desk = await workedOut(books.map((book) => ({ book, table: tables.get(book.name)! })))
+  })
+  afterAll(() => {
+    desk.dispose()
+  })
+
+  describe.each(books.map((book) => [book.name, book] as const))('(%s)', (name, book) => {
+    it('agree in every line, worked out by the engine under the desk', () => {
+      expectAgreement(readProof(tables.get(name)!, desk.shown(book)), tolerance)
+    })
+
+    itInCalc(
+      'agree in every line, worked out by LibreOffice Calc',
+      async () => {
+        inCalc ??= desk.saved().then(workedOutByCalc)
+        expectAgreement(readProof(tables.get(name)!, (await inCalc)(book)), tolerance)
+      },
+      300_000,
+    )
   })
 })
 

@@ -40,14 +40,13 @@ export class Draft {
     this.#rows[row]![column] = cell
   }
 
-  /** One cell, held fast in formulas. */
+  /**
+   * One cell, held fast in formulas also where they stand in its own row. From some hundred rows on LibreOffice Calc works out columns of
+   * formulas that are alike as a whole, in several threads, and takes a total that some of them hang on and others lead to for a circle
+   * (Err:522); formulas that refer to fixed cells are not alike to it.
+   */
   cell(row: number, column: number): string {
     return `$${columnLetters(this.#at.column + column)}$${this.#at.row + row + 1}`
-  }
-
-  /** One cell as a formula in its own row refers to it. */
-  near(row: number, column: number): string {
-    return `${columnLetters(this.#at.column + column)}${this.#at.row + row + 1}`
   }
 
   /** All of a part of a column, or some of its cells. */

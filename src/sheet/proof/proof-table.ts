@@ -391,7 +391,7 @@ class Proof {
 
   /** A cell of the table of holdings. */
   #cell(key: Key, i: number): string {
-    return this.#draft.near(this.#first + i, this.#column(key))
+    return this.#draft.cell(this.#first + i, this.#column(key))
   }
 
   /** A column of the table of holdings. */
@@ -515,7 +515,7 @@ class Proof {
     const row = this.#draft.next
     const c = this.#labels
     this.#known.set(name, this.#draft.cell(row, c))
-    const near = (k: number): string => this.#draft.near(row, c + k)
+    const near = (k: number): string => this.#draft.cell(row, c + k)
     this.#draft.add({
       0: text(label),
       [c]: () => formulaCell(`=${formula()}`, format),
@@ -540,9 +540,9 @@ class Proof {
     }
   }
 
-  /** Whether differences lie within what is allowed; one that is no number does not. */
+  /** Whether differences lie within what is allowed; where one of them or what is allowed is no number they do not. */
   #mark(gaps: readonly (readonly [gap: string, allowed: string])[]): TableCell {
-    const numbers = gaps.map(([gap]) => gap).join('+')
+    const numbers = gaps.flat().join('+')
     const held = gaps.map(([gap, allowed]) => `${gap}<=${allowed}`)
     const all = held.length === 1 ? held[0]! : `AND(${held.join(',')})`
     return {
@@ -573,7 +573,7 @@ class Proof {
     const range = (): string =>
       this.#draft.rectangle(this.#judged[0], this.#judged[1], this.#labels + this.#keys.length)
     const row = this.#draft.next
-    const near = (k: number): string => this.#draft.near(row, k)
+    const near = (k: number): string => this.#draft.cell(row, k)
     this.#draft.add(
       {
         0: () =>
@@ -756,12 +756,8 @@ class Proof {
     this.#step(
       'gross per period',
       'Sum of stand-alone risks, per period',
-      // from weights and variances, not from the column of stand-alone risks: LibreOffice Calc, which works out long columns in several
-      // threads, takes that for a circle when the volatility hangs on one of them and the next column on the volatility
-      () =>
-        `SUMPRODUCT(ABS(${this.#all('weight')}),SQRT(${this.#all(this.#shrinkage ? 'shrunk variance' : 'variance')}))`,
+      () => `${this.#at('gross risk')}/${scaled}`,
       PERCENT,
-      'Sum of absolute weights times volatilities',
     )
     this.#step(
       'variance',
@@ -873,7 +869,7 @@ class Proof {
       )
   }
 
-  /** The root of a variance, or 0 where it is no more than rounding. Without IF, whose condition LibreOffice takes for circular where it leads far. */
+  /** The root of a variance, or 0 where it is no more than rounding; one further below 0 than that has none, and shows as an error. */
   #rootOf(name: string): string {
     const variance = this.#at(name)
     return `SQRT(${variance}*(ABS(${variance})>${this.#at('rounding')}*${this.#at('gross per period')}^2))`
@@ -935,13 +931,13 @@ class Proof {
     const c = this.#column('contribution')
     this.#draft.add({
       0: text('Difference'),
-      [c]: formulaCell(`=${this.#draft.near(sum, c)}-${this.#draft.near(sum - 1, c)}`, GAP),
+      [c]: formulaCell(`=${this.#draft.cell(sum, c)}-${this.#draft.cell(sum - 1, c)}`, GAP),
       [this.#column('risk gap')]: formulaCell(
-        `=ABS(${this.#draft.near(sum, c)}-${this.#draft.near(sum - 1, c)})`,
+        `=ABS(${this.#draft.cell(sum, c)}-${this.#draft.cell(sum - 1, c)})`,
         GAP,
       ),
       [this.#column('mark')]: () =>
-        this.#mark([[this.#draft.near(sum + 1, this.#column('risk gap')), this.#allowed('risk')]]),
+        this.#mark([[this.#draft.cell(sum + 1, this.#column('risk gap')), this.#allowed('risk')]]),
       [this.#column('note')]: text('Contributions add up to the volatility'),
     })
   }
@@ -1266,10 +1262,10 @@ class Proof {
       const first = this.#draft.next
       labels.forEach((_, g) => {
         const row = this.#draft.next
-        const near = (column: number): string => this.#draft.near(row, column)
+        const near = (column: number): string => this.#draft.cell(row, column)
         const member = groupOf.indexOf(g)
         const sum = (key: Key): string =>
-          `SUMPRODUCT((${labelled}=${this.#draft.near(row, 0)})*${this.#all(key)})`
+          `SUMPRODUCT((${labelled}=${this.#draft.cell(row, 0)})*${this.#all(key)})`
         const formulas = [
           sum('weight'),
           sum('contribution'),
@@ -1282,7 +1278,7 @@ class Proof {
           ...(splits ? [parts.standAlone[g]] : []),
         ]
         const cells: { [column: number]: Late } = {
-          0: formulaCell(`=${this.#draft.near(this.#first + member, 1 + h)}`, PLAIN),
+          0: formulaCell(`=${this.#draft.cell(this.#first + member, 1 + h)}`, PLAIN),
         }
         formulas.forEach((formula, f) => (cells[c + f] = formulaCell(`=${formula}`, figures[f]!.format)))
         if (splits)
@@ -1344,7 +1340,7 @@ class Proof {
     if (!shrinkage) return plain
     const d = this.#at('intensity')
     const labelled = this.#draft.range({ column: 1 + header, row: this.#first, rows: this.#size })
-    const of = `(${labelled}=${this.#draft.near(row, 0)})`
+    const of = `(${labelled}=${this.#draft.cell(row, 0)})`
     const [variance, weight] = [this.#all('variance'), this.#all('weight')]
     if (shrinkage.target !== 'correlation')
       return `(1-${d})*${plain}+${d}*${this.#at('mean variance')}*SUMPRODUCT(${of}*(${variance}>0)*${weight}^2)`
@@ -1616,7 +1612,7 @@ class Proof {
     const cells = this.#reach.cells!
     breakdown.names.forEach((name, i) => {
       const row = this.#draft.next
-      const near = (k: number): string => this.#draft.near(row, c + k)
+      const near = (k: number): string => this.#draft.cell(row, c + k)
       const series = blocks.match.seriesOf[i] ?? -1
       const tail = (from: number, count: number): string =>
         this.#draft.range(this.#dateColumn('tail'), from, count)
@@ -1822,7 +1818,7 @@ class Proof {
     const { estimation, cells } = this.#reach
     const c = this.#labels
     const row = this.#draft.next
-    const near = (k: number): string => this.#draft.near(row, c + k)
+    const near = (k: number): string => this.#draft.cell(row, c + k)
     const holding = blocks.holdings.holdings[i]
     const benchmark = holding?.cells?.benchmark
     const series = blocks.match.seriesOf[i] ?? -1
@@ -1867,7 +1863,7 @@ class Proof {
     const { risk } = this.#input.breakdown.active!
     const c = this.#labels
     const row = this.#draft.next
-    const near = (k: number): string => this.#draft.near(row, c + k)
+    const near = (k: number): string => this.#draft.cell(row, c + k)
     this.#draft.add({
       0: text('Net active weight'),
       [c]: formulaCell(
@@ -1911,6 +1907,7 @@ class Proof {
     if (estimation.kind === 'taken over') this.#notProven.unshift(`Covariances: ${estimation.why}.`)
     if (this.#shrinkage && !this.#derivesIntensity)
       this.#notProven.push('The shrinkage intensity: a constant here.')
+    this.#notProven.push(...this.#takenOverOfTails())
     if (breakdown.nested.length > 0)
       this.#notProven.push('Groups within groups: they are sums of the contributions above.')
     if (breakdown.limits.length > 0)
@@ -1929,6 +1926,21 @@ class Proof {
       this.#draft.add({ 0: text(label), [this.#labels]: text(source) })
     for (const [label, value] of breakdown.settings)
       this.#draft.add({ 0: text(label), [this.#labels]: text(value) })
+  }
+
+  /** What of large losses stands as a constant, or not at all, under methods that are a multiple of the volatility. */
+  #takenOverOfTails(): readonly string[] {
+    const { tails } = this.#input.breakdown
+    if (typeof tails === 'string') return []
+    const { method } = tails.risk
+    const parts = 'Parts of the large losses: each is the contribution above times one figure for all holdings.'
+    if (method.kind === 'normal') return [parts]
+    if (method.kind !== 'student') return []
+    const fitted = method.degrees === null ? 'The degrees of freedom, and the' : 'The'
+    return [
+      `${fitted} quantile of Student’s t distribution, on which the large losses rest: taken over. Its probability alone is recomputed.`,
+      parts,
+    ]
   }
 
   #sources(): readonly (readonly [string, string])[] {
@@ -2101,7 +2113,7 @@ class Proof {
   ): Late {
     const near = (of: DateKey, at = place): string => {
       const { column, row } = this.#dateColumn(of)
-      return this.#draft.near(row + at, column)
+      return this.#draft.cell(row + at, column)
     }
     const isActive = key.startsWith('active')
     const mean = (): string => this.#at(isActive ? 'active mean' : 'mean')

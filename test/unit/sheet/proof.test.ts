@@ -113,7 +113,7 @@ test('series in another order, or not held, get their weights in the order of th
   const rows = table.cells.slice(start + 1, start + 4).map((row) => row.map((c) => c.formula ?? c.value))
   const weight = (holding: number): string => {
     const at = table.cells.findIndex((row) => row[0]?.value === 'Holding') + 1 + holding
-    return `=${columnLetters(CORNER.column + 1)}${CORNER.row + at + 1}`
+    return `=$${columnLetters(CORNER.column + 1)}$${CORNER.row + at + 1}`
   }
   expect(rows.map(([name, of]) => [name, of])).toEqual([
     ['Alder', weight(1)],
@@ -138,7 +138,7 @@ test('dates that run back in time or across are taken as they lie', async () => 
   // the newest stands first and weighs 1; each one below it the decay factor times the one above
   expect(back.cells[start + 1]?.[1]).toMatchObject({ value: 1 })
   expect(back.cells[start + 2]?.[1]?.formula).toBe(
-    `=${String(/\$D\$\d+/.exec(back.cells[start + 2]![1]!.formula!)?.[0])}*D${CORNER.row + start + 2}`,
+    `=${String(/\$D\$\d+/.exec(back.cells[start + 2]![1]!.formula!)?.[0])}*$D$${CORNER.row + start + 2}`,
   )
 })
 
@@ -166,7 +166,7 @@ test('amounts are divided by the capital, which is their sum or stands in the se
   ]
   const table = await proofOf(rows, weekly(['Alder', 'Beech'], 30))
   expect(under(table, 'Amount', 0)).toBe("='Owner''s book'!$C$4")
-  expect(under(table, 'Weight', 0)).toMatch(/^=D\d+\/\$D\$\d+$/)
+  expect(under(table, 'Weight', 0)).toMatch(/^=\$D\$\d+\/\$D\$\d+$/)
   expect(rowOf(table, 'Capital')[1]).toMatch(/^=SUM\(\$D\$\d+:\$D\$\d+\)$/)
   const given = await proofOf(rows, weekly(['Alder', 'Beech'], 30), { capital: 2000 })
   expect(rowOf(given, 'Capital')[1]).toBe(2000)
@@ -194,7 +194,7 @@ test('what formulas cannot recompute is taken over, and the head says so', async
   expect(alert?.value).toMatch(/^NOT recomputed: the covariances\. .*“each pair’s own overlap”/)
   expect(typeof under(paired, 'Covariance with portfolio', 0)).toBe('number')
   expect(under(paired, 'Note', 0)).toBe('covariances taken over')
-  expect(under(paired, 'Contribution to risk', 0)).toMatch(/^=D\d+\*/)
+  expect(under(paired, 'Contribution to risk', 0)).toMatch(/^=\$D\$\d+\*/)
 
   const typed = weekly(TREES, 40)
   typed[3]![1] = '1.5%'
@@ -233,7 +233,7 @@ test('shares that are withheld are withheld here too, while contributions are re
   const table = await proofOf(held([1, -1], ['Alder', 'Twin']), twins)
   expect(textsOf(table)).toMatch(/Shares of risk are withheld/)
   expect(under(table, 'Share of risk', 0)).toBe('withheld')
-  expect(under(table, 'Contribution to risk', 0)).toMatch(/^=D\d+\*/)
+  expect(under(table, 'Contribution to risk', 0)).toMatch(/^=\$D\$\d+\*/)
 })
 
 test('a book without risk has contributions of 0, and what divides by its risk is not defined', async () => {
