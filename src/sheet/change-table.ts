@@ -168,8 +168,9 @@ export function changeTable(title: string, change: RiskChange, paper: PageSetup[
   section('Results compared')
   add(
     ...['', 'Volatility', 'Holdings', 'Kept on', 'Data to'].map((label) => text(label, 'head')),
-    // over texts, which begin at the left
-    ...['Note', '', '', 'Title'].map((label) => text(label, 'section')),
+    // over texts, which begin at the left; the notes stand a little in, as they follow dates
+    { ...text('Note', 'section'), indent: 1 },
+    ...['', '', 'Title'].map((label) => text(label, 'section')),
     ...Array.from({ length: width - 9 }, () => text('', 'head')),
   )
   for (const [label, side] of [

@@ -814,7 +814,7 @@ export class LinkedBook {
     this.#propose({
       key: `keep ${earlier.id}`,
       field: 'history',
-      sentence: `A result ${date} is kept already (on ${dateText(earlier.keptOn)}). Replace it?`,
+      sentence: `A result ${date} is kept already (on ${dateText(earlier.keptOn)}); once replaced, it can no longer be compared. Replace it?`,
       button: 'Replace it',
       accept: async (later, say) => {
         // the sheet may have moved on since it was asked

@@ -496,9 +496,9 @@ function laidOut(
     remark('Sum of stand-alone risks over total'),
   )
   line(
-    'Effective number of positions (by risk)',
+    'Effective number of positions',
     () => formula(call('EFFECTIVE', weights(), risk.reference, of('estimator')), '0.0'),
-    remark('One over the sum of squared shares of risk; says little while a share is negative'),
+    remark('By risk: one over the sum of squared shares of risk; says little while a share is negative'),
   )
   if (settings.tails) {
     const given = (): readonly string[] => [

@@ -90,7 +90,7 @@ function holdsAgainst({ breakdown }: ProofInput, values: CellValue[][], names: r
   const { decomposition: d, tails } = breakdown
   near(rowOf(values, 'Volatility')[1], d.volatility)
   near(rowOf(values, 'Diversification ratio')[1], d.diversificationRatio)
-  near(rowOf(values, 'Effective number of positions (by risk)')[1], d.effectiveNumber)
+  near(rowOf(values, 'Effective number of positions')[1], d.effectiveNumber)
   near(rowOf(values, 'Net weight')[1], breakdown.net)
   near(rowOf(values, 'Gross weight')[1], breakdown.gross)
   if (typeof tails !== 'string') {
