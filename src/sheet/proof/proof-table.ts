@@ -1933,7 +1933,8 @@ class Proof {
     const { tails } = this.#input.breakdown
     if (typeof tails === 'string') return []
     const { method } = tails.risk
-    const parts = 'Parts of the large losses: each is the contribution above times one figure for all holdings.'
+    const parts =
+      'Parts of the large losses: each is the contribution above times one figure for all holdings.'
     if (method.kind === 'normal') return [parts]
     if (method.kind !== 'student') return []
     const fitted = method.degrees === null ? 'The degrees of freedom, and the' : 'The'
