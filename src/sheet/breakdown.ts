@@ -96,8 +96,8 @@ export interface Breakdown {
   } | null
 }
 
-/** Suspicions about the data that the model tells itself, by what it did about them. */
-const TOLD_BY_THE_MODEL: ReadonlySet<CheckKind> = new Set(['constant', 'short history', 'gaps', 'few dates'])
+/** Suspicions about the data that the model tells itself, by what it did about them. Of few dates it tells only where mixes look riskless. */
+const TOLD_BY_THE_MODEL: ReadonlySet<CheckKind> = new Set(['constant', 'short history', 'gaps'])
 
 /**
  * Computes the breakdown of a book.

@@ -101,6 +101,16 @@ describe('The look over the data', () => {
     expect(volatility()).toBe(before)
   })
 
+  test('few dates for the holdings warn beside the figures as well, once they are looked over', async () => {
+    const { books, quiet } = await desk()
+    await books.choose({ lookBack: { kind: 'last', dates: 5 } })
+    const { breakdown, checks } = await quiet()
+    expect(checks?.map(({ check }) => check.kind)).toContain('few dates')
+    expect(breakdown?.findings.map(({ sentence }) => sentence)).toContain(
+      '5 dates for 3 series that move: 1.7 dates a series.',
+    )
+  })
+
   test('follows a weight and an edit of the returns', async () => {
     const { quiet, type } = await desk()
     const correction = ({ checks }: Pick<BooksState, 'checks'>) =>
