@@ -510,6 +510,9 @@ function addPositions(page: Page, breakdown: Breakdown, bands: Bands | null, roo
   // of many holdings each has so little that two decimals would not tell them apart
   const isFine = contributors.every((i) => Math.abs(d.contribution[i]!) < FINE)
   const format = isFine ? '0.000%' : PERCENT
+  // with three decimals and a sign on either end, the per cent sign has room once
+  const bandWithin = (contribution: number, error: number): string =>
+    isFine ? bandText(contribution, error, 3).replace('%', '') : bandText(contribution, error, 2)
   const figures = (
     weight: number,
     contribution: number,
@@ -521,7 +524,7 @@ function addPositions(page: Page, breakdown: Breakdown, bands: Bands | null, roo
     [CONTRIBUTION]: number(contribution, format, mark),
     [SHARE]: shares ? number(share, SHARE_FORMAT, mark) : text('', mark),
     [ASIDE]: {
-      ...text(error === null ? '' : bandText(contribution, error, isFine ? 3 : 2), mark),
+      ...text(error === null ? '' : bandWithin(contribution, error), mark),
       indent: 1,
     },
   })
