@@ -251,6 +251,28 @@ export function awkwardBooks(): BookCells[] {
   ]
 }
 
+/** Books whose covariances the sheet takes over as constants, and must say so: what follows from them is recomputed all the same. */
+export function takenOverBooks(): BookCells[] {
+  const gaps = without(FIVE, [[4, 2], [5, 2], [60, 4], [120, 1]]) // prettier-ignore
+  const late = FIVE.map((row, r) => row.map((value, c) => (c === 5 && r > 0 && r < 50 ? '' : value)))
+  return [
+    {
+      name: 'Own overlap',
+      holdings: holdingsOf(LONG_SHORT),
+      returns: gaps,
+      settings: { gaps: 'own overlap' },
+    },
+    { name: 'Completed', holdings: holdingsOf(LONG), returns: late, settings: { gaps: 'completed' } },
+    {
+      name: 'Factors',
+      holdings: holdingsOf(LONG_SHORT),
+      returns: FIVE,
+      factors: weekly(['Market', 'Rates'], 120, 7),
+      settings: { estimator: { kind: 'factors' } },
+    },
+  ]
+}
+
 // ---- figures from elsewhere
 
 /** A figure of someone else's, by the name it has in `Figures`. */

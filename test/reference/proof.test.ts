@@ -15,12 +15,13 @@ import {
   type Shown,
   type Workout,
 } from '../recalculation'
-import { awkwardBooks } from './proof-books'
+import { awkwardBooks, takenOverBooks } from './proof-books'
 
 jest.setTimeout(300_000)
 
 const tolerance = 1e-10
-const books = awkwardBooks()
+const takenOver = takenOverBooks()
+const books = [...awkwardBooks(), ...takenOver]
 
 let desk: Workout
 const tables = new Map<string, Table>()
@@ -46,5 +47,23 @@ describe.each(books.map((book) => [book.name, book] as const))('The proof of the
       expectAgreement(readProof(tables.get(name)!, (await inCalc)(book)), tolerance)
     },
     300_000,
+  )
+})
+
+describe.each(takenOver.map((book) => [book.name, book] as const))(
+  'The proof of the book “%s”, whose covariances formulas do not reach,',
+  (name, book) => {
+    it('says at its head that they are constants taken over', () => {
+      const { texts } = readProof(tables.get(name)!, desk.shown(book))
+      expect(texts.slice(0, 8).join(' ')).toMatch(/NOT recomputed: the covariances/)
+    })
+  },
+)
+
+it('says so of no other book', () => {
+  const loud = books.filter(({ name }) => JSON.stringify(tables.get(name)!.cells).includes('NOT recomputed'))
+  // returns typed as text are no numbers to a formula
+  expect(loud.map(({ name }) => name).sort()).toEqual(
+    ['Text returns', ...takenOver.map(({ name }) => name)].sort(),
   )
 })
