@@ -39,7 +39,7 @@ const pageOf = (header: string): PageSetup => ({
   footer: CAUTION,
 })
 
-const BACKTEST_WIDTHS = [34, 18, 18, 18, 40]
+const BACKTEST_WIDTHS = [37, 18, 18, 18, 37]
 
 /**
  * Lays a back-test out as a table to be written: what was forecast how, the tests in words, a chart, and every date with what was forecast and what
@@ -70,7 +70,8 @@ export function backtestTable(
   rows.add(text('How it was made'), text(`${study.method}.`))
 
   rows.section('Tests')
-  rows.heads('Test', 'Figure', 'What it says')
+  // over texts, which begin at the left
+  rows.add(...['Test', 'Figure', 'What it says'].map((label) => text(label, 'section')))
   for (const [label, figure, meaning] of study.lines) rows.add(text(label), text(figure), text(meaning))
 
   if (study.of === 'this book' && breakdown) {
