@@ -90,6 +90,7 @@ export const keptResults = (
     dataDate: LAST_DAY - 28 * (count - k),
     volatility: volatility * (0.9 + 0.02 * ((7 * k) % 5)),
     trackingError: trackingError && trackingError * (0.9 + 0.01 * k),
+    periodsPerYear: 52,
     positions: 16,
     inputsHash: `${k}`,
   }))

@@ -790,12 +790,16 @@ function addHistory(page: Page, { history, breakdown }: CommitteeInput, room: Ro
     return
   }
   const dated = [...history].sort((a, b) => (a.dataDate ?? a.keptOn) - (b.dataDate ?? b.keptOn))
-  const points: Point[] = dated.map(({ dataDate, keptOn, volatility, trackingError, note }) => ({
-    day: dataDate === null ? `kept ${dateText(keptOn)}` : dateText(dataDate),
-    volatility,
-    trackingError,
-    note,
-  }))
+  const isScaled = dated.some(({ periodsPerYear }) => periodsPerYear !== d.periodsPerYear)
+  const points: Point[] = dated.map((head) => {
+    const scale = Math.sqrt(d.periodsPerYear / head.periodsPerYear)
+    return {
+      day: head.dataDate === null ? `kept ${dateText(head.keptOn)}` : dateText(head.dataDate),
+      volatility: head.volatility * scale,
+      trackingError: head.trackingError && head.trackingError * scale,
+      note: head.note,
+    }
+  })
   // the page's own figures stand at the end of the line unless they are the ones kept last
   const last = points.at(-1)
   if (last && Math.abs(last.volatility - d.volatility) > 1e-9 * d.volatility)
@@ -823,7 +827,7 @@ function addHistory(page: Page, { history, breakdown }: CommitteeInput, room: Ro
   ]
   const left = points.length - shown.length
   const notes = page.lines(
-    `Kept results, each under the settings of its day.${left > 0 ? ` ${countOf(left, 'earlier one')}: see the sheet of kept results.` : ''}`,
+    `Kept results, each under the settings of its day${isScaled ? ' but scaled as this page is' : ''}.${left > 0 ? ` ${countOf(left, 'earlier one')}: see the sheet of kept results.` : ''}`,
     widthFrom(LABEL, ASIDE),
     2,
   )

@@ -2,6 +2,7 @@ import { hashOf, inACell } from './history-hash'
 import type { CellValue } from './cells'
 import { settingsFromJson, settingsToJson } from './settings'
 import type { Snapshot, SnapshotHead } from './snapshot'
+import { headOf } from './snapshot'
 import type { Table, TableCell } from './table'
 import { numberCell, textCell as text } from './table'
 import type { Json } from './workbook'
@@ -21,7 +22,6 @@ interface Facts extends SnapshotHead {
   readonly groupHeaders: readonly string[]
   readonly hasCorrelations: boolean
   readonly horizon: Snapshot['horizon']
-  readonly periodsPerYear: number
   readonly dates: Snapshot['dates']
   readonly readTo: number | null
   readonly settings: Json
@@ -33,15 +33,14 @@ interface Facts extends SnapshotHead {
  * A result as it is kept to be read back: its figures as plain numbers, the correlations as the half below the diagonal, the rest as JSON.
  */
 export function recordTable(snapshot: Snapshot): Table {
-  const { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash } = snapshot
+  const { id, title, keptOn } = snapshot
   const { names, groupHeaders, groups, currencies, weights, volatilities, contribution, correlations } =
     snapshot
   const facts: Facts = {
-    ...{ id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash },
+    ...headOf(snapshot),
     groupHeaders,
     hasCorrelations: correlations !== null,
     horizon: snapshot.horizon,
-    periodsPerYear: snapshot.periodsPerYear,
     dates: snapshot.dates,
     readTo: snapshot.readTo ?? null,
     settings: settingsToJson(snapshot.settings),

@@ -4,6 +4,7 @@ import { addressOf } from './cells'
 import { historyBlock } from './history-block'
 import { recordHash, recordTable, snapshotFrom } from './history-record'
 import type { Snapshot, SnapshotHead } from './snapshot'
+import { headOf } from './snapshot'
 import type { Table } from './table'
 import { textCell } from './table'
 import type { Json, Patch, Seen, Want, Workbook, WritePlan } from './workbook'
@@ -401,11 +402,6 @@ function withoutBlankEnd(rows: readonly (readonly CellValue[])[]): readonly (rea
 
 // ---- the list as it is saved
 
-const headOf = (snapshot: SnapshotHead): SnapshotHead => {
-  const { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash } = snapshot
-  return { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash }
-}
-
 const listToJson = (next: number, sheet: string | null, kept: readonly Entry[]): Json => ({
   next,
   sheet,
@@ -428,16 +424,18 @@ function listFrom(saved: Json | undefined): {
 
 function entryFrom(saved: Json): Entry | null {
   const tree = treeOf(saved)
-  const { id, title, note, hash, inputsHash, keptOn, volatility, positions, dataDate, trackingError } = tree
+  const { id, title, note, hash, inputsHash, keptOn, volatility, periodsPerYear, positions } = tree
+  const { dataDate, trackingError } = tree
   const isNumber = (value: Json | undefined): value is number =>
     typeof value === 'number' && Number.isFinite(value)
   const isText = (value: Json | undefined): value is string => typeof value === 'string'
   if (!isText(id) || !/^[1-9]\d*$/.test(id)) return null
   if (!isText(title) || !isText(note) || !isText(hash) || !isText(inputsHash)) return null
   if (!isNumber(keptOn) || !isNumber(volatility) || !isNumber(positions)) return null
+  if (!isNumber(periodsPerYear) || periodsPerYear <= 0) return null
   if (dataDate !== null && !isNumber(dataDate)) return null
   if (trackingError !== null && !isNumber(trackingError)) return null
-  const head = { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash }
+  const head = { id, title, note, keptOn, dataDate, volatility, trackingError, periodsPerYear, positions, inputsHash } // prettier-ignore
   return { head, hash }
 }
 

@@ -3,6 +3,7 @@ import type { RiskChangeSplit, RiskState } from '../core'
 import { groupsOf, plainName } from './names'
 import type { Settings } from './settings'
 import type { Snapshot, SnapshotHead } from './snapshot'
+import { headOf } from './snapshot'
 import { dateText, listOf, numberText, quote } from './wording'
 
 /** What of a change of risk comes from which cause, in units of volatility; scaled as the results are. */
@@ -114,11 +115,6 @@ export async function riskChangeOf(
     difference: sum - change,
     notes: [...notes, ...grouping.notes],
   }
-}
-
-function headOf(snapshot: Snapshot): SnapshotHead {
-  const { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash } = snapshot
-  return { id, title, note, keptOn, dataDate, volatility, trackingError, positions, inputsHash }
 }
 
 // ---- settings

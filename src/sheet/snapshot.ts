@@ -26,8 +26,6 @@ export interface Snapshot extends SnapshotHead {
   /** n x n row-major; the row and column of a riskless holding hold 0 but for its diagonal. null where they were too many to be kept */
   readonly correlations: Float64Array | null
   readonly horizon: Breakdown['horizon']
-  /** 1 where figures are per period */
-  readonly periodsPerYear: number
   readonly dates: Breakdown['dates']
   /** last date of the block of returns then, whether it was used or not; null where it has no dates, absent where nobody kept it */
   readonly readTo?: number | null
@@ -52,9 +50,29 @@ export interface SnapshotHead {
   readonly dataDate: number | null
   readonly volatility: number
   readonly trackingError: number | null
+  /** the periods in a year that both are scaled to; 1 where they are per period */
+  readonly periodsPerYear: number
   readonly positions: number
   /** of all inputs: names, weights, returns and settings. Equal hashes: the same result */
   readonly inputsHash: string
+}
+
+/** What a list says of a result, without the rest of it. */
+export function headOf(of: SnapshotHead): SnapshotHead {
+  const { id, title, note, keptOn, dataDate, volatility, trackingError, periodsPerYear } = of
+  const { positions, inputsHash } = of
+  return {
+    id,
+    title,
+    note,
+    keptOn,
+    dataDate,
+    volatility,
+    trackingError,
+    periodsPerYear,
+    positions,
+    inputsHash,
+  }
 }
 
 /**
@@ -93,6 +111,7 @@ export async function snapshotOf(input: SnapshotInput, extent: 'kept' | 'whole')
     dataDate: dates?.last ?? null,
     volatility: d.volatility,
     trackingError: active?.risk.trackingError ?? null,
+    periodsPerYear: d.periodsPerYear,
     positions: names.length,
     inputsHash: await hashOf([
       'inputs',
@@ -110,7 +129,6 @@ export async function snapshotOf(input: SnapshotInput, extent: 'kept' | 'whole')
     contribution: d.contribution.slice(),
     correlations: extent === 'whole' || names.length <= MOST_KEPT ? correlationsOf(book) : null,
     horizon,
-    periodsPerYear: d.periodsPerYear,
     dates,
     readTo: blocks.returns.dates?.at(-1) ?? null,
     settings,

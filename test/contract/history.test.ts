@@ -343,7 +343,7 @@ describe('What has become of the sheets', () => {
 
   test('a list edited by hand loses what does not read, and says so', () => {
     const history = new History({} as Workbook, '1')
-    const good = { id: '4', title: 'A', note: '', keptOn: 1, dataDate: null, volatility: 0.1, trackingError: null, positions: 2, inputsHash: 'x', hash: 'y' } // prettier-ignore
+    const good = { id: '4', title: 'A', note: '', keptOn: 1, dataDate: null, volatility: 0.1, trackingError: null, periodsPerYear: 52, positions: 2, inputsHash: 'x', hash: 'y' } // prettier-ignore
     const edited: Json[] = [good, { ...good, id: '5', volatility: 'high' }, 7]
     history.open({ next: 'soon', sheet: '', kept: edited })
     expect(history.heads.map(({ id }) => id)).toEqual(['4'])

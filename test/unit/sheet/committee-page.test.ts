@@ -235,4 +235,25 @@ describe('its charts', () => {
     const lines = linesOf(committeePage(inputOf(demo, { history: same })))
     expect(lines.some((line) => line.startsWith('This page'))).toBe(false)
   })
+
+  test('bring results that were kept per period to the scale of the page', () => {
+    const kept = keptResults(3, 0.08, 0.009)
+    const weekly = kept.map((head) => ({ ...head, volatility: head.volatility / Math.sqrt(52), trackingError: head.trackingError! / Math.sqrt(52), periodsPerYear: 1 })) // prettier-ignore
+    const course = (history: typeof kept): number[][] => {
+      const page = committeePage(inputOf(demo, { history }))
+      return page
+        .charts!.at(-1)!
+        .series.map(({ values: { row, column, rows } }) =>
+          page.cells.slice(row, row + rows).map((cells) => Number(cells[column]!.value)),
+        )
+    }
+    // a root taken and undone: a few units of the last digit
+    course(weekly).forEach((line, k) => {
+      line.forEach((value, t) => {
+        expect(value).toBeCloseTo(course(kept)[k]![t]!, 15)
+      })
+    })
+    const page = linesOf(committeePage(inputOf(demo, { history: weekly }))).join(' ')
+    expect(page).toContain('each under the settings of its day but scaled as this page is')
+  })
 })
