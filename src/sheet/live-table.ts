@@ -22,8 +22,8 @@ const PLAIN = 'General'
 /** Columns of BREAKDOWN and of GROUPED by their formats; the first is text, which the format of a cell with a formula must not say. */
 const BREAKDOWN_FORMATS = [PLAIN, PERCENT, PERCENT, PERCENT, PERCENT, SHARE, RATIO, RATIO] as const
 const GROUPED_FORMATS = [PLAIN, PERCENT, PERCENT, PERCENT, SHARE] as const
-/** Heads that functions spill stand on one line: a row does not grow with what is calculated. */
-const WIDTHS = [36, 13, 18, 29, 21, 14, 18, 26] as const
+/** Heads that functions spill have room on one line in any usual font: a row does not grow with what is calculated. */
+const WIDTHS = [36, 13, 21, 37, 25, 16, 22, 33] as const
 
 /** Rows kept free below a table by group, for labels that come to be. Our own convention. */
 const SPARE = 3
