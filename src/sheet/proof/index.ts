@@ -1,2 +1,2 @@
+export type { ProofInput } from './proof-sheet'
 export { proofTable } from './proof-table'
-export type { ProofInput } from './proof-table'
