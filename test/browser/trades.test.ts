@@ -151,7 +151,12 @@ test('Discard leaves no trace of what was typed', async () => {
   await tabTo(/^Discard$/)
   await page.keyboard.press('Enter')
   await pane.getByText('No weight differs from those compared from.').waitFor()
-  expect(await line.inputValue()).toBe('')
+  // the list is drawn first, its fields follow
+  await until(
+    () => line.inputValue(),
+    (shown) => shown === '',
+    'the field to be empty',
+  )
   expect(await focused()).toBe('Discard')
   expect(await weights()).toEqual(before)
 })
