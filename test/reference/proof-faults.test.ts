@@ -8,6 +8,7 @@ import type { EstimatorChoice, Settings } from '../../src/sheet/settings'
 import type { Table } from '../../src/sheet/table'
 import { itInCalc } from '../calc'
 import { DIFFERS, expectAgreement, readProof, type ProofReading } from '../proof-reading'
+import { proofsOf } from '../proofs'
 import {
   computed,
   cornerOf,
@@ -166,53 +167,29 @@ describe('An error planted in our figures', () => {
   /** Right but for rounding. */
   const sound = { ...GROUPS, name: 'Sound', data: 'Faults' }
 
-  let desk: Workout
-  const tables = new Map<string, Table>()
-  let inCalc: Promise<(book: BookCells) => Shown> | null = null
-  beforeAll(async () => {
-    for (const { book, wrong } of cases)
-      tables.set(book.name, proofTable(await plant(book, wrong), cornerOf(book)))
-    const rounded = await plant(sound, (b) =>
-      split(b, { contribution: b.decomposition.contribution.map((c) => c * (1 + 1e-14)) }),
-    )
-    tables.set(sound.name, proofTable(rounded, cornerOf(sound)))
-    desk = await workedOut(
-      [...cases.map(({ book }) => book), sound].map((book) => ({ book, table: tables.get(book.name)! })),
-    )
-  })
-  afterAll(() => {
-    desk.dispose()
-  })
-  const calc = async (book: BookCells): Promise<Shown> => {
-    inCalc ??= desk.saved().then(workedOutByCalc)
-    return (await inCalc)(book)
-  }
-  const marks = (book: BookCells, shown: Shown, lines: RegExp): void => {
-    const proof = readProof(tables.get(book.name)!, shown)
-    const found = differing(proof)
-    expect(found).toContainEqual(expect.stringMatching(lines))
-    expect(proof.headline).toEqual({
-      sentence: 'Some lines differ by more than the tolerance',
-      agree: proof.results.length - found.length,
-      differ: found.length,
-    })
-  }
+  const planted = new Map(cases.map(({ book, wrong }) => [book.name, wrong]))
+  const proofs = proofsOf([...cases.map(({ book }) => book), sound], (book) =>
+    plant(
+      book,
+      planted.get(book.name) ??
+        ((b) => split(b, { contribution: b.decomposition.contribution.map((c) => c * (1 + 1e-14)) })),
+    ),
+  )
 
   describe.each(cases.map((one) => [one.what, one] as const))('(%s)', (_, { book, lines }) => {
-    it('is marked by the engine under the desk', () => {
-      marks(book, desk.shown(book), lines)
+    proofs.inBoth('is marked by', book, (proof) => {
+      const found = differing(proof)
+      expect(found).toContainEqual(expect.stringMatching(lines))
+      expect(proof.headline).toEqual({
+        sentence: 'Some lines differ by more than the tolerance',
+        agree: proof.results.length - found.length,
+        differ: found.length,
+      })
     })
-    itInCalc(
-      'is marked by LibreOffice Calc',
-      async () => {
-        marks(book, await calc(book), lines)
-      },
-      300_000,
-    )
   })
 
   it('is told from rounding in the last digits', () => {
-    expectAgreement(readProof(tables.get('Sound')!, desk.shown(sound)), tolerance)
+    expectAgreement(proofs.reading(sound), tolerance)
   })
 })
 
@@ -281,54 +258,18 @@ describe('Books of 150 holdings', () => {
     const holdings = book.holdings.map((row) => [row[0] ?? '', row[2] ?? ''])
     return { ...book, holdings, name: `150 ${name}`, data: '150', settings: { estimator } }
   })
-  const tables = new Map<string, Table>()
-  let desk: Workout
-  let inCalc: Promise<(book: BookCells) => Shown> | null = null
-  beforeAll(async () => {
-    for (const book of books) tables.set(book.name, proofTable(await computed(book), cornerOf(book)))
-    desk = await workedOut(books.map((book) => ({ book, table: tables.get(book.name)! })))
-  })
-  afterAll(() => {
-    desk.dispose()
-  })
+  const proofs = proofsOf(books)
 
-  describe.each(books.map((book) => [book.name, book] as const))('(%s)', (name, book) => {
-    it('agree in every line, worked out by the engine under the desk', () => {
-      expectAgreement(readProof(tables.get(name)!, desk.shown(book)), tolerance)
+  describe.each(books.map((book) => [book.name, book] as const))('(%s)', (_, book) => {
+    proofs.inBoth('agree in every line, worked out by', book, (proof) => {
+      expectAgreement(proof, tolerance)
     })
-
-    itInCalc(
-      'agree in every line, worked out by LibreOffice Calc',
-      async () => {
-        inCalc ??= desk.saved().then(workedOutByCalc)
-        expectAgreement(readProof(tables.get(name)!, (await inCalc)(book)), tolerance)
-      },
-      300_000,
-    )
   })
 })
 
 describe('A book of 500 holdings and 1260 dates', () => {
   const book = largeBook(500, 1260)
-  let desk: Workout
-  let table: Table
-  beforeAll(async () => {
-    table = proofTable(await computed(book), cornerOf(book))
-    desk = await workedOut([{ book, table }])
+  proofsOf([book]).inBoth('agrees in every line, worked out by', book, (proof) => {
+    expectAgreement(proof, tolerance)
   })
-  afterAll(() => {
-    desk.dispose()
-  })
-
-  it('agrees in every line, worked out by the engine under the desk', () => {
-    expectAgreement(readProof(table, desk.shown(book)), tolerance)
-  })
-
-  itInCalc(
-    'agrees in every line, worked out by LibreOffice Calc',
-    async () => {
-      expectAgreement(readProof(table, (await workedOutByCalc(await desk.saved()))(book)), tolerance)
-    },
-    300_000,
-  )
 })

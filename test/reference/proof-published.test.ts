@@ -2,37 +2,16 @@
  * The proof held against figures that others have computed or printed: not ours alone, but the cells that a workbook's formulas come to agree
  * with them. Source and status of each stand in proof-books.ts and in data/README.md; tolerance as there.
  */
-import { proofTable } from '../../src/sheet/proof'
-import type { Table } from '../../src/sheet/table'
-import { itInCalc } from '../calc'
 import { absoluteGap, relativeGap } from '../closeness'
-import { column, expectAgreement, figure, readProof, type ProofReading } from '../proof-reading'
-import {
-  computed,
-  cornerOf,
-  workedOut,
-  workedOutByCalc,
-  type BookCells,
-  type Shown,
-  type Workout,
-} from '../recalculation'
+import { column, expectAgreement, figure, type ProofReading } from '../proof-reading'
+import { proofsOf } from '../proofs'
 import { computedBooks, publishedBooks } from './proof-books'
 
 jest.setTimeout(300_000)
 
 const references = [...computedBooks(), ...publishedBooks()]
 
-let desk: Workout
-const tables = new Map<string, Table>()
-let inCalc: Promise<(book: BookCells) => Shown> | null = null
-
-beforeAll(async () => {
-  for (const { book } of references) tables.set(book.name, proofTable(await computed(book), cornerOf(book)))
-  desk = await workedOut(references.map(({ book }) => ({ book, table: tables.get(book.name)! })))
-})
-afterAll(() => {
-  desk.dispose()
-})
+const proofs = proofsOf(references.map(({ book }) => book))
 
 /** Where each figure stands in the sheet: the holdings come first, their groups after them. */
 const PLACES: Record<string, (proof: ProofReading) => number | number[]> = {
@@ -62,9 +41,8 @@ const partsOf = (proof: ProofReading, name: string): number | number[] => {
 
 describe.each(references.map((one) => [one.book.name, one.source, one] as const))(
   'The proof of “%s” (%s)',
-  (name, _, { book, expected, tolerance }) => {
-    const check = (shown: Shown): void => {
-      const proof = readProof(tables.get(name)!, shown)
+  (_name, _source, { book, expected, tolerance }) => {
+    proofs.inBoth('comes to their figures in', book, (proof) => {
       expectAgreement(proof, 1e-10)
       expect(Object.keys(expected).length).toBeGreaterThan(0)
       for (const [figure, theirs] of Object.entries(expected)) {
@@ -76,19 +54,6 @@ describe.each(references.map((one) => [one.book.name, one.source, one] as const)
         if (!(gap <= allowed))
           throw new Error(`${figure}: ${String(found)} against ${String(theirs)}, ${gap} apart of ${allowed}`)
       }
-    }
-
-    it('comes to their figures in the engine under the desk', () => {
-      check(desk.shown(book))
     })
-
-    itInCalc(
-      'comes to their figures in LibreOffice Calc',
-      async () => {
-        inCalc ??= desk.saved().then(workedOutByCalc)
-        check((await inCalc)(book))
-      },
-      300_000,
-    )
   },
 )
